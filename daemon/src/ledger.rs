@@ -1,0 +1,183 @@
+//! The ledger: the embedded database of all that happened, and the only SQL of the program.
+//!
+//! Model: one SQLite file in the state folder, WAL, synchronous FULL. Work and its record commit in one
+//! transaction ([`Ledger::write`], `BEGIN IMMEDIATE`); readers open their own connection.
+//!
+//! Not here: what the rows mean for a round or a standing (`rounds`, `analyse`).
+//!
+//! Invariant: what was committed survives a power cut, and every reading met in an export is counted in exactly
+//! one place of [`Accounting`].
+
+mod account;
+mod export;
+mod file;
+mod outbox;
+mod readings;
+mod round;
+mod run;
+mod study;
+
+use std::path::{Path, PathBuf};
+use std::time::Duration;
+
+use rusqlite::{Connection, OpenFlags, Transaction, TransactionBehavior};
+
+pub use account::{Accounting, RefusedExport, SetAsideRun};
+pub use export::{ExportState, NewExport};
+pub use file::{FileRow, Stat};
+pub use outbox::{Owed, OutboxRow};
+pub use readings::{Delivered, PackedReading};
+pub use round::{RoundRow, RoundState};
+pub use run::{RunRow, RunStatus, Placement};
+pub use study::{StandingRow, StudyRow};
+
+/// The schema this program writes.
+const SCHEMA: i32 = 1;
+/// Marks the file as ours: "Rstd".
+const APPLICATION: i32 = 0x5273_7464;
+const BUSY: Duration = Duration::from_secs(10);
+
+/// An open ledger.
+pub struct Ledger {
+    connection: Connection,
+}
+
+/// Why the ledger could not be opened, read or written.
+#[derive(Debug, thiserror::Error)]
+pub enum LedgerError {
+    /// The file belongs to something else.
+    #[error("`{0}` is a database, but not a Restudy ledger")]
+    Foreign(PathBuf),
+    /// Written by a later version.
+    #[error("the ledger `{path}` has schema {found}; this version knows up to {SCHEMA}")]
+    Newer {
+        /// The file.
+        path: PathBuf,
+        /// Its schema.
+        found: i32,
+    },
+    /// There is none yet.
+    #[error("there is no ledger at `{0}` yet: has `restudy serve` run with this configuration?")]
+    Absent(PathBuf),
+    /// The database said no.
+    #[error("the ledger could not be used")]
+    Database(#[from] rusqlite::Error),
+    /// A row holds what no version of this program writes.
+    #[error("the ledger holds an unreadable {0}")]
+    Damaged(String),
+}
+
+impl Ledger {
+    /// Opens the ledger below the state folder for reading and writing; makes it when there is none.
+    ///
+    /// # Errors
+    /// A foreign or newer file, or the database's own refusal.
+    pub fn open(state: &Path) -> Result<Self, LedgerError> {
+        let path = Self::path(state);
+        let mut connection = Connection::open(&path)?;
+        connection.busy_timeout(BUSY)?;
+        refuse_foreign(&connection, &path)?;
+        connection.pragma_update(None, "journal_mode", "WAL")?;
+        connection.pragma_update(None, "synchronous", "FULL")?;
+        connection.pragma_update(None, "foreign_keys", "ON")?;
+        migrate(&mut connection)?;
+        Ok(Self { connection })
+    }
+
+    /// Opens an existing ledger for reading, beside a running service.
+    ///
+    /// # Errors
+    /// No ledger, a foreign or newer file, or the database's own refusal.
+    pub fn open_to_read(state: &Path) -> Result<Self, LedgerError> {
+        let path = Self::path(state);
+        if !path.exists() {
+            return Err(LedgerError::Absent(path));
+        }
+        let connection = Connection::open_with_flags(
+            &path,
+            OpenFlags::SQLITE_OPEN_READ_WRITE | OpenFlags::SQLITE_OPEN_NO_MUTEX,
+        )?;
+        connection.busy_timeout(BUSY)?;
+        refuse_foreign(&connection, &path)?;
+        connection.pragma_update(None, "query_only", "ON")?;
+        Ok(Self { connection })
+    }
+
+    /// Where the ledger lies in a state folder.
+    #[must_use]
+    pub fn path(state: &Path) -> PathBuf {
+        state.join("restudy.db")
+    }
+
+    /// Runs `work` in one transaction: all of it is recorded, or nothing.
+    ///
+    /// # Errors
+    /// What `work` returns, or the database's refusal to commit.
+    pub fn write<T, E: From<LedgerError>>(
+        &mut self,
+        work: impl FnOnce(&Write<'_>) -> Result<T, E>,
+    ) -> Result<T, E> {
+        let transaction = self
+            .connection
+            .transaction_with_behavior(TransactionBehavior::Immediate)
+            .map_err(LedgerError::from)?;
+        let write = Write { transaction };
+        let value = work(&write)?;
+        write.transaction.commit().map_err(LedgerError::from)?;
+        Ok(value)
+    }
+
+    /// The reading side.
+    #[must_use]
+    pub fn read(&self) -> Read<'_> {
+        Read { connection: &self.connection }
+    }
+}
+
+/// Queries.
+#[derive(Clone, Copy)]
+pub struct Read<'a> {
+    connection: &'a Connection,
+}
+
+/// A transaction under way: everything of [`Read`], and changes.
+pub struct Write<'a> {
+    transaction: Transaction<'a>,
+}
+
+impl Write<'_> {
+    /// The reading side, inside this transaction.
+    #[must_use]
+    pub fn read(&self) -> Read<'_> {
+        Read { connection: &self.transaction }
+    }
+}
+
+fn refuse_foreign(connection: &Connection, path: &Path) -> Result<(), LedgerError> {
+    let application: i32 = connection.pragma_query_value(None, "application_id", |r| r.get(0))?;
+    let schema: i32 = connection.pragma_query_value(None, "user_version", |r| r.get(0))?;
+    let empty: bool =
+        connection.query_row("SELECT NOT EXISTS (SELECT 1 FROM sqlite_schema)", [], |r| r.get(0))?;
+    if application != APPLICATION && !empty {
+        return Err(LedgerError::Foreign(path.to_owned()));
+    }
+    if schema > SCHEMA {
+        return Err(LedgerError::Newer { path: path.to_owned(), found: schema });
+    }
+    Ok(())
+}
+
+/// Brings the schema up to [`SCHEMA`], tables and version number in one transaction.
+fn migrate(connection: &mut Connection) -> Result<(), LedgerError> {
+    let transaction = connection.transaction_with_behavior(TransactionBehavior::Immediate)?;
+    let schema: i32 = transaction.pragma_query_value(None, "user_version", |r| r.get(0))?;
+    if schema < 1 {
+        transaction.execute_batch(include_str!("ledger/schema-1.sql"))?;
+        transaction.pragma_update(None, "application_id", APPLICATION)?;
+    }
+    if schema < SCHEMA {
+        transaction.pragma_update(None, "user_version", SCHEMA)?;
+    }
+    transaction.commit()?;
+    Ok(())
+}

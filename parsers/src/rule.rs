@@ -1,0 +1,213 @@
+//! How one instrument's exports are read: where each role comes from. Made by `restudy-config`
+//! (or in code, for exports with plain headings), checked there; serialisable, so that workbooks
+//! can be read in a child process.
+
+use std::collections::BTreeMap;
+
+use serde::{Deserialize, Serialize};
+
+/// The whole rule of one instrument.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Rule {
+    /// The shape of the export.
+    pub form: Form,
+    /// Who or what was measured.
+    pub part: Role,
+    /// Who measured; `None`: the study has no appraiser.
+    pub appraiser: Option<Role>,
+    /// How trials are told apart; `None`: one trial.
+    pub trial: Option<Trial>,
+    /// When the part was measured.
+    pub taken: Option<Taken>,
+    /// The round's own label.
+    pub round: Option<Role>,
+    /// The characteristic's label; `None`: one unnamed characteristic, called `value`.
+    pub characteristic: Option<Role>,
+    /// The measured value.
+    pub value: Value,
+    /// Nominal value.
+    pub nominal: Option<Role>,
+    /// Lower limit.
+    pub lower: Option<Limit>,
+    /// Upper limit.
+    pub upper: Option<Limit>,
+    /// Further factors, by name.
+    pub factors: BTreeMap<String, Role>,
+    /// Values that must stay the same within a round, by name.
+    pub same: BTreeMap<String, Role>,
+    /// A text that ends the export; without it every run in the export is incomplete.
+    pub end: Option<Find>,
+    /// The decimal mark, `.` or `,`.
+    pub decimal: char,
+    /// Texts that mean "no value" (`---`, `9999`), compared after trimming.
+    pub no_value: Vec<String>,
+    /// Encoding of text that is neither marked by a BOM nor UTF-8 (a WHATWG label).
+    pub encoding: Option<String>,
+    /// Limits on size and depth.
+    pub bounds: Bounds,
+}
+
+/// The shape of an export.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub enum Form {
+    /// One row a reading, below a row of headings: delimited text or a workbook sheet. The content
+    /// decides which it is, not the file name.
+    Table {
+        /// The sheet to read (workbooks only).
+        sheet: Sheet,
+        /// The row of headings.
+        header: Header,
+        /// Delimiter of text; `None`: a first line `sep=;`, else the comma (semicolon when the decimal mark is a comma).
+        delimiter: Option<char>,
+    },
+    /// XML: `each` is the path to the repeating element that holds one reading.
+    Xml {
+        /// Absolute path of local names, `/export/run/feature`.
+        each: String,
+    },
+}
+
+/// Which sheet of a workbook.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Sheet {
+    /// The only visible sheet, or the first one.
+    First,
+    /// The sheet of that name (any case, blanks folded).
+    Named(String),
+}
+
+/// Which row holds the headings.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Header {
+    /// That row, counted from 1.
+    Row(u32),
+    /// The first row in which a cell holds that text (any case, blanks folded).
+    Find(String),
+}
+
+/// Where a text comes from, and what of it is taken.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Role {
+    /// The place.
+    pub from: Cell,
+    /// A regex: its first group (or the whole match) is taken.
+    pub find: Option<String>,
+    /// Other spellings: found text to label (any case, blanks folded).
+    pub spellings: BTreeMap<String, String>,
+}
+
+/// A place in or about an export.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Cell {
+    /// The column with that heading (any case, blanks folded).
+    Column(String),
+    /// One cell for the whole export, as in `B4` (text: row 4, second field).
+    At {
+        /// Row, from 0.
+        row: u32,
+        /// Column, from 0.
+        column: u32,
+    },
+    /// The first non-blank cell right of the cell that holds that text, else the one below it.
+    Label(String),
+    /// A regex searched in the export's path; its first group (or the whole match) is taken.
+    Path(String),
+    /// XML: a path to an element or, with `@name` last, an attribute; absolute (`/export/@id`) or relative to
+    /// `each` (`value`, `@id`, `../@part`).
+    Xml(String),
+    /// The same for every export.
+    Constant(String),
+}
+
+/// How trials are told apart.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub enum Trial {
+    /// A label.
+    Stated(Role),
+    /// Not stated: counted.
+    Counted(Count),
+}
+
+/// What counted trials are counted by.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Count {
+    /// By time stamp, at analysis (runs keep `trial: None`).
+    Taken,
+    /// By order within the export: the n-th reading of the same part, appraiser, factors and characteristic
+    /// is trial n (runs get that number).
+    Order,
+}
+
+/// When a run was measured.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Taken {
+    /// Where the text or workbook date stands.
+    pub role: Role,
+    /// A strptime format; `None`: ISO 8601 (or a workbook date cell).
+    pub format: Option<String>,
+    /// IANA zone in which a text with an offset is shown as civil time; `None`: the offset's own civil time.
+    pub zone: Option<String>,
+}
+
+/// The measured value.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Value {
+    /// Where it stands.
+    pub role: Role,
+    /// Its unit: a constant, or a place.
+    pub unit: Option<Role>,
+}
+
+/// A tolerance limit.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Limit {
+    /// Where it stands.
+    pub role: Role,
+    /// True when it is a signed deviation from the nominal.
+    pub from_nominal: bool,
+}
+
+/// A text to look for.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Find {
+    /// A cell (table) or element text (XML) that contains this text, any case, blanks folded.
+    pub find: String,
+}
+
+/// Limits on what is read; each is named in the sentence when it is hit.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Bounds {
+    /// Bytes of the file.
+    pub file_bytes: u64,
+    /// Bytes of a workbook's parts, inflated, in total.
+    pub inflated_bytes: u64,
+    /// Rows of a table.
+    pub rows: u32,
+    /// Columns of a table.
+    pub columns: u32,
+    /// Bytes of one field, cell or element text.
+    pub text_bytes: u32,
+    /// Depth of XML elements.
+    pub depth: u32,
+}
+
+impl Default for Bounds {
+    fn default() -> Self {
+        Self {
+            file_bytes: 256 << 20,
+            inflated_bytes: 1 << 30,
+            rows: 1 << 20,
+            columns: 4096,
+            text_bytes: 64 << 10,
+            depth: 64,
+        }
+    }
+}
+
+impl Role {
+    /// The role taken whole from one place.
+    #[must_use]
+    pub fn plain(from: Cell) -> Self {
+        Self { from, find: None, spellings: BTreeMap::new() }
+    }
+}
