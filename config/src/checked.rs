@@ -3,7 +3,7 @@
 use std::path::PathBuf;
 use std::time::Duration;
 
-use restudy_engine::{Interaction, Judge, OneSided, Process};
+use restudy_engine::{Interaction, Judge, Limits, OneSided, Process};
 use restudy_parsers::Rule;
 
 /// A whole, consistent configuration.
@@ -140,17 +140,6 @@ pub struct PlanFactor {
     pub name: String,
     /// Its levels.
     pub levels: FactorLevels,
-}
-
-/// Limits on the share of tolerance, in order.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct Limits {
-    /// Above this: watch.
-    pub watch: f64,
-    /// Above this: act.
-    pub act: f64,
-    /// A limit held before stays held while share ≥ this × limit.
-    pub back_below: f64,
 }
 
 /// What the plan says about one characteristic.

@@ -7,14 +7,25 @@
 //!
 //! Invariant: what leaves this crate is consistent; nothing downstream checks it again.
 
+mod address;
 mod checked;
+mod duration;
 mod fault;
+mod folders;
+mod names;
+mod patterns;
+mod place;
+mod read;
+mod source;
+mod tables;
+mod walk;
 
 pub use checked::{
-    Appraisers, Characteristic, Config, FactorLevels, FilePatterns, Instrument, Label,
-    Limits, Mail, NoticeKind, Password, Plan, PlanFactor, Route, Site, Tls,
+    Appraisers, Characteristic, Config, FactorLevels, FilePatterns, Instrument, Label, Mail, NoticeKind, Password, Plan, PlanFactor, Route, Site, Tls,
 };
 pub use fault::Fault;
+pub use names::fold;
+pub use read::read;
 
 /// The few things that checking asks of the disk.
 pub trait Disk {

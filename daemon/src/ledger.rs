@@ -18,18 +18,19 @@ mod run;
 mod study;
 
 use std::path::{Path, PathBuf};
+use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 use std::time::Duration;
 
 use rusqlite::{Connection, OpenFlags, Transaction, TransactionBehavior};
 
 pub use account::{Accounting, RefusedExport, SetAsideRun};
-pub use export::{ExportState, NewExport};
+pub use export::{DealtWith, Digest, ExportState, NewExport, PackedExport};
 pub use file::{FileRow, Stat};
-pub use outbox::{Owed, OutboxRow};
+pub use outbox::{NewNotice, NoticeRow, OutboxRow, Owed, Tried};
 pub use readings::{Delivered, PackedReading};
 pub use round::{RoundRow, RoundState};
-pub use run::{RunRow, RunStatus, Placement};
-pub use study::{StandingRow, StudyRow};
+pub use run::{Placement, RunFacts, RunRow, RunStatus, Tally};
+pub use study::{Earlier, StudyRow};
 
 /// The schema this program writes.
 const SCHEMA: i32 = 1;
@@ -40,6 +41,23 @@ const BUSY: Duration = Duration::from_secs(10);
 /// An open ledger.
 pub struct Ledger {
     connection: Connection,
+}
+
+/// The one writer, shared by the stages.
+#[derive(Clone)]
+pub struct SharedLedger(Arc<Mutex<Ledger>>);
+
+impl SharedLedger {
+    /// Shares a ledger.
+    #[must_use]
+    pub fn new(ledger: Ledger) -> Self {
+        Self(Arc::new(Mutex::new(ledger)))
+    }
+
+    /// Waits for its turn. A panic elsewhere rolled its transaction back, so the ledger is sound.
+    pub fn lock(&self) -> MutexGuard<'_, Ledger> {
+        self.0.lock().unwrap_or_else(PoisonError::into_inner)
+    }
 }
 
 /// Why the ledger could not be opened, read or written.

@@ -1,6 +1,6 @@
 //! Random-effects analysis of variance for gauge studies.
 //!
-//! Model: readings `y = mu + sum of random effects + error`, one effect for every [`Term`] that the
+//! Model: readings `y = mu + sum of random effects + error`, one effect for every term that the
 //! [`Design`] (factors, crossed or nested) implies. From it follow degrees of freedom, sums of squares,
 //! expected mean squares, F tests, variance components and confidence limits; nothing is written out
 //! per design.
@@ -8,3 +8,38 @@
 //! Not here: files, clocks, network, chance without a seed, who measured what (labels stay with the caller).
 //!
 //! Invariant: a number is finite or absent; an absent one says why.
+
+mod basis;
+mod chance;
+mod combination;
+mod design;
+mod estimates;
+mod fault;
+mod figure;
+mod figures;
+mod mls;
+mod model;
+pub mod quantile;
+mod record;
+mod remark;
+mod root;
+mod settings;
+mod standing;
+mod study;
+mod sums;
+mod table;
+mod tails;
+mod tolerance;
+mod twofold;
+
+pub use combination::Combination;
+pub use design::{CELLS_MAX, Design, DesignError, FACTORS_MAX, Factor, PART};
+pub use fault::StudyError;
+pub use figure::{Figure, Interval, Open};
+pub use model::{Line, Model, WITHIN_CELLS};
+pub use record::{
+    Against, ChanceAbove, Component, Figures, InteractionChoice, Layout, MeanSquare, Ndc, OtherReading, Remark, Reml, Risk, Spread, Study,
+};
+pub use settings::{Interaction, Judge, Limits, OneSided, Process, Settings, Tolerance};
+pub use standing::{Standing, standing};
+pub use study::{Prepared, analyse};

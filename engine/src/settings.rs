@@ -12,7 +12,9 @@ pub enum Interaction {
 /// Tolerance of one characteristic, in reading units.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
 pub struct Tolerance {
+    /// Lower limit.
     pub lower: Option<f64>,
+    /// Upper limit.
     pub upper: Option<f64>,
     /// How a one-sided tolerance is judged; without it the share is absent.
     pub one_sided: Option<OneSided>,
@@ -34,14 +36,23 @@ pub enum OneSided {
 /// The process that risks and `ToProcessMean` refer to.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub enum Process {
-    Stated { mean: f64, sd: f64 },
+    /// Named mean and sd, in reading units.
+    Stated {
+        /// Mean of the process.
+        mean: f64,
+        /// Its sd.
+        sd: f64,
+    },
+    /// Grand mean and part sd of the study itself.
     StudyParts,
 }
 
 /// The two limits on the share of tolerance.
-#[derive(Debug, Clone, Copy, PartialEq)]
+#[derive(Debug, Clone, Copy, PartialEq, serde::Serialize, serde::Deserialize)]
 pub struct Limits {
+    /// Above this: watch.
     pub watch: f64,
+    /// Above this: act.
     pub act: f64,
     /// A limit held before stays held while share >= back_below × limit.
     pub back_below: f64,
@@ -50,6 +61,7 @@ pub struct Limits {
 /// Which figure is held against the limits.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub enum Judge {
+    /// The estimate itself.
     Estimate,
     /// The one-sided lower limit of the share at this confidence.
     Chance(f64),
@@ -64,8 +76,12 @@ pub struct Settings {
     pub confidence: f64,
     /// Multiple of the gauge sd that counts as its spread, 6.
     pub spread_sds: f64,
+    /// Interaction kept or pooled.
     pub interaction: Interaction,
+    /// The process that risks and distances refer to.
     pub process: Option<Process>,
+    /// The limits on the share; `None`: nothing is judged.
     pub limits: Option<Limits>,
+    /// The figure that is judged.
     pub judge: Judge,
 }

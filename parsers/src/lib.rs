@@ -11,9 +11,11 @@
 //! Invariant: every value field met in an export is a [`Reading`] of an accepted run or is counted
 //! in [`SetAside::readings`].
 
+mod fold;
 mod parsed;
 mod rule;
 
+pub use fold::fold;
 pub use parsed::{Parsed, Reading, Refused, Run, SetAside};
 pub use rule::{
     Bounds, Cell, Count, Find, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,

@@ -32,7 +32,8 @@ CREATE TABLE export (
   state      TEXT NOT NULL CHECK (state IN ('read', 'refused', 'no plan')),
   sentence   TEXT,                          -- why it was refused
   hint       TEXT,
-  readings   INTEGER NOT NULL               -- every reading met in it, usable or not
+  readings   INTEGER NOT NULL,              -- every reading met in it, usable or not
+  unplanned  INTEGER NOT NULL               -- of these: characteristics that the plan's list does not name
 );
 CREATE INDEX export_by_digest ON export (sha256, instrument);
 
@@ -79,11 +80,11 @@ CREATE TABLE run (
   same        TEXT NOT NULL,                -- JSON object
   taken       TEXT,                         -- civil time of the instrument
   round_label TEXT,
+  holds       TEXT NOT NULL,                -- JSON array: the characteristics it has values of
   tie         TEXT,                         -- why its deliveries contradict each other
   changed     INTEGER NOT NULL DEFAULT 0,   -- its values differ from those its closed round was worked out with
   round       INTEGER REFERENCES round(id),
-  cell        INTEGER,                      -- index of the cell, part slowest
-  slot        INTEGER,                      -- which trial of the cell, from 0
+  slot        INTEGER,                      -- which trial of its cell, from 0
   status      TEXT NOT NULL DEFAULT 'used' CHECK (status IN
     ('used', 'surplus', 'late', 'set aside', 'held', 'excluded', 'unfinished')),
   reason      TEXT,

@@ -1,0 +1,123 @@
+//! Where one role of `[instrument.read]` comes from: `{ column = "Serial no." }`.
+
+use std::collections::BTreeMap;
+
+use restudy_parsers::{Cell, Role};
+
+use crate::names::fold;
+use crate::place::{cell, is_xml_path, regex};
+use crate::walk::{Node, Table};
+
+/// What the form of the export offers to roles.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) enum Shape {
+    /// Rows and columns.
+    Table,
+    /// Elements and attributes.
+    Xml,
+    /// The form itself is faulty: any place may be right.
+    Unknown,
+}
+
+const EXPECTED: &str = "one of column, cell, label, path, xml or constant";
+
+/// A role that has no keys of its own.
+pub(crate) fn role(node: &Node<'_>, shape: Shape) -> Option<Role> {
+    let table = table(node)?;
+    let role = role_in(&table, shape);
+    table.finish();
+    role
+}
+
+/// The table of a role, to ask it for further keys.
+pub(crate) fn table<'a>(node: &Node<'a>) -> Option<Table<'a>> {
+    if node.as_text().is_some() {
+        node.fault_hint("a table that says where it comes from", format!("such as {{ column = {} }}", node.found().trim_matches('`')));
+        return None;
+    }
+    node.table("a table such as { column = \"Serial no.\" }")
+}
+
+/// The role's own keys; the table is left open for more.
+pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
+    table.later(&["columns", "letter", "sheet", "right_of", "below"]);
+    let places: Vec<(&str, Node<'_>)> =
+        ["column", "cell", "label", "path", "xml", "constant"].into_iter().filter_map(|key| Some((key, table.get(key)?))).collect();
+    let find = table.get("find").map(|node| regex(&node, 1).map(|regex| regex.as_str().to_owned()));
+    let spellings = table.get("spellings").map_or(Some(BTreeMap::new()), |node| spellings(&node));
+    let from = match places.as_slice() {
+        [(key, node)] => place(key, node, shape),
+        [] => {
+            table.place.fault("none of them", EXPECTED);
+            None
+        }
+        several => {
+            let found = several.iter().map(|(key, _)| format!("`{key}`")).collect::<Vec<_>>().join(" and ");
+            table.place.fault(found, EXPECTED);
+            None
+        }
+    };
+    let find = match find {
+        Some(written) => Some(written?),
+        None => None,
+    };
+    Some(Role { from: from?, find, spellings: spellings? })
+}
+
+fn place(key: &str, node: &Node<'_>, shape: Shape) -> Option<Cell> {
+    let in_table = ["column", "cell", "label"].contains(&key);
+    if (in_table && shape == Shape::Xml) || (key == "xml" && shape == Shape::Table) {
+        let (form, hint) = if in_table {
+            ("a place in an XML export: xml, path or constant", "`column`, `cell` and `label` need form = \"table\"")
+        } else {
+            ("a place in a table: column, cell, label, path or constant", "`xml` needs form = \"xml\"")
+        };
+        node.place.fault_hint(format!("`{key}`"), form, hint);
+        return None;
+    }
+    match key {
+        "column" => Some(Cell::Column(node.name()?.to_owned())),
+        "label" => Some(Cell::Label(node.name()?.to_owned())),
+        "constant" => Some(Cell::Constant(node.name()?.to_owned())),
+        "path" => Some(Cell::Path(regex(node, 1)?.as_str().to_owned())),
+        "cell" => {
+            let place = cell(node.text()?);
+            if place.is_none() {
+                node.fault("a cell such as \"B4\"");
+            }
+            place.map(|(row, column)| Cell::At { row, column })
+        }
+        _ => {
+            let path = node.text()?;
+            if !is_xml_path(path) {
+                node.fault_hint(
+                    "a path such as \"value\", \"@id\", \"../@part\" or \"/export/@id\"",
+                    "element names stand without a prefix, and an attribute stands last",
+                );
+                return None;
+            }
+            Some(Cell::Xml(path.to_owned()))
+        }
+    }
+}
+
+/// `{ KL = ["k.l.", "Kari"] }`, label to other spellings, turned into spelling to label.
+fn spellings(node: &Node<'_>) -> Option<BTreeMap<String, String>> {
+    let table = node.table("a table of labels, each with a list of its other spellings, such as { KL = [\"k.l.\"] }")?;
+    let mut known: BTreeMap<String, String> = BTreeMap::new();
+    let mut sound = true;
+    for (label, others) in table.named() {
+        let Some(others) = others.names("a list of other spellings") else {
+            sound = false;
+            continue;
+        };
+        for (other, place) in others {
+            if known.keys().any(|spelling| fold(spelling) == fold(other)) {
+                place.fault("a spelling of one label only");
+                sound = false;
+            }
+            known.insert(other.to_owned(), label.to_owned());
+        }
+    }
+    sound.then_some(known)
+}

@@ -1,0 +1,215 @@
+//! One characteristic's study: the engine's figures, joined with the plan's tolerance and the round before.
+//!
+//! Not here: the ledger, messages.
+//!
+//! Invariant: a panic while a study is worked out is that study's fault, never a standing.
+
+use std::panic::{AssertUnwindSafe, catch_unwind};
+
+use restudy_config::{Characteristic, Plan};
+use restudy_engine::{
+    Design, Factor, Judge, Limits, Remark, Settings, Standing, Tolerance, standing,
+};
+use restudy_parsers::fold;
+
+use crate::evidence::{Evidence, Feature};
+use crate::record::{Judgement, Record, SCHEMA};
+
+/// What became of one characteristic.
+#[derive(Debug, Clone)]
+pub struct Outcome {
+    /// Its label.
+    pub characteristic: String,
+    /// Its place in [`Evidence::features`].
+    pub feature: usize,
+    /// Named first in messages.
+    pub special: bool,
+    /// Its record, or one sentence that says why there is none.
+    pub study: Result<Box<Record>, String>,
+}
+
+impl Outcome {
+    /// Where it stands.
+    #[must_use]
+    pub fn standing(&self) -> Standing {
+        self.study.as_ref().map_or(Standing::NotJudged, |r| r.standing.now)
+    }
+
+    /// Gauge share of tolerance.
+    #[must_use]
+    pub fn share(&self) -> Option<f64> {
+        self.study.as_ref().ok()?.study.figures.gauge.share_of_tolerance.estimate
+    }
+}
+
+/// Works out every characteristic of a round; `before` gives the standing in the plan's round before.
+#[must_use]
+pub fn work_out(
+    site: &str,
+    plan: &Plan,
+    evidence: &Evidence,
+    before: &dyn Fn(&str) -> Option<Standing>,
+) -> Vec<Outcome> {
+    let listed = |label: &str| plan.characteristics.iter().find(|c| fold(&c.name) == fold(label));
+    evidence
+        .features
+        .iter()
+        .enumerate()
+        .map(|(index, feature)| {
+            let named = listed(&feature.label);
+            let before = before(&feature.label);
+            let guarded = AssertUnwindSafe(|| one(site, plan, evidence, feature, named, before));
+            let study = catch_unwind(guarded).unwrap_or_else(|panic| Err(told(&panic)));
+            Outcome {
+                characteristic: feature.label.clone(),
+                feature: index,
+                special: named.is_some_and(|c| c.special),
+                study: study.map(Box::new),
+            }
+        })
+        .collect()
+}
+
+fn told(panic: &Box<dyn std::any::Any + Send>) -> String {
+    let text = panic
+        .downcast_ref::<String>()
+        .map(String::as_str)
+        .or_else(|| panic.downcast_ref::<&str>().copied())
+        .unwrap_or("no message");
+    format!("a fault of the program stopped this study ({text}); please report it")
+}
+
+fn one(
+    site: &str,
+    plan: &Plan,
+    evidence: &Evidence,
+    feature: &Feature,
+    named: Option<&Characteristic>,
+    before: Option<Standing>,
+) -> Result<Record, String> {
+    if let Some(differs) = &feature.unit_differs {
+        return Err(differs.clone());
+    }
+    let drawing = drawing(feature, named)?;
+    let limits = named.map_or(plan.limits, |c| c.limits);
+    let settings = Settings {
+        confidence: plan.confidence,
+        spread_sds: plan.spread_sds,
+        interaction: plan.interaction,
+        process: named.and_then(|c| c.process).or(plan.process),
+        limits: Some(limits),
+        judge: plan.judge,
+    };
+    let design = design(evidence)?;
+    let tolerance = Tolerance {
+        lower: drawing.lower,
+        upper: drawing.upper,
+        one_sided: named.and_then(|c| c.one_sided),
+    };
+    let mut study =
+        restudy_engine::analyse(&design, &feature.cells, &feature.values, &tolerance, &settings)
+            .map_err(|e| e.to_string())?;
+    if let Some(differ) = feature.limits_differ.as_ref().filter(|_| drawing.from_export) {
+        study.remarks.push(Remark {
+            kind: "limits differ",
+            text: format!("{differ}; the first ones were used."),
+            figures: std::collections::BTreeMap::new(),
+        });
+    }
+    let judgement = judge(study.judged_share, &settings, limits, before, &study.figures.gauge.share_of_tolerance);
+    Ok(Record {
+        schema: SCHEMA,
+        site: Some(site.to_owned()),
+        plan: Some(plan.name.clone()),
+        round: Some(evidence.round.number),
+        revision: Some(evidence.round.revision),
+        instruments: evidence.instruments.clone(),
+        measured: evidence.measured,
+        characteristic: feature.label.clone(),
+        unit: feature.unit.clone(),
+        nominal: drawing.nominal,
+        lower: drawing.lower,
+        upper: drawing.upper,
+        study,
+        standing: judgement,
+        readings: feature.counts,
+        same: evidence.same.clone(),
+        decisions: Vec::new(),
+        source: evidence.source.clone(),
+        engine: env!("CARGO_PKG_VERSION"),
+    })
+}
+
+struct Drawing {
+    nominal: Option<f64>,
+    lower: Option<f64>,
+    upper: Option<f64>,
+    from_export: bool,
+}
+
+/// Drawing values of the plan win over the export's; a unit that differs is no drawing value.
+fn drawing(feature: &Feature, named: Option<&Characteristic>) -> Result<Drawing, String> {
+    let exported = Drawing {
+        nominal: feature.nominal,
+        lower: feature.lower,
+        upper: feature.upper,
+        from_export: true,
+    };
+    let Some(named) = named else { return Ok(exported) };
+    if named.lower.is_none() && named.upper.is_none() {
+        return Ok(Drawing { nominal: named.nominal.or(feature.nominal), ..exported });
+    }
+    if let (Some(planned), Some(found)) = (&named.unit, &feature.unit)
+        && fold(planned) != fold(found)
+    {
+        return Err(format!("the plan's limits are in {planned}, the readings in {found}"));
+    }
+    Ok(Drawing {
+        nominal: named.nominal.or(feature.nominal),
+        lower: named.lower,
+        upper: named.upper,
+        from_export: false,
+    })
+}
+
+fn design(evidence: &Evidence) -> Result<Design, String> {
+    let factors = evidence.factors.iter().filter(|f| f.name == "part" || f.levels.len() > 1);
+    let factors = factors
+        .map(|f| Factor { name: f.name.clone(), levels: f.levels.len(), within: Vec::new() })
+        .collect();
+    Design::new(factors).map_err(|e| e.to_string())
+}
+
+fn judge(
+    share: Option<f64>,
+    settings: &Settings,
+    limits: Limits,
+    before: Option<Standing>,
+    figure: &restudy_engine::Figure,
+) -> Judgement {
+    let now = standing(share, &limits, before);
+    let (judged_by, what) = match settings.judge {
+        Judge::Estimate => ("estimate", "the estimated share".to_owned()),
+        Judge::Chance(p) => ("chance", format!("the share that is exceeded with confidence {p}")),
+        Judge::Upper => ("upper", "the upper limit of the share".to_owned()),
+    };
+    let percent = |x: f64| format!("{:.1} %", 100.0 * x);
+    let why = match (share, now) {
+        (None, _) => figure.why.as_deref().unwrap_or("there is no share of tolerance").to_owned(),
+        (Some(share), Standing::Act) if share <= limits.act => format!(
+            "{what} is {}, not yet below {} × the act limit {}",
+            percent(share), limits.back_below, percent(limits.act)
+        ),
+        (Some(share), Standing::Watch) if share <= limits.watch => format!(
+            "{what} is {}, not yet below {} × the watch limit {}",
+            percent(share), limits.back_below, percent(limits.watch)
+        ),
+        (Some(share), Standing::Act) => format!("{what} is {}, above the act limit {}", percent(share), percent(limits.act)),
+        (Some(share), Standing::Watch) => format!(
+            "{what} is {}, above the watch limit {}, not above the act limit {}",
+            percent(share), percent(limits.watch), percent(limits.act)
+        ),
+        (Some(share), _) => format!("{what} is {}, not above the watch limit {}", percent(share), percent(limits.watch)),
+    };
+    Judgement { now, before, limits: Some(limits), judged_by: Some(judged_by), why }
+}

@@ -1,0 +1,196 @@
+//! What an export says, joined with what the ledger knows: new runs, copies, superseded values, ties.
+//!
+//! Model: a run's deliveries in order of arrival. The first value of a characteristic stands until a later
+//! delivery has another one; an equal value is a copy. [`tally`] works this out for the whole run each time.
+
+use std::collections::{BTreeMap, BTreeSet};
+
+use restudy_config::Plan;
+use restudy_parsers::{Parsed, Refused, Run, fold};
+
+use crate::ledger::{
+    Delivered, ExportState, LedgerError, NewExport, PackedReading, RunFacts, Tally, Write,
+};
+
+/// Records an export with its runs; answers with its number.
+///
+/// # Errors
+/// The database's refusal.
+pub fn record<'a>(
+    w: &Write<'_>,
+    new: &mut NewExport<'a>,
+    plan: Option<&Plan>,
+    outcome: &'a Result<Parsed, Refused>,
+) -> Result<i64, LedgerError> {
+    let parsed = match (outcome, plan) {
+        (Ok(parsed), Some(_)) => parsed,
+        (Ok(parsed), None) => {
+            new.state = ExportState::NoPlan;
+            new.readings = met(parsed);
+            return w.add_export(new);
+        }
+        (Err(_), None) => {
+            new.state = ExportState::NoPlan;
+            return w.add_export(new);
+        }
+        (Err(refused), Some(_)) => {
+            new.state = ExportState::Refused;
+            new.refusal = Some((&refused.sentence, refused.hint.as_deref()));
+            return w.add_export(new);
+        }
+    };
+    let listed = plan.filter(|p| p.whole_list).map(|p| {
+        p.characteristics.iter().map(|c| fold(&c.name)).collect::<BTreeSet<String>>()
+    });
+    let mut by_run: Vec<Vec<PackedReading>> = vec![Vec::new(); parsed.runs.len()];
+    let mut unplanned = 0;
+    for reading in &parsed.readings {
+        if listed.as_ref().is_some_and(|l| !l.contains(&fold(&reading.characteristic))) {
+            unplanned += 1;
+        } else {
+            by_run[reading.run].push(reading.into());
+        }
+    }
+    new.readings = met(parsed);
+    new.unplanned = unplanned;
+    let export = w.add_export(new)?;
+    for aside in &parsed.set_aside {
+        w.add_set_aside(export, aside)?;
+    }
+    let plan = plan.map_or("", |p| p.name.as_str());
+    for (run, readings) in parsed.runs.iter().zip(by_run) {
+        if !readings.is_empty() {
+            join(w, plan, new, export, run, &readings)?;
+        }
+    }
+    Ok(export)
+}
+
+fn met(parsed: &Parsed) -> usize {
+    parsed.readings.len() + parsed.set_aside.iter().map(|a| a.readings).sum::<usize>()
+}
+
+fn join(
+    w: &Write<'_>,
+    plan: &str,
+    new: &NewExport<'_>,
+    export: i64,
+    run: &Run,
+    readings: &[PackedReading],
+) -> Result<(), LedgerError> {
+    let key = key(run)?;
+    let known = w.read().run_by_key(plan, &key)?;
+    let id = match &known {
+        Some(row) => row.id,
+        None => w.add_run(plan, &key, &facts(new.instrument, run))?,
+    };
+    w.add_delivery(id, export, readings)?;
+    let counted = run.trial.is_none() && run.taken.is_some();
+    let Some(row) = known else {
+        let holds = readings.iter().map(|r| fold(&r.characteristic)).collect();
+        let alone = Delivered { export, path: new.path.to_vec(), readings: readings.to_vec() };
+        let merged = tally(&[alone], counted);
+        return w.put_tally(id, &merged.tallies, &holds, None, false);
+    };
+    let merged = tally(&w.read().deliveries(id)?, counted);
+    let holds = merged.values.keys().cloned().collect();
+    let closed = match row.place.round {
+        Some(round) => w.read().round(round)?.is_some_and(|r| r.state.closed()),
+        None => false,
+    };
+    let used = row.place.slot.is_some();
+    let changed = row.changed || (closed && used && merged.last_changed);
+    w.put_tally(id, &merged.tallies, &holds, merged.tie.as_deref(), changed)
+}
+
+/// What makes two deliveries the same run: the mapped roles, any case, blanks folded.
+fn key(run: &Run) -> Result<String, LedgerError> {
+    let optional = |text: &Option<String>| text.as_deref().map(fold);
+    let factors: BTreeMap<String, String> =
+        run.factors.iter().map(|(k, v)| (k.clone(), fold(v))).collect();
+    serde_json::to_string(&(
+        fold(&run.part),
+        optional(&run.appraiser),
+        factors,
+        optional(&run.round),
+        run.taken.map(|t| t.to_string()),
+        optional(&run.trial),
+    ))
+    .map_err(|e| LedgerError::Damaged(e.to_string()))
+}
+
+fn facts(instrument: &str, run: &Run) -> RunFacts {
+    RunFacts {
+        instrument: instrument.to_owned(),
+        part: run.part.clone(),
+        appraiser: run.appraiser.clone(),
+        trial: run.trial.clone(),
+        factors: run.factors.clone(),
+        same: run.same.clone(),
+        taken: run.taken,
+        round_label: run.round.clone(),
+    }
+}
+
+/// A run's deliveries, joined.
+pub struct Merged {
+    /// The values that stand, by folded characteristic.
+    pub values: BTreeMap<String, PackedReading>,
+    /// How each delivery counts, in order of arrival.
+    pub tallies: Vec<Tally>,
+    /// Folded characteristics with a value that a later delivery replaced, once a replacement.
+    pub replaced: Vec<String>,
+    /// Two different files claim the same counted run with different values.
+    pub tie: Option<String>,
+    /// The last delivery brought a value that was not known.
+    pub last_changed: bool,
+}
+
+/// Joins a run's deliveries; `counted`: its trial is counted by time stamp, so that another file with the same
+/// stamp and another value is a contradiction, not a correction.
+#[must_use]
+pub fn tally(deliveries: &[Delivered], counted: bool) -> Merged {
+    let mut standing: BTreeMap<String, (usize, &PackedReading)> = BTreeMap::new();
+    let mut tallies: Vec<Tally> =
+        deliveries.iter().map(|d| Tally { export: d.export, copies: 0, superseded: 0 }).collect();
+    let mut replaced = Vec::new();
+    let mut tie = None;
+    let mut last_changed = false;
+    for (index, delivered) in deliveries.iter().enumerate() {
+        last_changed = false;
+        for reading in &delivered.readings {
+            let name = fold(&reading.characteristic);
+            match standing.get(&name) {
+                Some((_, known)) if same_reading(known, reading) => tallies[index].copies += 1,
+                Some(&(holder, known)) => {
+                    if counted && deliveries[holder].path != delivered.path {
+                        tie.get_or_insert_with(|| contradiction(known, reading));
+                    }
+                    tallies[holder].superseded += 1;
+                    replaced.push(name.clone());
+                    standing.insert(name, (index, reading));
+                    last_changed = true;
+                }
+                None => {
+                    standing.insert(name, (index, reading));
+                    last_changed = true;
+                }
+            }
+        }
+    }
+    let values = standing.into_iter().map(|(name, (_, r))| (name, r.clone())).collect();
+    Merged { values, tallies, replaced, tie, last_changed }
+}
+
+fn same_reading(a: &PackedReading, b: &PackedReading) -> bool {
+    a.value == b.value
+        && (&a.unit, a.nominal, a.lower, a.upper) == (&b.unit, b.nominal, b.lower, b.upper)
+}
+
+fn contradiction(known: &PackedReading, other: &PackedReading) -> String {
+    format!(
+        "two exports with the same time stamp give `{}` as {} and as {}; trials are counted by time stamp, \
+         so one of the stamps is wrong",
+        known.characteristic, known.value, other.value
+    )
+}

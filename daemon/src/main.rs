@@ -1,0 +1,5 @@
+//! The `restudy` program.
+
+fn main() -> std::process::ExitCode {
+    restudy::cli::main()
+}

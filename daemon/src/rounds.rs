@@ -1,0 +1,204 @@
+//! Rounds: runs to cells, cells to a complete design.
+//!
+//! Model: every pass lays out all runs that no closed round holds ([`assign`](assign::assign), pure) and
+//! records the difference. A closed round changes only by a new revision, when the values of its runs did.
+//!
+//! Not here: reading exports, judging.
+
+pub mod assign;
+mod fill;
+pub mod frame;
+pub mod missing;
+
+#[cfg(test)]
+mod tests;
+
+use std::sync::Arc;
+
+use restudy_config::{Config, Plan};
+use restudy_parsers::fold;
+
+use crate::ledger::{LedgerError, Placement, RoundRow, RoundState, RunRow, SharedLedger, Write};
+use crate::now::Now;
+use assign::{Assigned, Clock, Closed, Laid};
+use frame::Frame;
+
+/// The stage that keeps rounds in step with the runs.
+pub struct Rounds {
+    ledger: SharedLedger,
+    config: Arc<Config>,
+}
+
+/// What a pass changed about one round.
+#[derive(Debug, Clone, PartialEq, Eq)]
+struct Change {
+    plan: String,
+    number: i64,
+    what: What,
+}
+
+#[derive(Debug, Clone, PartialEq, Eq)]
+enum What {
+    State(RoundState, Option<String>),
+    Revision(i64),
+}
+
+impl Rounds {
+    /// A stage on that ledger.
+    #[must_use]
+    pub fn new(ledger: SharedLedger, config: Arc<Config>) -> Self {
+        Self { ledger, config }
+    }
+
+    /// Brings every plan's rounds up to date; true when a round is owed an analysis.
+    ///
+    /// # Errors
+    /// The ledger's refusal.
+    pub fn pass(&mut self, now: Now) -> Result<bool, LedgerError> {
+        let mut owed = false;
+        for plan in &self.config.plans {
+            let changes =
+                self.ledger.lock().write(|w| reconcile(w, plan, now))?;
+            for change in &changes {
+                say(change);
+            }
+            owed |= !self.ledger.lock().read().rounds_to_analyse(&plan.name)?.is_empty();
+        }
+        Ok(owed)
+    }
+}
+
+fn say(change: &Change) {
+    let Change { plan, number, what } = change;
+    match what {
+        What::State(RoundState::Held, reason) => {
+            let reason = reason.as_deref().unwrap_or_default();
+            tracing::warn!(plan, round = number, reason, "round waits for a person");
+        }
+        What::State(RoundState::Unfinished, reason) => {
+            let reason = reason.as_deref().unwrap_or_default();
+            tracing::warn!(plan, round = number, reason, "round closed unfinished");
+        }
+        What::State(state, _) => {
+            tracing::info!(plan, round = number, "round is {}", state.as_str());
+        }
+        What::Revision(revision) => {
+            tracing::info!(plan, round = number, revision, "values of a closed round changed");
+        }
+    }
+}
+
+fn reconcile(w: &Write<'_>, plan: &Plan, now: Now) -> Result<Vec<Change>, LedgerError> {
+    let mut changes = Vec::new();
+    let rounds = w.read().rounds(&plan.name)?;
+    for round in rounds.iter().filter(|r| r.state.closed()) {
+        revise(w, round, &mut changes)?;
+    }
+    let runs = w.read().open_runs(&plan.name)?;
+    if runs.is_empty() {
+        return Ok(changes);
+    }
+    let frame = Frame::of(plan);
+    let closed: Vec<Closed> = rounds
+        .iter()
+        .filter(|r| r.state.closed())
+        .map(|r| Closed { label: r.label.clone(), through: r.through })
+        .collect();
+    let filling = |label: Option<&str>| {
+        rounds
+            .iter()
+            .find(|r| !r.state.closed() && r.label.as_deref().map(fold) == label.map(fold))
+    };
+    let opened = |label: Option<&str>| filling(label).and_then(|r| r.opened);
+    let Assigned { rounds: laid, elsewhere } =
+        assign::assign(&frame, &closed, &runs, Clock { now: now.utc }, &opened);
+
+    let mut next_number = rounds.iter().map(|r| r.number).max().unwrap_or(0) + 1;
+    let mut kept: Vec<i64> = Vec::new();
+    for laid in &laid {
+        let row = filling(laid.label.as_deref()).filter(|r| !kept.contains(&r.id)).cloned();
+        let row = match row {
+            Some(row) => row,
+            None => {
+                let id = w.add_round(&plan.name, next_number, laid.label.as_deref())?;
+                next_number += 1;
+                w.read().round(id)?.ok_or_else(|| LedgerError::Damaged("round".into()))?
+            }
+        };
+        kept.push(row.id);
+        settle_round(w, row, laid, now, &mut changes)?;
+        move_runs(w, &runs, &laid.seats, Some(kept[kept.len() - 1]))?;
+    }
+    move_runs(w, &runs, &elsewhere, None)?;
+    for lost in rounds.iter().filter(|r| !r.state.closed() && !kept.contains(&r.id)) {
+        w.drop_round(lost.id)?;
+    }
+    Ok(changes)
+}
+
+/// A closed round whose runs changed gets a revision; one without a standing has nothing to revise.
+fn revise(w: &Write<'_>, round: &RoundRow, changes: &mut Vec<Change>) -> Result<(), LedgerError> {
+    if w.take_changes(round.id)? == 0 || round.state != RoundState::Complete {
+        return Ok(());
+    }
+    if round.analysed < round.revision {
+        return Ok(());
+    }
+    let revised = RoundRow { revision: round.revision + 1, ..round.clone() };
+    w.put_round(&revised)?;
+    changes.push(Change {
+        plan: round.plan.clone(),
+        number: round.number,
+        what: What::Revision(revised.revision),
+    });
+    Ok(())
+}
+
+fn settle_round(
+    w: &Write<'_>,
+    row: RoundRow,
+    laid: &Laid,
+    now: Now,
+    changes: &mut Vec<Change>,
+) -> Result<(), LedgerError> {
+    let mut next = RoundRow { state: laid.state, reason: laid.reason.clone(), ..row.clone() };
+    if laid.state != RoundState::Pending {
+        next.opened.get_or_insert(now.utc);
+    }
+    if laid.state.closed() {
+        next.closed = Some(now.utc);
+        next.through = laid.through;
+    }
+    if next != row {
+        w.put_round(&next)?;
+    }
+    if next.state != row.state || next.reason != row.reason {
+        changes.push(Change {
+            plan: row.plan,
+            number: row.number,
+            what: What::State(laid.state, laid.reason.clone()),
+        });
+    }
+    Ok(())
+}
+
+fn move_runs(
+    w: &Write<'_>,
+    runs: &[RunRow],
+    seats: &[fill::Seat],
+    round: Option<i64>,
+) -> Result<(), LedgerError> {
+    for seat in seats {
+        let place = Placement {
+            round,
+            slot: seat.slot,
+            status: seat.status,
+            reason: seat.reason.clone(),
+        };
+        let known = runs.iter().find(|r| r.id == seat.run).map(|r| &r.place);
+        if known != Some(&place) {
+            w.place_run(seat.run, &place)?;
+        }
+    }
+    Ok(())
+}

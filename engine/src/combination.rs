@@ -1,0 +1,56 @@
+//! A sum of mean squares with exact rational weights over one common denominator.
+
+use crate::twofold::Twofold;
+
+/// `sum of numerators[q] × MS_q / denominator`.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Combination {
+    numerators: Vec<i64>,
+    denominator: usize,
+}
+
+impl Combination {
+    pub(crate) fn new(numerators: Vec<i64>, denominator: usize) -> Self {
+        Combination { numerators, denominator }
+    }
+
+    /// Whole numerators, one a mean square.
+    pub fn numerators(&self) -> &[i64] {
+        &self.numerators
+    }
+
+    /// The denominator that they share.
+    pub fn denominator(&self) -> usize {
+        self.denominator
+    }
+
+    /// The weights as the nearest f64.
+    pub fn weights(&self) -> Vec<f64> {
+        self.numerators.iter().map(|&n| n as f64 / self.denominator as f64).collect()
+    }
+
+    /// Indices of the mean squares that take part.
+    pub fn members(&self) -> impl Iterator<Item = usize> {
+        self.numerators.iter().enumerate().filter(|&(_, &n)| n != 0).map(|(q, _)| q)
+    }
+
+    /// The value for given mean squares, each product exact, the sum compensated.
+    pub fn value(&self, mean_squares: &[f64]) -> f64 {
+        let products = self.numerators.iter().zip(mean_squares).map(|(&n, &ms)| Twofold::product(n as f64, ms));
+        products.fold(Twofold::ZERO, Twofold::plus).over(self.denominator as f64).value()
+    }
+
+    pub(crate) fn plus(&self, other: &Combination) -> Combination {
+        self.joined(other, |a, b| a + b)
+    }
+
+    pub(crate) fn minus(&self, other: &Combination) -> Combination {
+        self.joined(other, |a, b| a - b)
+    }
+
+    fn joined(&self, other: &Combination, f: impl Fn(i64, i64) -> i64) -> Combination {
+        debug_assert_eq!(self.denominator, other.denominator);
+        let numerators = self.numerators.iter().zip(&other.numerators).map(|(&a, &b)| f(a, b)).collect();
+        Combination { numerators, denominator: self.denominator }
+    }
+}

@@ -1,0 +1,63 @@
+//! Why readings give no study.
+
+/// Why readings give no study. The indices are those of the slices that were handed over, from 0.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+pub enum StudyError {
+    /// Cells and values differ in number.
+    #[error("{cells} cell numbers came with {values} readings; expected one each")]
+    Lengths {
+        /// Cell numbers.
+        cells: usize,
+        /// Readings.
+        values: usize,
+    },
+    /// A cell number beyond the design.
+    #[error("reading {row} lies in cell {cell}; the design has cells 0 to {last}")]
+    NoSuchCell {
+        /// Index of the reading.
+        row: usize,
+        /// The cell it names.
+        cell: usize,
+        /// The last cell of the design.
+        last: usize,
+    },
+    /// A reading that is not a number.
+    #[error("reading {row} is {value}; expected a finite number")]
+    NotFinite {
+        /// Index of the reading.
+        row: usize,
+        /// What it is.
+        value: f64,
+    },
+    /// No readings or no trials.
+    #[error("there are no readings; expected at least one in every cell")]
+    Empty,
+    /// Cells with different numbers of readings.
+    #[error("cell {cell} ({place}) holds {count} readings; expected {expected} as in the other cells")]
+    Unbalanced {
+        /// Index of the cell.
+        cell: usize,
+        /// The cell in words, levels counted from 1.
+        place: String,
+        /// Its readings.
+        count: usize,
+        /// Readings of the other cells.
+        expected: usize,
+    },
+    /// Fewer than two parts.
+    #[error("the design has {0} part; expected at least 2, because the spread of parts is worked out too")]
+    TooFewParts(usize),
+    /// Readings spread over more orders of magnitude than squares can hold.
+    #[error("the readings differ by up to {0:e}; expected differences between 1e-140 and 1e140, or a unit in which they are")]
+    Spread(f64),
+    /// A setting out of range.
+    #[error("{setting} is {value}; expected {expected}")]
+    Setting {
+        /// Which.
+        setting: &'static str,
+        /// What it is.
+        value: f64,
+        /// What it may be.
+        expected: &'static str,
+    },
+}

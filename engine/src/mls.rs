@@ -1,0 +1,170 @@
+//! Modified-large-sample limits for sums of mean squares of any signs, and for ratios of two such sums.
+//!
+//! Mean squares are independent, `df × MS / E[MS]` chi-square. With `x_q = |c_q| MS_q`, `A` the positive and `B`
+//! the negative members, the lower limit of `g = sum c_q MS_q` is `g - √V`:
+//! ```text
+//! V = sum_A G_q² x_q² + sum_B H_s² x_s² + sum_AB [(F-1)² - G_q² F² - H_s²]/F x_q x_s + sum_(pairs in A) S_qt x_q x_t
+//! G_q = 1 - n_q/χ²(1-a; n_q)   H_s = n_s/χ²(a; n_s) - 1   F = F(1-a; n_q, n_s)
+//! S_qt = [(1 - w/χ²(1-a; w))² w²/(n_q n_t) - G_q² n_q/n_t - G_t² n_t/n_q]/(|A| - 1),  w = n_q + n_t
+//! ```
+//! `S` is left out when `B` is empty. The upper limit is minus the lower limit of `-g`.
+//!
+//! At the confidences of intervals all of `G`, `H` and `F - 1` are positive. Below about 70 % one-sided they
+//! change sign one by one; squares are then taken with their sign, so that the limit goes on falling with
+//! confidence and stays exact for a single mean square.
+//!
+//! Sources: Graybill & Wang, *J. Amer. Statist. Assoc.* 75 (1980) 869–873; Ting, Burdick, Graybill, Jeyaratnam
+//! & Lu, *J. Statist. Comput. Simul.* 35 (1990) 135–143; Gui, Graybill, Burdick & Ting, *J. Statist. Plann.
+//! Inference* 48 (1995) for ratios.
+
+use crate::quantile::{Side, chi_square, f};
+use crate::root;
+
+/// One-sided tail probability above which `G`, `H` or `F - 1` may be negative for some df ≥ 1.
+const SIGNS_CHANGE_ABOVE: f64 = 0.3;
+
+/// The constants of the formula for one list of df and one tail probability.
+#[derive(Debug, Clone)]
+pub(crate) struct Constants {
+    signs_may_change: bool,
+    df: Vec<f64>,
+    g: Vec<f64>,
+    h: Vec<f64>,
+    /// `F(1-a; df[q], df[s])` at `q × len + s`.
+    f: Vec<f64>,
+    /// `1 - w/χ²(1-a; w)` for `w = df[q] + df[s]`, at `q × len + s`.
+    joint: Vec<f64>,
+}
+
+impl Constants {
+    /// All constants at tail probability `a`.
+    pub(crate) fn all(df: &[f64], a: f64) -> Self {
+        Constants::where_needed(df, a, |_| true, |_| true)
+    }
+
+    /// Those that the lower limit with weights `c` needs.
+    pub(crate) fn for_lower(c: &[f64], df: &[f64], a: f64) -> Self {
+        Constants::where_needed(df, a, |q| c[q] > 0.0, |s| c[s] < 0.0)
+    }
+
+    fn where_needed(df: &[f64], a: f64, above: impl Fn(usize) -> bool, below: impl Fn(usize) -> bool) -> Self {
+        let len = df.len();
+        let shortfall = |n: f64| 1.0 - n / chi_square(Side::Above, a, n);
+        let g = (0..len).map(|q| if above(q) { shortfall(df[q]) } else { 0.0 }).collect();
+        let h = (0..len).map(|s| if below(s) { df[s] / chi_square(Side::Below, a, df[s]) - 1.0 } else { 0.0 }).collect();
+        let mixed = (0..len).any(&below);
+        let mut ratio = vec![0.0; len * len];
+        let mut joint = vec![0.0; len * len];
+        for q in (0..len).filter(|&q| above(q)) {
+            for s in (0..len).filter(|&s| s != q) {
+                if below(s) {
+                    ratio[q * len + s] = f(Side::Above, a, df[q], df[s]);
+                }
+                if above(s) && mixed {
+                    joint[q * len + s] = shortfall(df[q] + df[s]);
+                }
+            }
+        }
+        Constants { signs_may_change: a > SIGNS_CHANGE_ABOVE, df: df.to_vec(), g, h, f: ratio, joint }
+    }
+
+    /// One-sided lower limit of `sum c_q MS_q`; may be negative.
+    pub(crate) fn lower(&self, c: &[f64], ms: &[f64]) -> f64 {
+        let len = self.df.len();
+        let largest = c.iter().zip(ms).map(|(c, ms)| (c * ms).abs()).fold(0.0, f64::max);
+        if largest == 0.0 {
+            return 0.0;
+        }
+        let members = c.iter().filter(|&&c| c > 0.0).count();
+        let mixed = c.iter().any(|&c| c < 0.0);
+        let x = |q: usize| c[q].abs() * ms[q] / largest;
+        let mut v = 0.0;
+        for q in 0..len {
+            let xq = x(q);
+            if c[q] < 0.0 {
+                v += signed_square(self.h[q]) * xq * xq;
+            }
+            if c[q] <= 0.0 {
+                continue;
+            }
+            v += signed_square(self.g[q]) * xq * xq;
+            for s in 0..len {
+                if c[s] < 0.0 {
+                    v += self.across(q, s) * xq * x(s);
+                } else if mixed && s > q && c[s] > 0.0 {
+                    v += self.alike(q, s) / (members - 1) as f64 * xq * x(s);
+                }
+            }
+        }
+        let g: f64 = c.iter().zip(ms).map(|(c, ms)| c * ms / largest).sum();
+        let root = if v >= 0.0 {
+            v.sqrt()
+        } else if self.signs_may_change {
+            -(-v).sqrt()
+        } else {
+            0.0
+        };
+        (g - root) * largest
+    }
+
+    /// One-sided upper limit of `sum c_q MS_q`; may be negative.
+    pub(crate) fn upper(&self, c: &[f64], ms: &[f64]) -> f64 {
+        let negated: Vec<f64> = c.iter().map(|c| -c).collect();
+        -self.lower(&negated, ms)
+    }
+
+    fn across(&self, q: usize, s: usize) -> f64 {
+        let f = self.f[q * self.df.len() + s];
+        (signed_square(f - 1.0) - signed_square(self.g[q]) * f * f - signed_square(self.h[s])) / f
+    }
+
+    fn alike(&self, q: usize, t: usize) -> f64 {
+        let (n, m) = (self.df[q], self.df[t]);
+        let w = n + m;
+        let joint = signed_square(self.joint[q * self.df.len() + t]);
+        joint * w * w / (n * m) - signed_square(self.g[q]) * n / m - signed_square(self.g[t]) * m / n
+    }
+
+    /// Limits of `numerator / denominator` at zero or above; the upper one may be infinite.
+    ///
+    /// `None` when the denominator's estimate is not above zero.
+    pub(crate) fn ratio(&self, numerator: &[f64], denominator: &[f64], ms: &[f64]) -> Option<(f64, f64)> {
+        let value = |c: &[f64]| -> f64 { c.iter().zip(ms).map(|(c, ms)| c * ms).sum() };
+        if value(denominator) <= 0.0 {
+            return None;
+        }
+        let estimate = value(numerator) / value(denominator);
+        let difference = |rho: f64| -> Vec<f64> { numerator.iter().zip(denominator).map(|(n, d)| n - rho * d).collect() };
+        let lower_at = |rho: f64| self.lower(&difference(rho), ms);
+        let upper_at = |rho: f64| self.upper(&difference(rho), ms);
+
+        let lower = if estimate > 0.0 && lower_at(0.0) > 0.0 { root::between(lower_at, 0.0, estimate) } else { 0.0 };
+        let upper = if self.lower(denominator, ms) <= 0.0 {
+            f64::INFINITY
+        } else if upper_at(0.0) > 0.0 {
+            let mut end = estimate.max(1e-6);
+            while upper_at(end) > 0.0 && end.is_finite() {
+                end *= 2.0;
+            }
+            if end.is_finite() { root::between(upper_at, estimate.max(0.0), end) } else { f64::INFINITY }
+        } else {
+            0.0
+        };
+        Some((lower, upper))
+    }
+}
+
+/// One-sided lower limit of `sum c_q MS_q` at the confidence whose log odds are given; a confidence below one
+/// half is the upper limit at the rest.
+pub(crate) fn lower_at_log_odds(c: &[f64], df: &[f64], ms: &[f64], log_odds: f64) -> f64 {
+    let tail = 1.0 / (1.0 + log_odds.abs().exp());
+    if log_odds >= 0.0 {
+        return Constants::for_lower(c, df, tail).lower(c, ms);
+    }
+    let negated: Vec<f64> = c.iter().map(|c| -c).collect();
+    -Constants::for_lower(&negated, df, tail).lower(&negated, ms)
+}
+
+fn signed_square(x: f64) -> f64 {
+    x * x.abs()
+}

@@ -1,0 +1,273 @@
+//! From readings to a study.
+
+use std::sync::OnceLock;
+
+use crate::basis::Basis;
+use crate::chance;
+use crate::combination::Combination;
+use crate::design::Design;
+use crate::estimates::Estimates;
+use crate::fault::StudyError;
+use crate::figures::Evidence;
+use crate::model::Model;
+use crate::record::{ChanceAbove, InteractionChoice, Layout, OtherReading, Study};
+use crate::remark;
+use crate::settings::{Interaction, Judge, Settings, Tolerance};
+use crate::sums::{Sums, Sweep};
+use crate::table::Table;
+use crate::tolerance::Share;
+
+/// Differences between readings that squares can hold.
+const SPREAD: std::ops::RangeInclusive<f64> = 1e-140..=1e140;
+
+/// Works out one study: `cells[i]` is the cell of `values[i]`, readings of one cell are its trials.
+///
+/// The order of rows changes nothing.
+///
+/// # Errors
+/// [`StudyError`] when the readings do not fill the design evenly, are not finite, or settings are out of range.
+pub fn analyse(design: &Design, cells: &[usize], values: &[f64], tolerance: &Tolerance, settings: &Settings) -> Result<Study, StudyError> {
+    let counts = counts(design, cells, values)?;
+    Prepared::new(design, usual(&counts), settings)?.study(cells, values, tolerance)
+}
+
+/// A design with everything that does not depend on the readings, shared by all its characteristics.
+#[derive(Debug)]
+pub struct Prepared {
+    design: Design,
+    trials: usize,
+    settings: Settings,
+    sweep: Sweep,
+    kept: Basis,
+    /// All interaction terms pooled; absent when there are none.
+    pooled: Option<Pooled>,
+}
+
+#[derive(Debug)]
+struct Pooled {
+    model: Model,
+    basis: OnceLock<Basis>,
+}
+
+impl Prepared {
+    /// Prepares a design with a number of trials for studies under some settings.
+    ///
+    /// # Errors
+    /// [`StudyError`] for fewer than two parts, no trials, or settings out of range.
+    pub fn new(design: &Design, trials: usize, settings: &Settings) -> Result<Prepared, StudyError> {
+        check(settings)?;
+        let parts = design.factors()[design.part()].levels;
+        if parts < 2 {
+            return Err(StudyError::TooFewParts(parts));
+        }
+        if trials == 0 {
+            return Err(StudyError::Empty);
+        }
+        let kept = Basis::new(Model::estimable(design, trials), settings);
+        let interactions = kept.model.interactions();
+        let pooled = (!interactions.is_empty()).then(|| kept.model.without(design, &interactions));
+        Ok(Prepared {
+            design: design.clone(),
+            trials,
+            settings: *settings,
+            sweep: Sweep::new(design, trials),
+            kept,
+            pooled: pooled.map(|model| Pooled { model, basis: OnceLock::new() }),
+        })
+    }
+
+    /// Works out one characteristic; see [`analyse`].
+    ///
+    /// # Errors
+    /// [`StudyError`] when the readings do not fill the design with the prepared number of trials.
+    pub fn study(&self, cells: &[usize], values: &[f64], tolerance: &Tolerance) -> Result<Study, StudyError> {
+        let readings = self.by_cell(cells, values)?;
+        let sums = self.sweep.sums(&readings);
+        let share = Share::of(tolerance, &self.settings, sums.grand_mean);
+        match self.partly_pooled(&sums) {
+            None => Ok(self.record(&self.kept, &sums, &share)),
+            Some(model) => match &self.pooled {
+                Some(pooled) if pooled.model == model => {
+                    let basis = pooled.basis.get_or_init(|| Basis::new(model, &self.settings));
+                    Ok(self.record(basis, &sums, &share))
+                }
+                _ => Ok(self.record(&Basis::new(model, &self.settings), &sums, &share)),
+            },
+        }
+    }
+
+    /// The model after pooling, largest interaction first; `None` when nothing is pooled.
+    fn partly_pooled(&self, sums: &Sums) -> Option<Model> {
+        let Interaction::PoolAbove(limit) = self.settings.interaction else { return None };
+        let mut model: Option<Model> = None;
+        loop {
+            let now = model.as_ref().unwrap_or(&self.kept.model);
+            let table = Table::new(now, sums);
+            let above = |line: usize| table.test(line).is_some_and(|t| t.p > limit);
+            let drop = now.interactions().into_iter().find(|&line| now.is_outermost(line) && above(line));
+            let Some(line) = drop else { return model };
+            model = Some(now.without(&self.design, &[line]));
+        }
+    }
+
+    fn record(&self, basis: &Basis, sums: &Sums, share: &Share) -> Study {
+        let model = &basis.model;
+        let table = Table::new(model, sums);
+        let total = sums.total();
+        let components: Vec<Combination> = (0..model.lines().len()).map(|i| model.component(i)).collect();
+        let estimates = Estimates::new(model, &components, &table.ms);
+        let evidence = Evidence {
+            basis,
+            ms: &table.ms,
+            estimates: &estimates,
+            share,
+            confidence: self.settings.confidence,
+            all_equal: total == 0.0,
+        };
+        let components = evidence.components();
+        let figures = evidence.figures();
+        let part_to_gauge = evidence.part_to_gauge();
+        let judged = &figures.gauge.share_of_tolerance;
+        Study {
+            tolerance_rule: share.rule,
+            design: self.layout(),
+            method: "anova",
+            confidence: self.settings.confidence,
+            spread_sds: self.settings.spread_sds,
+            interaction: self.interaction(model, sums, share),
+            mean_squares: table.lines(total),
+            reml: None,
+            ndc: evidence.ndc(&part_to_gauge),
+            risk: None,
+            chance_above: self.chance_above(basis, &table.ms, share, judged.estimate.is_some()),
+            remarks: remark::outside_limits(&components, &figures, &part_to_gauge),
+            draws: None,
+            seed: None,
+            grand_mean: sums.grand_mean,
+            judged_share: match self.settings.judge {
+                Judge::Estimate => judged.estimate,
+                Judge::Chance(_) => judged.estimate.and_then(|_| evidence.judged_lower()),
+                Judge::Upper => judged.upper,
+            },
+            components,
+            figures,
+            part_to_gauge,
+        }
+    }
+
+    fn layout(&self) -> Layout {
+        let cells = self.design.cells();
+        Layout {
+            factors: self.design.factors().to_vec(),
+            trials: self.trials,
+            cells,
+            readings: cells * self.trials,
+            missing: 0,
+            balanced: true,
+        }
+    }
+
+    fn interaction(&self, chosen: &Model, sums: &Sums, share: &Share) -> InteractionChoice {
+        let full = &self.kept.model;
+        let largest = full.interactions().first().copied();
+        let nothing_pooled = chosen == full;
+        let other = if nothing_pooled { self.pooled.as_ref().map(|p| &p.model) } else { Some(full) };
+        InteractionChoice {
+            kept: !chosen.interactions().is_empty(),
+            p: largest.and_then(|line| Table::new(full, sums).test(line)).map(|t| t.p),
+            pool_above: match self.settings.interaction {
+                Interaction::Keep => None,
+                Interaction::PoolAbove(p) => Some(p),
+            },
+            other_reading: other.map(|model| other_reading(model, sums, share)),
+        }
+    }
+
+    fn chance_above(&self, basis: &Basis, ms: &[f64], share: &Share, judged: bool) -> ChanceAbove {
+        let (Some(limits), Ok(per_sd), Some(gauge)) = (self.settings.limits, &share.per_sd, &basis.quantities.gauge) else {
+            return ChanceAbove::default();
+        };
+        let weights = gauge.weights();
+        let vanishes = gauge.members().all(|q| ms[q] == 0.0);
+        let above = |limit: f64| {
+            let variance = (limit / per_sd).powi(2);
+            (judged && !vanishes).then(|| chance::above(variance, &weights, &basis.df, ms))
+        };
+        ChanceAbove { watch: above(limits.watch), act: above(limits.act) }
+    }
+
+    /// The readings cell by cell, ascending within each.
+    fn by_cell(&self, cells: &[usize], values: &[f64]) -> Result<Vec<f64>, StudyError> {
+        let counts = counts(&self.design, cells, values)?;
+        if let Some((cell, &count)) = counts.iter().enumerate().find(|&(_, &count)| count != self.trials) {
+            return Err(StudyError::Unbalanced { cell, place: self.design.cell_in_words(cell), count, expected: self.trials });
+        }
+        let mut next: Vec<usize> = (0..counts.len()).map(|cell| cell * self.trials).collect();
+        let mut readings = vec![0.0; values.len()];
+        for (&cell, &value) in cells.iter().zip(values) {
+            readings[next[cell]] = value;
+            next[cell] += 1;
+        }
+        readings.chunks_exact_mut(self.trials).for_each(|cell| cell.sort_by(f64::total_cmp));
+        let spread = readings.iter().map(|y| (y - readings[0]).abs()).fold(0.0, f64::max);
+        if spread != 0.0 && !SPREAD.contains(&spread) {
+            return Err(StudyError::Spread(spread));
+        }
+        Ok(readings)
+    }
+}
+
+fn other_reading(model: &Model, sums: &Sums, share: &Share) -> OtherReading {
+    let table = Table::new(model, sums);
+    let components: Vec<Combination> = (0..model.lines().len()).map(|i| model.component(i)).collect();
+    let gauge_sd = Estimates::new(model, &components, &table.ms).gauge.map(f64::sqrt);
+    let per_sd = share.per_sd.as_ref().ok().filter(|_| sums.total() > 0.0);
+    OtherReading { gauge_sd, share_of_tolerance: gauge_sd.zip(per_sd).map(|(sd, per_sd)| sd * per_sd) }
+}
+
+fn counts(design: &Design, cells: &[usize], values: &[f64]) -> Result<Vec<usize>, StudyError> {
+    if cells.len() != values.len() {
+        return Err(StudyError::Lengths { cells: cells.len(), values: values.len() });
+    }
+    if values.is_empty() {
+        return Err(StudyError::Empty);
+    }
+    let mut counts = vec![0; design.cells()];
+    for (row, (&cell, &value)) in cells.iter().zip(values).enumerate() {
+        let Some(count) = counts.get_mut(cell) else {
+            return Err(StudyError::NoSuchCell { row, cell, last: design.cells() - 1 });
+        };
+        if !value.is_finite() {
+            return Err(StudyError::NotFinite { row, value });
+        }
+        *count += 1;
+    }
+    Ok(counts)
+}
+
+/// The count that most cells have; of equally frequent ones the largest.
+fn usual(counts: &[usize]) -> usize {
+    let largest = counts.iter().copied().max().unwrap_or(0);
+    let mut cells_with = vec![0; largest + 1];
+    counts.iter().for_each(|&count| cells_with[count] += 1);
+    (1..=largest).max_by_key(|&count| cells_with[count]).unwrap_or(0)
+}
+
+fn check(settings: &Settings) -> Result<(), StudyError> {
+    let fault = |setting, value, expected| Err(StudyError::Setting { setting, value, expected });
+    if !(settings.confidence >= 0.5 && settings.confidence < 1.0) {
+        return fault("the confidence", settings.confidence, "at least 0.5 and below 1");
+    }
+    if !(settings.spread_sds > 0.0 && settings.spread_sds.is_finite()) {
+        return fault("the multiple of the gauge sd", settings.spread_sds, "a number above 0, such as 6");
+    }
+    if let Judge::Chance(p) = settings.judge
+        && !(p > 0.0 && p < 1.0)
+    {
+        return fault("the confidence that judges", p, "between 0 and 1");
+    }
+    match settings.interaction {
+        Interaction::PoolAbove(p) if !(0.0..=1.0).contains(&p) => fault("the p above which the interaction is pooled", p, "from 0 to 1"),
+        _ => Ok(()),
+    }
+}

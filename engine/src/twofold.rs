@@ -1,0 +1,57 @@
+//! Numbers of twice the precision of f64, as an unevaluated sum of two.
+//!
+//! Sums of squares of readings that differ in the last digits only need their means to more digits than
+//! a reading has. Source: Dekker, *Numerische Mathematik* 18 (1971) 224–242; Knuth's two-sum.
+
+/// `head + tail`, `tail` at most half a unit in the last place of `head`.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(crate) struct Twofold {
+    head: f64,
+    tail: f64,
+}
+
+impl Twofold {
+    pub(crate) const ZERO: Twofold = Twofold { head: 0.0, tail: 0.0 };
+
+    /// `a - b` without rounding.
+    pub(crate) fn difference(a: f64, b: f64) -> Twofold {
+        Twofold::sum(a, -b)
+    }
+
+    /// `a + b` without rounding.
+    fn sum(a: f64, b: f64) -> Twofold {
+        let head = a + b;
+        let shadow = head - a;
+        Twofold { head, tail: (a - (head - shadow)) + (b - shadow) }
+    }
+
+    /// `a × b` without rounding.
+    pub(crate) fn product(a: f64, b: f64) -> Twofold {
+        let head = a * b;
+        Twofold { head, tail: a.mul_add(b, -head) }
+    }
+
+    pub(crate) fn plus(self, other: Twofold) -> Twofold {
+        let sum = Twofold::sum(self.head, other.head);
+        Twofold::sum(sum.head, sum.tail + (self.tail + other.tail))
+    }
+
+    pub(crate) fn minus(self, other: Twofold) -> Twofold {
+        self.plus(Twofold { head: -other.head, tail: -other.tail })
+    }
+
+    pub(crate) fn over(self, divisor: f64) -> Twofold {
+        let head = self.head / divisor;
+        let rest = (-head).mul_add(divisor, self.head) + self.tail;
+        Twofold::sum(head, rest / divisor)
+    }
+
+    pub(crate) fn squared(self) -> Twofold {
+        let square = Twofold::product(self.head, self.head);
+        Twofold::sum(square.head, square.tail + 2.0 * self.head * self.tail)
+    }
+
+    pub(crate) fn value(self) -> f64 {
+        self.head + self.tail
+    }
+}

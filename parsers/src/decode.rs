@@ -1,0 +1,176 @@
+//! Bytes to text: byte-order mark, then strict UTF-8, then the encoding that the rule names. Nothing
+//! is guessed, and damage is an error, never a replacement character.
+//!
+//! Invariant: decoded text holds no control characters but tab, line ends and form feed.
+
+use std::borrow::Cow;
+
+use encoding_rs::{Encoding, UTF_8, UTF_16BE, UTF_16LE};
+
+use crate::parsed::Refused;
+
+/// The end-of-file mark that old exporters append.
+const CONTROL_Z: char = '\u{1a}';
+/// Bytes in which an XML declaration must end.
+const DECLARATION_MAX: usize = 1024;
+
+/// Decodes a whole export.
+///
+/// `declared` is what the text says of itself (XML), `named` what the rule says.
+pub(crate) fn decode<'a>(
+    bytes: &'a [u8],
+    declared: Option<&'static Encoding>,
+    named: Option<&'static Encoding>,
+) -> Result<Cow<'a, str>, Refused> {
+    let text = match Encoding::for_bom(bytes) {
+        Some((encoding, mark)) => with(encoding, &bytes[mark..])?,
+        None => match declared.or(named.filter(|encoding| !encoding.is_ascii_compatible())) {
+            Some(encoding) => with(encoding, bytes)?,
+            None => match (std::str::from_utf8(bytes), named) {
+                (Ok(text), _) => Cow::Borrowed(text),
+                (Err(_), Some(encoding)) if encoding != UTF_8 => with(encoding, bytes)?,
+                (Err(why), _) => return Err(not_utf8(bytes, why)),
+            },
+        },
+    };
+    checked(text)
+}
+
+/// The encoding that an XML declaration names, or that the first bytes of one betray.
+pub(crate) fn declared(bytes: &[u8]) -> Option<&'static Encoding> {
+    match bytes {
+        [b'<', 0, b'?', 0, ..] => return Some(UTF_16LE),
+        [0, b'<', 0, b'?', ..] => return Some(UTF_16BE),
+        _ => {}
+    }
+    let head = &bytes[..bytes.len().min(DECLARATION_MAX)];
+    let head = head.strip_prefix(b"<?xml")?;
+    let declaration = &head[..head.iter().position(|&b| b == b'>')?];
+    let declaration = std::str::from_utf8(declaration).ok()?;
+    let (_, rest) = declaration.split_once("encoding")?;
+    let rest = rest.trim_start().strip_prefix('=')?.trim_start();
+    let quote = rest.chars().next().filter(|c| matches!(c, '"' | '\''))?;
+    let label = rest[1..].split(quote).next()?;
+    let encoding = Encoding::for_label_no_replacement(label.as_bytes())?;
+    // The declaration was read byte by byte: it cannot be in an encoding of two bytes a character.
+    (encoding.is_ascii_compatible() && encoding != UTF_8).then_some(encoding)
+}
+
+fn with<'a>(encoding: &'static Encoding, bytes: &'a [u8]) -> Result<Cow<'a, str>, Refused> {
+    if encoding == UTF_8 {
+        return std::str::from_utf8(bytes).map(Cow::Borrowed).map_err(|why| not_utf8(bytes, why));
+    }
+    encoding.decode_without_bom_handling_and_without_replacement(bytes).ok_or_else(|| {
+        let odd = (encoding == UTF_16LE || encoding == UTF_16BE) && bytes.len() % 2 == 1;
+        Refused {
+            sentence: format!("the file is not whole text in the encoding {}", encoding.name()),
+            hint: Some("name the encoding that the instrument writes with `encoding`".to_owned()),
+            perhaps_unfinished: odd,
+        }
+    })
+}
+
+fn not_utf8(bytes: &[u8], why: std::str::Utf8Error) -> Refused {
+    let at = why.valid_up_to();
+    if nul_tail(bytes) {
+        return nuls();
+    }
+    Refused {
+        sentence: format!(
+            "byte {} (0x{:02X}) is not UTF-8 text, and nothing names another encoding",
+            at + 1,
+            bytes.get(at).copied().unwrap_or(0)
+        ),
+        hint: Some(
+            "if this is text, name its encoding, as in `encoding = \"windows-1252\"`".to_owned(),
+        ),
+        perhaps_unfinished: why.error_len().is_none(),
+    }
+}
+
+fn nul_tail(bytes: &[u8]) -> bool {
+    bytes.ends_with(&[0, 0]) || bytes == [0]
+}
+
+fn nuls() -> Refused {
+    Refused {
+        sentence: "the file ends in NUL bytes, as one does that is still being written".to_owned(),
+        hint: None,
+        perhaps_unfinished: true,
+    }
+}
+
+fn checked(text: Cow<'_, str>) -> Result<Cow<'_, str>, Refused> {
+    if text.trim().is_empty() {
+        return Err(Refused::unfinished("the file holds nothing but blanks"));
+    }
+    let kept = text.trim_end_matches(CONTROL_Z).len();
+    let odd = text[..kept].char_indices().find(|(_, c)| {
+        c.is_ascii_control() && !matches!(c, '\t' | '\n' | '\r' | '\u{c}')
+    });
+    match odd {
+        Some((_, '\0')) if text.ends_with('\0') => Err(nuls()),
+        Some((at, found)) => Err(Refused {
+            sentence: format!(
+                "line {}: the control character U+{:04X} does not belong in text",
+                1 + text[..at].matches('\n').count(),
+                u32::from(found)
+            ),
+            hint: (found == '\0').then(|| {
+                "if this is UTF-16 without a byte-order mark, set `encoding = \"utf-16le\"`".to_owned()
+            }),
+            perhaps_unfinished: false,
+        }),
+        None => Ok(match text {
+            Cow::Borrowed(text) => Cow::Borrowed(&text[..kept]),
+            Cow::Owned(mut text) => {
+                text.truncate(kept);
+                Cow::Owned(text)
+            }
+        }),
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use encoding_rs::WINDOWS_1252;
+
+    fn refused(bytes: &[u8]) -> (String, bool) {
+        let refused = decode(bytes, None, None).unwrap_err();
+        (refused.sentence, refused.perhaps_unfinished)
+    }
+
+    #[test]
+    fn marks_and_names_decide() {
+        assert_eq!(decode(b"\xef\xbb\xbf\xc2\xb5m", None, None).unwrap(), "µm");
+        assert_eq!(decode(b"\xff\xfe\xb5\0m\0", None, None).unwrap(), "µm");
+        assert_eq!(decode(b"\xfe\xff\0\xb5\0m", None, None).unwrap(), "µm");
+        assert_eq!(decode(b"\xb5m", None, Some(WINDOWS_1252)).unwrap(), "µm");
+        assert_eq!(decode("µm".as_bytes(), None, Some(WINDOWS_1252)).unwrap(), "µm");
+        assert_eq!(decode(b"\xb5\0m\0", None, Some(UTF_16LE)).unwrap(), "µm");
+        assert_eq!(decode(b"part\r\n\x1a", None, None).unwrap(), "part\r\n");
+    }
+
+    #[test]
+    fn damage_is_refused_and_a_cut_file_is_told_apart() {
+        assert!(refused(b"a\xb5m").0.contains("byte 2 (0xB5) is not UTF-8"));
+        assert!(!refused(b"a\xb5m").1);
+        assert!(refused(b"a\xc2").1);
+        assert!(refused(b"\xff\xfea\0b").1);
+        assert!(refused(b"part,value\n1,2\0\0\0\0").1);
+        assert!(refused(b" \r\n ").1);
+        assert!(!refused(b"p\0a\0r\0t").1);
+        assert!(refused(b"a\nb\x01c").0.starts_with("line 2: the control character U+0001"));
+    }
+
+    #[test]
+    fn an_xml_declaration_is_read_up_to_its_end() {
+        let of = |bytes: &[u8]| declared(bytes).map(Encoding::name);
+        assert_eq!(of(b"<?xml version='1.0' encoding='ISO-8859-1'?><a/>"), Some("windows-1252"));
+        assert_eq!(of(b"<?xml version=\"1.0\" encoding=\"UTF-16\"?>"), None);
+        assert_eq!(of(b"<?xml version=\"1.0\"?><a encoding=\"latin1\"/>"), None);
+        assert_eq!(of(b"<\0?\0x\0m\0l\0"), Some("UTF-16LE"));
+        assert_eq!(of(b"<?xml encoding"), None);
+    }
+}

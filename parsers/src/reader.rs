@@ -1,0 +1,329 @@
+//! A rule, checked and compiled once, and the way from an export's bytes to its content.
+
+use std::borrow::Cow;
+
+use encoding_rs::Encoding;
+
+use crate::decode;
+use crate::delimited;
+use crate::grid::{Content, Field, Grid, Place};
+use crate::kind::Kind;
+use crate::moment::Clock;
+use crate::names::{key, shorten};
+use crate::no_value::NoValue;
+use crate::parsed::{Parsed, Refused};
+use crate::rule::{Bounds, Count, Form, Header, Limit, Role, Rule, Sheet, Trial};
+use crate::source::{Source, Where, first_group};
+use crate::table;
+use crate::workbook;
+use crate::xml;
+use crate::xml_path::XmlPath;
+use crate::Export;
+
+/// A rule that no export can be read with.
+#[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
+#[error("{role}: {what}")]
+pub struct RuleError {
+    /// The role or key of the rule.
+    pub role: String,
+    /// What is wrong with it.
+    pub what: String,
+}
+
+impl RuleError {
+    pub(crate) fn new(role: &str, what: impl Into<String>) -> Self {
+        Self { role: role.to_owned(), what: what.into() }
+    }
+}
+
+/// A rule made ready: regexes compiled, paths resolved, labels of encodings and zones looked up.
+#[derive(Debug, Clone)]
+pub struct Reader {
+    pub(crate) roles: Roles,
+    shape: Shape,
+    encoding: Option<&'static Encoding>,
+    pub(crate) bounds: Bounds,
+}
+
+/// Every role of a rule once, in `sources`; the other fields are places in that list.
+#[derive(Debug, Clone)]
+pub(crate) struct Roles {
+    pub(crate) sources: Vec<Source>,
+    pub(crate) part: usize,
+    pub(crate) appraiser: Option<usize>,
+    pub(crate) trial: TrialBy,
+    pub(crate) taken: Option<(usize, Clock)>,
+    pub(crate) round: Option<usize>,
+    pub(crate) characteristic: Option<usize>,
+    pub(crate) value: usize,
+    pub(crate) unit: Option<usize>,
+    pub(crate) nominal: Option<usize>,
+    pub(crate) lower: Option<LimitAt>,
+    pub(crate) upper: Option<LimitAt>,
+    pub(crate) factors: Vec<(String, usize)>,
+    pub(crate) same: Vec<(String, usize)>,
+    pub(crate) decimal: char,
+    pub(crate) no_value: NoValue,
+    /// Keyed text that ends the export.
+    pub(crate) end: Option<End>,
+}
+
+/// The text that ends an export.
+#[derive(Debug, Clone)]
+pub(crate) struct End {
+    /// As the rule writes it.
+    pub(crate) text: String,
+    /// Folded for comparing.
+    pub(crate) key: String,
+}
+
+/// How trials are told apart.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) enum TrialBy {
+    /// By the label of that source.
+    Label(usize),
+    /// By order within the export.
+    Order,
+    /// Not here.
+    Nothing,
+}
+
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct LimitAt {
+    pub(crate) source: usize,
+    pub(crate) from_nominal: bool,
+}
+
+#[derive(Debug, Clone)]
+enum Shape {
+    Table { sheet: Sheet, header: Header, delimiter: Option<u8> },
+    Xml { each: XmlPath },
+}
+
+impl Reader {
+    /// Compiles a rule.
+    ///
+    /// # Errors
+    /// A regex, path, encoding, zone or delimiter that cannot be used, a role that does not fit the
+    /// form, a limit from a nominal that is not there.
+    pub fn new(rule: &Rule) -> Result<Self, RuleError> {
+        if !matches!(rule.decimal, '.' | ',') {
+            return Err(RuleError::new("decimal", format!("`{}` is neither `.` nor `,`", rule.decimal)));
+        }
+        let encoding = match &rule.encoding {
+            None => None,
+            Some(label) => Some(Encoding::for_label_no_replacement(label.as_bytes()).ok_or_else(
+                || RuleError::new("encoding", format!("`{}` names no encoding", shorten(label))),
+            )?),
+        };
+        let shape = Shape::new(&rule.form, rule.decimal)?;
+        Ok(Self { roles: Roles::new(rule, shape.each())?, shape, encoding, bounds: rule.bounds })
+    }
+
+    /// Reads one export.
+    ///
+    /// # Errors
+    /// [`Refused`] when nothing of the export can be used: what was found, where, what was expected.
+    pub fn read(&self, export: Export<'_>) -> Result<Parsed, Refused> {
+        let kind = Kind::of(export.bytes, &self.bounds)?;
+        let once = self.once(export.path)?;
+        match &self.shape {
+            Shape::Table { sheet, header, delimiter } => {
+                let grid = match kind {
+                    Kind::Text => {
+                        let text = self.text(export.bytes)?;
+                        let delimiter = delimited::delimiter(&text, *delimiter, self.roles.decimal);
+                        delimited::grid(&text, delimiter, &self.bounds)?
+                    }
+                    workbook_kind => {
+                        workbook::grid(export.bytes, workbook_kind, sheet, &self.bounds)?
+                    }
+                };
+                self.read_grid(&grid, header, once)
+            }
+            Shape::Xml { each } => match kind {
+                Kind::Text => xml::read(&self.text(export.bytes)?, self, each, once),
+                _ => Err(Refused::new("this is a workbook; this instrument's exports are XML")),
+            },
+        }
+    }
+
+    pub(crate) fn read_grid(
+        &self,
+        grid: &Grid,
+        header: &Header,
+        once: Vec<Option<Content>>,
+    ) -> Result<Parsed, Refused> {
+        table::read(grid, header, &self.roles, &once)
+    }
+
+    fn text<'a>(&self, bytes: &'a [u8]) -> Result<Cow<'a, str>, Refused> {
+        let declared = match self.shape {
+            Shape::Xml { .. } => decode::declared(bytes),
+            Shape::Table { .. } => None,
+        };
+        let text = decode::decode(bytes, declared, self.encoding)?;
+        let is_markup = text.trim_start().starts_with("<?xml");
+        if is_markup && matches!(self.shape, Shape::Table { .. }) {
+            return Err(Refused::new("this is XML; this instrument's exports are tables"));
+        }
+        Ok(text)
+    }
+
+    /// Contents that hold for the whole export whatever its form: by source, `None` where the form
+    /// must look.
+    pub(crate) fn once(&self, path: &str) -> Result<Vec<Option<Content>>, Refused> {
+        let sources = &self.roles.sources;
+        sources
+            .iter()
+            .map(|source| match &source.from {
+                Where::Constant(content) => Ok(Some(content.clone())),
+                Where::Path(regex) => match first_group(regex, path) {
+                    Some(found) => Ok(Some(Content::Text(found.into()))),
+                    None => Err(Refused::new(format!(
+                        "nothing in the export's path matches `{regex}`, where the {} should stand",
+                        source.role
+                    ))),
+                },
+                Where::Column(_) | Where::At { .. } | Where::Label(_) | Where::Xml(_) => Ok(None),
+            })
+            .collect()
+    }
+}
+
+impl Source {
+    /// The field of a content that [`Reader::once`] found.
+    pub(crate) fn once_field<'a>(&self, content: &'a Content) -> Field<'a> {
+        let place = match self.from {
+            Where::Path(_) => Place::Path,
+            _ => Place::Rule,
+        };
+        Field { place, content }
+    }
+}
+
+impl Shape {
+    fn new(form: &Form, decimal: char) -> Result<Self, RuleError> {
+        match form {
+            Form::Table { header: Header::Row(0), .. } => {
+                Err(RuleError::new("header", "rows are counted from 1"))
+            }
+            Form::Table { sheet, header, delimiter } => {
+                let delimiter = match delimiter {
+                    None => None,
+                    Some(mark) if *mark == decimal => {
+                        return Err(RuleError::new(
+                            "delimiter",
+                            format!("`{mark}` is the decimal mark as well"),
+                        ));
+                    }
+                    Some(mark) => Some(delimited::as_delimiter(*mark).ok_or_else(|| {
+                        RuleError::new("delimiter", format!("{mark:?} cannot part fields"))
+                    })?),
+                };
+                Ok(Self::Table { sheet: sheet.clone(), header: header.clone(), delimiter })
+            }
+            Form::Xml { each } => Ok(Self::Xml {
+                each: XmlPath::element(each).map_err(|what| RuleError::new("each", what))?,
+            }),
+        }
+    }
+
+    fn each(&self) -> Option<&XmlPath> {
+        match self {
+            Self::Table { .. } => None,
+            Self::Xml { each } => Some(each),
+        }
+    }
+}
+
+impl Roles {
+    fn new(rule: &Rule, each: Option<&XmlPath>) -> Result<Self, RuleError> {
+        let mut sources = Vec::new();
+        let mut add = |name: &str, role: &Role| -> Result<usize, RuleError> {
+            sources.push(Source::new(name, role, each)?);
+            Ok(sources.len() - 1)
+        };
+        let mut maybe = |name: &str, role: Option<&Role>| {
+            role.map(|role| add(name, role)).transpose()
+        };
+        let limit = |limit: Option<&Limit>, source: Option<usize>| {
+            limit.zip(source).map(|(limit, source)| LimitAt {
+                source,
+                from_nominal: limit.from_nominal,
+            })
+        };
+        let appraiser = maybe("appraiser", rule.appraiser.as_ref())?;
+        let trial = match &rule.trial {
+            Some(Trial::Stated(role)) => {
+                maybe("trial", Some(role))?.map_or(TrialBy::Nothing, TrialBy::Label)
+            }
+            Some(Trial::Counted(Count::Order)) => TrialBy::Order,
+            Some(Trial::Counted(Count::Taken)) if rule.taken.is_none() => {
+                return Err(RuleError::new("trial", "counted by time stamp, but there is no `taken`"));
+            }
+            Some(Trial::Counted(Count::Taken)) | None => TrialBy::Nothing,
+        };
+        let taken = maybe("time", rule.taken.as_ref().map(|taken| &taken.role))?;
+        let round = maybe("round", rule.round.as_ref())?;
+        let characteristic = maybe("characteristic", rule.characteristic.as_ref())?;
+        let unit = maybe("unit", rule.value.unit.as_ref())?;
+        let nominal = maybe("nominal", rule.nominal.as_ref())?;
+        let lower = maybe("lower limit", rule.lower.as_ref().map(|limit| &limit.role))?;
+        let upper = maybe("upper limit", rule.upper.as_ref().map(|limit| &limit.role))?;
+        let mut named = |kind: &str, name: &String, role: &Role| {
+            add(&format!("{kind} `{name}`"), role).map(|source| (name.clone(), source))
+        };
+        let factors = rule
+            .factors
+            .iter()
+            .map(|(name, role)| named("factor", name, role))
+            .collect::<Result<_, _>>()?;
+        let same = rule
+            .same
+            .iter()
+            .map(|(name, role)| named("same", name, role))
+            .collect::<Result<_, _>>()?;
+        let part = add("part", &rule.part)?;
+        let value = add("value", &rule.value.role)?;
+        let (lower, upper) = (limit(rule.lower.as_ref(), lower), limit(rule.upper.as_ref(), upper));
+        if nominal.is_none() && [lower, upper].iter().flatten().any(|limit| limit.from_nominal) {
+            return Err(RuleError::new("nominal", "a limit is taken from it, but there is none"));
+        }
+        let taken = match (&rule.taken, taken) {
+            (Some(rule), Some(source)) => Some((
+                source,
+                Clock::new(rule.format.as_deref(), rule.zone.as_deref())
+                    .map_err(|what| RuleError::new("taken", what))?,
+            )),
+            _ => None,
+        };
+        Ok(Self {
+            sources,
+            part,
+            appraiser,
+            trial,
+            taken,
+            round,
+            characteristic,
+            value,
+            unit,
+            nominal,
+            lower,
+            upper,
+            factors,
+            same,
+            decimal: rule.decimal,
+            no_value: NoValue::new(&rule.no_value, rule.decimal),
+            end: rule
+                .end
+                .as_ref()
+                .map(|end| End { text: end.find.clone(), key: key(&end.find) }),
+        })
+    }
+
+    /// True when some role is looked up by row.
+    pub(crate) fn by_row(&self) -> bool {
+        self.sources.iter().any(|source| matches!(source.from, Where::Column(_)))
+    }
+}

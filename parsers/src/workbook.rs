@@ -1,0 +1,224 @@
+//! One sheet of an xlsx workbook to rows of cells.
+//!
+//! Only the cell-by-cell reader is used: the library's rectangular range would allocate whatever the
+//! farthest cells span. A panic of the library on a crafted file is one refused export.
+
+use std::collections::BTreeMap;
+use std::io::Cursor;
+use std::panic::{AssertUnwindSafe, catch_unwind};
+
+use calamine::{
+    DataRef, ExcelDateTime, Reader as _, SheetType, SheetVisible, Xlsx, XlsxCellFormulaMetadataRecord,
+    XlsxError,
+};
+use jiff::civil;
+
+use crate::container::{self, damaged};
+use crate::delimited::CELLS_MAX;
+use crate::grid::{Content, Grid, Origin, Row, cell_name};
+use crate::kind::Kind;
+use crate::names::{key, listed, nearest, shorten};
+use crate::parsed::Refused;
+use crate::rule::{Bounds, Sheet};
+
+/// The cells of the sheet that the rule asks for.
+pub(crate) fn grid(
+    bytes: &[u8],
+    kind: Kind,
+    sheet: &Sheet,
+    bounds: &Bounds,
+) -> Result<Grid, Refused> {
+    container::check(bytes, kind, bounds)?;
+    catch_unwind(AssertUnwindSafe(|| cells(bytes, sheet, bounds)))
+        .unwrap_or_else(|_| Err(damaged("its cells cannot be read")))
+}
+
+fn cells(bytes: &[u8], sheet: &Sheet, bounds: &Bounds) -> Result<Grid, Refused> {
+    let mut book = Xlsx::new(Cursor::new(bytes)).map_err(|why| damaged(&why.to_string()))?;
+    let name = chosen(&book, sheet)?;
+    let mut reader =
+        book.worksheet_cells_reader(&name).map_err(|why| damaged(&why.to_string()))?;
+    let mut rows = Rows { sheet: &name, bounds, rows: BTreeMap::new(), cells: 0, last: 0, open: None };
+    loop {
+        match reader.next_cell_with_formula_metadata() {
+            Ok(Some(cell)) => rows.add(cell)?,
+            Ok(None) => break,
+            Err(why) if costs_one_cell(&why) => rows.damage(&why)?,
+            Err(why) => return Err(damaged(&why.to_string())),
+        }
+    }
+    rows.close_damage(u32::MAX);
+    Ok(Grid { origin: Origin::Sheet(shorten(&name).into()), rows: rows.rows.into_values().collect() })
+}
+
+/// Faults after which the reader goes on with the next cell.
+fn costs_one_cell(why: &XlsxError) -> bool {
+    matches!(
+        why,
+        XlsxError::CellError(_)
+            | XlsxError::CellTAttribute(_)
+            | XlsxError::ParseFloat(_)
+            | XlsxError::ParseInt(_)
+            | XlsxError::Unrecognized { .. }
+    )
+}
+
+fn chosen(book: &Xlsx<Cursor<&[u8]>>, asked: &Sheet) -> Result<String, Refused> {
+    let sheets: Vec<&calamine::Sheet> =
+        book.sheets_metadata().iter().filter(|sheet| sheet.typ == SheetType::WorkSheet).collect();
+    let names = || sheets.iter().map(|sheet| sheet.name.as_str());
+    match asked {
+        Sheet::First => sheets
+            .iter()
+            .find(|sheet| sheet.visible == SheetVisible::Visible)
+            .map(|sheet| sheet.name.clone())
+            .ok_or_else(|| Refused::new("the workbook has no visible sheet")),
+        Sheet::Named(sought) => {
+            let same = |name: &&str| key(name) == key(sought);
+            names().find(same).map(str::to_owned).ok_or_else(|| Refused {
+                sentence: format!(
+                    "no sheet is named `{}`; the workbook has {}",
+                    shorten(sought),
+                    listed(names())
+                ),
+                hint: nearest(sought, names()).map(|name| format!("did you mean `{name}`?")),
+                perhaps_unfinished: false,
+            })
+        }
+    }
+}
+
+/// Rows while cells arrive.
+struct Rows<'a> {
+    sheet: &'a str,
+    bounds: &'a Bounds,
+    rows: BTreeMap<u32, Row>,
+    cells: usize,
+    /// Row of the last cell that could be read.
+    last: u32,
+    /// An unreadable cell after `last`, whose place the next readable cell bounds.
+    open: Option<Box<str>>,
+}
+
+impl Rows<'_> {
+    fn add(&mut self, cell: XlsxCellFormulaMetadataRecord<'_>) -> Result<(), Refused> {
+        let (row, column) = cell.pos;
+        self.close_damage(row);
+        self.last = row;
+        let content = self.content(cell)?;
+        if content == Content::Blank {
+            return Ok(());
+        }
+        if column >= self.bounds.columns {
+            return Err(self.beyond(row, column, "columns", self.bounds.columns));
+        }
+        if row >= self.bounds.rows {
+            return Err(self.beyond(row, column, "rows", self.bounds.rows));
+        }
+        self.cells += 1;
+        if self.cells > CELLS_MAX {
+            return Err(Refused::new(format!("more than {CELLS_MAX} cells; that is the limit")));
+        }
+        let cells = &mut self.rows.entry(row).or_insert_with(|| Row::new(row, None)).cells;
+        match cells.last() {
+            Some((last, _)) if *last >= column => {
+                match cells.binary_search_by_key(&column, |(column, _)| *column) {
+                    Ok(twice) => cells[twice].1 = Content::Unusable("two contents".into()),
+                    Err(at) => cells.insert(at, (column, content)),
+                }
+            }
+            _ => cells.push((column, content)),
+        }
+        Ok(())
+    }
+
+    fn content(&self, cell: XlsxCellFormulaMetadataRecord<'_>) -> Result<Content, Refused> {
+        let text = |text: &str| {
+            if text.len() > self.bounds.text_bytes as usize {
+                let (row, column) = cell.pos;
+                return Err(Refused::new(format!(
+                    "sheet `{}`, cell {}: a text of {} bytes; the limit is {}",
+                    self.sheet,
+                    cell_name(row, column),
+                    text.len(),
+                    self.bounds.text_bytes
+                )));
+            }
+            Ok(match text.trim() {
+                "" => Content::Blank,
+                _ => Content::Text(text.into()),
+            })
+        };
+        let number = |number: f64| match number.is_finite() {
+            true => Content::Number(number),
+            false => Content::Unusable(format!("`{number}`, which is no finite number").into()),
+        };
+        Ok(match cell.value {
+            DataRef::Empty if cell.formula.is_some() => {
+                Content::Unusable("a formula without a result".into())
+            }
+            DataRef::Empty => Content::Blank,
+            DataRef::Int(whole) => number(whole as f64),
+            DataRef::Float(float) => number(float),
+            DataRef::String(string) => text(&string)?,
+            DataRef::SharedString(string) => text(string)?,
+            DataRef::DateTimeIso(string) | DataRef::DurationIso(string) => text(&string)?,
+            DataRef::Bool(truth) => Content::Text(if truth { "TRUE" } else { "FALSE" }.into()),
+            DataRef::DateTime(date) => date_of(date),
+            DataRef::Error(error) => Content::Unusable(format!("the error `{error}`").into()),
+        })
+    }
+
+    fn beyond(&self, row: u32, column: u32, what: &str, limit: u32) -> Refused {
+        Refused::new(format!(
+            "sheet `{}`, cell {}: beyond the limit of {limit} {what}",
+            self.sheet,
+            cell_name(row, column)
+        ))
+    }
+
+    fn damage(&mut self, why: &XlsxError) -> Result<(), Refused> {
+        self.cells += 1;
+        if self.cells > CELLS_MAX {
+            return Err(Refused::new(format!("more than {CELLS_MAX} cells; that is the limit")));
+        }
+        self.open = Some(shorten(&why.to_string()).into());
+        Ok(())
+    }
+
+    /// The unreadable cell lies between the last readable one and this row: none of these rows can
+    /// be trusted.
+    fn close_damage(&mut self, next: u32) {
+        let Some(why) = self.open.take() else { return };
+        let until = if next == u32::MAX { self.last.saturating_add(1) } else { next };
+        for number in [self.last, self.last.saturating_add(1), until] {
+            if number <= until {
+                let row = self.rows.entry(number).or_insert_with(|| Row::new(number, None));
+                row.damage = Some(why.clone());
+            }
+        }
+    }
+}
+
+fn date_of(date: ExcelDateTime) -> Content {
+    if date.is_duration() {
+        return Content::Unusable("a span of time".into());
+    }
+    let (year, month, day, hour, minute, second, milli) = date.to_ymd_hms_milli();
+    let civil = || {
+        civil::DateTime::new(
+            i16::try_from(year).ok()?,
+            i8::try_from(month).ok()?,
+            i8::try_from(day).ok()?,
+            i8::try_from(hour).ok()?,
+            i8::try_from(minute).ok()?,
+            i8::try_from(second).ok()?,
+            i32::from(milli) * 1_000_000,
+        )
+        .ok()
+    };
+    match civil() {
+        Some(date) => Content::Date(date),
+        None => Content::Unusable(format!("the day {year}-{month}-{day}, which never was").into()),
+    }
+}
