@@ -21,6 +21,10 @@ pub struct Fault {
 
 impl fmt::Display for Fault {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        write!(f, "{}:{}: {}: found {}, expected {}", self.file, self.line, self.key, self.found, self.expected)
+        write!(
+            f,
+            "{}:{}: {}: found {}, expected {}",
+            self.file, self.line, self.key, self.found, self.expected
+        )
     }
 }

@@ -37,7 +37,12 @@ fn straight(path: &Path) -> PathBuf {
     for step in path.components() {
         match step {
             Component::CurDir => {}
-            Component::ParentDir if matches!(straight.components().next_back(), Some(Component::Normal(_))) => {
+            Component::ParentDir
+                if matches!(
+                    straight.components().next_back(),
+                    Some(Component::Normal(_))
+                ) =>
+            {
                 straight.pop();
             }
             Component::ParentDir if straight.has_root() => {}
@@ -53,10 +58,19 @@ mod tests {
 
     #[test]
     fn paths_are_straightened() {
-        for (written, expected) in
-            [("/a/./b/../c", "/a/c"), ("/../a", "/a"), ("a/..", ""), ("../a", "../a"), ("../../a/b/..", "../../a"), ("/a//b/", "/a/b")]
-        {
-            assert_eq!(straight(Path::new(written)), Path::new(expected), "{written}");
+        for (written, expected) in [
+            ("/a/./b/../c", "/a/c"),
+            ("/../a", "/a"),
+            ("a/..", ""),
+            ("../a", "../a"),
+            ("../../a/b/..", "../../a"),
+            ("/a//b/", "/a/b"),
+        ] {
+            assert_eq!(
+                straight(Path::new(written)),
+                Path::new(expected),
+                "{written}"
+            );
         }
     }
 

@@ -21,7 +21,8 @@ mod tables;
 mod walk;
 
 pub use checked::{
-    Appraisers, Characteristic, Config, FactorLevels, FilePatterns, Instrument, Label, Mail, NoticeKind, Password, Plan, PlanFactor, Route, Site, Tls,
+    Appraisers, Characteristic, Config, FactorLevels, FilePatterns, Instrument, Label, Mail,
+    NoticeKind, Password, Plan, PlanFactor, Route, Site, Tls,
 };
 pub use fault::Fault;
 pub use names::fold;

@@ -3,13 +3,20 @@
 /// The form in which two spellings of one name are equal: lower case, blanks folded into one and trimmed.
 #[must_use]
 pub fn fold(name: &str) -> String {
-    name.split_whitespace().map(str::to_lowercase).collect::<Vec<_>>().join(" ")
+    name.split_whitespace()
+        .map(str::to_lowercase)
+        .collect::<Vec<_>>()
+        .join(" ")
 }
 
 /// The candidate that is most likely meant by `name`, if any is close.
-pub(crate) fn nearest<'a>(name: &str, candidates: impl IntoIterator<Item = &'a str>) -> Option<&'a str> {
+pub(crate) fn nearest<'a>(
+    name: &str,
+    candidates: impl IntoIterator<Item = &'a str>,
+) -> Option<&'a str> {
     let wanted = fold(name);
-    let farthest = (wanted.chars().count() / 3).max(1);
+    let length = wanted.chars().count();
+    let farthest = (length / 3).max(1).min(length.saturating_sub(1));
     candidates
         .into_iter()
         .map(|candidate| (strsim::osa_distance(&wanted, &fold(candidate)), candidate))
@@ -35,5 +42,7 @@ mod tests {
         assert_eq!(nearest("setle", keys), Some("settle"));
         assert_eq!(nearest("ot", keys), Some("to"));
         assert_eq!(nearest("decimal", keys), None);
+        assert_eq!(nearest(";", [".", ","]), None);
+        assert_eq!(nearest("", keys), None);
     }
 }

@@ -12,7 +12,10 @@ pub(crate) fn patterns(node: &Node<'_>) -> Option<FilePatterns> {
     let entries = node.names("file name patterns such as [\"*.xlsx\"]")?;
     for (text, entry) in &entries {
         if text.contains(['/', '\\']) {
-            entry.fault_hint("a pattern for the file name alone", "sub-folders are watched anyway; name other folders in `folders`");
+            entry.fault_hint(
+                "a pattern for the file name alone",
+                "sub-folders are watched anyway; name other folders in `folders`",
+            );
             continue;
         }
         match GlobBuilder::new(text).case_insensitive(true).build() {
@@ -20,7 +23,10 @@ pub(crate) fn patterns(node: &Node<'_>) -> Option<FilePatterns> {
                 set.add(glob);
                 written.push((*text).to_owned());
             }
-            Err(error) => entry.fault_hint("a file name pattern such as \"*.xlsx\"", error.kind().to_string()),
+            Err(error) => entry.fault_hint(
+                "a file name pattern such as \"*.xlsx\"",
+                error.kind().to_string(),
+            ),
         }
     }
     let set: GlobSet = set.build().ok()?;
@@ -28,8 +34,14 @@ pub(crate) fn patterns(node: &Node<'_>) -> Option<FilePatterns> {
 }
 
 /// The first two patterns that one file name could match. Never misses an overlap; a character class counts as any character.
-pub(crate) fn overlapping<'p>(ours: &'p FilePatterns, theirs: &'p FilePatterns) -> Option<(&'p str, &'p str)> {
-    let pairs = ours.written.iter().flat_map(|a| theirs.written.iter().map(move |b| (a.as_str(), b.as_str())));
+pub(crate) fn overlapping<'p>(
+    ours: &'p FilePatterns,
+    theirs: &'p FilePatterns,
+) -> Option<(&'p str, &'p str)> {
+    let pairs = ours
+        .written
+        .iter()
+        .flat_map(|a| theirs.written.iter().map(move |b| (a.as_str(), b.as_str())));
     pairs.into_iter().find(|(a, b)| overlap(a, b))
 }
 
@@ -42,7 +54,8 @@ enum Token {
 
 fn overlap(a: &str, b: &str) -> bool {
     let (ours, theirs) = (alternatives(a), alternatives(b));
-    ours.iter().any(|a| theirs.iter().any(|b| meet(&tokens(a), &tokens(b))))
+    ours.iter()
+        .any(|a| theirs.iter().any(|b| meet(&tokens(a), &tokens(b))))
 }
 
 /// The pattern without braces: one text for each choice. Braces beside classes count as any name.
@@ -50,9 +63,14 @@ fn alternatives(pattern: &str) -> Vec<String> {
     if pattern.contains('{') && pattern.contains('[') {
         return vec!["*".to_owned()];
     }
-    let Some(open) = pattern.find('{') else { return vec![pattern.to_owned()] };
+    let Some(open) = pattern.find('{') else {
+        return vec![pattern.to_owned()];
+    };
     let (mut depth, mut close, mut cuts) = (0_usize, None, vec![open]);
-    for (index, c) in pattern.char_indices().skip_while(|(index, _)| *index < open) {
+    for (index, c) in pattern
+        .char_indices()
+        .skip_while(|(index, _)| *index < open)
+    {
         match c {
             '{' => depth += 1,
             ',' if depth == 1 => cuts.push(index),
@@ -64,10 +82,14 @@ fn alternatives(pattern: &str) -> Vec<String> {
             break;
         }
     }
-    let Some(close) = close else { return vec![pattern.replace('{', "*")] };
+    let Some(close) = close else {
+        return vec![pattern.replace('{', "*")];
+    };
     cuts.push(close);
     let (before, after) = (&pattern[..open], &pattern[close + 1..]);
-    cuts.windows(2).flat_map(|cut| alternatives(&format!("{before}{}{after}", &pattern[cut[0] + 1..cut[1]]))).collect()
+    cuts.windows(2)
+        .flat_map(|cut| alternatives(&format!("{before}{}{after}", &pattern[cut[0] + 1..cut[1]])))
+        .collect()
 }
 
 fn tokens(pattern: &str) -> Vec<Token> {
@@ -149,12 +171,37 @@ mod tests {
 
     #[test]
     fn an_overlap_is_seen_whenever_both_globs_match_a_name() {
-        let patterns = ["*.csv", "hub*", "*b?.c*", "h[tu]b1.csv", "{hub,cover}1.csv", "?ub*.[ct]*", "*1*", "cover*"];
-        let names = ["hub1.csv", "cover1.csv", "hub.txt", "b1.c", "x1", "HUB1.CSV"];
-        let glob = |text: &str| GlobBuilder::new(text).case_insensitive(true).build().unwrap().compile_matcher();
+        let patterns = [
+            "*.csv",
+            "hub*",
+            "*b?.c*",
+            "h[tu]b1.csv",
+            "{hub,cover}1.csv",
+            "?ub*.[ct]*",
+            "*1*",
+            "cover*",
+        ];
+        let names = [
+            "hub1.csv",
+            "cover1.csv",
+            "hub.txt",
+            "b1.c",
+            "x1",
+            "HUB1.CSV",
+        ];
+        let glob = |text: &str| {
+            GlobBuilder::new(text)
+                .case_insensitive(true)
+                .build()
+                .unwrap()
+                .compile_matcher()
+        };
         for a in patterns {
             for b in patterns {
-                if names.iter().any(|name| glob(a).is_match(name) && glob(b).is_match(name)) {
+                if names
+                    .iter()
+                    .any(|name| glob(a).is_match(name) && glob(b).is_match(name))
+                {
                     assert!(overlap(a, b), "{a} {b}");
                 }
             }

@@ -8,17 +8,24 @@ pub(crate) fn cell(name: &str) -> Option<(u32, u32)> {
     const COLUMNS: u32 = 1 << 14;
     let letters = name.find(|c: char| !c.is_ascii_uppercase())?;
     let (letters, digits) = name.split_at(letters);
-    if letters.is_empty() || letters.len() > 3 || digits.starts_with('0') || !digits.bytes().all(|b| b.is_ascii_digit()) {
+    if letters.is_empty()
+        || letters.len() > 3
+        || digits.starts_with('0')
+        || !digits.bytes().all(|b| b.is_ascii_digit())
+    {
         return None;
     }
-    let column = letters.bytes().fold(0, |column, letter| column * 26 + u32::from(letter - b'A') + 1);
+    let column = letters.bytes().fold(0, |column, letter| {
+        column * 26 + u32::from(letter - b'A') + 1
+    });
     let row: u32 = digits.parse().ok()?;
     (column <= COLUMNS && row <= ROWS).then(|| (row - 1, column - 1))
 }
 
 /// True for an absolute path of local element names, `/export/run/feature`.
 pub(crate) fn is_each(path: &str) -> bool {
-    path.strip_prefix('/').is_some_and(|names| names.split('/').all(is_xml_name))
+    path.strip_prefix('/')
+        .is_some_and(|names| names.split('/').all(is_xml_name))
 }
 
 /// True for the path of an element or attribute: absolute, or relative with leading `..` steps; `@name` only last.
@@ -42,7 +49,10 @@ pub(crate) fn is_xml_path(path: &str) -> bool {
 }
 
 fn is_xml_name(name: &str) -> bool {
-    name.starts_with(|c: char| c.is_alphabetic() || c == '_') && name.chars().all(|c| c.is_alphanumeric() || "_-.".contains(c))
+    name.starts_with(|c: char| c.is_alphabetic() || c == '_')
+        && name
+            .chars()
+            .all(|c| c.is_alphanumeric() || "_-.".contains(c))
 }
 
 /// A regex that compiles; its `groups` at most.
@@ -63,7 +73,12 @@ pub(crate) fn regex(node: &Node<'_>, groups: usize) -> Option<regex::Regex> {
         Ok(regex) => Some(regex),
         Err(error) => {
             let why = error.to_string();
-            let last = why.lines().last().unwrap_or_default().trim_start_matches("error: ").to_owned();
+            let last = why
+                .lines()
+                .last()
+                .unwrap_or_default()
+                .trim_start_matches("error: ")
+                .to_owned();
             node.fault_hint("a regular expression", last);
             None
         }
@@ -76,20 +91,62 @@ mod tests {
 
     #[test]
     fn cells_are_named_by_column_letters_and_row() {
-        for (name, place) in [("A1", (0, 0)), ("B4", (3, 1)), ("Z10", (9, 25)), ("AA1", (0, 26)), ("XFD1048576", (1_048_575, 16_383))] {
+        for (name, place) in [
+            ("A1", (0, 0)),
+            ("B4", (3, 1)),
+            ("Z10", (9, 25)),
+            ("AA1", (0, 26)),
+            ("XFD1048576", (1_048_575, 16_383)),
+        ] {
             assert_eq!(cell(name), Some(place), "{name}");
         }
-        for name in ["", "B", "4", "4B", "b4", "$B$4", "B0", "B04", "B4 ", "XFE1", "A1048577", "AAAA1", "B4:C5", "Ä1", "B99999999999"] {
+        for name in [
+            "",
+            "B",
+            "4",
+            "4B",
+            "b4",
+            "$B$4",
+            "B0",
+            "B04",
+            "B4 ",
+            "XFE1",
+            "A1048577",
+            "AAAA1",
+            "B4:C5",
+            "Ä1",
+            "B99999999999",
+        ] {
             assert_eq!(cell(name), None, "{name}");
         }
     }
 
     #[test]
     fn xml_paths_are_local_names() {
-        for path in ["value", "@id", "../@part", "/export/run/@id", "../../head/who", "."] {
+        for path in [
+            "value",
+            "@id",
+            "../@part",
+            "/export/run/@id",
+            "../../head/who",
+            ".",
+        ] {
             assert!(is_xml_path(path), "{path}");
         }
-        for path in ["", "/", "a//b", "@id/value", "/../a", "a/../b", "..", "q:value", "a b", "//value", "value[1]", "../."] {
+        for path in [
+            "",
+            "/",
+            "a//b",
+            "@id/value",
+            "/../a",
+            "a/../b",
+            "..",
+            "q:value",
+            "a b",
+            "//value",
+            "value[1]",
+            "../.",
+        ] {
             assert!(!is_xml_path(path), "{path}");
         }
         assert!(is_each("/export/run/feature"));

@@ -19,11 +19,26 @@ use crate::{Disk, Fault};
 /// # Errors
 /// Every fault of the file and of the lists that it names, by file and line. Of a text that is not TOML only
 /// the place where it stops to be.
-pub fn read(text: &str, file: &str, folder: &Path, disk: &dyn Disk) -> Result<(Config, Vec<Fault>), Vec<Fault>> {
+pub fn read(
+    text: &str,
+    file: &str,
+    folder: &Path,
+    disk: &dyn Disk,
+) -> Result<(Config, Vec<Fault>), Vec<Fault>> {
     let findings = Findings::default();
     let config = {
-        let source = Source { file, text, findings: &findings };
-        document(&source, &Folders { start: folder, disk })
+        let source = Source {
+            file,
+            text,
+            findings: &findings,
+        };
+        document(
+            &source,
+            &Folders {
+                start: folder,
+                disk,
+            },
+        )
     };
     let (faults, warnings) = findings.sorted(file);
     match config {
@@ -33,15 +48,29 @@ pub fn read(text: &str, file: &str, folder: &Path, disk: &dyn Disk) -> Result<(C
 }
 
 fn document(source: &Source<'_>, folders: &Folders<'_>) -> Option<Config> {
-    let whole = Place { source, offset: 0, key: String::new() };
+    let whole = Place {
+        source,
+        offset: 0,
+        key: String::new(),
+    };
     let (document, errors) = DeTable::parse_recoverable(source.text);
     for error in errors {
-        let place = whole.clone().at(error.span().map_or(source.text.len(), |span| span.start));
+        let place = whole
+            .clone()
+            .at(error.span().map_or(source.text.len(), |span| span.start));
         if error.message().starts_with(DUPLICATE) {
-            let key = error.span().and_then(|span| source.text.get(span)).unwrap_or_default();
-            place.below(key).fault("the key a second time", "each key once");
+            let key = error
+                .span()
+                .and_then(|span| source.text.get(span))
+                .unwrap_or_default();
+            place
+                .below(key)
+                .fault("the key a second time", "each key once");
         } else {
-            place.below("the file").fault(error.message(), "TOML");
+            // The line itself is not shown: a password may stand in it, and faults are logged.
+            place
+                .below("the file")
+                .fault_hint("a syntax error", "TOML", error.message());
             return None;
         }
     }
@@ -57,9 +86,26 @@ fn document(source: &Source<'_>, folders: &Folders<'_>) -> Option<Config> {
     };
     let routes = route::routes(&root, plans.as_ref(), mail_node.is_some());
     if let (Some(node), None) = (&mail_node, root.get("route")) {
-        node.place.warn("[mail] without a [[route]]", "at least one [[route]]", "without it no mail is sent; notices are logged");
+        node.place.warn(
+            "[mail] without a [[route]]",
+            "at least one [[route]]",
+            "without it no mail is sent; notices are logged",
+        );
     }
-    root.later(&["calendar", "decisions", "board", "metrics", "mirror", "webhook", "pack", "retention", "pseudonyms", "log", "health", "limits"]);
+    root.later(&[
+        "calendar",
+        "decisions",
+        "board",
+        "metrics",
+        "mirror",
+        "webhook",
+        "pack",
+        "retention",
+        "pseudonyms",
+        "log",
+        "health",
+        "limits",
+    ]);
     root.finish();
     Some(Config {
         site: site?,

@@ -18,11 +18,16 @@ impl Findings {
     /// Faults and warnings: by file in the order of `files`, there by line.
     pub(crate) fn sorted(self, first: &str) -> (Vec<Fault>, Vec<Fault>) {
         let sorted = |mut found: Vec<Fault>| {
-            found.sort_by(|a, b| (a.file != first, &a.file, a.line).cmp(&(b.file != first, &b.file, b.line)));
+            found.sort_by(|a, b| {
+                (a.file != first, &a.file, a.line).cmp(&(b.file != first, &b.file, b.line))
+            });
             found.dedup();
             found
         };
-        (sorted(self.faults.into_inner()), sorted(self.warnings.into_inner()))
+        (
+            sorted(self.faults.into_inner()),
+            sorted(self.warnings.into_inner()),
+        )
     }
 }
 
@@ -54,8 +59,15 @@ pub(crate) struct Place<'a> {
 impl<'a> Place<'a> {
     /// The same spot, seen as a key below this one.
     pub(crate) fn below(&self, key: &str) -> Self {
-        let key = if self.key.is_empty() { key.to_owned() } else { format!("{} . {key}", self.key) };
-        Self { key, ..self.clone() }
+        let key = if self.key.is_empty() {
+            key.to_owned()
+        } else {
+            format!("{} . {key}", self.key)
+        };
+        Self {
+            key,
+            ..self.clone()
+        }
     }
 
     /// The same key at another offset of its source.
@@ -72,19 +84,34 @@ impl<'a> Place<'a> {
         self.source.findings.faults.borrow_mut().push(fault);
     }
 
-    pub(crate) fn fault_hint(&self, found: impl Into<String>, expected: impl Into<String>, hint: impl Into<String>) {
+    pub(crate) fn fault_hint(
+        &self,
+        found: impl Into<String>,
+        expected: impl Into<String>,
+        hint: impl Into<String>,
+    ) {
         let fault = self.told(found.into(), expected.into(), Some(hint.into()));
         self.source.findings.faults.borrow_mut().push(fault);
     }
 
     /// A fault whose hint is there only if something is close.
-    pub(crate) fn fault_nearest(&self, found: impl Into<String>, expected: impl Into<String>, nearest: Option<&str>) {
+    pub(crate) fn fault_nearest(
+        &self,
+        found: impl Into<String>,
+        expected: impl Into<String>,
+        nearest: Option<&str>,
+    ) {
         let hint = nearest.map(|name| format!("did you mean `{name}`?"));
         let fault = self.told(found.into(), expected.into(), hint);
         self.source.findings.faults.borrow_mut().push(fault);
     }
 
-    pub(crate) fn warn(&self, found: impl Into<String>, expected: impl Into<String>, hint: impl Into<String>) {
+    pub(crate) fn warn(
+        &self,
+        found: impl Into<String>,
+        expected: impl Into<String>,
+        hint: impl Into<String>,
+    ) {
         let fault = self.told(found.into(), expected.into(), Some(hint.into()));
         self.source.findings.warnings.borrow_mut().push(fault);
     }
@@ -104,6 +131,14 @@ impl<'a> Place<'a> {
 /// A text in a message: on one line and of bearable length.
 pub(crate) fn shortened(text: &str) -> String {
     const LONGEST: usize = 60;
-    let line: String = text.chars().take(LONGEST + 1).map(|c| if c.is_control() { ' ' } else { c }).collect();
-    if line.chars().count() > LONGEST { line.chars().take(LONGEST).chain(['…']).collect() } else { line }
+    let line: String = text
+        .chars()
+        .take(LONGEST + 1)
+        .map(|c| if c.is_control() { ' ' } else { c })
+        .collect();
+    if line.chars().count() > LONGEST {
+        line.chars().take(LONGEST).chain(['…']).collect()
+    } else {
+        line
+    }
 }

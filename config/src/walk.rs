@@ -24,14 +24,32 @@ pub(crate) struct Table<'a> {
 
 impl<'a> Table<'a> {
     pub(crate) fn new(place: Place<'a>, entries: &'a DeTable<'a>) -> Self {
-        Self { place, entries, asked: RefCell::default(), later: RefCell::default() }
+        Self {
+            place,
+            entries,
+            asked: RefCell::default(),
+            later: RefCell::default(),
+        }
     }
 
     /// The value of a key, if it is there.
     pub(crate) fn get(&self, key: &'static str) -> Option<Node<'a>> {
         self.asked.borrow_mut().insert(key);
-        let (_, value) = self.entries.iter().find(|(name, _)| name.get_ref() == key)?;
-        Some(Node::new(self.place.below(key), value.span(), value.get_ref()))
+        let (_, value) = self
+            .entries
+            .iter()
+            .find(|(name, _)| name.get_ref() == key)?;
+        Some(Node::new(
+            self.place.below(key),
+            value.span(),
+            value.get_ref(),
+        ))
+    }
+
+    /// Where a key's value stands; the table's own place when the key is not there.
+    pub(crate) fn place_of(&self, key: &'static str) -> Place<'a> {
+        self.get(key)
+            .map_or_else(|| self.place.below(key), |node| node.place)
     }
 
     /// The value of a key that must be there.
@@ -44,7 +62,12 @@ impl<'a> Table<'a> {
     }
 
     /// The same, with a hint why there is no default.
-    pub(crate) fn need_hint(&self, key: &'static str, expected: &str, hint: &str) -> Option<Node<'a>> {
+    pub(crate) fn need_hint(
+        &self,
+        key: &'static str,
+        expected: &str,
+        hint: &str,
+    ) -> Option<Node<'a>> {
         let node = self.get(key);
         if node.is_none() {
             self.place.below(key).fault_hint("nothing", expected, hint);
@@ -61,7 +84,10 @@ impl<'a> Table<'a> {
     pub(crate) fn named(&self) -> Vec<(&'a str, Node<'a>)> {
         let node = |(name, value): (&'a toml::Spanned<_>, &'a toml::Spanned<DeValue<'a>>)| {
             let name: &'a std::borrow::Cow<'a, str> = name.get_ref();
-            (&**name, Node::new(self.place.below(name), value.span(), value.get_ref()))
+            (
+                &**name,
+                Node::new(self.place.below(name), value.span(), value.get_ref()),
+            )
         };
         self.entries.iter().map(node).collect()
     }
@@ -80,7 +106,11 @@ impl<'a> Table<'a> {
             } else {
                 let known = asked.iter().copied().collect::<Vec<_>>().join(", ");
                 let found = format!("the unknown key `{}`", shortened(key));
-                place.fault_nearest(found, format!("one of {known}"), nearest(key, asked.iter().copied()));
+                place.fault_nearest(
+                    found,
+                    format!("one of {known}"),
+                    nearest(key, asked.iter().copied()),
+                );
             }
         }
     }
@@ -96,7 +126,11 @@ pub(crate) struct Node<'a> {
 
 impl<'a> Node<'a> {
     fn new(place: Place<'a>, span: Range<usize>, value: &'a DeValue<'a>) -> Self {
-        Self { place: place.at(span.start), span, value }
+        Self {
+            place: place.at(span.start),
+            span,
+            value,
+        }
     }
 
     /// As it is written, in backticks; tables and lists by their kind.
@@ -104,7 +138,16 @@ impl<'a> Node<'a> {
         match self.value {
             DeValue::Table(_) => "a table".to_owned(),
             DeValue::Array(_) => "a list".to_owned(),
-            _ => format!("`{}`", shortened(self.place.source.text.get(self.span.clone()).unwrap_or_default())),
+            _ => format!(
+                "`{}`",
+                shortened(
+                    self.place
+                        .source
+                        .text
+                        .get(self.span.clone())
+                        .unwrap_or_default()
+                )
+            ),
         }
     }
 
@@ -130,7 +173,9 @@ impl<'a> Node<'a> {
     }
 
     pub(crate) fn is_empty_list(&self) -> bool {
-        self.value.as_array().is_some_and(|entries| entries.is_empty())
+        self.value
+            .as_array()
+            .is_some_and(|entries| entries.is_empty())
     }
 
     pub(crate) fn is_number(&self) -> bool {
@@ -160,10 +205,18 @@ impl<'a> Node<'a> {
 
     /// One of a few words.
     pub(crate) fn word<T: Copy>(&self, words: &[(&str, T)]) -> Option<T> {
-        let found = self.as_text().and_then(|text| words.iter().find(|(word, _)| *word == text));
+        let found = self
+            .as_text()
+            .and_then(|text| words.iter().find(|(word, _)| *word == text));
         if found.is_none() {
-            let known = words.iter().map(|(word, _)| format!("\"{word}\"")).collect::<Vec<_>>().join(" or ");
-            let close = self.as_text().and_then(|text| nearest(text, words.iter().map(|(word, _)| *word)));
+            let known = words
+                .iter()
+                .map(|(word, _)| format!("\"{word}\""))
+                .collect::<Vec<_>>()
+                .join(" or ");
+            let close = self
+                .as_text()
+                .and_then(|text| nearest(text, words.iter().map(|(word, _)| *word)));
             self.place.fault_nearest(self.found(), known, close);
         }
         found.map(|(_, value)| *value)
@@ -204,7 +257,13 @@ impl<'a> Node<'a> {
         };
         let whole = whole.filter(|whole| range.contains(whole));
         if whole.is_none() {
-            self.fault(format!("{what} from {} to {}", range.start(), range.end()));
+            let expected = format!("{what} from {} to {}", range.start(), range.end());
+            match self.as_text() {
+                Some(text) if text.trim().parse::<u32>().is_ok() => {
+                    self.fault_hint(expected, "write it without quotes")
+                }
+                _ => self.fault(expected),
+            }
         }
         whole
     }
@@ -220,7 +279,11 @@ impl<'a> Node<'a> {
             return None;
         };
         let node = |(index, value): (usize, &'a toml::Spanned<DeValue<'a>>)| {
-            Node::new(self.place.below(&(index + 1).to_string()), value.span(), value.get_ref())
+            Node::new(
+                self.place.below(&(index + 1).to_string()),
+                value.span(),
+                value.get_ref(),
+            )
         };
         Some(entries.iter().enumerate().map(node).collect())
     }
@@ -231,7 +294,7 @@ impl<'a> Node<'a> {
         for node in self.list(expected)? {
             let Some(name) = node.name() else { continue };
             if names.iter().any(|(other, _)| fold(other) == fold(name)) {
-                node.fault("each name once");
+                node.fault("each entry once");
             } else {
                 names.push((name, node));
             }
@@ -247,22 +310,35 @@ impl<'a> Node<'a> {
         Some(Table::new(self.place.clone(), entries))
     }
 
-    /// The tables of a `[[word]]` list; each is called by its name in faults.
-    pub(crate) fn tables(&self, word: &str, parent: &Place<'a>) -> Option<Vec<Table<'a>>> {
-        let expected = format!("one or more [[{word}]] tables");
+    /// The tables of a `[[heading]]` list; each is called by its name in faults.
+    pub(crate) fn tables(&self, heading: &str, parent: &Place<'a>) -> Option<Vec<Table<'a>>> {
+        let expected = format!("one or more [[{heading}]] tables");
+        let word = heading.rsplit('.').next().unwrap_or(heading);
         if self.is_table() {
             self.fault_hint(expected, "write its heading in double square brackets");
             return None;
         }
         let table = |(index, node): (usize, Node<'a>)| {
             let table = node.table(&expected)?;
-            let name = table.entries.iter().find(|(key, _)| key.get_ref() == "name");
+            let name = table
+                .entries
+                .iter()
+                .find(|(key, _)| key.get_ref() == "name");
             let key = match name.and_then(|(_, name)| name.get_ref().as_str()) {
                 Some(name) => format!("{word} \"{}\"", shortened(name)),
                 None => format!("{word} {}", index + 1),
             };
-            Some(Table { place: parent.below(&key).at(node.span.start), ..table })
+            Some(Table {
+                place: parent.below(&key).at(node.span.start),
+                ..table
+            })
         };
-        Some(self.list(&expected)?.into_iter().enumerate().filter_map(table).collect())
+        Some(
+            self.list(&expected)?
+                .into_iter()
+                .enumerate()
+                .filter_map(table)
+                .collect(),
+        )
     }
 }

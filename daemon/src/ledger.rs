@@ -145,6 +145,18 @@ impl Ledger {
         Ok(value)
     }
 
+    /// Several queries that see one and the same state, beside a service that writes.
+    ///
+    /// # Errors
+    /// What `work` returns, or the database's refusal.
+    pub fn snapshot<T>(
+        &self,
+        work: impl FnOnce(Read<'_>) -> Result<T, LedgerError>,
+    ) -> Result<T, LedgerError> {
+        let transaction = self.connection.unchecked_transaction()?;
+        work(Read { connection: &transaction })
+    }
+
     /// The reading side.
     #[must_use]
     pub fn read(&self) -> Read<'_> {

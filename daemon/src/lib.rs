@@ -11,6 +11,7 @@ pub mod analyse;
 pub mod cli;
 pub mod deliver;
 pub mod evidence;
+pub mod figures;
 pub mod intake;
 pub mod ledger;
 pub mod natural;

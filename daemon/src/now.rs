@@ -3,7 +3,7 @@
 use std::sync::LazyLock;
 use std::time::{Duration, Instant};
 
-use jiff::{Timestamp, Zoned, tz::TimeZone};
+use jiff::{Timestamp, ZonedDateTime, tz::TimeZone};
 
 static START: LazyLock<Instant> = LazyLock::new(Instant::now);
 
@@ -26,8 +26,8 @@ impl Now {
 
 /// A recorded time in the plant's zone; times outside the calendar become its edge.
 #[must_use]
-pub fn in_zone(utc_ms: i64, zone: &TimeZone) -> Zoned {
+pub fn in_zone(utc_ms: i64, zone: &TimeZone) -> ZonedDateTime {
     let at = Timestamp::from_millisecond(utc_ms);
     let edge = if utc_ms < 0 { Timestamp::MIN } else { Timestamp::MAX };
-    at.unwrap_or(edge).to_zoned(zone.clone())
+    at.unwrap_or(edge).to_zoned_datetime(zone.clone())
 }

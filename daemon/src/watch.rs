@@ -9,7 +9,8 @@ use std::path::{Path, PathBuf};
 use std::sync::mpsc::{Receiver, RecvTimeoutError, SyncSender, TrySendError, sync_channel};
 use std::time::Duration;
 
-use notify::{RecommendedWatcher, RecursiveMode, Watcher as _};
+use notify::event::{AccessKind, AccessMode};
+use notify::{EventKind, RecommendedWatcher, RecursiveMode, Watcher as _};
 
 /// Says "look" to one waiting thread; saying it twice is saying it once.
 #[derive(Clone)]
@@ -52,7 +53,11 @@ impl Watch {
     /// table of watches) the rescan is all there is, and this says so once.
     #[must_use]
     pub fn new(folders: &[PathBuf], wake: Wake) -> Self {
-        let watcher = notify::recommended_watcher(move |_: notify::Result<notify::Event>| wake.now());
+        let watcher = notify::recommended_watcher(move |event: notify::Result<notify::Event>| {
+            if event.map_or(true, |e| says_something(&e.kind)) {
+                wake.now();
+            }
+        });
         let watcher = watcher
             .inspect_err(|e| tracing::warn!(error = %e, "no file events here; rescans find new exports"))
             .ok();
@@ -82,5 +87,14 @@ impl Watch {
                 *watched = false;
             }
         }
+    }
+}
+
+/// Our own looks open folders and files; being told of that would have us look for ever.
+fn says_something(kind: &EventKind) -> bool {
+    match kind {
+        EventKind::Access(AccessKind::Close(AccessMode::Write)) => true,
+        EventKind::Access(_) => false,
+        _ => true,
     }
 }

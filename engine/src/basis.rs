@@ -54,10 +54,20 @@ impl Quantities {
         let repeatability = model.component(error);
         let part = model.part().map(|part| model.component(part));
         let reproducibility = model.sum(model.reproducibility());
-        let gauge = reproducibility.as_ref().map_or(repeatability.clone(), |r| r.plus(&repeatability));
-        let total = part.as_ref().map_or(gauge.clone(), |part| part.plus(&gauge));
+        let gauge = reproducibility
+            .as_ref()
+            .map_or(repeatability.clone(), |r| r.plus(&repeatability));
+        let total = part
+            .as_ref()
+            .map_or(gauge.clone(), |part| part.plus(&gauge));
         // Without a part line the error holds the parts, and neither repeatability nor gauge stands apart.
         let apart = part.is_some();
-        Quantities { repeatability: apart.then_some(repeatability), reproducibility, gauge: apart.then_some(gauge), part, total }
+        Quantities {
+            repeatability: apart.then_some(repeatability),
+            reproducibility,
+            gauge: apart.then_some(gauge),
+            part,
+            total,
+        }
     }
 }

@@ -11,7 +11,10 @@ pub struct Combination {
 
 impl Combination {
     pub(crate) fn new(numerators: Vec<i64>, denominator: usize) -> Self {
-        Combination { numerators, denominator }
+        Combination {
+            numerators,
+            denominator,
+        }
     }
 
     /// Whole numerators, one a mean square.
@@ -26,18 +29,32 @@ impl Combination {
 
     /// The weights as the nearest f64.
     pub fn weights(&self) -> Vec<f64> {
-        self.numerators.iter().map(|&n| n as f64 / self.denominator as f64).collect()
+        self.numerators
+            .iter()
+            .map(|&n| n as f64 / self.denominator as f64)
+            .collect()
     }
 
     /// Indices of the mean squares that take part.
     pub fn members(&self) -> impl Iterator<Item = usize> {
-        self.numerators.iter().enumerate().filter(|&(_, &n)| n != 0).map(|(q, _)| q)
+        self.numerators
+            .iter()
+            .enumerate()
+            .filter(|&(_, &n)| n != 0)
+            .map(|(q, _)| q)
     }
 
     /// The value for given mean squares, each product exact, the sum compensated.
     pub fn value(&self, mean_squares: &[f64]) -> f64 {
-        let products = self.numerators.iter().zip(mean_squares).map(|(&n, &ms)| Twofold::product(n as f64, ms));
-        products.fold(Twofold::ZERO, Twofold::plus).over(self.denominator as f64).value()
+        let products = self
+            .numerators
+            .iter()
+            .zip(mean_squares)
+            .map(|(&n, &ms)| Twofold::product(n as f64, ms));
+        products
+            .fold(Twofold::ZERO, Twofold::plus)
+            .over(self.denominator as f64)
+            .value()
     }
 
     pub(crate) fn plus(&self, other: &Combination) -> Combination {
@@ -50,7 +67,15 @@ impl Combination {
 
     fn joined(&self, other: &Combination, f: impl Fn(i64, i64) -> i64) -> Combination {
         debug_assert_eq!(self.denominator, other.denominator);
-        let numerators = self.numerators.iter().zip(&other.numerators).map(|(&a, &b)| f(a, b)).collect();
-        Combination { numerators, denominator: self.denominator }
+        let numerators = self
+            .numerators
+            .iter()
+            .zip(&other.numerators)
+            .map(|(&a, &b)| f(a, b))
+            .collect();
+        Combination {
+            numerators,
+            denominator: self.denominator,
+        }
     }
 }

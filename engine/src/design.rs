@@ -30,12 +30,20 @@ pub struct Factor {
 impl Factor {
     /// A factor that is crossed with all others unless they are nested in it.
     pub fn crossed(name: &str, levels: usize) -> Self {
-        Factor { name: name.to_owned(), levels, within: Vec::new() }
+        Factor {
+            name: name.to_owned(),
+            levels,
+            within: Vec::new(),
+        }
     }
 
     /// A factor nested in others.
     pub fn nested(name: &str, levels: usize, within: &[&str]) -> Self {
-        Factor { name: name.to_owned(), levels, within: within.iter().map(|&w| w.to_owned()).collect() }
+        Factor {
+            name: name.to_owned(),
+            levels,
+            within: within.iter().map(|&w| w.to_owned()).collect(),
+        }
     }
 }
 
@@ -53,7 +61,9 @@ pub struct Design {
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
 pub enum DesignError {
     /// No factor is called `part`.
-    #[error("the design has no factor called `part`; expected the factor of the measured parts under that name")]
+    #[error(
+        "the design has no factor called `part`; expected the factor of the measured parts under that name"
+    )]
     NoPart,
     /// More factors than [`FACTORS_MAX`].
     #[error("the design has {0} factors; expected at most {FACTORS_MAX}")]
@@ -124,20 +134,33 @@ impl Design {
             if factor.name.trim().is_empty() {
                 return Err(DesignError::NoName(i + 1));
             }
-            if factors[..i].iter().any(|earlier| earlier.name == factor.name) {
+            if factors[..i]
+                .iter()
+                .any(|earlier| earlier.name == factor.name)
+            {
                 return Err(DesignError::SameName(factor.name.clone()));
             }
             if factor.levels == 0 {
                 return Err(DesignError::NoLevels(factor.name.clone()));
             }
         }
-        let part = factors.iter().position(|f| f.name == PART).ok_or(DesignError::NoPart)?;
+        let part = factors
+            .iter()
+            .position(|f| f.name == PART)
+            .ok_or(DesignError::NoPart)?;
         let cells = factors
             .iter()
-            .try_fold(1usize, |cells, f| cells.checked_mul(f.levels).filter(|&n| n <= CELLS_MAX))
+            .try_fold(1usize, |cells, f| {
+                cells.checked_mul(f.levels).filter(|&n| n <= CELLS_MAX)
+            })
             .ok_or(DesignError::TooManyCells)?;
         let containers = containers(&factors)?;
-        Ok(Design { factors, containers, part, cells })
+        Ok(Design {
+            factors,
+            containers,
+            part,
+            cells,
+        })
     }
 
     /// The factors in the order given.
@@ -174,7 +197,12 @@ impl Design {
     /// The cell in words, levels counted from 1: `part 2, appraiser 3`.
     pub(crate) fn cell_in_words(&self, cell: usize) -> String {
         let levels = self.levels_of(cell);
-        let words: Vec<String> = self.factors.iter().zip(levels).map(|(f, level)| format!("{} {}", f.name, level + 1)).collect();
+        let words: Vec<String> = self
+            .factors
+            .iter()
+            .zip(levels)
+            .map(|(f, level)| format!("{} {}", f.name, level + 1))
+            .collect();
         words.join(", ")
     }
 
@@ -195,7 +223,9 @@ impl Design {
 
     /// Members that contain no other member.
     pub(crate) fn inner(&self, term: FactorSet) -> Vec<usize> {
-        term.iter().filter(|&f| !term.iter().any(|g| self.containers[g].has(f))).collect()
+        term.iter()
+            .filter(|&f| !term.iter().any(|g| self.containers[g].has(f)))
+            .collect()
     }
 
     /// Number of combinations of the levels of a term's factors.
@@ -208,7 +238,9 @@ impl Design {
         (0..self.cells)
             .map(|cell| {
                 let levels = self.levels_of(cell);
-                term.iter().fold(0, |index, f| index * self.factors[f].levels as u32 + levels[f] as u32)
+                term.iter().fold(0, |index, f| {
+                    index * self.factors[f].levels as u32 + levels[f] as u32
+                })
             })
             .collect()
     }
@@ -219,10 +251,13 @@ fn containers(factors: &[Factor]) -> Result<Vec<FactorSet>, DesignError> {
     for factor in factors {
         let mut set = FactorSet::default();
         for name in &factor.within {
-            let place = factors.iter().position(|f| &f.name == name).ok_or_else(|| DesignError::UnknownContainer {
-                factor: factor.name.clone(),
-                within: name.clone(),
-            })?;
+            let place = factors
+                .iter()
+                .position(|f| &f.name == name)
+                .ok_or_else(|| DesignError::UnknownContainer {
+                    factor: factor.name.clone(),
+                    within: name.clone(),
+                })?;
             set = set.with(FactorSet::of(place));
         }
         sets.push(set);

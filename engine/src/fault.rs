@@ -33,7 +33,9 @@ pub enum StudyError {
     #[error("there are no readings; expected at least one in every cell")]
     Empty,
     /// Cells with different numbers of readings.
-    #[error("cell {cell} ({place}) holds {count} readings; expected {expected} as in the other cells")]
+    #[error(
+        "cell {cell} ({place}) holds {count} readings; expected {expected} as in the other cells"
+    )]
     Unbalanced {
         /// Index of the cell.
         cell: usize,
@@ -45,10 +47,14 @@ pub enum StudyError {
         expected: usize,
     },
     /// Fewer than two parts.
-    #[error("the design has {0} part; expected at least 2, because the spread of parts is worked out too")]
+    #[error(
+        "the design has {0} part; expected at least 2, because the spread of parts is worked out too"
+    )]
     TooFewParts(usize),
     /// Readings spread over more orders of magnitude than squares can hold.
-    #[error("the readings differ by up to {0:e}; expected differences between 1e-140 and 1e140, or a unit in which they are")]
+    #[error(
+        "the readings differ by up to {0:e}; expected differences between 1e-140 and 1e140, or a unit in which they are"
+    )]
     Spread(f64),
     /// A setting out of range.
     #[error("{setting} is {value}; expected {expected}")]

@@ -59,7 +59,12 @@ pub(crate) struct Bounds {
 impl Bounds {
     /// Limits of an increasing function of the figure.
     pub(crate) fn rising(self, f: impl Fn(f64) -> f64) -> Bounds {
-        Bounds { lower: f(self.lower), upper: f(self.upper), at_least: f(self.at_least), ..self }
+        Bounds {
+            lower: f(self.lower),
+            upper: f(self.upper),
+            at_least: f(self.at_least),
+            ..self
+        }
     }
 }
 
@@ -78,25 +83,53 @@ impl Figure {
     }
 
     pub(crate) fn without_limits(estimate: f64, why: impl Into<Cow<'static, str>>) -> Figure {
-        Figure { estimate: finite(estimate), ..Figure::absent(why) }
+        Figure {
+            estimate: finite(estimate),
+            ..Figure::absent(why)
+        }
     }
 
     pub(crate) fn absent(why: impl Into<Cow<'static, str>>) -> Figure {
-        Figure { estimate: None, lower: None, upper: None, at_least: None, interval: None, open: None, why: Some(why.into()) }
+        Figure {
+            estimate: None,
+            lower: None,
+            upper: None,
+            at_least: None,
+            interval: None,
+            open: None,
+            why: Some(why.into()),
+        }
     }
 
     /// The same function, increasing, of the estimate and of every limit.
     pub(crate) fn rising(&self, f: impl Fn(f64) -> f64) -> Figure {
         let f = |x: Option<f64>| x.map(&f).and_then(finite);
-        Figure { estimate: f(self.estimate), lower: f(self.lower), upper: f(self.upper), at_least: f(self.at_least), ..self.clone() }
+        let mut risen = Figure {
+            estimate: f(self.estimate),
+            lower: f(self.lower),
+            upper: f(self.upper),
+            at_least: f(self.at_least),
+            ..self.clone()
+        };
+        if risen.why.is_none() && risen.numbers().contains(&None) {
+            risen.why = Some(Cow::Borrowed("a number is too large to be written"));
+        }
+        risen
+    }
+
+    fn numbers(&self) -> [Option<f64>; 4] {
+        [self.estimate, self.lower, self.upper, self.at_least]
     }
 
     /// Whether the estimate lies outside its two-sided limits by more than rounding.
     pub(crate) fn contradicts_itself(&self) -> bool {
         const ROUNDING: f64 = 1e-12;
-        let Some(estimate) = self.estimate else { return false };
+        let Some(estimate) = self.estimate else {
+            return false;
+        };
         let slack = ROUNDING * estimate.abs();
-        self.lower.is_some_and(|l| estimate < l - slack) || self.upper.is_some_and(|u| estimate > u + slack)
+        self.lower.is_some_and(|l| estimate < l - slack)
+            || self.upper.is_some_and(|u| estimate > u + slack)
     }
 }
 

@@ -20,7 +20,8 @@ const ONE_LEVEL: &str = "the design has no factor beside the part with two or mo
 const NOT_APART: &str = "with one trial a part's spread and the gauge's cannot be told apart";
 const NO_REPEATS: &str = "the mean square within cells is zero, so the data set no limits";
 const GAUGE_ZERO: &str = "the gauge variance is zero";
-const REST_ZERO: &str = "the other variances add up to an estimate that is not above zero, so the data set no limits";
+const REST_ZERO: &str =
+    "the other variances add up to an estimate that is not above zero, so the data set no limits";
 /// The handbooks' factor; √2 is 0.3 % larger.
 const NDC_FACTOR: f64 = 1.41;
 
@@ -70,11 +71,26 @@ impl Evidence<'_> {
         let e = self.estimates;
         let share_of_tv = ShareOfTv { evidence: self };
         Figures {
-            repeatability: self.spread(q.repeatability.as_ref(), e.repeatability, NOT_APART, share_of_tv.repeatability()),
-            reproducibility: self.spread(q.reproducibility.as_ref(), e.reproducibility, ONE_LEVEL, share_of_tv.reproducibility()),
+            repeatability: self.spread(
+                q.repeatability.as_ref(),
+                e.repeatability,
+                NOT_APART,
+                share_of_tv.repeatability(),
+            ),
+            reproducibility: self.spread(
+                q.reproducibility.as_ref(),
+                e.reproducibility,
+                ONE_LEVEL,
+                share_of_tv.reproducibility(),
+            ),
             gauge: self.spread(q.gauge.as_ref(), e.gauge, NOT_APART, share_of_tv.gauge()),
             part: self.spread(q.part.as_ref(), e.part, NOT_APART, share_of_tv.part()),
-            total: self.spread(Some(&q.total), Some(e.total), NOT_APART, share_of_tv.total()),
+            total: self.spread(
+                Some(&q.total),
+                Some(e.total),
+                NOT_APART,
+                share_of_tv.total(),
+            ),
         }
     }
 
@@ -82,18 +98,30 @@ impl Evidence<'_> {
         if self.all_equal {
             return Figure::absent(ALL_EQUAL);
         }
-        let (Some(part), Some(gauge)) = (self.estimates.part, self.estimates.gauge) else { return Figure::absent(NOT_APART) };
+        let (Some(part), Some(gauge)) = (self.estimates.part, self.estimates.gauge) else {
+            return Figure::absent(NOT_APART);
+        };
         if gauge == 0.0 {
             return Figure::absent(GAUGE_ZERO);
         }
         let bounds = self.part_over_gauge();
-        with_limits(part / gauge, bounds.map(|r| Bounds { lower: r.two_sided.0, upper: r.two_sided.1, at_least: r.one_sided.0, interval: r.interval }))
+        with_limits(
+            part / gauge,
+            bounds.map(|r| Bounds {
+                lower: r.two_sided.0,
+                upper: r.two_sided.1,
+                at_least: r.one_sided.0,
+                interval: r.interval,
+            }),
+        )
     }
 
     pub(crate) fn ndc(&self, part_to_gauge: &Figure) -> Ndc {
         let categories = |ratio: Option<f64>| ratio.map(|r| (2.0 * r).sqrt());
         Ndc {
-            whole: part_to_gauge.estimate.map(|r| (NDC_FACTOR * r.sqrt()).floor() as u64),
+            whole: part_to_gauge
+                .estimate
+                .map(|r| (NDC_FACTOR * r.sqrt()).floor() as u64),
             estimate: categories(part_to_gauge.estimate),
             lower: categories(part_to_gauge.lower),
             upper: categories(part_to_gauge.upper),
@@ -104,7 +132,12 @@ impl Evidence<'_> {
     pub(crate) fn judged_lower(&self) -> Option<f64> {
         let constants = self.basis.judging.as_ref()?;
         let gauge = self.basis.quantities.gauge.as_ref()?;
-        let per_sd = self.share.per_sd.as_ref().ok().filter(|_| !self.all_equal)?;
+        let per_sd = self
+            .share
+            .per_sd
+            .as_ref()
+            .ok()
+            .filter(|_| !self.all_equal)?;
         let variance = match gauge.members().collect::<Vec<_>>()[..] {
             [only] if self.ms[only] > 0.0 => constants.lower(&gauge.weights(), self.ms),
             [_] => return None,
@@ -113,7 +146,13 @@ impl Evidence<'_> {
         Some(variance.max(0.0).sqrt() * per_sd)
     }
 
-    fn spread(&self, combination: Option<&Combination>, estimate: Option<f64>, absent: &'static str, share_of_tv: Figure) -> Spread {
+    fn spread(
+        &self,
+        combination: Option<&Combination>,
+        estimate: Option<f64>,
+        absent: &'static str,
+        share_of_tv: Figure,
+    ) -> Spread {
         let variance = match (combination, estimate) {
             (Some(combination), Some(estimate)) => self.variance(combination, estimate),
             _ => Figure::absent(absent),
@@ -125,7 +164,12 @@ impl Evidence<'_> {
             Ok(_) if self.all_equal => Figure::absent(ALL_EQUAL),
             Ok(per_sd) => sd.rising(|sd| sd * per_sd),
         };
-        Spread { variance, sd, share_of_tolerance, share_of_tv }
+        Spread {
+            variance,
+            sd,
+            share_of_tolerance,
+            share_of_tv,
+        }
     }
 
     fn variance(&self, combination: &Combination, estimate: f64) -> Figure {
@@ -134,7 +178,11 @@ impl Evidence<'_> {
         if alone && self.ms[error] == 0.0 && !self.all_equal {
             return Figure::without_limits(estimate, NO_REPEATS);
         }
-        let bounds = if alone { self.exact(error) } else { self.modified_large_sample(&combination.weights()) };
+        let bounds = if alone {
+            self.exact(error)
+        } else {
+            self.modified_large_sample(&combination.weights())
+        };
         Figure::new(estimate, bounds.rising(|x| x.max(0.0)))
     }
 
@@ -172,7 +220,11 @@ impl Evidence<'_> {
         }
         let (n, d) = (numerator.weights(), denominator.weights());
         let limits = |constants: &Constants| constants.ratio(&n, &d, self.ms);
-        Some(RatioBounds { two_sided: limits(&self.basis.two_sided)?, one_sided: limits(&self.basis.one_sided)?, interval: Interval::MlsRoot })
+        Some(RatioBounds {
+            two_sided: limits(&self.basis.two_sided)?,
+            one_sided: limits(&self.basis.one_sided)?,
+            interval: Interval::MlsRoot,
+        })
     }
 
     /// The exact limits of `variance of the only term / variance of the error`.
@@ -182,10 +234,15 @@ impl Evidence<'_> {
         }
         let (n, m) = (self.basis.df[0], self.basis.df[1]);
         let observed = self.ms[0] / self.ms[1];
-        let limit = |side, a| ((observed / f(side, a, n, m) - 1.0) / readings_per_level as f64).max(0.0);
+        let limit =
+            |side, a| ((observed / f(side, a, n, m) - 1.0) / readings_per_level as f64).max(0.0);
         let limits = |a| (limit(Side::Above, a), limit(Side::Below, a));
         let alpha = 1.0 - self.confidence;
-        Some(RatioBounds { two_sided: limits(alpha / 2.0), one_sided: limits(alpha), interval: Interval::Exact })
+        Some(RatioBounds {
+            two_sided: limits(alpha / 2.0),
+            one_sided: limits(alpha),
+            interval: Interval::Exact,
+        })
     }
 }
 
@@ -206,40 +263,78 @@ impl ShareOfTv<'_> {
         let q = &self.evidence.basis.quantities;
         let ratio = || {
             let repeatability = q.repeatability.as_ref()?;
-            self.evidence.ratio(&q.total.minus(repeatability), repeatability)
+            self.evidence
+                .ratio(&q.total.minus(repeatability), repeatability)
         };
-        self.figure(self.evidence.estimates.repeatability, NOT_APART, As::Denominator, ratio)
+        self.figure(
+            self.evidence.estimates.repeatability,
+            NOT_APART,
+            As::Denominator,
+            ratio,
+        )
     }
 
     fn reproducibility(&self) -> Figure {
         let q = &self.evidence.basis.quantities;
         let ratio = || {
             let reproducibility = q.reproducibility.as_ref()?;
-            self.evidence.ratio(reproducibility, &q.total.minus(reproducibility))
+            self.evidence
+                .ratio(reproducibility, &q.total.minus(reproducibility))
         };
-        self.figure(self.evidence.estimates.reproducibility, ONE_LEVEL, As::Numerator, ratio)
+        self.figure(
+            self.evidence.estimates.reproducibility,
+            ONE_LEVEL,
+            As::Numerator,
+            ratio,
+        )
     }
 
     fn gauge(&self) -> Figure {
-        self.figure(self.evidence.estimates.gauge, NOT_APART, As::Denominator, || self.evidence.part_over_gauge())
+        self.figure(
+            self.evidence.estimates.gauge,
+            NOT_APART,
+            As::Denominator,
+            || self.evidence.part_over_gauge(),
+        )
     }
 
     fn part(&self) -> Figure {
-        self.figure(self.evidence.estimates.part, NOT_APART, As::Numerator, || self.evidence.part_over_gauge())
+        self.figure(
+            self.evidence.estimates.part,
+            NOT_APART,
+            As::Numerator,
+            || self.evidence.part_over_gauge(),
+        )
     }
 
     fn total(&self) -> Figure {
         if self.evidence.all_equal {
             return Figure::absent(ALL_EQUAL);
         }
-        Figure::new(1.0, Bounds { lower: 1.0, upper: 1.0, at_least: 1.0, interval: Interval::Exact })
+        Figure::new(
+            1.0,
+            Bounds {
+                lower: 1.0,
+                upper: 1.0,
+                at_least: 1.0,
+                interval: Interval::Exact,
+            },
+        )
     }
 
-    fn figure(&self, variance: Option<f64>, absent: &'static str, place: As, ratio: impl Fn() -> Option<RatioBounds>) -> Figure {
+    fn figure(
+        &self,
+        variance: Option<f64>,
+        absent: &'static str,
+        place: As,
+        ratio: impl Fn() -> Option<RatioBounds>,
+    ) -> Figure {
         if self.evidence.all_equal {
             return Figure::absent(ALL_EQUAL);
         }
-        let Some(variance) = variance else { return Figure::absent(absent) };
+        let Some(variance) = variance else {
+            return Figure::absent(absent);
+        };
         let estimate = (variance / self.evidence.estimates.total).sqrt();
         let bounds = ratio().map(|r| {
             let ((lower, upper), (one_lower, one_upper)) = (r.two_sided, r.one_sided);
@@ -264,7 +359,11 @@ impl ShareOfTv<'_> {
 
 /// `√(R / (1 + R))`, 1 for an infinite ratio.
 fn of_numerator(ratio: f64) -> f64 {
-    if ratio.is_infinite() { 1.0 } else { (ratio / (1.0 + ratio)).sqrt() }
+    if ratio.is_infinite() {
+        1.0
+    } else {
+        (ratio / (1.0 + ratio)).sqrt()
+    }
 }
 
 /// `√(1 / (1 + R))`.

@@ -38,7 +38,8 @@ pub use fault::StudyError;
 pub use figure::{Figure, Interval, Open};
 pub use model::{Line, Model, WITHIN_CELLS};
 pub use record::{
-    Against, ChanceAbove, Component, Figures, InteractionChoice, Layout, MeanSquare, Ndc, OtherReading, Remark, Reml, Risk, Spread, Study,
+    Against, ChanceAbove, Component, Figures, InteractionChoice, Layout, MeanSquare, Ndc,
+    OtherReading, Remark, Reml, Risk, Spread, Study,
 };
 pub use settings::{Interaction, Judge, Limits, OneSided, Process, Settings, Tolerance};
 pub use standing::{Standing, standing};

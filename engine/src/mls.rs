@@ -47,11 +47,26 @@ impl Constants {
         Constants::where_needed(df, a, |q| c[q] > 0.0, |s| c[s] < 0.0)
     }
 
-    fn where_needed(df: &[f64], a: f64, above: impl Fn(usize) -> bool, below: impl Fn(usize) -> bool) -> Self {
+    fn where_needed(
+        df: &[f64],
+        a: f64,
+        above: impl Fn(usize) -> bool,
+        below: impl Fn(usize) -> bool,
+    ) -> Self {
         let len = df.len();
         let shortfall = |n: f64| 1.0 - n / chi_square(Side::Above, a, n);
-        let g = (0..len).map(|q| if above(q) { shortfall(df[q]) } else { 0.0 }).collect();
-        let h = (0..len).map(|s| if below(s) { df[s] / chi_square(Side::Below, a, df[s]) - 1.0 } else { 0.0 }).collect();
+        let g = (0..len)
+            .map(|q| if above(q) { shortfall(df[q]) } else { 0.0 })
+            .collect();
+        let h = (0..len)
+            .map(|s| {
+                if below(s) {
+                    df[s] / chi_square(Side::Below, a, df[s]) - 1.0
+                } else {
+                    0.0
+                }
+            })
+            .collect();
         let mixed = (0..len).any(&below);
         let mut ratio = vec![0.0; len * len];
         let mut joint = vec![0.0; len * len];
@@ -65,13 +80,24 @@ impl Constants {
                 }
             }
         }
-        Constants { signs_may_change: a > SIGNS_CHANGE_ABOVE, df: df.to_vec(), g, h, f: ratio, joint }
+        Constants {
+            signs_may_change: a > SIGNS_CHANGE_ABOVE,
+            df: df.to_vec(),
+            g,
+            h,
+            f: ratio,
+            joint,
+        }
     }
 
     /// One-sided lower limit of `sum c_q MS_q`; may be negative.
     pub(crate) fn lower(&self, c: &[f64], ms: &[f64]) -> f64 {
         let len = self.df.len();
-        let largest = c.iter().zip(ms).map(|(c, ms)| (c * ms).abs()).fold(0.0, f64::max);
+        let largest = c
+            .iter()
+            .zip(ms)
+            .map(|(c, ms)| (c * ms).abs())
+            .fold(0.0, f64::max);
         if largest == 0.0 {
             return 0.0;
         }
@@ -122,23 +148,40 @@ impl Constants {
         let (n, m) = (self.df[q], self.df[t]);
         let w = n + m;
         let joint = signed_square(self.joint[q * self.df.len() + t]);
-        joint * w * w / (n * m) - signed_square(self.g[q]) * n / m - signed_square(self.g[t]) * m / n
+        joint * w * w / (n * m)
+            - signed_square(self.g[q]) * n / m
+            - signed_square(self.g[t]) * m / n
     }
 
     /// Limits of `numerator / denominator` at zero or above; the upper one may be infinite.
     ///
     /// `None` when the denominator's estimate is not above zero.
-    pub(crate) fn ratio(&self, numerator: &[f64], denominator: &[f64], ms: &[f64]) -> Option<(f64, f64)> {
+    pub(crate) fn ratio(
+        &self,
+        numerator: &[f64],
+        denominator: &[f64],
+        ms: &[f64],
+    ) -> Option<(f64, f64)> {
         let value = |c: &[f64]| -> f64 { c.iter().zip(ms).map(|(c, ms)| c * ms).sum() };
         if value(denominator) <= 0.0 {
             return None;
         }
         let estimate = value(numerator) / value(denominator);
-        let difference = |rho: f64| -> Vec<f64> { numerator.iter().zip(denominator).map(|(n, d)| n - rho * d).collect() };
+        let difference = |rho: f64| -> Vec<f64> {
+            numerator
+                .iter()
+                .zip(denominator)
+                .map(|(n, d)| n - rho * d)
+                .collect()
+        };
         let lower_at = |rho: f64| self.lower(&difference(rho), ms);
         let upper_at = |rho: f64| self.upper(&difference(rho), ms);
 
-        let lower = if estimate > 0.0 && lower_at(0.0) > 0.0 { root::between(lower_at, 0.0, estimate) } else { 0.0 };
+        let lower = if estimate > 0.0 && lower_at(0.0) > 0.0 {
+            root::between(lower_at, 0.0, estimate)
+        } else {
+            0.0
+        };
         let upper = if self.lower(denominator, ms) <= 0.0 {
             f64::INFINITY
         } else if upper_at(0.0) > 0.0 {
@@ -146,7 +189,11 @@ impl Constants {
             while upper_at(end) > 0.0 && end.is_finite() {
                 end *= 2.0;
             }
-            if end.is_finite() { root::between(upper_at, estimate.max(0.0), end) } else { f64::INFINITY }
+            if end.is_finite() {
+                root::between(upper_at, estimate.max(0.0), end)
+            } else {
+                f64::INFINITY
+            }
         } else {
             0.0
         };
@@ -167,4 +214,85 @@ pub(crate) fn lower_at_log_odds(c: &[f64], df: &[f64], ms: &[f64], log_odds: f64
 
 fn signed_square(x: f64) -> f64 {
     x * x.abs()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn close(found: f64, expected: f64, digits: i32) {
+        let error = ((found - expected) / expected).abs();
+        assert!(
+            error < 10f64.powi(-digits),
+            "found {found:e}, expected {expected:e}"
+        );
+    }
+
+    /// Graybill & Wang: with one mean square the limits are the exact ones, at any confidence.
+    #[test]
+    fn one_mean_square_has_its_chi_square_limits() {
+        for df in [1.0, 2.0, 18.0, 60.0] {
+            for a in [0.005, 0.05, 0.3, 0.45] {
+                let constants = Constants::all(&[df], a);
+                close(
+                    constants.lower(&[2.0], &[3.0]),
+                    6.0 * df / chi_square(Side::Above, a, df),
+                    13,
+                );
+                close(
+                    constants.upper(&[2.0], &[3.0]),
+                    6.0 * df / chi_square(Side::Below, a, df),
+                    13,
+                );
+            }
+        }
+    }
+
+    /// Ting et al.: the lower limit of a difference is 0 when F is just significant.
+    #[test]
+    fn a_difference_has_lower_limit_zero_where_f_is_significant() {
+        for (n, m) in [(9.0, 18.0), (2.0, 60.0), (1.0, 1.0), (120.0, 3.0)] {
+            let a = 0.025;
+            let constants = Constants::all(&[n, m], a);
+            let upper_f = f(Side::Above, a, n, m);
+            assert!(constants.lower(&[0.5, -0.25], &[0.5 * upper_f, 1.0]).abs() < 1e-9 * upper_f);
+            let lower_f = f(Side::Below, a, n, m);
+            assert!(constants.upper(&[0.5, -0.25], &[0.5 * lower_f, 1.0]).abs() < 1e-9);
+        }
+    }
+
+    /// With endless df the subtracted mean square is known, and the exact limits shift by it.
+    #[test]
+    fn a_known_subtrahend_shifts_the_exact_limits() {
+        let (n, a) = (9.0, 0.025);
+        let constants = Constants::all(&[n, 1e6], a);
+        close(
+            constants.lower(&[1.0, -1.0], &[5.0, 0.5]),
+            5.0 * n / chi_square(Side::Above, a, n) - 0.5,
+            3,
+        );
+        close(
+            constants.upper(&[1.0, -1.0], &[5.0, 0.5]),
+            5.0 * n / chi_square(Side::Below, a, n) - 0.5,
+            3,
+        );
+    }
+
+    #[test]
+    fn the_limit_falls_as_confidence_grows() {
+        let (df, ms) = ([9.0, 2.0, 18.0, 60.0], [5.0, 1.5, 0.02, 0.05]);
+        for c in [
+            [0.0, 0.04, 0.3, 0.6],
+            [0.1, 0.0, -0.1, 0.0],
+            [0.1, 0.04, 0.2, 0.6],
+        ] {
+            let limits: Vec<f64> = (-100..=100)
+                .map(|t| lower_at_log_odds(&c, &df, &ms, f64::from(t) * 0.2))
+                .collect();
+            assert!(
+                limits.windows(2).all(|pair| pair[1] <= pair[0]),
+                "weights {c:?}"
+            );
+        }
+    }
 }

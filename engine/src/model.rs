@@ -66,7 +66,12 @@ impl Model {
     /// the error, as with one trial, the largest term becomes the error.
     pub fn estimable(design: &Design, trials: usize) -> Model {
         let full = Model::full(design, trials);
-        let mut terms: Vec<FactorSet> = full.lines.iter().filter(|line| line.df > 0).filter_map(|line| line.set).collect();
+        let mut terms: Vec<FactorSet> = full
+            .lines
+            .iter()
+            .filter(|line| line.df > 0)
+            .filter_map(|line| line.set)
+            .collect();
         if full.error().df == 0 {
             terms.pop();
         }
@@ -75,8 +80,16 @@ impl Model {
 
     /// The same model without some of its lines; the error takes them in.
     pub(crate) fn without(&self, design: &Design, dropped: &[usize]) -> Model {
-        let kept = self.lines.iter().enumerate().filter(|(i, _)| !dropped.contains(i));
-        Model::of(design, self.readings / design.cells(), kept.filter_map(|(_, line)| line.set).collect())
+        let kept = self
+            .lines
+            .iter()
+            .enumerate()
+            .filter(|(i, _)| !dropped.contains(i));
+        Model::of(
+            design,
+            self.readings / design.cells(),
+            kept.filter_map(|(_, line)| line.set).collect(),
+        )
     }
 
     fn of(design: &Design, trials: usize, terms: Vec<FactorSet>) -> Model {
@@ -84,14 +97,31 @@ impl Model {
         let mut lines: Vec<Line> = Vec::with_capacity(terms.len() + 1);
         for set in terms {
             let cells = design.combinations(set);
-            let inside: usize = lines.iter().filter(|l| l.set.is_some_and(|s| set.holds_more_than(s))).map(|l| l.df).sum();
+            let inside: usize = lines
+                .iter()
+                .filter(|l| l.set.is_some_and(|s| set.holds_more_than(s)))
+                .map(|l| l.df)
+                .sum();
             lines.push(term(design, set, cells, cells - 1 - inside));
         }
         let df = readings - 1 - lines.iter().map(|l| l.df).sum::<usize>();
         let none = Vec::new();
-        lines.push(Line { name: WITHIN_CELLS.to_owned(), of: none.clone(), within: none, cells: readings, df, set: None, interaction: false });
+        lines.push(Line {
+            name: WITHIN_CELLS.to_owned(),
+            of: none.clone(),
+            within: none,
+            cells: readings,
+            df,
+            set: None,
+            interaction: false,
+        });
         let part = lines.iter().position(|l| l.set == Some(design.part_term()));
-        Model { readings, weights: inversion(&lines), lines, part }
+        Model {
+            readings,
+            weights: inversion(&lines),
+            lines,
+            part,
+        }
     }
 
     /// All lines, the error last.
@@ -106,14 +136,23 @@ impl Model {
 
     /// Weights of the components of all lines in the expected mean square of one.
     pub fn expected_mean_square(&self, line: usize) -> Vec<usize> {
-        let holds = |l: &Line| if l.holds(&self.lines[line]) { self.readings / l.cells } else { 0 };
+        let holds = |l: &Line| {
+            if l.holds(&self.lines[line]) {
+                self.readings / l.cells
+            } else {
+                0
+            }
+        };
         self.lines.iter().map(holds).collect()
     }
 
     /// The variance component of a line as a combination of mean squares.
     pub fn component(&self, line: usize) -> Combination {
         let cells = self.lines[line].cells as i64;
-        Combination::new(self.weights[line].iter().map(|w| w * cells).collect(), self.readings)
+        Combination::new(
+            self.weights[line].iter().map(|w| w * cells).collect(),
+            self.readings,
+        )
     }
 
     /// What the mean square of a line is tested against; `None` for the error.
@@ -121,13 +160,28 @@ impl Model {
         if self.lines[line].set.is_none() {
             return None;
         }
-        let weights = self.weights[line].iter().enumerate().map(|(q, w)| if q == line { 0 } else { -w });
+        let weights = self.weights[line]
+            .iter()
+            .enumerate()
+            .map(|(q, w)| if q == line { 0 } else { -w });
         Some(Combination::new(weights.collect(), 1))
     }
 
     /// The sum of the components of some lines; `None` when there are none.
     pub(crate) fn sum(&self, lines: impl Iterator<Item = usize>) -> Option<Combination> {
-        lines.map(|line| self.component(line)).reduce(|a, b| a.plus(&b))
+        lines
+            .map(|line| self.component(line))
+            .reduce(|a, b| a.plus(&b))
+    }
+
+    /// The largest term of the design when this model's error holds it for want of a second trial.
+    pub(crate) fn taken_in_by_error(&self, design: &Design) -> Option<String> {
+        let full = Model::full(design, self.readings / design.cells());
+        let largest = full
+            .lines
+            .iter()
+            .rfind(|line| line.df > 0 && line.set.is_some())?;
+        (full.error().df == 0).then(|| largest.name.clone())
     }
 
     pub(crate) fn readings(&self) -> usize {
@@ -150,13 +204,22 @@ impl Model {
 
     /// Lines that join the part with other factors, largest first.
     pub(crate) fn interactions(&self) -> Vec<usize> {
-        (0..self.lines.len()).rev().filter(|&i| self.lines[i].interaction).collect()
+        (0..self.lines.len())
+            .rev()
+            .filter(|&i| self.lines[i].interaction)
+            .collect()
     }
 
     /// Whether no other term holds this one, so that the error alone would take it in.
     pub(crate) fn is_outermost(&self, line: usize) -> bool {
-        let terms = self.lines.iter().enumerate().filter(|(_, l)| l.set.is_some());
-        terms.filter(|&(i, _)| i != line).all(|(_, l)| !l.holds(&self.lines[line]))
+        let terms = self
+            .lines
+            .iter()
+            .enumerate()
+            .filter(|(_, l)| l.set.is_some());
+        terms
+            .filter(|&(i, _)| i != line)
+            .all(|(_, l)| !l.holds(&self.lines[line]))
     }
 }
 
@@ -164,13 +227,25 @@ fn term(design: &Design, set: FactorSet, cells: usize, df: usize) -> Line {
     let inner = design.inner(set);
     let name = |f: usize| design.factors()[f].name.clone();
     let of: Vec<String> = inner.iter().map(|&f| name(f)).collect();
-    let within: Vec<String> = set.iter().filter(|f| !inner.contains(f)).map(name).collect();
+    let within: Vec<String> = set
+        .iter()
+        .filter(|f| !inner.contains(f))
+        .map(name)
+        .collect();
     let mut words = of.join(" × ");
     if !within.is_empty() {
         words = format!("{words} within {}", within.join(" × "));
     }
     let interaction = inner.len() > 1 && inner.contains(&design.part());
-    Line { name: words, of, within, cells, df, set: Some(set), interaction }
+    Line {
+        name: words,
+        of,
+        within,
+        cells,
+        df,
+        set: Some(set),
+        interaction,
+    }
 }
 
 fn inversion(lines: &[Line]) -> Vec<Vec<i64>> {
@@ -179,7 +254,10 @@ fn inversion(lines: &[Line]) -> Vec<Vec<i64>> {
         weights[t] = 1;
         for s in t + 1..lines.len() {
             if lines[s].holds(&lines[t]) {
-                weights[s] = -(t..s).filter(|&u| lines[s].holds(&lines[u])).map(|u| weights[u]).sum::<i64>();
+                weights[s] = -(t..s)
+                    .filter(|&u| lines[s].holds(&lines[u]))
+                    .map(|u| weights[u])
+                    .sum::<i64>();
             }
         }
         weights

@@ -3,7 +3,7 @@
 //! A quantile is found by Newton steps on the log of the smaller tail against the log of the point. Both
 //! distributions are log-concave there, so the steps come from one side and cannot cycle.
 
-use crate::tails::{self, Tails, ln_gamma_1p, stirling_error};
+use crate::tails::{self, Tails, ln_gamma_1p};
 
 const STEPS_MAX: usize = 200;
 /// Points below this are given by the first term of the power series alone.
@@ -27,55 +27,83 @@ pub fn chi_square(side: Side, p: f64, df: f64) -> f64 {
     // Wilson & Hilferty 1931.
     let spread = 2.0 / (9.0 * df);
     let cube = 1.0 - spread + normal(side, p) * spread.sqrt();
-    let guess = if cube > 0.2 { (a * cube.powi(3)).ln() } else { f64::NAN };
+    let guess = if cube > 0.2 {
+        (a * cube.powi(3)).ln()
+    } else {
+        f64::NAN
+    };
     2.0 * quantile(side, p, guess, first_term, |x| tails::gamma(a, x))
 }
 
 /// The value of F with `df1` and `df2` degrees of freedom that has probability `p` on `side` of it.
+///
+/// `p` strictly between 0 and 1, `df1` and `df2` from 0.02 to 1e6.
 pub fn f(side: Side, p: f64, df1: f64, df2: f64) -> f64 {
+    match side {
+        Side::Below => f_below(p, df1, df2),
+        Side::Above => 1.0 / f_below(p, df2, df1),
+    }
+}
+
+fn f_below(p: f64, df1: f64, df2: f64) -> f64 {
     let (a, b) = (df1 / 2.0, df2 / 2.0);
-    let (low_side, swapped) = if side == Side::Below { (a, b) } else { (b, a) };
-    // Near zero the lower tail of F is f^a (a/b)^a / (a B(a, b)); the upper tail of F is the lower one of 1/F.
-    let first_term = |ln_p: f64| {
-        let (a, b) = (low_side, swapped);
-        let ln_a_beta = ln_gamma_1p(a) + ln_gamma_1p(b) - ln_gamma_1p(a + b) + ((a + b) / b).ln();
-        (ln_p + ln_a_beta) / a + (b / a).ln()
-    };
-    // Work below: the upper tail of F(df1, df2) is the lower tail of 1/F(df2, df1).
-    let (s1, s2) = (2.0 / (9.0 * 2.0 * low_side), 2.0 / (9.0 * 2.0 * swapped));
-    let guess = ratio_guess(s1, s2, normal(Side::Below, p));
-    let value = quantile(Side::Below, p, guess, first_term, |x| tails::beta(low_side, swapped, x));
-    if side == Side::Below { value } else { 1.0 / value }
+    // Near zero the lower tail is (a f / b)^a / (a B(a, b)).
+    let ln_a_beta = ln_gamma_1p(a) + ln_gamma_1p(b) - ln_gamma_1p(a + b) + (a / b).ln_1p();
+    let first_term = |ln_p: f64| (ln_p + ln_a_beta) / a + (b / a).ln();
+    quantile(Side::Below, p, f_guess(p, df1, df2), first_term, |x| {
+        tails::beta(a, b, x)
+    })
 }
 
 /// Probability of chi-square with `df` degrees of freedom above `x`.
 pub fn chi_square_above(x: f64, df: f64) -> f64 {
-    if x > 0.0 { tails::gamma(df / 2.0, x / 2.0).upper.clamp(0.0, 1.0) } else { 1.0 }
+    if x > 0.0 {
+        tails::gamma(df / 2.0, x / 2.0).upper.clamp(0.0, 1.0)
+    } else {
+        1.0
+    }
 }
 
 /// Probability of F with `df1` and `df2` degrees of freedom above `x`.
 pub fn f_above(x: f64, df1: f64, df2: f64) -> f64 {
-    if x > 0.0 { tails::beta(df1 / 2.0, df2 / 2.0, x).upper.clamp(0.0, 1.0) } else { 1.0 }
+    if x > 0.0 {
+        tails::beta(df1 / 2.0, df2 / 2.0, x).upper.clamp(0.0, 1.0)
+    } else {
+        1.0
+    }
 }
 
 /// Log of F by the cube-root approximation to both chi-squares (Paulson 1942).
-fn ratio_guess(s1: f64, s2: f64, z: f64) -> f64 {
+fn f_guess(p: f64, df1: f64, df2: f64) -> f64 {
+    let z = normal(Side::Below, p);
+    let (s1, s2) = (2.0 / (9.0 * df1), 2.0 / (9.0 * df2));
     let (m1, m2) = (1.0 - s1, 1.0 - s2);
-    let a = m2 * m2 - z * z * s2;
-    let under = m1 * m1 * s2 + m2 * m2 * s1 - z * z * s1 * s2;
-    if a <= 0.0 || under < 0.0 || m1 <= 0.0 {
-        return f64::NAN;
+    let divisor = m2 * m2 - z * z * s2;
+    let under_root = m1 * m1 * s2 + m2 * m2 * s1 - z * z * s1 * s2;
+    let cube = (m1 * m2 + z * under_root.sqrt()) / divisor;
+    if divisor > 0.0 && cube > 0.2 {
+        3.0 * cube.ln()
+    } else {
+        f64::NAN
     }
-    let root = (m1 * m2 + z * under.sqrt()) / a;
-    if root > 0.2 { 3.0 * root.ln() } else { f64::NAN }
 }
 
-fn quantile(side: Side, p: f64, guess: f64, first_term: impl Fn(f64) -> f64, at: impl Fn(f64) -> Tails) -> f64 {
+fn quantile(
+    side: Side,
+    p: f64,
+    guess: f64,
+    first_term: impl Fn(f64) -> f64,
+    at: impl Fn(f64) -> Tails,
+) -> f64 {
     let start = first_term(p.ln());
     if side == Side::Below && start < FIRST_TERM_BELOW {
         return start.exp();
     }
-    let mut log = if guess.is_finite() { guess } else { start.clamp(FIRST_TERM_BELOW, 700.0) };
+    let mut log = if guess.is_finite() {
+        guess
+    } else {
+        start.clamp(FIRST_TERM_BELOW, 700.0)
+    };
     let mut smallest = f64::INFINITY;
     // The tail that is small decides; the other one is known to a relative error of its complement.
     let wanted = if p <= 0.5 { side } else { opposite(side) };
@@ -86,7 +114,11 @@ fn quantile(side: Side, p: f64, guess: f64, first_term: impl Fn(f64) -> f64, at:
             Side::Below => (tails.lower, 1.0),
             Side::Above => (tails.upper, -1.0),
         };
-        let step = if tail > 0.0 && tails.slope > 0.0 { sign * (target / tail).ln() * tail / tails.slope } else { -sign * 0.5 };
+        let step = if tail > 0.0 && tails.slope > 0.0 {
+            sign * (target / tail).ln() * tail / tails.slope
+        } else {
+            -sign * 0.5
+        };
         let step = step.clamp(-20.0, 20.0);
         log += step;
         if step.abs() <= 4.0 * f64::EPSILON || (step.abs() < 1e-11 && step.abs() >= smallest) {
@@ -108,7 +140,9 @@ fn opposite(side: Side) -> Side {
 fn normal(side: Side, p: f64) -> f64 {
     let tail = p.min(1.0 - p);
     let t = (-2.0 * tail.ln()).sqrt();
-    let z = t - (2.515517 + t * (0.802853 + t * 0.010328)) / (1.0 + t * (1.432788 + t * (0.189269 + t * 0.001308)));
+    let z = t
+        - (2.515517 + t * (0.802853 + t * 0.010328))
+            / (1.0 + t * (1.432788 + t * (0.189269 + t * 0.001308)));
     let below = if p < 0.5 { -z } else { z };
     if side == Side::Below { below } else { -below }
 }

@@ -32,7 +32,10 @@ pub(crate) fn between(f: impl Fn(f64) -> f64, a: f64, b: f64) -> f64 {
                 (2.0 * half * s, 1.0 - s)
             } else {
                 let (q, r) = (fa / fc, fb / fc);
-                (s * (2.0 * half * q * (q - r) - (b - a) * (r - 1.0)), (q - 1.0) * (r - 1.0) * (s - 1.0))
+                (
+                    s * (2.0 * half * q * (q - r) - (b - a) * (r - 1.0)),
+                    (q - 1.0) * (r - 1.0) * (s - 1.0),
+                )
             };
             if p > 0.0 {
                 q = -q;
@@ -51,7 +54,11 @@ pub(crate) fn between(f: impl Fn(f64) -> f64, a: f64, b: f64) -> f64 {
             last = half;
         }
         (a, fa) = (b, fb);
-        b += if step.abs() > resolution { step } else { resolution.copysign(half) };
+        b += if step.abs() > resolution {
+            step
+        } else {
+            resolution.copysign(half)
+        };
         fb = f(b);
     }
     b

@@ -44,9 +44,12 @@ impl std::fmt::Display for Standing {
 
 /// The standing of a share, given the standing of the round before.
 pub fn standing(share: Option<f64>, limits: &Limits, before: Option<Standing>) -> Standing {
-    let Some(share) = share.filter(|s| !s.is_nan()) else { return Standing::NotJudged };
+    let Some(share) = share.filter(|s| !s.is_nan()) else {
+        return Standing::NotJudged;
+    };
     let held = |limit: f64, standing: Standing| {
-        share > limit || (before.is_some_and(|b| b >= standing) && share >= limits.back_below * limit)
+        share > limit
+            || (before.is_some_and(|b| b >= standing) && share >= limits.back_below * limit)
     };
     if held(limits.act, Standing::Act) {
         Standing::Act
@@ -61,7 +64,11 @@ pub fn standing(share: Option<f64>, limits: &Limits, before: Option<Standing>) -
 mod tests {
     use super::*;
 
-    const LIMITS: Limits = Limits { watch: 0.10, act: 0.30, back_below: 0.85 };
+    const LIMITS: Limits = Limits {
+        watch: 0.10,
+        act: 0.30,
+        back_below: 0.85,
+    };
 
     #[test]
     fn the_table_of_shares_and_standings_before() {
@@ -85,19 +92,31 @@ mod tests {
             (f64::INFINITY, None, Act),
         ];
         for (share, before, now) in table {
-            assert_eq!(standing(Some(share), &LIMITS, before), now, "share {share}, before {before:?}");
+            assert_eq!(
+                standing(Some(share), &LIMITS, before),
+                now,
+                "share {share}, before {before:?}"
+            );
         }
     }
 
     #[test]
     fn without_a_share_nothing_is_judged() {
-        assert_eq!(standing(None, &LIMITS, Some(Standing::Act)), Standing::NotJudged);
+        assert_eq!(
+            standing(None, &LIMITS, Some(Standing::Act)),
+            Standing::NotJudged
+        );
         assert_eq!(standing(Some(f64::NAN), &LIMITS, None), Standing::NotJudged);
     }
 
     #[test]
     fn the_words_are_the_ones_that_are_serialised() {
-        for s in [Standing::NotJudged, Standing::Under, Standing::Watch, Standing::Act] {
+        for s in [
+            Standing::NotJudged,
+            Standing::Under,
+            Standing::Watch,
+            Standing::Act,
+        ] {
             let written = serde_json::to_string(&s).unwrap();
             assert_eq!(written, format!("\"{}\"", s.as_str()));
             assert_eq!(serde_json::from_str::<Standing>(&written).unwrap(), s);

@@ -8,9 +8,12 @@ use crate::combination::Combination;
 use crate::design::Design;
 use crate::estimates::Estimates;
 use crate::fault::StudyError;
+use crate::figure::Figure;
 use crate::figures::Evidence;
 use crate::model::Model;
-use crate::record::{ChanceAbove, InteractionChoice, Layout, OtherReading, Study};
+use crate::record::{
+    ChanceAbove, Component, Figures, InteractionChoice, Layout, OtherReading, Remark, Study,
+};
 use crate::remark;
 use crate::settings::{Interaction, Judge, Settings, Tolerance};
 use crate::sums::{Sums, Sweep};
@@ -26,7 +29,13 @@ const SPREAD: std::ops::RangeInclusive<f64> = 1e-140..=1e140;
 ///
 /// # Errors
 /// [`StudyError`] when the readings do not fill the design evenly, are not finite, or settings are out of range.
-pub fn analyse(design: &Design, cells: &[usize], values: &[f64], tolerance: &Tolerance, settings: &Settings) -> Result<Study, StudyError> {
+pub fn analyse(
+    design: &Design,
+    cells: &[usize],
+    values: &[f64],
+    tolerance: &Tolerance,
+    settings: &Settings,
+) -> Result<Study, StudyError> {
     let counts = counts(design, cells, values)?;
     Prepared::new(design, usual(&counts), settings)?.study(cells, values, tolerance)
 }
@@ -39,6 +48,8 @@ pub struct Prepared {
     settings: Settings,
     sweep: Sweep,
     kept: Basis,
+    /// The term that the error holds for want of a second trial.
+    taken_in: Option<String>,
     /// All interaction terms pooled; absent when there are none.
     pooled: Option<Pooled>,
 }
@@ -54,7 +65,11 @@ impl Prepared {
     ///
     /// # Errors
     /// [`StudyError`] for fewer than two parts, no trials, or settings out of range.
-    pub fn new(design: &Design, trials: usize, settings: &Settings) -> Result<Prepared, StudyError> {
+    pub fn new(
+        design: &Design,
+        trials: usize,
+        settings: &Settings,
+    ) -> Result<Prepared, StudyError> {
         check(settings)?;
         let parts = design.factors()[design.part()].levels;
         if parts < 2 {
@@ -71,8 +86,12 @@ impl Prepared {
             trials,
             settings: *settings,
             sweep: Sweep::new(design, trials),
+            taken_in: kept.model.taken_in_by_error(design),
             kept,
-            pooled: pooled.map(|model| Pooled { model, basis: OnceLock::new() }),
+            pooled: pooled.map(|model| Pooled {
+                model,
+                basis: OnceLock::new(),
+            }),
         })
     }
 
@@ -80,7 +99,12 @@ impl Prepared {
     ///
     /// # Errors
     /// [`StudyError`] when the readings do not fill the design with the prepared number of trials.
-    pub fn study(&self, cells: &[usize], values: &[f64], tolerance: &Tolerance) -> Result<Study, StudyError> {
+    pub fn study(
+        &self,
+        cells: &[usize],
+        values: &[f64],
+        tolerance: &Tolerance,
+    ) -> Result<Study, StudyError> {
         let readings = self.by_cell(cells, values)?;
         let sums = self.sweep.sums(&readings);
         let share = Share::of(tolerance, &self.settings, sums.grand_mean);
@@ -88,7 +112,9 @@ impl Prepared {
             None => Ok(self.record(&self.kept, &sums, &share)),
             Some(model) => match &self.pooled {
                 Some(pooled) if pooled.model == model => {
-                    let basis = pooled.basis.get_or_init(|| Basis::new(model, &self.settings));
+                    let basis = pooled
+                        .basis
+                        .get_or_init(|| Basis::new(model, &self.settings));
                     Ok(self.record(basis, &sums, &share))
                 }
                 _ => Ok(self.record(&Basis::new(model, &self.settings), &sums, &share)),
@@ -98,13 +124,18 @@ impl Prepared {
 
     /// The model after pooling, largest interaction first; `None` when nothing is pooled.
     fn partly_pooled(&self, sums: &Sums) -> Option<Model> {
-        let Interaction::PoolAbove(limit) = self.settings.interaction else { return None };
+        let Interaction::PoolAbove(limit) = self.settings.interaction else {
+            return None;
+        };
         let mut model: Option<Model> = None;
         loop {
             let now = model.as_ref().unwrap_or(&self.kept.model);
             let table = Table::new(now, sums);
             let above = |line: usize| table.test(line).is_some_and(|t| t.p > limit);
-            let drop = now.interactions().into_iter().find(|&line| now.is_outermost(line) && above(line));
+            let drop = now
+                .interactions()
+                .into_iter()
+                .find(|&line| now.is_outermost(line) && above(line));
             let Some(line) = drop else { return model };
             model = Some(now.without(&self.design, &[line]));
         }
@@ -114,7 +145,9 @@ impl Prepared {
         let model = &basis.model;
         let table = Table::new(model, sums);
         let total = sums.total();
-        let components: Vec<Combination> = (0..model.lines().len()).map(|i| model.component(i)).collect();
+        let components: Vec<Combination> = (0..model.lines().len())
+            .map(|i| model.component(i))
+            .collect();
         let estimates = Estimates::new(model, &components, &table.ms);
         let evidence = Evidence {
             basis,
@@ -140,7 +173,7 @@ impl Prepared {
             ndc: evidence.ndc(&part_to_gauge),
             risk: None,
             chance_above: self.chance_above(basis, &table.ms, share, judged.estimate.is_some()),
-            remarks: remark::outside_limits(&components, &figures, &part_to_gauge),
+            remarks: self.remarks(&components, &figures, &part_to_gauge),
             draws: None,
             seed: None,
             grand_mean: sums.grand_mean,
@@ -153,6 +186,19 @@ impl Prepared {
             figures,
             part_to_gauge,
         }
+    }
+
+    fn remarks(
+        &self,
+        components: &[Component],
+        figures: &Figures,
+        part_to_gauge: &Figure,
+    ) -> Vec<Remark> {
+        let one_trial = self.taken_in.as_deref().map(remark::one_trial);
+        one_trial
+            .into_iter()
+            .chain(remark::outside_limits(components, figures, part_to_gauge))
+            .collect()
     }
 
     fn layout(&self) -> Layout {
@@ -171,10 +217,16 @@ impl Prepared {
         let full = &self.kept.model;
         let largest = full.interactions().first().copied();
         let nothing_pooled = chosen == full;
-        let other = if nothing_pooled { self.pooled.as_ref().map(|p| &p.model) } else { Some(full) };
+        let other = if nothing_pooled {
+            self.pooled.as_ref().map(|p| &p.model)
+        } else {
+            Some(full)
+        };
         InteractionChoice {
             kept: !chosen.interactions().is_empty(),
-            p: largest.and_then(|line| Table::new(full, sums).test(line)).map(|t| t.p),
+            p: largest
+                .and_then(|line| Table::new(full, sums).test(line))
+                .map(|t| t.p),
             pool_above: match self.settings.interaction {
                 Interaction::Keep => None,
                 Interaction::PoolAbove(p) => Some(p),
@@ -184,7 +236,9 @@ impl Prepared {
     }
 
     fn chance_above(&self, basis: &Basis, ms: &[f64], share: &Share, judged: bool) -> ChanceAbove {
-        let (Some(limits), Ok(per_sd), Some(gauge)) = (self.settings.limits, &share.per_sd, &basis.quantities.gauge) else {
+        let (Some(limits), Ok(per_sd), Some(gauge)) =
+            (self.settings.limits, &share.per_sd, &basis.quantities.gauge)
+        else {
             return ChanceAbove::default();
         };
         let weights = gauge.weights();
@@ -193,14 +247,26 @@ impl Prepared {
             let variance = (limit / per_sd).powi(2);
             (judged && !vanishes).then(|| chance::above(variance, &weights, &basis.df, ms))
         };
-        ChanceAbove { watch: above(limits.watch), act: above(limits.act) }
+        ChanceAbove {
+            watch: above(limits.watch),
+            act: above(limits.act),
+        }
     }
 
     /// The readings cell by cell, ascending within each.
     fn by_cell(&self, cells: &[usize], values: &[f64]) -> Result<Vec<f64>, StudyError> {
         let counts = counts(&self.design, cells, values)?;
-        if let Some((cell, &count)) = counts.iter().enumerate().find(|&(_, &count)| count != self.trials) {
-            return Err(StudyError::Unbalanced { cell, place: self.design.cell_in_words(cell), count, expected: self.trials });
+        if let Some((cell, &count)) = counts
+            .iter()
+            .enumerate()
+            .find(|&(_, &count)| count != self.trials)
+        {
+            return Err(StudyError::Unbalanced {
+                cell,
+                place: self.design.cell_in_words(cell),
+                count,
+                expected: self.trials,
+            });
         }
         let mut next: Vec<usize> = (0..counts.len()).map(|cell| cell * self.trials).collect();
         let mut readings = vec![0.0; values.len()];
@@ -208,8 +274,13 @@ impl Prepared {
             readings[next[cell]] = value;
             next[cell] += 1;
         }
-        readings.chunks_exact_mut(self.trials).for_each(|cell| cell.sort_by(f64::total_cmp));
-        let spread = readings.iter().map(|y| (y - readings[0]).abs()).fold(0.0, f64::max);
+        readings
+            .chunks_exact_mut(self.trials)
+            .for_each(|cell| cell.sort_by(f64::total_cmp));
+        let spread = readings
+            .iter()
+            .map(|y| (y - readings[0]).abs())
+            .fold(0.0, f64::max);
         if spread != 0.0 && !SPREAD.contains(&spread) {
             return Err(StudyError::Spread(spread));
         }
@@ -219,15 +290,25 @@ impl Prepared {
 
 fn other_reading(model: &Model, sums: &Sums, share: &Share) -> OtherReading {
     let table = Table::new(model, sums);
-    let components: Vec<Combination> = (0..model.lines().len()).map(|i| model.component(i)).collect();
-    let gauge_sd = Estimates::new(model, &components, &table.ms).gauge.map(f64::sqrt);
+    let components: Vec<Combination> = (0..model.lines().len())
+        .map(|i| model.component(i))
+        .collect();
+    let gauge_sd = Estimates::new(model, &components, &table.ms)
+        .gauge
+        .map(f64::sqrt);
     let per_sd = share.per_sd.as_ref().ok().filter(|_| sums.total() > 0.0);
-    OtherReading { gauge_sd, share_of_tolerance: gauge_sd.zip(per_sd).map(|(sd, per_sd)| sd * per_sd) }
+    OtherReading {
+        gauge_sd,
+        share_of_tolerance: gauge_sd.zip(per_sd).map(|(sd, per_sd)| sd * per_sd),
+    }
 }
 
 fn counts(design: &Design, cells: &[usize], values: &[f64]) -> Result<Vec<usize>, StudyError> {
     if cells.len() != values.len() {
-        return Err(StudyError::Lengths { cells: cells.len(), values: values.len() });
+        return Err(StudyError::Lengths {
+            cells: cells.len(),
+            values: values.len(),
+        });
     }
     if values.is_empty() {
         return Err(StudyError::Empty);
@@ -235,7 +316,11 @@ fn counts(design: &Design, cells: &[usize], values: &[f64]) -> Result<Vec<usize>
     let mut counts = vec![0; design.cells()];
     for (row, (&cell, &value)) in cells.iter().zip(values).enumerate() {
         let Some(count) = counts.get_mut(cell) else {
-            return Err(StudyError::NoSuchCell { row, cell, last: design.cells() - 1 });
+            return Err(StudyError::NoSuchCell {
+                row,
+                cell,
+                last: design.cells() - 1,
+            });
         };
         if !value.is_finite() {
             return Err(StudyError::NotFinite { row, value });
@@ -250,16 +335,32 @@ fn usual(counts: &[usize]) -> usize {
     let largest = counts.iter().copied().max().unwrap_or(0);
     let mut cells_with = vec![0; largest + 1];
     counts.iter().for_each(|&count| cells_with[count] += 1);
-    (1..=largest).max_by_key(|&count| cells_with[count]).unwrap_or(0)
+    (1..=largest)
+        .max_by_key(|&count| cells_with[count])
+        .unwrap_or(0)
 }
 
 fn check(settings: &Settings) -> Result<(), StudyError> {
-    let fault = |setting, value, expected| Err(StudyError::Setting { setting, value, expected });
+    let fault = |setting, value, expected| {
+        Err(StudyError::Setting {
+            setting,
+            value,
+            expected,
+        })
+    };
     if !(settings.confidence >= 0.5 && settings.confidence < 1.0) {
-        return fault("the confidence", settings.confidence, "at least 0.5 and below 1");
+        return fault(
+            "the confidence",
+            settings.confidence,
+            "at least 0.5 and below 1",
+        );
     }
     if !(settings.spread_sds > 0.0 && settings.spread_sds.is_finite()) {
-        return fault("the multiple of the gauge sd", settings.spread_sds, "a number above 0, such as 6");
+        return fault(
+            "the multiple of the gauge sd",
+            settings.spread_sds,
+            "a number above 0, such as 6",
+        );
     }
     if let Judge::Chance(p) = settings.judge
         && !(p > 0.0 && p < 1.0)
@@ -267,7 +368,11 @@ fn check(settings: &Settings) -> Result<(), StudyError> {
         return fault("the confidence that judges", p, "between 0 and 1");
     }
     match settings.interaction {
-        Interaction::PoolAbove(p) if !(0.0..=1.0).contains(&p) => fault("the p above which the interaction is pooled", p, "from 0 to 1"),
+        Interaction::PoolAbove(p) if !(0.0..=1.0).contains(&p) => fault(
+            "the p above which the interaction is pooled",
+            p,
+            "from 0 to 1",
+        ),
         _ => Ok(()),
     }
 }

@@ -38,7 +38,10 @@ pub(crate) struct Sums {
 impl Sums {
     /// Sum of squares of one term.
     pub(crate) fn of(&self, term: FactorSet) -> f64 {
-        self.terms.iter().find(|(set, _)| *set == term).map_or(0.0, |(_, ss)| *ss)
+        self.terms
+            .iter()
+            .find(|(set, _)| *set == term)
+            .map_or(0.0, |(_, ss)| *ss)
     }
 
     /// Sum of squares about the grand mean.
@@ -48,20 +51,36 @@ impl Sums {
 
     /// What the error of a model holds that keeps only some of the terms.
     pub(crate) fn beside(&self, kept: impl Fn(FactorSet) -> bool) -> f64 {
-        self.terms.iter().filter(|(set, _)| !kept(*set)).map(|(_, ss)| ss).sum::<f64>() + self.within
+        self.terms
+            .iter()
+            .filter(|(set, _)| !kept(*set))
+            .map(|(_, ss)| ss)
+            .sum::<f64>()
+            + self.within
     }
 }
 
 impl Sweep {
     pub(crate) fn new(design: &Design, trials: usize) -> Self {
-        let term = |set| Term { set, combinations: design.combinations(set), place: design.projection(set) };
-        Sweep { trials, cells: design.cells(), terms: design.terms().into_iter().map(term).collect() }
+        let term = |set| Term {
+            set,
+            combinations: design.combinations(set),
+            place: design.projection(set),
+        };
+        Sweep {
+            trials,
+            cells: design.cells(),
+            terms: design.terms().into_iter().map(term).collect(),
+        }
     }
 
     /// Sums of squares of readings that lie cell by cell, ascending within each.
     pub(crate) fn sums(&self, readings: &[f64]) -> Sums {
         let origin = readings[0];
-        let largest = readings.iter().map(|y| (y - origin).abs()).fold(0.0, f64::max);
+        let largest = readings
+            .iter()
+            .map(|y| (y - origin).abs())
+            .fold(0.0, f64::max);
         let floor = readings.len() as f64 * largest * largest * ROUNDING;
         let or_zero = |ss: f64| if ss > floor { ss } else { 0.0 };
 
@@ -69,16 +88,35 @@ impl Sweep {
         let mut left = Vec::with_capacity(self.cells);
         for cell in readings.chunks_exact(self.trials) {
             let from_first = |y: f64| Twofold::difference(y, cell[0]);
-            let mean = cell.iter().map(|&y| from_first(y)).fold(Twofold::ZERO, Twofold::plus).over(self.trials as f64);
-            within = cell.iter().map(|&y| from_first(y).minus(mean).squared()).fold(within, Twofold::plus);
+            let mean = cell
+                .iter()
+                .map(|&y| from_first(y))
+                .fold(Twofold::ZERO, Twofold::plus)
+                .over(self.trials as f64);
+            within = cell
+                .iter()
+                .map(|&y| from_first(y).minus(mean).squared())
+                .fold(within, Twofold::plus);
             left.push(Twofold::difference(cell[0], origin).plus(mean));
         }
-        let mean = left.iter().copied().fold(Twofold::ZERO, Twofold::plus).over(self.cells as f64);
+        let mean = left
+            .iter()
+            .copied()
+            .fold(Twofold::ZERO, Twofold::plus)
+            .over(self.cells as f64);
         left.iter_mut().for_each(|x| *x = x.minus(mean));
 
-        let terms = self.terms.iter().map(|term| (term.set, or_zero(term.sweep(&mut left, self.trials)))).collect();
+        let terms = self
+            .terms
+            .iter()
+            .map(|term| (term.set, or_zero(term.sweep(&mut left, self.trials))))
+            .collect();
         let grand_mean = mean.plus(Twofold::difference(origin, 0.0)).value();
-        Sums { terms, within: or_zero(within.value()), grand_mean }
+        Sums {
+            terms,
+            within: or_zero(within.value()),
+            grand_mean,
+        }
     }
 }
 
@@ -94,7 +132,10 @@ impl Term {
         for (x, &place) in left.iter_mut().zip(&self.place) {
             *x = x.minus(means[place as usize]);
         }
-        let squares = means.iter().map(|m| m.squared()).fold(Twofold::ZERO, Twofold::plus);
+        let squares = means
+            .iter()
+            .map(|m| m.squared())
+            .fold(Twofold::ZERO, Twofold::plus);
         squares.value() * (share * trials) as f64
     }
 }

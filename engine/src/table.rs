@@ -25,10 +25,16 @@ pub(crate) struct Test {
 
 impl<'a> Table<'a> {
     pub(crate) fn new(model: &'a Model, sums: &Sums) -> Self {
-        let sets: Vec<_> = (0..model.lines().len()).filter_map(|i| model.set(i)).collect();
+        let sets: Vec<_> = (0..model.lines().len())
+            .filter_map(|i| model.set(i))
+            .collect();
         let rest = sums.beside(|set| sets.contains(&set));
         let ss: Vec<f64> = sets.iter().map(|&set| sums.of(set)).chain([rest]).collect();
-        let ms = ss.iter().zip(model.lines()).map(|(ss, line)| ss / line.df as f64).collect();
+        let ms = ss
+            .iter()
+            .zip(model.lines())
+            .map(|(ss, line)| ss / line.df as f64)
+            .collect();
         Table { model, ss, ms }
     }
 
@@ -44,12 +50,20 @@ impl<'a> Table<'a> {
         let against_df = match members[..] {
             [only] => df(only),
             _ => {
-                let pieces = against.weights().into_iter().enumerate().map(|(q, w)| (w * self.ms[q] / value).powi(2) / df(q));
+                let pieces = against
+                    .weights()
+                    .into_iter()
+                    .enumerate()
+                    .map(|(q, w)| (w * self.ms[q] / value).powi(2) / df(q));
                 1.0 / pieces.sum::<f64>()
             }
         };
         let f = self.ms[line] / value;
-        Some(Test { f, p: f_above(f, df(line), against_df), against_df })
+        Some(Test {
+            f,
+            p: f_above(f, df(line), against_df),
+            against_df,
+        })
     }
 
     /// The lines in the order of the model, then the total.
@@ -88,6 +102,14 @@ impl<'a> Table<'a> {
     fn against(&self, line: usize) -> Option<Vec<Against>> {
         let against = self.model.denominator(line)?;
         let weights = against.weights();
-        Some(against.members().map(|q| Against { name: self.model.lines()[q].name.clone(), weight: weights[q] }).collect())
+        Some(
+            against
+                .members()
+                .map(|q| Against {
+                    name: self.model.lines()[q].name.clone(),
+                    weight: weights[q],
+                })
+                .collect(),
+        )
     }
 }

@@ -23,14 +23,22 @@ pub(crate) struct Tails {
 
 /// Tails of the gamma distribution of shape `a` at `x > 0`.
 pub(crate) fn gamma(a: f64, x: f64) -> Tails {
-    let factor = (-deviance(a, x - a) - stirling_error(a)).exp() / (2.0 * PI * a).sqrt();
+    let factor = (-deviance(a, x, x - a) - stirling_error(a)).exp() / (2.0 * PI * a).sqrt();
     let slope = factor * a;
     if x < a + 1.0 {
         let lower = factor * gamma_series(a, x);
-        Tails { lower, upper: 1.0 - lower, slope }
+        Tails {
+            lower,
+            upper: 1.0 - lower,
+            slope,
+        }
     } else {
         let upper = slope * gamma_fraction(a, x);
-        Tails { lower: 1.0 - upper, upper, slope }
+        Tails {
+            lower: 1.0 - upper,
+            upper,
+            slope,
+        }
     }
 }
 
@@ -39,14 +47,23 @@ pub(crate) fn beta(a: f64, b: f64, f: f64) -> Tails {
     let below = a * f / (a * f + b);
     let above = b / (a * f + b);
     let apart = a * b * (f - 1.0) / (a * f + b);
-    let log = stirling_error(a + b) - stirling_error(a) - stirling_error(b) - deviance(a, apart) - deviance(b, -apart);
+    let deviances = deviance(a, (a + b) * below, apart) + deviance(b, (a + b) * above, -apart);
+    let log = stirling_error(a + b) - stirling_error(a) - stirling_error(b) - deviances;
     let slope = log.exp() * (a * b / (2.0 * PI * (a + b))).sqrt();
     if below < (a + 1.0) / (a + b + 2.0) {
         let lower = slope * beta_fraction(a, b, below) / a;
-        Tails { lower, upper: 1.0 - lower, slope }
+        Tails {
+            lower,
+            upper: 1.0 - lower,
+            slope,
+        }
     } else {
         let upper = slope * beta_fraction(b, a, above) / b;
-        Tails { lower: 1.0 - upper, upper, slope }
+        Tails {
+            lower: 1.0 - upper,
+            upper,
+            slope,
+        }
     }
 }
 
@@ -59,7 +76,10 @@ pub(crate) fn stirling_error(a: f64) -> f64 {
         shifted += 1.0;
     }
     let square = shifted * shifted;
-    let series = 1.0 / 12.0 - (1.0 / 360.0 - (1.0 / 1260.0 - (1.0 / 1680.0 - (1.0 / 1188.0) / square) / square) / square) / square;
+    let series = 1.0 / 12.0
+        - (1.0 / 360.0
+            - (1.0 / 1260.0 - (1.0 / 1680.0 - (1.0 / 1188.0) / square) / square) / square)
+            / square;
     sum + series / shifted
 }
 
@@ -68,11 +88,11 @@ pub(crate) fn ln_gamma_1p(a: f64) -> f64 {
     stirling_error(a) + (a + 0.5) * a.ln() - a + 0.5 * (2.0 * PI).ln()
 }
 
-/// `a ln(a / m) + m - a` for `m = a + apart`.
-fn deviance(a: f64, apart: f64) -> f64 {
+/// `a ln(a / m) + m - a`, given both `m` and `m - a`, of which one or the other may be rounded hard.
+fn deviance(a: f64, m: f64, apart: f64) -> f64 {
     let t = apart / a;
     if t.abs() > 0.5 {
-        return apart - a * t.ln_1p();
+        return apart - a * (m / a).ln();
     }
     // t - ln(1 + t) with r = t / (2 + t): ln(1 + t) = 2 (r + r³/3 + r⁵/5 + …) and t = 2 r + r t.
     let r = t / (2.0 + t);

@@ -35,11 +35,17 @@ fn over(sds: f64, room: f64) -> Result<f64, Cow<'static, str>> {
     if room > 0.0 && share.is_finite() {
         Ok(share)
     } else {
-        Err(Cow::Owned(format!("the room for the spread is {room}; expected a width above zero")))
+        Err(Cow::Owned(format!(
+            "the room for the spread is {room}; expected a width above zero"
+        )))
     }
 }
 
-fn room(tolerance: &Tolerance, process: Option<Process>, grand_mean: f64) -> (&'static str, Result<Room, Cow<'static, str>>) {
+fn room(
+    tolerance: &Tolerance,
+    process: Option<Process>,
+    grand_mean: f64,
+) -> (&'static str, Result<Room, Cow<'static, str>>) {
     let (limit, inward) = match (tolerance.lower, tolerance.upper) {
         (None, None) => return ("none", Err("the characteristic has no tolerance".into())),
         (Some(lower), Some(upper)) => return ("two-sided", between(lower, upper)),
@@ -51,11 +57,16 @@ fn room(tolerance: &Tolerance, process: Option<Process>, grand_mean: f64) -> (&'
         if distance > 0.0 {
             Ok(Room::Distance(distance))
         } else {
-            Err(Cow::Owned(format!("the {of}, {mean}, does not lie inside the limit {limit}")))
+            Err(Cow::Owned(format!(
+                "the {of}, {mean}, does not lie inside the limit {limit}"
+            )))
         }
     };
     match tolerance.one_sided {
-        None => ("none", Err("the tolerance is one-sided and no rule is named for it".into())),
+        None => (
+            "none",
+            Err("the tolerance is one-sided and no rule is named for it".into()),
+        ),
         Some(OneSided::FromZero) => ("from zero", Ok(Room::Width(limit.abs()))),
         Some(OneSided::Width(width)) => ("width", Ok(Room::Width(width))),
         Some(OneSided::ToStudyMean) => ("to study mean", distance(grand_mean, "mean of the study")),
@@ -74,6 +85,8 @@ fn between(lower: f64, upper: f64) -> Result<Room, Cow<'static, str>> {
     if upper > lower {
         Ok(Room::Width(upper - lower))
     } else {
-        Err(Cow::Owned(format!("the upper limit {upper} is not above the lower limit {lower}")))
+        Err(Cow::Owned(format!(
+            "the upper limit {upper} is not above the lower limit {lower}"
+        )))
     }
 }

@@ -11,7 +11,10 @@ pub(crate) struct Twofold {
 }
 
 impl Twofold {
-    pub(crate) const ZERO: Twofold = Twofold { head: 0.0, tail: 0.0 };
+    pub(crate) const ZERO: Twofold = Twofold {
+        head: 0.0,
+        tail: 0.0,
+    };
 
     /// `a - b` without rounding.
     pub(crate) fn difference(a: f64, b: f64) -> Twofold {
@@ -22,13 +25,19 @@ impl Twofold {
     fn sum(a: f64, b: f64) -> Twofold {
         let head = a + b;
         let shadow = head - a;
-        Twofold { head, tail: (a - (head - shadow)) + (b - shadow) }
+        Twofold {
+            head,
+            tail: (a - (head - shadow)) + (b - shadow),
+        }
     }
 
     /// `a × b` without rounding.
     pub(crate) fn product(a: f64, b: f64) -> Twofold {
         let head = a * b;
-        Twofold { head, tail: a.mul_add(b, -head) }
+        Twofold {
+            head,
+            tail: a.mul_add(b, -head),
+        }
     }
 
     pub(crate) fn plus(self, other: Twofold) -> Twofold {
@@ -37,7 +46,10 @@ impl Twofold {
     }
 
     pub(crate) fn minus(self, other: Twofold) -> Twofold {
-        self.plus(Twofold { head: -other.head, tail: -other.tail })
+        self.plus(Twofold {
+            head: -other.head,
+            tail: -other.tail,
+        })
     }
 
     pub(crate) fn over(self, divisor: f64) -> Twofold {

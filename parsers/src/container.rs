@@ -22,7 +22,10 @@ pub(crate) fn check(bytes: &[u8], kind: Kind, bounds: &Bounds) -> Result<(), Ref
         return Err(compound(bytes));
     }
     let mut zip = ZipArchive::new(Cursor::new(bytes)).map_err(|why| Refused {
-        sentence: format!("the workbook's table of parts cannot be read: {}", in_words(&why)),
+        sentence: format!(
+            "the workbook's table of parts cannot be read: {}",
+            in_words(&why)
+        ),
         hint: Some("a workbook that was cut short looks like this: export it again".to_owned()),
         perhaps_unfinished: true,
     })?;
@@ -35,9 +38,15 @@ pub(crate) fn check(bytes: &[u8], kind: Kind, bounds: &Bounds) -> Result<(), Ref
     let mut inflated = 0_u64;
     let mut names = Vec::with_capacity(zip.len());
     for index in 0..zip.len() {
-        let part = zip.by_index_raw(index).map_err(|why| damaged(&in_words(&why)))?;
+        let part = zip
+            .by_index_raw(index)
+            .map_err(|why| damaged(&in_words(&why)))?;
         inflated = inflated.saturating_add(part.size());
-        names.push(String::from_utf8_lossy(part.name_raw()).replace('\\', "/").to_lowercase());
+        names.push(
+            String::from_utf8_lossy(part.name_raw())
+                .replace('\\', "/")
+                .to_lowercase(),
+        );
     }
     if inflated > bounds.inflated_bytes {
         return Err(Refused::new(format!(
@@ -55,8 +64,9 @@ pub(crate) fn check(bytes: &[u8], kind: Kind, bounds: &Bounds) -> Result<(), Ref
     if !has("_rels/.rels") {
         return Err(Refused::new("this is a zip archive that holds no workbook"));
     }
-    let tables: Vec<usize> =
-        (0..names.len()).filter(|&index| names[index].ends_with("sharedstrings.xml")).collect();
+    let tables: Vec<usize> = (0..names.len())
+        .filter(|&index| names[index].ends_with("sharedstrings.xml"))
+        .collect();
     for index in tables {
         check_string_count(&mut zip, index)?;
     }
@@ -65,11 +75,10 @@ pub(crate) fn check(bytes: &[u8], kind: Kind, bounds: &Bounds) -> Result<(), Ref
 
 /// The count that a string table states is taken as an allocation by its reader: it must be one that
 /// the part can hold.
-fn check_string_count(
-    zip: &mut ZipArchive<Cursor<&[u8]>>,
-    index: usize,
-) -> Result<(), Refused> {
-    let part = zip.by_index(index).map_err(|why| damaged(&in_words(&why)))?;
+fn check_string_count(zip: &mut ZipArchive<Cursor<&[u8]>>, index: usize) -> Result<(), Refused> {
+    let part = zip
+        .by_index(index)
+        .map_err(|why| damaged(&in_words(&why)))?;
     let size = part.size();
     let mut xml = quick_xml::Reader::from_reader(BufReader::new(part));
     let mut buffer = Vec::new();
@@ -97,7 +106,10 @@ fn check_string_count(
 }
 
 fn compound(bytes: &[u8]) -> Refused {
-    let name: Vec<u8> = "EncryptedPackage".encode_utf16().flat_map(u16::to_le_bytes).collect();
+    let name: Vec<u8> = "EncryptedPackage"
+        .encode_utf16()
+        .flat_map(u16::to_le_bytes)
+        .collect();
     if bytes.windows(name.len()).any(|window| window == name) {
         return Refused {
             sentence: "the workbook is protected by a password".to_owned(),

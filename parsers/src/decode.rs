@@ -58,16 +58,25 @@ pub(crate) fn declared(bytes: &[u8]) -> Option<&'static Encoding> {
 
 fn with<'a>(encoding: &'static Encoding, bytes: &'a [u8]) -> Result<Cow<'a, str>, Refused> {
     if encoding == UTF_8 {
-        return std::str::from_utf8(bytes).map(Cow::Borrowed).map_err(|why| not_utf8(bytes, why));
+        return std::str::from_utf8(bytes)
+            .map(Cow::Borrowed)
+            .map_err(|why| not_utf8(bytes, why));
     }
-    encoding.decode_without_bom_handling_and_without_replacement(bytes).ok_or_else(|| {
-        let odd = (encoding == UTF_16LE || encoding == UTF_16BE) && bytes.len() % 2 == 1;
-        Refused {
-            sentence: format!("the file is not whole text in the encoding {}", encoding.name()),
-            hint: Some("name the encoding that the instrument writes with `encoding`".to_owned()),
-            perhaps_unfinished: odd,
-        }
-    })
+    encoding
+        .decode_without_bom_handling_and_without_replacement(bytes)
+        .ok_or_else(|| {
+            let odd = (encoding == UTF_16LE || encoding == UTF_16BE) && bytes.len() % 2 == 1;
+            Refused {
+                sentence: format!(
+                    "the file is not whole text in the encoding {}",
+                    encoding.name()
+                ),
+                hint: Some(
+                    "name the encoding that the instrument writes with `encoding`".to_owned(),
+                ),
+                perhaps_unfinished: odd,
+            }
+        })
 }
 
 fn not_utf8(bytes: &[u8], why: std::str::Utf8Error) -> Refused {
@@ -105,9 +114,9 @@ fn checked(text: Cow<'_, str>) -> Result<Cow<'_, str>, Refused> {
         return Err(Refused::unfinished("the file holds nothing but blanks"));
     }
     let kept = text.trim_end_matches(CONTROL_Z).len();
-    let odd = text[..kept].char_indices().find(|(_, c)| {
-        c.is_ascii_control() && !matches!(c, '\t' | '\n' | '\r' | '\u{c}')
-    });
+    let odd = text[..kept]
+        .char_indices()
+        .find(|(_, c)| c.is_ascii_control() && !matches!(c, '\t' | '\n' | '\r' | '\u{c}'));
     match odd {
         Some((_, '\0')) if text.ends_with('\0') => Err(nuls()),
         Some((at, found)) => Err(Refused {
@@ -117,7 +126,8 @@ fn checked(text: Cow<'_, str>) -> Result<Cow<'_, str>, Refused> {
                 u32::from(found)
             ),
             hint: (found == '\0').then(|| {
-                "if this is UTF-16 without a byte-order mark, set `encoding = \"utf-16le\"`".to_owned()
+                "if this is UTF-16 without a byte-order mark, set `encoding = \"utf-16le\"`"
+                    .to_owned()
             }),
             perhaps_unfinished: false,
         }),
@@ -147,7 +157,10 @@ mod tests {
         assert_eq!(decode(b"\xff\xfe\xb5\0m\0", None, None).unwrap(), "µm");
         assert_eq!(decode(b"\xfe\xff\0\xb5\0m", None, None).unwrap(), "µm");
         assert_eq!(decode(b"\xb5m", None, Some(WINDOWS_1252)).unwrap(), "µm");
-        assert_eq!(decode("µm".as_bytes(), None, Some(WINDOWS_1252)).unwrap(), "µm");
+        assert_eq!(
+            decode("µm".as_bytes(), None, Some(WINDOWS_1252)).unwrap(),
+            "µm"
+        );
         assert_eq!(decode(b"\xb5\0m\0", None, Some(UTF_16LE)).unwrap(), "µm");
         assert_eq!(decode(b"part\r\n\x1a", None, None).unwrap(), "part\r\n");
     }
@@ -161,13 +174,20 @@ mod tests {
         assert!(refused(b"part,value\n1,2\0\0\0\0").1);
         assert!(refused(b" \r\n ").1);
         assert!(!refused(b"p\0a\0r\0t").1);
-        assert!(refused(b"a\nb\x01c").0.starts_with("line 2: the control character U+0001"));
+        assert!(
+            refused(b"a\nb\x01c")
+                .0
+                .starts_with("line 2: the control character U+0001")
+        );
     }
 
     #[test]
     fn an_xml_declaration_is_read_up_to_its_end() {
         let of = |bytes: &[u8]| declared(bytes).map(Encoding::name);
-        assert_eq!(of(b"<?xml version='1.0' encoding='ISO-8859-1'?><a/>"), Some("windows-1252"));
+        assert_eq!(
+            of(b"<?xml version='1.0' encoding='ISO-8859-1'?><a/>"),
+            Some("windows-1252")
+        );
         assert_eq!(of(b"<?xml version=\"1.0\" encoding=\"UTF-16\"?>"), None);
         assert_eq!(of(b"<?xml version=\"1.0\"?><a encoding=\"latin1\"/>"), None);
         assert_eq!(of(b"<\0?\0x\0m\0l\0"), Some("UTF-16LE"));

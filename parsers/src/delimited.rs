@@ -22,7 +22,8 @@ pub(crate) struct Delimiter {
 
 /// A mark that can part fields.
 pub(crate) fn as_delimiter(mark: char) -> Option<u8> {
-    let fits = mark.is_ascii() && !mark.is_ascii_alphanumeric() && !matches!(mark, '"' | '\r' | '\n');
+    let fits =
+        mark.is_ascii() && !mark.is_ascii_alphanumeric() && !matches!(mark, '"' | '\r' | '\n');
     fits.then_some(mark as u8)
 }
 
@@ -37,7 +38,10 @@ pub(crate) fn delimiter(text: &str, named: Option<u8>, decimal: char) -> Delimit
         })
         .and_then(as_delimiter);
     let usual = if decimal == ',' { b';' } else { b',' };
-    Delimiter { mark: named.or(announced).unwrap_or(usual), announced: announced.is_some() }
+    Delimiter {
+        mark: named.or(announced).unwrap_or(usual),
+        announced: announced.is_some(),
+    }
 }
 
 /// All rows of the text.
@@ -48,11 +52,18 @@ pub(crate) fn grid(text: &str, delimiter: Delimiter, bounds: &Bounds) -> Result<
         .has_headers(false)
         .flexible(true)
         .from_reader(text.as_bytes());
-    let mut lines = Lines { bytes: text.as_bytes(), at: 0, line: 0 };
+    let mut lines = Lines {
+        bytes: text.as_bytes(),
+        at: 0,
+        line: 0,
+    };
     let mut record = StringRecord::new();
     let mut rows = Vec::new();
     let mut cells = 0;
-    while reader.read_record(&mut record).map_err(|why| unreadable(&why))? {
+    while reader
+        .read_record(&mut record)
+        .map_err(|why| unreadable(&why))?
+    {
         let start = record.position().map_or(0, csv::Position::byte);
         let line = lines.advance_to(start);
         if delimiter.announced && line == 0 {
@@ -65,13 +76,21 @@ pub(crate) fn grid(text: &str, delimiter: Delimiter, bounds: &Bounds) -> Result<
         cells += row.cells.len();
         rows.push(row);
         if rows.len() > bounds.rows as usize {
-            return Err(Refused::new(format!("more than {} rows; that is the limit", bounds.rows)));
+            return Err(Refused::new(format!(
+                "more than {} rows; that is the limit",
+                bounds.rows
+            )));
         }
         if cells > CELLS_MAX {
-            return Err(Refused::new(format!("more than {CELLS_MAX} fields; that is the limit")));
+            return Err(Refused::new(format!(
+                "more than {CELLS_MAX} fields; that is the limit"
+            )));
         }
     }
-    Ok(Grid { origin: Origin::Text, rows })
+    Ok(Grid {
+        origin: Origin::Text,
+        rows,
+    })
 }
 
 fn row(record: &StringRecord, line: u32, bounds: &Bounds) -> Result<Row, Refused> {
@@ -159,14 +178,21 @@ mod tests {
     fn rows(text: &str) -> Vec<(u32, Option<u32>)> {
         let delimiter = delimiter(text, None, '.');
         let grid = grid(text, delimiter, &Bounds::default()).unwrap();
-        grid.rows.iter().map(|row| (row.number + 1, row.width)).collect()
+        grid.rows
+            .iter()
+            .map(|row| (row.number + 1, row.width))
+            .collect()
     }
 
     #[test]
     fn lines_are_counted_whatever_ends_them() {
         for end in ["\n", "\r\n", "\r"] {
             let text = ["a,b", "", "", "1,2", " ", "3,4,5"].join(end);
-            assert_eq!(rows(&text), [(1, Some(2)), (4, Some(2)), (6, Some(3))], "{end:?}");
+            assert_eq!(
+                rows(&text),
+                [(1, Some(2)), (4, Some(2)), (6, Some(3))],
+                "{end:?}"
+            );
         }
         assert_eq!(rows("\n\na,b\n"), [(3, Some(2))]);
         assert_eq!(rows("sep=;\r\na;b\r\n"), [(2, Some(2))]);
@@ -186,15 +212,26 @@ mod tests {
     fn a_stray_quote_does_not_swallow_the_file() {
         let text = "part,value\n1,\"2\n2,3\n";
         let refused = grid(text, delimiter(text, None, '.'), &Bounds::default()).unwrap_err();
-        assert!(refused.sentence.starts_with("line 2, field 2: a quoted text runs over"));
+        assert!(
+            refused
+                .sentence
+                .starts_with("line 2, field 2: a quoted text runs over")
+        );
     }
 
     #[test]
     fn limits_are_named() {
-        let bounds = Bounds { rows: 2, columns: 3, text_bytes: 4, ..Bounds::default() };
-        for (text, limit) in
-            [("a\nb\nc\n", "2 rows"), ("a,b,c,d\n", "3 columns"), ("abcde\n", "5 bytes; the limit is 4")]
-        {
+        let bounds = Bounds {
+            rows: 2,
+            columns: 3,
+            text_bytes: 4,
+            ..Bounds::default()
+        };
+        for (text, limit) in [
+            ("a\nb\nc\n", "2 rows"),
+            ("a,b,c,d\n", "3 columns"),
+            ("abcde\n", "5 bytes; the limit is 4"),
+        ] {
             let refused = grid(text, delimiter(text, None, '.'), &bounds).unwrap_err();
             assert!(refused.sentence.contains(limit), "{}", refused.sentence);
         }

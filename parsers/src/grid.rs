@@ -30,7 +30,11 @@ pub(crate) static BLANK: Content = Content::Blank;
 #[derive(Debug, Clone, Copy)]
 pub(crate) enum Place<'a> {
     /// A cell of a workbook; row and column from 0.
-    Cell { sheet: &'a str, row: u32, column: u32 },
+    Cell {
+        sheet: &'a str,
+        row: u32,
+        column: u32,
+    },
     /// A field of delimited text below a heading; line from 1.
     Column { line: u32, heading: &'a str },
     /// A field of delimited text; line and field from 1.
@@ -97,28 +101,35 @@ pub(crate) struct Row {
     pub(crate) width: Option<u32>,
     /// Non-blank cells, by column.
     pub(crate) cells: Vec<(u32, Content)>,
-    /// Why no cell of this row can be trusted.
-    pub(crate) damage: Option<Box<str>>,
 }
 
 impl Row {
     pub(crate) fn new(number: u32, width: Option<u32>) -> Self {
-        Self { number, width, cells: Vec::new(), damage: None }
+        Self {
+            number,
+            width,
+            cells: Vec::new(),
+        }
     }
 
     pub(crate) fn at(&self, column: u32) -> &Content {
-        match self.cells.binary_search_by_key(&column, |(column, _)| *column) {
+        match self
+            .cells
+            .binary_search_by_key(&column, |(column, _)| *column)
+        {
             Ok(found) => &self.cells[found].1,
             Err(_) => &BLANK,
         }
     }
 
-    /// The first column whose text is `sought` (any case, blanks folded).
+    /// The columns whose text is `sought`, a key.
     pub(crate) fn holding(&self, sought: &str) -> impl Iterator<Item = u32> {
-        self.cells.iter().filter_map(move |(column, content)| match content {
-            Content::Text(text) if names::key(text) == sought => Some(*column),
-            _ => None,
-        })
+        self.cells
+            .iter()
+            .filter_map(move |(column, content)| match content {
+                Content::Text(text) if names::key(text) == sought => Some(*column),
+                _ => None,
+            })
     }
 }
 
@@ -132,14 +143,20 @@ pub(crate) struct Grid {
 impl Grid {
     /// The row of that number, from 0.
     pub(crate) fn row(&self, number: u32) -> Option<&Row> {
-        let found = self.rows.binary_search_by_key(&number, |row| row.number).ok()?;
+        let found = self
+            .rows
+            .binary_search_by_key(&number, |row| row.number)
+            .ok()?;
         Some(&self.rows[found])
     }
 
     pub(crate) fn place(&self, row: u32, column: u32) -> Place<'_> {
         match &self.origin {
             Origin::Sheet(sheet) => Place::Cell { sheet, row, column },
-            Origin::Text => Place::Field { line: row.saturating_add(1), field: column.saturating_add(1) },
+            Origin::Text => Place::Field {
+                line: row.saturating_add(1),
+                field: column.saturating_add(1),
+            },
         }
     }
 
@@ -166,9 +183,12 @@ mod tests {
 
     #[test]
     fn cells_are_named_as_a_workbook_names_them() {
-        for (row, column, name) in
-            [(11, 5, "F12"), (0, 25, "Z1"), (0, 26, "AA1"), (1_048_575, 16_383, "XFD1048576")]
-        {
+        for (row, column, name) in [
+            (11, 5, "F12"),
+            (0, 25, "Z1"),
+            (0, 26, "AA1"),
+            (1_048_575, 16_383, "XFD1048576"),
+        ] {
             assert_eq!(cell_name(row, column), name);
         }
         assert!(cell_name(u32::MAX, u32::MAX).ends_with("4294967296"));

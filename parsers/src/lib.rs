@@ -5,18 +5,42 @@
 //! aside with its place, what was found there and what was expected. An export that cannot be read
 //! at all is [`Refused`] with one sentence. Bad data is a result, never a panic.
 //!
+//! An export has one value field a row below the headings (delimited text, workbook) or an element
+//! at the rule's path (XML), and one in all when no role is looked up by row. A run is what shares
+//! part, appraiser, trial, factors, time and round; it is set aside whole when one of its readings
+//! cannot be used.
+//!
 //! Not here: files, clocks, the plan (who may measure what), judging, guessing. Nothing is repaired:
 //! a text that can be two numbers is no number.
 //!
 //! Invariant: every value field met in an export is a [`Reading`] of an accepted run or is counted
 //! in [`SetAside::readings`].
 
-mod fold;
+mod container;
+mod decode;
+mod delimited;
+mod fault;
+mod grid;
+mod kind;
+mod moment;
+mod names;
+mod no_value;
+mod number;
 mod parsed;
+mod plain;
+mod reader;
 mod rule;
+mod runs;
+mod source;
+mod table;
+mod workbook;
+mod xml;
+mod xml_path;
 
-pub use fold::fold;
+pub use names::key as fold;
 pub use parsed::{Parsed, Reading, Refused, Run, SetAside};
+pub use plain::{Plain, read_plain};
+pub use reader::{Reader, RuleError};
 pub use rule::{
     Bounds, Cell, Count, Find, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,
 };
@@ -29,4 +53,21 @@ pub struct Export<'a> {
     pub path: &'a str,
     /// The whole file.
     pub bytes: &'a [u8],
+}
+
+/// Reads one export by a rule that is used once; [`Reader`] compiles a rule for many.
+///
+/// # Errors
+/// [`Refused`] when nothing of the export can be used, and when the rule itself cannot be.
+pub fn read(export: Export<'_>, rule: &Rule) -> Result<Parsed, Refused> {
+    Reader::new(rule)
+        .map_err(|why| Refused::new(format!("the rule cannot be used: {why}")))?
+        .read(export)
+}
+
+/// True when the content is a workbook's (a zip archive or a compound file), whatever the file is
+/// called. Crafted workbooks can exhaust the memory of the process that reads them.
+#[must_use]
+pub fn is_workbook(bytes: &[u8]) -> bool {
+    kind::Kind::by_signature(bytes) != kind::Kind::Text
 }

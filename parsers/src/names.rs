@@ -15,8 +15,9 @@ pub(crate) fn fold_blanks(text: &str) -> String {
     folded
 }
 
-/// The key under which two spellings of a name are the same.
-pub(crate) fn key(text: &str) -> String {
+/// The key under which two spellings of a name are the same: outer blanks cut, inner ones folded, lower case.
+#[must_use]
+pub fn key(text: &str) -> String {
     fold_blanks(text).to_lowercase()
 }
 
@@ -33,10 +34,16 @@ pub(crate) fn shorten(text: &str) -> String {
 }
 
 /// The known name most like `sought`, if any is like it at all.
-pub(crate) fn nearest<'a>(sought: &str, known: impl IntoIterator<Item = &'a str>) -> Option<&'a str> {
+pub(crate) fn nearest<'a>(
+    sought: &str,
+    known: impl IntoIterator<Item = &'a str>,
+) -> Option<&'a str> {
     let sought = key(sought);
     let mut best: Option<(f64, &str)> = None;
-    for name in known.into_iter().filter(|name| name.len() <= 4 * QUOTED_MAX) {
+    for name in known
+        .into_iter()
+        .filter(|name| name.len() <= 4 * QUOTED_MAX)
+    {
         let likeness = strsim::normalized_damerau_levenshtein(&sought, &key(name));
         if likeness >= 0.5 && best.is_none_or(|(most, _)| likeness > most) {
             best = Some((likeness, name));
@@ -49,8 +56,11 @@ pub(crate) fn nearest<'a>(sought: &str, known: impl IntoIterator<Item = &'a str>
 pub(crate) fn listed<'a>(names: impl IntoIterator<Item = &'a str>) -> String {
     const SHOWN: usize = 12;
     let names: Vec<&str> = names.into_iter().collect();
-    let shown: Vec<String> =
-        names.iter().take(SHOWN).map(|name| format!("`{}`", shorten(name))).collect();
+    let shown: Vec<String> = names
+        .iter()
+        .take(SHOWN)
+        .map(|name| format!("`{}`", shorten(name)))
+        .collect();
     match names.len() {
         0 => "none".to_owned(),
         n if n > SHOWN => format!("{} and {} more", shown.join(", "), n - SHOWN),
@@ -69,7 +79,10 @@ mod tests {
 
     #[test]
     fn the_nearest_name_is_like_the_sought_one_or_there_is_none() {
-        assert_eq!(nearest("Serial no", ["Feature", "serial no.", "Actual"]), Some("serial no."));
+        assert_eq!(
+            nearest("Serial no", ["Feature", "serial no.", "Actual"]),
+            Some("serial no.")
+        );
         assert_eq!(nearest("Serial no.", ["Feature", "Actual"]), None);
     }
 

@@ -24,7 +24,8 @@ impl NoValue {
         let text = text.trim();
         self.texts.iter().any(|none| none == text)
             || (!self.numbers.is_empty()
-                && Number::read(text, mark).is_ok_and(|number| self.numbers.contains(&number.value)))
+                && Number::read(text, mark)
+                    .is_ok_and(|number| self.numbers.contains(&number.value)))
     }
 
     /// The same for a nominal or a limit, where a zero is a number like any other.

@@ -28,7 +28,10 @@ pub(crate) struct NotANumber {
 impl Number {
     /// A finite number of a workbook, taken as the shortest decimal text that means it.
     pub(crate) fn of(value: f64) -> Self {
-        Self { value, written: value.to_string() }
+        Self {
+            value,
+            written: value.to_string(),
+        }
     }
 
     /// The number that `text` writes with `mark` as its decimal mark. Blanks around it are cut.
@@ -68,7 +71,7 @@ impl Number {
 fn plain(text: &str, mark: char) -> Option<String> {
     let mut written = String::with_capacity(text.len());
     let mut chars = text.chars().peekable();
-    let mut digits = |written: &mut String, chars: &mut std::iter::Peekable<std::str::Chars<'_>>| {
+    let digits = |written: &mut String, chars: &mut std::iter::Peekable<std::str::Chars<'_>>| {
         let before = written.len();
         while let Some(digit) = chars.next_if(char::is_ascii_digit) {
             written.push(digit);
@@ -114,16 +117,18 @@ fn zero(written: &str) -> bool {
 fn hint(text: &str, mark: char) -> Option<String> {
     let other = if mark == ',' { '.' } else { ',' };
     if plain(text, other).is_some() {
-        return Some(format!("set `decimal = \"{other}\"` if this instrument writes `{other}`"));
+        return Some(format!(
+            "set `decimal = \"{other}\"` if this instrument writes `{other}`"
+        ));
     }
     let grouped = |c: char| matches!(c, '.' | ',' | '\'' | '\u{2019}' | '_') || c.is_whitespace();
     let ungrouped: String = text.chars().filter(|&c| c == mark || !grouped(c)).collect();
     if ungrouped.len() < text.len() && plain(&ungrouped, mark).is_some() {
         return Some("have the numbers written without marks between thousands".to_owned());
     }
-    let (number, suffix) = text.split_at(
-        text.find(|c: char| !(c.is_ascii_digit() || grouped(c) || matches!(c, '+' | '-' | '\u{2212}')))?,
-    );
+    let (number, suffix) = text.split_at(text.find(|c: char| {
+        !(c.is_ascii_digit() || grouped(c) || matches!(c, '+' | '-' | '\u{2212}'))
+    })?);
     (plain(number.trim_end(), mark).is_some()).then(|| {
         format!(
             "`{}` looks like a unit: have it left out, or take the number alone with `find`",
@@ -142,7 +147,10 @@ fn decimal(written: &str) -> Option<(i128, i32)> {
         return None;
     }
     let digits: i128 = format!("{whole}{fraction}").parse().ok()?;
-    Some((digits, exponent.checked_sub(i32::try_from(fraction.len()).ok()?)?))
+    Some((
+        digits,
+        exponent.checked_sub(i32::try_from(fraction.len()).ok()?)?,
+    ))
 }
 
 fn exact_sum(a: &str, b: &str) -> Option<f64> {
@@ -177,10 +185,18 @@ mod tests {
             ("007", '.', 7.0),
             ("0.000", '.', 0.0),
             ("0e-999", '.', 0.0),
-            ("12.034500000000000000000000000000000000000000001", '.', 12.0345),
+            (
+                "12.034500000000000000000000000000000000000000001",
+                '.',
+                12.0345,
+            ),
             ("1.7976931348623157e308", '.', f64::MAX),
         ] {
-            assert_eq!(Number::read(text, mark).map(|n| n.value), Ok(value), "{text}");
+            assert_eq!(
+                Number::read(text, mark).map(|n| n.value),
+                Ok(value),
+                "{text}"
+            );
         }
     }
 
@@ -220,7 +236,12 @@ mod tests {
 
     #[test]
     fn the_hint_fits_the_mistake() {
-        let hint = |text, mark| Number::read(text, mark).unwrap_err().hint.unwrap_or_default();
+        let hint = |text, mark| {
+            Number::read(text, mark)
+                .unwrap_err()
+                .hint
+                .unwrap_or_default()
+        };
         assert!(hint("50.012", ',').contains("decimal = \".\""));
         assert!(hint("1.234,5", ',').contains("thousands"));
         assert!(hint("1\u{202f}234,5", ',').contains("thousands"));

@@ -87,3 +87,21 @@ pub struct Refused {
     /// of NULs): worth another look later.
     pub perhaps_unfinished: bool,
 }
+
+impl Refused {
+    pub(crate) fn new(sentence: impl Into<String>) -> Self {
+        Self {
+            sentence: sentence.into(),
+            hint: None,
+            perhaps_unfinished: false,
+        }
+    }
+
+    /// A refusal of what a file that is still being written would look like.
+    pub(crate) fn unfinished(sentence: impl Into<String>) -> Self {
+        Self {
+            perhaps_unfinished: true,
+            ..Self::new(sentence)
+        }
+    }
+}

@@ -4,6 +4,7 @@ use std::borrow::Cow;
 
 use encoding_rs::Encoding;
 
+use crate::Export;
 use crate::decode;
 use crate::delimited;
 use crate::grid::{Content, Field, Grid, Place};
@@ -18,7 +19,6 @@ use crate::table;
 use crate::workbook;
 use crate::xml;
 use crate::xml_path::XmlPath;
-use crate::Export;
 
 /// A rule that no export can be read with.
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
@@ -32,7 +32,10 @@ pub struct RuleError {
 
 impl RuleError {
     pub(crate) fn new(role: &str, what: impl Into<String>) -> Self {
-        Self { role: role.to_owned(), what: what.into() }
+        Self {
+            role: role.to_owned(),
+            what: what.into(),
+        }
     }
 }
 
@@ -96,8 +99,14 @@ pub(crate) struct LimitAt {
 
 #[derive(Debug, Clone)]
 enum Shape {
-    Table { sheet: Sheet, header: Header, delimiter: Option<u8> },
-    Xml { each: XmlPath },
+    Table {
+        sheet: Sheet,
+        header: Header,
+        delimiter: Option<u8>,
+    },
+    Xml {
+        each: XmlPath,
+    },
 }
 
 impl Reader {
@@ -108,16 +117,29 @@ impl Reader {
     /// form, a limit from a nominal that is not there.
     pub fn new(rule: &Rule) -> Result<Self, RuleError> {
         if !matches!(rule.decimal, '.' | ',') {
-            return Err(RuleError::new("decimal", format!("`{}` is neither `.` nor `,`", rule.decimal)));
+            return Err(RuleError::new(
+                "decimal",
+                format!("`{}` is neither `.` nor `,`", rule.decimal),
+            ));
         }
         let encoding = match &rule.encoding {
             None => None,
-            Some(label) => Some(Encoding::for_label_no_replacement(label.as_bytes()).ok_or_else(
-                || RuleError::new("encoding", format!("`{}` names no encoding", shorten(label))),
-            )?),
+            Some(label) => Some(
+                Encoding::for_label_no_replacement(label.as_bytes()).ok_or_else(|| {
+                    RuleError::new(
+                        "encoding",
+                        format!("`{}` names no encoding", shorten(label)),
+                    )
+                })?,
+            ),
         };
         let shape = Shape::new(&rule.form, rule.decimal)?;
-        Ok(Self { roles: Roles::new(rule, shape.each())?, shape, encoding, bounds: rule.bounds })
+        Ok(Self {
+            roles: Roles::new(rule, shape.each())?,
+            shape,
+            encoding,
+            bounds: rule.bounds,
+        })
     }
 
     /// Reads one export.
@@ -128,7 +150,11 @@ impl Reader {
         let kind = Kind::of(export.bytes, &self.bounds)?;
         let once = self.once(export.path)?;
         match &self.shape {
-            Shape::Table { sheet, header, delimiter } => {
+            Shape::Table {
+                sheet,
+                header,
+                delimiter,
+            } => {
                 let grid = match kind {
                     Kind::Text => {
                         let text = self.text(export.bytes)?;
@@ -143,7 +169,9 @@ impl Reader {
             }
             Shape::Xml { each } => match kind {
                 Kind::Text => xml::read(&self.text(export.bytes)?, self, each, once),
-                _ => Err(Refused::new("this is a workbook; this instrument's exports are XML")),
+                _ => Err(Refused::new(
+                    "this is a workbook; this instrument's exports are XML",
+                )),
             },
         }
     }
@@ -165,7 +193,9 @@ impl Reader {
         let text = decode::decode(bytes, declared, self.encoding)?;
         let is_markup = text.trim_start().starts_with("<?xml");
         if is_markup && matches!(self.shape, Shape::Table { .. }) {
-            return Err(Refused::new("this is XML; this instrument's exports are tables"));
+            return Err(Refused::new(
+                "this is XML; this instrument's exports are tables",
+            ));
         }
         Ok(text)
     }
@@ -205,10 +235,15 @@ impl Source {
 impl Shape {
     fn new(form: &Form, decimal: char) -> Result<Self, RuleError> {
         match form {
-            Form::Table { header: Header::Row(0), .. } => {
-                Err(RuleError::new("header", "rows are counted from 1"))
-            }
-            Form::Table { sheet, header, delimiter } => {
+            Form::Table {
+                header: Header::Row(0),
+                ..
+            } => Err(RuleError::new("header", "rows are counted from 1")),
+            Form::Table {
+                sheet,
+                header,
+                delimiter,
+            } => {
                 let delimiter = match delimiter {
                     None => None,
                     Some(mark) if *mark == decimal => {
@@ -221,7 +256,11 @@ impl Shape {
                         RuleError::new("delimiter", format!("{mark:?} cannot part fields"))
                     })?),
                 };
-                Ok(Self::Table { sheet: sheet.clone(), header: header.clone(), delimiter })
+                Ok(Self::Table {
+                    sheet: sheet.clone(),
+                    header: header.clone(),
+                    delimiter,
+                })
             }
             Form::Xml { each } => Ok(Self::Xml {
                 each: XmlPath::element(each).map_err(|what| RuleError::new("each", what))?,
@@ -244,9 +283,8 @@ impl Roles {
             sources.push(Source::new(name, role, each)?);
             Ok(sources.len() - 1)
         };
-        let mut maybe = |name: &str, role: Option<&Role>| {
-            role.map(|role| add(name, role)).transpose()
-        };
+        let mut maybe =
+            |name: &str, role: Option<&Role>| role.map(|role| add(name, role)).transpose();
         let limit = |limit: Option<&Limit>, source: Option<usize>| {
             limit.zip(source).map(|(limit, source)| LimitAt {
                 source,
@@ -260,7 +298,10 @@ impl Roles {
             }
             Some(Trial::Counted(Count::Order)) => TrialBy::Order,
             Some(Trial::Counted(Count::Taken)) if rule.taken.is_none() => {
-                return Err(RuleError::new("trial", "counted by time stamp, but there is no `taken`"));
+                return Err(RuleError::new(
+                    "trial",
+                    "counted by time stamp, but there is no `taken`",
+                ));
             }
             Some(Trial::Counted(Count::Taken)) | None => TrialBy::Nothing,
         };
@@ -286,9 +327,20 @@ impl Roles {
             .collect::<Result<_, _>>()?;
         let part = add("part", &rule.part)?;
         let value = add("value", &rule.value.role)?;
-        let (lower, upper) = (limit(rule.lower.as_ref(), lower), limit(rule.upper.as_ref(), upper));
-        if nominal.is_none() && [lower, upper].iter().flatten().any(|limit| limit.from_nominal) {
-            return Err(RuleError::new("nominal", "a limit is taken from it, but there is none"));
+        let (lower, upper) = (
+            limit(rule.lower.as_ref(), lower),
+            limit(rule.upper.as_ref(), upper),
+        );
+        if nominal.is_none()
+            && [lower, upper]
+                .iter()
+                .flatten()
+                .any(|limit| limit.from_nominal)
+        {
+            return Err(RuleError::new(
+                "nominal",
+                "a limit is taken from it, but there is none",
+            ));
         }
         let taken = match (&rule.taken, taken) {
             (Some(rule), Some(source)) => Some((
@@ -315,15 +367,17 @@ impl Roles {
             same,
             decimal: rule.decimal,
             no_value: NoValue::new(&rule.no_value, rule.decimal),
-            end: rule
-                .end
-                .as_ref()
-                .map(|end| End { text: end.find.clone(), key: key(&end.find) }),
+            end: rule.end.as_ref().map(|end| End {
+                text: end.find.clone(),
+                key: key(&end.find),
+            }),
         })
     }
 
     /// True when some role is looked up by row.
     pub(crate) fn by_row(&self) -> bool {
-        self.sources.iter().any(|source| matches!(source.from, Where::Column(_)))
+        self.sources
+            .iter()
+            .any(|source| matches!(source.from, Where::Column(_)))
     }
 }

@@ -208,6 +208,10 @@ impl Role {
     /// The role taken whole from one place.
     #[must_use]
     pub fn plain(from: Cell) -> Self {
-        Self { from, find: None, spellings: BTreeMap::new() }
+        Self {
+            from,
+            find: None,
+            spellings: BTreeMap::new(),
+        }
     }
 }

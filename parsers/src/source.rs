@@ -45,14 +45,18 @@ impl Source {
     pub(crate) fn new(name: &str, role: &Role, each: Option<&XmlPath>) -> Result<Self, RuleError> {
         let error = |what: String| RuleError::new(name, what);
         let regex = |text: &str| {
-            Regex::new(text).map_err(|why| error(format!("the regex `{text}` cannot be used: {why}")))
+            Regex::new(text)
+                .map_err(|why| error(format!("the regex `{text}` cannot be used: {why}")))
         };
         let from = match (&role.from, each) {
             (Cell::Constant(text), _) => Where::Constant(Content::Text(text.as_str().into())),
             (Cell::Path(text), _) => Where::Path(regex(text)?),
             (Cell::Xml(path), Some(each)) => Where::Xml(each.join(path).map_err(error)?),
             (Cell::Column(heading), None) => Where::Column(heading.clone()),
-            (Cell::At { row, column }, None) => Where::At { row: *row, column: *column },
+            (Cell::At { row, column }, None) => Where::At {
+                row: *row,
+                column: *column,
+            },
             (Cell::Label(label), None) => Where::Label(label.clone()),
             (Cell::Xml(_), None) => {
                 return Err(error("an XML path, but the form is a table".to_owned()));
@@ -124,32 +128,49 @@ impl Source {
 
     /// The number that stands there, and `None` when the field is blank.
     pub(crate) fn number(&self, field: Field<'_>, mark: char) -> Result<Option<Number>, Fault> {
-        if let (Content::Number(number), None, true) =
-            (field.content, &self.find, self.spellings.is_empty())
+        if let Content::Number(number) = field.content
+            && self.is_plain()
         {
             return Ok(Some(Number::of(*number)));
         }
-        let mark = if matches!(field.place, Place::Rule) { '.' } else { mark };
+        let mark = if matches!(field.place, Place::Rule) {
+            '.'
+        } else {
+            mark
+        };
         let expected = format!("a number with the decimal mark `{mark}`");
         if let Content::Date(date) = field.content {
             return Err(Fault::new(
                 field.place,
                 date.to_string(),
                 expected,
-                format!("holds the date {date}, where the {} should stand", self.role),
+                format!(
+                    "holds the date {date}, where the {} should stand",
+                    self.role
+                ),
             ));
         }
-        let Some(text) = self.text(field)? else { return Ok(None) };
-        let mark = if matches!(field.content, Content::Number(_)) { '.' } else { mark };
+        let Some(text) = self.text(field)? else {
+            return Ok(None);
+        };
+        let mark = if matches!(field.content, Content::Number(_)) {
+            '.'
+        } else {
+            mark
+        };
         match Number::read(&text, mark) {
             Ok(number) => Ok(Some(number)),
             Err(not) => {
-                let mut fault =
-                    Fault::new(field.place, shown(field.content), expected, not.wrong);
+                let mut fault = Fault::new(field.place, shown(field.content), expected, not.wrong);
                 fault.hint = not.hint;
                 Err(fault)
             }
         }
+    }
+
+    /// True when the whole text is taken as it stands.
+    pub(crate) fn is_plain(&self) -> bool {
+        self.find.is_none() && self.spellings.is_empty()
     }
 
     pub(crate) fn blank(&self, place: Place<'_>) -> Fault {
@@ -165,11 +186,19 @@ impl Source {
 /// The first group of the match, or the whole match when the regex has no group.
 pub(crate) fn first_group<'t>(regex: &Regex, text: &'t str) -> Option<&'t str> {
     let found = regex.captures(text)?;
-    let group = if found.len() > 1 { found.get(1) } else { found.get(0) };
+    let group = if found.len() > 1 {
+        found.get(1)
+    } else {
+        found.get(0)
+    };
     group.map(|group| group.as_str())
 }
 
 /// A workbook's number as a label: whole numbers as plain digits.
 fn digits(number: f64) -> String {
-    if number == 0.0 { "0".to_owned() } else { number.to_string() }
+    if number == 0.0 {
+        "0".to_owned()
+    } else {
+        number.to_string()
+    }
 }

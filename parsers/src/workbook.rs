@@ -8,8 +8,8 @@ use std::io::Cursor;
 use std::panic::{AssertUnwindSafe, catch_unwind};
 
 use calamine::{
-    DataRef, ExcelDateTime, Reader as _, SheetType, SheetVisible, Xlsx, XlsxCellFormulaMetadataRecord,
-    XlsxError,
+    DataRef, ExcelDateTime, Reader as _, SheetType, SheetVisible, Xlsx,
+    XlsxCellFormulaMetadataRecord, XlsxError, XlsxFormulaMetadata,
 };
 use jiff::civil;
 
@@ -36,19 +36,39 @@ pub(crate) fn grid(
 fn cells(bytes: &[u8], sheet: &Sheet, bounds: &Bounds) -> Result<Grid, Refused> {
     let mut book = Xlsx::new(Cursor::new(bytes)).map_err(|why| damaged(&why.to_string()))?;
     let name = chosen(&book, sheet)?;
-    let mut reader =
-        book.worksheet_cells_reader(&name).map_err(|why| damaged(&why.to_string()))?;
-    let mut rows = Rows { sheet: &name, bounds, rows: BTreeMap::new(), cells: 0, last: 0, open: None };
-    loop {
-        match reader.next_cell_with_formula_metadata() {
-            Ok(Some(cell)) => rows.add(cell)?,
-            Ok(None) => break,
-            Err(why) if costs_one_cell(&why) => rows.damage(&why)?,
-            Err(why) => return Err(damaged(&why.to_string())),
-        }
+    let mut rows = Rows::scan(&mut book, &name, None, bounds)?;
+    if rows.unreadable > 0 {
+        let places = places(&mut book, &name, &rows)?;
+        rows = Rows::scan(&mut book, &name, Some(&places), bounds)?;
     }
-    rows.close_damage(u32::MAX);
-    Ok(Grid { origin: Origin::Sheet(shorten(&name).into()), rows: rows.rows.into_values().collect() })
+    let rows = rows.rows.into_values().collect();
+    Ok(Grid {
+        origin: Origin::Sheet(shorten(&name).into()),
+        rows,
+    })
+}
+
+/// The place of every cell. The reader of values says nothing of the place of a cell that it cannot
+/// read, and takes cells without a stated place to follow the last one it could.
+fn places(
+    book: &mut Xlsx<Cursor<&[u8]>>,
+    name: &str,
+    scanned: &Rows<'_>,
+) -> Result<Vec<(u32, u32)>, Refused> {
+    if scanned.largest_shared_formula > CELLS_MAX {
+        return Err(damaged("a shared formula is numbered beyond all cells"));
+    }
+    let mut reader = book
+        .worksheet_cells_reader(name)
+        .map_err(|why| damaged(&why.to_string()))?;
+    let mut places = Vec::new();
+    while let Some(cell) = reader
+        .next_formula()
+        .map_err(|why| damaged(&why.to_string()))?
+    {
+        places.push(cell.get_position());
+    }
+    Ok(places)
 }
 
 /// Faults after which the reader goes on with the next cell.
@@ -64,8 +84,11 @@ fn costs_one_cell(why: &XlsxError) -> bool {
 }
 
 fn chosen(book: &Xlsx<Cursor<&[u8]>>, asked: &Sheet) -> Result<String, Refused> {
-    let sheets: Vec<&calamine::Sheet> =
-        book.sheets_metadata().iter().filter(|sheet| sheet.typ == SheetType::WorkSheet).collect();
+    let sheets: Vec<&calamine::Sheet> = book
+        .sheets_metadata()
+        .iter()
+        .filter(|sheet| sheet.typ == SheetType::WorkSheet)
+        .collect();
     let names = || sheets.iter().map(|sheet| sheet.name.as_str());
     match asked {
         Sheet::First => sheets
@@ -75,15 +98,18 @@ fn chosen(book: &Xlsx<Cursor<&[u8]>>, asked: &Sheet) -> Result<String, Refused> 
             .ok_or_else(|| Refused::new("the workbook has no visible sheet")),
         Sheet::Named(sought) => {
             let same = |name: &&str| key(name) == key(sought);
-            names().find(same).map(str::to_owned).ok_or_else(|| Refused {
-                sentence: format!(
-                    "no sheet is named `{}`; the workbook has {}",
-                    shorten(sought),
-                    listed(names())
-                ),
-                hint: nearest(sought, names()).map(|name| format!("did you mean `{name}`?")),
-                perhaps_unfinished: false,
-            })
+            names()
+                .find(same)
+                .map(str::to_owned)
+                .ok_or_else(|| Refused {
+                    sentence: format!(
+                        "no sheet is named `{}`; the workbook has {}",
+                        shorten(sought),
+                        listed(names())
+                    ),
+                    hint: nearest(sought, names()).map(|name| format!("did you mean `{name}`?")),
+                    perhaps_unfinished: false,
+                })
         }
     }
 }
@@ -94,18 +120,57 @@ struct Rows<'a> {
     bounds: &'a Bounds,
     rows: BTreeMap<u32, Row>,
     cells: usize,
-    /// Row of the last cell that could be read.
-    last: u32,
-    /// An unreadable cell after `last`, whose place the next readable cell bounds.
-    open: Option<Box<str>>,
+    unreadable: usize,
+    largest_shared_formula: usize,
 }
 
-impl Rows<'_> {
-    fn add(&mut self, cell: XlsxCellFormulaMetadataRecord<'_>) -> Result<(), Refused> {
-        let (row, column) = cell.pos;
-        self.close_damage(row);
-        self.last = row;
-        let content = self.content(cell)?;
+impl<'a> Rows<'a> {
+    /// Reads all cells; `places` overrules where the reader takes them to be.
+    fn scan(
+        book: &mut Xlsx<Cursor<&[u8]>>,
+        sheet: &'a str,
+        places: Option<&[(u32, u32)]>,
+        bounds: &'a Bounds,
+    ) -> Result<Self, Refused> {
+        let mut reader = book
+            .worksheet_cells_reader(sheet)
+            .map_err(|why| damaged(&why.to_string()))?;
+        let mut rows = Rows {
+            sheet,
+            bounds,
+            rows: BTreeMap::new(),
+            cells: 0,
+            unreadable: 0,
+            largest_shared_formula: 0,
+        };
+        for index in 0.. {
+            let place = places.and_then(|places| places.get(index)).copied();
+            match reader.next_cell_with_formula_metadata() {
+                Ok(Some(cell)) => {
+                    let shared = cell
+                        .formula
+                        .as_ref()
+                        .and_then(XlsxFormulaMetadata::shared_index);
+                    rows.largest_shared_formula =
+                        rows.largest_shared_formula.max(shared.unwrap_or(0));
+                    let place = place.unwrap_or(cell.pos);
+                    let content = rows.content(place, cell)?;
+                    rows.put(place, content)?;
+                }
+                Ok(None) => break,
+                Err(why) if costs_one_cell(&why) => {
+                    rows.unreadable += 1;
+                    if let Some(place) = place {
+                        rows.put(place, Content::Unusable(unreadable(&why).into()))?;
+                    }
+                }
+                Err(why) => return Err(damaged(&why.to_string())),
+            }
+        }
+        Ok(rows)
+    }
+
+    fn put(&mut self, (row, column): (u32, u32), content: Content) -> Result<(), Refused> {
         if content == Content::Blank {
             return Ok(());
         }
@@ -117,9 +182,15 @@ impl Rows<'_> {
         }
         self.cells += 1;
         if self.cells > CELLS_MAX {
-            return Err(Refused::new(format!("more than {CELLS_MAX} cells; that is the limit")));
+            return Err(Refused::new(format!(
+                "more than {CELLS_MAX} cells; that is the limit"
+            )));
         }
-        let cells = &mut self.rows.entry(row).or_insert_with(|| Row::new(row, None)).cells;
+        let cells = &mut self
+            .rows
+            .entry(row)
+            .or_insert_with(|| Row::new(row, None))
+            .cells;
         match cells.last() {
             Some((last, _)) if *last >= column => {
                 match cells.binary_search_by_key(&column, |(column, _)| *column) {
@@ -132,10 +203,13 @@ impl Rows<'_> {
         Ok(())
     }
 
-    fn content(&self, cell: XlsxCellFormulaMetadataRecord<'_>) -> Result<Content, Refused> {
+    fn content(
+        &self,
+        (row, column): (u32, u32),
+        cell: XlsxCellFormulaMetadataRecord<'_>,
+    ) -> Result<Content, Refused> {
         let text = |text: &str| {
             if text.len() > self.bounds.text_bytes as usize {
-                let (row, column) = cell.pos;
                 return Err(Refused::new(format!(
                     "sheet `{}`, cell {}: a text of {} bytes; the limit is {}",
                     self.sheet,
@@ -176,27 +250,12 @@ impl Rows<'_> {
             cell_name(row, column)
         ))
     }
+}
 
-    fn damage(&mut self, why: &XlsxError) -> Result<(), Refused> {
-        self.cells += 1;
-        if self.cells > CELLS_MAX {
-            return Err(Refused::new(format!("more than {CELLS_MAX} cells; that is the limit")));
-        }
-        self.open = Some(shorten(&why.to_string()).into());
-        Ok(())
-    }
-
-    /// The unreadable cell lies between the last readable one and this row: none of these rows can
-    /// be trusted.
-    fn close_damage(&mut self, next: u32) {
-        let Some(why) = self.open.take() else { return };
-        let until = if next == u32::MAX { self.last.saturating_add(1) } else { next };
-        for number in [self.last, self.last.saturating_add(1), until] {
-            if number <= until {
-                let row = self.rows.entry(number).or_insert_with(|| Row::new(number, None));
-                row.damage = Some(why.clone());
-            }
-        }
+fn unreadable(why: &XlsxError) -> String {
+    match why {
+        XlsxError::CellError(text) => format!("the error `{}`", shorten(text)),
+        other => format!("what cannot be read ({})", shorten(&other.to_string())),
     }
 }
 

@@ -20,7 +20,9 @@ impl XmlPath {
         let path = Self::from_steps(Vec::new(), text, text.strip_prefix('/'))?;
         match path.attribute {
             None => Ok(path),
-            Some(_) => Err(format!("`{text}` is a path to an attribute; expected an element")),
+            Some(_) => Err(format!(
+                "`{text}` is a path to an attribute; expected an element"
+            )),
         }
     }
 
@@ -34,7 +36,11 @@ impl XmlPath {
 
     /// How many leading elements both paths share.
     pub(crate) fn shared(&self, other: &Self) -> usize {
-        self.elements.iter().zip(&other.elements).take_while(|(a, b)| a == b).count()
+        self.elements
+            .iter()
+            .zip(&other.elements)
+            .take_while(|(a, b)| a == b)
+            .count()
     }
 
     fn from_steps(
@@ -43,7 +49,9 @@ impl XmlPath {
         steps: Option<&str>,
     ) -> Result<Self, String> {
         let not_a_path = || {
-            format!("`{text}` is not a path such as `/export/run/feature`, `value`, `@id` or `../@part`")
+            format!(
+                "`{text}` is not a path such as `/export/run/feature`, `value`, `@id` or `../@part`"
+            )
         };
         let mut attribute = None;
         for step in steps.ok_or_else(not_a_path)?.split('/') {
@@ -68,14 +76,20 @@ impl XmlPath {
             shown.push_str("/@");
             shown.push_str(attribute);
         }
-        Ok(Self { elements, attribute, shown })
+        Ok(Self {
+            elements,
+            attribute,
+            shown,
+        })
     }
 }
 
 /// A local name: no blanks, no marks that mean something in a path or in XML.
 fn is_name(name: &str) -> bool {
     !name.is_empty()
-        && name.chars().all(|c| c.is_alphanumeric() || matches!(c, '_' | '-' | '.' | '\u{b7}'))
+        && name
+            .chars()
+            .all(|c| c.is_alphanumeric() || matches!(c, '_' | '-' | '.' | '\u{b7}'))
 }
 
 impl fmt::Display for XmlPath {
@@ -106,14 +120,28 @@ mod tests {
             ("../../head/operator", "/export/head/operator"),
             ("/export/@id", "/export/@id"),
         ] {
-            assert_eq!(each.join(text).map(|path| path.to_string()), Ok(absolute.to_owned()));
+            assert_eq!(
+                each.join(text).map(|path| path.to_string()),
+                Ok(absolute.to_owned())
+            );
         }
     }
 
     #[test]
     fn what_is_no_path_is_refused() {
         let each = XmlPath::element("/export/run").unwrap();
-        for text in ["", "/", "@", "a//b", "@id/value", "../..", "../../..", "a b", "*[1]", "x:y"] {
+        for text in [
+            "",
+            "/",
+            "@",
+            "a//b",
+            "@id/value",
+            "../..",
+            "../../..",
+            "a b",
+            "*[1]",
+            "x:y",
+        ] {
             assert!(each.join(text).is_err(), "{text}");
         }
         assert!(XmlPath::element("export/run").is_err());

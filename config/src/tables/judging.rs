@@ -6,13 +6,17 @@ use crate::source::Place;
 use crate::walk::{Node, Table};
 
 const SHARE: &str = "a share of tolerance above 0 and up to 5";
+const ORDER: &str = "watch below act";
 const BACK_BELOW: f64 = 0.85;
 
 /// A share; what looks like per cent gets a hint.
 fn share(node: &Node<'_>) -> Option<f64> {
     let share = node.number(|_| true, SHARE)?;
     if share > 5.0 {
-        node.fault_hint(SHARE, "a share of 1 is the whole tolerance: write 10 % as 0.10");
+        node.fault_hint(
+            SHARE,
+            "a share of 1 is the whole tolerance: write 10 % as 0.10",
+        );
     } else if share <= 0.0 {
         node.fault(SHARE);
     }
@@ -20,18 +24,36 @@ fn share(node: &Node<'_>) -> Option<f64> {
 }
 
 fn back_below(node: &Node<'_>) -> Option<f64> {
-    node.number(|part| part > 0.0 && part <= 1.0, "a part of the limit above 0 and up to 1")
+    node.number(
+        |part| part > 0.0 && part <= 1.0,
+        "a part of the limit above 0 and up to 1",
+    )
 }
 
 /// `[plan.limits]`: both limits are needed; so is their order.
 pub(crate) fn limits(table: &Table<'_>) -> Option<(Limits, Judge)> {
     let watch = table.need("watch", SHARE).and_then(|node| share(&node));
     let act = table.need("act", SHARE).and_then(|node| share(&node));
-    let back_below = table.get("back_below").map_or(Some(BACK_BELOW), |node| back_below(&node));
-    let judge = table.get("judge").map_or(Some(Judge::Estimate), |node| judge(&node));
+    let back_below = table
+        .get("back_below")
+        .map_or(Some(BACK_BELOW), |node| back_below(&node));
+    let judge = table
+        .get("judge")
+        .map_or(Some(Judge::Estimate), |node| judge(&node));
     table.finish();
-    let limits = Limits { watch: watch?, act: act?, back_below: back_below? };
-    Some((in_order(&table.place, limits)?, judge?))
+    let limits = Limits {
+        watch: watch?,
+        act: act?,
+        back_below: back_below?,
+    };
+    if limits.watch >= limits.act {
+        table.place_of("watch").fault(
+            format!("watch {} and act {}", limits.watch, limits.act),
+            ORDER,
+        );
+        return None;
+    }
+    Some((limits, judge?))
 }
 
 /// What a characteristic says about its own limits.
@@ -62,27 +84,31 @@ impl OwnLimits {
             act: self.act.unwrap_or(plan.act),
             back_below: self.back_below.unwrap_or(plan.back_below),
         };
-        in_order(place, limits)
+        if limits.watch >= limits.act {
+            let found = format!("watch {} and act {}", limits.watch, limits.act);
+            place.fault_hint(
+                found,
+                ORDER,
+                "a limit that a characteristic does not name is the plan's",
+            );
+            return None;
+        }
+        Some(limits)
     }
-}
-
-fn in_order(place: &Place<'_>, limits: Limits) -> Option<Limits> {
-    if limits.watch < limits.act {
-        return Some(limits);
-    }
-    place.fault_hint(
-        format!("watch {} and act {}", limits.watch, limits.act),
-        "watch below act",
-        "a limit that a characteristic does not name is the plan's",
-    );
-    None
 }
 
 fn judge(node: &Node<'_>) -> Option<Judge> {
     if node.is_table() {
         let table = node.table("a table")?;
-        let chance = |node: Node<'_>| node.number(|chance| (0.5..1.0).contains(&chance), "a chance from 0.5 to below 1");
-        let chance = table.need("chance", "a chance from 0.5 to below 1").and_then(chance);
+        let chance = |node: Node<'_>| {
+            node.number(
+                |chance| (0.5..1.0).contains(&chance),
+                "a chance from 0.5 to below 1",
+            )
+        };
+        let chance = table
+            .need("chance", "a chance from 0.5 to below 1")
+            .and_then(chance);
         table.finish();
         return chance.map(Judge::Chance);
     }
@@ -107,8 +133,11 @@ fn judge(node: &Node<'_>) -> Option<Judge> {
 pub(crate) fn interaction(node: &Node<'_>) -> Option<Interaction> {
     if node.is_table() {
         let table = node.table("a table")?;
-        let p = |node: Node<'_>| node.number(|p| p > 0.0 && p < 1.0, "a probability between 0 and 1");
-        let p = table.need("pool_above", "a probability between 0 and 1").and_then(p);
+        let p =
+            |node: Node<'_>| node.number(|p| p > 0.0 && p < 1.0, "a probability between 0 and 1");
+        let p = table
+            .need("pool_above", "a probability between 0 and 1")
+            .and_then(p);
         table.finish();
         return p.map(Interaction::PoolAbove);
     }
@@ -131,10 +160,17 @@ pub(crate) fn process(node: &Node<'_>) -> Option<Process> {
         return None;
     }
     let table = node.table("a table")?;
-    let mean = table.need("mean", "the process mean").and_then(|node| node.number(|_| true, "the process mean"));
-    let sd = table.need("sd", "the process sd").and_then(|node| node.number(|sd| sd > 0.0, "a standard deviation above 0"));
+    let mean = table
+        .need("mean", "the process mean")
+        .and_then(|node| node.number(|_| true, "the process mean"));
+    let sd = table
+        .need("sd", "the process sd")
+        .and_then(|node| node.number(|sd| sd > 0.0, "a standard deviation above 0"));
     table.finish();
-    Some(Process::Stated { mean: mean?, sd: sd? })
+    Some(Process::Stated {
+        mean: mean?,
+        sd: sd?,
+    })
 }
 
 /// The words for one-sided rules; `none`: shown without a share.
@@ -154,9 +190,15 @@ pub(crate) fn one_sided(node: &Node<'_>) -> Option<Option<OneSided>> {
         table.finish();
         return width.map(|width| Some(OneSided::Width(width)));
     }
-    let word = node.as_text().and_then(|text| ONE_SIDED.iter().find(|(word, _)| *word == text));
+    let word = node
+        .as_text()
+        .and_then(|text| ONE_SIDED.iter().find(|(word, _)| *word == text));
     if word.is_none() {
-        let known = ONE_SIDED.iter().map(|(word, _)| format!("\"{word}\"")).collect::<Vec<_>>().join(", ");
+        let known = ONE_SIDED
+            .iter()
+            .map(|(word, _)| format!("\"{word}\""))
+            .collect::<Vec<_>>()
+            .join(", ");
         node.fault(format!("{known} or {{ width = 0.05 }}"));
     }
     word.map(|(_, rule)| *rule)

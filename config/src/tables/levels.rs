@@ -23,9 +23,15 @@ pub(crate) fn levels(node: &Node<'_>, least: u32, what: &str) -> Option<FactorLe
     let mut labels: Vec<Label> = Vec::new();
     for node in nodes {
         let Some(label) = label(&node) else { continue };
-        let is_known = |text: &&str| labels.iter().flat_map(texts).any(|other| fold(other) == fold(text));
+        let is_known = |text: &&str| {
+            labels
+                .iter()
+                .flat_map(texts)
+                .any(|other| fold(other) == fold(text))
+        };
         if let Some(twice) = texts(&label).find(is_known) {
-            node.place.fault(format!("`{twice}` again"), "each name and spelling once");
+            node.place
+                .fault(format!("`{twice}` again"), "each name and spelling once");
             continue;
         }
         labels.push(label);
@@ -40,22 +46,35 @@ pub(crate) fn levels(node: &Node<'_>, least: u32, what: &str) -> Option<FactorLe
 /// A name, or `{ name = "KL", spellings = ["k.l."] }`.
 fn label(node: &Node<'_>) -> Option<Label> {
     if !node.is_table() {
-        return Some(Label { name: node.name()?.to_owned(), spellings: Vec::new() });
+        return Some(Label {
+            name: node.name()?.to_owned(),
+            spellings: Vec::new(),
+        });
     }
     let table = node.table("a name")?;
-    let name = table.need("name", "the name as it is shown").and_then(|node| node.name());
-    let spellings = table.need("spellings", "a list of other spellings").and_then(|node| node.names("a list of other spellings"));
+    let name = table
+        .need("name", "the name as it is shown")
+        .and_then(|node| node.name());
+    let spellings = table
+        .need("spellings", "a list of other spellings")
+        .and_then(|node| node.names("a list of other spellings"));
     table.finish();
     let name = name?;
     let mut others = Vec::new();
     for (spelling, node) in spellings? {
         if fold(spelling) == fold(name) {
-            node.fault_hint("another spelling than the name itself", "case and blanks make no difference");
+            node.fault_hint(
+                "another spelling than the name itself",
+                "case and blanks make no difference",
+            );
             return None;
         }
         others.push(spelling.to_owned());
     }
-    Some(Label { name: name.to_owned(), spellings: others })
+    Some(Label {
+        name: name.to_owned(),
+        spellings: others,
+    })
 }
 
 fn texts(label: &Label) -> impl Iterator<Item = &str> {

@@ -10,34 +10,59 @@ use crate::source::{Place, Source, shortened};
 use crate::tables::characteristic::Draft;
 use crate::tables::judging::{ONE_SIDED, OwnLimits};
 
-const HEADINGS: [&str; 7] = ["name", "nominal", "lower", "upper", "unit", "one_sided", "special"];
+const HEADINGS: [&str; 7] = [
+    "name",
+    "nominal",
+    "lower",
+    "upper",
+    "unit",
+    "one_sided",
+    "special",
+];
 
-/// Every row that can be read; the others are told.
-pub(crate) fn drafts<'a>(source: &'a Source<'a>) -> Vec<Draft<'a>> {
-    let whole = Place { source, offset: 0, key: "the list of characteristics".to_owned() };
+/// Every row that can be read, the others are told; `None` when there is none.
+pub(crate) fn drafts<'a>(source: &'a Source<'a>) -> Option<Vec<Draft<'a>>> {
+    let whole = Place {
+        source,
+        offset: 0,
+        key: "the list of characteristics".to_owned(),
+    };
     let text = source.text.strip_prefix('\u{feff}').unwrap_or(source.text);
     let skipped = source.text.len() - text.len();
     let first_line = text.lines().next().unwrap_or_default();
     let delimiter = if first_line.contains(';') { b';' } else { b',' };
-    let mut reader = csv::ReaderBuilder::new().has_headers(false).flexible(true).trim(csv::Trim::All).delimiter(delimiter).from_reader(text.as_bytes());
+    let mut reader = csv::ReaderBuilder::new()
+        .has_headers(false)
+        .flexible(true)
+        .trim(csv::Trim::All)
+        .delimiter(delimiter)
+        .from_reader(text.as_bytes());
     let mut records = reader.records();
     let Some(Ok(headings)) = records.next() else {
-        whole.fault("an empty list", format!("a line of headings: {}", HEADINGS.join(", ")));
-        return Vec::new();
+        whole.fault(
+            "an empty list",
+            format!("a line of headings: {}", HEADINGS.join(", ")),
+        );
+        return None;
     };
-    let Some(columns) = columns(&headings, &whole) else { return Vec::new() };
+    let columns = columns(&headings, &whole)?;
     let mut mark = (delimiter == b',').then_some('.');
     let mut drafts = Vec::new();
     for record in records {
         let Ok(record) = record else { continue };
-        let offset = record.position().map_or(0, |position| usize::try_from(position.byte()).unwrap_or(0));
+        let offset = record
+            .position()
+            .map_or(0, |position| usize::try_from(position.byte()).unwrap_or(0));
         // The reader's position is where it began to look: line ends may still stand before the row.
-        let begin = text.get(offset..).map_or(0, |rest| rest.len() - rest.trim_start_matches(['\r', '\n']).len());
+        let begin = text.get(offset..).map_or(0, |rest| {
+            rest.len() - rest.trim_start_matches(['\r', '\n']).len()
+        });
         let place = whole.clone().at(skipped + offset + begin);
         if record.iter().all(str::is_empty) {
             continue;
         }
-        if record.len() > headings.len() || record.iter().any(|field| field.contains(['\n', '\r'])) {
+        if record.len() > headings.len() || record.iter().any(|field| field.contains(['\n', '\r']))
+        {
             place.fault_hint(
                 format!("{} fields, the first `{}`", record.len(), shortened(record.get(0).unwrap_or_default())),
                 format!("up to {} fields on one line", headings.len()),
@@ -45,13 +70,20 @@ pub(crate) fn drafts<'a>(source: &'a Source<'a>) -> Vec<Draft<'a>> {
             );
             continue;
         }
-        let field = |heading: &str| columns.iter().find(|(name, _)| *name == heading).and_then(|(_, index)| record.get(*index)).filter(|text| !text.is_empty());
+        let field = |heading: &str| {
+            columns
+                .iter()
+                .find(|(name, _)| *name == heading)
+                .and_then(|(_, index)| record.get(*index))
+                .filter(|text| !text.is_empty())
+        };
         drafts.extend(row(&place, field, &mut mark));
     }
     if drafts.is_empty() {
         whole.fault("no characteristic", "at least one row below the headings");
+        return None;
     }
-    drafts
+    Some(drafts)
 }
 
 /// Index of each known heading; unknown and repeated ones are told.
@@ -59,7 +91,9 @@ fn columns(headings: &csv::StringRecord, place: &Place<'_>) -> Option<Vec<(&'sta
     let mut columns: Vec<(&str, usize)> = Vec::new();
     let mut sound = true;
     for (index, heading) in headings.iter().enumerate() {
-        let known = HEADINGS.into_iter().find(|known| fold(known) == fold(heading));
+        let known = HEADINGS
+            .into_iter()
+            .find(|known| fold(known) == fold(heading));
         match known {
             Some(name) if columns.iter().any(|(other, _)| *other == name) => {
                 place.fault(format!("the heading `{name}` twice"), "each heading once");
@@ -68,24 +102,38 @@ fn columns(headings: &csv::StringRecord, place: &Place<'_>) -> Option<Vec<(&'sta
             Some(name) => columns.push((name, index)),
             None => {
                 let found = format!("the heading `{}`", shortened(heading));
-                place.fault_nearest(found, format!("one of {}", HEADINGS.join(", ")), nearest(heading, HEADINGS));
+                place.fault_nearest(
+                    found,
+                    format!("one of {}", HEADINGS.join(", ")),
+                    nearest(heading, HEADINGS),
+                );
                 sound = false;
             }
         }
     }
     if sound && !columns.iter().any(|(name, _)| *name == "name") {
-        place.fault("no heading `name`", format!("the headings {}; `name` at least", HEADINGS.join(", ")));
+        place.fault(
+            "no heading `name`",
+            format!("the headings {}; `name` at least", HEADINGS.join(", ")),
+        );
         sound = false;
     }
     sound.then_some(columns)
 }
 
-fn row<'a, 't>(place: &Place<'a>, field: impl Fn(&str) -> Option<&'t str>, mark: &mut Option<char>) -> Option<Draft<'a>> {
+fn row<'a, 't>(
+    place: &Place<'a>,
+    field: impl Fn(&str) -> Option<&'t str>,
+    mark: &mut Option<char>,
+) -> Option<Draft<'a>> {
     let Some(name) = field("name") else {
         place.fault("no name", "the characteristic's name as in the exports");
         return None;
     };
-    let place = Place { key: format!("characteristic \"{}\"", shortened(name)), ..place.clone() };
+    let place = Place {
+        key: format!("characteristic \"{}\"", shortened(name)),
+        ..place.clone()
+    };
     if name.chars().any(char::is_control) {
         place.fault("a control character in the name", "a text on one line");
         return None;
@@ -97,10 +145,12 @@ fn row<'a, 't>(place: &Place<'a>, field: impl Fn(&str) -> Option<&'t str>, mark:
         upper: number("upper"),
         name: name.to_owned(),
         unit: field("unit").map(str::to_owned),
-        one_sided: field("one_sided").and_then(|text| one_sided(&place.below("one_sided"), text, mark)),
+        one_sided: field("one_sided")
+            .and_then(|text| one_sided(&place.below("one_sided"), text, mark)),
         special: field("special").and_then(|text| special(&place.below("special"), text)),
         limits: OwnLimits::default(),
         process: None,
+        places: Vec::new(),
         place,
     })
 }
@@ -110,8 +160,13 @@ fn number(place: &Place<'_>, text: &str, mark: &mut Option<char>) -> Option<f64>
     let used = text.chars().find(|c| *c == '.' || *c == ',');
     let decides = mark.is_none() && used.is_some();
     let mark_here = (*mark).or(used).unwrap_or('.');
-    let plain = text.bytes().all(|b| b.is_ascii_digit() || b"+-eE".contains(&b) || char::from(b) == mark_here);
-    let number = Some(text.replace(mark_here, ".")).filter(|_| plain).and_then(|text| text.parse::<f64>().ok()).filter(|number| number.is_finite());
+    let plain = text
+        .bytes()
+        .all(|b| b.is_ascii_digit() || b"+-eE".contains(&b) || char::from(b) == mark_here);
+    let number = Some(text.replace(mark_here, "."))
+        .filter(|_| plain)
+        .and_then(|text| text.parse::<f64>().ok())
+        .filter(|number| number.is_finite());
     match number {
         Some(_) if decides => *mark = used,
         Some(_) => {}
@@ -128,14 +183,24 @@ fn one_sided(place: &Place<'_>, text: &str, mark: &mut Option<char>) -> Option<O
     if let Some((_, rule)) = ONE_SIDED.iter().find(|(word, _)| fold(word) == fold(text)) {
         return Some(*rule);
     }
-    if let Some(width) = text.strip_prefix("width").and_then(|rest| rest.trim_start().strip_prefix('=')) {
+    if let Some(width) = text
+        .strip_prefix("width")
+        .and_then(|rest| rest.trim_start().strip_prefix('='))
+    {
         let width = number(place, width.trim(), mark)?;
         if width > 0.0 {
             return Some(Some(OneSided::Width(width)));
         }
     }
-    let known = ONE_SIDED.iter().map(|(word, _)| *word).collect::<Vec<_>>().join(", ");
-    place.fault(format!("`{}`", shortened(text)), format!("{known} or width = 0.05"));
+    let known = ONE_SIDED
+        .iter()
+        .map(|(word, _)| *word)
+        .collect::<Vec<_>>()
+        .join(", ");
+    place.fault(
+        format!("`{}`", shortened(text)),
+        format!("{known} or width = 0.05"),
+    );
     None
 }
 

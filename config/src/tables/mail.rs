@@ -7,12 +7,22 @@ use crate::walk::{Node, Table};
 
 pub(crate) fn mail(node: &Node<'_>, folders: &Folders<'_>) -> Option<Mail> {
     let table = node.table("a [mail] table")?;
-    let server = table.need("server", "the mail server's host name").and_then(|node| host(&node));
+    let server = table
+        .need("server", "the mail server's host name")
+        .and_then(|node| host(&node));
     let hint = "say \"none\" only for a server on the same machine or in a trusted network";
     let tls = table.need_hint("tls", "\"none\", \"starttls\" or \"implicit\"", hint);
-    let tls = tls.and_then(|node| node.word(&[("none", Tls::None), ("starttls", Tls::StartTls), ("implicit", Tls::Implicit)]));
+    let tls = tls.and_then(|node| {
+        node.word(&[
+            ("none", Tls::None),
+            ("starttls", Tls::StartTls),
+            ("implicit", Tls::Implicit),
+        ])
+    });
     let port = match table.get("port") {
-        Some(node) => node.whole(1..=65_535, "a port").and_then(|port| u16::try_from(port).ok()),
+        Some(node) => node
+            .whole(1..=65_535, "a port")
+            .and_then(|port| u16::try_from(port).ok()),
         None => tls.map(|tls| match tls {
             Tls::None => 25,
             Tls::StartTls => 587,
@@ -20,10 +30,29 @@ pub(crate) fn mail(node: &Node<'_>, folders: &Folders<'_>) -> Option<Mail> {
         }),
     };
     let login = login(&table, tls, folders);
-    let from = table.need("from", "the sender, such as \"Restudy <restudy@halden.example>\"").and_then(|node| sender(&node));
-    table.later(&["ca", "ca_file", "hello", "test_every", "limit_per_hour", "reply_to", "credential"]);
+    let from = table
+        .need(
+            "from",
+            "the sender, such as \"Restudy <restudy@halden.example>\"",
+        )
+        .and_then(|node| sender(&node));
+    table.later(&[
+        "ca",
+        "ca_file",
+        "hello",
+        "test_every",
+        "limit_per_hour",
+        "reply_to",
+        "credential",
+    ]);
     table.finish();
-    Some(Mail { server: server?, port: port?, tls: tls?, login: login?, from: from? })
+    Some(Mail {
+        server: server?,
+        port: port?,
+        tls: tls?,
+        login: login?,
+        from: from?,
+    })
 }
 
 fn host(node: &Node<'_>) -> Option<String> {
@@ -46,16 +75,29 @@ fn sender(node: &Node<'_>) -> Option<String> {
 
 /// `Some(None)`: no login.
 #[allow(clippy::option_option)]
-fn login(table: &Table<'_>, tls: Option<Tls>, folders: &Folders<'_>) -> Option<Option<(String, Password)>> {
-    let (user, file, variable) = (table.get("user"), table.get("password_file"), table.get("password_env"));
+fn login(
+    table: &Table<'_>,
+    tls: Option<Tls>,
+    folders: &Folders<'_>,
+) -> Option<Option<(String, Password)>> {
+    let (user, file, variable) = (
+        table.get("user"),
+        table.get("password_file"),
+        table.get("password_env"),
+    );
     if table.get("password").is_some() {
-        // Not even shortened: faults are logged.
-        table.place.below("password").fault_hint("a password", "no password in this file", "name a file with `password_file` or a variable with `password_env`");
+        table.place_of("password").fault_hint(
+            "a password",
+            "no password in this file",
+            "name a file with `password_file` or a variable with `password_env`",
+        );
         return None;
     }
     let secret = match (&file, &variable) {
         (Some(_), Some(variable)) => {
-            variable.place.fault("`password_env` beside `password_file`", "one of the two");
+            variable
+                .place
+                .fault("`password_env` beside `password_file`", "one of the two");
             return None;
         }
         (Some(file), None) => Some(folders.path(file).map(Password::File)?),
@@ -65,17 +107,27 @@ fn login(table: &Table<'_>, tls: Option<Tls>, folders: &Folders<'_>) -> Option<O
     match (user, secret) {
         (None, None) => Some(None),
         (Some(user), None) => {
-            user.fault_hint("`password_file` or `password_env` beside it", "a server that needs no password needs no user either");
+            user.fault_hint(
+                "`password_file` or `password_env` beside it",
+                "a server that needs no password needs no user either",
+            );
             None
         }
         (None, Some(_)) => {
-            table.place.below("user").fault("nothing, and a password", "the name to log in with");
+            table
+                .place
+                .below("user")
+                .fault("nothing, and a password", "the name to log in with");
             None
         }
         (Some(user), Some(secret)) => {
             let name = user.name()?.to_owned();
             if tls == Some(Tls::None) {
-                user.fault_hint("no login without encryption", "use tls = \"starttls\" or \"implicit\": a password would travel in clear text");
+                user.place.fault_hint(
+                    "a login with tls = \"none\"",
+                    "tls = \"starttls\" or \"implicit\"",
+                    "the password would travel in clear text",
+                );
                 return None;
             }
             Some(Some((name, secret)))
@@ -85,8 +137,14 @@ fn login(table: &Table<'_>, tls: Option<Tls>, folders: &Folders<'_>) -> Option<O
 
 fn environment(node: &Node<'_>) -> Option<String> {
     let name = node.name()?;
-    if name.starts_with(|c: char| c.is_ascii_digit()) || name.contains(|c: char| !(c.is_ascii_alphanumeric() || c == '_')) {
-        node.fault("the name of an environment variable");
+    if name.starts_with(|c: char| c.is_ascii_digit())
+        || name.contains(|c: char| !(c.is_ascii_alphanumeric() || c == '_'))
+    {
+        // Not shown: it may be the password itself.
+        node.place.fault(
+            "a text that is no such name",
+            "the name of an environment variable",
+        );
         return None;
     }
     Some(name.to_owned())
@@ -102,5 +160,10 @@ pub(crate) fn addresses(node: &Node<'_>) -> Option<Vec<String>> {
             sound = false;
         }
     }
-    sound.then(|| names.into_iter().map(|(address, _)| address.to_owned()).collect())
+    sound.then(|| {
+        names
+            .into_iter()
+            .map(|(address, _)| address.to_owned())
+            .collect()
+    })
 }

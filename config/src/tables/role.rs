@@ -19,6 +19,9 @@ pub(crate) enum Shape {
     Unknown,
 }
 
+/// Keys of which a role has exactly one.
+pub(crate) const PLACES: [&str; 6] = ["column", "cell", "label", "path", "xml", "constant"];
+
 const EXPECTED: &str = "one of column, cell, label, path, xml or constant";
 
 /// A role that has no keys of its own.
@@ -32,7 +35,10 @@ pub(crate) fn role(node: &Node<'_>, shape: Shape) -> Option<Role> {
 /// The table of a role, to ask it for further keys.
 pub(crate) fn table<'a>(node: &Node<'a>) -> Option<Table<'a>> {
     if node.as_text().is_some() {
-        node.fault_hint("a table that says where it comes from", format!("such as {{ column = {} }}", node.found().trim_matches('`')));
+        node.fault_hint(
+            "a table that says where it comes from",
+            format!("such as {{ column = {} }}", node.found().trim_matches('`')),
+        );
         return None;
     }
     node.table("a table such as { column = \"Serial no.\" }")
@@ -41,10 +47,16 @@ pub(crate) fn table<'a>(node: &Node<'a>) -> Option<Table<'a>> {
 /// The role's own keys; the table is left open for more.
 pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
     table.later(&["columns", "letter", "sheet", "right_of", "below"]);
-    let places: Vec<(&str, Node<'_>)> =
-        ["column", "cell", "label", "path", "xml", "constant"].into_iter().filter_map(|key| Some((key, table.get(key)?))).collect();
-    let find = table.get("find").map(|node| regex(&node, 1).map(|regex| regex.as_str().to_owned()));
-    let spellings = table.get("spellings").map_or(Some(BTreeMap::new()), |node| spellings(&node));
+    let places: Vec<(&str, Node<'_>)> = PLACES
+        .into_iter()
+        .filter_map(|key| Some((key, table.get(key)?)))
+        .collect();
+    let find = table
+        .get("find")
+        .map(|node| regex(&node, 1).map(|regex| regex.as_str().to_owned()));
+    let spellings = table
+        .get("spellings")
+        .map_or(Some(BTreeMap::new()), |node| spellings(&node));
     let from = match places.as_slice() {
         [(key, node)] => place(key, node, shape),
         [] => {
@@ -52,7 +64,11 @@ pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
             None
         }
         several => {
-            let found = several.iter().map(|(key, _)| format!("`{key}`")).collect::<Vec<_>>().join(" and ");
+            let found = several
+                .iter()
+                .map(|(key, _)| format!("`{key}`"))
+                .collect::<Vec<_>>()
+                .join(" and ");
             table.place.fault(found, EXPECTED);
             None
         }
@@ -61,16 +77,26 @@ pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
         Some(written) => Some(written?),
         None => None,
     };
-    Some(Role { from: from?, find, spellings: spellings? })
+    Some(Role {
+        from: from?,
+        find,
+        spellings: spellings?,
+    })
 }
 
 fn place(key: &str, node: &Node<'_>, shape: Shape) -> Option<Cell> {
     let in_table = ["column", "cell", "label"].contains(&key);
     if (in_table && shape == Shape::Xml) || (key == "xml" && shape == Shape::Table) {
         let (form, hint) = if in_table {
-            ("a place in an XML export: xml, path or constant", "`column`, `cell` and `label` need form = \"table\"")
+            (
+                "a place in an XML export: xml, path or constant",
+                "`column`, `cell` and `label` need form = \"table\"",
+            )
         } else {
-            ("a place in a table: column, cell, label, path or constant", "`xml` needs form = \"xml\"")
+            (
+                "a place in a table: column, cell, label, path or constant",
+                "`xml` needs form = \"xml\"",
+            )
         };
         node.place.fault_hint(format!("`{key}`"), form, hint);
         return None;
@@ -103,7 +129,9 @@ fn place(key: &str, node: &Node<'_>, shape: Shape) -> Option<Cell> {
 
 /// `{ KL = ["k.l.", "Kari"] }`, label to other spellings, turned into spelling to label.
 fn spellings(node: &Node<'_>) -> Option<BTreeMap<String, String>> {
-    let table = node.table("a table of labels, each with a list of its other spellings, such as { KL = [\"k.l.\"] }")?;
+    let table = node.table(
+        "a table of labels, each with a list of its other spellings, such as { KL = [\"k.l.\"] }",
+    )?;
     let mut known: BTreeMap<String, String> = BTreeMap::new();
     let mut sound = true;
     for (label, others) in table.named() {

@@ -6,29 +6,85 @@ use crate::tables::mail::addresses;
 use crate::tables::plan::Plans;
 use crate::walk::{Node, Table};
 
-const KINDS: [(&str, NoticeKind); 2] = [("standing", NoticeKind::Standing), ("corrected", NoticeKind::Corrected)];
+const KINDS: [(&str, NoticeKind); 2] = [
+    ("standing", NoticeKind::Standing),
+    ("corrected", NoticeKind::Corrected),
+];
 
 /// Kinds that later versions know.
-const LATER: [&str; 10] = ["back", "missing", "stalled", "closing", "held", "refused", "unreadable", "silent", "overdue", "summary"];
+const LATER: [&str; 10] = [
+    "back",
+    "missing",
+    "stalled",
+    "closing",
+    "held",
+    "refused",
+    "unreadable",
+    "silent",
+    "overdue",
+    "summary",
+];
 
-pub(crate) fn routes(root: &Table<'_>, plans: Option<&Plans>, has_mail: bool) -> Option<Vec<Route>> {
-    let Some(node) = root.get("route") else { return Some(Vec::new()) };
+pub(crate) fn routes(
+    root: &Table<'_>,
+    plans: Option<&Plans>,
+    has_mail: bool,
+) -> Option<Vec<Route>> {
+    let Some(node) = root.get("route") else {
+        return Some(Vec::new());
+    };
     let tables = node.tables("route", &root.place)?;
     if !has_mail {
-        node.place.fault_hint("a route without [mail]", "a [mail] table", "without it notices are logged only, and need no route");
+        node.place.fault_hint(
+            "a route without [mail]",
+            "a [mail] table",
+            "without it notices are logged only, and need no route",
+        );
     }
     let written = tables.len();
-    let routes: Vec<Route> = tables.iter().filter_map(|table| route(table, plans)).collect();
-    (routes.len() == written).then_some(routes)
+    let routes: Vec<Route> = tables
+        .iter()
+        .filter_map(|table| route(table, plans))
+        .collect();
+    (routes.len() == written).then_some(())?;
+    for plan in plans
+        .map(|plans| plans.names.as_slice())
+        .unwrap_or_default()
+    {
+        let is_of_plan = |route: &Route| route.plans.is_empty() || route.plans.contains(plan);
+        let tells_standings =
+            |route: &Route| route.kinds.is_empty() || route.kinds.contains(&NoticeKind::Standing);
+        if !routes
+            .iter()
+            .any(|route| is_of_plan(route) && tells_standings(route))
+        {
+            node.place.warn(
+                format!("no route for the standings of plan \"{plan}\""),
+                "one for every plan",
+                "its alerts are logged only",
+            );
+        }
+    }
+    Some(routes)
 }
 
 fn route(table: &Table<'_>, plans: Option<&Plans>) -> Option<Route> {
-    let named = table.get("plans").map_or(Some(Vec::new()), |node| plan_names(&node, plans));
-    let kinds = table.get("kinds").map_or(Some(Vec::new()), |node| kinds(&node));
-    let to = table.need("to", "a list of mail addresses").and_then(|node| addresses(&node));
+    let named = table
+        .get("plans")
+        .map_or(Some(Vec::new()), |node| plan_names(&node, plans));
+    let kinds = table
+        .get("kinds")
+        .map_or(Some(Vec::new()), |node| kinds(&node));
+    let to = table
+        .need("to", "a list of mail addresses")
+        .and_then(|node| addresses(&node));
     table.later(&["instruments", "webhook", "language", "name"]);
     table.finish();
-    Some(Route { kinds: kinds?, plans: named?, to: to? })
+    Some(Route {
+        kinds: kinds?,
+        plans: named?,
+        to: to?,
+    })
 }
 
 fn plan_names(node: &Node<'_>, plans: Option<&Plans>) -> Option<Vec<String>> {
@@ -36,7 +92,11 @@ fn plan_names(node: &Node<'_>, plans: Option<&Plans>) -> Option<Vec<String>> {
     if let Some(plans) = plans {
         for (name, node) in &names {
             if !plans.names.iter().any(|other| other == name) {
-                node.place.fault_nearest(node.found(), "the name of a [[plan]]", nearest(name, plans.names.iter().map(String::as_str)));
+                node.place.fault_nearest(
+                    node.found(),
+                    "the name of a [[plan]]",
+                    nearest(name, plans.names.iter().map(String::as_str)),
+                );
             }
         }
     }
@@ -48,7 +108,10 @@ fn kinds(node: &Node<'_>) -> Option<Vec<NoticeKind>> {
     let written = names.len();
     let kind = |(name, node): &(&str, Node<'_>)| {
         if LATER.iter().any(|later| fold(later) == fold(name)) {
-            node.place.fault(format!("`{name}`: not yet"), "a kind of this version: \"standing\" or \"corrected\"");
+            node.place.fault(
+                format!("`{name}`: not yet"),
+                "a kind of this version: \"standing\" or \"corrected\"",
+            );
             return None;
         }
         node.word(&KINDS)

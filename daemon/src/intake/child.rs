@@ -32,6 +32,8 @@ pub struct Head {
 pub fn serve() -> io::Result<()> {
     let limit = Rlimit { current: Some(MEMORY_LIMIT), maximum: Some(MEMORY_LIMIT) };
     setrlimit(Resource::As, limit)?;
+    #[cfg(target_os = "linux")]
+    rustix::process::set_parent_process_death_signal(Some(rustix::process::Signal::KILL))?;
     let mut input = io::stdin().lock();
     let mut output = io::stdout().lock();
     while let Some(head) = take_frame(&mut input)? {

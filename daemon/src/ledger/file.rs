@@ -28,6 +28,8 @@ pub struct FileRow {
     pub stat: Stat,
     /// The export that its content became.
     pub export: Option<i64>,
+    /// Readers of this content that died.
+    pub attempts: u32,
 }
 
 impl Read<'_> {
@@ -37,7 +39,7 @@ impl Read<'_> {
     /// The database's refusal.
     pub fn files(&self, instrument: &str) -> Result<Vec<FileRow>, LedgerError> {
         let mut statement = self.connection.prepare_cached(
-            "SELECT path, size, mtime, ctime, device, inode, export FROM file WHERE instrument = ?1",
+            "SELECT path, size, mtime, ctime, device, inode, export, attempts FROM file WHERE instrument = ?1",
         )?;
         let rows = statement.query_map([instrument], |r| {
             Ok(FileRow {
@@ -50,31 +52,10 @@ impl Read<'_> {
                     inode: r.get::<_, i64>(5)?.cast_unsigned(),
                 },
                 export: r.get(6)?,
+                attempts: r.get(7)?,
             })
         })?;
         Ok(rows.collect::<Result<_, _>>()?)
-    }
-
-    /// How many readers died on this content of this path.
-    ///
-    /// # Errors
-    /// The database's refusal.
-    pub fn attempts(&self, instrument: &str, path: &[u8], stat: &Stat) -> Result<u32, LedgerError> {
-        let mut statement = self.connection.prepare_cached(
-            "SELECT attempts FROM file WHERE instrument = ?1 AND path = ?2
-               AND size = ?3 AND mtime = ?4 AND ctime = ?5",
-        )?;
-        let mut rows = statement.query(params![
-            instrument,
-            path,
-            stat.size.cast_signed(),
-            stat.mtime,
-            stat.ctime
-        ])?;
-        Ok(match rows.next()? {
-            Some(row) => row.get(0)?,
-            None => 0,
-        })
     }
 }
 

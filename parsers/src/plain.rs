@@ -1,0 +1,230 @@
+//! Exports that need no rule: columns with plain headings.
+//!
+//! Delimited text or the first visible sheet of a workbook; the first row that is not blank holds
+//! the headings, in any order and case: `part` and `value`, and optionally `appraiser`, `trial`,
+//! `characteristic`, `nominal`, `lower`, `upper`, `unit`, `taken`, further factors as asked for.
+//!
+//! Nothing is guessed that could be two things. The delimiter is the comma, the semicolon or the tab,
+//! whichever splits the heading line into the most known headings (a first line `sep=;` decides). The
+//! decimal mark is the point; it is the comma when the delimiter is not the comma and numbers of the
+//! file are written with commas and none with a point. A file with both is refused.
+
+use std::collections::BTreeMap;
+
+use crate::Export;
+use crate::decode;
+use crate::delimited::{self, Delimiter};
+use crate::grid::{Content, Grid};
+use crate::kind::Kind;
+use crate::names::{key, listed, shorten};
+use crate::parsed::{Parsed, Refused};
+use crate::reader::Reader;
+use crate::rule::{
+    Bounds, Cell, Count, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,
+};
+use crate::workbook;
+
+const HEADINGS: [&str; 10] = [
+    "part",
+    "appraiser",
+    "trial",
+    "characteristic",
+    "value",
+    "nominal",
+    "lower",
+    "upper",
+    "unit",
+    "taken",
+];
+const NUMBERS: [&str; 4] = ["value", "nominal", "lower", "upper"];
+
+/// What is asked of an export beside its plain headings.
+#[derive(Debug, Clone, Default, PartialEq, Eq, serde::Serialize, serde::Deserialize)]
+pub struct Plain {
+    /// Headings of further factors.
+    pub factors: Vec<String>,
+}
+
+/// Reads an export whose columns have plain headings.
+///
+/// Headings (any case, any order): `part` and `value`; optionally `appraiser`, `trial`,
+/// `characteristic`, `nominal`, `lower`, `upper` (absolute limits), `unit`, `taken` (ISO 8601 or a
+/// date cell), and those that `asked` names. Without `trial`, trials are counted by order in the
+/// file; without `characteristic` there is one, called `value`.
+///
+/// The delimiter of text is the comma, semicolon or tab, whichever splits the heading line into the
+/// most known headings. The decimal mark is the point, but the comma when the delimiter is not the
+/// comma and the numbers are written with commas and never with a point.
+///
+/// # Errors
+/// [`Refused`] as [`crate::read`]; also when the numbers are written with both decimal marks.
+pub fn read_plain(export: Export<'_>, asked: &Plain) -> Result<Parsed, Refused> {
+    let bounds = Bounds::default();
+    let kind = Kind::of(export.bytes, &bounds)?;
+    let (grid, comma_free) = match kind {
+        Kind::Text => {
+            let text = decode::decode(export.bytes, None, None)?;
+            let delimiter = delimiter(&text, asked);
+            (
+                delimited::grid(&text, delimiter, &bounds)?,
+                delimiter.mark != b',',
+            )
+        }
+        _ => (
+            workbook::grid(export.bytes, kind, &Sheet::First, &bounds)?,
+            true,
+        ),
+    };
+    let Some(header) = grid.rows.first() else {
+        return Err(Refused::unfinished("there is no row of headings"));
+    };
+    let headings: Vec<String> = header
+        .cells
+        .iter()
+        .filter_map(|(_, content)| match content {
+            Content::Text(text) => Some(key(text)),
+            _ => None,
+        })
+        .collect();
+    for needed in ["part", "value"] {
+        if !headings.iter().any(|heading| heading == needed) {
+            return Err(Refused {
+                sentence: format!(
+                    "no column is headed `{needed}`; {} has {}",
+                    grid.row_name(header.number),
+                    listed(headings.iter().map(String::as_str))
+                ),
+                hint: Some(format!("the headings are {}", listed(HEADINGS))),
+                perhaps_unfinished: false,
+            });
+        }
+    }
+    let decimal = if comma_free {
+        decimal_mark(&grid)?
+    } else {
+        '.'
+    };
+    let header = Header::Row(header.number.saturating_add(1));
+    let rule = rule(&headings, asked, header.clone(), decimal, bounds);
+    let reader = Reader::new(&rule).map_err(|why| Refused::new(why.to_string()))?;
+    let once = reader.once(export.path)?;
+    reader.read_grid(&grid, &header, once)
+}
+
+fn delimiter(text: &str, asked: &Plain) -> Delimiter {
+    let announced = delimited::delimiter(text, None, '.');
+    if announced.announced {
+        return announced;
+    }
+    let known = |heading: &str| {
+        let heading = key(heading.trim().trim_matches('"'));
+        HEADINGS.contains(&heading.as_str())
+            || asked.factors.iter().any(|factor| key(factor) == heading)
+    };
+    let line = text
+        .lines()
+        .find(|line| !line.trim().is_empty())
+        .unwrap_or("");
+    let recognised = |mark: &u8| {
+        line.split(char::from(*mark))
+            .filter(|cell| known(cell))
+            .count()
+    };
+    let mark = [b'\t', b';', b',']
+        .into_iter()
+        .max_by_key(recognised)
+        .unwrap_or(b',');
+    Delimiter {
+        mark,
+        announced: false,
+    }
+}
+
+/// The decimal mark of all numbers of a file whose fields are not parted by commas.
+fn decimal_mark(grid: &Grid) -> Result<char, Refused> {
+    let Some((header, rows)) = grid.rows.split_first() else {
+        return Ok('.');
+    };
+    let columns: Vec<u32> = NUMBERS
+        .iter()
+        .flat_map(|name| header.holding(name))
+        .collect();
+    let texts = rows.iter().flat_map(|row| {
+        columns
+            .iter()
+            .filter_map(move |&column| match row.at(column) {
+                Content::Text(text) => Some((row.number, column, text)),
+                _ => None,
+            })
+    });
+    let with = |mark: char| texts.clone().find(|(_, _, text)| text.contains(mark));
+    let (comma, point) = (with(','), with('.'));
+    match (comma, point) {
+        (None, _) => Ok('.'),
+        (Some(_), None) => Ok(','),
+        (Some((row, column, comma)), Some((other_row, other_column, point))) => Err(Refused {
+            sentence: format!(
+                "the numbers have two decimal marks: `{}` ({}) and `{}` ({})",
+                shorten(comma),
+                grid.place(row, column),
+                shorten(point),
+                grid.place(other_row, other_column)
+            ),
+            hint: Some(
+                "write all numbers with one decimal mark and no marks between thousands".to_owned(),
+            ),
+            perhaps_unfinished: false,
+        }),
+    }
+}
+
+fn rule(headings: &[String], asked: &Plain, header: Header, decimal: char, bounds: Bounds) -> Rule {
+    let column = |name: &str| Role::plain(Cell::Column(name.to_owned()));
+    let role = |name: &str| {
+        headings
+            .iter()
+            .any(|heading| heading == name)
+            .then(|| column(name))
+    };
+    let limit = |name: &str| {
+        role(name).map(|role| Limit {
+            role,
+            from_nominal: false,
+        })
+    };
+    Rule {
+        form: Form::Table {
+            sheet: Sheet::First,
+            header,
+            delimiter: None,
+        },
+        part: column("part"),
+        appraiser: role("appraiser"),
+        trial: Some(role("trial").map_or(Trial::Counted(Count::Order), Trial::Stated)),
+        taken: role("taken").map(|role| Taken {
+            role,
+            format: None,
+            zone: None,
+        }),
+        round: None,
+        characteristic: role("characteristic"),
+        value: Value {
+            role: column("value"),
+            unit: role("unit"),
+        },
+        nominal: role("nominal"),
+        lower: limit("lower"),
+        upper: limit("upper"),
+        factors: asked
+            .factors
+            .iter()
+            .map(|name| (name.clone(), column(name)))
+            .collect(),
+        same: BTreeMap::new(),
+        end: None,
+        decimal,
+        no_value: Vec::new(),
+        encoding: None,
+        bounds,
+    }
+}

@@ -1,0 +1,423 @@
+//! Records to runs: which readings belong together, and which runs are set aside whole.
+//!
+//! Invariant: every record that is added is one reading of an accepted run, or is counted in one
+//! entry of what was set aside.
+
+use std::collections::{BTreeMap, HashMap, HashSet};
+
+use crate::fault::{Fault, shown};
+use crate::grid::{Content, Field};
+use crate::names::{fold_blanks, shorten};
+use crate::number::Number;
+use crate::parsed::{Parsed, Reading, Run, SetAside};
+use crate::reader::{LimitAt, Roles, TrialBy};
+
+/// Label of the one characteristic of an export that names none.
+const UNNAMED: &str = "value";
+
+/// Runs while records arrive.
+pub(crate) struct Runs<'r> {
+    roles: &'r Roles,
+    entries: Vec<Entry>,
+    /// By identity: a run without its `same` values, and the fault that keeps it from being known.
+    index: HashMap<(Option<Run>, Option<Fault>), usize>,
+    /// Readings in order of appearance, with their entry.
+    readings: Vec<Reading>,
+    /// Characteristics met, by entry.
+    met: HashSet<(usize, String)>,
+    /// Trials counted by order: readings of a run's other labels and a characteristic.
+    counted: HashMap<(Run, String), u32>,
+    records: usize,
+}
+
+struct Entry {
+    run: Option<Run>,
+    fault: Option<Fault>,
+    further_faults: usize,
+    readings: usize,
+}
+
+impl<'r> Runs<'r> {
+    pub(crate) fn new(roles: &'r Roles) -> Self {
+        Self {
+            roles,
+            entries: Vec::new(),
+            index: HashMap::new(),
+            readings: Vec::new(),
+            met: HashSet::new(),
+            counted: HashMap::new(),
+            records: 0,
+        }
+    }
+
+    pub(crate) fn is_empty(&self) -> bool {
+        self.records == 0
+    }
+
+    /// Adds one record: a field for every source of the roles, in their order; `ragged` when the
+    /// record itself is out of shape.
+    pub(crate) fn add(&mut self, fields: &[Field<'_>], ragged: Option<Fault>) {
+        self.records += 1;
+        let characteristic = match self.roles.characteristic {
+            None => Ok(UNNAMED.to_owned()),
+            Some(source) => self.roles.sources[source].label(fields[source]),
+        };
+        let Identity { mut run, mut fault } = Identity::read(self.roles, fields);
+        if self.roles.trial == TrialBy::Order
+            && fault.is_none()
+            && let Some(run) = &mut run
+        {
+            match &characteristic {
+                Ok(characteristic) => {
+                    run.trial = Some(self.next_trial(run, characteristic).to_string());
+                }
+                Err(uncountable) => fault = Some(uncountable.clone()),
+            }
+        }
+        let same = match run.as_mut() {
+            Some(run) => std::mem::take(&mut run.same),
+            None => BTreeMap::new(),
+        };
+        let known = self.index.get(&(run.clone(), fault.clone())).copied();
+        let at = known.unwrap_or(self.entries.len());
+        if known.is_none() {
+            self.index.insert((run.clone(), fault.clone()), at);
+            let run = run.map(|run| Run {
+                same: same.clone(),
+                ..run
+            });
+            self.entries.push(Entry {
+                run,
+                fault,
+                further_faults: 0,
+                readings: 0,
+            });
+        }
+        self.entries[at].readings += 1;
+        match self.reading(at, fields, ragged, characteristic, &same) {
+            Ok(reading) => self.readings.push(reading),
+            Err(fault) => self.entries[at].blame(fault),
+        }
+    }
+
+    fn next_trial(&mut self, run: &Run, characteristic: &str) -> u32 {
+        let counted = Run {
+            taken: None,
+            same: BTreeMap::new(),
+            ..run.clone()
+        };
+        let count = self
+            .counted
+            .entry((counted, characteristic.to_owned()))
+            .or_insert(0);
+        *count += 1;
+        *count
+    }
+
+    fn reading(
+        &mut self,
+        at: usize,
+        fields: &[Field<'_>],
+        ragged: Option<Fault>,
+        characteristic: Result<String, Fault>,
+        same: &BTreeMap<String, String>,
+    ) -> Result<Reading, Fault> {
+        if let Some(ragged) = ragged {
+            return Err(ragged);
+        }
+        let characteristic = characteristic?;
+        let roles = self.roles;
+        let value = fields[roles.value];
+        let number = measured(roles, value)?;
+        let unit = match roles.unit {
+            None => None,
+            Some(source) => roles.sources[source]
+                .text(fields[source])?
+                .map(|text| fold_blanks(&text)),
+        };
+        let nominal = match roles.nominal {
+            None => None,
+            Some(source) => bounding(roles, source, fields)?,
+        };
+        let lower = limit(roles, roles.lower, nominal.as_ref(), fields)?;
+        let upper = limit(roles, roles.upper, nominal.as_ref(), fields)?;
+        if let (Some(lower), Some(upper), Some(at)) = (lower, upper, roles.lower)
+            && lower > upper
+        {
+            let field = fields[at.source];
+            return Err(Fault::new(
+                field.place,
+                shown(field.content),
+                "a lower limit below the upper one",
+                format!("the lower limit {lower} lies above the upper limit {upper}"),
+            )
+            .hint("are the limits signed deviations (`from = \"nominal\"`), or exchanged?"));
+        }
+        self.keeps_the_same(at, fields, same)?;
+        if !self.met.insert((at, characteristic.clone())) {
+            return Err(Fault::new(
+                value.place,
+                shown(value.content),
+                "each characteristic once in a run",
+                format!("`{}` occurs twice in one run", shorten(&characteristic)),
+            )
+            .hint("if these are trials, say where the trial stands or how trials are counted"));
+        }
+        Ok(Reading {
+            run: at,
+            characteristic,
+            value: number.value,
+            unit,
+            nominal: nominal.map(|nominal| nominal.value),
+            lower,
+            upper,
+            origin: value.place.to_string(),
+        })
+    }
+
+    fn keeps_the_same(
+        &self,
+        at: usize,
+        fields: &[Field<'_>],
+        same: &BTreeMap<String, String>,
+    ) -> Result<(), Fault> {
+        let Some(run) = &self.entries[at].run else {
+            return Ok(());
+        };
+        for (name, source) in &self.roles.same {
+            let (before, now) = (run.same.get(name), same.get(name));
+            if before != now {
+                let before = before.map_or("", String::as_str);
+                let now = now.map_or("", String::as_str);
+                return Err(Fault::new(
+                    fields[*source].place,
+                    shorten(now),
+                    format!("`{}`, as before in this run", shorten(before)),
+                    format!(
+                        "{name} is `{}` here and `{}` before in the same run",
+                        shorten(now),
+                        shorten(before)
+                    ),
+                ));
+            }
+        }
+        Ok(())
+    }
+
+    /// Ends the export. `missing_end` is what its end should have been and was not: then every run
+    /// is incomplete.
+    pub(crate) fn finish(mut self, missing_end: Option<&str>) -> Parsed {
+        if let Some(end) = missing_end {
+            for entry in self
+                .entries
+                .iter_mut()
+                .filter(|entry| entry.fault.is_none())
+            {
+                entry.fault = Some(Fault {
+                    place: "end of the export".to_owned(),
+                    found: String::new(),
+                    expected: format!("the text `{end}`"),
+                    hint: Some(
+                        "a run that was broken off looks like this: measure it again".to_owned(),
+                    ),
+                    wrong: format!("the text `{end}` is missing, so the run is incomplete"),
+                });
+            }
+        }
+        let mut parsed = Parsed::default();
+        let mut places = Vec::with_capacity(self.entries.len());
+        for entry in self.entries {
+            match (entry.fault, entry.run) {
+                (None, Some(run)) => {
+                    places.push(Some(parsed.runs.len()));
+                    parsed.runs.push(run);
+                }
+                (fault, run) => {
+                    places.push(None);
+                    parsed.set_aside.extend(
+                        fault.map(|fault| {
+                            set_aside(fault, run, entry.further_faults, entry.readings)
+                        }),
+                    );
+                }
+            }
+        }
+        parsed.readings = self
+            .readings
+            .into_iter()
+            .filter_map(|reading| {
+                Some(Reading {
+                    run: places[reading.run]?,
+                    ..reading
+                })
+            })
+            .collect();
+        let aside: usize = parsed.set_aside.iter().map(|aside| aside.readings).sum();
+        debug_assert_eq!(parsed.readings.len() + aside, self.records);
+        parsed
+    }
+}
+
+impl Entry {
+    fn blame(&mut self, fault: Fault) {
+        match &self.fault {
+            None => self.fault = Some(fault),
+            Some(_) => self.further_faults += 1,
+        }
+    }
+}
+
+fn set_aside(fault: Fault, run: Option<Run>, further: usize, readings: usize) -> SetAside {
+    let mut reason = fault.sentence();
+    if further > 0 {
+        let readings = if further == 1 { "reading" } else { "readings" };
+        reason.push_str(&format!(
+            " (and {further} further unusable {readings} in this run)"
+        ));
+    }
+    let Fault {
+        place,
+        found,
+        expected,
+        hint,
+        ..
+    } = fault;
+    SetAside {
+        place,
+        found,
+        expected,
+        hint,
+        reason,
+        run,
+        readings,
+    }
+}
+
+/// The value itself: a number that does not mean "no value".
+fn measured(roles: &Roles, field: Field<'_>) -> Result<Number, Fault> {
+    let source = &roles.sources[roles.value];
+    if let Some(text) = source.text(field)?
+        && roles.no_value.means(&text, mark_of(roles, field))
+    {
+        return Err(Fault::new(
+            field.place,
+            shown(field.content),
+            "a measured value",
+            format!("`{}` stands for no value", shorten(&text)),
+        )
+        .hint("measure this run again"));
+    }
+    source
+        .number(field, roles.decimal)?
+        .ok_or_else(|| source.blank(field.place))
+}
+
+/// A nominal or a limit; `None` when nothing stands there.
+fn bounding(roles: &Roles, source: usize, fields: &[Field<'_>]) -> Result<Option<Number>, Fault> {
+    let field = fields[source];
+    let source = &roles.sources[source];
+    match source.text(field)? {
+        Some(text) if roles.no_value.means_no_limit(&text, mark_of(roles, field)) => Ok(None),
+        Some(_) => source.number(field, roles.decimal),
+        None => Ok(None),
+    }
+}
+
+fn mark_of(roles: &Roles, field: Field<'_>) -> char {
+    match field.content {
+        Content::Number(_) => '.',
+        _ => roles.decimal,
+    }
+}
+
+fn limit(
+    roles: &Roles,
+    at: Option<LimitAt>,
+    nominal: Option<&Number>,
+    fields: &[Field<'_>],
+) -> Result<Option<f64>, Fault> {
+    let Some(at) = at else { return Ok(None) };
+    let Some(written) = bounding(roles, at.source, fields)? else {
+        return Ok(None);
+    };
+    if !at.from_nominal {
+        return Ok(Some(written.value));
+    }
+    let field = fields[at.source];
+    let role = &roles.sources[at.source].role;
+    let fault = |expected: &str, wrong: String| {
+        Fault::new(field.place, shown(field.content), expected, wrong)
+    };
+    let Some(nominal) = nominal else {
+        return Err(fault(
+            "a nominal value",
+            format!("the {role} is taken from the nominal, which is blank"),
+        ));
+    };
+    match nominal.plus(&written) {
+        Some(sum) => Ok(Some(sum)),
+        None => Err(fault(
+            "a finite limit",
+            format!("nominal and {role} add up to no finite number"),
+        )),
+    }
+}
+
+/// The run that a record says it belongs to.
+struct Identity {
+    /// As far as it could be read; `None` without a part.
+    run: Option<Run>,
+    /// The first label that could not be read.
+    fault: Option<Fault>,
+}
+
+impl Identity {
+    fn read(roles: &Roles, fields: &[Field<'_>]) -> Self {
+        let mut fault = None;
+        let mut keep = |fresh: Fault| {
+            fault.get_or_insert(fresh);
+        };
+        let mut label = |source: usize| match roles.sources[source].label(fields[source]) {
+            Ok(label) => Some(label),
+            Err(fresh) => {
+                keep(fresh);
+                None
+            }
+        };
+        let part = label(roles.part);
+        let appraiser = roles.appraiser.and_then(&mut label);
+        let trial = match roles.trial {
+            TrialBy::Label(source) => label(source),
+            TrialBy::Order | TrialBy::Nothing => None,
+        };
+        let round = roles.round.and_then(&mut label);
+        let mut named = |list: &[(String, usize)]| -> BTreeMap<String, String> {
+            list.iter()
+                .filter_map(|(name, source)| Some((name.clone(), label(*source)?)))
+                .collect()
+        };
+        let factors = named(&roles.factors);
+        let same = named(&roles.same);
+        let taken = roles.taken.as_ref().and_then(|(source, clock)| {
+            let field = fields[*source];
+            let source = &roles.sources[*source];
+            let read = match field.content {
+                Content::Date(_) if source.is_plain() => clock.read(field, None),
+                _ => source
+                    .text(field)
+                    .and_then(|text| clock.read(field, text.as_deref())),
+            };
+            read.map_err(&mut keep).ok()
+        });
+        let run = part.map(|part| Run {
+            part,
+            appraiser,
+            trial,
+            factors,
+            same,
+            taken,
+            round,
+        });
+        Self { run, fault }
+    }
+}

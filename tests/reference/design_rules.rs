@@ -1,0 +1,145 @@
+//! Degrees of freedom, expected mean squares and components of eleven designs.
+
+use restudy_engine::{Design, Factor, Model};
+use serde_json::Value;
+
+use crate::check::Check;
+use crate::data::name_of_line;
+
+#[test]
+fn eleven_designs_have_the_reference_rules() {
+    let designs: serde_json::Map<String, Value> =
+        serde_json::from_str(include_str!("../../fixtures/reference/design_rules.json")).unwrap();
+    assert_eq!(designs.len(), 11);
+    for (name, expected) in &designs {
+        let mut check = Check::new(name, f64::INFINITY);
+        let design = design(expected);
+        let model = Model::full(&design, expected["trials"].as_u64().unwrap() as usize);
+        let terms: Vec<String> = expected["terms"]
+            .as_array()
+            .unwrap()
+            .iter()
+            .map(|t| name_of_line(t.as_str().unwrap()))
+            .collect();
+        check.same(
+            "terms",
+            model.lines().iter().map(|l| l.name.clone()).collect(),
+            terms,
+        );
+        check.same(
+            "readings",
+            model.error().cells as u64,
+            expected["readings"].as_u64().unwrap(),
+        );
+        let place = |name: &str| {
+            model
+                .lines()
+                .iter()
+                .position(|l| l.name == name_of_line(name))
+                .unwrap()
+        };
+        for (term, df) in expected["df"].as_object().unwrap() {
+            check.same(
+                &format!("df of {term}"),
+                model.lines()[place(term)].df as u64,
+                df.as_u64().unwrap(),
+            );
+        }
+        for (term, cells) in expected["cells"].as_object().unwrap() {
+            check.same(
+                &format!("cells of {term}"),
+                model.lines()[place(term)].cells as u64,
+                cells.as_u64().unwrap(),
+            );
+        }
+        for (term, factors) in expected["factors"].as_object().unwrap() {
+            let line = &model.lines()[place(term)];
+            let mut found: Vec<&str> = line
+                .of
+                .iter()
+                .chain(&line.within)
+                .map(String::as_str)
+                .collect();
+            let mut wanted: Vec<&str> = factors
+                .as_array()
+                .unwrap()
+                .iter()
+                .map(|f| f.as_str().unwrap())
+                .collect();
+            found.sort_unstable();
+            wanted.sort_unstable();
+            check.same(&format!("factors of {term}"), found, wanted);
+        }
+        for (term, weights) in expected["expected_mean_squares"].as_object().unwrap() {
+            let mut wanted = vec![0; model.lines().len()];
+            weights
+                .as_object()
+                .unwrap()
+                .iter()
+                .for_each(|(t, w)| wanted[place(t)] = w.as_u64().unwrap() as usize);
+            check.same(
+                &format!("expected mean square of {term}"),
+                model.expected_mean_square(place(term)),
+                wanted,
+            );
+        }
+        for (term, weights) in expected["component_as_mean_squares"].as_object().unwrap() {
+            let component = model.component(place(term));
+            let mut wanted = vec![(0, 1); model.lines().len()];
+            weights
+                .as_object()
+                .unwrap()
+                .iter()
+                .for_each(|(t, w)| wanted[place(t)] = fraction(w.as_str().unwrap()));
+            let found: Vec<(i64, i64)> = component
+                .numerators()
+                .iter()
+                .map(|&n| lowest_terms(n, component.denominator() as i64))
+                .collect();
+            check.same(&format!("component of {term}"), found, wanted);
+        }
+        check.finish(8);
+    }
+}
+
+fn design(expected: &Value) -> Design {
+    let within = |name: &str| -> Vec<String> {
+        let names = expected["nested_in"].get(name).and_then(Value::as_array);
+        names.map_or_else(Vec::new, |names| {
+            names
+                .iter()
+                .map(|n| n.as_str().unwrap().to_owned())
+                .collect()
+        })
+    };
+    let factor = |factor: &Value| {
+        let name = factor[0].as_str().unwrap();
+        Factor {
+            name: name.to_owned(),
+            levels: factor[1].as_u64().unwrap() as usize,
+            within: within(name),
+        }
+    };
+    Design::new(
+        expected["levels"]
+            .as_array()
+            .unwrap()
+            .iter()
+            .map(factor)
+            .collect(),
+    )
+    .unwrap()
+}
+
+fn fraction(text: &str) -> (i64, i64) {
+    let (numerator, denominator) = text.split_once('/').unwrap_or((text, "1"));
+    (numerator.parse().unwrap(), denominator.parse().unwrap())
+}
+
+fn lowest_terms(numerator: i64, denominator: i64) -> (i64, i64) {
+    let (mut a, mut b) = (numerator.abs(), denominator);
+    while b != 0 {
+        (a, b) = (b, a % b);
+    }
+    (numerator / a, denominator / a)
+}

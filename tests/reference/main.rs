@@ -1,0 +1,13 @@
+//! The engine against values from outside: published worked examples, certified data sets, exact rational
+//! arithmetic and 40-digit evaluations of the formulas in the papers that the engine names.
+//!
+//! Where each value comes from stands in `fixtures/reference/ORIGIN.md`.
+
+mod check;
+mod data;
+mod degenerate;
+mod design_rules;
+mod limits;
+mod offsets;
+mod point_values;
+mod quantiles;
