@@ -12,7 +12,6 @@ mod checked;
 mod duration;
 mod fault;
 mod folders;
-mod names;
 mod patterns;
 mod place;
 mod read;
@@ -25,7 +24,7 @@ pub use checked::{
     NoticeKind, Password, Plan, PlanFactor, Route, Site, Tls,
 };
 pub use fault::Fault;
-pub use names::fold;
+
 pub use read::read;
 
 /// The few things that checking asks of the disk.

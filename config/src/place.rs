@@ -28,24 +28,33 @@ pub(crate) fn is_each(path: &str) -> bool {
         .is_some_and(|names| names.split('/').all(is_xml_name))
 }
 
-/// True for the path of an element or attribute: absolute, or relative with leading `..` steps; `@name` only last.
-pub(crate) fn is_xml_path(path: &str) -> bool {
-    let (steps, may_rise) = match path.strip_prefix('/') {
-        Some(steps) => (steps, false),
-        None => (path, true),
-    };
-    let mut rising = may_rise;
+/// True for the path of an element or attribute: absolute, or relative to an element `depth` below the
+/// document with leading `..` steps; `@name` only last. What it names lies within the document.
+pub(crate) fn is_xml_path(path: &str, depth: usize) -> bool {
+    let absolute = path.strip_prefix('/');
+    let (steps, mut reached) = (
+        absolute.unwrap_or(path),
+        if absolute.is_some() { 0 } else { depth },
+    );
     let last = steps.split('/').count() - 1;
-    steps.split('/').enumerate().all(|(index, step)| {
+    let mut rising = absolute.is_none();
+    let are_steps = steps.split('/').enumerate().all(|(index, step)| {
         if step == ".." {
+            reached = reached.saturating_sub(1);
             return rising && index < last;
         }
         rising = false;
         match step.strip_prefix('@') {
             Some(attribute) => index == last && is_xml_name(attribute),
-            None => step == "." && path == "." || is_xml_name(step),
+            None if path == "." => true,
+            None => {
+                reached = reached.saturating_add(1);
+                is_xml_name(step)
+            }
         }
-    })
+    });
+    let rises = steps.split('/').take_while(|step| *step == "..").count();
+    are_steps && rises <= depth && reached > 0
 }
 
 fn is_xml_name(name: &str) -> bool {
@@ -131,7 +140,7 @@ mod tests {
             "../../head/who",
             ".",
         ] {
-            assert!(is_xml_path(path), "{path}");
+            assert!(is_xml_path(path, 3), "{path}");
         }
         for path in [
             "",
@@ -147,7 +156,17 @@ mod tests {
             "value[1]",
             "../.",
         ] {
-            assert!(!is_xml_path(path), "{path}");
+            assert!(!is_xml_path(path, 3), "{path}");
+        }
+        for (path, depth, within) in [
+            ("../@part", 2, true),
+            ("../@part", 1, false),
+            ("../../who", 2, true),
+            ("../../../who", 2, false),
+            ("/@id", 3, false),
+            ("@id", 1, true),
+        ] {
+            assert_eq!(is_xml_path(path, depth), within, "{path} at {depth}");
         }
         assert!(is_each("/export/run/feature"));
         for path in ["export/run", "/", "", "/export/@id", "/a//b", "/a/../b"] {

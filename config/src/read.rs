@@ -6,14 +6,14 @@ use toml::de::DeTable;
 
 use crate::checked::Config;
 use crate::folders::Folders;
-use crate::source::{Findings, Place, Source};
+use crate::source::{Findings, Place, Source, shortened};
 use crate::tables::{instrument, mail, plan, route, site};
 use crate::walk::Table;
 use crate::{Disk, Fault};
 
 /// The configuration in `text`, with warnings.
 ///
-/// `file` is what faults call it; relative paths in it start at `folder`. Times carry their unit (`"3s"`),
+/// `file` is what faults call it; relative paths in it start at `folder`, which is absolute. Times carry their unit (`"3s"`),
 /// shares and confidences are parts of one, drawing values are in the characteristic's unit.
 ///
 /// # Errors
@@ -64,7 +64,7 @@ fn document(source: &Source<'_>, folders: &Folders<'_>) -> Option<Config> {
                 .and_then(|span| source.text.get(span))
                 .unwrap_or_default();
             place
-                .below(key)
+                .below(&shortened(key))
                 .fault("the key a second time", "each key once");
         } else {
             // The line itself is not shown: a password may stand in it, and faults are logged.

@@ -10,7 +10,7 @@ use std::ops::Range;
 
 use toml::de::{DeTable, DeValue};
 
-use crate::names::{fold, nearest};
+use restudy_parsers::{fold, nearest};
 use crate::source::{Place, shortened};
 
 /// One table of the document.
@@ -75,6 +75,29 @@ impl<'a> Table<'a> {
         node
     }
 
+    /// What a key says, if it is there: `Some(None)` when it is not, `None` when it is faulty.
+    #[allow(clippy::option_option)]
+    pub(crate) fn optional<T>(
+        &self,
+        key: &'static str,
+        read: impl FnOnce(&Node<'a>) -> Option<T>,
+    ) -> Option<Option<T>> {
+        match self.get(key) {
+            None => Some(None),
+            Some(node) => read(&node).map(Some),
+        }
+    }
+
+    /// What a key says, or `default` when it is not there.
+    pub(crate) fn or<T>(
+        &self,
+        key: &'static str,
+        default: T,
+        read: impl FnOnce(&Node<'a>) -> Option<T>,
+    ) -> Option<T> {
+        self.get(key).map_or(Some(default), |node| read(&node))
+    }
+
     /// Keys that are known and not yet followed.
     pub(crate) fn later(&self, keys: &[&'static str]) {
         self.later.borrow_mut().extend(keys);
@@ -86,7 +109,11 @@ impl<'a> Table<'a> {
             let name: &'a std::borrow::Cow<'a, str> = name.get_ref();
             (
                 &**name,
-                Node::new(self.place.below(name), value.span(), value.get_ref()),
+                Node::new(
+                    self.place.below(&shortened(name)),
+                    value.span(),
+                    value.get_ref(),
+                ),
             )
         };
         self.entries.iter().map(node).collect()

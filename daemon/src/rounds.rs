@@ -13,6 +13,7 @@ pub mod missing;
 #[cfg(test)]
 mod tests;
 
+use std::collections::HashMap;
 use std::sync::Arc;
 
 use restudy_config::{Config, Plan};
@@ -188,6 +189,7 @@ fn move_runs(
     seats: &[fill::Seat],
     round: Option<i64>,
 ) -> Result<(), LedgerError> {
+    let known: HashMap<i64, &Placement> = runs.iter().map(|r| (r.id, &r.place)).collect();
     for seat in seats {
         let place = Placement {
             round,
@@ -195,8 +197,7 @@ fn move_runs(
             status: seat.status,
             reason: seat.reason.clone(),
         };
-        let known = runs.iter().find(|r| r.id == seat.run).map(|r| &r.place);
-        if known != Some(&place) {
+        if known.get(&seat.run) != Some(&&place) {
             w.place_run(seat.run, &place)?;
         }
     }

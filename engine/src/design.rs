@@ -12,7 +12,7 @@ use serde::Serialize;
 /// Factors that a design may have; bounds the terms (2⁶) and so the work per design.
 pub const FACTORS_MAX: usize = 6;
 /// Cells that a design may have.
-pub const CELLS_MAX: usize = 1_000_000;
+pub const CELLS_MAX: usize = 100_000;
 /// The name of the factor that stands for the measured parts.
 pub const PART: &str = "part";
 

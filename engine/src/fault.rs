@@ -1,5 +1,7 @@
 //! Why readings give no study.
 
+use crate::study::TRIALS_MAX;
+
 /// Why readings give no study. The indices are those of the slices that were handed over, from 0.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 pub enum StudyError {
@@ -46,6 +48,9 @@ pub enum StudyError {
         /// Readings of the other cells.
         expected: usize,
     },
+    /// More readings in a cell than [`TRIALS_MAX`].
+    #[error("every cell has {0} readings; expected at most {TRIALS_MAX}")]
+    TooManyTrials(usize),
     /// Fewer than two parts.
     #[error(
         "the design has {0} part; expected at least 2, because the spread of parts is worked out too"

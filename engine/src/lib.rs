@@ -43,4 +43,4 @@ pub use record::{
 };
 pub use settings::{Interaction, Judge, Limits, OneSided, Process, Settings, Tolerance};
 pub use standing::{Standing, standing};
-pub use study::{Prepared, analyse};
+pub use study::{Prepared, TRIALS_MAX, analyse};

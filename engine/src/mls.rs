@@ -92,7 +92,6 @@ impl Constants {
 
     /// One-sided lower limit of `sum c_q MS_q`; may be negative.
     pub(crate) fn lower(&self, c: &[f64], ms: &[f64]) -> f64 {
-        let len = self.df.len();
         let largest = c
             .iter()
             .zip(ms)
@@ -105,20 +104,19 @@ impl Constants {
         let mixed = c.iter().any(|&c| c < 0.0);
         let x = |q: usize| c[q].abs() * ms[q] / largest;
         let mut v = 0.0;
-        for q in 0..len {
-            let xq = x(q);
-            if c[q] < 0.0 {
-                v += signed_square(self.h[q]) * xq * xq;
+        for (q, &c_q) in c.iter().enumerate() {
+            if c_q < 0.0 {
+                v += signed_square(self.h[q]) * x(q) * x(q);
             }
-            if c[q] <= 0.0 {
+            if c_q <= 0.0 {
                 continue;
             }
-            v += signed_square(self.g[q]) * xq * xq;
-            for s in 0..len {
-                if c[s] < 0.0 {
-                    v += self.across(q, s) * xq * x(s);
-                } else if mixed && s > q && c[s] > 0.0 {
-                    v += self.alike(q, s) / (members - 1) as f64 * xq * x(s);
+            v += signed_square(self.g[q]) * x(q) * x(q);
+            for (s, &c_s) in c.iter().enumerate() {
+                if c_s < 0.0 {
+                    v += self.across(q, s) * x(q) * x(s);
+                } else if mixed && s > q && c_s > 0.0 {
+                    v += self.alike(q, s) / (members - 1) as f64 * x(q) * x(s);
                 }
             }
         }

@@ -157,9 +157,7 @@ impl Model {
 
     /// What the mean square of a line is tested against; `None` for the error.
     pub fn denominator(&self, line: usize) -> Option<Combination> {
-        if self.lines[line].set.is_none() {
-            return None;
-        }
+        self.lines[line].set?;
         let weights = self.weights[line]
             .iter()
             .enumerate()

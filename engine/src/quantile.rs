@@ -1,12 +1,16 @@
 //! Quantiles and upper tails of chi-square and F for real degrees of freedom from 0.02 to 1e6.
 //!
-//! A quantile is found by Newton steps on the log of the smaller tail against the log of the point. Both
-//! distributions are log-concave there, so the steps come from one side and cannot cycle.
+//! A quantile is found by Newton steps on the log of the smaller tail against the log of the point, which is
+//! concave, so that the steps come from one side; a bracket catches a poor start.
 
 use crate::tails::{self, Tails, ln_gamma_1p};
 
 const STEPS_MAX: usize = 200;
-/// Points below this are given by the first term of the power series alone.
+/// How far to look for the other side of the root, in log of the point.
+const STRIDE: f64 = 2.0;
+/// Steps shorter than this that no longer shrink are rounding.
+const SETTLING: f64 = 1e-11;
+/// Logs of points below this are given by the first term of the power series alone.
 const FIRST_TERM_BELOW: f64 = -38.0;
 
 /// Which tail of a distribution holds the stated probability.
@@ -16,6 +20,15 @@ pub enum Side {
     Below,
     /// The probability lies above the quantile.
     Above,
+}
+
+impl Side {
+    fn opposite(self) -> Side {
+        match self {
+            Side::Below => Side::Above,
+            Side::Above => Side::Below,
+        }
+    }
 }
 
 /// The value of chi-square with `df` degrees of freedom that has probability `p` on `side` of it.
@@ -73,7 +86,7 @@ pub fn f_above(x: f64, df1: f64, df2: f64) -> f64 {
     }
 }
 
-/// Log of F by the cube-root approximation to both chi-squares (Paulson 1942).
+/// Log of F by the cube-root approximation to both chi-squares (Paulson 1942), or by the one with fewer df.
 fn f_guess(p: f64, df1: f64, df2: f64) -> f64 {
     let z = normal(Side::Below, p);
     let (s1, s2) = (2.0 / (9.0 * df1), 2.0 / (9.0 * df2));
@@ -83,8 +96,10 @@ fn f_guess(p: f64, df1: f64, df2: f64) -> f64 {
     let cube = (m1 * m2 + z * under_root.sqrt()) / divisor;
     if divisor > 0.0 && cube > 0.2 {
         3.0 * cube.ln()
+    } else if df1 < df2 {
+        (chi_square(Side::Below, p, df1) / df1).ln()
     } else {
-        f64::NAN
+        (df2 / chi_square(Side::Above, p, df2)).ln()
     }
 }
 
@@ -104,36 +119,41 @@ fn quantile(
     } else {
         start.clamp(FIRST_TERM_BELOW, 700.0)
     };
+    // The smaller tail decides: it is known to a relative error of its own.
+    let (wanted, target) = if p <= 0.5 {
+        (side, p)
+    } else {
+        (side.opposite(), 1.0 - p)
+    };
+    let (mut low, mut high) = (f64::NEG_INFINITY, f64::INFINITY);
     let mut smallest = f64::INFINITY;
-    // The tail that is small decides; the other one is known to a relative error of its complement.
-    let wanted = if p <= 0.5 { side } else { opposite(side) };
-    let target = if p <= 0.5 { p } else { 1.0 - p };
     for _ in 0..STEPS_MAX {
         let tails = at(log.exp());
-        let (tail, sign) = match wanted {
-            Side::Below => (tails.lower, 1.0),
-            Side::Above => (tails.upper, -1.0),
+        let (tail, outward) = match wanted {
+            Side::Below => (tails.lower, -1.0),
+            Side::Above => (tails.upper, 1.0),
         };
-        let step = if tail > 0.0 && tails.slope > 0.0 {
-            sign * (target / tail).ln() * tail / tails.slope
+        if (tail < target) == (wanted == Side::Below) {
+            low = log;
         } else {
-            -sign * 0.5
+            high = log;
+        }
+        let newton = log + outward * (tail / target).ln() * tail / tails.slope;
+        let next = if newton >= low && newton <= high {
+            newton
+        } else if low.is_finite() && high.is_finite() {
+            0.5 * (low + high)
+        } else {
+            log + if log == low { STRIDE } else { -STRIDE }
         };
-        let step = step.clamp(-20.0, 20.0);
-        log += step;
-        if step.abs() <= 4.0 * f64::EPSILON || (step.abs() < 1e-11 && step.abs() >= smallest) {
+        let step = (next - log).abs();
+        log = next;
+        if step <= 4.0 * f64::EPSILON || (step < SETTLING && step >= smallest) {
             break;
         }
-        smallest = smallest.min(step.abs());
+        smallest = smallest.min(step);
     }
     log.exp()
-}
-
-fn opposite(side: Side) -> Side {
-    match side {
-        Side::Below => Side::Above,
-        Side::Above => Side::Below,
-    }
 }
 
 /// Rough standard normal quantile, good enough to start from (Abramowitz & Stegun 26.2.23).

@@ -20,6 +20,8 @@ use crate::sums::{Sums, Sweep};
 use crate::table::Table;
 use crate::tolerance::Share;
 
+/// Readings that a cell may hold.
+pub const TRIALS_MAX: usize = 10_000;
 /// Differences between readings that squares can hold.
 const SPREAD: std::ops::RangeInclusive<f64> = 1e-140..=1e140;
 
@@ -77,6 +79,9 @@ impl Prepared {
         }
         if trials == 0 {
             return Err(StudyError::Empty);
+        }
+        if trials > TRIALS_MAX {
+            return Err(StudyError::TooManyTrials(trials));
         }
         let kept = Basis::new(Model::estimable(design, trials), settings);
         let interactions = kept.model.interactions();

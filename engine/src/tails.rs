@@ -5,7 +5,8 @@
 //! log-gammas are large. Each tail is returned as itself, never as one minus the other where it is small.
 //!
 //! Sources: Loader, *Fast and Accurate Computation of Binomial Probabilities*, 2000 (deviances); NIST Digital
-//! Library of Mathematical Functions 5.11.1, 8.7.1, 8.9.2, 8.17.22.
+//! Library of Mathematical Functions 5.11.1, 8.7.1, 8.9.2; DiDonato & Morris, *ACM Trans. Math. Software* 18
+//! (1992) 360–373, eq. 9 (fraction of the incomplete beta function).
 
 use std::f64::consts::PI;
 
@@ -51,14 +52,14 @@ pub(crate) fn beta(a: f64, b: f64, f: f64) -> Tails {
     let log = stirling_error(a + b) - stirling_error(a) - stirling_error(b) - deviances;
     let slope = log.exp() * (a * b / (2.0 * PI * (a + b))).sqrt();
     if below < (a + 1.0) / (a + b + 2.0) {
-        let lower = slope * beta_fraction(a, b, below) / a;
+        let lower = slope * beta_fraction(a, b, below, above, -apart);
         Tails {
             lower,
             upper: 1.0 - lower,
             slope,
         }
     } else {
-        let upper = slope * beta_fraction(b, a, above) / b;
+        let upper = slope * beta_fraction(b, a, above, below, apart);
         Tails {
             lower: 1.0 - upper,
             upper,
@@ -127,7 +128,7 @@ fn gamma_series(a: f64, x: f64) -> f64 {
 
 /// The continued fraction of `Γ(a, x) / (x^a e^-x)`.
 fn gamma_fraction(a: f64, x: f64) -> f64 {
-    let mut b = x + 1.0 - a;
+    let mut b = (x - a) + 1.0;
     let mut c = 1.0 / TINY;
     let mut d = 1.0 / b;
     let mut h = d;
@@ -146,27 +147,29 @@ fn gamma_fraction(a: f64, x: f64) -> f64 {
     h
 }
 
-/// The continued fraction of `a B(x; a, b) / (x^a (1-x)^b)`.
-fn beta_fraction(a: f64, b: f64, x: f64) -> f64 {
-    let mut c = 1.0;
-    let mut d = 1.0 / away_from_zero(1.0 - (a + b) * x / (a + 1.0));
-    let mut h = d;
-    for m in 1..STEPS_MAX {
-        let m = m as f64;
-        let even = m * (b - m) * x / ((a + 2.0 * m - 1.0) * (a + 2.0 * m));
-        d = 1.0 / away_from_zero(1.0 + even * d);
-        c = away_from_zero(1.0 + even / c);
-        h *= d * c;
-        let odd = -(a + m) * (a + b + m) * x / ((a + 2.0 * m) * (a + 2.0 * m + 1.0));
-        d = 1.0 / away_from_zero(1.0 + odd * d);
-        c = away_from_zero(1.0 + odd / c);
+/// The continued fraction of `B(x; a, b) / (x^a y^b)`, given `y = 1 - x` and `a - (a + b) x` to full precision.
+///
+/// Its partial numerators and denominators lose no digits where `x` is near 1.
+fn beta_fraction(a: f64, b: f64, x: f64, y: f64, apart: f64) -> f64 {
+    let mut fraction = a * (apart + 1.0) / (a + 1.0);
+    let mut c = fraction;
+    let mut d = 0.0;
+    for n in 1..STEPS_MAX {
+        let n = n as f64;
+        let odd = a + 2.0 * n - 1.0;
+        let numerator = (a + n - 1.0) * (a + b + n - 1.0) * n * (b - n) * (x / odd) * (x / odd);
+        let denominator = n
+            + n * (b - n) * x / odd
+            + (a + n) * (apart + 1.0 + n * (1.0 + y)) / (a + 2.0 * n + 1.0);
+        d = 1.0 / away_from_zero(denominator + numerator * d);
+        c = away_from_zero(denominator + numerator / c);
         let step = d * c;
-        h *= step;
+        fraction *= step;
         if (step - 1.0).abs() < f64::EPSILON {
             break;
         }
     }
-    h
+    1.0 / fraction
 }
 
 fn away_from_zero(x: f64) -> f64 {

@@ -10,6 +10,7 @@ use zip::ZipArchive;
 use zip::result::ZipError;
 
 use crate::kind::Kind;
+use crate::names::shorten_to;
 use crate::parsed::Refused;
 use crate::rule::Bounds;
 
@@ -21,12 +22,10 @@ pub(crate) fn check(bytes: &[u8], kind: Kind, bounds: &Bounds) -> Result<(), Ref
     if kind == Kind::Compound {
         return Err(compound(bytes));
     }
-    let mut zip = ZipArchive::new(Cursor::new(bytes)).map_err(|why| Refused {
-        sentence: format!(
-            "the workbook's table of parts cannot be read: {}",
-            in_words(&why)
-        ),
-        hint: Some("a workbook that was cut short looks like this: export it again".to_owned()),
+    let mut zip = ZipArchive::new(Cursor::new(bytes)).map_err(|_| Refused {
+        sentence: "the workbook is cut short or damaged: its table of parts cannot be read"
+            .to_owned(),
+        hint: Some("export it again".to_owned()),
         perhaps_unfinished: true,
     })?;
     if zip.len() > PARTS_MAX {
@@ -131,7 +130,7 @@ fn not_yet(what: &str) -> Refused {
 /// A workbook whose table of parts is whole but whose inside is not.
 pub(crate) fn damaged(why: &str) -> Refused {
     Refused {
-        sentence: format!("the workbook is damaged: {}", why.trim_end_matches('.')),
+        sentence: format!("the workbook is damaged: {}", shorten_to(why, 160)),
         hint: Some("export it again".to_owned()),
         perhaps_unfinished: false,
     }

@@ -127,7 +127,7 @@ impl Row {
         self.cells
             .iter()
             .filter_map(move |(column, content)| match content {
-                Content::Text(text) if names::key(text) == sought => Some(*column),
+                Content::Text(text) if names::fold(text) == sought => Some(*column),
                 _ => None,
             })
     }
@@ -165,6 +165,11 @@ impl Grid {
             place: self.place(row, column),
             content: self.row(row).map_or(&BLANK, |row| row.at(column)),
         }
+    }
+
+    /// True when the row of that number is the last line of a text, which may be cut short there.
+    pub(crate) fn may_be_cut_at(&self, number: u32) -> bool {
+        self.origin == Origin::Text && self.rows.last().is_some_and(|last| last.number == number)
     }
 
     /// "row 3 of sheet `Results`" or "line 3"; `number` from 0.

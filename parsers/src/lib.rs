@@ -21,6 +21,7 @@ mod decode;
 mod delimited;
 mod fault;
 mod grid;
+mod identity;
 mod kind;
 mod moment;
 mod names;
@@ -37,7 +38,7 @@ mod workbook;
 mod xml;
 mod xml_path;
 
-pub use names::key as fold;
+pub use names::{fold, nearest};
 pub use parsed::{Parsed, Reading, Refused, Run, SetAside};
 pub use plain::{Plain, read_plain};
 pub use reader::{Reader, RuleError};

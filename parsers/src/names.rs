@@ -17,34 +17,40 @@ pub(crate) fn fold_blanks(text: &str) -> String {
 
 /// The key under which two spellings of a name are the same: outer blanks cut, inner ones folded, lower case.
 #[must_use]
-pub fn key(text: &str) -> String {
+pub fn fold(text: &str) -> String {
     fold_blanks(text).to_lowercase()
 }
 
 /// A text short enough to stand in a sentence.
 pub(crate) fn shorten(text: &str) -> String {
+    shorten_to(text, QUOTED_MAX)
+}
+
+/// A text of at most `most` characters.
+pub(crate) fn shorten_to(text: &str, most: usize) -> String {
     let folded: String = fold_blanks(text)
         .chars()
         .map(|c| if c.is_control() { '\u{fffd}' } else { c })
         .collect();
-    match folded.char_indices().nth(QUOTED_MAX) {
+    match folded.char_indices().nth(most) {
         None => folded,
         Some((cut, _)) => format!("{}…", &folded[..cut]),
     }
 }
 
 /// The known name most like `sought`, if any is like it at all.
-pub(crate) fn nearest<'a>(
+#[must_use]
+pub fn nearest<'a>(
     sought: &str,
     known: impl IntoIterator<Item = &'a str>,
 ) -> Option<&'a str> {
-    let sought = key(sought);
+    let sought = fold(sought);
     let mut best: Option<(f64, &str)> = None;
     for name in known
         .into_iter()
         .filter(|name| name.len() <= 4 * QUOTED_MAX)
     {
-        let likeness = strsim::normalized_damerau_levenshtein(&sought, &key(name));
+        let likeness = strsim::normalized_damerau_levenshtein(&sought, &fold(name));
         if likeness >= 0.5 && best.is_none_or(|(most, _)| likeness > most) {
             best = Some((likeness, name));
         }
@@ -74,7 +80,7 @@ mod tests {
 
     #[test]
     fn no_break_spaces_and_case_do_not_tell_names_apart() {
-        assert_eq!(key("  Serial\u{a0} \t NO. "), "serial no.");
+        assert_eq!(fold("  Serial\u{a0} \t NO. "), "serial no.");
     }
 
     #[test]

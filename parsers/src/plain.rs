@@ -16,7 +16,7 @@ use crate::decode;
 use crate::delimited::{self, Delimiter};
 use crate::grid::{Content, Grid};
 use crate::kind::Kind;
-use crate::names::{key, listed, shorten};
+use crate::names::{fold, listed, shorten};
 use crate::parsed::{Parsed, Refused};
 use crate::reader::Reader;
 use crate::rule::{
@@ -82,7 +82,7 @@ pub fn read_plain(export: Export<'_>, asked: &Plain) -> Result<Parsed, Refused> 
         .cells
         .iter()
         .filter_map(|(_, content)| match content {
-            Content::Text(text) => Some(key(text)),
+            Content::Text(text) => Some(fold(text)),
             _ => None,
         })
         .collect();
@@ -95,7 +95,7 @@ pub fn read_plain(export: Export<'_>, asked: &Plain) -> Result<Parsed, Refused> 
                     listed(headings.iter().map(String::as_str))
                 ),
                 hint: Some(format!("the headings are {}", listed(HEADINGS))),
-                perhaps_unfinished: false,
+                perhaps_unfinished: grid.may_be_cut_at(header.number),
             });
         }
     }
@@ -117,9 +117,9 @@ fn delimiter(text: &str, asked: &Plain) -> Delimiter {
         return announced;
     }
     let known = |heading: &str| {
-        let heading = key(heading.trim().trim_matches('"'));
+        let heading = fold(heading.trim().trim_matches('"'));
         HEADINGS.contains(&heading.as_str())
-            || asked.factors.iter().any(|factor| key(factor) == heading)
+            || asked.factors.iter().any(|factor| fold(factor) == heading)
     };
     let line = text
         .lines()

@@ -10,7 +10,7 @@ use crate::delimited;
 use crate::grid::{Content, Field, Grid, Place};
 use crate::kind::Kind;
 use crate::moment::Clock;
-use crate::names::{key, shorten};
+use crate::names::{fold, shorten};
 use crate::no_value::NoValue;
 use crate::parsed::{Parsed, Refused};
 use crate::rule::{Bounds, Count, Form, Header, Limit, Role, Rule, Sheet, Trial};
@@ -369,7 +369,7 @@ impl Roles {
             no_value: NoValue::new(&rule.no_value, rule.decimal),
             end: rule.end.as_ref().map(|end| End {
                 text: end.find.clone(),
-                key: key(&end.find),
+                key: fold(&end.find),
             }),
         })
     }

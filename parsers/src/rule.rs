@@ -39,7 +39,8 @@ pub struct Rule {
     pub end: Option<Find>,
     /// The decimal mark, `.` or `,`.
     pub decimal: char,
-    /// Texts that mean "no value" (`---`, `9999`), compared after trimming.
+    /// Texts that mean "no value" (`---`, `9999`), compared after trimming; numbers among them also as
+    /// numbers (`9999,00`). As a nominal or a limit they mean that there is none, except a zero.
     pub no_value: Vec<String>,
     /// Encoding of text that is neither marked by a BOM nor UTF-8 (a WHATWG label).
     pub encoding: Option<String>,
@@ -115,7 +116,7 @@ pub enum Cell {
     /// XML: a path to an element or, with `@name` last, an attribute; absolute (`/export/@id`) or relative to
     /// `each` (`value`, `@id`, `../@part`).
     Xml(String),
-    /// The same for every export.
+    /// The same for every export; a number is written with a point.
     Constant(String),
 }
 
@@ -133,8 +134,8 @@ pub enum Trial {
 pub enum Count {
     /// By time stamp, at analysis (runs keep `trial: None`).
     Taken,
-    /// By order within the export: the n-th reading of the same part, appraiser, factors and characteristic
-    /// is trial n (runs get that number).
+    /// By order within the export: the n-th reading of the same part, appraiser, factors, round and
+    /// characteristic is trial n (runs get that number).
     Order,
 }
 

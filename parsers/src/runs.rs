@@ -7,6 +7,7 @@ use std::collections::{BTreeMap, HashMap, HashSet};
 
 use crate::fault::{Fault, shown};
 use crate::grid::{Content, Field};
+use crate::identity::Identity;
 use crate::names::{fold_blanks, shorten};
 use crate::number::Number;
 use crate::parsed::{Parsed, Reading, Run, SetAside};
@@ -78,6 +79,7 @@ impl<'r> Runs<'r> {
             Some(run) => std::mem::take(&mut run.same),
             None => BTreeMap::new(),
         };
+        let unknown = fault.is_some();
         let known = self.index.get(&(run.clone(), fault.clone())).copied();
         let at = known.unwrap_or(self.entries.len());
         if known.is_none() {
@@ -94,6 +96,9 @@ impl<'r> Runs<'r> {
             });
         }
         self.entries[at].readings += 1;
+        if unknown {
+            return;
+        }
         match self.reading(at, fields, ragged, characteristic, &same) {
             Ok(reading) => self.readings.push(reading),
             Err(fault) => self.entries[at].blame(fault),
@@ -360,64 +365,5 @@ fn limit(
             "a finite limit",
             format!("nominal and {role} add up to no finite number"),
         )),
-    }
-}
-
-/// The run that a record says it belongs to.
-struct Identity {
-    /// As far as it could be read; `None` without a part.
-    run: Option<Run>,
-    /// The first label that could not be read.
-    fault: Option<Fault>,
-}
-
-impl Identity {
-    fn read(roles: &Roles, fields: &[Field<'_>]) -> Self {
-        let mut fault = None;
-        let mut keep = |fresh: Fault| {
-            fault.get_or_insert(fresh);
-        };
-        let mut label = |source: usize| match roles.sources[source].label(fields[source]) {
-            Ok(label) => Some(label),
-            Err(fresh) => {
-                keep(fresh);
-                None
-            }
-        };
-        let part = label(roles.part);
-        let appraiser = roles.appraiser.and_then(&mut label);
-        let trial = match roles.trial {
-            TrialBy::Label(source) => label(source),
-            TrialBy::Order | TrialBy::Nothing => None,
-        };
-        let round = roles.round.and_then(&mut label);
-        let mut named = |list: &[(String, usize)]| -> BTreeMap<String, String> {
-            list.iter()
-                .filter_map(|(name, source)| Some((name.clone(), label(*source)?)))
-                .collect()
-        };
-        let factors = named(&roles.factors);
-        let same = named(&roles.same);
-        let taken = roles.taken.as_ref().and_then(|(source, clock)| {
-            let field = fields[*source];
-            let source = &roles.sources[*source];
-            let read = match field.content {
-                Content::Date(_) if source.is_plain() => clock.read(field, None),
-                _ => source
-                    .text(field)
-                    .and_then(|text| clock.read(field, text.as_deref())),
-            };
-            read.map_err(&mut keep).ok()
-        });
-        let run = part.map(|part| Run {
-            part,
-            appraiser,
-            trial,
-            factors,
-            same,
-            taken,
-            round,
-        });
-        Self { run, fault }
     }
 }

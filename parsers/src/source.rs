@@ -8,7 +8,7 @@ use regex::Regex;
 
 use crate::fault::{Fault, shown};
 use crate::grid::{Content, Field, Place};
-use crate::names::{fold_blanks, key, shorten};
+use crate::names::{fold, fold_blanks, shorten};
 use crate::number::Number;
 use crate::reader::RuleError;
 use crate::rule::{Cell, Role};
@@ -45,8 +45,15 @@ impl Source {
     pub(crate) fn new(name: &str, role: &Role, each: Option<&XmlPath>) -> Result<Self, RuleError> {
         let error = |what: String| RuleError::new(name, what);
         let regex = |text: &str| {
-            Regex::new(text)
-                .map_err(|why| error(format!("the regex `{text}` cannot be used: {why}")))
+            Regex::new(text).map_err(|why| {
+                let why = why.to_string();
+                let why = why
+                    .lines()
+                    .last()
+                    .unwrap_or("")
+                    .trim_start_matches("error: ");
+                error(format!("the regex `{text}` cannot be used: {why}"))
+            })
         };
         let from = match (&role.from, each) {
             (Cell::Constant(text), _) => Where::Constant(Content::Text(text.as_str().into())),
@@ -72,7 +79,7 @@ impl Source {
             spellings: role
                 .spellings
                 .iter()
-                .map(|(found, label)| (key(found), label.clone()))
+                .map(|(found, label)| (fold(found), label.clone()))
                 .collect(),
         })
     }
@@ -111,7 +118,7 @@ impl Source {
             return Ok(None);
         }
         if !self.spellings.is_empty()
-            && let Some(label) = self.spellings.get(&key(&found))
+            && let Some(label) = self.spellings.get(&fold(&found))
         {
             return Ok(Some(Cow::Owned(label.clone())));
         }

@@ -5,7 +5,7 @@
 
 use crate::fault::Fault;
 use crate::grid::{Content, Field, Grid, Origin, Place, Row};
-use crate::names::{key, listed, nearest, shorten};
+use crate::names::{fold, listed, nearest, shorten};
 use crate::parsed::{Parsed, Refused};
 use crate::reader::{End, Roles};
 use crate::rule::Header;
@@ -63,7 +63,7 @@ pub(crate) fn read(
 fn ends(row: &Row, end: Option<&End>) -> bool {
     let Some(end) = end else { return false };
     row.cells.iter().any(|(_, content)| match content {
-        Content::Text(text) => key(text).contains(&end.key),
+        Content::Text(text) => fold(text).contains(&end.key),
         _ => false,
     })
 }
@@ -89,7 +89,7 @@ impl<'g> Headings<'g> {
                 })?
             }
             Header::Find(text) => {
-                let sought = key(text);
+                let sought = fold(text);
                 let holds = |row: &&Row| row.holding(&sought).next().is_some();
                 grid.rows
                     .iter()
@@ -110,7 +110,7 @@ impl<'g> Headings<'g> {
     }
 
     fn column(&self, source: &Source, heading: &str, grid: &Grid) -> Result<(u32, &str), Refused> {
-        let sought = key(heading);
+        let sought = fold(heading);
         let mut found = self.row.holding(&sought).chain(self.numbered(&sought));
         let names = || self.names.iter().map(|(_, name)| name.as_str());
         let Some(column) = found.next() else {
@@ -123,7 +123,7 @@ impl<'g> Headings<'g> {
                     listed(names())
                 ),
                 hint: nearest(heading, names()).map(|name| format!("did you mean `{name}`?")),
-                perhaps_unfinished: false,
+                perhaps_unfinished: grid.may_be_cut_at(self.row.number),
             });
         };
         if found.next().is_some() {
@@ -264,7 +264,7 @@ impl<'a> Bound<'a> {
 
 /// The first non-blank cell right of the label, else the one below it.
 fn beside<'g>(grid: &'g Grid, label: &str, header: Option<u32>) -> Result<Field<'g>, Refused> {
-    let sought = key(label);
+    let sought = fold(label);
     let all: Vec<(&Row, u32)> = grid
         .rows
         .iter()

@@ -17,7 +17,7 @@ use crate::container::{self, damaged};
 use crate::delimited::CELLS_MAX;
 use crate::grid::{Content, Grid, Origin, Row, cell_name};
 use crate::kind::Kind;
-use crate::names::{key, listed, nearest, shorten};
+use crate::names::{fold, listed, nearest, shorten};
 use crate::parsed::Refused;
 use crate::rule::{Bounds, Sheet};
 
@@ -97,7 +97,7 @@ fn chosen(book: &Xlsx<Cursor<&[u8]>>, asked: &Sheet) -> Result<String, Refused> 
             .map(|sheet| sheet.name.clone())
             .ok_or_else(|| Refused::new("the workbook has no visible sheet")),
         Sheet::Named(sought) => {
-            let same = |name: &&str| key(name) == key(sought);
+            let same = |name: &&str| fold(name) == fold(sought);
             names()
                 .find(same)
                 .map(str::to_owned)

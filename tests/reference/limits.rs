@@ -8,12 +8,10 @@ use crate::data::{Fixture, PART_APPRAISER, PART_ONLY, fixture, name_of_line, poo
 
 const DIGITS: f64 = 9.0;
 
-fn compare(
-    fixture: &Fixture,
-    factors: &[(&str, &[&str])],
-    interaction: fn(Settings) -> Settings,
-    block: &str,
-) {
+/// Interaction kept or pooled.
+type Choice = fn(Settings) -> Settings;
+
+fn compare(fixture: &Fixture, factors: &[(&str, &[&str])], interaction: Choice, block: &str) {
     for (confidence, level) in [(0.90, "0.90"), (0.95, "0.95")] {
         for spread_sds in [6.0, 5.15] {
             let study = fixture.study(factors, &interaction(settings(confidence, spread_sds)));
@@ -194,6 +192,44 @@ fn two_crossed_factors_with_the_interaction_kept_and_pooled() {
     for fixture in fixtures {
         compare(&fixture, PART_APPRAISER, |s| s, "with_interaction");
         compare(&fixture, PART_APPRAISER, pooling, "pooled");
+    }
+}
+
+/// The shares of repeatability and reproducibility in the total: limits of a variance over all the others.
+#[test]
+fn shares_of_the_total() {
+    let table: Value = serde_json::from_str(include_str!(
+        "../../fixtures/reference/shares_of_total.json"
+    ))
+    .unwrap();
+    let fixtures = [
+        fixture!("a_aiag_10x3x3"),
+        fixture!("b_mr_20x3x2"),
+        fixture!("c_nist_crossed_5x2x5"),
+        fixture!("g_aiag_within_times_1_5"),
+        fixture!("edge_two_appraisers"),
+    ];
+    let choices: [(&str, Choice); 2] = [("with_interaction", |s| s), ("pooled", pooling)];
+    for fixture in fixtures {
+        let mut check = Check::new(fixture.name, DIGITS);
+        for (block, interaction) in choices {
+            for (confidence, level) in [(0.90, "0.90"), (0.95, "0.95")] {
+                let study = fixture.study(PART_APPRAISER, &interaction(settings(confidence, 6.0)));
+                let expected = &table["studies"][fixture.name][block];
+                for (name, spread) in [
+                    ("repeatability", &study.figures.repeatability),
+                    ("reproducibility", &study.figures.reproducibility),
+                ] {
+                    both(
+                        &mut check,
+                        name,
+                        &spread.share_of_tv,
+                        &expected[name][level],
+                    );
+                }
+            }
+        }
+        check.finish(24);
     }
 }
 

@@ -3,6 +3,8 @@
 //!
 //! Where each value comes from stands in `fixtures/reference/ORIGIN.md`.
 
+#![allow(clippy::unwrap_used, reason = "a test stops at its first surprise")]
+
 mod check;
 mod data;
 mod degenerate;

@@ -6,7 +6,7 @@
 use restudy_engine::{Limits, OneSided, Process};
 
 use crate::checked::Characteristic;
-use crate::names::{fold, nearest};
+use restudy_parsers::{fold, nearest};
 use crate::source::Place;
 use crate::tables::judging::{OwnLimits, one_sided, own_limits, process};
 use crate::walk::{Node, Table};

@@ -5,7 +5,7 @@ use std::path::PathBuf;
 use crate::checked::{Instrument, Site};
 use crate::duration::duration;
 use crate::folders::{Folders, nested};
-use crate::names::fold;
+use restudy_parsers::fold;
 use crate::patterns::{overlapping, patterns};
 use crate::tables::rule::rule;
 use crate::walk::{Node, Table};
@@ -93,11 +93,9 @@ fn instrument<'a>(
     let settle = settle_node
         .as_ref()
         .and_then(|node| duration(node, "200ms", "1h"));
-    let rescan = table
-        .get("rescan")
-        .map_or(Some(std::time::Duration::from_secs(30)), |node| {
-            duration(&node, "200ms", "1h")
-        });
+    let rescan = table.or("rescan", std::time::Duration::from_secs(30), |node| {
+        duration(node, "200ms", "1h")
+    });
     if let (Some(settle), Some(rescan), Some(node)) = (settle, rescan, &settle_node)
         && settle > rescan
     {

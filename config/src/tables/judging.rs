@@ -34,12 +34,8 @@ fn back_below(node: &Node<'_>) -> Option<f64> {
 pub(crate) fn limits(table: &Table<'_>) -> Option<(Limits, Judge)> {
     let watch = table.need("watch", SHARE).and_then(|node| share(&node));
     let act = table.need("act", SHARE).and_then(|node| share(&node));
-    let back_below = table
-        .get("back_below")
-        .map_or(Some(BACK_BELOW), |node| back_below(&node));
-    let judge = table
-        .get("judge")
-        .map_or(Some(Judge::Estimate), |node| judge(&node));
+    let back_below = table.or("back_below", BACK_BELOW, |node| back_below(node));
+    let judge = table.or("judge", Judge::Estimate, |node| judge(node));
     table.finish();
     let limits = Limits {
         watch: watch?,

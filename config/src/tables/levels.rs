@@ -1,7 +1,7 @@
 //! The levels of a factor: so many, or these.
 
 use crate::checked::{FactorLevels, Label};
-use crate::names::fold;
+use restudy_parsers::fold;
 use crate::walk::Node;
 
 /// Levels of one factor at most; bounds memory and the length of a report.

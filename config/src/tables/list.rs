@@ -5,7 +5,7 @@
 
 use restudy_engine::OneSided;
 
-use crate::names::{fold, nearest};
+use restudy_parsers::{fold, nearest};
 use crate::source::{Place, Source, shortened};
 use crate::tables::characteristic::Draft;
 use crate::tables::judging::{ONE_SIDED, OwnLimits};
@@ -49,7 +49,13 @@ pub(crate) fn drafts<'a>(source: &'a Source<'a>) -> Option<Vec<Draft<'a>>> {
     let mut mark = (delimiter == b',').then_some('.');
     let mut drafts = Vec::new();
     for record in records {
-        let Ok(record) = record else { continue };
+        let record = match record {
+            Ok(record) => record,
+            Err(error) => {
+                whole.fault(error.to_string(), "delimited text");
+                continue;
+            }
+        };
         let offset = record
             .position()
             .map_or(0, |position| usize::try_from(position.byte()).unwrap_or(0));

@@ -12,3 +12,4 @@ pub(crate) mod role;
 pub(crate) mod route;
 pub(crate) mod rule;
 pub(crate) mod site;
+pub(crate) mod taken;

@@ -5,7 +5,7 @@ use restudy_engine::{Judge, Limits};
 use crate::checked::{Appraisers, Characteristic, Plan, PlanFactor};
 use crate::duration::duration;
 use crate::folders::Folders;
-use crate::names::{fold, nearest};
+use restudy_parsers::{fold, nearest};
 use crate::place::regex;
 use crate::source::{Place, Source, shortened};
 use crate::tables::instrument::{Instruments, unique};
@@ -66,11 +66,11 @@ fn plan<'a>(
     let used = table
         .need("instruments", "a list of instrument names")
         .and_then(|node| used(&node, instruments));
-    let only = optional(table.get("only"), only);
+    let only = table.optional("only", only);
     let parts = table
         .need("parts", "a number of parts, or a list of their names")
         .and_then(|node| levels(&node, 2, "a number of parts"));
-    let appraisers = optional(table.get("appraisers"), |node| appraisers(node, table));
+    let appraisers = table.optional("appraisers", |node| appraisers(node, table));
     if let (None, Some(word)) = (table.get("appraisers"), table.get("appraiser_word")) {
         word.fault_hint(
             "`appraisers` beside it",
@@ -86,22 +86,16 @@ fn plan<'a>(
         .need_hint("interaction", INTERACTION, hint)
         .and_then(|node| interaction(&node));
     let spread = "a number of standard deviations above 0 and up to 20, such as 6";
-    let spread_sds = table.get("spread_sds").map_or(Some(6.0), |node| {
+    let spread_sds = table.or("spread_sds", 6.0, |node| {
         node.number(|sds| sds > 0.0 && sds <= 20.0, spread)
     });
-    let confidence = table
-        .get("confidence")
-        .map_or(Some(0.95), |node| confidence(&node));
-    let finish_within = optional(table.get("finish_within"), |node| {
-        duration(node, "1s", "3660d")
-    });
-    let repeat_every = optional(table.get("repeat_every"), |node| {
-        duration(node, "1s", "3660d")
-    });
+    let confidence = table.or("confidence", 0.95, |node| confidence(node));
+    let finish_within = table.optional("finish_within", |node| duration(node, "1s", "3660d"));
+    let repeat_every = table.optional("repeat_every", |node| duration(node, "1s", "3660d"));
     let judging = table
         .need("limits", "a [plan.limits] table with watch and act")
         .and_then(|node| limits(&node.table("a [plan.limits] table")?));
-    let process = optional(table.get("process"), process);
+    let process = table.optional("process", process);
     let characteristics = characteristics(table, judging, process.flatten(), folders);
     table.later(&[
         "calendar",
@@ -141,18 +135,6 @@ fn plan<'a>(
     Some((plan, factor_places))
 }
 
-/// What a key says, if it is there: `Some(None)` when it is not, `None` when it is faulty.
-#[allow(clippy::option_option)]
-fn optional<T>(
-    node: Option<Node<'_>>,
-    read: impl FnOnce(&Node<'_>) -> Option<T>,
-) -> Option<Option<T>> {
-    match node {
-        None => Some(None),
-        Some(node) => read(&node).map(Some),
-    }
-}
-
 fn used(node: &Node<'_>, instruments: Option<&Instruments>) -> Option<Vec<String>> {
     let names = node.names("a list of instrument names")?;
     if let Some(instruments) = instruments {
@@ -178,9 +160,7 @@ fn only(node: &Node<'_>) -> Option<regex::Regex> {
 
 fn appraisers(node: &Node<'_>, table: &Table<'_>) -> Option<Appraisers> {
     let levels = levels(node, 1, "a number of appraisers");
-    let word = table
-        .get("appraiser_word")
-        .map_or(Some("appraiser"), |node| node.name());
+    let word = table.or("appraiser_word", "appraiser", |node| node.name());
     let levels = levels?;
     if count(&levels) == 1 {
         node.place.warn(

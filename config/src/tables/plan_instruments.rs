@@ -3,7 +3,7 @@
 use restudy_parsers::Trial;
 
 use crate::checked::{Instrument, Plan};
-use crate::names::{fold, nearest};
+use restudy_parsers::{fold, nearest};
 use crate::source::Place;
 use crate::walk::Table;
 

@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 
 use restudy_parsers::{Cell, Role};
 
-use crate::names::fold;
+use restudy_parsers::fold;
 use crate::place::{cell, is_xml_path, regex};
 use crate::walk::{Node, Table};
 
@@ -13,8 +13,8 @@ use crate::walk::{Node, Table};
 pub(crate) enum Shape {
     /// Rows and columns.
     Table,
-    /// Elements and attributes.
-    Xml,
+    /// Elements and attributes; the repeating element stands so many elements deep.
+    Xml(usize),
     /// The form itself is faulty: any place may be right.
     Unknown,
 }
@@ -54,9 +54,7 @@ pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
     let find = table
         .get("find")
         .map(|node| regex(&node, 1).map(|regex| regex.as_str().to_owned()));
-    let spellings = table
-        .get("spellings")
-        .map_or(Some(BTreeMap::new()), |node| spellings(&node));
+    let spellings = table.or("spellings", BTreeMap::new(), |node| spellings(node));
     let from = match places.as_slice() {
         [(key, node)] => place(key, node, shape),
         [] => {
@@ -86,7 +84,7 @@ pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
 
 fn place(key: &str, node: &Node<'_>, shape: Shape) -> Option<Cell> {
     let in_table = ["column", "cell", "label"].contains(&key);
-    if (in_table && shape == Shape::Xml) || (key == "xml" && shape == Shape::Table) {
+    if (in_table && matches!(shape, Shape::Xml(_))) || (key == "xml" && shape == Shape::Table) {
         let (form, hint) = if in_table {
             (
                 "a place in an XML export: xml, path or constant",
@@ -115,10 +113,15 @@ fn place(key: &str, node: &Node<'_>, shape: Shape) -> Option<Cell> {
         }
         _ => {
             let path = node.text()?;
-            if !is_xml_path(path) {
+            let depth = if let Shape::Xml(depth) = shape {
+                depth
+            } else {
+                usize::MAX
+            };
+            if !is_xml_path(path, depth) {
                 node.fault_hint(
                     "a path such as \"value\", \"@id\", \"../@part\" or \"/export/@id\"",
-                    "element names stand without a prefix, and an attribute stands last",
+                    "element names stand without a prefix, an attribute stands last, and `..` stays within the document",
                 );
                 return None;
             }
@@ -135,6 +138,12 @@ fn spellings(node: &Node<'_>) -> Option<BTreeMap<String, String>> {
     let mut known: BTreeMap<String, String> = BTreeMap::new();
     let mut sound = true;
     for (label, others) in table.named() {
+        if label.trim().is_empty() || label.chars().any(char::is_control) {
+            others
+                .place
+                .fault("a label that cannot be read", "a label on one line");
+            sound = false;
+        }
         let Some(others) = others.names("a list of other spellings") else {
             sound = false;
             continue;

@@ -1,7 +1,7 @@
 //! `[[route]]`: who gets which notices.
 
 use crate::checked::{NoticeKind, Route};
-use crate::names::{fold, nearest};
+use restudy_parsers::{fold, nearest};
 use crate::tables::mail::addresses;
 use crate::tables::plan::Plans;
 use crate::walk::{Node, Table};
@@ -69,12 +69,8 @@ pub(crate) fn routes(
 }
 
 fn route(table: &Table<'_>, plans: Option<&Plans>) -> Option<Route> {
-    let named = table
-        .get("plans")
-        .map_or(Some(Vec::new()), |node| plan_names(&node, plans));
-    let kinds = table
-        .get("kinds")
-        .map_or(Some(Vec::new()), |node| kinds(&node));
+    let named = table.or("plans", Vec::new(), |node| plan_names(node, plans));
+    let kinds = table.or("kinds", Vec::new(), |node| kinds(node));
     let to = table
         .need("to", "a list of mail addresses")
         .and_then(|node| addresses(&node));

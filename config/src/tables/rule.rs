@@ -2,16 +2,16 @@
 
 use std::collections::BTreeMap;
 
-use jiff::fmt::strtime;
 use restudy_parsers::{
-    Bounds, Count, Find, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,
+    Bounds, Cell, Count, Find, Form, Header, Limit, Role, Rule, Sheet, Trial, Value,
 };
 
 use crate::checked::Site;
-use crate::names::fold;
+use restudy_parsers::fold;
 use crate::place::is_each;
+use crate::source::shortened;
 use crate::tables::role::{PLACES, Shape, role, role_in, table as role_table};
-use crate::tables::site::zone;
+use crate::tables::taken::taken;
 use crate::walk::{Node, Table};
 
 /// Names that mean a role of their own and so cannot name a further factor.
@@ -26,37 +26,33 @@ const RESERVED: [&str; 6] = [
 
 pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
     let shape = shape(table);
-    let decimal = table
-        .get("decimal")
-        .map_or(Some('.'), |node| node.word(&[(".", '.'), (",", ',')]));
+    let decimal = table.or("decimal", '.', |node| node.word(&[(".", '.'), (",", ',')]));
     let form = form(table, shape, decimal);
     let part = table
         .need("part", "where the part's name comes from")
         .and_then(|node| role(&node, shape));
-    let appraiser = optional(table, "appraiser", |node| role(node, shape));
-    let trial = optional(table, "trial", |node| trial(node, shape));
-    let taken = optional(table, "taken", |node| taken(node, shape, site));
-    let round = optional(table, "round", |node| role(node, shape));
-    let characteristic = optional(table, "characteristic", |node| role(node, shape));
+    let appraiser = table.optional("appraiser", |node| role(node, shape));
+    let trial = table.optional("trial", |node| trial(node, shape));
+    let taken = table.optional("taken", |node| taken(node, shape, site));
+    let round = table.optional("round", |node| role(node, shape));
+    let characteristic = table.optional("characteristic", |node| role(node, shape));
     let value = table
         .need("value", "where the measured value comes from")
         .and_then(|node| value(&node, shape));
-    let nominal = optional(table, "nominal", |node| role(node, shape));
+    let nominal = table.optional("nominal", |node| role(node, shape));
     let has_nominal = table.get("nominal").is_some();
-    let lower = optional(table, "lower", |node| limit(node, shape, has_nominal));
-    let upper = optional(table, "upper", |node| limit(node, shape, has_nominal));
-    let factors = table.get("factors").map_or(Some(BTreeMap::new()), |node| {
-        named_roles(&node, shape, &BTreeMap::new())
+    let lower = table.optional("lower", |node| limit(node, shape, has_nominal));
+    let upper = table.optional("upper", |node| limit(node, shape, has_nominal));
+    let factors = table.or("factors", BTreeMap::new(), |node| {
+        named_roles(node, shape, &BTreeMap::new())
     });
     let known = factors.clone().unwrap_or_default();
-    let same = table.get("same").map_or(Some(BTreeMap::new()), |node| {
-        named_roles(&node, shape, &known)
+    let same = table.or("same", BTreeMap::new(), |node| {
+        named_roles(node, shape, &known)
     });
-    let end = optional(table, "end", find);
-    let no_value = table
-        .get("no_value")
-        .map_or(Some(Vec::new()), |node| texts(&node));
-    let encoding = optional(table, "encoding", encoding);
+    let end = table.optional("end", find);
+    let no_value = table.or("no_value", Vec::new(), |node| texts(node));
+    let encoding = table.optional("encoding", encoding);
     table.later(&[
         "skip",
         "keep",
@@ -82,15 +78,27 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
         );
         return None;
     }
+    let (part, value) = (part?, value?);
+    let is_by_row =
+        |role: Option<&Role>| role.is_some_and(|role| matches!(role.from, Cell::Column(_)));
+    let by_row = is_by_row(Some(&part)) || is_by_row(characteristic.as_ref()?.as_ref());
+    if by_row && matches!(value.role.from, Cell::At { .. } | Cell::Label(_)) {
+        table.place_of("value").fault_hint(
+            "one place for the whole export, beside roles from columns",
+            "a column",
+            "every row would get the same value",
+        );
+        return None;
+    }
     Some(Rule {
         form: form?,
-        part: part?,
+        part,
         appraiser: appraiser?,
         trial: trial?,
         taken: taken?,
         round: round?,
         characteristic: characteristic?,
-        value: value?,
+        value,
         nominal: nominal?,
         lower: lower?,
         upper: upper?,
@@ -104,19 +112,6 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
     })
 }
 
-/// What a key says, if it is there: `Some(None)` when it is not, `None` when it is faulty.
-#[allow(clippy::option_option)]
-fn optional<T>(
-    table: &Table<'_>,
-    key: &'static str,
-    read: impl FnOnce(&Node<'_>) -> Option<T>,
-) -> Option<Option<T>> {
-    match table.get(key) {
-        None => Some(None),
-        Some(node) => read(&node).map(Some),
-    }
-}
-
 fn shape(table: &Table<'_>) -> Shape {
     let Some(node) = table.need("form", "\"table\" or \"xml\"") else {
         return Shape::Unknown;
@@ -128,26 +123,30 @@ fn shape(table: &Table<'_>) -> Shape {
         );
         return Shape::Unknown;
     }
-    node.word(&[("table", Shape::Table), ("xml", Shape::Xml)])
+    let depth = |each: &str| each.split('/').filter(|name| !name.is_empty()).count();
+    let each = table.get("each").and_then(|node| node.as_text());
+    let xml = Shape::Xml(each.filter(|each| is_each(each)).map_or(usize::MAX, depth));
+    node.word(&[("table", Shape::Table), ("xml", xml)])
         .unwrap_or(Shape::Unknown)
 }
 
 fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<Form> {
-    for (key, needed) in [
-        ("sheet", Shape::Table),
-        ("header", Shape::Table),
-        ("delimiter", Shape::Table),
-        ("each", Shape::Xml),
+    let of_tables = ("table", "an XML export");
+    let of_xml = ("xml", "a table");
+    for (key, (form, others)) in [
+        ("sheet", of_tables),
+        ("header", of_tables),
+        ("delimiter", of_tables),
+        ("each", of_xml),
     ] {
+        let fits = match shape {
+            Shape::Table => form == "table",
+            Shape::Xml(_) => form == "xml",
+            Shape::Unknown => true,
+        };
         if let Some(node) = table.get(key)
-            && shape != needed
-            && shape != Shape::Unknown
+            && !fits
         {
-            let (form, others) = if needed == Shape::Table {
-                ("table", "an XML export")
-            } else {
-                ("xml", "a table")
-            };
             node.place.fault_hint(
                 format!("`{key}`"),
                 format!("a key of {others}"),
@@ -157,20 +156,16 @@ fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<Form> 
     }
     match shape {
         Shape::Table => {
-            let sheet = table
-                .get("sheet")
-                .map_or(Some(Sheet::First), |node| sheet(&node));
-            let header = table
-                .get("header")
-                .map_or(Some(Header::Row(1)), |node| header(&node));
-            let delimiter = optional(table, "delimiter", |node| delimiter(node, decimal));
+            let sheet = table.or("sheet", Sheet::First, |node| sheet(node));
+            let header = table.or("header", Header::Row(1), |node| header(node));
+            let delimiter = table.optional("delimiter", |node| delimiter(node, decimal));
             Some(Form::Table {
                 sheet: sheet?,
                 header: header?,
                 delimiter: delimiter?,
             })
         }
-        Shape::Xml => {
+        Shape::Xml(_) => {
             let node = table.need(
                 "each",
                 "the path of the element that holds one reading, such as \"/export/run/feature\"",
@@ -260,59 +255,10 @@ fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
         .map(Trial::Counted)
 }
 
-fn taken(node: &Node<'_>, shape: Shape, site: Option<&Site>) -> Option<Taken> {
-    let table = role_table(node)?;
-    let role = role_in(&table, shape);
-    let format = optional(&table, "format", time_format);
-    let own = optional(&table, "zone", zone);
-    table.finish();
-    let zone = own?.or_else(|| site.map(|site| site.zone.clone()));
-    Some(Taken {
-        role: role?,
-        format: format?,
-        zone: zone.and_then(|zone| zone.iana_name().map(str::to_owned)),
-    })
-}
-
-/// A format that tells date, hour and minute apart: a sample written with it reads back.
-fn time_format(node: &Node<'_>) -> Option<String> {
-    let format = node.text()?;
-    let expected = "a format of date and time such as \"%d.%m.%Y %H:%M\"";
-    let sample = jiff::civil::date(2026, 11, 23).at(15, 47, 0, 0);
-    let read = strtime::format(
-        format,
-        &sample.to_zoned_datetime(jiff::tz::TimeZone::UTC).ok()?,
-    )
-    .and_then(|text| {
-        let time = strtime::parse(format, text)?;
-        Ok((time.to_datetime(), time.hour().is_some()))
-    });
-    match read {
-        Err(error) => node.fault_hint(expected, error.to_string()),
-        Ok((Err(error), _)) => node.fault_hint(expected, error.to_string()),
-        Ok((Ok(_), false)) => node.fault_hint(
-            expected,
-            "a date alone does not put the runs of a day in order",
-        ),
-        Ok((Ok(time), true)) if time != sample => {
-            node.fault_hint(
-                expected,
-                format!(
-                    "{} reads back as {}",
-                    sample.strftime("%Y-%m-%d %H:%M"),
-                    time.strftime("%Y-%m-%d %H:%M")
-                ),
-            );
-        }
-        Ok((Ok(_), true)) => return Some(format.to_owned()),
-    }
-    None
-}
-
 fn value(node: &Node<'_>, shape: Shape) -> Option<Value> {
     let table = role_table(node)?;
     let role = role_in(&table, shape);
-    let unit = optional(&table, "unit", |node| unit(node, shape));
+    let unit = table.optional("unit", |node| unit(node, shape));
     table.finish();
     for key in ["path", "constant"] {
         if table.get(key).is_some() {
@@ -332,15 +278,13 @@ fn unit(node: &Node<'_>, shape: Shape) -> Option<Role> {
     if node.is_table() {
         return role(node, shape);
     }
-    Some(Role::plain(restudy_parsers::Cell::Constant(
-        node.name()?.to_owned(),
-    )))
+    Some(Role::plain(Cell::Constant(node.name()?.to_owned())))
 }
 
 fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool) -> Option<Limit> {
     let table = role_table(node)?;
     let role = role_in(&table, shape);
-    let from = optional(&table, "from", |node| node.word(&[("nominal", ())]));
+    let from = table.optional("from", |node| node.word(&[("nominal", ())]));
     table.finish();
     let from = from?;
     if let Some(node) = table.get("from")
@@ -376,7 +320,7 @@ fn named_roles(
             || RESERVED.into_iter().any(is_same)
         {
             node.place.fault(
-                format!("the name `{name}`"),
+                format!("the name `{}`", shortened(name)),
                 "a name that is not a role's own",
             );
             sound = false;
@@ -387,7 +331,7 @@ fn named_roles(
             .any(|other| is_same(other))
         {
             node.place.fault(
-                format!("the name `{name}` again"),
+                format!("the name `{}` again", shortened(name)),
                 "each name once among `factors` and `same`",
             );
             sound = false;

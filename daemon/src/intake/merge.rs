@@ -194,3 +194,57 @@ fn contradiction(known: &PackedReading, other: &PackedReading) -> String {
         known.characteristic, known.value, other.value
     )
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn delivered(export: i64, path: &str, values: &[(&str, f64)]) -> Delivered {
+        let reading = |(name, value): &(&str, f64)| PackedReading {
+            characteristic: (*name).into(),
+            value: *value,
+            unit: None,
+            nominal: None,
+            lower: None,
+            upper: None,
+            origin: "line 2".into(),
+        };
+        Delivered { export, path: path.into(), readings: values.iter().map(reading).collect() }
+    }
+
+    fn counts(merged: &Merged) -> Vec<(usize, usize)> {
+        merged.tallies.iter().map(|t| (t.copies, t.superseded)).collect()
+    }
+
+    #[test]
+    fn equal_values_are_copies_other_values_supersede_further_ones_join() {
+        let merged = tally(
+            &[
+                delivered(1, "a", &[("bore A", 1.0), ("bore B", 2.0)]),
+                delivered(2, "b", &[("Bore  a", 1.0), ("bore B", 2.5), ("bore C", 3.0)]),
+            ],
+            false,
+        );
+        assert_eq!(counts(&merged), [(0, 1), (1, 0)]);
+        let values: Vec<f64> = merged.values.values().map(|r| r.value).collect();
+        assert_eq!(values, [1.0, 2.5, 3.0]);
+        assert!(merged.last_changed && merged.tie.is_none());
+    }
+
+    #[test]
+    fn there_and_back_again_supersedes_twice() {
+        let values = [1.0, 2.0, 1.0];
+        let deliveries: Vec<Delivered> =
+            (1..).zip(values).map(|(export, v)| delivered(export, "a", &[("x", v)])).collect();
+        assert_eq!(counts(&tally(&deliveries, true)), [(0, 1), (0, 1), (0, 0)]);
+    }
+
+    #[test]
+    fn a_counted_run_from_another_file_with_another_value_is_a_tie() {
+        let other = [delivered(1, "a", &[("x", 1.0)]), delivered(2, "b", &[("x", 2.0)])];
+        assert!(tally(&other, true).tie.is_some());
+        assert!(tally(&other, false).tie.is_none());
+        let rewritten = [delivered(1, "a", &[("x", 1.0)]), delivered(2, "a", &[("x", 2.0)])];
+        assert!(tally(&rewritten, true).tie.is_none());
+    }
+}

@@ -80,16 +80,16 @@ pub enum Tried {
 }
 
 impl Read<'_> {
-    /// Notices that are due, oldest first.
+    /// A channel's notices that are due, oldest first.
     ///
     /// # Errors
     /// The database's refusal.
-    pub fn owed_now(&self, now: i64, at_most: usize) -> Result<Vec<Owed>, LedgerError> {
+    pub fn owed_now(&self, channel: &str, now: i64, at_most: usize) -> Result<Vec<Owed>, LedgerError> {
         let mut statement = self.connection.prepare_cached(
             "SELECT id, channel, recipient, key, subject, bytes, attempts FROM outbox
-             WHERE state = 'owed' AND next_try <= ?1 ORDER BY id LIMIT ?2",
+             WHERE state = 'owed' AND channel = ?1 AND next_try <= ?2 ORDER BY id LIMIT ?3",
         )?;
-        let rows = statement.query_map(params![now, at_most as i64], |r| {
+        let rows = statement.query_map(params![channel, now, at_most as i64], |r| {
             Ok(Owed {
                 id: r.get(0)?,
                 channel: r.get(1)?,
@@ -103,15 +103,15 @@ impl Read<'_> {
         Ok(rows.collect::<Result<_, _>>()?)
     }
 
-    /// When the next notice is due, ms since 1970.
+    /// When a channel's next notice is due, ms since 1970.
     ///
     /// # Errors
     /// The database's refusal.
-    pub fn next_due(&self) -> Result<Option<i64>, LedgerError> {
+    pub fn next_due(&self, channel: &str) -> Result<Option<i64>, LedgerError> {
         Ok(self
             .connection
-            .prepare_cached("SELECT min(next_try) FROM outbox WHERE state = 'owed'")?
-            .query_row([], |r| r.get(0))?)
+            .prepare_cached("SELECT min(next_try) FROM outbox WHERE state = 'owed' AND channel = ?1")?
+            .query_row([channel], |r| r.get(0))?)
     }
 
     /// Notices owed or refused, oldest first.

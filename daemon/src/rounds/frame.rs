@@ -3,12 +3,9 @@
 use std::collections::BTreeSet;
 
 use restudy_config::{FactorLevels, Plan};
-use restudy_parsers::fold;
+use restudy_parsers::{fold, nearest};
 
 use crate::ledger::RunFacts;
-
-/// Names further apart than this are not offered as a hint.
-const NEAR: f64 = 0.6;
 
 /// The factors of a plan in the order part, appraiser, further factors.
 #[derive(Debug, Clone)]
@@ -106,28 +103,23 @@ impl FrameFactor {
             return Ok(label.trim().to_owned());
         };
         let folded = fold(label);
-        let spellings = |level: &restudy_config::Label| {
-            std::iter::once(level.name.clone()).chain(level.spellings.clone()).collect::<Vec<_>>()
-        };
-        if let Some(level) =
-            levels.iter().find(|level| spellings(level).iter().any(|s| fold(s) == folded))
-        {
-            return Ok(level.name.clone());
+        let known = levels.iter().flat_map(|l| {
+            std::iter::once(&l.name).chain(&l.spellings).map(move |s| (s.as_str(), l.name.as_str()))
+        });
+        if let Some((_, name)) = known.clone().find(|(spelling, _)| fold(spelling) == folded) {
+            return Ok(name.to_owned());
         }
-        let nearest = levels
-            .iter()
-            .flat_map(|l| spellings(l).into_iter().map(move |s| (l, s)))
-            .map(|(l, s)| (strsim::normalized_damerau_levenshtein(&fold(&s), &folded), l))
-            .filter(|(likeness, _)| *likeness >= NEAR || folded.len() <= 3 && *likeness >= 0.5)
-            .max_by(|a, b| a.0.total_cmp(&b.0));
+        let likely = nearest(label, known.clone().map(|(spelling, _)| spelling));
+        let nearest =
+            likely.and_then(|s| known.clone().find(|(spelling, _)| *spelling == s)).map(|(_, name)| name);
         let names: Vec<&str> = levels.iter().map(|l| l.name.as_str()).collect();
-        let known = match names.len() {
+        let list = match names.len() {
             0..=12 => names.join(", "),
             n => format!("{} … {} ({n} names)", names[0], names[n - 1]),
         };
-        let near = nearest.map(|(_, l)| format!("; perhaps {}?", l.name)).unwrap_or_default();
+        let near = nearest.map(|name| format!("; perhaps {name}?")).unwrap_or_default();
         Err(Unknown {
-            reason: format!("{} `{label}` is not in the plan ({known}){near}", self.word),
+            reason: format!("{} `{label}` is not in the plan ({list}){near}", self.word),
         })
     }
 }

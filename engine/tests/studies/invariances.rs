@@ -1,42 +1,13 @@
 //! What must not change a study, and what must hold within one.
 
-mod invented;
-
-use invented::{Readings, crossed, three_factors};
 use restudy_engine::quantile::chi_square_above;
-use restudy_engine::{Interaction, Judge, Limits, Settings, Study, Tolerance, analyse};
+use restudy_engine::{Interaction, Judge, Limits, Settings, Spread, Study};
 
-const TOLERANCE: Tolerance = Tolerance {
-    lower: Some(-30.0),
-    upper: Some(30.0),
-    one_sided: None,
-};
-
-fn settings() -> Settings {
-    let limits = Limits {
-        watch: 0.1,
-        act: 0.3,
-        back_below: 0.85,
-    };
-    Settings {
-        confidence: 0.95,
-        spread_sds: 6.0,
-        interaction: Interaction::Keep,
-        process: None,
-        limits: Some(limits),
-        judge: Judge::Estimate,
-    }
-}
+use crate::invented::{Readings, crossed, three_factors};
+use crate::sound::{TWO_SIDED, settings, study_with};
 
 fn study(readings: &Readings, settings: &Settings) -> Study {
-    analyse(
-        &readings.design,
-        &readings.cells,
-        &readings.values,
-        &TOLERANCE,
-        settings,
-    )
-    .unwrap()
+    study_with(readings, &TWO_SIDED, settings)
 }
 
 /// All numbers of a study that carry a unit to the power 0, 1 or 2, each with its power.
@@ -178,7 +149,7 @@ fn variances_of_gauge_and_total_are_sums() {
             },
         )
         .figures;
-        let square = |s: &restudy_engine::Spread| s.sd.estimate.unwrap().powi(2);
+        let square = |s: &Spread| s.sd.estimate.unwrap().powi(2);
         let (ev, av, grr, pv, tv) = (
             square(&f.repeatability),
             square(&f.reproducibility),

@@ -1,5 +1,4 @@
 //! Invented readings from a seed.
-#![allow(dead_code, reason = "every test binary uses some of it")]
 
 use restudy_engine::{Design, Factor};
 
@@ -132,6 +131,15 @@ impl Readings {
         };
         Readings {
             cells: self.cells.iter().map(renamed).collect(),
+            ..self.clone()
+        }
+    }
+
+    /// Readings that follow from the levels of their cell alone.
+    pub(crate) fn by_levels(&self, f: impl Fn(&[usize]) -> f64) -> Readings {
+        let value = |&cell: &usize| f(&self.design.levels_of(cell));
+        Readings {
+            values: self.cells.iter().map(value).collect(),
             ..self.clone()
         }
     }

@@ -1,0 +1,152 @@
+//! What the gauge's spread would be without one of its causes.
+//!
+//! Model: the gauge variance is a sum of components cut at zero; leaving one out, or halving the repeats' one for
+//! the mean of two readings, gives what would be left. Each rung takes away one thing only.
+//!
+//! Not here: limits of what would be left, except where the record has them: for the gauge as it is, and where
+//! only the repeats remain.
+
+use restudy_engine::Figure;
+
+use super::spread::Spread;
+use super::subject::{Cause, Subject};
+use super::unit::Unit;
+use super::words::{list, percent};
+
+/// The least part of the spread that a step must take away to be worth advice.
+const WORTH: f64 = 0.01;
+/// Standard deviation of the mean of two readings over that of one.
+const OF_TWO: f64 = std::f64::consts::FRAC_1_SQRT_2;
+/// With more others than this, they are not listed by name.
+const NAMED_MAX: usize = 3;
+
+/// One rung: an sd that is, or would be.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) struct Rung {
+    pub(super) change: Change,
+    /// In reading units.
+    pub(super) sd: f64,
+    /// Two-sided limits.
+    pub(super) lower: Option<f64>,
+    pub(super) upper: Option<f64>,
+    /// Whether the data set no upper limit.
+    pub(super) open: bool,
+}
+
+/// What is changed about the gauge.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) enum Change {
+    /// Nothing.
+    AsItIs,
+    /// One component left out; its term in the plant's words.
+    Without(Cause, String),
+    /// Each part loaded and measured twice, the mean counting.
+    Twice,
+}
+
+/// The gauge as it is, and each change by itself.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) struct Ladder {
+    pub(super) now: Rung,
+    pub(super) steps: Vec<Rung>,
+}
+
+impl Change {
+    /// What stands beside the rung.
+    pub(super) fn label(&self) -> String {
+        match self {
+            Change::AsItIs => "as it is now".to_owned(),
+            Change::Without(Cause::Interaction, term) => format!("without {term} interaction"),
+            Change::Without(_, term) => format!("without {term} differences"),
+            Change::Twice => "loaded and measured twice".to_owned(),
+        }
+    }
+}
+
+impl Ladder {
+    /// `None` when the gauge's spread is not known.
+    pub(super) fn of(subject: Subject<'_>) -> Option<Ladder> {
+        let figures = &subject.record.study.figures;
+        let now = Rung::with_limits(Change::AsItIs, &figures.gauge.sd, 1.0)?;
+        let parts: Vec<(Cause, f64, String)> = subject
+            .causes()
+            .map(|(cause, c)| (cause, c.variance.estimate.unwrap_or(0.0), subject.term(&c.of, &c.within)))
+            .collect();
+        let steps = parts.iter().enumerate().filter_map(|(i, (cause, variance, term))| {
+            let (change, kept) = match cause {
+                Cause::Repeats => (Change::Twice, OF_TWO * OF_TWO * variance),
+                _ => (Change::Without(*cause, term.clone()), 0.0),
+            };
+            let others = parts.iter().enumerate().filter(|&(j, _)| j != i).map(|(_, part)| part);
+            if others.clone().all(|(cause, ..)| *cause == Cause::Repeats) {
+                let times = if *cause == Cause::Repeats { OF_TWO } else { 1.0 };
+                return Rung::with_limits(change, &figures.repeatability.sd, times);
+            }
+            let left = kept + others.map(|(_, variance, _)| variance).sum::<f64>();
+            Some(Rung { change, sd: left.sqrt(), lower: None, upper: None, open: false })
+        });
+        Some(Ladder { steps: steps.collect(), now })
+    }
+
+    /// The longest step down; `None` when no change by itself brings the spread down.
+    pub(super) fn longest(&self) -> Option<&Rung> {
+        let least = self.steps.iter().reduce(|a, b| if b.sd < a.sd { b } else { a })?;
+        (least.sd < (1.0 - WORTH) * self.now.sd).then_some(least)
+    }
+
+    /// The longest step as one sentence of advice.
+    pub(super) fn advice(&self, subject: Subject<'_>, spread: &Spread) -> String {
+        let unit = subject.unit();
+        let amount = |sd: f64| amount(sd, subject.share_per_sd(), &unit);
+        let Some(step) = self.longest() else {
+            return "None of these changes by itself brings it down.".to_owned();
+        };
+        let from_to = format!("{} instead of {}", amount(step.sd), amount(self.now.sd));
+        match &step.change {
+            Change::AsItIs | Change::Twice => format!(
+                "The longest step down is to load and measure each part twice and take the mean, {from_to}: \
+                 repeatability weighs most."
+            ),
+            Change::Without(Cause::Interaction, term) => format!(
+                "The longest step down is without the {term} interaction, {from_to}: the differences change from part to part; \
+                 find the parts on which they do."
+            ),
+            Change::Without(_, term) => format!(
+                "The longest step down is without the {term} differences, {from_to}: {}.",
+                who(term, subject, spread, &unit).unwrap_or_else(|| "find out what differs".to_owned())
+            ),
+        }
+    }
+}
+
+impl Rung {
+    fn with_limits(change: Change, sd: &Figure, times: f64) -> Option<Rung> {
+        let scaled = |x: Option<f64>| x.map(|x| times * x);
+        let estimate = scaled(sd.estimate)?;
+        Some(Rung { change, sd: estimate, lower: scaled(sd.lower), upper: scaled(sd.upper), open: sd.open.is_some() })
+    }
+}
+
+/// An sd as a share of tolerance, or in its own unit where there is none.
+pub(super) fn amount(sd: f64, share_per_sd: Option<f64>, unit: &Unit) -> String {
+    match share_per_sd {
+        Some(per_sd) => percent(per_sd * sd),
+        None => unit.three_digits(sd),
+    }
+}
+
+/// Who stands apart, by how much, and on how many parts: only where the pictures tell that factor's levels apart.
+fn who(term: &str, subject: Subject<'_>, spread: &Spread, unit: &Unit) -> Option<String> {
+    let (_, factor) = subject.readers().filter(|(_, factor)| factor.word == term)?;
+    let found = spread.outstanding()?;
+    let others: Vec<String> = factor.levels.iter().filter(|name| **name != found.name).cloned().collect();
+    let others = if others.len() > NAMED_MAX { "the others".to_owned() } else { list(&others) };
+    Some(format!(
+        "{} reads {} {} than {others}, on {} of {} parts",
+        found.name,
+        unit.three_digits(found.offset.abs()),
+        if found.offset > 0.0 { "higher" } else { "lower" },
+        found.alike,
+        found.compared
+    ))
+}

@@ -1,0 +1,133 @@
+//! What a study says, in sentences: the standing, how sure that is, and what was before.
+
+use restudy_engine::{Limits, Standing};
+
+use crate::analyse::study::Outcome;
+use crate::ledger::Earlier;
+use crate::record::Record;
+
+use super::words::{capital, chance, limit, list, percent, percent_beside};
+
+/// An upper limit above this share of the tolerance tells nobody anything.
+const UPPER_USEFUL: f64 = 1.0;
+
+/// The whole round in one sentence; the outcomes come worst first.
+pub(super) fn round(ranked: &[&Outcome]) -> String {
+    let judged = ranked.iter().find_map(|o| Some((*o, o.study.as_ref().ok()?)).filter(|(o, _)| o.standing() != Standing::NotJudged));
+    let Some((worst, record)) = judged else {
+        return match ranked {
+            [] => "Nothing was measured.".to_owned(),
+            [only] => format!("{} could not be judged.", only.characteristic),
+            all => format!("None of the {} characteristics could be judged.", all.len()),
+        };
+    };
+    let share = share_words(record).unwrap_or_else(|| "an unknown part".to_owned());
+    let sure = sure(record).map(|sure| format!(", with {sure}")).unwrap_or_default();
+    let others = if ranked.len() > 1 { format!("; {}", counts(ranked)) } else { String::new() };
+    let name = &worst.characteristic;
+    let limits = record.standing.limits;
+    match (worst.standing(), limits) {
+        (standing @ (Standing::Act | Standing::Watch), Some(limits)) => {
+            format!("The gauge takes {share} of the tolerance of {name}, {}{sure}{others}.", place(record, standing, &limits))
+        }
+        _ if ranked.len() == 1 => format!("The gauge takes {share} of the tolerance of {name}, under its limits{sure}."),
+        _ => format!("The gauge takes the largest share of the tolerance of {name}: {share}, under its limits{sure}{others}."),
+    }
+}
+
+/// One characteristic in one or two sentences.
+pub(super) fn characteristic(record: &Record, earlier: Option<&Earlier>) -> String {
+    let before = earlier.map(|e| format!(" {}", before(e))).unwrap_or_else(|| " This is its first study.".to_owned());
+    let (Some(share), Some(limits)) = (share_words(record), record.standing.limits) else {
+        return format!("Not judged: {}.{before}", record.standing.why);
+    };
+    let place = match record.standing.now {
+        Standing::NotJudged => return format!("Not judged: {}.{before}", record.standing.why),
+        standing => place(record, standing, &limits),
+    };
+    let sure = sure(record).map(|sure| format!(" How sure: {sure}.")).unwrap_or_default();
+    format!("The gauge takes {share} of the tolerance, {place}.{sure}{}{before}", upper(record))
+}
+
+/// The study of the round before: its share and standing.
+pub(super) fn before(earlier: &Earlier) -> String {
+    let standing = earlier.study.standing.as_str();
+    match earlier.study.share {
+        Some(share) => format!("In round {} it was {}, “{standing}”.", earlier.number, percent(share)),
+        None => format!("In round {} it was “{standing}”.", earlier.number),
+    }
+}
+
+/// How sure the standing is; absent without a chance.
+pub(super) fn sure(record: &Record) -> Option<String> {
+    let limits = record.standing.limits?;
+    let above = record.study.chance_above;
+    match record.standing.now {
+        Standing::Act => Some(format!("{} confidence that the true share is above {}", chance(above.act?), limit(limits.act))),
+        Standing::Watch => Some(format!(
+            "{} confidence that the true share is above {} and {} that it is above {}",
+            chance(above.watch?),
+            limit(limits.watch),
+            chance(above.act?),
+            limit(limits.act)
+        )),
+        Standing::Under => Some(format!(
+            "{} confidence that the true share is below {}",
+            chance(1.0 - above.watch?),
+            limit(limits.watch)
+        )),
+        Standing::NotJudged => None,
+    }
+}
+
+/// The share with as many digits as show on which side of its limits it lies.
+pub(super) fn share_words(record: &Record) -> Option<String> {
+    let share = record.study.figures.gauge.share_of_tolerance.estimate?;
+    let limits = record.standing.limits.map(|l| vec![l.watch, l.act]).unwrap_or_default();
+    Some(percent_beside(share, &limits))
+}
+
+/// `1 stands at act, 3 under`.
+fn counts(ranked: &[&Outcome]) -> String {
+    let standings = [Standing::Act, Standing::Watch, Standing::Under, Standing::NotJudged];
+    let of = |standing: Standing| ranked.iter().filter(|o| o.standing() == standing).count();
+    let counts: Vec<String> = standings
+        .into_iter()
+        .filter(|s| of(*s) > 0)
+        .map(|s| match s {
+            Standing::Act => format!("{} at “act”", of(s)),
+            Standing::Watch => format!("{} at “watch”", of(s)),
+            Standing::Under => format!("{} under the limits", of(s)),
+            Standing::NotJudged => format!("{} not judged", of(s)),
+        })
+        .collect();
+    format!("of {} characteristics {}", ranked.len(), list(&counts))
+}
+
+/// Where the judged figure lies; the record's own reason where the plain one does not tell it.
+fn place(record: &Record, standing: Standing, limits: &Limits) -> String {
+    let share = record.study.figures.gauge.share_of_tolerance.estimate.unwrap_or(0.0);
+    let by_share = record.standing.judged_by == Some("estimate");
+    match standing {
+        Standing::Act if by_share && share > limits.act => format!("above the act limit of {}", limit(limits.act)),
+        Standing::Watch if by_share && share > limits.watch && share <= limits.act => {
+            format!("above the watch limit of {}", limit(limits.watch))
+        }
+        Standing::Under if by_share => format!("not above the watch limit of {}", limit(limits.watch)),
+        other => format!("which stands at “{}” because {}", other.as_str(), record.standing.why),
+    }
+}
+
+/// Whether the data set a useful upper end; empty while they do.
+fn upper(record: &Record) -> String {
+    let share = &record.study.figures.gauge.share_of_tolerance;
+    let useless = share.open.is_some() || share.upper.is_some_and(|u| u > UPPER_USEFUL && share.estimate.is_some_and(|e| e < u));
+    if !useless {
+        return String::new();
+    }
+    let few = record.study.design.factors.iter().filter(|f| f.name != restudy_engine::PART).map(|f| f.levels).min();
+    match few {
+        Some(levels) if levels < 6 => format!(" {}.", capital("so few levels beside the parts give no useful upper end")),
+        _ => " The data give no useful upper end.".to_owned(),
+    }
+}

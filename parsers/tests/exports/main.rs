@@ -1,0 +1,14 @@
+//! Whole exports in, runs and what was set aside out.
+
+#[cfg(test)]
+mod damage;
+#[cfg(test)]
+mod fixtures;
+#[cfg(test)]
+mod refusals;
+#[cfg(test)]
+mod runs;
+#[cfg(test)]
+mod shared;
+#[cfg(test)]
+mod workbooks;
