@@ -10,8 +10,8 @@ use std::ops::Range;
 
 use toml::de::{DeTable, DeValue};
 
-use restudy_parsers::{fold, nearest};
 use crate::source::{Place, shortened};
+use restudy_parsers::{fold, nearest};
 
 /// One table of the document.
 #[derive(Debug)]

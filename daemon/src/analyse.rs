@@ -52,7 +52,10 @@ impl Analyse {
             let owed = self.ledger.lock().read().rounds_to_analyse(&plan.name)?;
             for round in owed {
                 let worked = Worked::load(&self.ledger, &config, plan, round)?;
-                recorded |= self.ledger.lock().write(|w| record(w, &config, plan, &worked, now))?;
+                recorded |= self
+                    .ledger
+                    .lock()
+                    .write(|w| record(w, &config, plan, &worked, now))?;
                 say(&worked);
             }
         }
@@ -86,7 +89,11 @@ impl Worked {
     ) -> Self {
         let before = |label: &str| earlier.get(label).map(|e| e.study.standing);
         let outcomes = work_out(&config.site.name, plan, &evidence, &before);
-        Self { evidence, outcomes, earlier }
+        Self {
+            evidence,
+            outcomes,
+            earlier,
+        }
     }
 }
 
@@ -133,7 +140,10 @@ fn record(
     for notice in notice::owed(w.read(), config, plan, worked, now)? {
         w.owe(&notice, now.utc)?;
     }
-    w.put_round(&RoundRow { analysed: round.revision, ..round.clone() })?;
+    w.put_round(&RoundRow {
+        analysed: round.revision,
+        ..round.clone()
+    })?;
     Ok(true)
 }
 
@@ -155,7 +165,12 @@ fn say(worked: &Worked) {
     for outcome in &worked.outcomes {
         if let Err(fault) = &outcome.study {
             let characteristic = outcome.characteristic.as_str();
-            tracing::error!(plan = round.plan, round = round.number, characteristic, "not judged: {fault}");
+            tracing::error!(
+                plan = round.plan,
+                round = round.number,
+                characteristic,
+                "not judged: {fault}"
+            );
         }
     }
     let studies = worked.outcomes.len();

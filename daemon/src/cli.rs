@@ -31,7 +31,10 @@ enum End {
 #[derive(Debug)]
 enum Failure {
     /// Usage or configuration: exit code 2.
-    Usage { sentence: String, hint: Option<String> },
+    Usage {
+        sentence: String,
+        hint: Option<String>,
+    },
     /// The machine: exit code 3.
     Machine(String),
 }
@@ -40,7 +43,10 @@ type Answer = Result<End, Failure>;
 
 impl Failure {
     fn usage(sentence: impl Into<String>) -> Self {
-        Self::Usage { sentence: sentence.into(), hint: None }
+        Self::Usage {
+            sentence: sentence.into(),
+            hint: None,
+        }
     }
 
     fn machine(error: &dyn std::error::Error) -> Self {

@@ -56,7 +56,10 @@ pub const LIMITS: Limits = Limits {
     goodbye: Duration::from_secs(2),
     stop: Duration::from_secs(3),
     after_fault: Duration::from_secs(5),
-    backoff: Backoff { first: Duration::from_secs(60), longest: Duration::from_secs(30 * 60) },
+    backoff: Backoff {
+        first: Duration::from_secs(60),
+        longest: Duration::from_secs(30 * 60),
+    },
 };
 
 /// Delivers until `stop`: on every `wake`, and when the next try is due.
@@ -65,8 +68,20 @@ pub async fn run(ledger: SharedLedger, config: Arc<Config>, wake: Arc<Notify>, s
 }
 
 /// [`run`] with other time limits.
-pub async fn run_within(ledger: SharedLedger, config: Arc<Config>, wake: Arc<Notify>, stop: Stop, limits: Limits) {
-    let mut delivery = Delivery { ledger, config, limits, stop: stop.clone(), server: Server::default() };
+pub async fn run_within(
+    ledger: SharedLedger,
+    config: Arc<Config>,
+    wake: Arc<Notify>,
+    stop: Stop,
+    limits: Limits,
+) {
+    let mut delivery = Delivery {
+        ledger,
+        config,
+        limits,
+        stop: stop.clone(),
+        server: Server::default(),
+    };
     delivery.say_without_server().await;
     while !stop.is_set() {
         let wait = tokio::select! {
@@ -128,7 +143,9 @@ impl Delivery {
     async fn mails(&mut self, mail: &Mail) -> Result<Option<Duration>, LedgerError> {
         let mut session = None;
         'pass: while !self.pauses() {
-            let Some(owed) = self.next("mail", self.horizon().await?).await? else { break };
+            let Some(owed) = self.next("mail", self.horizon().await?).await? else {
+                break;
+            };
             for notice in owed {
                 if self.pauses() {
                     break 'pass;
@@ -141,27 +158,46 @@ impl Delivery {
             // The mails are recorded; a server that does not answer now is left alone.
             let _ = timeout(self.limits.goodbye, session.close()).await;
         }
-        let Some(due) = self.read(|read| read.next_due("mail")).await? else { return Ok(None) };
-        let due = u64::try_from(due - Now::read().utc).map_or(Duration::ZERO, Duration::from_millis);
+        let Some(due) = self.read(|read| read.next_due("mail")).await? else {
+            return Ok(None);
+        };
+        let due =
+            u64::try_from(due - Now::read().utc).map_or(Duration::ZERO, Duration::from_millis);
         Ok(Some(due.max(self.closed_for())))
     }
 
     /// One mail; a session that failed is not used again.
-    async fn one(&self, mail: &Mail, session: &mut Option<Session>, notice: &Owed) -> Result<(), Failed> {
+    async fn one(
+        &self,
+        mail: &Mail,
+        session: &mut Option<Session>,
+        notice: &Owed,
+    ) -> Result<(), Failed> {
         let from = address::sender(&mail.from)
-            .map_err(|sentence| Failed::Down(Down { sentence, needs_person: true }))?
+            .map_err(|sentence| {
+                Failed::Down(Down {
+                    sentence,
+                    needs_person: true,
+                })
+            })?
             .email;
         let to = address::address(&notice.recipient).map_err(Failed::Refused)?;
         let mut open = match session.take() {
             Some(open) => open,
-            None => within(self.limits.send, Session::open(mail)).await?.map_err(Failed::Down)?,
+            None => within(self.limits.send, Session::open(mail))
+                .await?
+                .map_err(Failed::Down)?,
         };
         within(self.limits.send, open.send(&from, &to, &notice.bytes)).await??;
         *session = Some(open);
         Ok(())
     }
 
-    async fn settle(&mut self, notice: &Owed, outcome: Result<(), Failed>) -> Result<(), LedgerError> {
+    async fn settle(
+        &mut self,
+        notice: &Owed,
+        outcome: Result<(), Failed>,
+    ) -> Result<(), LedgerError> {
         let (recipient, subject) = (notice.recipient.as_str(), notice.subject.as_str());
         let tried = match outcome {
             Ok(()) => {
@@ -170,14 +206,25 @@ impl Delivery {
                 Tried::Delivered
             }
             Err(Failed::Refused(why)) => {
-                tracing::error!(recipient, subject, "the mail server refuses a notice for good: {why}");
+                tracing::error!(
+                    recipient,
+                    subject,
+                    "the mail server refuses a notice for good: {why}"
+                );
                 Tried::Refused(why)
             }
             Err(Failed::Later(why)) => {
-                tracing::warn!(recipient, subject, "notice not taken yet, it stays owed: {why}");
+                tracing::warn!(
+                    recipient,
+                    subject,
+                    "notice not taken yet, it stays owed: {why}"
+                );
                 self.later(notice, notice.attempts + 1, why)
             }
-            Err(Failed::Down(Down { sentence, needs_person })) => {
+            Err(Failed::Down(Down {
+                sentence,
+                needs_person,
+            })) => {
                 self.server.failures += 1;
                 let closed = self.limits.backoff.wait(self.server.failures);
                 self.server.closed_until = Some(Instant::now() + closed);
@@ -215,17 +262,26 @@ impl Delivery {
         let now = Now::read().utc;
         let longest = i64::try_from(self.limits.backoff.longest.as_millis()).unwrap_or(i64::MAX);
         let next = self.read(|read| read.next_due("mail")).await?;
-        Ok(next.filter(|next| *next > now.saturating_add(longest.saturating_mul(2))).unwrap_or(now))
+        Ok(next
+            .filter(|next| *next > now.saturating_add(longest.saturating_mul(2)))
+            .unwrap_or(now))
     }
 
-    async fn next(&self, channel: &'static str, until: i64) -> Result<Option<Vec<Owed>>, LedgerError> {
-        let owed = self.read(move |read| read.owed_now(channel, until, BATCH)).await?;
+    async fn next(
+        &self,
+        channel: &'static str,
+        until: i64,
+    ) -> Result<Option<Vec<Owed>>, LedgerError> {
+        let owed = self
+            .read(move |read| read.owed_now(channel, until, BATCH))
+            .await?;
         Ok(Some(owed).filter(|owed| !owed.is_empty()))
     }
 
     async fn tried(&self, id: i64, outcome: Tried) -> Result<(), LedgerError> {
         let now = Now::read().utc;
-        self.apart(move |ledger| ledger.lock().write(|w| w.tried(id, &outcome, now))).await
+        self.apart(move |ledger| ledger.lock().write(|w| w.tried(id, &outcome, now)))
+            .await
     }
 
     async fn read<T: Send + 'static>(
@@ -258,13 +314,23 @@ impl Delivery {
 /// A step with our own time limit: the server's silence must not be ours.
 async fn within<T>(limit: Duration, step: impl Future<Output = T>) -> Result<T, Failed> {
     timeout(limit, step).await.map_err(|_| {
-        let sentence = format!("the mail server did not answer within {} s", limit.as_secs_f64());
-        Failed::Down(Down { sentence, needs_person: false })
+        let sentence = format!(
+            "the mail server did not answer within {} s",
+            limit.as_secs_f64()
+        );
+        Failed::Down(Down {
+            sentence,
+            needs_person: false,
+        })
     })
 }
 
 /// Foreign text for a log line or a table: one line, without control characters, not too long.
 fn one_line(text: &str) -> String {
-    let clean: String = text.chars().map(|c| if c.is_control() { ' ' } else { c }).take(WORDS_MAX).collect();
+    let clean: String = text
+        .chars()
+        .map(|c| if c.is_control() { ' ' } else { c })
+        .take(WORDS_MAX)
+        .collect();
     clean.split_whitespace().collect::<Vec<_>>().join(" ")
 }

@@ -109,16 +109,28 @@ impl Evidence {
         let mut runs = Vec::new();
         let mut features: BTreeMap<String, Feature> = BTreeMap::new();
         for (row, names, slot) in &seated {
-            let Some(levels) = levels(&factors, names) else { continue };
-            let cell = levels.iter().zip(&factors).fold(0, |c, (l, f)| c * f.levels.len() + l);
+            let Some(levels) = levels(&factors, names) else {
+                continue;
+            };
+            let cell = levels
+                .iter()
+                .zip(&factors)
+                .fold(0, |c, (l, f)| c * f.levels.len() + l);
             let counted = row.facts.trial.is_none() && row.facts.taken.is_some();
             let merged = tally(&read.deliveries(row.id)?, counted);
             gather(&mut features, &merged, cell, runs.len());
-            runs.push(Run { levels, cell, slot: *slot, taken: row.facts.taken });
+            runs.push(Run {
+                levels,
+                cell,
+                slot: *slot,
+                taken: row.facts.taken,
+            });
         }
         for row in rows.iter().filter(|r| r.place.status != RunStatus::Used) {
             for name in &row.holds {
-                let Some(feature) = features.get_mut(name) else { continue };
+                let Some(feature) = features.get_mut(name) else {
+                    continue;
+                };
                 let count = match row.place.status {
                     RunStatus::Surplus => &mut feature.counts.surplus,
                     RunStatus::Late => &mut feature.counts.late,
@@ -131,11 +143,14 @@ impl Evidence {
         let mut features: Vec<Feature> = features.into_values().collect();
         features.sort_by(|a, b| natural::compare(&a.label, &b.label));
         let stamps = || runs.iter().filter_map(|r: &Run| r.taken);
-        let measured = stamps().min().zip(stamps().max()).map(|(first, last)| Measured { first, last });
+        let measured = stamps()
+            .min()
+            .zip(stamps().max())
+            .map(|(first, last)| Measured { first, last });
         let mut not_used: Vec<String> = rows
             .iter()
             .filter(|r| r.place.status != RunStatus::Used)
-            .map(|r| why_not(r))
+            .map(why_not)
             .collect();
         not_used.extend(
             read.set_aside_between(&round.plan, round.opened, round.closed)?
@@ -148,7 +163,10 @@ impl Evidence {
             source: read
                 .sources(round.id)?
                 .into_iter()
-                .map(|(export, digest)| Source { export, sha256: hex(&digest) })
+                .map(|(export, digest)| Source {
+                    export,
+                    sha256: hex(&digest),
+                })
                 .collect(),
             trials: frame.trials,
             round,
@@ -163,13 +181,20 @@ impl Evidence {
     /// The factor called `appraiser`, when the plan has one with two levels or more.
     #[must_use]
     pub fn appraiser(&self) -> Option<(usize, &Factor)> {
-        self.factors.iter().enumerate().find(|(_, f)| f.name == "appraiser" && f.levels.len() > 1)
+        self.factors
+            .iter()
+            .enumerate()
+            .find(|(_, f)| f.name == "appraiser" && f.levels.len() > 1)
     }
 
     /// Runs that the plan wants.
     #[must_use]
     pub fn planned_runs(&self) -> usize {
-        self.factors.iter().map(|f| f.levels.len()).product::<usize>() * self.trials
+        self.factors
+            .iter()
+            .map(|f| f.levels.len())
+            .product::<usize>()
+            * self.trials
     }
 }
 
@@ -184,14 +209,19 @@ fn factors(frame: &Frame, seated: &[(&RunRow, Vec<String>, usize)]) -> Vec<Facto
                 FactorLevels::Count(_) => {
                     let mut seen = BTreeMap::new();
                     for (_, names, _) in seated {
-                        seen.entry(fold(&names[f])).or_insert_with(|| names[f].clone());
+                        seen.entry(fold(&names[f]))
+                            .or_insert_with(|| names[f].clone());
                     }
                     let mut names: Vec<String> = seen.into_values().collect();
                     names.sort_by(|a, b| natural::compare(a, b));
                     names
                 }
             };
-            Factor { name: factor.name.clone(), word: factor.word.clone(), levels }
+            Factor {
+                name: factor.name.clone(),
+                word: factor.word.clone(),
+                levels,
+            }
         })
         .collect()
 }
@@ -225,7 +255,11 @@ fn gather(features: &mut BTreeMap<String, Feature>, merged: &Merged, cell: usize
         if feature.unit != reading.unit {
             let unit = |u: &Option<String>| u.clone().unwrap_or_else(|| "no unit".into());
             feature.unit_differs.get_or_insert_with(|| {
-                format!("its readings come in {} and in {}", unit(&feature.unit), unit(&reading.unit))
+                format!(
+                    "its readings come in {} and in {}",
+                    unit(&feature.unit),
+                    unit(&reading.unit)
+                )
             });
         }
         let stated = |f: &Feature| (f.nominal, f.lower, f.upper);
@@ -252,7 +286,12 @@ fn gather(features: &mut BTreeMap<String, Feature>, merged: &Merged, cell: usize
 
 fn limits(nominal: Option<f64>, lower: Option<f64>, upper: Option<f64>) -> String {
     let text = |x: Option<f64>| x.map_or("none".into(), |x| x.to_string());
-    format!("nominal {}, {} to {}", text(nominal), text(lower), text(upper))
+    format!(
+        "nominal {}, {} to {}",
+        text(nominal),
+        text(lower),
+        text(upper)
+    )
 }
 
 fn why_not(row: &RunRow) -> String {
@@ -260,9 +299,17 @@ fn why_not(row: &RunRow) -> String {
         .chain(row.facts.appraiser.as_deref())
         .chain(row.facts.factors.values().map(String::as_str))
         .collect();
-    let taken = row.facts.taken.map(|t| format!(" of {}", t.strftime("%Y-%m-%d %H:%M"))).unwrap_or_default();
+    let taken = row
+        .facts
+        .taken
+        .map(|t| format!(" of {}", t.strftime("%Y-%m-%d %H:%M")))
+        .unwrap_or_default();
     let reason = row.place.reason.as_deref().unwrap_or("not used");
-    format!("{}{taken}: {}: {reason}", who.join(" "), row.place.status.as_str())
+    format!(
+        "{}{taken}: {}: {reason}",
+        who.join(" "),
+        row.place.status.as_str()
+    )
 }
 
 fn same(seated: &[(&RunRow, Vec<String>, usize)]) -> BTreeMap<String, Vec<String>> {
@@ -270,7 +317,10 @@ fn same(seated: &[(&RunRow, Vec<String>, usize)]) -> BTreeMap<String, Vec<String
     names
         .into_iter()
         .map(|name| {
-            let values = seated.iter().filter_map(|s| s.0.facts.same.get(name)).map(String::as_str);
+            let values = seated
+                .iter()
+                .filter_map(|s| s.0.facts.same.get(name))
+                .map(String::as_str);
             (name.clone(), distinct(values))
         })
         .collect()
@@ -278,5 +328,8 @@ fn same(seated: &[(&RunRow, Vec<String>, usize)]) -> BTreeMap<String, Vec<String
 
 fn distinct<'a>(texts: impl Iterator<Item = &'a str>) -> Vec<String> {
     let mut seen = BTreeSet::new();
-    texts.filter(|t| seen.insert(fold(t))).map(str::to_owned).collect()
+    texts
+        .filter(|t| seen.insert(fold(t)))
+        .map(str::to_owned)
+        .collect()
 }

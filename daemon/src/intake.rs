@@ -84,7 +84,12 @@ enum Content<'a> {
     Touched { export: i64 },
     /// Its reader died; another try is due.
     Struck { attempts: u32 },
-    New { sha256: Digest, raw: Option<PackedExport>, plan: Option<&'a Plan>, outcome: Result<Parsed, Refused> },
+    New {
+        sha256: Digest,
+        raw: Option<PackedExport>,
+        plan: Option<&'a Plan>,
+        outcome: Result<Parsed, Refused>,
+    },
 }
 
 impl Intake {
@@ -92,7 +97,11 @@ impl Intake {
     ///
     /// # Errors
     /// A rule that does not compile; `check` finds it first.
-    pub fn new(ledger: SharedLedger, config: Arc<Config>, instrument: usize) -> Result<Self, RuleError> {
+    pub fn new(
+        ledger: SharedLedger,
+        config: Arc<Config>,
+        instrument: usize,
+    ) -> Result<Self, RuleError> {
         let own = &config.instruments[instrument];
         Ok(Self {
             reader: Reader::new(&own.rule)?,
@@ -114,8 +123,10 @@ impl Intake {
         let own = &config.instruments[self.instrument];
         self.learn(own)?;
         let (found, unreadable) = look_through(own);
-        let mut ready: Vec<Found> =
-            found.into_iter().filter(|file| self.worth_reading(file, now)).collect();
+        let mut ready: Vec<Found> = found
+            .into_iter()
+            .filter(|file| self.worth_reading(file, now))
+            .collect();
         self.settler.keep_only_seen_at(now.uptime);
         ready.sort_by_key(|f| (f.stat.mtime, f.path.clone()));
 
@@ -138,12 +149,19 @@ impl Intake {
             }
             recorded += self.record(own, batch, now)?;
         }
-        let due = self.settler.next_due().map(|due| due.saturating_sub(now.uptime));
+        let due = self
+            .settler
+            .next_due()
+            .map(|due| due.saturating_sub(now.uptime));
         let mut next = due.unwrap_or(own.rescan).min(own.rescan);
         if fault {
             next = next.max(AFTER_FAULT);
         }
-        Ok(Looked { recorded, next, unreadable })
+        Ok(Looked {
+            recorded,
+            next,
+            unreadable,
+        })
     }
 
     fn learn(&mut self, own: &Instrument) -> Result<(), LedgerError> {
@@ -153,11 +171,19 @@ impl Intake {
         let ledger = self.ledger.lock();
         let mut known = HashMap::new();
         for row in ledger.read().files(&own.name)? {
-            let dealt = row.export.map(|e| ledger.read().dealt_with(e)).transpose()?;
+            let dealt = row
+                .export
+                .map(|e| ledger.read().dealt_with(e))
+                .transpose()?;
             let stale = dealt.is_some_and(|d| d.rule_mark != own.rule_mark && !d.clean);
             known.insert(
                 row.path,
-                Known { stat: row.stat, export: row.export, attempts: row.attempts, stale },
+                Known {
+                    stat: row.stat,
+                    export: row.export,
+                    attempts: row.attempts,
+                    stale,
+                },
             );
         }
         self.known = Some(known);
@@ -193,7 +219,9 @@ impl Intake {
         };
         let plan = plans.iter().find(|p| {
             p.instruments.contains(&own.name)
-                && p.only.as_ref().is_none_or(|only| only.is_match(&found.shown))
+                && p.only
+                    .as_ref()
+                    .is_none_or(|only| only.is_match(&found.shown))
         });
         let known = self.known.as_ref().and_then(|k| k.get(&key)).copied();
         let (sha256, raw, outcome) = match bytes {
@@ -201,13 +229,20 @@ impl Intake {
             Ok(bytes) => {
                 let sha256: Digest = Sha256::digest(&bytes).into();
                 if let Some(export) = self.same_content(own, known, &sha256)? {
-                    return Ok(Some(Prepared { found, content: Content::Touched { export } }));
+                    return Ok(Some(Prepared {
+                        found,
+                        content: Content::Touched { export },
+                    }));
                 }
-                let attempts = known.filter(|k| k.stat == found.stat).map_or(0, |k| k.attempts);
+                let attempts = known
+                    .filter(|k| k.stat == found.stat)
+                    .map_or(0, |k| k.attempts);
                 let outcome = match self.parse(own, &found.shown, &bytes) {
                     Parse::Done(outcome) => outcome,
                     Parse::Died(_) if attempts + 1 < STRIKES => {
-                        let content = Content::Struck { attempts: attempts + 1 };
+                        let content = Content::Struck {
+                            attempts: attempts + 1,
+                        };
                         return Ok(Some(Prepared { found, content }));
                     }
                     Parse::Died(how) => Err(workbook::refusal(&how, STRIKES)),
@@ -218,7 +253,15 @@ impl Intake {
                 (sha256, raw, outcome)
             }
         };
-        Ok(Some(Prepared { found, content: Content::New { sha256, raw, plan, outcome } }))
+        Ok(Some(Prepared {
+            found,
+            content: Content::New {
+                sha256,
+                raw,
+                plan,
+                outcome,
+            },
+        }))
     }
 
     /// The export that this path already is, when its bytes and the rule are the same.
@@ -228,17 +271,29 @@ impl Intake {
         known: Option<Known>,
         sha256: &Digest,
     ) -> Result<Option<i64>, String> {
-        let Some(export) = known.and_then(|k| k.export) else { return Ok(None) };
-        let dealt = self.ledger.lock().read().dealt_with(export).map_err(|e| e.to_string())?;
-        Ok((dealt.sha256 == *sha256 && (dealt.rule_mark == own.rule_mark || dealt.clean))
-            .then_some(export))
+        let Some(export) = known.and_then(|k| k.export) else {
+            return Ok(None);
+        };
+        let dealt = self
+            .ledger
+            .lock()
+            .read()
+            .dealt_with(export)
+            .map_err(|e| e.to_string())?;
+        Ok(
+            (dealt.sha256 == *sha256 && (dealt.rule_mark == own.rule_mark || dealt.clean))
+                .then_some(export),
+        )
     }
 
     fn parse(&mut self, own: &Instrument, shown: &str, bytes: &[u8]) -> Parse {
         if !restudy_parsers::is_workbook(bytes) {
             return Parse::Done(self.reader.read(Export { path: shown, bytes }));
         }
-        match self.workbooks.read(shown, bytes, &Ask::Rule(own.rule.clone())) {
+        match self
+            .workbooks
+            .read(shown, bytes, &Ask::Rule(Box::new(own.rule.clone())))
+        {
             Ok(outcome) => Parse::Done(outcome),
             Err(workbook::Failure::Died(how)) => Parse::Died(how),
             Err(workbook::Failure::CannotStart(e)) => {
@@ -257,12 +312,20 @@ impl Intake {
             return Ok(0);
         }
         let dealt: Vec<(Option<i64>, u32)> = self.ledger.lock().write(|w| {
-            batch.iter().map(|prepared| record_one(w, own, prepared, now)).collect::<Result<_, LedgerError>>()
+            batch
+                .iter()
+                .map(|prepared| record_one(w, own, prepared, now))
+                .collect::<Result<_, LedgerError>>()
         })?;
         let mut recorded = 0;
         for (prepared, (export, attempts)) in batch.iter().zip(dealt) {
             let path = prepared.found.path.as_os_str().as_bytes().to_vec();
-            let known = Known { stat: prepared.found.stat, export, attempts, stale: false };
+            let known = Known {
+                stat: prepared.found.stat,
+                export,
+                attempts,
+                stale: false,
+            };
             self.known.get_or_insert_default().insert(path, known);
             if let Content::New { plan, outcome, .. } = &prepared.content {
                 recorded += 1;
@@ -299,7 +362,12 @@ fn record_one(
     let (export, attempts) = match &prepared.content {
         Content::Touched { export } => (Some(*export), 0),
         Content::Struck { attempts } => (None, *attempts),
-        Content::New { sha256, raw, plan, outcome } => {
+        Content::New {
+            sha256,
+            raw,
+            plan,
+            outcome,
+        } => {
             if let Some(raw) = raw {
                 w.keep_raw(sha256, raw)?;
             }
@@ -340,7 +408,13 @@ fn say(own: &Instrument, export: &str, plan: Option<&Plan>, outcome: &Result<Par
         }
         Err(refused) => {
             let hint = refused.hint.as_deref();
-            tracing::warn!(instrument, export, hint, "export refused: {}", refused.sentence);
+            tracing::warn!(
+                instrument,
+                export,
+                hint,
+                "export refused: {}",
+                refused.sentence
+            );
         }
     }
 }

@@ -116,7 +116,9 @@ impl Ledger {
             OpenFlags::SQLITE_OPEN_READ_WRITE | OpenFlags::SQLITE_OPEN_NO_MUTEX,
         )?;
         connection.busy_timeout(BUSY)?;
-        refuse_foreign(&connection, &path)?;
+        if refuse_foreign(&connection, &path)? < 1 {
+            return Err(LedgerError::Absent(path));
+        }
         connection.pragma_update(None, "query_only", "ON")?;
         Ok(Self { connection })
     }
@@ -154,13 +156,17 @@ impl Ledger {
         work: impl FnOnce(Read<'_>) -> Result<T, LedgerError>,
     ) -> Result<T, LedgerError> {
         let transaction = self.connection.unchecked_transaction()?;
-        work(Read { connection: &transaction })
+        work(Read {
+            connection: &transaction,
+        })
     }
 
     /// The reading side.
     #[must_use]
     pub fn read(&self) -> Read<'_> {
-        Read { connection: &self.connection }
+        Read {
+            connection: &self.connection,
+        }
     }
 }
 
@@ -179,22 +185,30 @@ impl Write<'_> {
     /// The reading side, inside this transaction.
     #[must_use]
     pub fn read(&self) -> Read<'_> {
-        Read { connection: &self.transaction }
+        Read {
+            connection: &self.transaction,
+        }
     }
 }
 
-fn refuse_foreign(connection: &Connection, path: &Path) -> Result<(), LedgerError> {
+/// Refuses what is not ours; answers with the schema's version, 0 before the service has made its tables.
+fn refuse_foreign(connection: &Connection, path: &Path) -> Result<i32, LedgerError> {
     let application: i32 = connection.pragma_query_value(None, "application_id", |r| r.get(0))?;
     let schema: i32 = connection.pragma_query_value(None, "user_version", |r| r.get(0))?;
     let empty: bool =
-        connection.query_row("SELECT NOT EXISTS (SELECT 1 FROM sqlite_schema)", [], |r| r.get(0))?;
+        connection.query_row("SELECT NOT EXISTS (SELECT 1 FROM sqlite_schema)", [], |r| {
+            r.get(0)
+        })?;
     if application != APPLICATION && !empty {
         return Err(LedgerError::Foreign(path.to_owned()));
     }
     if schema > SCHEMA {
-        return Err(LedgerError::Newer { path: path.to_owned(), found: schema });
+        return Err(LedgerError::Newer {
+            path: path.to_owned(),
+            found: schema,
+        });
     }
-    Ok(())
+    Ok(schema)
 }
 
 /// Brings the schema up to [`SCHEMA`], tables and version number in one transaction.

@@ -19,7 +19,9 @@ fn pieces(text: &str) -> impl Iterator<Item = Piece> {
     std::iter::from_fn(move || {
         let first = rest.chars().next()?;
         let is_digit = first.is_ascii_digit();
-        let end = rest.find(|c: char| c.is_ascii_digit() != is_digit).unwrap_or(rest.len());
+        let end = rest
+            .find(|c: char| c.is_ascii_digit() != is_digit)
+            .unwrap_or(rest.len());
         let (piece, tail) = rest.split_at(end);
         rest = tail;
         Some(if is_digit {

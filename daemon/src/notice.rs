@@ -96,26 +96,50 @@ impl Round<'_> {
     /// Plan and machines.
     fn place(&self) -> String {
         let used = &self.evidence().instruments;
-        let instruments = if used.is_empty() { &self.plan.instruments } else { used };
+        let instruments = if used.is_empty() {
+            &self.plan.instruments
+        } else {
+            used
+        };
         let names: Vec<String> = instruments.iter().map(|i| words::name(i)).collect();
         format!("{} / {}", words::name(&self.plan.name), names.join(", "))
     }
 
     fn signature(&self) -> String {
-        format!("Restudy at {}, plan {}.", words::name(&self.config.site.name), words::name(&self.plan.name))
+        format!(
+            "Restudy at {}, plan {}.",
+            words::name(&self.config.site.name),
+            words::name(&self.plan.name)
+        )
     }
 }
 
 /// What a round's result is worth telling; `told` when people were told about it before. `None`: nothing.
 #[must_use]
-pub fn compose(config: &Config, plan: &Plan, worked: &Worked, told: Option<&Told>) -> Option<Message> {
+pub fn compose(
+    config: &Config,
+    plan: &Plan,
+    worked: &Worked,
+    told: Option<&Told>,
+) -> Option<Message> {
     let (report, _) = report::paths(&config.state, &plan.name, worked.evidence.round.number);
-    let round = Round { config, plan, worked, items: news::ranked(worked), report };
+    let round = Round {
+        config,
+        plan,
+        worked,
+        items: news::ranked(worked),
+        report,
+    };
     let (kind, letter): (NoticeKind, Letter) = match told {
         Some(told) => (NoticeKind::Corrected, corrected::letter(&round, told)?),
         None => (NoticeKind::Standing, standing::letter(&round)?),
     };
-    Some(Message { kind, text: letter.text(), html: letter.html(), subject: letter.subject })
+    Some(Message {
+        kind,
+        text: letter.text(),
+        html: letter.html(),
+        subject: letter.subject,
+    })
 }
 
 /// A round's message as it would be mailed to `recipient`; `None` when nothing needs a person.
@@ -123,11 +147,28 @@ pub fn compose(config: &Config, plan: &Plan, worked: &Worked, told: Option<&Told
 pub fn draft(config: &Config, plan: &Plan, worked: &Worked, recipient: &str) -> Option<Draft> {
     let message = compose(config, plan, worked, None)?;
     let round = &worked.evidence.round;
-    let key = key(config, plan, round.number, round.revision, message.kind, recipient);
+    let key = key(
+        config,
+        plan,
+        round.number,
+        round.revision,
+        message.kind,
+        recipient,
+    );
     let date = round.closed.unwrap_or_default();
-    let envelope = Envelope { from: from(config), to: recipient, id: &key, thread: &key, date };
+    let envelope = Envelope {
+        from: from(config),
+        to: recipient,
+        id: &key,
+        thread: &key,
+        date,
+    };
     let bytes = mail::bytes(&envelope, &message).unwrap_or_default();
-    Some(Draft { subject: message.subject, text: message.text, bytes })
+    Some(Draft {
+        subject: message.subject,
+        text: message.text,
+        bytes,
+    })
 }
 
 /// All that is owed for a round's present revision: one row for the log, one a recipient. Empty when nothing needs
@@ -147,13 +188,28 @@ pub fn owed(
     let told = match sent.first() {
         Some(first) if round.revision > 1 => {
             let studies = read.studies(round.id, round.revision - 1)?;
-            Some(Told { subject: first.subject.clone(), studies })
+            Some(Told {
+                subject: first.subject.clone(),
+                studies,
+            })
         }
         _ => None,
     };
-    let Some(message) = compose(config, plan, worked, told.as_ref()) else { return Ok(Vec::new()) };
-    let row = |channel: &'static str, recipient: &str, thread: Option<String>, bytes: &dyn Fn(&str, &str) -> Vec<u8>| {
-        let key = key(config, plan, round.number, round.revision, message.kind, recipient);
+    let Some(message) = compose(config, plan, worked, told.as_ref()) else {
+        return Ok(Vec::new());
+    };
+    let row = |channel: &'static str,
+               recipient: &str,
+               thread: Option<String>,
+               bytes: &dyn Fn(&str, &str) -> Vec<u8>| {
+        let key = key(
+            config,
+            plan,
+            round.number,
+            round.revision,
+            message.kind,
+            recipient,
+        );
         let thread = thread.unwrap_or_else(|| key.clone());
         NewNotice {
             channel,
@@ -167,14 +223,30 @@ pub fn owed(
             key,
         }
     };
-    let mut notices = vec![row("log", "", None, &|_, _| message.text.clone().into_bytes())];
+    let mut notices = vec![row("log", "", None, &|_, _| {
+        message.text.clone().into_bytes()
+    })];
     for recipient in recipients(config, plan, message.kind) {
         let thread = thread(read, plan, worked, &sent, recipient)?;
-        let date = if round.revision > 1 { now.utc } else { round.closed.unwrap_or(now.utc) };
+        let date = if round.revision > 1 {
+            now.utc
+        } else {
+            round.closed.unwrap_or(now.utc)
+        };
         let bytes = |id: &str, thread: &str| {
-            let envelope = Envelope { from: from(config), to: recipient, id, thread, date };
+            let envelope = Envelope {
+                from: from(config),
+                to: recipient,
+                id,
+                thread,
+                date,
+            };
             mail::bytes(&envelope, &message).unwrap_or_else(|why| {
-                tracing::error!(recipient, subject = message.subject, "notice cannot be mailed: {why}");
+                tracing::error!(
+                    recipient,
+                    subject = message.subject,
+                    "notice cannot be mailed: {why}"
+                );
                 Vec::new()
             })
         };
@@ -194,11 +266,36 @@ pub fn message_id(
     kind: NoticeKind,
     recipient: &str,
 ) -> String {
-    mail::id(sender, &[site, plan, &round.to_string(), &revision.to_string(), word(kind), recipient])
+    mail::id(
+        sender,
+        &[
+            site,
+            plan,
+            &round.to_string(),
+            &revision.to_string(),
+            word(kind),
+            recipient,
+        ],
+    )
 }
 
-fn key(config: &Config, plan: &Plan, round: i64, revision: i64, kind: NoticeKind, recipient: &str) -> String {
-    message_id(from(config), &config.site.name, &plan.name, round, revision, kind, recipient)
+fn key(
+    config: &Config,
+    plan: &Plan,
+    round: i64,
+    revision: i64,
+    kind: NoticeKind,
+    recipient: &str,
+) -> String {
+    message_id(
+        from(config),
+        &config.site.name,
+        &plan.name,
+        round,
+        revision,
+        kind,
+        recipient,
+    )
 }
 
 fn from(config: &Config) -> &str {
@@ -242,10 +339,20 @@ fn thread(
     sent: &[NoticeRow],
     recipient: &str,
 ) -> Result<Option<String>, LedgerError> {
-    let of_round = sent.iter().rev().find(|n| n.channel == "mail" && n.recipient == recipient);
+    let of_round = sent
+        .iter()
+        .rev()
+        .find(|n| n.channel == "mail" && n.recipient == recipient);
     if let Some(notice) = of_round {
         return Ok(Some(notice.thread.clone()));
     }
-    let above = worked.earlier.values().any(|e| e.study.standing >= Standing::Watch);
-    if above { read.last_thread(&plan.name, recipient) } else { Ok(None) }
+    let above = worked
+        .earlier
+        .values()
+        .any(|e| e.study.standing >= Standing::Watch);
+    if above {
+        read.last_thread(&plan.name, recipient)
+    } else {
+        Ok(None)
+    }
 }

@@ -20,7 +20,10 @@ impl Now {
     /// Reads both clocks.
     #[must_use]
     pub fn read() -> Self {
-        Self { utc: Timestamp::now().as_millisecond(), uptime: START.elapsed() }
+        Self {
+            utc: Timestamp::now().as_millisecond(),
+            uptime: START.elapsed(),
+        }
     }
 }
 
@@ -28,6 +31,10 @@ impl Now {
 #[must_use]
 pub fn in_zone(utc_ms: i64, zone: &TimeZone) -> ZonedDateTime {
     let at = Timestamp::from_millisecond(utc_ms);
-    let edge = if utc_ms < 0 { Timestamp::MIN } else { Timestamp::MAX };
+    let edge = if utc_ms < 0 {
+        Timestamp::MIN
+    } else {
+        Timestamp::MAX
+    };
     at.unwrap_or(edge).to_zoned_datetime(zone.clone())
 }

@@ -108,9 +108,11 @@ pub struct Source {
 #[must_use]
 pub fn hex(digest: &[u8]) -> String {
     use std::fmt::Write as _;
-    digest.iter().fold(String::with_capacity(2 * digest.len()), |mut text, byte| {
-        // Writing to a String cannot fail.
-        let _ = write!(text, "{byte:02x}");
-        text
-    })
+    digest
+        .iter()
+        .fold(String::with_capacity(2 * digest.len()), |mut text, byte| {
+            // Writing to a String cannot fail.
+            let _ = write!(text, "{byte:02x}");
+            text
+        })
 }

@@ -75,7 +75,10 @@ impl Reporter {
         let mut first_fault = None;
         for plan in &config.plans {
             let owed = self.ledger.lock().read().rounds_to_report(&plan.name)?;
-            for round in owed.into_iter().filter(|round| round.analysed == round.revision) {
+            for round in owed
+                .into_iter()
+                .filter(|round| round.analysed == round.revision)
+            {
                 match self.report(plan, &round) {
                     Ok(done) => recorded |= done,
                     Err(ReportError::Write(fault)) => {
@@ -90,7 +93,11 @@ impl Reporter {
 
     fn report(&self, plan: &Plan, round: &RoundRow) -> Result<bool, ReportError> {
         let worked = Worked::load(&self.ledger, &self.config, plan, round.clone())?;
-        let studies = self.ledger.lock().read().studies(round.id, round.analysed)?;
+        let studies = self
+            .ledger
+            .lock()
+            .read()
+            .studies(round.id, round.analysed)?;
         let site = &self.config.site;
         let (html, json) = paths(&self.config.state, &plan.name, round.number);
         files::write(&html, &page(&site.name, &site.zone, plan, &worked))?;
@@ -98,7 +105,10 @@ impl Reporter {
         let recorded = self.ledger.lock().write(|w| {
             let unchanged = w.read().round(round.id)?.as_ref() == Some(round);
             if unchanged {
-                w.put_round(&RoundRow { reported: round.analysed, ..round.clone() })?;
+                w.put_round(&RoundRow {
+                    reported: round.analysed,
+                    ..round.clone()
+                })?;
             }
             Ok::<bool, LedgerError>(unchanged)
         })?;

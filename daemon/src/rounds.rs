@@ -58,12 +58,16 @@ impl Rounds {
     pub fn pass(&mut self, now: Now) -> Result<bool, LedgerError> {
         let mut owed = false;
         for plan in &self.config.plans {
-            let changes =
-                self.ledger.lock().write(|w| reconcile(w, plan, now))?;
+            let changes = self.ledger.lock().write(|w| reconcile(w, plan, now))?;
             for change in &changes {
                 say(change);
             }
-            owed |= !self.ledger.lock().read().rounds_to_analyse(&plan.name)?.is_empty();
+            owed |= !self
+                .ledger
+                .lock()
+                .read()
+                .rounds_to_analyse(&plan.name)?
+                .is_empty();
         }
         Ok(owed)
     }
@@ -84,7 +88,12 @@ fn say(change: &Change) {
             tracing::info!(plan, round = number, "round is {}", state.as_str());
         }
         What::Revision(revision) => {
-            tracing::info!(plan, round = number, revision, "values of a closed round changed");
+            tracing::info!(
+                plan,
+                round = number,
+                revision,
+                "values of a closed round changed"
+            );
         }
     }
 }
@@ -103,7 +112,10 @@ fn reconcile(w: &Write<'_>, plan: &Plan, now: Now) -> Result<Vec<Change>, Ledger
     let closed: Vec<Closed> = rounds
         .iter()
         .filter(|r| r.state.closed())
-        .map(|r| Closed { label: r.label.clone(), through: r.through })
+        .map(|r| Closed {
+            label: r.label.clone(),
+            through: r.through,
+        })
         .collect();
     let filling = |label: Option<&str>| {
         rounds
@@ -111,19 +123,25 @@ fn reconcile(w: &Write<'_>, plan: &Plan, now: Now) -> Result<Vec<Change>, Ledger
             .find(|r| !r.state.closed() && r.label.as_deref().map(fold) == label.map(fold))
     };
     let opened = |label: Option<&str>| filling(label).and_then(|r| r.opened);
-    let Assigned { rounds: laid, elsewhere } =
-        assign::assign(&frame, &closed, &runs, Clock { now: now.utc }, &opened);
+    let Assigned {
+        rounds: laid,
+        elsewhere,
+    } = assign::assign(&frame, &closed, &runs, Clock { now: now.utc }, &opened);
 
     let mut next_number = rounds.iter().map(|r| r.number).max().unwrap_or(0) + 1;
     let mut kept: Vec<i64> = Vec::new();
     for laid in &laid {
-        let row = filling(laid.label.as_deref()).filter(|r| !kept.contains(&r.id)).cloned();
+        let row = filling(laid.label.as_deref())
+            .filter(|r| !kept.contains(&r.id))
+            .cloned();
         let row = match row {
             Some(row) => row,
             None => {
                 let id = w.add_round(&plan.name, next_number, laid.label.as_deref())?;
                 next_number += 1;
-                w.read().round(id)?.ok_or_else(|| LedgerError::Damaged("round".into()))?
+                w.read()
+                    .round(id)?
+                    .ok_or_else(|| LedgerError::Damaged("round".into()))?
             }
         };
         kept.push(row.id);
@@ -131,7 +149,10 @@ fn reconcile(w: &Write<'_>, plan: &Plan, now: Now) -> Result<Vec<Change>, Ledger
         move_runs(w, &runs, &laid.seats, Some(kept[kept.len() - 1]))?;
     }
     move_runs(w, &runs, &elsewhere, None)?;
-    for lost in rounds.iter().filter(|r| !r.state.closed() && !kept.contains(&r.id)) {
+    for lost in rounds
+        .iter()
+        .filter(|r| !r.state.closed() && !kept.contains(&r.id))
+    {
         w.drop_round(lost.id)?;
     }
     Ok(changes)
@@ -145,7 +166,10 @@ fn revise(w: &Write<'_>, round: &RoundRow, changes: &mut Vec<Change>) -> Result<
     if round.analysed < round.revision {
         return Ok(());
     }
-    let revised = RoundRow { revision: round.revision + 1, ..round.clone() };
+    let revised = RoundRow {
+        revision: round.revision + 1,
+        ..round.clone()
+    };
     w.put_round(&revised)?;
     changes.push(Change {
         plan: round.plan.clone(),
@@ -162,7 +186,11 @@ fn settle_round(
     now: Now,
     changes: &mut Vec<Change>,
 ) -> Result<(), LedgerError> {
-    let mut next = RoundRow { state: laid.state, reason: laid.reason.clone(), ..row.clone() };
+    let mut next = RoundRow {
+        state: laid.state,
+        reason: laid.reason.clone(),
+        ..row.clone()
+    };
     if laid.state != RoundState::Pending {
         next.opened.get_or_insert(now.utc);
     }

@@ -88,7 +88,9 @@ pub fn run(config: Arc<Config>, stop: &Stop) -> Result<(), ServiceError> {
         stop.wakes(look.clone());
         let watch = Watch::new(&folders, look);
         let (rounds, stop) = (rounds_wake.clone(), stop.clone());
-        stage("intake", &ended, &mut stages, move || look_on(intake, watch, &looking, &rounds, &stop));
+        stage("intake", &ended, &mut stages, move || {
+            look_on(intake, watch, &looking, &rounds, &stop)
+        });
     }
     rounds_wake.now();
     let work = Work {
@@ -98,11 +100,22 @@ pub fn run(config: Arc<Config>, stop: &Stop) -> Result<(), ServiceError> {
         mail: Arc::clone(&mail),
     };
     let stop_work = stop.clone();
-    stage("rounds", &ended, &mut stages, move || work.go_on(&rounds_waiting, &stop_work));
-    let delivery = runtime.spawn(deliver::run(ledger, Arc::clone(&config), mail, stop.clone()));
+    stage("rounds", &ended, &mut stages, move || {
+        work.go_on(&rounds_waiting, &stop_work)
+    });
+    let delivery = runtime.spawn(deliver::run(
+        ledger,
+        Arc::clone(&config),
+        mail,
+        stop.clone(),
+    ));
 
     let instruments = config.instruments.len();
-    tracing::info!(instruments, plans = config.plans.len(), "service is running");
+    tracing::info!(
+        instruments,
+        plans = config.plans.len(),
+        "service is running"
+    );
     let outcome = wait(&ends, stages, stop);
     let left = STOP_LIMIT.saturating_sub(stop.since());
     runtime.block_on(async {
@@ -155,7 +168,10 @@ fn wait(ends: &Receiver<&'static str>, mut stages: usize, stop: &Stop) -> Result
             }
             Err(RecvTimeoutError::Timeout) if !stop.is_set() => {}
             Err(_) => {
-                tracing::warn!(stages, "stages were still busy; their work is done again at the next start");
+                tracing::warn!(
+                    stages,
+                    "stages were still busy; their work is done again at the next start"
+                );
                 break;
             }
         }
@@ -165,8 +181,12 @@ fn wait(ends: &Receiver<&'static str>, mut stages: usize, stop: &Stop) -> Result
 
 fn lock(config: &Config) -> Result<std::fs::File, ServiceError> {
     let path = config.state.join("restudy.lock");
-    let file = fs_err::File::create(&path).map_err(ServiceError::State)?.into_parts().0;
-    file.try_lock().map_err(|_| ServiceError::Running(config.state.clone()))?;
+    let file = fs_err::File::create(&path)
+        .map_err(ServiceError::State)?
+        .into_parts()
+        .0;
+    file.try_lock()
+        .map_err(|_| ServiceError::Running(config.state.clone()))?;
     Ok(file)
 }
 

@@ -31,15 +31,19 @@ impl Settler {
     /// Files must hold still for `after`.
     #[must_use]
     pub fn new(after: Duration) -> Self {
-        Self { after, watched: HashMap::new() }
+        Self {
+            after,
+            watched: HashMap::new(),
+        }
     }
 
     /// Notes how a file looks; true once it has held still long enough.
     pub fn observe(&mut self, path: &[u8], stat: Stat, uptime: Duration) -> bool {
-        let quiet = self
-            .watched
-            .entry(path.to_vec())
-            .or_insert(Quiet { stat, since: uptime, looked: uptime });
+        let quiet = self.watched.entry(path.to_vec()).or_insert(Quiet {
+            stat,
+            since: uptime,
+            looked: uptime,
+        });
         if quiet.stat != stat {
             quiet.stat = stat;
             quiet.since = uptime;
@@ -61,12 +65,19 @@ impl Settler {
     /// When the next file will have settled if nothing changes.
     #[must_use]
     pub fn next_due(&self) -> Option<Duration> {
-        self.watched.values().map(|q| q.since + needed(self.after, q.stat)).min()
+        self.watched
+            .values()
+            .map(|q| q.since + needed(self.after, q.stat))
+            .min()
     }
 }
 
 fn needed(after: Duration, stat: Stat) -> Duration {
-    if stat.size == 0 { after.max(EMPTY_GRACE) } else { after }
+    if stat.size == 0 {
+        after.max(EMPTY_GRACE)
+    } else {
+        after
+    }
 }
 
 #[cfg(test)]
@@ -74,7 +85,13 @@ mod tests {
     use super::*;
 
     fn look(size: u64, mtime: i64) -> Stat {
-        Stat { size, mtime, ctime: mtime, device: 1, inode: 1 }
+        Stat {
+            size,
+            mtime,
+            ctime: mtime,
+            device: 1,
+            inode: 1,
+        }
     }
 
     fn secs(s: u64) -> Duration {

@@ -38,7 +38,10 @@ impl Wake {
 impl Waiting {
     /// Waits for the flag, at most so long; false when nobody can set it any more.
     pub fn at_most(&self, timeout: Duration) -> bool {
-        !matches!(self.0.recv_timeout(timeout), Err(RecvTimeoutError::Disconnected))
+        !matches!(
+            self.0.recv_timeout(timeout),
+            Err(RecvTimeoutError::Disconnected)
+        )
     }
 }
 
@@ -59,7 +62,9 @@ impl Watch {
             }
         });
         let watcher = watcher
-            .inspect_err(|e| tracing::warn!(error = %e, "no file events here; rescans find new exports"))
+            .inspect_err(
+                |e| tracing::warn!(error = %e, "no file events here; rescans find new exports"),
+            )
             .ok();
         let folders = folders.iter().map(|f| (f.clone(), false)).collect();
         let mut watch = Self { watcher, folders };
@@ -69,12 +74,16 @@ impl Watch {
 
     /// Tries the folders that could not be watched so far.
     pub fn again(&mut self) {
-        let Some(watcher) = &mut self.watcher else { return };
+        let Some(watcher) = &mut self.watcher else {
+            return;
+        };
         for (folder, watched) in &mut self.folders {
             if !*watched {
                 match watcher.watch(folder, RecursiveMode::Recursive) {
                     Ok(()) => *watched = true,
-                    Err(e) => tracing::debug!(folder = %folder.display(), error = %e, "not watched"),
+                    Err(e) => {
+                        tracing::debug!(folder = %folder.display(), error = %e, "not watched")
+                    }
                 }
             }
         }

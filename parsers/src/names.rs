@@ -40,10 +40,7 @@ pub(crate) fn shorten_to(text: &str, most: usize) -> String {
 
 /// The known name most like `sought`, if any is like it at all.
 #[must_use]
-pub fn nearest<'a>(
-    sought: &str,
-    known: impl IntoIterator<Item = &'a str>,
-) -> Option<&'a str> {
+pub fn nearest<'a>(sought: &str, known: impl IntoIterator<Item = &'a str>) -> Option<&'a str> {
     let sought = fold(sought);
     let mut best: Option<(f64, &str)> = None;
     for name in known

@@ -12,7 +12,11 @@ fn files_below(folder: &Path) -> Vec<PathBuf> {
     let mut files = Vec::new();
     for entry in fs_err::read_dir(folder).expect("a folder") {
         let path = entry.expect("an entry").path();
-        if path.is_dir() { files.extend(files_below(&path)) } else { files.push(path) }
+        if path.is_dir() {
+            files.extend(files_below(&path))
+        } else {
+            files.push(path)
+        }
     }
     files.sort();
     files
@@ -26,15 +30,31 @@ fn the_demo_leaves_a_plant_to_go_on_with() {
     let demo = restudy(&["demo", "--keep", folder_text]);
     let said = text(&demo.stdout);
     assert_eq!(demo.status.code(), Some(0), "{said}{}", text(&demo.stderr));
-    for words in ["Halden Pump Works", "impeller hub", "bore A", "Subject: ", "Reports: ", "restudy serve --config"] {
+    for words in [
+        "Halden Pump Works",
+        "impeller hub",
+        "bore A",
+        "Subject: ",
+        "Reports: ",
+        "restudy serve --config",
+    ] {
         assert!(said.contains(words), "{words} is not in:\n{said}");
     }
     let names: Vec<String> = files_below(&folder)
         .iter()
         .filter_map(|path| Some(path.file_name()?.to_str()?.to_owned()))
         .collect();
-    for name in ["round-0001.html", "round-0001.json", "round-0002.html", "round-0002.json", "alert-round-2.eml"] {
-        assert!(names.iter().any(|n| n == name), "{name} is not in {names:?}");
+    for name in [
+        "round-0001.html",
+        "round-0001.json",
+        "round-0002.html",
+        "round-0002.json",
+        "alert-round-2.eml",
+    ] {
+        assert!(
+            names.iter().any(|n| n == name),
+            "{name} is not in {names:?}"
+        );
     }
 
     let plant = Plant::kept(folder);
@@ -49,7 +69,10 @@ fn the_demo_leaves_a_plant_to_go_on_with() {
 
     let records = records(&plant);
     let at = |round: i64, standing: &str| {
-        records.iter().filter(|r| r["round"] == round && r["standing"]["now"] == standing).count()
+        records
+            .iter()
+            .filter(|r| r["round"] == round && r["standing"]["now"] == standing)
+            .count()
     };
     assert_eq!(records.len(), 8);
     assert_eq!(at(1, "act"), 0);

@@ -2,7 +2,7 @@
 
 use jiff::ToSpan as _;
 use jiff::civil::{DateTime, date};
-use rust_xlsxwriter::{Workbook, XlsxError};
+use rust_xlsxwriter::{DocProperties, ExcelDateTime, Workbook, XlsxError};
 
 /// One part measured once by one appraiser.
 #[derive(Debug, Clone)]
@@ -52,7 +52,10 @@ impl Run {
         [
             ("Halden Pump Works", String::new()),
             ("Loaded by", self.appraiser.clone()),
-            ("Measured", self.taken.strftime("%Y-%m-%d %H:%M").to_string()),
+            (
+                "Measured",
+                self.taken.strftime("%Y-%m-%d %H:%M").to_string(),
+            ),
             ("Program", self.program.clone()),
         ]
     }
@@ -63,6 +66,9 @@ impl Run {
 
     fn try_workbook(&self) -> Result<Vec<u8>, XlsxError> {
         let mut workbook = Workbook::new();
+        // Otherwise the time at which it is made: equal runs are to have equal bytes.
+        let made = ExcelDateTime::from_ymd(2026, 3, 2)?;
+        workbook.set_properties(&DocProperties::new().set_creation_datetime(&made));
         let sheet = workbook.add_worksheet().set_name("Results")?;
         for (row, (label, value)) in (0..).zip(&self.head()) {
             sheet.write_string(row, 0, *label)?;
@@ -74,7 +80,12 @@ impl Run {
         for (row, feature) in (6..).zip(&self.features) {
             sheet.write_string(row, 0, &self.part)?;
             sheet.write_string(row, 1, feature.name)?;
-            let numbers = [feature.nominal, -feature.deviation, feature.deviation, feature.value];
+            let numbers = [
+                feature.nominal,
+                -feature.deviation,
+                feature.deviation,
+                feature.value,
+            ];
             for (column, number) in (2..).zip(numbers) {
                 sheet.write_number(row, column, number)?;
             }
@@ -83,8 +94,11 @@ impl Run {
     }
 
     pub(crate) fn text(&self) -> Vec<u8> {
-        let mut lines: Vec<String> =
-            self.head().iter().map(|(label, value)| format!("{label},{value}")).collect();
+        let mut lines: Vec<String> = self
+            .head()
+            .iter()
+            .map(|(label, value)| format!("{label},{value}"))
+            .collect();
         lines.push(String::new());
         lines.push(HEADINGS.join(","));
         lines.extend(self.features.iter().map(|f| {
@@ -94,6 +108,16 @@ impl Run {
             )
         }));
         lines.join("\r\n").into_bytes()
+    }
+
+    /// Delimited text whose last value reads otherwise.
+    pub(crate) fn text_ending_in(&self, value: &str) -> Vec<u8> {
+        let text = self.text();
+        let comma = text
+            .iter()
+            .rposition(|byte| *byte == b',')
+            .expect("several fields");
+        [&text[..=comma], value.as_bytes()].concat()
     }
 }
 
@@ -125,5 +149,10 @@ pub(crate) fn small_study(parts: usize, appraisers: &[&str], trials: usize, mont
 }
 
 fn feature(name: &'static str, nominal: f64, deviation: f64, value: f64) -> Feature {
-    Feature { name, nominal, deviation, value }
+    Feature {
+        name,
+        nominal,
+        deviation,
+        value,
+    }
 }

@@ -50,9 +50,15 @@ impl Mailbox {
             .expect("the mail server can be started");
         let mut line = String::new();
         let stdout = server.stdout.take().expect("its standard output");
-        BufReader::new(stdout).read_line(&mut line).expect("the mail server's port");
+        BufReader::new(stdout)
+            .read_line(&mut line)
+            .expect("the mail server's port");
         let port = line.trim().parse().expect("a port");
-        Some(Self { server, folder, port })
+        Some(Self {
+            server,
+            folder,
+            port,
+        })
     }
 
     /// What came so far, in order.
@@ -74,7 +80,11 @@ impl Mailbox {
             if messages.len() >= count {
                 return messages;
             }
-            assert!(Instant::now() < deadline, "{} of {count} messages came", messages.len());
+            assert!(
+                Instant::now() < deadline,
+                "{} of {count} messages came",
+                messages.len()
+            );
             thread::sleep(Duration::from_millis(50));
         }
     }
@@ -111,10 +121,17 @@ fn can_be_opened(test: &str) -> bool {
 
 fn received(path: &Path) -> Received {
     let bytes = fs_err::read(path).expect("a message");
-    let end = bytes.iter().position(|b| *b == b'\n').expect("a line of envelope");
+    let end = bytes
+        .iter()
+        .position(|b| *b == b'\n')
+        .expect("a line of envelope");
     let envelope: Value = serde_json::from_slice(&bytes[..end]).expect("an envelope");
     let text = |value: &Value| value.as_str().expect("an address").to_owned();
-    assert_eq!(envelope["recipients"].as_array().map(Vec::len), Some(1), "{envelope}");
+    assert_eq!(
+        envelope["recipients"].as_array().map(Vec::len),
+        Some(1),
+        "{envelope}"
+    );
     Received {
         sender: text(&envelope["sender"]),
         recipient: text(&envelope["recipients"][0]),

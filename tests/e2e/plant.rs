@@ -37,9 +37,17 @@ impl Plant {
     }
 
     /// The same with further tables and folders.
-    pub(crate) fn with(design: Design<'_>, mail: Option<u16>, tables: &str, folders: &[&str]) -> Self {
+    pub(crate) fn with(
+        design: Design<'_>,
+        mail: Option<u16>,
+        tables: &str,
+        folders: &[&str],
+    ) -> Self {
         let own = tempfile::tempdir().expect("a temporary folder");
-        let plant = Self { folder: own.path().to_owned(), _own: Some(own) };
+        let plant = Self {
+            folder: own.path().to_owned(),
+            _own: Some(own),
+        };
         fs_err::create_dir_all(plant.exports().join("GRR")).expect("a folder for exports");
         for name in folders {
             fs_err::create_dir_all(plant.folder().join(name)).expect("a folder");
@@ -92,14 +100,20 @@ impl Plant {
     pub(crate) fn put_slowly(&self, name: &str, bytes: &[u8]) {
         let mut file = fs_err::File::create(self.place(name)).expect("an export can be made");
         for piece in bytes.chunks(bytes.len().div_ceil(PIECES)) {
-            file.write_all(piece).and_then(|()| file.flush()).expect("an export can be written");
+            file.write_all(piece)
+                .and_then(|()| file.flush())
+                .expect("an export can be written");
             thread::sleep(BETWEEN_PIECES);
         }
     }
 }
 
 fn main_tables(design: Design<'_>) -> String {
-    let Design { parts, appraisers, trials } = design;
+    let Design {
+        parts,
+        appraisers,
+        trials,
+    } = design;
     format!(
         r#"
 [site]

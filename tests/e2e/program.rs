@@ -17,7 +17,10 @@ const STOP_LIMIT: Duration = Duration::from_secs(5);
 
 /// Runs the program and waits for its end.
 pub(crate) fn restudy<S: AsRef<std::ffi::OsStr>>(arguments: &[S]) -> Output {
-    command().args(arguments).output().expect("the program can be started")
+    command()
+        .args(arguments)
+        .output()
+        .expect("the program can be started")
 }
 
 fn command() -> Command {
@@ -59,8 +62,11 @@ fn assert_accounting_adds_up(status: &Value) {
     let readings = status["readings"].as_object().expect("readings by place");
     assert_eq!(readings.len(), 11, "{readings:?}");
     let count = |value: &Value| value.as_i64().expect("a count");
-    let placed: i64 =
-        readings.iter().filter(|(place, _)| *place != "total").map(|(_, n)| count(n)).sum();
+    let placed: i64 = readings
+        .iter()
+        .filter(|(place, _)| *place != "total")
+        .map(|(_, n)| count(n))
+        .sum();
     assert_eq!(count(&readings["total"]), placed, "{readings:?}");
 }
 
@@ -76,7 +82,9 @@ pub(crate) fn records(plant: &Plant) -> Vec<Value> {
 
 /// The record of a characteristic in the last round.
 pub(crate) fn record(plant: &Plant, characteristic: &str) -> Value {
-    let found = records(plant).into_iter().rfind(|r| r["characteristic"] == characteristic);
+    let found = records(plant)
+        .into_iter()
+        .rfind(|r| r["characteristic"] == characteristic);
     found.unwrap_or_else(|| panic!("no study of {characteristic}"))
 }
 
@@ -128,28 +136,58 @@ impl<'a> Service<'a> {
     /// Waits until the plan's `number`-th round is complete, its report written and nothing owed.
     pub(crate) fn wait_for_round(&mut self, number: i64, revision: i64) -> Value {
         let report = report(self.plant, number);
-        self.wait_until(&format!("round {number}, revision {revision}, told and reported"), |s| {
-            let is_it = |r: &Value| {
-                r["round"] == number && r["revision"] == revision && r["state"] == "complete"
-            };
-            let rounds = s["rounds"].as_array().expect("rounds");
-            rounds.iter().any(is_it)
-                && nothing_owed(s)
-                && reported_revision(&report) == Some(revision)
-        })
+        self.wait_until(
+            &format!("round {number}, revision {revision}, told and reported"),
+            |s| {
+                let is_it = |r: &Value| {
+                    r["round"] == number && r["revision"] == revision && r["state"] == "complete"
+                };
+                let rounds = s["rounds"].as_array().expect("rounds");
+                rounds.iter().any(is_it)
+                    && nothing_owed(s)
+                    && reported_revision(&report) == Some(revision)
+            },
+        )
+    }
+
+    /// Ends the process that reads its workbooks, as the system does when memory is short.
+    pub(crate) fn kill_reader(&self) {
+        let is_its_child = |process: &i32| {
+            let status = fs_err::read_to_string(format!("/proc/{process}/status"));
+            status.is_ok_and(|s| s.contains(&format!("\nPPid:\t{}\n", self.child.id())))
+        };
+        let processes = fs_err::read_dir("/proc").expect("the processes");
+        let names = processes.filter_map(|entry| entry.ok()?.file_name().into_string().ok());
+        let readers: Vec<i32> = names
+            .filter_map(|name| name.parse().ok())
+            .filter(is_its_child)
+            .collect();
+        let [reader] = readers[..] else {
+            panic!("one reader, not {readers:?}")
+        };
+        let reader = rustix::process::Pid::from_raw(reader).expect("a process number");
+        rustix::process::kill_process(reader, rustix::process::Signal::KILL)
+            .expect("the reader can be killed");
     }
 
     /// Ends it as a power cut would.
     pub(crate) fn kill(mut self) {
         self.child.kill().expect("the service can be killed");
         let status = self.child.wait().expect("the service has ended");
-        assert_eq!(status.code(), None, "it ended by itself: {status}\n{}", log(self.plant));
+        assert_eq!(
+            status.code(),
+            None,
+            "it ended by itself: {status}\n{}",
+            log(self.plant)
+        );
     }
 
     /// Tells it to stop: it does so in time, and calls that fine.
     pub(crate) fn stop(mut self) {
         let told = Instant::now();
-        let pid = i32::try_from(self.child.id()).ok().and_then(rustix::process::Pid::from_raw);
+        let pid = i32::try_from(self.child.id())
+            .ok()
+            .and_then(rustix::process::Pid::from_raw);
         let pid = pid.expect("a process number");
         rustix::process::kill_process(pid, rustix::process::Signal::TERM).expect("it can be told");
         let status = self.ended_by(told + STOP_LIMIT);

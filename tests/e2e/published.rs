@@ -31,7 +31,9 @@ pub(crate) fn readings(name: &str) -> Vec<Reading> {
 
 fn reading(line: &str) -> Reading {
     let fields: Vec<&str> = line.split(',').collect();
-    let [part, appraiser, trial, value] = fields[..] else { panic!("not a reading: {line}") };
+    let [part, appraiser, trial, value] = fields[..] else {
+        panic!("not a reading: {line}")
+    };
     Reading {
         part: part.parse().expect("a part's number"),
         appraiser: appraiser.to_owned(),
@@ -63,5 +65,8 @@ pub(crate) const TERMS: [(&str, &str); 4] = [
 /// The record's line of that name in the table of mean squares.
 pub(crate) fn line<'a>(record: &'a Value, name: &str) -> &'a Value {
     let lines = record["mean_squares"].as_array().expect("mean squares");
-    lines.iter().find(|l| l["name"] == name).unwrap_or_else(|| panic!("no mean square of {name}"))
+    lines
+        .iter()
+        .find(|l| l["name"] == name)
+        .unwrap_or_else(|| panic!("no mean square of {name}"))
 }

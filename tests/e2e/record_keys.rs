@@ -6,7 +6,9 @@ use serde_json::{Value, json};
 const FIGURE: &str = "figure";
 /// Stands for any value.
 const ANY: &str = "any";
-const FIGURE_KEYS: [&str; 7] = ["estimate", "lower", "upper", "at_least", "interval", "open", "why"];
+const FIGURE_KEYS: [&str; 7] = [
+    "estimate", "lower", "upper", "at_least", "interval", "open", "why",
+];
 
 /// Checks a record of a round.
 #[track_caller]
@@ -21,7 +23,9 @@ pub(crate) fn assert_of_a_plan(record: &Value) {
 #[track_caller]
 pub(crate) fn assert_one_off(record: &Value) {
     compare(record, &wanted(), "record");
-    for key in ["site", "plan", "round", "revision", "measured", "reml", "risk", "draws", "seed"] {
+    for key in [
+        "site", "plan", "round", "revision", "measured", "reml", "risk", "draws", "seed",
+    ] {
         assert_eq!(record[key], Value::Null, "{key}");
     }
     assert_eq!(record["standing"]["before"], Value::Null);
@@ -70,13 +74,19 @@ fn wanted() -> Value {
 fn compare(found: &Value, wanted: &Value, place: &str) {
     match wanted {
         Value::Object(wanted) => {
-            assert_keys(found, &wanted.keys().map(String::as_str).collect::<Vec<_>>(), place);
+            assert_keys(
+                found,
+                &wanted.keys().map(String::as_str).collect::<Vec<_>>(),
+                place,
+            );
             for (key, wanted) in wanted {
                 compare(&found[key], wanted, &format!("{place}.{key}"));
             }
         }
         Value::Array(wanted) => {
-            let found = found.as_array().unwrap_or_else(|| panic!("{place} is no list"));
+            let found = found
+                .as_array()
+                .unwrap_or_else(|| panic!("{place} is no list"));
             for (n, found) in found.iter().enumerate() {
                 compare(found, &wanted[0], &format!("{place}[{n}]"));
             }
@@ -89,7 +99,9 @@ fn compare(found: &Value, wanted: &Value, place: &str) {
 /// Checks that an object has these keys and no others.
 #[track_caller]
 pub(crate) fn assert_keys(found: &Value, wanted: &[&str], place: &str) {
-    let found = found.as_object().unwrap_or_else(|| panic!("{place} is no object: {found}"));
+    let found = found
+        .as_object()
+        .unwrap_or_else(|| panic!("{place} is no object: {found}"));
     let mut keys: Vec<&str> = found.keys().map(String::as_str).collect();
     let mut wanted = wanted.to_vec();
     keys.sort_unstable();

@@ -9,7 +9,10 @@ use std::path::{Path, PathBuf};
 
 /// The project's root.
 fn root() -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).parent().map(Path::to_path_buf).unwrap()
+    Path::new(env!("CARGO_MANIFEST_DIR"))
+        .parent()
+        .map(Path::to_path_buf)
+        .unwrap()
 }
 
 /// Every file below a folder, without what is built.

@@ -21,10 +21,16 @@ fn only_in(folder: &str, word: &str, allowed: &[&str]) {
     for (path, text) in sources(folder) {
         if text.contains(word) {
             met += 1;
-            assert!(allowed.iter().any(|a| path.starts_with(a)), "`{word}` stands in {path}");
+            assert!(
+                allowed.iter().any(|a| path.starts_with(a)),
+                "`{word}` stands in {path}"
+            );
         }
     }
-    assert!(met > 0 || allowed.is_empty(), "`{word}` stands nowhere any more: this rule can go");
+    assert!(
+        met > 0 || allowed.is_empty(),
+        "`{word}` stands nowhere any more: this rule can go"
+    );
 }
 
 #[test]
@@ -41,7 +47,15 @@ fn the_wall_clock_is_read_in_one_place() {
 #[test]
 fn the_core_touches_no_disk_clock_or_network() {
     for folder in ["engine/src", "parsers/src", "config/src"] {
-        for word in ["std::fs", "fs_err", "std::net", "Instant::now", "SystemTime", "Timestamp::now", "std::env"] {
+        for word in [
+            "std::fs",
+            "fs_err",
+            "std::net",
+            "Instant::now",
+            "SystemTime",
+            "Timestamp::now",
+            "std::env",
+        ] {
             only_in(folder, word, &[]);
         }
     }
@@ -49,7 +63,11 @@ fn the_core_touches_no_disk_clock_or_network() {
 
 #[test]
 fn nothing_is_left_open() {
-    let words = [["TO", "DO"].concat(), ["FIX", "ME"].concat(), ["#[ign", "ore"].concat()];
+    let words = [
+        ["TO", "DO"].concat(),
+        ["FIX", "ME"].concat(),
+        ["#[ign", "ore"].concat(),
+    ];
     for folder in ["engine", "parsers", "config", "daemon", "tests"] {
         for (path, text) in sources(folder) {
             for word in &words {
@@ -61,18 +79,30 @@ fn nothing_is_left_open() {
 
 #[test]
 fn no_file_knows_the_machine_it_was_written_on() {
-    let homes = [["/ro", "ot/"].concat(), ["/wo", "rk/"].concat(), ["/ho", "me/"].concat(), ["/Us", "ers/"].concat()];
+    let homes = [
+        ["/ro", "ot/"].concat(),
+        ["/wo", "rk/"].concat(),
+        ["/ho", "me/"].concat(),
+        ["/Us", "ers/"].concat(),
+    ];
     for file in files(&root()) {
-        let Ok(text) = fs_err::read_to_string(&file) else { continue };
+        let Ok(text) = fs_err::read_to_string(&file) else {
+            continue;
+        };
         if file.ends_with("Cargo.lock") || built(&file) {
             continue;
         }
         for home in &homes {
-            assert!(!text.contains(home.as_str()), "`{home}` stands in {}", file.display());
+            assert!(
+                !text.contains(home.as_str()),
+                "`{home}` stands in {}",
+                file.display()
+            );
         }
     }
 }
 
 fn built(file: &Path) -> bool {
-    file.components().any(|c| c.as_os_str() == "target" || c.as_os_str() == ".git")
+    file.components()
+        .any(|c| c.as_os_str() == "target" || c.as_os_str() == ".git")
 }

@@ -7,13 +7,20 @@ use std::process::{Command, Output};
 use super::root;
 
 fn cargo(arguments: &[&str]) -> Output {
-    Command::new(env!("CARGO")).args(arguments).current_dir(root()).output().unwrap()
+    Command::new(env!("CARGO"))
+        .args(arguments)
+        .current_dir(root())
+        .output()
+        .unwrap()
 }
 
 fn installed(tool: &str) -> bool {
     let here = cargo(&[tool, "--version"]).status.success();
     if !here {
-        assert!(std::env::var_os("CI").is_none(), "`cargo {tool}` must be installed here");
+        assert!(
+            std::env::var_os("CI").is_none(),
+            "`cargo {tool}` must be installed here"
+        );
         #[allow(clippy::print_stderr)]
         {
             eprintln!("skipped: `cargo {tool}` is not installed");
@@ -38,7 +45,14 @@ fn the_code_is_formatted() {
 #[test]
 fn clippy_and_the_docs_are_silent() {
     if installed("clippy") {
-        must_succeed(&cargo(&["clippy", "--workspace", "--all-targets", "--", "-D", "warnings"]));
+        must_succeed(&cargo(&[
+            "clippy",
+            "--workspace",
+            "--all-targets",
+            "--",
+            "-D",
+            "warnings",
+        ]));
     }
     let docs = Command::new(env!("CARGO"))
         .args(["doc", "--workspace", "--no-deps"])
@@ -57,6 +71,7 @@ fn the_dependency_tree_is_sound() {
     must_succeed(&cargo(&["deny", "check", "bans", "licenses", "sources"]));
     let advisories = cargo(&["deny", "check", "advisories"]);
     let text = String::from_utf8_lossy(&advisories.stderr);
-    let unreachable = text.contains("failed to fetch") || text.contains("failed to load advisory database");
+    let unreachable =
+        text.contains("failed to fetch") || text.contains("failed to load advisory database");
     assert!(advisories.status.success() || unreachable, "{text}");
 }

@@ -8,14 +8,31 @@ use super::{files, root};
 #[test]
 fn the_top_level_stays_short() {
     let allowed: BTreeSet<&str> = [
-        "Cargo.toml", "Cargo.lock", "README.md", "DEVELOPERS.md", "CHANGELOG.md", "LICENSE-MIT", "LICENSE-APACHE",
-        "rust-toolchain.toml", "clippy.toml", "deny.toml", "engine", "parsers", "config", "daemon", "tests",
-        "fixtures", "target",
+        "Cargo.toml",
+        "Cargo.lock",
+        "README.md",
+        "DEVELOPERS.md",
+        "CHANGELOG.md",
+        "LICENSE-MIT",
+        "LICENSE-APACHE",
+        "rust-toolchain.toml",
+        "clippy.toml",
+        "deny.toml",
+        "engine",
+        "parsers",
+        "config",
+        "daemon",
+        "tests",
+        "fixtures",
+        "target",
     ]
     .into();
     for entry in fs_err::read_dir(root()).unwrap() {
         let name = entry.unwrap().file_name().into_string().unwrap();
-        assert!(name.starts_with('.') || allowed.contains(name.as_str()), "`{name}` lies at the top level");
+        assert!(
+            name.starts_with('.') || allowed.contains(name.as_str()),
+            "`{name}` lies at the top level"
+        );
     }
 }
 
@@ -65,7 +82,9 @@ fn every_fixture_names_its_origin() {
         let text = fs_err::read_to_string(&origin).unwrap();
         let stem = name.split('.').next().unwrap();
         assert!(
-            text.contains(name) || text.contains(&format!("`{stem}`")) || listed_by_pattern(&text, name),
+            text.contains(name)
+                || text.contains(&format!("`{stem}`"))
+                || listed_by_pattern(&text, name),
             "{} does not name `{name}`",
             origin.display()
         );
@@ -76,7 +95,9 @@ fn every_fixture_names_its_origin() {
 fn listed_by_pattern(text: &str, name: &str) -> bool {
     text.split('`').any(|word| {
         word.split_once('*').is_some_and(|(start, end)| {
-            start.len() >= 2 && name.starts_with(start) && name.ends_with(end.trim_start_matches('*'))
+            start.len() >= 2
+                && name.starts_with(start)
+                && name.ends_with(end.trim_start_matches('*'))
         })
     })
 }

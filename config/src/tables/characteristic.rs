@@ -6,10 +6,10 @@
 use restudy_engine::{Limits, OneSided, Process};
 
 use crate::checked::Characteristic;
-use restudy_parsers::{fold, nearest};
 use crate::source::Place;
 use crate::tables::judging::{OwnLimits, one_sided, own_limits, process};
 use crate::walk::{Node, Table};
+use restudy_parsers::{fold, nearest};
 
 /// What is said about one characteristic, and where.
 #[derive(Debug, Clone)]

@@ -5,10 +5,10 @@ use std::path::PathBuf;
 use crate::checked::{Instrument, Site};
 use crate::duration::duration;
 use crate::folders::{Folders, nested};
-use restudy_parsers::fold;
 use crate::patterns::{overlapping, patterns};
 use crate::tables::rule::rule;
 use crate::walk::{Node, Table};
+use restudy_parsers::fold;
 
 /// The instruments as far as they could be read.
 #[derive(Debug, Default)]

@@ -1,8 +1,8 @@
 //! The levels of a factor: so many, or these.
 
 use crate::checked::{FactorLevels, Label};
-use restudy_parsers::fold;
 use crate::walk::Node;
+use restudy_parsers::fold;
 
 /// Levels of one factor at most; bounds memory and the length of a report.
 const LEVELS_MAX: u32 = 10_000;

@@ -5,10 +5,10 @@
 
 use restudy_engine::OneSided;
 
-use restudy_parsers::{fold, nearest};
 use crate::source::{Place, Source, shortened};
 use crate::tables::characteristic::Draft;
 use crate::tables::judging::{ONE_SIDED, OwnLimits};
+use restudy_parsers::{fold, nearest};
 
 const HEADINGS: [&str; 7] = [
     "name",

@@ -5,7 +5,6 @@ use restudy_engine::{Judge, Limits};
 use crate::checked::{Appraisers, Characteristic, Plan, PlanFactor};
 use crate::duration::duration;
 use crate::folders::Folders;
-use restudy_parsers::{fold, nearest};
 use crate::place::regex;
 use crate::source::{Place, Source, shortened};
 use crate::tables::instrument::{Instruments, unique};
@@ -14,6 +13,7 @@ use crate::tables::levels::{count, levels};
 use crate::tables::plan_instruments::{fits, reached};
 use crate::tables::{characteristic, list};
 use crate::walk::{Node, Table};
+use restudy_parsers::{fold, nearest};
 
 /// Runs of one round at most; bounds memory, run time and the length of a report.
 const RUNS_MAX: usize = 10_000;

@@ -3,9 +3,9 @@
 use restudy_parsers::Trial;
 
 use crate::checked::{Instrument, Plan};
-use restudy_parsers::{fold, nearest};
 use crate::source::Place;
 use crate::walk::Table;
+use restudy_parsers::{fold, nearest};
 
 /// Tells everything in which plan and instrument do not fit.
 pub(crate) fn fits(

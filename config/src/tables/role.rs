@@ -4,9 +4,9 @@ use std::collections::BTreeMap;
 
 use restudy_parsers::{Cell, Role};
 
-use restudy_parsers::fold;
 use crate::place::{cell, is_xml_path, regex};
 use crate::walk::{Node, Table};
+use restudy_parsers::fold;
 
 /// What the form of the export offers to roles.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]

@@ -1,10 +1,10 @@
 //! `[[route]]`: who gets which notices.
 
 use crate::checked::{NoticeKind, Route};
-use restudy_parsers::{fold, nearest};
 use crate::tables::mail::addresses;
 use crate::tables::plan::Plans;
 use crate::walk::{Node, Table};
+use restudy_parsers::{fold, nearest};
 
 const KINDS: [(&str, NoticeKind); 2] = [
     ("standing", NoticeKind::Standing),

@@ -7,12 +7,12 @@ use restudy_parsers::{
 };
 
 use crate::checked::Site;
-use restudy_parsers::fold;
 use crate::place::is_each;
 use crate::source::shortened;
 use crate::tables::role::{PLACES, Shape, role, role_in, table as role_table};
 use crate::tables::taken::taken;
 use crate::walk::{Node, Table};
+use restudy_parsers::fold;
 
 /// Names that mean a role of their own and so cannot name a further factor.
 const RESERVED: [&str; 6] = [

@@ -32,13 +32,22 @@ impl Outcome {
     /// Where it stands.
     #[must_use]
     pub fn standing(&self) -> Standing {
-        self.study.as_ref().map_or(Standing::NotJudged, |r| r.standing.now)
+        self.study
+            .as_ref()
+            .map_or(Standing::NotJudged, |r| r.standing.now)
     }
 
     /// Gauge share of tolerance.
     #[must_use]
     pub fn share(&self) -> Option<f64> {
-        self.study.as_ref().ok()?.study.figures.gauge.share_of_tolerance.estimate
+        self.study
+            .as_ref()
+            .ok()?
+            .study
+            .figures
+            .gauge
+            .share_of_tolerance
+            .estimate
     }
 }
 
@@ -50,7 +59,11 @@ pub fn work_out(
     evidence: &Evidence,
     before: &dyn Fn(&str) -> Option<Standing>,
 ) -> Vec<Outcome> {
-    let listed = |label: &str| plan.characteristics.iter().find(|c| fold(&c.name) == fold(label));
+    let listed = |label: &str| {
+        plan.characteristics
+            .iter()
+            .find(|c| fold(&c.name) == fold(label))
+    };
     evidence
         .features
         .iter()
@@ -106,17 +119,32 @@ fn one(
         upper: drawing.upper,
         one_sided: named.and_then(|c| c.one_sided),
     };
-    let mut study =
-        restudy_engine::analyse(&design, &feature.cells, &feature.values, &tolerance, &settings)
-            .map_err(|e| e.to_string())?;
-    if let Some(differ) = feature.limits_differ.as_ref().filter(|_| drawing.from_export) {
+    let mut study = restudy_engine::analyse(
+        &design,
+        &feature.cells,
+        &feature.values,
+        &tolerance,
+        &settings,
+    )
+    .map_err(|e| e.to_string())?;
+    if let Some(differ) = feature
+        .limits_differ
+        .as_ref()
+        .filter(|_| drawing.from_export)
+    {
         study.remarks.push(Remark {
             kind: "limits differ",
             text: format!("{differ}; the first ones were used."),
             figures: std::collections::BTreeMap::new(),
         });
     }
-    let judgement = judge(study.judged_share, &settings, limits, before, &study.figures.gauge.share_of_tolerance);
+    let judgement = judge(
+        study.judged_share,
+        &settings,
+        limits,
+        before,
+        &study.figures.gauge.share_of_tolerance,
+    );
     Ok(Record {
         schema: SCHEMA,
         site: Some(site.to_owned()),
@@ -155,14 +183,21 @@ fn drawing(feature: &Feature, named: Option<&Characteristic>) -> Result<Drawing,
         upper: feature.upper,
         from_export: true,
     };
-    let Some(named) = named else { return Ok(exported) };
+    let Some(named) = named else {
+        return Ok(exported);
+    };
     if named.lower.is_none() && named.upper.is_none() {
-        return Ok(Drawing { nominal: named.nominal.or(feature.nominal), ..exported });
+        return Ok(Drawing {
+            nominal: named.nominal.or(feature.nominal),
+            ..exported
+        });
     }
     if let (Some(planned), Some(found)) = (&named.unit, &feature.unit)
         && fold(planned) != fold(found)
     {
-        return Err(format!("the plan's limits are in {planned}, the readings in {found}"));
+        return Err(format!(
+            "the plan's limits are in {planned}, the readings in {found}"
+        ));
     }
     Ok(Drawing {
         nominal: named.nominal.or(feature.nominal),
@@ -173,9 +208,16 @@ fn drawing(feature: &Feature, named: Option<&Characteristic>) -> Result<Drawing,
 }
 
 fn design(evidence: &Evidence) -> Result<Design, String> {
-    let factors = evidence.factors.iter().filter(|f| f.name == "part" || f.levels.len() > 1);
+    let factors = evidence
+        .factors
+        .iter()
+        .filter(|f| f.name == "part" || f.levels.len() > 1);
     let factors = factors
-        .map(|f| Factor { name: f.name.clone(), levels: f.levels.len(), within: Vec::new() })
+        .map(|f| Factor {
+            name: f.name.clone(),
+            levels: f.levels.len(),
+            within: Vec::new(),
+        })
         .collect();
     Design::new(factors).map_err(|e| e.to_string())
 }
@@ -190,26 +232,53 @@ fn judge(
     let now = standing(share, &limits, before);
     let (judged_by, what) = match settings.judge {
         Judge::Estimate => ("estimate", "the estimated share".to_owned()),
-        Judge::Chance(p) => ("chance", format!("the share that is exceeded with confidence {p}")),
+        Judge::Chance(p) => (
+            "chance",
+            format!("the share that is exceeded with confidence {p}"),
+        ),
         Judge::Upper => ("upper", "the upper limit of the share".to_owned()),
     };
     let percent = |x: f64| format!("{:.1} %", 100.0 * x);
     let why = match (share, now) {
-        (None, _) => figure.why.as_deref().unwrap_or("there is no share of tolerance").to_owned(),
+        (None, _) => figure
+            .why
+            .as_deref()
+            .unwrap_or("there is no share of tolerance")
+            .to_owned(),
         (Some(share), Standing::Act) if share <= limits.act => format!(
             "{what} is {}, not yet below {} × the act limit {}",
-            percent(share), limits.back_below, percent(limits.act)
+            percent(share),
+            limits.back_below,
+            percent(limits.act)
         ),
         (Some(share), Standing::Watch) if share <= limits.watch => format!(
             "{what} is {}, not yet below {} × the watch limit {}",
-            percent(share), limits.back_below, percent(limits.watch)
+            percent(share),
+            limits.back_below,
+            percent(limits.watch)
         ),
-        (Some(share), Standing::Act) => format!("{what} is {}, above the act limit {}", percent(share), percent(limits.act)),
+        (Some(share), Standing::Act) => format!(
+            "{what} is {}, above the act limit {}",
+            percent(share),
+            percent(limits.act)
+        ),
         (Some(share), Standing::Watch) => format!(
             "{what} is {}, above the watch limit {}, not above the act limit {}",
-            percent(share), percent(limits.watch), percent(limits.act)
+            percent(share),
+            percent(limits.watch),
+            percent(limits.act)
         ),
-        (Some(share), _) => format!("{what} is {}, not above the watch limit {}", percent(share), percent(limits.watch)),
+        (Some(share), _) => format!(
+            "{what} is {}, not above the watch limit {}",
+            percent(share),
+            percent(limits.watch)
+        ),
     };
-    Judgement { now, before, limits: Some(limits), judged_by: Some(judged_by), why }
+    Judgement {
+        now,
+        before,
+        limits: Some(limits),
+        judged_by: Some(judged_by),
+        why,
+    }
 }

@@ -86,7 +86,9 @@ impl FromStr for OneSidedText {
             .and_then(|rest| rest.trim_start_matches([' ', '=']).parse::<f64>().ok())
             .filter(|w| w.is_finite() && *w > 0.0)
             .map(|w| Self(OneSided::Width(w)))
-            .ok_or_else(|| "expected `from zero`, `width=NUMBER`, `to process mean` or `to study mean`".into())
+            .ok_or_else(|| {
+                "expected `from zero`, `width=NUMBER`, `to process mean` or `to study mean`".into()
+            })
     }
 }
 
@@ -101,7 +103,10 @@ impl FromStr for ProcessText {
             return Ok(Self(Process::StudyParts));
         }
         let numbers = text.split_once(',').and_then(|(mean, sd)| {
-            Some((mean.trim().parse::<f64>().ok()?, sd.trim().parse::<f64>().ok()?))
+            Some((
+                mean.trim().parse::<f64>().ok()?,
+                sd.trim().parse::<f64>().ok()?,
+            ))
         });
         numbers
             .filter(|(mean, sd)| mean.is_finite() && sd.is_finite() && *sd > 0.0)
@@ -165,16 +170,23 @@ fn settings(line: &Line) -> Result<Settings, Failure> {
         if x > 0.0 && x < 1.0 {
             Ok(x)
         } else {
-            Err(Failure::usage(format!("--{name} is {x}; expected a fraction between 0 and 1")))
+            Err(Failure::usage(format!(
+                "--{name} is {x}; expected a fraction between 0 and 1"
+            )))
         }
     };
     if !(line.spread_sds.is_finite() && line.spread_sds > 0.0) {
-        return Err(Failure::usage(format!("--spread-sds is {}; expected a number above 0", line.spread_sds)));
+        return Err(Failure::usage(format!(
+            "--spread-sds is {}; expected a number above 0",
+            line.spread_sds
+        )));
     }
     if let (Some(lower), Some(upper)) = (line.lower, line.upper)
         && lower >= upper
     {
-        return Err(Failure::usage(format!("--lower {lower} is not below --upper {upper}")));
+        return Err(Failure::usage(format!(
+            "--lower {lower} is not below --upper {upper}"
+        )));
     }
     Ok(Settings {
         confidence: fraction("confidence", line.confidence)?,
@@ -197,7 +209,11 @@ struct File {
 
 /// Reads the files; a refused one costs only itself.
 fn read_all(line: &Line) -> Result<(Vec<File>, End), Failure> {
-    let config = line.config.as_deref().map(configuration::sound).transpose()?;
+    let config = line
+        .config
+        .as_deref()
+        .map(configuration::sound)
+        .transpose()?;
     let mut files = Vec::new();
     let mut end = End::Fine;
     for path in &line.files {
@@ -212,14 +228,24 @@ fn read_all(line: &Line) -> Result<(Vec<File>, End), Failure> {
             Ok(parsed) => {
                 for aside in &parsed.set_aside {
                     end = End::BadNews;
-                    complain(&format!("{shown}: set aside: {}", aside.reason), aside.hint.as_deref());
+                    complain(
+                        &format!("{shown}: set aside: {}", aside.reason),
+                        aside.hint.as_deref(),
+                    );
                 }
                 let bytes = fs_err::read(path).map_err(|e| Failure::usage(e.to_string()))?;
-                files.push(File { shown, sha256: hex(&Sha256::digest(&bytes)), parsed });
+                files.push(File {
+                    shown,
+                    sha256: hex(&Sha256::digest(&bytes)),
+                    parsed,
+                });
             }
             Err(refused) => {
                 end = End::BadNews;
-                complain(&format!("{shown}: {}", refused.sentence), refused.hint.as_deref());
+                complain(
+                    &format!("{shown}: {}", refused.sentence),
+                    refused.hint.as_deref(),
+                );
             }
         }
     }
@@ -233,7 +259,13 @@ fn read_plain(path: &Path) -> Result<Result<Parsed, Refused>, Failure> {
         if restudy_parsers::is_workbook(bytes) {
             return preview::read_workbook(&shown, bytes, &Ask::Plain(plain.clone()));
         }
-        Ok(restudy_parsers::read_plain(Export { path: &shown, bytes }, &plain))
+        Ok(restudy_parsers::read_plain(
+            Export {
+                path: &shown,
+                bytes,
+            },
+            &plain,
+        ))
     })
 }
 
@@ -252,23 +284,29 @@ fn gather(files: &[File]) -> Material {
     for file in files {
         for reading in &file.parsed.readings {
             let run = &file.parsed.runs[reading.run];
-            let at = *index.entry(fold(&reading.characteristic)).or_insert_with(|| {
-                characteristics.push(Gathered {
-                    label: reading.characteristic.clone(),
-                    unit: reading.unit.clone(),
-                    nominal: reading.nominal,
-                    lower: reading.lower,
-                    upper: reading.upper,
-                    ..Gathered::default()
+            let at = *index
+                .entry(fold(&reading.characteristic))
+                .or_insert_with(|| {
+                    characteristics.push(Gathered {
+                        label: reading.characteristic.clone(),
+                        unit: reading.unit.clone(),
+                        nominal: reading.nominal,
+                        lower: reading.lower,
+                        upper: reading.upper,
+                        ..Gathered::default()
+                    });
+                    characteristics.len() - 1
                 });
-                characteristics.len() - 1
-            });
             let gathered = &mut characteristics[at];
             let mut labels = vec![run.part.clone()];
             if has_appraiser {
                 labels.push(run.appraiser.clone().unwrap_or_default());
             }
-            labels.extend(further.iter().map(|f| run.factors.get(f).cloned().unwrap_or_default()));
+            labels.extend(
+                further
+                    .iter()
+                    .map(|f| run.factors.get(f).cloned().unwrap_or_default()),
+            );
             gathered.add(labels, run.trial.as_deref(), run.taken, reading);
         }
     }
@@ -283,11 +321,17 @@ fn gather(files: &[File]) -> Material {
     Material {
         factors,
         characteristics,
-        measured: stamps().min().zip(stamps().max()).map(|(first, last)| Measured { first, last }),
+        measured: stamps()
+            .min()
+            .zip(stamps().max())
+            .map(|(first, last)| Measured { first, last }),
         same,
         source: files
             .iter()
-            .map(|f| Source { export: f.shown.clone(), sha256: f.sha256.clone() })
+            .map(|f| Source {
+                export: f.shown.clone(),
+                sha256: f.sha256.clone(),
+            })
             .collect(),
     }
 }
@@ -303,12 +347,19 @@ impl Gathered {
         if self.unit != reading.unit {
             self.fault.get_or_insert_with(|| {
                 let unit = |u: &Option<String>| u.clone().unwrap_or_else(|| "no unit".into());
-                format!("readings come in {} and in {}", unit(&self.unit), unit(&reading.unit))
+                format!(
+                    "readings come in {} and in {}",
+                    unit(&self.unit),
+                    unit(&reading.unit)
+                )
             });
         }
         if (self.lower, self.upper) != (reading.lower, reading.upper) {
             self.fault.get_or_insert_with(|| {
-                format!("the tolerance limits differ between readings ({})", reading.origin)
+                format!(
+                    "the tolerance limits differ between readings ({})",
+                    reading.origin
+                )
             });
         }
         if trial.is_some() || taken.is_some() {
@@ -320,7 +371,10 @@ impl Gathered {
                     let who = labels.join(" ");
                     let trial = trial.map(|t| format!(" trial {t}")).unwrap_or_default();
                     self.fault.get_or_insert_with(|| {
-                        format!("{who}{trial} is given twice, as {value} and as {}", reading.value)
+                        format!(
+                            "{who}{trial} is given twice, as {value} and as {}",
+                            reading.value
+                        )
                     });
                 }
                 None => {}
@@ -339,9 +393,12 @@ fn study(
     if let Some(fault) = &gathered.fault {
         return Err(fault.clone());
     }
-    let levels: Vec<Vec<String>> = (0..material.factors.len()).map(|f| levels(gathered, f)).collect();
-    let kept: Vec<usize> =
-        (0..levels.len()).filter(|&f| f == 0 || levels[f].len() > 1).collect();
+    let levels: Vec<Vec<String>> = (0..material.factors.len())
+        .map(|f| levels(gathered, f))
+        .collect();
+    let kept: Vec<usize> = (0..levels.len())
+        .filter(|&f| f == 0 || levels[f].len() > 1)
+        .collect();
     let factors = kept.iter().map(|&f| Factor {
         name: material.factors[f].clone(),
         levels: levels[f].len(),
@@ -355,7 +412,11 @@ fn study(
             cell * levels[f].len() + level
         })
     };
-    let cells: Vec<usize> = gathered.rows.iter().map(|(labels, _)| cell(labels)).collect();
+    let cells: Vec<usize> = gathered
+        .rows
+        .iter()
+        .map(|(labels, _)| cell(labels))
+        .collect();
     let values: Vec<f64> = gathered.rows.iter().map(|(_, value)| *value).collect();
     let tolerance = Tolerance {
         lower: gathered.lower.or(line.lower),
@@ -378,7 +439,10 @@ fn study(
         lower: tolerance.lower,
         upper: tolerance.upper,
         standing: unjudged(&study),
-        readings: Counts { used: values.len(), ..Counts::default() },
+        readings: Counts {
+            used: values.len(),
+            ..Counts::default()
+        },
         study,
         same: material.same.clone(),
         decisions: Vec::new(),
@@ -389,7 +453,11 @@ fn study(
 
 /// Folded level names in natural order.
 fn levels(gathered: &Gathered, factor: usize) -> Vec<String> {
-    let mut names: Vec<String> = gathered.rows.iter().map(|(labels, _)| fold(&labels[factor])).collect();
+    let mut names: Vec<String> = gathered
+        .rows
+        .iter()
+        .map(|(labels, _)| fold(&labels[factor]))
+        .collect();
     names.sort_by(|a, b| natural::compare(a, b));
     names.dedup();
     names
@@ -404,12 +472,19 @@ fn in_names(
 ) -> String {
     let mut counts: BTreeMap<Vec<String>, usize> = BTreeMap::new();
     let all: Vec<Vec<String>> = kept.iter().map(|&f| levels(gathered, f)).collect();
-    for combination in all.iter().fold(vec![Vec::new()], |cells: Vec<Vec<String>>, names| {
-        cells
-            .iter()
-            .flat_map(|c| names.iter().map(|n| c.iter().cloned().chain([n.clone()]).collect()))
-            .collect()
-    }) {
+    for combination in all
+        .iter()
+        .fold(vec![Vec::new()], |cells: Vec<Vec<String>>, names| {
+            cells
+                .iter()
+                .flat_map(|c| {
+                    names
+                        .iter()
+                        .map(|n| c.iter().cloned().chain([n.clone()]).collect())
+                })
+                .collect()
+        })
+    {
         counts.insert(combination, 0);
     }
     for (labels, _) in &gathered.rows {
@@ -422,19 +497,29 @@ fn in_names(
         .filter(|(_, n)| **n != most)
         .take(3)
         .map(|(names, n)| {
-            let named: Vec<String> =
-                kept.iter().zip(names).map(|(&f, n)| format!("{} {n}", material.factors[f])).collect();
+            let named: Vec<String> = kept
+                .iter()
+                .zip(names)
+                .map(|(&f, n)| format!("{} {n}", material.factors[f]))
+                .collect();
             format!("{} has {n} of {most}", named.join(", "))
         })
         .collect();
-    if odd.is_empty() { error.to_string() } else { format!("{error} ({})", odd.join("; ")) }
+    if odd.is_empty() {
+        error.to_string()
+    } else {
+        format!("{error} ({})", odd.join("; "))
+    }
 }
 
 fn unjudged(study: &Study) -> Judgement {
     let share = &study.figures.gauge.share_of_tolerance;
     let why = match share.estimate {
         Some(_) => "outside a plan there are no limits to judge by",
-        None => share.why.as_deref().unwrap_or("there is no share of tolerance"),
+        None => share
+            .why
+            .as_deref()
+            .unwrap_or("there is no share of tolerance"),
     };
     Judgement {
         now: Standing::NotJudged,
@@ -448,9 +533,16 @@ fn unjudged(study: &Study) -> Judgement {
 fn for_people(record: &Record) -> String {
     let study = &record.study;
     let layout = &study.design;
-    let factors: Vec<String> =
-        layout.factors.iter().map(|f| format!("{} {}", f.levels, f.name)).collect();
-    let unit = record.unit.as_deref().map(|u| format!(" in {u}")).unwrap_or_default();
+    let factors: Vec<String> = layout
+        .factors
+        .iter()
+        .map(|f| format!("{} {}", f.levels, f.name))
+        .collect();
+    let unit = record
+        .unit
+        .as_deref()
+        .map(|u| format!(" in {u}"))
+        .unwrap_or_default();
     let mut out = format!(
         "{}: {} × {} trials, {} readings{unit}\n\n",
         record.characteristic,
@@ -463,7 +555,10 @@ fn for_people(record: &Record) -> String {
     let figures = &study.figures;
     let rows = [
         ("EV, repeatability", &figures.repeatability),
-        ("AV, reproducibility with interaction", &figures.reproducibility),
+        (
+            "AV, reproducibility with interaction",
+            &figures.reproducibility,
+        ),
         ("GRR, gauge", &figures.gauge),
         ("PV, part", &figures.part),
         ("TV, total", &figures.total),
@@ -482,11 +577,23 @@ fn for_people(record: &Record) -> String {
             percent(spread.share_of_tv.estimate),
         ]
     });
-    let level = format!("{} % limits: lower", significant(100.0 * study.confidence, 3));
+    let level = format!(
+        "{} % limits: lower",
+        significant(100.0 * study.confidence, 3)
+    );
     let headings = ["", "sd", level.as_str(), "upper", "of tolerance", "of TV"];
     out.push_str(&table(&headings, &[1, 2, 3, 4, 5], rows.collect()));
     let rows = study.mean_squares.iter().map(|line| {
-        let p = line.p.map_or_else(|| "–".into(), |p| if p < 0.0001 { "< 0.0001".into() } else { format!("{p:.4}") });
+        let p = line.p.map_or_else(
+            || "–".into(),
+            |p| {
+                if p < 0.0001 {
+                    "< 0.0001".into()
+                } else {
+                    format!("{p:.4}")
+                }
+            },
+        );
         vec![
             line.name.to_string(),
             line.df.to_string(),
@@ -497,7 +604,14 @@ fn for_people(record: &Record) -> String {
         ]
     });
     out.push('\n');
-    let headings = ["mean squares", "df", "sum of squares", "mean square", "F", "p"];
+    let headings = [
+        "mean squares",
+        "df",
+        "sum of squares",
+        "mean square",
+        "F",
+        "p",
+    ];
     out.push_str(&table(&headings, &[1, 2, 3, 4, 5], rows.collect()));
     let share = &figures.gauge.share_of_tolerance;
     out.push('\n');

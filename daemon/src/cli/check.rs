@@ -26,8 +26,16 @@ struct Report {
 
 pub(super) fn run(line: &Line) -> Answer {
     let report = match configuration::check(&line.config.config)? {
-        Err(faults) => Report { faults, warnings: Vec::new(), state: None },
-        Ok((config, warnings)) => Report { faults: Vec::new(), warnings, state: state(&config) },
+        Err(faults) => Report {
+            faults,
+            warnings: Vec::new(),
+            state: None,
+        },
+        Ok((config, warnings)) => Report {
+            faults: Vec::new(),
+            warnings,
+            state: state(&config),
+        },
     };
     let sound = report.faults.is_empty() && report.state.is_none();
     if line.json {
@@ -47,7 +55,10 @@ pub(super) fn run(line: &Line) -> Answer {
         }
     }
     match (report.faults.is_empty(), report.state) {
-        (false, _) => Err(Failure::usage(format!("{}: not sound", line.config.config.display()))),
+        (false, _) => Err(Failure::usage(format!(
+            "{}: not sound",
+            line.config.config.display()
+        ))),
         (true, Some(_)) => Ok(End::BadNews),
         (true, None) => Ok(End::Fine),
     }
@@ -60,7 +71,9 @@ fn state(config: &Config) -> Option<String> {
         Err(LedgerError::Absent(_)) => {
             let probe = fs_err::create_dir_all(&config.state)
                 .and_then(|()| tempfile::NamedTempFile::new_in(&config.state).map(drop));
-            probe.err().map(|e| format!("the state folder cannot be written: {e}"))
+            probe
+                .err()
+                .map(|e| format!("the state folder cannot be written: {e}"))
         }
         Err(error) => Some(crate::service::chain(&error)),
     }

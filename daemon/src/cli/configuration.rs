@@ -34,7 +34,12 @@ pub(super) fn check(path: &Path) -> Result<Checked, Failure> {
     })?;
     let whole = std::path::absolute(path).unwrap_or_else(|_| path.to_owned());
     let folder = whole.parent().map_or_else(PathBuf::new, Path::to_owned);
-    Ok(restudy_config::read(&text, &path.display().to_string(), &folder, &RealDisk))
+    Ok(restudy_config::read(
+        &text,
+        &path.display().to_string(),
+        &folder,
+        &RealDisk,
+    ))
 }
 
 /// A sound configuration; its faults are printed otherwise.

@@ -58,7 +58,9 @@ pub(super) fn run(line: &Line) -> Answer {
     };
     let watched = watch_it_work(&config, &folder, &stop);
     stop.now();
-    let served = service.join().unwrap_or(Err(ServiceError::Stage("service")));
+    let served = service
+        .join()
+        .unwrap_or(Err(ServiceError::Stage("service")));
     served.map_err(|e| Failure::machine(&e))?;
     watched?;
     show(&config, &config_path, &folder, line.keep.is_some())?;
@@ -94,9 +96,11 @@ fn watch_it_work(config: &Config, folder: &Path, stop: &Stop) -> Result<(), Fail
     let total = exports.len() as u32;
     for (index, export) in exports.iter().enumerate() {
         if stop.is_set() {
-            return Err(Failure::Machine("stopped before the exports had arrived".into()));
+            return Err(Failure::Machine(
+                "stopped before the exports had arrived".into(),
+            ));
         }
-        export.write(folder).map_err(|e| Failure::Machine(e))?;
+        export.write(folder).map_err(Failure::Machine)?;
         bar.set_position(index as u64 + 1);
         bar.set_message(progress(config)?);
         let due = ARRIVAL * (index as u32 + 1) / total;
@@ -112,7 +116,9 @@ fn watch_it_work(config: &Config, folder: &Path, stop: &Stop) -> Result<(), Fail
             return Ok(());
         }
         if stop.is_set() || Instant::now() > deadline {
-            return Err(Failure::Machine("the service did not finish both rounds in time".into()));
+            return Err(Failure::Machine(
+                "the service did not finish both rounds in time".into(),
+            ));
         }
         std::thread::sleep(Duration::from_millis(100));
     }
@@ -134,22 +140,27 @@ fn rounds(config: &Config) -> Result<Vec<RoundRow>, Failure> {
 }
 
 fn progress(config: &Config) -> Result<String, Failure> {
-    let said: Vec<String> =
-        rounds(config)?.iter().map(|r| format!("round {} {}", r.number, r.state.as_str())).collect();
+    let said: Vec<String> = rounds(config)?
+        .iter()
+        .map(|r| format!("round {} {}", r.number, r.state.as_str()))
+        .collect();
     Ok(said.join(", "))
 }
 
 /// The studies, the alert, and where the reports lie.
 fn show(config: &Config, config_path: &Path, folder: &Path, kept: bool) -> Result<(), Failure> {
     results::print_history(config)?;
-    let ledger = SharedLedger::new(Ledger::open_to_read(&config.state).map_err(|e| Failure::machine(&e))?);
+    let ledger =
+        SharedLedger::new(Ledger::open_to_read(&config.state).map_err(|e| Failure::machine(&e))?);
     for plan in &config.plans {
         for round in rounds(config)? {
             let number = round.number;
             let worked =
                 Worked::load(&ledger, config, plan, round).map_err(|e| Failure::machine(&e))?;
             let Some(mail) = notice::draft(config, plan, &worked, plant::RECIPIENT) else {
-                print(&format!("\nRound {number}: nothing needs a person, so nobody would have been written to.\n"))?;
+                print(&format!(
+                    "\nRound {number}: nothing needs a person, so nobody would have been written to.\n"
+                ))?;
                 continue;
             };
             let eml = folder.join(format!("alert-round-{number}.eml"));
@@ -162,10 +173,16 @@ fn show(config: &Config, config_path: &Path, folder: &Path, kept: bool) -> Resul
                 mail.text.trim_end()
             ))?;
         }
-        print(&format!("\nReports: {}\n", report::folder(&config.state, &plan.name).display()))?;
+        print(&format!(
+            "\nReports: {}\n",
+            report::folder(&config.state, &plan.name).display()
+        ))?;
     }
     if kept {
-        print(&format!("Go on with it: restudy serve --config {}\n", config_path.display()))?;
+        print(&format!(
+            "Go on with it: restudy serve --config {}\n",
+            config_path.display()
+        ))?;
     }
     Ok(())
 }

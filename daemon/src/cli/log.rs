@@ -15,9 +15,14 @@ pub(super) enum Form {
 /// Starts logging; `RESTUDY_LOG` sets what is logged (`info` without it).
 pub(super) fn start(form: Form) {
     let filter = EnvFilter::try_from_env("RESTUDY_LOG").unwrap_or_else(|_| EnvFilter::new("info"));
-    let lines = tracing_subscriber::fmt().with_env_filter(filter).with_writer(std::io::stderr);
+    let lines = tracing_subscriber::fmt()
+        .with_env_filter(filter)
+        .with_writer(std::io::stderr);
     match form {
-        Form::Human => lines.with_target(false).with_ansi(std::io::IsTerminal::is_terminal(&std::io::stderr())).init(),
+        Form::Human => lines
+            .with_target(false)
+            .with_ansi(std::io::IsTerminal::is_terminal(&std::io::stderr()))
+            .init(),
         Form::Json => lines.json().init(),
     }
 }

@@ -86,10 +86,17 @@ pub(super) fn run(line: &Line) -> Answer {
 
 /// The instrument of that name.
 pub(super) fn instrument<'a>(config: &'a Config, name: &str) -> Result<&'a Instrument, Failure> {
-    config.instruments.iter().find(|i| i.name == name).ok_or_else(|| {
-        let known: Vec<&str> = config.instruments.iter().map(|i| i.name.as_str()).collect();
-        Failure::usage(format!("no instrument is called `{name}`; there are: {}", known.join(", ")))
-    })
+    config
+        .instruments
+        .iter()
+        .find(|i| i.name == name)
+        .ok_or_else(|| {
+            let known: Vec<&str> = config.instruments.iter().map(|i| i.name.as_str()).collect();
+            Failure::usage(format!(
+                "no instrument is called `{name}`; there are: {}",
+                known.join(", ")
+            ))
+        })
 }
 
 /// Reads one file by an instrument's rule.
@@ -100,7 +107,7 @@ pub(super) fn read_file(
     let path = path_below(instrument, file);
     read_bytes(file, instrument.rule.bounds.file_bytes, |bytes| {
         if restudy_parsers::is_workbook(bytes) {
-            return read_workbook(&path, bytes, &Ask::Rule(instrument.rule.clone()));
+            return read_workbook(&path, bytes, &Ask::Rule(Box::new(instrument.rule.clone())));
         }
         let reader = Reader::new(&instrument.rule).map_err(|e| Failure::machine(&e))?;
         Ok(reader.read(Export { path: &path, bytes }))
@@ -178,12 +185,17 @@ fn for_people(parsed: &Parsed) -> String {
     let rows = parsed.runs.iter().enumerate().map(|(index, run)| {
         let readings = parsed.readings.iter().filter(|r| r.run == index).count();
         let others = run.factors.iter().chain(&run.same);
-        let others: Vec<String> = others.map(|(name, value)| format!("{name} {value}")).collect();
+        let others: Vec<String> = others
+            .map(|(name, value)| format!("{name} {value}"))
+            .collect();
         vec![
             run.part.clone(),
             text(&run.appraiser),
             text(&run.trial),
-            run.taken.map_or_else(|| "–".into(), |t| t.strftime("%Y-%m-%d %H:%M:%S").to_string()),
+            run.taken.map_or_else(
+                || "–".into(),
+                |t| t.strftime("%Y-%m-%d %H:%M:%S").to_string(),
+            ),
             others.join(", "),
             readings.to_string(),
         ]

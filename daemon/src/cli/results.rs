@@ -34,8 +34,18 @@ pub(super) struct Line {
 }
 
 const HEADINGS: [&str; 12] = [
-    "plan", "round", "revision", "closed", "characteristic", "standing", "share %", "at least %",
-    "ev", "grr", "unit", "ndc",
+    "plan",
+    "round",
+    "revision",
+    "closed",
+    "characteristic",
+    "standing",
+    "share %",
+    "at least %",
+    "ev",
+    "grr",
+    "unit",
+    "ndc",
 ];
 const NUMBERS: [usize; 7] = [1, 2, 6, 7, 8, 9, 11];
 
@@ -61,7 +71,11 @@ pub(super) fn run(line: &Line) -> Answer {
         print("No study has been recorded yet.\n")?;
     } else {
         print(&table(&HEADINGS, &NUMBERS, rows))?;
-        for plan in config.plans.iter().filter(|p| line.plan.as_ref().is_none_or(|n| *n == p.name)) {
+        for plan in config
+            .plans
+            .iter()
+            .filter(|p| line.plan.as_ref().is_none_or(|n| *n == p.name))
+        {
             let folder = report::folder(&config.state, &plan.name);
             print(&format!("reports of {}: {}\n", plan.name, folder.display()))?;
         }
@@ -71,13 +85,18 @@ pub(super) fn run(line: &Line) -> Answer {
 
 /// Every round of every plan as a table.
 pub(super) fn print_history(config: &Config) -> Result<(), Failure> {
-    let rows = load(config, None, true)?.iter().map(|s| row(config, s)).collect();
+    let rows = load(config, None, true)?
+        .iter()
+        .map(|s| row(config, s))
+        .collect();
     print(&table(&HEADINGS, &NUMBERS, rows))
 }
 
 fn load(config: &Config, plan: Option<&str>, history: bool) -> Result<Vec<Study>, Failure> {
     let ledger = Ledger::open_to_read(&config.state).map_err(|e| Failure::machine(&e))?;
-    ledger.snapshot(|read| gather(read, config, plan, history)).map_err(|e| Failure::machine(&e))
+    ledger
+        .snapshot(|read| gather(read, config, plan, history))
+        .map_err(|e| Failure::machine(&e))
 }
 
 struct Study {
@@ -94,7 +113,11 @@ fn gather(
     history: bool,
 ) -> Result<Vec<Study>, LedgerError> {
     let mut studies = Vec::new();
-    for plan in config.plans.iter().filter(|p| only.is_none_or(|n| n == p.name)) {
+    for plan in config
+        .plans
+        .iter()
+        .filter(|p| only.is_none_or(|n| n == p.name))
+    {
         let mut rounds = read.rounds(&plan.name)?;
         rounds.retain(|r| r.analysed > 0);
         if !history {
@@ -120,8 +143,19 @@ fn row(config: &Config, study: &Study) -> Vec<String> {
     let number = |pointer: &str| study.record.pointer(pointer).and_then(Value::as_f64);
     let percent = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| format!("{:.1}", 100.0 * x));
     let sd = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| crate::figures::significant(x, 4));
-    let text = |pointer: &str| study.record.pointer(pointer).and_then(Value::as_str).unwrap_or("–").to_owned();
-    let closed = study.round.closed.map(|ms| in_zone(ms, &config.site.zone).strftime("%Y-%m-%d %H:%M").to_string());
+    let text = |pointer: &str| {
+        study
+            .record
+            .pointer(pointer)
+            .and_then(Value::as_str)
+            .unwrap_or("–")
+            .to_owned()
+    };
+    let closed = study.round.closed.map(|ms| {
+        in_zone(ms, &config.site.zone)
+            .strftime("%Y-%m-%d %H:%M")
+            .to_string()
+    });
     vec![
         study.round.plan.clone(),
         study.round.number.to_string(),
@@ -134,13 +168,21 @@ fn row(config: &Config, study: &Study) -> Vec<String> {
         sd(number("/figures/repeatability/sd/estimate")),
         sd(number("/figures/gauge/sd/estimate")),
         text("/unit"),
-        study.record.pointer("/ndc/whole").and_then(Value::as_u64).map_or_else(|| "–".into(), |n| n.to_string()),
+        study
+            .record
+            .pointer("/ndc/whole")
+            .and_then(Value::as_u64)
+            .map_or_else(|| "–".into(), |n| n.to_string()),
     ]
 }
 
 fn csv_line(fields: &[String]) -> String {
     let quoted = fields.iter().map(|f| {
-        if f.contains([',', '"', '\n', '\r']) { format!("\"{}\"", f.replace('"', "\"\"")) } else { f.clone() }
+        if f.contains([',', '"', '\n', '\r']) {
+            format!("\"{}\"", f.replace('"', "\"\""))
+        } else {
+            f.clone()
+        }
     });
     format!("{}\r\n", quoted.collect::<Vec<_>>().join(","))
 }

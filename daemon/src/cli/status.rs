@@ -6,7 +6,8 @@ use serde::Serialize;
 use super::table::table;
 use super::{Answer, ConfigPath, End, Failure, configuration, print, print_json};
 use crate::ledger::{
-    Accounting, Ledger, LedgerError, OutboxRow, Read, RefusedExport, RoundRow, RoundState, RunStatus, SetAsideRun,
+    Accounting, Ledger, LedgerError, OutboxRow, Read, RefusedExport, RoundRow, RoundState,
+    RunStatus, SetAsideRun,
 };
 use crate::now::in_zone;
 use crate::rounds::frame::Frame;
@@ -57,13 +58,18 @@ struct ShownRound {
 pub(super) fn run(line: &Line) -> Answer {
     let config = configuration::sound(&line.config.config)?;
     let ledger = Ledger::open_to_read(&config.state).map_err(|e| Failure::machine(&e))?;
-    let status = ledger.snapshot(|read| gather(read, &config)).map_err(|e| Failure::machine(&e))?;
+    let status = ledger
+        .snapshot(|read| gather(read, &config))
+        .map_err(|e| Failure::machine(&e))?;
     if line.json {
         print_json(&status)?;
     } else {
         print(&for_people(&status))?;
     }
-    let waits = status.rounds.iter().any(|r| r.state == RoundState::Held.as_str())
+    let waits = status
+        .rounds
+        .iter()
+        .any(|r| r.state == RoundState::Held.as_str())
         || !status.refused.is_empty()
         || status.owed.iter().any(|o| o.refused);
     Ok(if waits { End::BadNews } else { End::Fine })
@@ -93,15 +99,33 @@ fn shown(
     round: RoundRow,
 ) -> Result<ShownRound, LedgerError> {
     let runs = read.round_runs(round.id)?;
-    let time = |ms: Option<i64>| ms.map(|ms| in_zone(ms, &config.site.zone).strftime("%Y-%m-%dT%H:%M:%S%:z").to_string());
-    let in_cells = |status| matches!(status, RunStatus::Used | RunStatus::Held | RunStatus::Unfinished);
+    let time = |ms: Option<i64>| {
+        ms.map(|ms| {
+            in_zone(ms, &config.site.zone)
+                .strftime("%Y-%m-%dT%H:%M:%S%:z")
+                .to_string()
+        })
+    };
+    let in_cells = |status| {
+        matches!(
+            status,
+            RunStatus::Used | RunStatus::Held | RunStatus::Unfinished
+        )
+    };
     Ok(ShownRound {
         state: round.state.as_str(),
         opened: time(round.opened),
         closed: time(round.closed),
-        runs_used: runs.iter().filter(|r| in_cells(r.place.status) && r.place.slot.is_some()).count(),
+        runs_used: runs
+            .iter()
+            .filter(|r| in_cells(r.place.status) && r.place.slot.is_some())
+            .count(),
         runs_planned: frame.cells() * frame.trials,
-        missing: if round.state == RoundState::Complete { Vec::new() } else { missing(frame, &runs) },
+        missing: if round.state == RoundState::Complete {
+            Vec::new()
+        } else {
+            missing(frame, &runs)
+        },
         plan: round.plan,
         round: round.number,
         label: round.label,
@@ -128,39 +152,95 @@ fn for_people(status: &Status) -> String {
         let headings = ["plan", "round", "state", "runs", "opened", "closed"];
         out.push_str(&table(&headings, &[1, 3], rows.collect()));
     }
-    for round in status.rounds.iter().filter(|r| !r.missing.is_empty() && r.state != "unfinished") {
-        out.push_str(&format!("\n{} round {}: still missing\n", round.plan, round.round));
+    for round in status
+        .rounds
+        .iter()
+        .filter(|r| !r.missing.is_empty() && r.state != "unfinished")
+    {
+        out.push_str(&format!(
+            "\n{} round {}: still missing\n",
+            round.plan, round.round
+        ));
         for cell in round.missing.iter().take(CELLS_NAMED) {
             out.push_str(&format!("  {}\n", in_words(cell)));
         }
         if round.missing.len() > CELLS_NAMED {
-            out.push_str(&format!("  and {} more cells\n", round.missing.len() - CELLS_NAMED));
+            out.push_str(&format!(
+                "  and {} more cells\n",
+                round.missing.len() - CELLS_NAMED
+            ));
         }
     }
     for round in status.rounds.iter().filter(|r| r.state == "held") {
         let reason = round.reason.as_deref().unwrap_or_default();
-        out.push_str(&format!("\n{} round {} waits for a person: {reason}\n", round.plan, round.round));
+        out.push_str(&format!(
+            "\n{} round {} waits for a person: {reason}\n",
+            round.plan, round.round
+        ));
     }
-    list(&mut out, "Refused exports", status.refused.iter().map(|r| {
-        (format!("{} / {}: {}", r.instrument, r.export, r.reason), r.hint.clone())
-    }));
-    list(&mut out, "Set aside", status.set_aside.iter().map(|a| {
-        (format!("{} ({} readings): {}", a.export, a.readings, a.reason), a.hint.clone())
-    }));
-    list(&mut out, "Owed notices", status.owed.iter().map(|o| {
-        let to = if o.recipient.is_empty() { String::new() } else { format!(" to {}", o.recipient) };
-        let tries = o.last_error.as_ref().map(|e| format!("; {} tries, the last: {e}", o.attempts));
-        (format!("{}{to}: {}{}", o.channel, o.subject, tries.unwrap_or_default()), None)
-    }));
+    list(
+        &mut out,
+        "Refused exports",
+        status.refused.iter().map(|r| {
+            (
+                format!("{} / {}: {}", r.instrument, r.export, r.reason),
+                r.hint.clone(),
+            )
+        }),
+    );
+    list(
+        &mut out,
+        "Set aside",
+        status.set_aside.iter().map(|a| {
+            (
+                format!("{} ({} readings): {}", a.export, a.readings, a.reason),
+                a.hint.clone(),
+            )
+        }),
+    );
+    list(
+        &mut out,
+        "Owed notices",
+        status.owed.iter().map(|o| {
+            let to = if o.recipient.is_empty() {
+                String::new()
+            } else {
+                format!(" to {}", o.recipient)
+            };
+            let tries = o
+                .last_error
+                .as_ref()
+                .map(|e| format!("; {} tries, the last: {e}", o.attempts));
+            (
+                format!(
+                    "{}{to}: {}{}",
+                    o.channel,
+                    o.subject,
+                    tries.unwrap_or_default()
+                ),
+                None,
+            )
+        }),
+    );
     let a = &status.readings;
     out.push_str(&format!("\n{} readings met:", a.total));
     let places = [
-        (a.used, "used"), (a.copy, "copies"), (a.superseded, "superseded"), (a.surplus, "surplus"),
-        (a.late, "late"), (a.set_aside, "set aside"), (a.held, "held"), (a.excluded, "excluded"),
-        (a.unfinished, "in unfinished rounds"), (a.not_for_a_plan, "not for a plan"),
+        (a.used, "used"),
+        (a.copy, "copies"),
+        (a.superseded, "superseded"),
+        (a.surplus, "surplus"),
+        (a.late, "late"),
+        (a.set_aside, "set aside"),
+        (a.held, "held"),
+        (a.excluded, "excluded"),
+        (a.unfinished, "in unfinished rounds"),
+        (a.not_for_a_plan, "not for a plan"),
     ];
-    let said: Vec<String> =
-        places.iter().filter(|(n, _)| *n > 0).map(|(n, what)| format!(" {n} {what}")).collect();
+    let said: Vec<String> = places
+        .iter()
+        .filter(|(n, _)| *n > 0)
+        .map(|(n, what)| format!(" {n} {what}"))
+        .collect();
     out.push_str(&said.join(","));
     out.push('\n');
     out
@@ -181,11 +261,17 @@ fn list(out: &mut String, title: &str, entries: impl Iterator<Item = (String, Op
 
 fn in_words(cell: &Missing) -> String {
     let unseen = || "not seen yet".to_owned();
-    let mut words = vec![cell.part.clone().unwrap_or_else(|| "a part not seen yet".into())];
+    let mut words = vec![
+        cell.part
+            .clone()
+            .unwrap_or_else(|| "a part not seen yet".into()),
+    ];
     words.extend(cell.appraiser.clone());
-    words.extend(cell.factors.iter().map(|(name, level)| {
-        format!("{name} {}", level.clone().unwrap_or_else(unseen))
-    }));
+    words.extend(
+        cell.factors
+            .iter()
+            .map(|(name, level)| format!("{name} {}", level.clone().unwrap_or_else(unseen))),
+    );
     let trials: Vec<String> = cell.trials.iter().map(ToString::to_string).collect();
     let what = match cell.characteristics.as_slice() {
         [] => String::new(),

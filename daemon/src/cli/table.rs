@@ -8,7 +8,12 @@ pub(super) fn table(headings: &[&str], right: &[usize], rows: Vec<Vec<String>>) 
     let head: Vec<String> = headings.iter().map(|h| (*h).to_owned()).collect();
     let lines: Vec<Vec<String>> = std::iter::once(head).chain(rows).collect();
     let width = |column: usize| {
-        lines.iter().filter_map(|l| l.get(column)).map(|c| c.chars().count()).max().unwrap_or(0)
+        lines
+            .iter()
+            .filter_map(|l| l.get(column))
+            .map(|c| c.chars().count())
+            .max()
+            .unwrap_or(0)
     };
     let widths: Vec<usize> = (0..headings.len()).map(width).collect();
     let mut out = String::new();

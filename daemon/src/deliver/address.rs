@@ -37,17 +37,35 @@ mod tests {
     #[test]
     fn the_host_travels_in_ascii() {
         // Punycode of "bücher": RFC 3492, the algorithm's usual example.
-        assert_eq!(address("a@bücher.example").unwrap().to_string(), "a@xn--bcher-kva.example");
-        for plain in ["quality@halden.example", "k.lund+grr@mail.halden.example", "root@localhost"] {
+        assert_eq!(
+            address("a@bücher.example").unwrap().to_string(),
+            "a@xn--bcher-kva.example"
+        );
+        for plain in [
+            "quality@halden.example",
+            "k.lund+grr@mail.halden.example",
+            "root@localhost",
+        ] {
             assert_eq!(address(plain).unwrap().to_string(), plain);
         }
     }
 
     #[test]
     fn what_no_server_takes_is_one_sentence() {
-        for text in ["", "quality", "a@", "@halden.example", "å@halden.example", "a@b.example\r\nRCPT TO:<x@y.example>", "a b@c.example"] {
+        for text in [
+            "",
+            "quality",
+            "a@",
+            "@halden.example",
+            "å@halden.example",
+            "a@b.example\r\nRCPT TO:<x@y.example>",
+            "a b@c.example",
+        ] {
             let sentence = address(text).unwrap_err();
-            assert!(sentence.contains("cannot be mailed to") && !sentence.contains('\n'), "{sentence:?}");
+            assert!(
+                sentence.contains("cannot be mailed to") && !sentence.contains('\n'),
+                "{sentence:?}"
+            );
         }
     }
 

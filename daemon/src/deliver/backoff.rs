@@ -35,8 +35,10 @@ impl Backoff {
 mod tests {
     use super::*;
 
-    const BACKOFF: Backoff =
-        Backoff { first: Duration::from_secs(60), longest: Duration::from_secs(30 * 60) };
+    const BACKOFF: Backoff = Backoff {
+        first: Duration::from_secs(60),
+        longest: Duration::from_secs(30 * 60),
+    };
 
     #[test]
     fn one_two_four_up_to_thirty_minutes() {
@@ -47,11 +49,23 @@ mod tests {
 
     #[test]
     fn a_message_waits_longer_by_at_most_a_quarter_and_always_the_same() {
-        let waits: Vec<Duration> =
-            (0..50).map(|n| BACKOFF.wait_of(3, &format!("<{n}@halden.example>"))).collect();
+        let waits: Vec<Duration> = (0..50)
+            .map(|n| BACKOFF.wait_of(3, &format!("<{n}@halden.example>")))
+            .collect();
         let least = BACKOFF.wait(3);
-        assert!(waits.iter().all(|w| *w > least && *w <= least.mul_f64(1.25)), "{waits:?}");
-        assert!(waits.iter().collect::<std::collections::BTreeSet<_>>().len() > 25);
+        assert!(
+            waits
+                .iter()
+                .all(|w| *w > least && *w <= least.mul_f64(1.25)),
+            "{waits:?}"
+        );
+        assert!(
+            waits
+                .iter()
+                .collect::<std::collections::BTreeSet<_>>()
+                .len()
+                > 25
+        );
         assert_eq!(waits[7], BACKOFF.wait_of(3, "<7@halden.example>"));
     }
 }

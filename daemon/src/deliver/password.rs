@@ -13,8 +13,9 @@ const LENGTH_MAX: u64 = 4096;
 /// One sentence; never with the password.
 pub fn read(from: &Password) -> Result<String, String> {
     match from {
-        Password::Environment(name) => std::env::var(name)
-            .map_err(|_| format!("the environment variable `{name}` for the mail password is not set")),
+        Password::Environment(name) => std::env::var(name).map_err(|_| {
+            format!("the environment variable `{name}` for the mail password is not set")
+        }),
         Password::File(path) => from_file(path),
     }
 }
@@ -25,7 +26,9 @@ fn from_file(path: &std::path::Path) -> Result<String, String> {
     only_ours(&file.metadata().map_err(unreadable)?)
         .map_err(|why| format!("the password file `{}` {why}", path.display()))?;
     let mut text = String::new();
-    file.take(LENGTH_MAX).read_to_string(&mut text).map_err(unreadable)?;
+    file.take(LENGTH_MAX)
+        .read_to_string(&mut text)
+        .map_err(unreadable)?;
     let password = text.lines().next().unwrap_or_default();
     if password.is_empty() {
         return Err(format!("the password file `{}` is empty", path.display()));
@@ -38,7 +41,9 @@ fn only_ours(metadata: &std::fs::Metadata) -> Result<(), String> {
     use std::os::unix::fs::PermissionsExt as _;
     let mode = metadata.permissions().mode() & 0o777;
     if mode & 0o077 != 0 {
-        return Err(format!("is open to others (mode {mode:04o}); expected 0600: chmod 600"));
+        return Err(format!(
+            "is open to others (mode {mode:04o}); expected 0600: chmod 600"
+        ));
     }
     Ok(())
 }
@@ -48,7 +53,8 @@ fn only_ours(_: &std::fs::Metadata) -> Result<(), String> {
     Ok(())
 }
 
-#[cfg(all(test, unix))]
+#[cfg(unix)]
+#[cfg(test)]
 mod tests {
     use super::*;
     use std::os::unix::fs::PermissionsExt as _;
@@ -72,7 +78,10 @@ mod tests {
         for mode in [0o640, 0o604, 0o660] {
             let (_folder, password) = file(mode, "hunter two\n");
             let sentence = read(&password).unwrap_err();
-            assert!(sentence.contains("expected 0600") && !sentence.contains("hunter"), "{sentence}");
+            assert!(
+                sentence.contains("expected 0600") && !sentence.contains("hunter"),
+                "{sentence}"
+            );
         }
     }
 
@@ -81,6 +90,10 @@ mod tests {
         let (_folder, empty) = file(0o600, "\n");
         assert!(read(&empty).unwrap_err().ends_with("is empty"));
         let absent = Password::Environment("RESTUDY_TEST_NO_SUCH_VARIABLE".into());
-        assert!(read(&absent).unwrap_err().contains("`RESTUDY_TEST_NO_SUCH_VARIABLE`"));
+        assert!(
+            read(&absent)
+                .unwrap_err()
+                .contains("`RESTUDY_TEST_NO_SUCH_VARIABLE`")
+        );
     }
 }

@@ -60,11 +60,15 @@ impl Session {
         };
         let implicit = tls.clone().filter(|_| mail.tls == Tls::Implicit);
         let server = (mail.server.as_str(), mail.port);
-        let mut connection = AsyncSmtpConnection::connect_tokio1(server, None, &hello, implicit, None)
-            .await
-            .map_err(|e| at_server(mail, &e))?;
+        let mut connection =
+            AsyncSmtpConnection::connect_tokio1(server, None, &hello, implicit, None)
+                .await
+                .map_err(|e| at_server(mail, &e))?;
         if let Some(tls) = tls.filter(|_| mail.tls == Tls::StartTls) {
-            connection.starttls(tls, &hello).await.map_err(|e| at_server(mail, &e))?;
+            connection
+                .starttls(tls, &hello)
+                .await
+                .map_err(|e| at_server(mail, &e))?;
         }
         if let Some(credentials) = credentials {
             connection
@@ -76,7 +80,12 @@ impl Session {
     }
 
     /// Sends one mail; returns once the server has taken it over.
-    pub(super) async fn send(&mut self, from: &Address, to: &Address, bytes: &[u8]) -> Result<(), Failed> {
+    pub(super) async fn send(
+        &mut self,
+        from: &Address,
+        to: &Address,
+        bytes: &[u8],
+    ) -> Result<(), Failed> {
         let connection = &mut self.0;
         connection
             .command(MailFrom::new(Some(from.clone()), Vec::new()))
@@ -86,8 +95,14 @@ impl Session {
             .command(Rcpt::new(to.clone(), Vec::new()))
             .await
             .map_err(|e| failed(Step::Recipient, &e))?;
-        connection.command(Data).await.map_err(|e| failed(Step::Content, &e))?;
-        connection.message(bytes).await.map_err(|e| failed(Step::Content, &e))?;
+        connection
+            .command(Data)
+            .await
+            .map_err(|e| failed(Step::Content, &e))?;
+        connection
+            .message(bytes)
+            .await
+            .map_err(|e| failed(Step::Content, &e))?;
         Ok(())
     }
 
@@ -97,8 +112,13 @@ impl Session {
 }
 
 fn credentials(mail: &Mail) -> Result<Option<Credentials>, Down> {
-    let Some((user, secret)) = &mail.login else { return Ok(None) };
-    let secret = password::read(secret).map_err(|sentence| Down { sentence, needs_person: true })?;
+    let Some((user, secret)) = &mail.login else {
+        return Ok(None);
+    };
+    let secret = password::read(secret).map_err(|sentence| Down {
+        sentence,
+        needs_person: true,
+    })?;
     Ok(Some(Credentials::new(user.clone(), secret)))
 }
 
@@ -119,7 +139,10 @@ fn failed(step: Step, error: &Error) -> Failed {
     } else if of_this_mail && error.is_transient() {
         Failed::Later(sentence)
     } else {
-        Failed::Down(Down { sentence, needs_person: error.is_permanent() || error.is_client() })
+        Failed::Down(Down {
+            sentence,
+            needs_person: error.is_permanent() || error.is_client(),
+        })
     }
 }
 

@@ -30,7 +30,10 @@ pub struct Head {
 /// # Errors
 /// A broken pipe, or a request that is no request.
 pub fn serve() -> io::Result<()> {
-    let limit = Rlimit { current: Some(MEMORY_LIMIT), maximum: Some(MEMORY_LIMIT) };
+    let limit = Rlimit {
+        current: Some(MEMORY_LIMIT),
+        maximum: Some(MEMORY_LIMIT),
+    };
     setrlimit(Resource::As, limit)?;
     #[cfg(target_os = "linux")]
     rustix::process::set_parent_process_death_signal(Some(rustix::process::Signal::KILL))?;
@@ -49,7 +52,10 @@ pub fn serve() -> io::Result<()> {
 }
 
 fn read(head: &Head, bytes: &[u8]) -> Result<Parsed, Refused> {
-    let export = Export { path: &head.path, bytes };
+    let export = Export {
+        path: &head.path,
+        bytes,
+    };
     match &head.ask {
         Ask::Rule(rule) => restudy_parsers::read(export, rule),
         Ask::Plain(plain) => restudy_parsers::read_plain(export, plain),
@@ -79,5 +85,9 @@ pub(super) fn take_frame(from: &mut impl Read) -> io::Result<Option<Vec<u8>>> {
     }
     let mut bytes = Vec::new();
     from.take(length).read_to_end(&mut bytes)?;
-    if bytes.len() as u64 == length { Ok(Some(bytes)) } else { Err(io::ErrorKind::UnexpectedEof.into()) }
+    if bytes.len() as u64 == length {
+        Ok(Some(bytes))
+    } else {
+        Err(io::ErrorKind::UnexpectedEof.into())
+    }
 }

@@ -30,9 +30,13 @@ pub fn read_still(path: &Path, stat: &Stat, bound: u64) -> Content {
     let mut bytes = Vec::with_capacity(usize::try_from(stat.size).unwrap_or(0));
     let read = fs_err::File::open(path).and_then(|f| f.take(bound + 1).read_to_end(&mut bytes));
     match (read, look(path)) {
-        (Ok(_), Ok(after)) if after == *stat && bytes.len() as u64 == stat.size => Content::Bytes(bytes),
+        (Ok(_), Ok(after)) if after == *stat && bytes.len() as u64 == stat.size => {
+            Content::Bytes(bytes)
+        }
         (Ok(_), Ok(_)) => Content::Changed,
-        (Err(error), _) | (_, Err(error)) if error.kind() == std::io::ErrorKind::NotFound => Content::Changed,
+        (Err(error), _) | (_, Err(error)) if error.kind() == std::io::ErrorKind::NotFound => {
+            Content::Changed
+        }
         (Err(error), _) | (_, Err(error)) => Content::Unreadable(error),
     }
 }

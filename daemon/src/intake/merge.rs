@@ -40,12 +40,18 @@ pub fn record<'a>(
         }
     };
     let listed = plan.filter(|p| p.whole_list).map(|p| {
-        p.characteristics.iter().map(|c| fold(&c.name)).collect::<BTreeSet<String>>()
+        p.characteristics
+            .iter()
+            .map(|c| fold(&c.name))
+            .collect::<BTreeSet<String>>()
     });
     let mut by_run: Vec<Vec<PackedReading>> = vec![Vec::new(); parsed.runs.len()];
     let mut unplanned = 0;
     for reading in &parsed.readings {
-        if listed.as_ref().is_some_and(|l| !l.contains(&fold(&reading.characteristic))) {
+        if listed
+            .as_ref()
+            .is_some_and(|l| !l.contains(&fold(&reading.characteristic)))
+        {
             unplanned += 1;
         } else {
             by_run[reading.run].push(reading.into());
@@ -88,7 +94,11 @@ fn join(
     let counted = run.trial.is_none() && run.taken.is_some();
     let Some(row) = known else {
         let holds = readings.iter().map(|r| fold(&r.characteristic)).collect();
-        let alone = Delivered { export, path: new.path.to_vec(), readings: readings.to_vec() };
+        let alone = Delivered {
+            export,
+            path: new.path.to_vec(),
+            readings: readings.to_vec(),
+        };
         let merged = tally(&[alone], counted);
         return w.put_tally(id, &merged.tallies, &holds, None, false);
     };
@@ -106,8 +116,11 @@ fn join(
 /// What makes two deliveries the same run: the mapped roles, any case, blanks folded.
 fn key(run: &Run) -> Result<String, LedgerError> {
     let optional = |text: &Option<String>| text.as_deref().map(fold);
-    let factors: BTreeMap<String, String> =
-        run.factors.iter().map(|(k, v)| (k.clone(), fold(v))).collect();
+    let factors: BTreeMap<String, String> = run
+        .factors
+        .iter()
+        .map(|(k, v)| (k.clone(), fold(v)))
+        .collect();
     serde_json::to_string(&(
         fold(&run.part),
         optional(&run.appraiser),
@@ -151,8 +164,14 @@ pub struct Merged {
 #[must_use]
 pub fn tally(deliveries: &[Delivered], counted: bool) -> Merged {
     let mut standing: BTreeMap<String, (usize, &PackedReading)> = BTreeMap::new();
-    let mut tallies: Vec<Tally> =
-        deliveries.iter().map(|d| Tally { export: d.export, copies: 0, superseded: 0 }).collect();
+    let mut tallies: Vec<Tally> = deliveries
+        .iter()
+        .map(|d| Tally {
+            export: d.export,
+            copies: 0,
+            superseded: 0,
+        })
+        .collect();
     let mut replaced = Vec::new();
     let mut tie = None;
     let mut last_changed = false;
@@ -178,8 +197,17 @@ pub fn tally(deliveries: &[Delivered], counted: bool) -> Merged {
             }
         }
     }
-    let values = standing.into_iter().map(|(name, (_, r))| (name, r.clone())).collect();
-    Merged { values, tallies, replaced, tie, last_changed }
+    let values = standing
+        .into_iter()
+        .map(|(name, (_, r))| (name, r.clone()))
+        .collect();
+    Merged {
+        values,
+        tallies,
+        replaced,
+        tie,
+        last_changed,
+    }
 }
 
 fn same_reading(a: &PackedReading, b: &PackedReading) -> bool {
@@ -209,11 +237,19 @@ mod tests {
             upper: None,
             origin: "line 2".into(),
         };
-        Delivered { export, path: path.into(), readings: values.iter().map(reading).collect() }
+        Delivered {
+            export,
+            path: path.into(),
+            readings: values.iter().map(reading).collect(),
+        }
     }
 
     fn counts(merged: &Merged) -> Vec<(usize, usize)> {
-        merged.tallies.iter().map(|t| (t.copies, t.superseded)).collect()
+        merged
+            .tallies
+            .iter()
+            .map(|t| (t.copies, t.superseded))
+            .collect()
     }
 
     #[test]
@@ -221,7 +257,11 @@ mod tests {
         let merged = tally(
             &[
                 delivered(1, "a", &[("bore A", 1.0), ("bore B", 2.0)]),
-                delivered(2, "b", &[("Bore  a", 1.0), ("bore B", 2.5), ("bore C", 3.0)]),
+                delivered(
+                    2,
+                    "b",
+                    &[("Bore  a", 1.0), ("bore B", 2.5), ("bore C", 3.0)],
+                ),
             ],
             false,
         );
@@ -234,17 +274,25 @@ mod tests {
     #[test]
     fn there_and_back_again_supersedes_twice() {
         let values = [1.0, 2.0, 1.0];
-        let deliveries: Vec<Delivered> =
-            (1..).zip(values).map(|(export, v)| delivered(export, "a", &[("x", v)])).collect();
+        let deliveries: Vec<Delivered> = (1..)
+            .zip(values)
+            .map(|(export, v)| delivered(export, "a", &[("x", v)]))
+            .collect();
         assert_eq!(counts(&tally(&deliveries, true)), [(0, 1), (0, 1), (0, 0)]);
     }
 
     #[test]
     fn a_counted_run_from_another_file_with_another_value_is_a_tie() {
-        let other = [delivered(1, "a", &[("x", 1.0)]), delivered(2, "b", &[("x", 2.0)])];
+        let other = [
+            delivered(1, "a", &[("x", 1.0)]),
+            delivered(2, "b", &[("x", 2.0)]),
+        ];
         assert!(tally(&other, true).tie.is_some());
         assert!(tally(&other, false).tie.is_none());
-        let rewritten = [delivered(1, "a", &[("x", 1.0)]), delivered(2, "a", &[("x", 2.0)])];
+        let rewritten = [
+            delivered(1, "a", &[("x", 1.0)]),
+            delivered(2, "a", &[("x", 2.0)]),
+        ];
         assert!(tally(&rewritten, true).tie.is_none());
     }
 }

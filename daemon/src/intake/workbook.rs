@@ -22,7 +22,7 @@ const TIME_LIMIT: Duration = Duration::from_secs(60);
 #[derive(Debug, Clone, Serialize, Deserialize)]
 pub enum Ask {
     /// By an instrument's rule.
-    Rule(Rule),
+    Rule(Box<Rule>),
     /// By plain headings.
     Plain(Plain),
 }
@@ -79,8 +79,11 @@ impl Workbooks {
         let Some((mut stdin, mut stdout)) = running.ends.take() else {
             return Err(Failure::Died("lost its ends".into()));
         };
-        let head = serde_json::to_vec(&child::Head { path: path.to_owned(), ask: ask.clone() })
-            .map_err(|e| Failure::CannotStart(e.into()))?;
+        let head = serde_json::to_vec(&child::Head {
+            path: path.to_owned(),
+            ask: ask.clone(),
+        })
+        .map_err(|e| Failure::CannotStart(e.into()))?;
         let mut request = Vec::with_capacity(head.len() + bytes.len() + 16);
         child::put_frame(&mut request, &head);
         child::put_frame(&mut request, bytes);
@@ -106,9 +109,10 @@ impl Workbooks {
                 let how = running.child.wait().map(|s| s.to_string());
                 Err(Failure::Died(how.unwrap_or_else(|e| e.to_string())))
             }
-            Err(RecvTimeoutError::Timeout) => {
-                Err(Failure::Died(format!("took more than {} s", TIME_LIMIT.as_secs())))
-            }
+            Err(RecvTimeoutError::Timeout) => Err(Failure::Died(format!(
+                "took more than {} s",
+                TIME_LIMIT.as_secs()
+            ))),
         }
     }
 }
@@ -139,5 +143,9 @@ fn start() -> io::Result<Running> {
 /// Our own program even after an update replaced the file it was started from.
 fn own_program() -> io::Result<std::path::PathBuf> {
     let link = std::path::PathBuf::from("/proc/self/exe");
-    if link.exists() { Ok(link) } else { std::env::current_exe() }
+    if link.exists() {
+        Ok(link)
+    } else {
+        std::env::current_exe()
+    }
 }

@@ -160,7 +160,9 @@ impl Read<'_> {
                AND export.id IN (SELECT export FROM file) ORDER BY set_aside.id",
         )?;
         let (from, to) = (opened.unwrap_or(i64::MIN), closed.unwrap_or(i64::MAX));
-        let rows = statement.query_map(rusqlite::params![plan, from, to], |r| Ok((r.get(0)?, r.get(1)?)))?;
+        let rows = statement.query_map(rusqlite::params![plan, from, to], |r| {
+            Ok((r.get(0)?, r.get(1)?))
+        })?;
         Ok(rows.collect::<Result<_, _>>()?)
     }
 
@@ -193,7 +195,8 @@ impl Read<'_> {
             "SELECT run.plan, min(export.shown), coalesce(run.reason, ''),
                     sum(delivery.count - delivery.copies - delivery.superseded)
              FROM run JOIN delivery ON delivery.run = run.id JOIN export ON export.id = delivery.export
-             WHERE run.status = 'set aside' GROUP BY run.id ORDER BY run.id DESC",
+             WHERE run.status = 'set aside' AND export.id IN (SELECT export FROM file)
+             GROUP BY run.id ORDER BY run.id DESC",
         )?;
         let by_plan = statement.query_map([], |r| {
             Ok(SetAsideRun {

@@ -84,8 +84,14 @@ impl Read<'_> {
                  FROM export WHERE id = ?1",
             )?
             .query_row([export], |r| Ok((r.get(0)?, r.get(1)?, r.get(2)?)))?;
-        let sha256 = sha256.try_into().map_err(|_| LedgerError::Damaged("digest".into()))?;
-        Ok(DealtWith { sha256, rule_mark, clean })
+        let sha256 = sha256
+            .try_into()
+            .map_err(|_| LedgerError::Damaged("digest".into()))?;
+        Ok(DealtWith {
+            sha256,
+            rule_mark,
+            clean,
+        })
     }
 
     /// The kept bytes of an export.
@@ -98,7 +104,9 @@ impl Read<'_> {
             .prepare_cached("SELECT packed FROM raw WHERE sha256 = ?1")?
             .query_row([&sha256[..]], |r| r.get(0))
             .optional()?;
-        let Some(packed) = packed else { return Ok(None) };
+        let Some(packed) = packed else {
+            return Ok(None);
+        };
         let mut bytes = Vec::new();
         ZlibDecoder::new(&packed[..])
             .read_to_end(&mut bytes)
@@ -119,7 +127,9 @@ impl Read<'_> {
         let rows = statement.query_map([round], |r| Ok((r.get(1)?, r.get::<_, Vec<u8>>(2)?)))?;
         rows.map(|row| {
             let (shown, digest) = row?;
-            let digest = digest.try_into().map_err(|_| LedgerError::Damaged("digest".into()))?;
+            let digest = digest
+                .try_into()
+                .map_err(|_| LedgerError::Damaged("digest".into()))?;
             Ok((shown, digest))
         })
         .collect()
@@ -140,7 +150,10 @@ impl PackedExport {
     pub fn new(bytes: &[u8]) -> std::io::Result<Self> {
         let mut encoder = ZlibEncoder::new(Vec::new(), Compression::fast());
         encoder.write_all(bytes)?;
-        Ok(Self { size: bytes.len(), packed: encoder.finish()? })
+        Ok(Self {
+            size: bytes.len(),
+            packed: encoder.finish()?,
+        })
     }
 }
 

@@ -84,7 +84,12 @@ impl Read<'_> {
     ///
     /// # Errors
     /// The database's refusal.
-    pub fn owed_now(&self, channel: &str, now: i64, at_most: usize) -> Result<Vec<Owed>, LedgerError> {
+    pub fn owed_now(
+        &self,
+        channel: &str,
+        now: i64,
+        at_most: usize,
+    ) -> Result<Vec<Owed>, LedgerError> {
         let mut statement = self.connection.prepare_cached(
             "SELECT id, channel, recipient, key, subject, bytes, attempts FROM outbox
              WHERE state = 'owed' AND channel = ?1 AND next_try <= ?2 ORDER BY id LIMIT ?3",
@@ -110,7 +115,9 @@ impl Read<'_> {
     pub fn next_due(&self, channel: &str) -> Result<Option<i64>, LedgerError> {
         Ok(self
             .connection
-            .prepare_cached("SELECT min(next_try) FROM outbox WHERE state = 'owed' AND channel = ?1")?
+            .prepare_cached(
+                "SELECT min(next_try) FROM outbox WHERE state = 'owed' AND channel = ?1",
+            )?
             .query_row([channel], |r| r.get(0))?)
     }
 

@@ -23,17 +23,41 @@ pub struct PackedReading {
     pub origin: String,
 }
 
-type Row = (String, f64, Option<String>, Option<f64>, Option<f64>, Option<f64>, String);
+type Row = (
+    String,
+    f64,
+    Option<String>,
+    Option<f64>,
+    Option<f64>,
+    Option<f64>,
+    String,
+);
 
 impl From<PackedReading> for Row {
     fn from(r: PackedReading) -> Self {
-        (r.characteristic, r.value, r.unit, r.nominal, r.lower, r.upper, r.origin)
+        (
+            r.characteristic,
+            r.value,
+            r.unit,
+            r.nominal,
+            r.lower,
+            r.upper,
+            r.origin,
+        )
     }
 }
 
 impl From<Row> for PackedReading {
     fn from((characteristic, value, unit, nominal, lower, upper, origin): Row) -> Self {
-        Self { characteristic, value, unit, nominal, lower, upper, origin }
+        Self {
+            characteristic,
+            value,
+            unit,
+            nominal,
+            lower,
+            upper,
+            origin,
+        }
     }
 }
 

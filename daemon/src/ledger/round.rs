@@ -40,10 +40,16 @@ impl RoundState {
     }
 
     fn parse(text: &str) -> Result<Self, LedgerError> {
-        [Self::Pending, Self::Open, Self::Held, Self::Complete, Self::Unfinished]
-            .into_iter()
-            .find(|s| s.as_str() == text)
-            .ok_or_else(|| LedgerError::Damaged(format!("round state `{text}`")))
+        [
+            Self::Pending,
+            Self::Open,
+            Self::Held,
+            Self::Complete,
+            Self::Unfinished,
+        ]
+        .into_iter()
+        .find(|s| s.as_str() == text)
+        .ok_or_else(|| LedgerError::Damaged(format!("round state `{text}`")))
     }
 }
 
@@ -140,7 +146,12 @@ impl Write<'_> {
     ///
     /// # Errors
     /// The database's refusal.
-    pub fn add_round(&self, plan: &str, number: i64, label: Option<&str>) -> Result<i64, LedgerError> {
+    pub fn add_round(
+        &self,
+        plan: &str,
+        number: i64,
+        label: Option<&str>,
+    ) -> Result<i64, LedgerError> {
         self.transaction
             .prepare_cached(
                 "INSERT INTO round (plan, number, label, state) VALUES (?1, ?2, ?3, 'pending')",
@@ -178,7 +189,9 @@ impl Write<'_> {
     /// # Errors
     /// The database's refusal.
     pub fn drop_round(&self, id: i64) -> Result<(), LedgerError> {
-        self.transaction.prepare_cached("DELETE FROM round WHERE id = ?1")?.execute([id])?;
+        self.transaction
+            .prepare_cached("DELETE FROM round WHERE id = ?1")?
+            .execute([id])?;
         Ok(())
     }
 }

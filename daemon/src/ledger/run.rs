@@ -122,7 +122,8 @@ pub struct Tally {
     pub superseded: usize,
 }
 
-const COLUMNS: &str = "id, instrument, part, appraiser, trial, factors, same, taken, round_label, holds, tie,
+const COLUMNS: &str =
+    "id, instrument, part, appraiser, trial, factors, same, taken, round_label, holds, tie,
   changed, round, slot, status, reason";
 
 impl Read<'_> {
@@ -132,7 +133,9 @@ impl Read<'_> {
     /// The database's refusal.
     pub fn run_by_key(&self, plan: &str, key: &str) -> Result<Option<RunRow>, LedgerError> {
         self.connection
-            .prepare_cached(&format!("SELECT {COLUMNS} FROM run WHERE plan = ?1 AND key = ?2"))?
+            .prepare_cached(&format!(
+                "SELECT {COLUMNS} FROM run WHERE plan = ?1 AND key = ?2"
+            ))?
             .query_row([plan, key], |r| Ok(run_row(r)))
             .optional()?
             .transpose()
@@ -163,9 +166,9 @@ impl Read<'_> {
         condition: &str,
         values: &[&dyn rusqlite::ToSql],
     ) -> Result<Vec<RunRow>, LedgerError> {
-        let mut statement = self
-            .connection
-            .prepare_cached(&format!("SELECT {COLUMNS} FROM run WHERE {condition} ORDER BY id"))?;
+        let mut statement = self.connection.prepare_cached(&format!(
+            "SELECT {COLUMNS} FROM run WHERE {condition} ORDER BY id"
+        ))?;
         let rows = statement.query_map(values, |r| Ok(run_row(r)))?;
         rows.map(|row| row?).collect()
     }
@@ -187,7 +190,11 @@ impl Read<'_> {
             let (export, path, readings) = row?;
             let readings: Vec<PackedReading> = serde_json::from_str(&readings)
                 .map_err(|_| LedgerError::Damaged("readings".into()))?;
-            Ok(Delivered { export, path, readings })
+            Ok(Delivered {
+                export,
+                path,
+                readings,
+            })
         })
         .collect()
     }
@@ -234,7 +241,12 @@ impl Write<'_> {
                 "INSERT INTO delivery (export, run, readings, count, copies, superseded)
                  VALUES (?1, ?2, ?3, ?4, 0, 0)",
             )?
-            .execute(params![export, run, json(&readings)?, readings.len() as i64])?;
+            .execute(params![
+                export,
+                run,
+                json(&readings)?,
+                readings.len() as i64
+            ])?;
         Ok(())
     }
 

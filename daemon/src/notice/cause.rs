@@ -27,11 +27,24 @@ pub(super) struct Cause {
 #[derive(Debug, Clone, PartialEq)]
 pub(super) enum Source {
     /// One level of a factor reads higher (or lower, below zero) than the others.
-    Level { factor: usize, level: usize, by: f64, parts: usize },
+    Level {
+        factor: usize,
+        level: usize,
+        by: f64,
+        parts: usize,
+    },
     /// The levels of a factor differ, none alone.
-    Levels { factor: usize, lowest: usize, highest: usize, by: f64 },
+    Levels {
+        factor: usize,
+        lowest: usize,
+        highest: usize,
+        by: f64,
+    },
     /// Factors act together; with the part in it, the cell of part and level that is furthest off.
-    Together { factors: Vec<usize>, furthest: Option<(usize, usize, f64)> },
+    Together {
+        factors: Vec<usize>,
+        furthest: Option<(usize, usize, f64)>,
+    },
     /// Repeats within a cell; the widest cell's levels and its range.
     Repeatability { widest: Option<(Vec<usize>, f64)> },
 }
@@ -45,7 +58,9 @@ pub(super) fn of(evidence: &Evidence, feature: &Feature, record: &Record) -> Opt
         .filter_map(|c| Some((c, c.variance.estimate?)))
         .max_by(|a, b| a.1.total_cmp(&b.1))?;
     let source = if component.name == WITHIN_CELLS {
-        Source::Repeatability { widest: widest(evidence, feature) }
+        Source::Repeatability {
+            widest: widest(evidence, feature),
+        }
     } else {
         let factors: Vec<usize> = component
             .of
@@ -54,18 +69,28 @@ pub(super) fn of(evidence: &Evidence, feature: &Feature, record: &Record) -> Opt
             .collect();
         match factors[..] {
             [factor] => levels(evidence, feature, factor)?,
-            _ => Source::Together { furthest: furthest(evidence, feature, &factors), factors },
+            _ => Source::Together {
+                furthest: furthest(evidence, feature, &factors),
+                factors,
+            },
         }
     };
     let left = ((gauge - variance) / gauge).clamp(0.0, 1.0).sqrt();
     let share = study.figures.gauge.share_of_tolerance.estimate;
-    Some(Cause { source, of_gauge: (variance / gauge).min(1.0), without: share.map(|s| s * left) })
+    Some(Cause {
+        source,
+        of_gauge: (variance / gauge).min(1.0),
+        without: share.map(|s| s * left),
+    })
 }
 
 /// `means[part][level]`; `None` when a combination has no reading.
 fn means(evidence: &Evidence, feature: &Feature, factor: usize) -> Option<Vec<Vec<f64>>> {
     let part = evidence.factors.iter().position(|f| f.name == PART)?;
-    let (parts, levels) = (evidence.factors[part].levels.len(), evidence.factors[factor].levels.len());
+    let (parts, levels) = (
+        evidence.factors[part].levels.len(),
+        evidence.factors[factor].levels.len(),
+    );
     let mut sums = vec![vec![(0.0, 0_u32); levels]; parts];
     let origin = *feature.values.first()?;
     for (run, value) in feature.runs.iter().zip(&feature.values) {
@@ -75,47 +100,88 @@ fn means(evidence: &Evidence, feature: &Feature, factor: usize) -> Option<Vec<Ve
         *n += 1;
     }
     let mean = |(sum, n): (f64, u32)| (n > 0).then(|| sum / f64::from(n));
-    sums.into_iter().map(|row| row.into_iter().map(mean).collect()).collect()
+    sums.into_iter()
+        .map(|row| row.into_iter().map(mean).collect())
+        .collect()
 }
 
 fn levels(evidence: &Evidence, feature: &Feature, factor: usize) -> Option<Source> {
     let means = means(evidence, feature, factor)?;
     let parts = means.len();
     let count = evidence.factors[factor].levels.len();
-    let overall: Vec<f64> =
-        (0..count).map(|l| means.iter().map(|row| row[l]).sum::<f64>() / parts as f64).collect();
+    let overall: Vec<f64> = (0..count)
+        .map(|l| means.iter().map(|row| row[l]).sum::<f64>() / parts as f64)
+        .collect();
     let from_others = |row: &[f64], level: usize| {
-        let others = row.iter().enumerate().filter(|(l, _)| *l != level).map(|(_, m)| m);
+        let others = row
+            .iter()
+            .enumerate()
+            .filter(|(l, _)| *l != level)
+            .map(|(_, m)| m);
         row[level] - others.sum::<f64>() / (count - 1) as f64
     };
-    let extreme = |sign: f64| (0..count).max_by(|a, b| (sign * overall[*a]).total_cmp(&(sign * overall[*b])));
+    let extreme =
+        |sign: f64| (0..count).max_by(|a, b| (sign * overall[*a]).total_cmp(&(sign * overall[*b])));
     let (lowest, highest) = (extreme(-1.0)?, extreme(1.0)?);
-    let level = if from_others(&overall, highest) >= -from_others(&overall, lowest) { highest } else { lowest };
+    let level = if from_others(&overall, highest) >= -from_others(&overall, lowest) {
+        highest
+    } else {
+        lowest
+    };
     let by = from_others(&overall, level);
-    let others = || overall.iter().enumerate().filter(|(l, _)| *l != level).map(|(_, m)| *m);
+    let others = || {
+        overall
+            .iter()
+            .enumerate()
+            .filter(|(l, _)| *l != level)
+            .map(|(_, m)| *m)
+    };
     let range = others().fold(f64::MIN, f64::max) - others().fold(f64::MAX, f64::min);
     if count > 2 && range <= OTHERS_WITHIN * by.abs() {
-        let parts = means.iter().filter(|row| from_others(row, level) * by > 0.0).count();
-        return Some(Source::Level { factor, level, by, parts });
+        let parts = means
+            .iter()
+            .filter(|row| from_others(row, level) * by > 0.0)
+            .count();
+        return Some(Source::Level {
+            factor,
+            level,
+            by,
+            parts,
+        });
     }
-    Some(Source::Levels { factor, lowest, highest, by: overall[highest] - overall[lowest] })
+    Some(Source::Levels {
+        factor,
+        lowest,
+        highest,
+        by: overall[highest] - overall[lowest],
+    })
 }
 
 /// The part and level whose mean is furthest from what part and level alone would give.
-fn furthest(evidence: &Evidence, feature: &Feature, factors: &[usize]) -> Option<(usize, usize, f64)> {
-    let [part, factor] = factors[..] else { return None };
+fn furthest(
+    evidence: &Evidence,
+    feature: &Feature,
+    factors: &[usize],
+) -> Option<(usize, usize, f64)> {
+    let [part, factor] = factors[..] else {
+        return None;
+    };
     if evidence.factors[part].name != PART {
         return None;
     }
     let means = means(evidence, feature, factor)?;
     let (parts, count) = (means.len() as f64, evidence.factors[factor].levels.len());
     let row_mean = |row: &[f64]| row.iter().sum::<f64>() / count as f64;
-    let columns: Vec<f64> = (0..count).map(|l| means.iter().map(|row| row[l]).sum::<f64>() / parts).collect();
+    let columns: Vec<f64> = (0..count)
+        .map(|l| means.iter().map(|row| row[l]).sum::<f64>() / parts)
+        .collect();
     let grand = row_mean(&columns);
     let off = means.iter().enumerate().flat_map(|(p, row)| {
         let columns = &columns;
         let of_row = row_mean(row);
-        row.iter().enumerate().map(move |(l, mean)| (p, l, mean - of_row - columns[l] + grand))
+        row.iter()
+            .enumerate()
+            .map(move |(l, mean)| (p, l, mean - of_row - columns[l] + grand))
     });
     off.max_by(|a, b| a.2.abs().total_cmp(&b.2.abs()))
 }
@@ -130,7 +196,9 @@ fn widest(evidence: &Evidence, feature: &Feature) -> Option<(Vec<usize>, f64)> {
         let (_, low, high) = cells[*cell].get_or_insert((*run, *value, *value));
         (*low, *high) = (low.min(*value), high.max(*value));
     }
-    let (run, low, high) =
-        cells.into_iter().flatten().max_by(|a, b| (a.2 - a.1).total_cmp(&(b.2 - b.1)))?;
+    let (run, low, high) = cells
+        .into_iter()
+        .flatten()
+        .max_by(|a, b| (a.2 - a.1).total_cmp(&(b.2 - b.1)))?;
     (high > low).then(|| Some((evidence.runs.get(run)?.levels.clone(), high - low)))?
 }

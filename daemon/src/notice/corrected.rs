@@ -27,26 +27,54 @@ pub(super) fn letter(round: &Round<'_>, told: &Told) -> Option<Letter> {
     let gone: Vec<String> = told
         .studies
         .iter()
-        .filter(|row| !round.items.iter().any(|i| i.outcome.characteristic == row.characteristic))
+        .filter(|row| {
+            !round
+                .items
+                .iter()
+                .any(|i| i.outcome.characteristic == row.characteristic)
+        })
         .map(|row| words::name(&row.characteristic))
         .collect();
     let Some(head) = corrections.first() else {
         return (!gone.is_empty()).then(|| only_gone(round, told, &gone));
     };
     let scale = scale(head.item);
-    let telling = Telling { evidence: round.evidence(), scale: &scale };
+    let telling = Telling {
+        evidence: round.evidence(),
+        scale: &scale,
+    };
     let mut lead = vec![line("", first(told, head, round))];
     if let Some(record) = head.item.record() {
         let cause = cause::of(round.evidence(), head.item.feature, record);
         let past = head.item.earlier.and_then(|e| Past::read(&e.study.record));
-        lead.push(line("How sure", sure::above(head.item, record, round.evidence())));
-        lead.push(line("Why", format!("{} {}", reason(round), why(cause.as_ref(), record, past.as_ref(), telling))));
+        lead.push(line(
+            "How sure",
+            sure::above(head.item, record, round.evidence()),
+        ));
+        lead.push(line(
+            "Why",
+            format!(
+                "{} {}",
+                reason(round),
+                why(cause.as_ref(), record, past.as_ref(), telling)
+            ),
+        ));
     } else {
-        lead.push(line("Why", format!("{} {}.", reason(round), words::sentence(head.item.why()))));
+        lead.push(line(
+            "Why",
+            format!("{} {}.", reason(round), words::sentence(head.item.why())),
+        ));
     }
-    let mut others: Vec<String> = corrections[1..].iter().map(what).collect();
-    others.extend(gone.iter().map(|name| format!("{name} is not in the round any more")));
-    let also = if others.is_empty() { "nothing else that was told changes.".into() } else { format!("{}.", some(&others, IN_A_LINE)) };
+    let mut others: Vec<String> = corrections[1..].iter().map(brief).collect();
+    others.extend(
+        gone.iter()
+            .map(|name| format!("{name} is not in the round any more")),
+    );
+    let also = if others.is_empty() {
+        "nothing else that was told changes.".into()
+    } else {
+        format!("{}.", some(&others, IN_A_LINE))
+    };
     lead.push(line("Also", also));
     lead.push(next());
     let mut body = facts::round(round.config, round.evidence(), &round.items);
@@ -54,22 +82,58 @@ pub(super) fn letter(round: &Round<'_>, told: &Told) -> Option<Letter> {
         body.extend(facts::figures(head.item, record, telling, &scale));
     }
     body.push(facts::report(&round.report));
-    Some(Letter { subject: format!("CORRECTED: {}: {}", round.place(), what(head)), lead, body, foot: foot(round) })
+    Some(Letter {
+        subject: format!("CORRECTED: {}: {}", round.place(), what(head)),
+        lead,
+        body,
+        foot: foot(round),
+    })
 }
 
 fn corrections<'a>(round: &Round<'a>, told: &Told) -> Vec<Correction<'a>> {
-    let before = |item: &Item<'a>| told.studies.iter().find(|row| row.characteristic == item.outcome.characteristic);
+    let before = |item: &Item<'a>| {
+        told.studies
+            .iter()
+            .find(|row| row.characteristic == item.outcome.characteristic)
+    };
     let differs = |item: &Item<'a>| {
-        let (standing, share) = before(item).map_or((Standing::NotJudged, None), |row| (row.standing, row.share));
+        let (standing, share) =
+            before(item).map_or((Standing::NotJudged, None), |row| (row.standing, row.share));
         let printed = |share: Option<f64>| share.map(percent);
         let differs = standing != item.now() || printed(share) != printed(item.share());
-        differs.then_some(Correction { item: *item, standing, share })
+        differs.then_some(Correction {
+            item: *item,
+            standing,
+            share,
+        })
     };
     round.items.iter().filter_map(differs).collect()
 }
 
 fn line(label: &'static str, text: impl Into<String>) -> Line {
-    Line { label, text: text.into() }
+    Line {
+        label,
+        text: text.into(),
+    }
+}
+
+/// `bore A 21 % (not 35 %)`.
+fn brief(correction: &Correction<'_>) -> String {
+    let item = correction.item;
+    match correction.share {
+        Some(told) if item.share().map(percent) == Some(percent(told)) => what(correction),
+        Some(told) => format!(
+            "{} {} (not {})",
+            item.label(),
+            sure::share(item),
+            percent(told)
+        ),
+        None => format!(
+            "{} {} (had not been judged)",
+            item.label(),
+            sure::share(item)
+        ),
+    }
 }
 
 /// `bore A takes 21 % of tolerance, not 35 %`.
@@ -78,12 +142,30 @@ fn what(correction: &Correction<'_>) -> String {
     let label = item.label();
     match (item.share(), correction.share) {
         (Some(now), Some(told)) if percent(now) == percent(told) => {
-            format!("{label} stands at {}, not at {}", item.now(), correction.standing)
+            format!(
+                "{label} stands at {}, not at {}",
+                item.now(),
+                correction.standing
+            )
         }
-        (Some(_), Some(told)) => format!("{label} takes {} of tolerance, not {}", sure::share(item), percent(told)),
-        (Some(_), None) => format!("{label} takes {} of tolerance, and had not been judged", sure::share(item)),
-        (None, Some(told)) => format!("{label} is not judged, and had been told with {}", percent(told)),
-        (None, None) => format!("{label} stands at {}, not at {}", item.now(), correction.standing),
+        (Some(_), Some(told)) => format!(
+            "{label} takes {} of tolerance, not {}",
+            sure::share(item),
+            percent(told)
+        ),
+        (Some(_), None) => format!(
+            "{label} takes {} of tolerance, and had not been judged",
+            sure::share(item)
+        ),
+        (None, Some(told)) => format!(
+            "{label} is not judged, and had been told with {}",
+            percent(told)
+        ),
+        (None, None) => format!(
+            "{label} stands at {}, not at {}",
+            item.now(),
+            correction.standing
+        ),
     }
 }
 
@@ -92,25 +174,48 @@ fn first(told: &Told, head: &Correction<'_>, round: &Round<'_>) -> String {
     if head.standing == head.item.now() {
         text.push_str(&format!(" It stays at \"{}\".", head.item.now()));
     } else if head.item.share().is_some() {
-        text.push_str(&format!(" It stands at \"{}\", not at \"{}\".", head.item.now(), head.standing));
+        text.push_str(&format!(
+            " It stands at \"{}\", not at \"{}\".",
+            head.item.now(),
+            head.standing
+        ));
     }
     if let Some(limits) = head.item.limits() {
-        text.push_str(&format!(" Limits {} and {}.", limit(limits.watch), limit(limits.act)));
+        text.push_str(&format!(
+            " Limits {} and {}.",
+            limit(limits.watch),
+            limit(limits.act)
+        ));
     }
-    format!("{text} This corrects the notice on round {}: \"{}\".", round.evidence().round.number, words::sentence(&told.subject))
+    format!(
+        "{text} This corrects the notice on round {}: \"{}\".",
+        round.evidence().round.number,
+        words::sentence(&told.subject)
+    )
 }
 
 /// Why there is a revision, as far as the readings tell.
 fn reason(round: &Round<'_>) -> String {
-    let replaced: usize = round.evidence().features.iter().map(|f| f.counts.superseded).sum();
+    let replaced: usize = round
+        .evidence()
+        .features
+        .iter()
+        .map(|f| f.counts.superseded)
+        .sum();
     match replaced {
         0 => "runs of the round changed after it was closed.".into(),
-        n => format!("runs of the round changed after it was closed ({} replaced by later exports).", count(n, "reading")),
+        n => format!(
+            "runs of the round changed after it was closed ({} replaced by later exports).",
+            count(n, "reading")
+        ),
     }
 }
 
 fn next() -> Line {
-    line("Next", "look again at what was decided on the earlier notice; standings are compared with the round before, not with the notice.")
+    line(
+        "Next",
+        "look again at what was decided on the earlier notice; standings are compared with the round before, not with the notice.",
+    )
 }
 
 fn only_gone(round: &Round<'_>, told: &Told, gone: &[String]) -> Letter {
@@ -121,7 +226,14 @@ fn only_gone(round: &Round<'_>, told: &Told, gone: &[String]) -> Letter {
     Letter {
         subject: format!("CORRECTED: {}: {what}", round.place()),
         lead: vec![
-            line("", format!("{}. This corrects the notice on round {number}: \"{}\".", capital(&what), words::sentence(&told.subject))),
+            line(
+                "",
+                format!(
+                    "{}. This corrects the notice on round {number}: \"{}\".",
+                    capital(&what),
+                    words::sentence(&told.subject)
+                ),
+            ),
             line("Why", reason(round)),
             next(),
         ],

@@ -9,7 +9,7 @@ use super::letter::Block;
 use super::news::{Item, News};
 use super::sure::share_and_before;
 use super::telling::Telling;
-use super::words::{Scale, count, minute, percent, sentence};
+use super::words::{Scale, capital, count, minute, percent, sentence, span};
 use crate::evidence::Evidence;
 use crate::record::Record;
 
@@ -22,31 +22,58 @@ pub(super) const CAUTION: &str = "A study is evidence about a gauge, not a relea
 
 /// The round, the counts, the ranked characteristics, and what was not used.
 pub(super) fn round(config: &Config, evidence: &Evidence, items: &[Item<'_>]) -> Vec<Block> {
-    let mut blocks = vec![Block::Text(closed(config, evidence)), Block::Text(counts(items))];
+    let mut blocks = vec![
+        Block::Text(closed(config, evidence)),
+        Block::Text(counts(items)),
+    ];
     let told: Vec<&Item<'_>> = items.iter().filter(|i| i.news != News::Quiet).collect();
     if told.len() > 1 {
         let mut lines: Vec<String> = told.iter().take(NAMED_MAX).map(|i| ranked(**i)).collect();
         if told.len() > NAMED_MAX {
-            lines.push(format!("and {} more, in the report", told.len() - NAMED_MAX));
+            lines.push(format!(
+                "and {} more, in the report",
+                told.len() - NAMED_MAX
+            ));
         }
-        blocks.push(Block::List { title: "Ranked:".into(), items: lines });
+        blocks.push(Block::List {
+            title: "Ranked:".into(),
+            items: lines,
+        });
     }
     if !evidence.not_used.is_empty() {
-        let mut lines: Vec<String> = evidence.not_used.iter().take(NAMED_MAX).map(|s| sentence(s)).collect();
+        let mut lines: Vec<String> = evidence
+            .not_used
+            .iter()
+            .take(NAMED_MAX)
+            .map(|s| sentence(s))
+            .collect();
         if evidence.not_used.len() > NAMED_MAX {
-            lines.push(format!("and {} more, in the report", evidence.not_used.len() - NAMED_MAX));
+            lines.push(format!(
+                "and {} more, in the report",
+                evidence.not_used.len() - NAMED_MAX
+            ));
         }
-        blocks.push(Block::List { title: "Not used, and why:".into(), items: lines });
+        blocks.push(Block::List {
+            title: "Not used, and why:".into(),
+            items: lines,
+        });
     }
     blocks
 }
 
 fn closed(config: &Config, evidence: &Evidence) -> String {
     let round = &evidence.round;
-    let closed = round.closed.map(|at| format!(", closed {}", minute(at, &config.site.zone))).unwrap_or_default();
-    let revision = if round.revision > 1 { format!(", revision {}", round.revision) } else { String::new() };
+    let closed = round
+        .closed
+        .map(|at| format!(", closed {}", minute(at, &config.site.zone)))
+        .unwrap_or_default();
+    let revision = if round.revision > 1 {
+        format!(", revision {}", round.revision)
+    } else {
+        String::new()
+    };
     let measured = evidence.measured.map_or_else(String::new, |m| {
-        format!(" Measured {} to {}.", m.first.strftime("%-d %B %Y %H:%M"), m.last.strftime("%-d %B %Y %H:%M"))
+        format!(" Measured {}.", span(m.first, m.last))
     });
     let not_used = match evidence.not_used.len() {
         0 => String::new(),
@@ -62,24 +89,48 @@ fn closed(config: &Config, evidence: &Evidence) -> String {
 
 fn counts(items: &[Item<'_>]) -> String {
     let any_before = items.iter().any(|i| i.earlier.is_some());
-    let parts: Vec<String> = [Standing::Act, Standing::Watch, Standing::Under, Standing::NotJudged]
-        .into_iter()
-        .map(|standing| {
-            let now = items.iter().filter(|i| i.now() == standing).count();
-            let before = items.iter().filter(|i| i.before() == Some(standing)).count();
-            if any_before { format!("{standing} {now} (was {before})") } else { format!("{standing} {now}") }
-        })
-        .collect();
+    let parts: Vec<String> = [
+        Standing::Act,
+        Standing::Watch,
+        Standing::Under,
+        Standing::NotJudged,
+    ]
+    .into_iter()
+    .map(|standing| {
+        let now = items.iter().filter(|i| i.now() == standing).count();
+        let before = items
+            .iter()
+            .filter(|i| i.before() == Some(standing))
+            .count();
+        if any_before {
+            format!("{standing} {now} (was {before})")
+        } else {
+            format!("{standing} {now}")
+        }
+    })
+    .collect();
     let first = items.iter().filter(|i| i.earlier.is_none()).count();
-    let first = if any_before && first > 0 { format!("; {first} for the first time") } else { String::new() };
+    let first = if any_before && first > 0 {
+        format!("; {first} for the first time")
+    } else {
+        String::new()
+    };
     let why: Vec<String> = items
         .iter()
         .filter(|i| i.now() == Standing::NotJudged)
         .take(NAMED_MAX)
         .map(|i| format!("{}: {}", i.label(), sentence(i.why())))
         .collect();
-    let why = if why.is_empty() { String::new() } else { format!(" Not judged: {}.", why.join("; ")) };
-    format!("{}: {}{first}.{why}", count(items.len(), "characteristic"), parts.join(", "))
+    let why = if why.is_empty() {
+        String::new()
+    } else {
+        format!(" Not judged: {}.", why.join("; "))
+    };
+    format!(
+        "{}: {}{first}.{why}",
+        count(items.len(), "characteristic"),
+        parts.join(", ")
+    )
 }
 
 fn ranked(item: Item<'_>) -> String {
@@ -90,7 +141,9 @@ fn ranked(item: Item<'_>) -> String {
         None => {}
     }
     line.push_str(&format!(", {}", share_and_before(item)));
-    let least = item.record().and_then(|r| r.study.figures.gauge.share_of_tolerance.at_least);
+    let least = item
+        .record()
+        .and_then(|r| r.study.figures.gauge.share_of_tolerance.at_least);
     if let Some(least) = least.filter(|least| *least >= 0.005) {
         line.push_str(&format!(", at least {}", percent(least)));
     }
@@ -101,14 +154,27 @@ fn ranked(item: Item<'_>) -> String {
 }
 
 /// Spreads and mean squares of one characteristic, as a reader's own sheet would have them.
-pub(super) fn figures(item: Item<'_>, record: &Record, telling: Telling<'_>, scale: &Scale) -> Vec<Block> {
+pub(super) fn figures(
+    item: Item<'_>,
+    record: &Record,
+    telling: Telling<'_>,
+    scale: &Scale,
+) -> Vec<Block> {
     let figures = &record.study.figures;
     let of = |spread: &restudy_engine::Spread| scale.figure(spread.sd.estimate);
-    let ndc = record.study.ndc.whole.map_or_else(|| "–".into(), |n| n.to_string());
-    let unit = if scale.unit.is_empty() { String::new() } else { format!(" in {}", scale.unit) };
+    let ndc = record
+        .study
+        .ndc
+        .whole
+        .map_or_else(|| "–".into(), |n| n.to_string());
+    let unit = if scale.unit.is_empty() {
+        String::new()
+    } else {
+        format!(" in {}", scale.unit)
+    };
     let spreads = format!(
         "{}, standard deviations{unit}: EV {}, AV {}, GRR {}, PV {}; ndc {ndc}.",
-        item.label(),
+        capital(&item.label()),
         of(&figures.repeatability),
         of(&figures.reproducibility),
         of(&figures.gauge),
@@ -119,12 +185,23 @@ pub(super) fn figures(item: Item<'_>, record: &Record, telling: Telling<'_>, sca
         .mean_squares
         .iter()
         .filter_map(|line| {
-            let name = if line.name == WITHIN_CELLS { "within cells".into() } else { telling.in_plant_words(&line.name) };
+            let name = if line.name == WITHIN_CELLS {
+                "within cells".into()
+            } else {
+                telling.in_plant_words(&line.name)
+            };
             Some(format!("{name} {} ({})", scale.squared(line.ms?), line.df))
         })
         .collect();
-    let unit = if scale.unit.is_empty() { String::new() } else { format!(" in {}²", scale.unit) };
-    vec![Block::Text(spreads), Block::Text(format!("Mean squares{unit} (df): {}.", squares.join(", ")))]
+    let unit = if scale.unit.is_empty() {
+        String::new()
+    } else {
+        format!(" in {}²", scale.unit)
+    };
+    vec![
+        Block::Text(spreads),
+        Block::Text(format!("Mean squares{unit} (df): {}.", squares.join(", "))),
+    ]
 }
 
 /// Where to read on.

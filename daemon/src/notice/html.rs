@@ -35,7 +35,10 @@ pub(super) fn page(letter: &Letter) -> String {
             Block::Text(text) => page.push_str(&element("p", PARAGRAPH, &escaped(text))),
             Block::List { title, items } => {
                 page.push_str(&element("p", "margin:0 0 0.2em 0", &escaped(title)));
-                let items: String = items.iter().map(|item| format!("<li>{}</li>\n", escaped(item))).collect();
+                let items: String = items
+                    .iter()
+                    .map(|item| format!("<li>{}</li>\n", escaped(item)))
+                    .collect();
                 page.push_str(&element("ul", LIST, &format!("\n{items}")));
             }
         }
@@ -78,26 +81,55 @@ mod tests {
         let hostile = "<script>alert('x')</script> & \"bore\"".to_owned();
         let letter = Letter {
             subject: hostile.clone(),
-            lead: vec![Line { label: "Why", text: hostile.clone() }],
-            body: vec![Block::List { title: hostile.clone(), items: vec![hostile.clone()] }],
+            lead: vec![Line {
+                label: "Why",
+                text: hostile.clone(),
+            }],
+            body: vec![Block::List {
+                title: hostile.clone(),
+                items: vec![hostile.clone()],
+            }],
             foot: vec![hostile],
         };
         let page = page(&letter);
         assert!(!page.contains("<script"), "{page}");
-        assert_eq!(page.matches("&lt;script&gt;alert(&#39;x&#39;)&lt;/script&gt; &amp; &quot;bore&quot;").count(), 5);
+        assert_eq!(
+            page.matches("&lt;script&gt;alert(&#39;x&#39;)&lt;/script&gt; &amp; &quot;bore&quot;")
+                .count(),
+            5
+        );
     }
 
     #[test]
     fn every_element_is_closed_in_order() {
         let letter = Letter {
             subject: "s".into(),
-            lead: vec![Line { label: "", text: "a".into() }, Line { label: "Next", text: "b".into() }],
-            body: vec![Block::Text("c".into()), Block::List { title: "d".into(), items: vec!["e".into(), "f".into()] }],
+            lead: vec![
+                Line {
+                    label: "",
+                    text: "a".into(),
+                },
+                Line {
+                    label: "Next",
+                    text: "b".into(),
+                },
+            ],
+            body: vec![
+                Block::Text("c".into()),
+                Block::List {
+                    title: "d".into(),
+                    items: vec!["e".into(), "f".into()],
+                },
+            ],
             foot: vec!["g".into()],
         };
         let page = page(&letter);
         let mut open: Vec<&str> = Vec::new();
-        for tag in page.split('<').skip(1).filter_map(|rest| rest.split(['>', ' ']).next()) {
+        for tag in page
+            .split('<')
+            .skip(1)
+            .filter_map(|rest| rest.split(['>', ' ']).next())
+        {
             match tag.strip_prefix('/') {
                 Some(name) => assert_eq!(open.pop(), Some(name)),
                 None if matches!(tag, "!DOCTYPE" | "meta" | "hr") => {}

@@ -40,14 +40,18 @@ pub(super) fn bytes(envelope: &Envelope<'_>, message: &Message) -> Result<Vec<u8
         .message_id(Some(envelope.id.to_owned()))
         .raw_header(automatic);
     if envelope.thread != envelope.id {
-        mail = mail.in_reply_to(envelope.thread.to_owned()).references(envelope.thread.to_owned());
+        mail = mail
+            .in_reply_to(envelope.thread.to_owned())
+            .references(envelope.thread.to_owned());
     }
     let digest = hex(&Sha256::digest(envelope.id.as_bytes()));
     let parts = MultiPart::alternative()
         .boundary(format!("restudy-{}", &digest[..32]))
         .singlepart(part(ContentType::TEXT_PLAIN, &message.text)?)
         .singlepart(part(ContentType::TEXT_HTML, &message.html)?);
-    let mail = mail.multipart(parts).map_err(|e| format!("the mail cannot be written: {e}"))?;
+    let mail = mail
+        .multipart(parts)
+        .map_err(|e| format!("the mail cannot be written: {e}"))?;
     Ok(mail.formatted())
 }
 
@@ -66,6 +70,9 @@ pub(super) fn id(sender: &str, about: &[&str]) -> String {
         digest.update((field.len() as u64).to_be_bytes());
         digest.update(field.as_bytes());
     }
-    let host = super::mail::sender(sender).map_or_else(|_| "restudy.invalid".into(), |m| m.email.domain().to_owned());
+    let host = super::mail::sender(sender).map_or_else(
+        |_| "restudy.invalid".into(),
+        |m| m.email.domain().to_owned(),
+    );
     format!("<{}@{host}>", &hex(&digest.finalize())[..32])
 }

@@ -47,7 +47,10 @@ impl News {
 
     /// True when a person is told of it.
     pub(super) const fn changed(self) -> bool {
-        matches!(self, Self::NewAct | Self::NewWatch | Self::Lost | Self::Back)
+        matches!(
+            self,
+            Self::NewAct | Self::NewWatch | Self::Lost | Self::Back
+        )
     }
 }
 
@@ -94,7 +97,11 @@ impl<'a> Item<'a> {
         let (limits, chance) = (self.limits()?, self.record()?.study.chance_above);
         let act = self.now() == Standing::Act
             || self.news == News::Back && self.before() == Some(Standing::Act);
-        Some(if act { (limits.act, chance.act) } else { (limits.watch, chance.watch) })
+        Some(if act {
+            (limits.act, chance.act)
+        } else {
+            (limits.watch, chance.watch)
+        })
     }
 
     /// Why it is not judged.
@@ -111,6 +118,13 @@ impl<'a> Item<'a> {
         self.news
             .cmp(&other.news)
             .then_with(|| other.outcome.special.cmp(&self.outcome.special))
+            .then_with(|| {
+                if self.news == News::Back {
+                    other.before().cmp(&self.before())
+                } else {
+                    Ordering::Equal
+                }
+            })
             .then_with(|| chance(other).total_cmp(&chance(self)))
             .then_with(|| share(other).total_cmp(&share(self)))
     }
@@ -125,7 +139,12 @@ pub(super) fn ranked(worked: &Worked) -> Vec<Item<'_>> {
             let earlier = worked.earlier.get(&outcome.characteristic);
             let news = News::of(earlier.map(|e| e.study.standing), outcome.standing());
             let feature = worked.evidence.features.get(outcome.feature)?;
-            Some(Item { outcome, feature, earlier, news })
+            Some(Item {
+                outcome,
+                feature,
+                earlier,
+                news,
+            })
         })
         .collect();
     items.sort_by(Item::rank);
@@ -162,7 +181,11 @@ mod tests {
         ];
         for (before, now, news) in table {
             assert_eq!(News::of(before, now), news, "{before:?} to {now:?}");
-            assert_eq!(news.changed(), before.map_or(now >= Watch, |b| b != now), "{before:?} to {now:?}");
+            assert_eq!(
+                news.changed(),
+                before.map_or(now >= Watch, |b| b != now),
+                "{before:?} to {now:?}"
+            );
         }
     }
 }

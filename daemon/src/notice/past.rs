@@ -31,13 +31,23 @@ impl Past {
     /// `None` for a round without a study.
     pub(super) fn read(record: &str) -> Option<Self> {
         let record: Value = serde_json::from_str(record).ok()?;
-        let sds = record["components"].as_array()?.iter().filter_map(|component| {
-            Some((component["name"].as_str()?.to_owned(), component["sd"]["estimate"].as_f64()?))
-        });
-        let within = record["mean_squares"].as_array()?.iter().find(|line| line["name"] == WITHIN_CELLS);
+        let sds = record["components"]
+            .as_array()?
+            .iter()
+            .filter_map(|component| {
+                Some((
+                    component["name"].as_str()?.to_owned(),
+                    component["sd"]["estimate"].as_f64()?,
+                ))
+            });
+        let within = record["mean_squares"]
+            .as_array()?
+            .iter()
+            .find(|line| line["name"] == WITHIN_CELLS);
         Some(Self {
             sds: sds.collect(),
-            repeatability: record["figures"]["repeatability"]["share_of_tolerance"]["estimate"].as_f64(),
+            repeatability: record["figures"]["repeatability"]["share_of_tolerance"]["estimate"]
+                .as_f64(),
             within_df: within.and_then(|line| line["df"].as_f64()),
             lower: record["lower"].as_f64(),
             upper: record["upper"].as_f64(),
@@ -46,12 +56,22 @@ impl Past {
 
     /// How the repeatability has moved; `None` where one of the two rounds does not tell it.
     pub(super) fn repeatability_now(&self, now: &Study) -> Option<Repeatability> {
-        let line = now.mean_squares.iter().find(|line| line.name == WITHIN_CELLS)?;
+        let line = now
+            .mean_squares
+            .iter()
+            .find(|line| line.name == WITHIN_CELLS)?;
         let before = self.sds.get(WITHIN_CELLS).filter(|sd| **sd > 0.0)?;
-        let (ratio, df, df_before) = (line.ms? / (before * before), line.df as f64, self.within_df?);
+        let (ratio, df, df_before) = (
+            line.ms? / (before * before),
+            line.df as f64,
+            self.within_df?,
+        );
         if ratio > 1.0 && quantile::f_above(ratio, df, df_before) < REAL_BELOW {
             Some(Repeatability::Higher)
-        } else if ratio > 0.0 && ratio < 1.0 && quantile::f_above(1.0 / ratio, df_before, df) < REAL_BELOW {
+        } else if ratio > 0.0
+            && ratio < 1.0
+            && quantile::f_above(1.0 / ratio, df_before, df) < REAL_BELOW
+        {
             Some(Repeatability::Lower)
         } else {
             Some(Repeatability::AsBefore)

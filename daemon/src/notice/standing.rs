@@ -17,10 +17,15 @@ const IN_A_LINE: usize = 4;
 pub(super) fn letter(round: &Round<'_>) -> Option<Letter> {
     let head = round.items.iter().copied().find(|i| i.news.changed())?;
     let scale = scale(head);
-    let telling = Telling { evidence: round.evidence(), scale: &scale };
+    let telling = Telling {
+        evidence: round.evidence(),
+        scale: &scale,
+    };
     let past = head.earlier.and_then(|e| Past::read(&e.study.record));
     let lead = match (head.news, head.record()) {
-        (News::NewAct | News::NewWatch, Some(record)) => up(round, head, record, past.as_ref(), telling),
+        (News::NewAct | News::NewWatch, Some(record)) => {
+            up(round, head, record, past.as_ref(), telling)
+        }
         (News::Back, Some(record)) => back(round, head, record, past.as_ref(), telling),
         _ => lost(round, head),
     };
@@ -35,7 +40,10 @@ pub(super) fn letter(round: &Round<'_>) -> Option<Letter> {
         lead,
         body,
         foot: vec![
-            format!("You get this because {} changed. The next mail comes when one changes again.", count(changed, "standing")),
+            format!(
+                "You get this because {} changed. The next mail comes when one changes again.",
+                count(changed, "standing")
+            ),
             CAUTION.into(),
             round.signature(),
         ],
@@ -44,35 +52,69 @@ pub(super) fn letter(round: &Round<'_>) -> Option<Letter> {
 
 pub(super) fn scale(item: Item<'_>) -> Scale {
     let record = item.record();
-    Scale::of(item.feature.unit.as_deref(), record.and_then(|r| r.study.figures.gauge.sd.estimate))
+    Scale::of(
+        item.feature.unit.as_deref(),
+        record.and_then(|r| r.study.figures.gauge.sd.estimate),
+    )
 }
 
 fn subject(round: &Round<'_>, head: Item<'_>) -> String {
     let label = head.label();
     let others = round.items.iter().filter(|i| i.news == head.news).count() - 1;
-    let more = if others > 0 { format!(" (+{others} more)") } else { String::new() };
+    let more = (others > 0).then(|| format!("+{others} more"));
     let (state, what) = match head.news {
-        News::NewAct => ("ACT", format!("{label} takes {} of tolerance", sure::share(head))),
-        News::NewWatch => ("WATCH", format!("{label} takes {} of tolerance", sure::share(head))),
+        News::NewAct => (
+            "ACT",
+            format!("{label} takes {} of tolerance", sure::share(head)),
+        ),
+        News::NewWatch => (
+            "WATCH",
+            format!("{label} takes {} of tolerance", sure::share(head)),
+        ),
         News::Back => {
-            let before = head.share_before().map_or_else(|| "not judged".into(), super::words::percent);
-            ("BACK", format!("{label} at {} of tolerance (was {before})", sure::share(head)))
+            let before = head
+                .share_before()
+                .map_or_else(|| "not judged".into(), super::words::percent);
+            let aside = [Some(format!("was {before}")), more.clone()]
+                .into_iter()
+                .flatten()
+                .collect::<Vec<_>>();
+            return format!(
+                "BACK: {}: {label} at {} of tolerance ({})",
+                round.place(),
+                sure::share(head),
+                aside.join("; ")
+            );
         }
         _ => {
-            let before = head.share_before().map_or_else(String::new, |s| format!(" (was {} of tolerance)", super::words::percent(s)));
+            let before = head.share_before().map_or_else(String::new, |s| {
+                format!(" (was {} of tolerance)", super::words::percent(s))
+            });
             ("NOT JUDGED", format!("{label}{before}"))
         }
     };
+    let more = more.map(|more| format!(" ({more})")).unwrap_or_default();
     format!("{state}: {}: {what}{more}", round.place())
 }
 
 fn line(label: &'static str, text: impl Into<String>) -> Line {
-    Line { label, text: text.into() }
+    Line {
+        label,
+        text: text.into(),
+    }
 }
 
-fn up(round: &Round<'_>, head: Item<'_>, record: &Record, past: Option<&Past>, telling: Telling<'_>) -> Vec<Line> {
+fn up(
+    round: &Round<'_>,
+    head: Item<'_>,
+    record: &Record,
+    past: Option<&Past>,
+    telling: Telling<'_>,
+) -> Vec<Line> {
     let cause = cause::of(round.evidence(), head.feature, record);
-    let step = cause.as_ref().map_or_else(|| "repeat the whole round".to_owned(), |c| telling.next(c));
+    let step = cause
+        .as_ref()
+        .map_or_else(|| "repeat the whole round".to_owned(), |c| telling.next(c));
     let window = match (head.earlier, head.share_before()) {
         (Some(earlier), Some(_)) => format!(
             "Measured since {}, the last round below this limit: whether those results are affected is your call",
@@ -90,8 +132,16 @@ fn up(round: &Round<'_>, head: Item<'_>, record: &Record, past: Option<&Past>, t
 }
 
 /// The cause, the share without it, and whether repeatability moved.
-pub(super) fn why(cause: Option<&Cause>, record: &Record, past: Option<&Past>, telling: Telling<'_>) -> String {
-    let told = cause.map_or_else(|| "the data do not tell the sources apart".to_owned(), |c| telling.why(c));
+pub(super) fn why(
+    cause: Option<&Cause>,
+    record: &Record,
+    past: Option<&Past>,
+    telling: Telling<'_>,
+) -> String {
+    let told = cause.map_or_else(
+        || "the data do not tell the sources apart".to_owned(),
+        |c| telling.why(c),
+    );
     let without = cause.and_then(|c| telling.without(c));
     let moved = past.and_then(|past| telling.repeatability(&record.study, past));
     let sentences: Vec<String> = [Some(told), without, moved].into_iter().flatten().collect();
@@ -99,36 +149,57 @@ pub(super) fn why(cause: Option<&Cause>, record: &Record, past: Option<&Past>, t
 }
 
 fn also(round: &Round<'_>, head: Item<'_>, cause: Option<&Cause>) -> String {
-    let others = || round.items.iter().copied().filter(|i| i.outcome.feature != head.outcome.feature);
+    let others = || {
+        round
+            .items
+            .iter()
+            .copied()
+            .filter(|i| i.outcome.feature != head.outcome.feature)
+    };
     let group = |news: News, title: &str, told: fn(Item<'_>) -> String| {
         let names: Vec<String> = others().filter(|i| i.news == news).map(told).collect();
         (!names.is_empty()).then(|| format!("{title}: {}", some(&names, IN_A_LINE)))
     };
     let with_share: fn(Item<'_>) -> String = |i| format!("{} {}", i.label(), sure::share(i));
-    let with_both: fn(Item<'_>) -> String = |i| format!("{} {}", i.label(), sure::share_and_before(i));
+    let with_both: fn(Item<'_>) -> String =
+        |i| format!("{} {}", i.label(), sure::share_and_before(i));
     let groups = [
-        group(News::NewAct, "also new at act", with_share),
-        same_level(round, head, cause),
+        group(News::NewAct, "new at act", with_share),
+        same_level(round, head, cause).filter(|_| head.news == News::NewAct),
         group(News::NewWatch, "new at watch", with_share),
+        same_level(round, head, cause).filter(|_| head.news == News::NewWatch),
         group(News::StillAct, "still at act", with_both),
         group(News::Lost, "not judged any more", |i| i.label()),
         group(News::Back, "back", with_both),
     ];
-    let told: Vec<String> = groups.into_iter().flatten().enumerate().map(|(n, s)| if n == 0 { s } else { capital(&s) }).collect();
-    if told.is_empty() { "nothing else changed.".into() } else { format!("{}.", told.join(". ")) }
+    let told: Vec<String> = groups
+        .into_iter()
+        .flatten()
+        .enumerate()
+        .map(|(n, s)| if n == 0 { s } else { capital(&s) })
+        .collect();
+    if told.is_empty() {
+        "nothing else changed.".into()
+    } else {
+        format!("{}.", told.join(". "))
+    }
 }
 
-/// How many of the others that went up have the same level standing out.
+/// How many of the others with the same news have the same level standing out.
 fn same_level(round: &Round<'_>, head: Item<'_>, cause: Option<&Cause>) -> Option<String> {
-    let Source::Level { factor, level, .. } = cause?.source else { return None };
+    let Source::Level { factor, level, .. } = cause?.source else {
+        return None;
+    };
     let up: Vec<Item<'_>> = round
         .items
         .iter()
         .copied()
-        .filter(|i| i.outcome.feature != head.outcome.feature && matches!(i.news, News::NewAct | News::NewWatch))
+        .filter(|i| i.outcome.feature != head.outcome.feature && i.news == head.news)
         .collect();
     let alike = |item: &&Item<'_>| {
-        let found = item.record().and_then(|record| cause::of(round.evidence(), item.feature, record));
+        let found = item
+            .record()
+            .and_then(|record| cause::of(round.evidence(), item.feature, record));
         found.is_some_and(|c| matches!(c.source, Source::Level { factor: f, level: l, .. } if (f, l) == (factor, level)))
     };
     let same = up.iter().filter(alike).count();
@@ -136,16 +207,31 @@ fn same_level(round: &Round<'_>, head: Item<'_>, cause: Option<&Cause>) -> Optio
     match (same, up.len()) {
         (0, _) => None,
         (1, 1) => Some(format!("{name} stands out there too")),
+        (same, all) if same == all => Some(format!("{name} stands out on all {all} of these too")),
         (same, all) => Some(format!("{name} stands out on {same} of these {all} too")),
     }
 }
 
-fn back(round: &Round<'_>, head: Item<'_>, record: &Record, past: Option<&Past>, telling: Telling<'_>) -> Vec<Line> {
+fn back(
+    round: &Round<'_>,
+    head: Item<'_>,
+    record: &Record,
+    past: Option<&Past>,
+    telling: Telling<'_>,
+) -> Vec<Line> {
     let moved = past.map(|past| {
-        let told = [telling.shrunk(&record.study, past), telling.repeatability(&record.study, past)];
+        let told = [
+            telling.shrunk(&record.study, past),
+            telling.repeatability(&record.study, past),
+        ];
         told.into_iter().flatten().collect::<Vec<_>>().join(". ")
     });
-    let held: Vec<String> = round.items.iter().filter_map(|i| sure::held(*i)).take(IN_A_LINE).collect();
+    let held: Vec<String> = round
+        .items
+        .iter()
+        .filter_map(|i| sure::held(*i))
+        .take(IN_A_LINE)
+        .collect();
     let mut also = also(round, head, None);
     if !held.is_empty() {
         also = format!("{also} {}.", capital(&held.join(". ")));
@@ -153,24 +239,47 @@ fn back(round: &Round<'_>, head: Item<'_>, record: &Record, past: Option<&Past>,
     let before = head.before().map_or("above its limit", |b| b.as_str());
     vec![
         line("", sure::back(head)),
-        line("How sure", sure::below(head).map_or_else(|| "the data do not tell.".into(), |s| format!("{s}."))),
-        line("What changed", moved.filter(|m| !m.is_empty()).map_or_else(|| "the records do not tell.".into(), |m| format!("{m}."))),
+        line(
+            "How sure",
+            sure::below(head).map_or_else(|| "the data do not tell.".into(), |s| format!("{s}.")),
+        ),
+        line(
+            "What changed",
+            moved
+                .filter(|m| !m.is_empty())
+                .map_or_else(|| "the records do not tell.".into(), |m| format!("{m}.")),
+        ),
         line("Also", also),
-        line("Next", format!("nothing to do at the gauge. Whether results measured while it stood at \"{before}\" need another look is your call.")),
+        line(
+            "Next",
+            format!(
+                "nothing to do at the gauge. Whether results measured while it stood at \"{before}\" need another look is your call."
+            ),
+        ),
     ]
 }
 
 fn lost(round: &Round<'_>, head: Item<'_>) -> Vec<Line> {
     let before = match (head.share_before(), head.earlier) {
         (Some(share), Some(earlier)) => {
-            format!(" It was {} of the tolerance on {}.", super::words::percent(share), day(earlier.closed, round.zone()))
+            format!(
+                " It was {} of the tolerance on {}.",
+                super::words::percent(share),
+                day(earlier.closed, round.zone())
+            )
         }
         _ => String::new(),
     };
     vec![
-        line("", format!("{} is not judged any more.{before}", capital(&head.label()))),
+        line(
+            "",
+            format!("{} is not judged any more.{before}", capital(&head.label())),
+        ),
         line("Why", format!("{}.", sentence(head.why()))),
         line("Also", also(round, head, None)),
-        line("Next", "give the plan or the exports what is missing. Until then nothing says where it stands."),
+        line(
+            "Next",
+            "give the plan or the exports what is missing. Until then nothing says where it stands.",
+        ),
     ]
 }

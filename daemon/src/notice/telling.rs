@@ -22,10 +22,24 @@ impl Telling<'_> {
     pub(super) fn why(self, cause: &Cause) -> String {
         let part = format!("{} of the gauge's variance", percent(cause.of_gauge));
         match &cause.source {
-            Source::Level { factor, level, by, parts } => {
+            Source::Level {
+                factor,
+                level,
+                by,
+                parts,
+            } => {
                 let direction = if *by > 0.0 { "above" } else { "below" };
-                let all = self.evidence.factors.iter().find(|f| f.name == PART).map_or(0, |f| f.levels.len());
-                let on = if *parts == all { format!("all {all} parts") } else { format!("{parts} of {all} parts") };
+                let all = self
+                    .evidence
+                    .factors
+                    .iter()
+                    .find(|f| f.name == PART)
+                    .map_or(0, |f| f.levels.len());
+                let on = if *parts == all {
+                    format!("all {all} parts")
+                } else {
+                    format!("{parts} of {all} parts")
+                };
                 format!(
                     "{} reads {} {direction} {}, on {on}; differences between {} make {part}",
                     self.level(*factor, *level),
@@ -34,7 +48,12 @@ impl Telling<'_> {
                     self.levels_of(*factor),
                 )
             }
-            Source::Levels { factor, lowest, highest, by } => format!(
+            Source::Levels {
+                factor,
+                lowest,
+                highest,
+                by,
+            } => format!(
                 "{} differ by {}, from {} (lowest) to {} (highest); that makes {part}",
                 words::capital(&self.levels_of(*factor)),
                 self.scale.length(*by),
@@ -44,7 +63,10 @@ impl Telling<'_> {
             Source::Together { factors, furthest } => {
                 let names: Vec<String> = factors.iter().map(|f| self.word(*f)).collect();
                 let what = match names.as_slice() {
-                    [first, other] if first == PART => format!("differences between {} change from part to part", plural(other)),
+                    [first, other] if first == PART => format!(
+                        "differences between {} change from part to part",
+                        plural(other)
+                    ),
                     _ => format!("{} act together", list(&names)),
                 };
                 let where_ = match (factors.as_slice(), furthest) {
@@ -62,7 +84,11 @@ impl Telling<'_> {
             Source::Repeatability { widest } => {
                 let where_ = widest.as_ref().map(|(levels, range)| {
                     let runs = count(self.evidence.trials, "run");
-                    format!("; widest: {}, {} over {runs}", self.cell(levels), self.scale.length(*range))
+                    format!(
+                        "; widest: {}, {} over {runs}",
+                        self.cell(levels),
+                        self.scale.length(*range)
+                    )
                 });
                 format!("Repeatability makes {part}{}", where_.unwrap_or_default())
             }
@@ -110,12 +136,21 @@ impl Telling<'_> {
 
     /// Repeatability now and in the round before.
     pub(super) fn repeatability(self, now: &Study, past: &Past) -> Option<String> {
-        let shown = match (now.figures.repeatability.share_of_tolerance.estimate, past.repeatability) {
-            (Some(now), Some(before)) => format!("{} of tolerance (was {})", percent(now), percent(before)),
+        let shown = match (
+            now.figures.repeatability.share_of_tolerance.estimate,
+            past.repeatability,
+        ) {
+            (Some(now), Some(before)) => {
+                format!("{} of tolerance (was {})", percent(now), percent(before))
+            }
             _ => {
                 let sd = now.figures.repeatability.sd.estimate?;
                 let before = past.sds.get(WITHIN_CELLS)?;
-                format!("sd {} (was {})", self.scale.length(sd), self.scale.length(*before))
+                format!(
+                    "sd {} (was {})",
+                    self.scale.length(sd),
+                    self.scale.length(*before)
+                )
             }
         };
         let moved = match past.repeatability_now(now)? {
@@ -133,17 +168,30 @@ impl Telling<'_> {
             .components
             .iter()
             .filter(|c| c.of != [PART])
-            .filter_map(|c| Some((c.name.as_ref(), c.sd.estimate?, *past.sds.get(c.name.as_ref())?)))
+            .filter_map(|c| {
+                Some((
+                    c.name.as_ref(),
+                    c.sd.estimate?,
+                    *past.sds.get(c.name.as_ref())?,
+                ))
+            })
             .filter(|(_, sd, before)| sd < before)
             .max_by(|a, b| fell(a.1, a.2).total_cmp(&fell(b.1, b.2)))?;
         let what = match name {
             WITHIN_CELLS => "repeatability".to_owned(),
             name => match self.evidence.factors.iter().find(|f| f.name == name) {
-                Some(factor) => format!("differences between {}", plural(&words::name(&factor.word))),
+                Some(factor) => {
+                    format!("differences between {}", plural(&words::name(&factor.word)))
+                }
                 None => self.in_plant_words(name),
             },
         };
-        Some(format!("{}: sd {}, was {}", words::capital(&what), self.scale.length(sd), self.scale.length(before)))
+        Some(format!(
+            "{}: sd {}, was {}",
+            words::capital(&what),
+            self.scale.length(sd),
+            self.scale.length(before)
+        ))
     }
 
     /// A line's name with the plant's own words for its factors.
@@ -169,14 +217,23 @@ impl Telling<'_> {
 
     fn others(self, factor: usize, but: usize) -> String {
         let count = self.evidence.factors[factor].levels.len();
-        let others: Vec<String> = (0..count).filter(|l| *l != but).map(|l| self.level(factor, l)).collect();
-        if others.len() > OTHERS_NAMED { format!("the other {}", others.len()) } else { list(&others) }
+        let others: Vec<String> = (0..count)
+            .filter(|l| *l != but)
+            .map(|l| self.level(factor, l))
+            .collect();
+        if others.len() > OTHERS_NAMED {
+            format!("the other {}", others.len())
+        } else {
+            list(&others)
+        }
     }
 
     fn cell(self, levels: &[usize]) -> String {
-        let names = levels.iter().enumerate().map(|(factor, level)| match self.evidence.factors[factor].name.as_str() {
-            PART => format!("part {}", self.level(factor, *level)),
-            _ => self.level(factor, *level),
+        let names = levels.iter().enumerate().map(|(factor, level)| {
+            match self.evidence.factors[factor].name.as_str() {
+                PART => format!("part {}", self.level(factor, *level)),
+                _ => self.level(factor, *level),
+            }
         });
         names.collect::<Vec<_>>().join(" with ")
     }
@@ -184,5 +241,9 @@ impl Telling<'_> {
 
 /// Of the plant's word for a factor.
 fn plural(word: &str) -> String {
-    if word.ends_with('s') { word.to_owned() } else { format!("{word}s") }
+    if word.ends_with('s') {
+        word.to_owned()
+    } else {
+        format!("{word}s")
+    }
 }

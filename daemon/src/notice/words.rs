@@ -1,5 +1,6 @@
 //! Numbers, dates and foreign texts in words: no more digits than a study supports.
 
+use jiff::civil::DateTime;
 use jiff::tz::TimeZone;
 use restudy_engine::Limits;
 
@@ -10,6 +11,8 @@ use crate::now::in_zone;
 const NAME_MAX: usize = 80;
 /// Sentences from elsewhere are cut to this many characters.
 const SENTENCE_MAX: usize = 400;
+/// Shares closer than this are the same.
+const SAME: f64 = 1e-9;
 /// Above this a gauge sd in mm is told in mm, not in µm.
 const MM_FROM: f64 = 0.1;
 
@@ -18,18 +21,28 @@ pub(super) fn percent(share: f64) -> String {
     format!("{:.0} %", 100.0 * share)
 }
 
-/// A share in whole per cent; with more digits where these would hide on which side of a limit it lies.
+/// A share in whole per cent; with more digits where whole ones would put it on another side of a limit.
 pub(super) fn percent_against(share: f64, limits: Option<Limits>) -> String {
-    let hides = |decimals: usize| {
-        let shown = |x: f64| format!("{:.decimals$}", 100.0 * x);
-        limits.is_some_and(|l| {
-            [l.act, l.watch, l.act * l.back_below, l.watch * l.back_below]
-                .iter()
-                .any(|limit| *limit != share && shown(*limit) == shown(share))
-        })
+    let near = limits.map_or([f64::INFINITY; 4], |l| {
+        [l.act, l.watch, l.act * l.back_below, l.watch * l.back_below]
+    });
+    let side = |x: f64, limit: f64| {
+        if (x - limit).abs() < SAME {
+            0
+        } else if x < limit {
+            -1
+        } else {
+            1
+        }
     };
-    let decimals = (0..3).find(|d| !hides(*d)).unwrap_or(3);
-    format!("{:.decimals$} %", 100.0 * share)
+    let told = |decimals: i32| {
+        let shown =
+            (share * 100.0 * 10_f64.powi(decimals)).round() / (100.0 * 10_f64.powi(decimals));
+        near.iter()
+            .all(|limit| side(shown, *limit) == side(share, *limit))
+    };
+    let decimals = (0..3).find(|d| told(*d)).unwrap_or(3);
+    format!("{:.*} %", decimals as usize, 100.0 * share)
 }
 
 /// A limit as the plan has it.
@@ -41,8 +54,8 @@ pub(super) fn limit(share: f64) -> String {
 /// A chance to 5 %; never a certainty.
 pub(super) fn chance(p: f64) -> String {
     match (20.0 * p).round() {
-        n if n >= 20.0 => "more than 95 %".into(),
-        n if n <= 0.0 => "less than 5 %".into(),
+        n if n >= 20.0 => "above 95 %".into(),
+        n if n <= 0.0 => "below 5 %".into(),
         n => format!("{:.0} %", 5.0 * n),
     }
 }
@@ -54,7 +67,23 @@ pub(super) fn day(utc_ms: i64, zone: &TimeZone) -> String {
 
 /// `3 March 2026 14:20`.
 pub(super) fn minute(utc_ms: i64, zone: &TimeZone) -> String {
-    in_zone(utc_ms, zone).strftime("%-d %B %Y %H:%M").to_string()
+    in_zone(utc_ms, zone)
+        .strftime("%-d %B %Y %H:%M")
+        .to_string()
+}
+
+/// `3 March 2026 08:00 to 14:20`, or with both days.
+pub(super) fn span(first: DateTime, last: DateTime) -> String {
+    let end = if first.date() == last.date() {
+        "%H:%M"
+    } else {
+        "%-d %B %Y %H:%M"
+    };
+    format!(
+        "{} to {}",
+        first.strftime("%-d %B %Y %H:%M"),
+        last.strftime(end)
+    )
 }
 
 /// `a`, `a and b`, `a, b and c`.
@@ -86,11 +115,16 @@ pub(super) fn name(text: &str) -> String {
 
 /// A sentence from elsewhere: one line, not too long, without its full stop.
 pub(super) fn sentence(text: &str) -> String {
-    one_line(text, SENTENCE_MAX).trim_end_matches('.').to_owned()
+    one_line(text, SENTENCE_MAX)
+        .trim_end_matches('.')
+        .to_owned()
 }
 
 fn one_line(text: &str, most: usize) -> String {
-    let clean: String = text.chars().map(|c| if c.is_control() { ' ' } else { c }).collect();
+    let clean: String = text
+        .chars()
+        .map(|c| if c.is_control() { ' ' } else { c })
+        .collect();
     let clean = clean.split_whitespace().collect::<Vec<_>>().join(" ");
     match clean.char_indices().nth(most) {
         Some((end, _)) => format!("{}…", &clean[..end]),
@@ -101,7 +135,10 @@ fn one_line(text: &str, most: usize) -> String {
 /// With a capital letter.
 pub(super) fn capital(text: &str) -> String {
     let mut letters = text.chars();
-    letters.next().map(|first| first.to_uppercase().chain(letters).collect()).unwrap_or_default()
+    letters
+        .next()
+        .map(|first| first.to_uppercase().chain(letters).collect())
+        .unwrap_or_default()
 }
 
 /// The unit in which a characteristic's small lengths are told.
@@ -118,7 +155,10 @@ impl Scale {
     pub(super) fn of(unit: Option<&str>, gauge_sd: Option<f64>) -> Self {
         let unit = name(unit.unwrap_or_default());
         match gauge_sd {
-            Some(sd) if unit == "mm" && sd < MM_FROM => Self { factor: 1000.0, unit: "µm".into() },
+            Some(sd) if unit == "mm" && sd < MM_FROM => Self {
+                factor: 1000.0,
+                unit: "µm".into(),
+            },
             _ => Self { factor: 1.0, unit },
         }
     }
@@ -126,7 +166,11 @@ impl Scale {
     /// A length in words.
     pub(super) fn length(&self, x: f64) -> String {
         let text = significant(self.factor * x, 2);
-        if self.unit.is_empty() { text } else { format!("{text} {}", self.unit) }
+        if self.unit.is_empty() {
+            text
+        } else {
+            format!("{text} {}", self.unit)
+        }
     }
 
     /// A figure without its unit.
@@ -146,7 +190,11 @@ mod tests {
 
     #[test]
     fn a_share_never_looks_as_if_it_were_on_the_other_side() {
-        let limits = Some(Limits { watch: 0.10, act: 0.30, back_below: 0.85 });
+        let limits = Some(Limits {
+            watch: 0.10,
+            act: 0.30,
+            back_below: 0.85,
+        });
         for (share, text) in [
             (0.354, "35 %"),
             (0.302, "30.2 %"),
@@ -165,7 +213,13 @@ mod tests {
 
     #[test]
     fn chances_are_told_in_steps_of_five() {
-        for (p, text) in [(0.812, "80 %"), (0.99, "more than 95 %"), (0.96, "95 %"), (0.01, "less than 5 %"), (0.03, "5 %")] {
+        for (p, text) in [
+            (0.812, "80 %"),
+            (0.99, "above 95 %"),
+            (0.96, "95 %"),
+            (0.01, "below 5 %"),
+            (0.03, "5 %"),
+        ] {
             assert_eq!(chance(p), text, "{p}");
         }
     }
@@ -182,7 +236,10 @@ mod tests {
 
     #[test]
     fn foreign_names_stay_on_one_line() {
-        assert_eq!(name("bore\r\nBcc: a@b.example\tA"), "bore Bcc: a@b.example A");
+        assert_eq!(
+            name("bore\r\nBcc: a@b.example\tA"),
+            "bore Bcc: a@b.example A"
+        );
         assert_eq!(name(&"x".repeat(200)).chars().count(), NAME_MAX + 1);
     }
 

@@ -6,8 +6,8 @@
 //! Invariant: a position is a finite number from 0 to 100, whatever number is asked for.
 
 /// Where the scale begins and ends, in percent of the picture's width.
-const LEFT: f64 = 1.5;
-const RIGHT: f64 = 98.5;
+const LEFT: f64 = 0.0;
+const RIGHT: f64 = 100.0;
 /// More ticks than this are never drawn.
 const TICKS_MAX: usize = 24;
 
@@ -24,7 +24,9 @@ impl Axis {
         let (low, high) = values
             .into_iter()
             .filter(|x| x.is_finite())
-            .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), x| (low.min(x), high.max(x)));
+            .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), x| {
+                (low.min(x), high.max(x))
+            });
         if low > high {
             return None;
         }
@@ -33,7 +35,10 @@ impl Axis {
             false if low == 0.0 => 1.0,
             false => 0.1 * low.abs(),
         };
-        let axis = Axis { low: low - room, high: high + room };
+        let axis = Axis {
+            low: low - room,
+            high: high + room,
+        };
         let span = axis.high - axis.low;
         (span.is_finite() && span > 0.0).then_some(axis)
     }
@@ -41,7 +46,11 @@ impl Axis {
     /// Position of a value; beyond the scale it is the nearer end.
     pub(super) fn at(self, x: f64) -> f64 {
         let part = (x - self.low) / (self.high - self.low);
-        let part = if part.is_nan() { 0.0 } else { part.clamp(0.0, 1.0) };
+        let part = if part.is_nan() {
+            0.0
+        } else {
+            part.clamp(0.0, 1.0)
+        };
         LEFT + part * (RIGHT - LEFT)
     }
 
@@ -74,7 +83,11 @@ impl Axis {
 /// The step of 1, 2 or 5 times a power of ten that is nearest above.
 fn round_step(least: f64) -> f64 {
     let power = 10f64.powf(least.log10().floor());
-    [1.0, 2.0, 5.0, 10.0].into_iter().map(|m| m * power).find(|&s| s >= least).unwrap_or(least)
+    [1.0, 2.0, 5.0, 10.0]
+        .into_iter()
+        .map(|m| m * power)
+        .find(|&s| s >= least)
+        .unwrap_or(least)
 }
 
 #[cfg(test)]
@@ -84,8 +97,14 @@ mod tests {
     #[test]
     fn positions_are_to_scale_and_stay_in_the_picture() {
         let axis = Axis::over([0.0, 50.0]).unwrap();
-        assert_eq!((axis.at(0.0), axis.at(50.0), axis.at(25.0)), (LEFT, RIGHT, 50.0));
-        assert_eq!((axis.at(f64::NEG_INFINITY), axis.at(f64::INFINITY)), (LEFT, RIGHT));
+        assert_eq!(
+            (axis.at(0.0), axis.at(50.0), axis.at(25.0)),
+            (LEFT, RIGHT, 50.0)
+        );
+        assert_eq!(
+            (axis.at(f64::NEG_INFINITY), axis.at(f64::INFINITY)),
+            (LEFT, RIGHT)
+        );
         for x in [f64::NAN, -1e308, 1e308] {
             assert!((0.0..=100.0).contains(&axis.at(x)), "{x}");
         }
@@ -105,7 +124,10 @@ mod tests {
 
     #[test]
     fn ticks_are_round() {
-        assert_eq!(Axis::over([-11.0, 9.0]).unwrap().ticks(4), [-10.0, -5.0, 0.0, 5.0]);
+        assert_eq!(
+            Axis::over([-11.0, 9.0]).unwrap().ticks(4),
+            [-10.0, -5.0, 0.0, 5.0]
+        );
         assert_eq!(Axis::over([0.0, 0.42]).unwrap().ticks(4), [0.0, 0.2, 0.4]);
     }
 }

@@ -29,7 +29,11 @@ const HEIGHT: f64 = 84.0;
 /// The band; `None` when its span is no number.
 pub(super) fn band(subject: Subject<'_>, spread: &Spread) -> Option<Strip> {
     let (lower, upper) = (subject.record.lower, subject.record.upper);
-    if lower.is_none() && upper.is_none() { beside_parts(subject, spread) } else { tolerance(subject, spread) }
+    if lower.is_none() && upper.is_none() {
+        beside_parts(subject, spread)
+    } else {
+        tolerance(subject, spread)
+    }
 }
 
 fn tolerance(subject: Subject<'_>, spread: &Spread) -> Option<Strip> {
@@ -42,7 +46,12 @@ fn tolerance(subject: Subject<'_>, spread: &Spread) -> Option<Strip> {
     let room = OUTSIDE_MAX * (to - from).abs().max(zone);
     let drawn = |x: &f64| (from - room..=to + room).contains(x);
     let shown: Vec<f64> = means.iter().copied().filter(drawn).collect();
-    let ends = [from, to, lower.map_or(from, |l| l - zone), upper.map_or(to, |u| u + zone)];
+    let ends = [
+        from,
+        to,
+        lower.map_or(from, |l| l - zone),
+        upper.map_or(to, |u| u + zone),
+    ];
     let axis = with_margin(ends.into_iter().chain(shown.iter().copied()))?;
     let unit = limit_unit(subject);
     let limits = [(lower, "hatch-down"), (upper, "hatch-up")];
@@ -64,7 +73,13 @@ fn tolerance(subject: Subject<'_>, spread: &Spread) -> Option<Strip> {
         doubt_words(subject, doubt),
         part_words(subject, &means, means.len() - shown.len()),
     ];
-    Some(Strip { height: HEIGHT, body, words: words.into_iter().flatten().collect::<Vec<_>>().join(" ") })
+    let caption = words.into_iter().flatten().collect::<Vec<_>>().join(" ");
+    Some(Strip {
+        height: HEIGHT,
+        body,
+        caption,
+        aloud: String::new(),
+    })
 }
 
 /// The gauge's spread beside the parts, where there is no tolerance.
@@ -73,7 +88,11 @@ fn beside_parts(subject: Subject<'_>, spread: &Spread) -> Option<Strip> {
     let centre = subject.record.study.grand_mean;
     let half = 0.5 * subject.record.study.spread_sds * sd;
     let means: Vec<f64> = spread.parts.iter().map(|p| p.mean).collect();
-    let axis = with_margin([centre - half, centre + half].into_iter().chain(means.iter().copied()))?;
+    let axis = with_margin(
+        [centre - half, centre + half]
+            .into_iter()
+            .chain(means.iter().copied()),
+    )?;
     let unit = subject.unit();
     let size = unit.three_digits(2.0 * half);
     let body = html! {
@@ -81,12 +100,17 @@ fn beside_parts(subject: Subject<'_>, spread: &Spread) -> Option<Strip> {
         (svg::block(axis.at(centre - half), axis.at(centre + half), BAND_TOP, BAND_HEIGHT, "gauge-spread hatch-up"))
         (part_ticks(axis, &means))
     };
-    let words = format!(
+    let caption = format!(
         "Hatched: {} gauge standard deviations, {size}. Ticks: the means of the {}.",
         words::short(subject.record.study.spread_sds),
         count(means.len(), "study part")
     );
-    Some(Strip { height: HEIGHT, body, words })
+    Some(Strip {
+        height: HEIGHT,
+        body,
+        caption,
+        aloud: String::new(),
+    })
 }
 
 /// Where a one-sided tolerance's band ends in the picture: at zero or at the width that its rule gives it, and in
@@ -98,8 +122,15 @@ fn one_sided_end(subject: Subject<'_>, means: &[f64]) -> Option<f64> {
         _ => return None,
     };
     let by_rule = subject.whole().unwrap_or(0.0);
-    let furthest = means.iter().map(|m| (m - limit) * inward).fold(by_rule, f64::max);
-    let depth = if furthest > 0.0 { furthest } else { limit.abs().max(f64::MIN_POSITIVE) };
+    let furthest = means
+        .iter()
+        .map(|m| (m - limit) * inward)
+        .fold(by_rule, f64::max);
+    let depth = if furthest > 0.0 {
+        furthest
+    } else {
+        limit.abs().max(f64::MIN_POSITIVE)
+    };
     Some(limit + inward * depth)
 }
 
@@ -110,11 +141,22 @@ fn with_margin(values: impl Iterator<Item = f64>) -> Option<Axis> {
 }
 
 /// The limits' labels stand inside the tolerance while there is room, else outside.
-fn limit_labels(axis: Axis, lower: Option<f64>, upper: Option<f64>, label: impl Fn(f64) -> String) -> Markup {
+fn limit_labels(
+    axis: Axis,
+    lower: Option<f64>,
+    upper: Option<f64>,
+    label: impl Fn(f64) -> String,
+) -> Markup {
     const ROOM: f64 = 45.0;
     let (left, right) = (lower.map(|l| axis.at(l)), upper.map(|u| axis.at(u)));
-    let narrow = left.zip(right).is_some_and(|(left, right)| right - left < ROOM);
-    let sides = if narrow { (Side::Left, Side::Right) } else { (Side::Right, Side::Left) };
+    let narrow = left
+        .zip(right)
+        .is_some_and(|(left, right)| right - left < ROOM);
+    let sides = if narrow {
+        (Side::Left, Side::Right)
+    } else {
+        (Side::Right, Side::Left)
+    };
     html! {
         @if let (Some(x), Some(lower)) = (left, lower) { (svg::beside(x, 14.0, sides.0, "strong", &label(lower))) }
         @if let (Some(x), Some(upper)) = (right, upper) { (svg::beside(x, 14.0, sides.1, "strong", &label(upper))) }
@@ -140,21 +182,32 @@ fn from_nominal(subject: Subject<'_>) -> Option<f64> {
 
 fn limit_unit(subject: Subject<'_>) -> Unit {
     let origin = from_nominal(subject).unwrap_or(0.0);
-    let limits = [subject.record.lower, subject.record.upper].into_iter().flatten();
+    let limits = [subject.record.lower, subject.record.upper]
+        .into_iter()
+        .flatten();
     let size = limits.map(|l| (l - origin).abs()).fold(0.0, f64::max);
     // A half of a millimetre either side is still read in µm by those who set it.
     Unit::for_size(subject.record.unit.as_deref(), size / 5.0)
 }
 
 fn tolerance_words(subject: Subject<'_>) -> Option<String> {
-    let unit = subject.record.unit.as_deref().map(|u| format!("{}{u}", words::NBSP)).unwrap_or_default();
+    let unit = subject
+        .record
+        .unit
+        .as_deref()
+        .map(|u| format!("{}{u}", words::NBSP))
+        .unwrap_or_default();
     let ends = match (subject.record.lower, subject.record.upper) {
         (Some(lower), Some(upper)) => format!("{} to {}{unit}", exact(lower), exact(upper)),
         (Some(lower), None) => format!("at least {}{unit}", exact(lower)),
         (None, Some(upper)) => format!("at most {}{unit}", exact(upper)),
         (None, None) => return None,
     };
-    let nominal = subject.record.nominal.map(|n| format!(", nominal {}{unit}", exact(n))).unwrap_or_default();
+    let nominal = subject
+        .record
+        .nominal
+        .map(|n| format!(", nominal {}{unit}", exact(n)))
+        .unwrap_or_default();
     let rule = match subject.record.study.tolerance_rule {
         "two-sided" | "none" => String::new(),
         rule => format!(", its width by the rule “{rule}”"),
@@ -172,11 +225,25 @@ fn doubt_words(subject: Subject<'_>, doubt: Option<f64>) -> Option<String> {
 
 fn part_words(subject: Subject<'_>, means: &[f64], outside: usize) -> Option<String> {
     let (first, rest) = means.split_first()?;
-    let (low, high) = rest.iter().fold((*first, *first), |(low, high), m| (low.min(*m), high.max(*m)));
+    let (low, high) = rest.iter().fold((*first, *first), |(low, high), m| {
+        (low.min(*m), high.max(*m))
+    });
     let covered = subject
         .width()
-        .map(|width| format!("; they cover {} of the tolerance", words::percent((high - low) / width)))
+        .map(|width| {
+            format!(
+                "; they cover {} of the tolerance",
+                words::percent((high - low) / width)
+            )
+        })
         .unwrap_or_default();
-    let beyond = if outside > 0 { format!("; {outside} of them lie outside the picture") } else { String::new() };
-    Some(format!("Ticks: the means of the {}{covered}{beyond}.", count(means.len(), "study part")))
+    let beyond = if outside > 0 {
+        format!("; {outside} of them lie outside the picture")
+    } else {
+        String::new()
+    };
+    Some(format!(
+        "Ticks: the means of the {}{covered}{beyond}.",
+        count(means.len(), "study part")
+    ))
 }

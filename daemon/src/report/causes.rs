@@ -70,27 +70,56 @@ impl Ladder {
         let now = Rung::with_limits(Change::AsItIs, &figures.gauge.sd, 1.0)?;
         let parts: Vec<(Cause, f64, String)> = subject
             .causes()
-            .map(|(cause, c)| (cause, c.variance.estimate.unwrap_or(0.0), subject.term(&c.of, &c.within)))
+            .map(|(cause, c)| {
+                (
+                    cause,
+                    c.variance.estimate.unwrap_or(0.0),
+                    subject.term(&c.of, &c.within),
+                )
+            })
             .collect();
-        let steps = parts.iter().enumerate().filter_map(|(i, (cause, variance, term))| {
-            let (change, kept) = match cause {
-                Cause::Repeats => (Change::Twice, OF_TWO * OF_TWO * variance),
-                _ => (Change::Without(*cause, term.clone()), 0.0),
-            };
-            let others = parts.iter().enumerate().filter(|&(j, _)| j != i).map(|(_, part)| part);
-            if others.clone().all(|(cause, ..)| *cause == Cause::Repeats) {
-                let times = if *cause == Cause::Repeats { OF_TWO } else { 1.0 };
-                return Rung::with_limits(change, &figures.repeatability.sd, times);
-            }
-            let left = kept + others.map(|(_, variance, _)| variance).sum::<f64>();
-            Some(Rung { change, sd: left.sqrt(), lower: None, upper: None, open: false })
-        });
-        Some(Ladder { steps: steps.collect(), now })
+        let steps = parts
+            .iter()
+            .enumerate()
+            .filter_map(|(i, (cause, variance, term))| {
+                let (change, kept) = match cause {
+                    Cause::Repeats => (Change::Twice, OF_TWO * OF_TWO * variance),
+                    _ => (Change::Without(*cause, term.clone()), 0.0),
+                };
+                let others = parts
+                    .iter()
+                    .enumerate()
+                    .filter(|&(j, _)| j != i)
+                    .map(|(_, part)| part);
+                if others.clone().all(|(cause, ..)| *cause == Cause::Repeats) {
+                    let times = if *cause == Cause::Repeats {
+                        OF_TWO
+                    } else {
+                        1.0
+                    };
+                    return Rung::with_limits(change, &figures.repeatability.sd, times);
+                }
+                let left = kept + others.map(|(_, variance, _)| variance).sum::<f64>();
+                Some(Rung {
+                    change,
+                    sd: left.sqrt(),
+                    lower: None,
+                    upper: None,
+                    open: false,
+                })
+            });
+        Some(Ladder {
+            steps: steps.collect(),
+            now,
+        })
     }
 
     /// The longest step down; `None` when no change by itself brings the spread down.
     pub(super) fn longest(&self) -> Option<&Rung> {
-        let least = self.steps.iter().reduce(|a, b| if b.sd < a.sd { b } else { a })?;
+        let least = self
+            .steps
+            .iter()
+            .reduce(|a, b| if b.sd < a.sd { b } else { a })?;
         (least.sd < (1.0 - WORTH) * self.now.sd).then_some(least)
     }
 
@@ -113,7 +142,8 @@ impl Ladder {
             ),
             Change::Without(_, term) => format!(
                 "The longest step down is without the {term} differences, {from_to}: {}.",
-                who(term, subject, spread, &unit).unwrap_or_else(|| "find out what differs".to_owned())
+                who(term, subject, spread, &unit)
+                    .unwrap_or_else(|| "find out what differs".to_owned())
             ),
         }
     }
@@ -123,7 +153,13 @@ impl Rung {
     fn with_limits(change: Change, sd: &Figure, times: f64) -> Option<Rung> {
         let scaled = |x: Option<f64>| x.map(|x| times * x);
         let estimate = scaled(sd.estimate)?;
-        Some(Rung { change, sd: estimate, lower: scaled(sd.lower), upper: scaled(sd.upper), open: sd.open.is_some() })
+        Some(Rung {
+            change,
+            sd: estimate,
+            lower: scaled(sd.lower),
+            upper: scaled(sd.upper),
+            open: sd.open.is_some(),
+        })
     }
 }
 
@@ -137,16 +173,85 @@ pub(super) fn amount(sd: f64, share_per_sd: Option<f64>, unit: &Unit) -> String 
 
 /// Who stands apart, by how much, and on how many parts: only where the pictures tell that factor's levels apart.
 fn who(term: &str, subject: Subject<'_>, spread: &Spread, unit: &Unit) -> Option<String> {
-    let (_, factor) = subject.readers().filter(|(_, factor)| factor.word == term)?;
+    let (_, factor) = subject
+        .readers()
+        .filter(|(_, factor)| factor.word == term)?;
     let found = spread.outstanding()?;
-    let others: Vec<String> = factor.levels.iter().filter(|name| **name != found.name).cloned().collect();
-    let others = if others.len() > NAMED_MAX { "the others".to_owned() } else { list(&others) };
+    let others: Vec<String> = factor
+        .levels
+        .iter()
+        .filter(|name| **name != found.name)
+        .cloned()
+        .collect();
+    let others = if others.len() > NAMED_MAX {
+        "the others".to_owned()
+    } else {
+        list(&others)
+    };
     Some(format!(
         "{} reads {} {} than {others}, on {} of {} parts",
         found.name,
         unit.three_digits(found.offset.abs()),
-        if found.offset > 0.0 { "higher" } else { "lower" },
+        if found.offset > 0.0 {
+            "higher"
+        } else {
+            "lower"
+        },
         found.alike,
         found.compared
     ))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::report::tests::plant::{Drawn, Plant};
+
+    /// Two parts (± 10), two loadings (± 1), two trials (± 1), nothing else: by the expected mean squares of the
+    /// crossed model repeatability is 2, appraiser 8 / 4 = 2, the interaction below zero and so 0.
+    #[test]
+    fn rungs_of_a_study_by_hand() {
+        let plant = Plant {
+            parts: 2,
+            readers: vec!["KL".into(), "MO".into()],
+            trials: 2,
+            drawn: vec![Drawn {
+                lower: Some(-20.0),
+                upper: Some(20.0),
+                nominal: None,
+                ..Drawn::named("by hand")
+            }],
+            ..Plant::halden()
+        };
+        let value = |levels: &[usize], slot: usize| {
+            [-10.0, 10.0][levels[0]] + [-1.0, 1.0][levels[1]] + [-1.0, 1.0][slot]
+        };
+        let worked = plant.worked_with(&value);
+        let record = worked.outcomes[0].study.as_ref().unwrap();
+        let subject = Subject {
+            record,
+            feature: &worked.evidence.features[0],
+            evidence: &worked.evidence,
+            earlier: None,
+        };
+        let ladder = Ladder::of(subject).unwrap();
+        let near = |rung: &Rung, variance: f64| {
+            assert!((rung.sd - variance.sqrt()).abs() < 1e-12, "{rung:?}")
+        };
+        near(&ladder.now, 4.0);
+        assert_eq!(ladder.steps.len(), 3);
+        near(&ladder.steps[0], 2.0);
+        near(&ladder.steps[1], 4.0);
+        near(&ladder.steps[2], 3.0);
+        assert_eq!(ladder.longest(), Some(&ladder.steps[0]));
+        let advice = ladder
+            .advice(subject, &Spread::of(subject))
+            .replace('\u{a0}', " ");
+        // 6 √2 / 40 = 21 %, 6 × 2 / 40 = 30 %.
+        assert_eq!(
+            advice,
+            "The longest step down is without the loading differences, 21 % instead of 30 %: KL reads 2.00 mm lower \
+             than MO, on 2 of 2 parts."
+        );
+    }
 }

@@ -35,7 +35,10 @@ pub fn folder(state: &Path, plan: &str) -> PathBuf {
 #[must_use]
 pub fn paths(state: &Path, plan: &str, round: i64) -> (PathBuf, PathBuf) {
     let folder = folder(state, plan);
-    (folder.join(format!("round-{round:04}.html")), folder.join(format!("round-{round:04}.json")))
+    (
+        folder.join(format!("round-{round:04}.html")),
+        folder.join(format!("round-{round:04}.json")),
+    )
 }
 
 /// Replaces a file as a whole; makes its folder when there is none.
@@ -43,7 +46,10 @@ pub fn paths(state: &Path, plan: &str, round: i64) -> (PathBuf, PathBuf) {
 /// # Errors
 /// The system's refusal; the file is then as it was.
 pub(super) fn write(path: &Path, text: &str) -> Result<(), WriteError> {
-    replace(path, text).map_err(|source| WriteError { path: path.to_owned(), source })
+    replace(path, text).map_err(|source| WriteError {
+        path: path.to_owned(),
+        source,
+    })
 }
 
 fn replace(path: &Path, text: &str) -> io::Result<()> {
@@ -74,7 +80,11 @@ fn file_name(plan: &str) -> String {
             other => format!("={other:02x}"),
         })
         .collect();
-    if (1..=NAME_MAX).contains(&spelled.len()) { spelled } else { format!("=={}", hex(&Sha256::digest(&name))) }
+    if (1..=NAME_MAX).contains(&spelled.len()) {
+        spelled
+    } else {
+        format!("=={}", hex(&Sha256::digest(&name)))
+    }
 }
 
 #[cfg(test)]
@@ -85,17 +95,42 @@ mod tests {
     fn two_plans_never_share_a_folder() {
         let long = "x".repeat(300);
         let longer = "x".repeat(301);
-        let plans = ["a b", "a-b", "a_b", "a/b", "a.b", "..", ".", "é", "e", "=2f", "", long.as_str(), longer.as_str()];
-        let names: std::collections::BTreeSet<String> = plans.iter().map(|p| file_name(p)).collect();
+        let plans = [
+            "a b",
+            "a-b",
+            "a_b",
+            "a/b",
+            "a.b",
+            "..",
+            ".",
+            "é",
+            "e",
+            "=2f",
+            "",
+            long.as_str(),
+            longer.as_str(),
+        ];
+        let names: std::collections::BTreeSet<String> =
+            plans.iter().map(|p| file_name(p)).collect();
         assert_eq!(names.len(), plans.len());
-        assert!(names.iter().all(|n| n.len() <= NAME_MAX && !n.contains(['/', '.', '\\', '\0'])));
+        assert!(
+            names
+                .iter()
+                .all(|n| n.len() <= NAME_MAX && !n.contains(['/', '.', '\\', '\0']))
+        );
     }
 
     #[test]
     fn paths_are_readable_and_in_order() {
         let (html, json) = paths(Path::new("state"), "Impeller  hub", 7);
-        assert_eq!(html, Path::new("state/reports/impeller_hub/round-0007.html"));
-        assert_eq!(json, Path::new("state/reports/impeller_hub/round-0007.json"));
+        assert_eq!(
+            html,
+            Path::new("state/reports/impeller_hub/round-0007.html")
+        );
+        assert_eq!(
+            json,
+            Path::new("state/reports/impeller_hub/round-0007.json")
+        );
     }
 
     #[test]
@@ -105,7 +140,10 @@ mod tests {
         write(&html, "first").unwrap();
         write(&html, "second").unwrap();
         assert_eq!(fs::read_to_string(&html).unwrap(), "second");
-        assert_eq!(fs::read_dir(folder(state.path(), "hub")).unwrap().count(), 1);
+        assert_eq!(
+            fs::read_dir(folder(state.path(), "hub")).unwrap().count(),
+            1
+        );
     }
 
     #[test]

@@ -10,11 +10,12 @@ use super::pieces::Strip;
 use super::spread::{Part, Spread};
 use super::subject::Subject;
 use super::svg;
-use super::words::{NBSP, count, cut, short};
+use super::unit::Unit;
+use super::words::{NBSP, count, cut, list, short};
 
 /// More parts than this are not drawn; those with the widest deviations are.
 const PARTS_MAX: usize = 40;
-const LABEL: f64 = 15.0;
+const LABEL: f64 = 16.0;
 const FOOT: f64 = 5.0;
 const SCALE: f64 = 24.0;
 const NAME_MAX: usize = 36;
@@ -31,26 +32,34 @@ pub(super) fn lanes(subject: Subject<'_>, spread: &Spread) -> Option<Strip> {
     let means = spread.readers.len() > 1;
     let lanes = drawn.len() + usize::from(means);
     let bottom = lane * lanes as f64;
-    let y = |lane_index: usize, reader: usize| lane * lane_index as f64 + LABEL + row * (reader as f64 + 0.5);
+    let y = |lane_index: usize, reader: usize| {
+        lane * lane_index as f64 + LABEL + row * (reader as f64 + 0.5)
+    };
     let offsets = spread.offsets();
     let body = html! {
         @for i in (0..lanes).step_by(2) { (svg::block(0.0, 100.0, lane * i as f64, lane, "lane")) }
         (scale(subject, axis, bottom))
         @if means {
-            (svg::from(1.0, 12.0, "strong", "mean of all parts"))
+            (svg::from(1.0, 13.0, "small strong", "mean of all parts"))
             @for (reader, offset) in offsets.iter().enumerate() {
                 @if let Some(offset) = offset { (svg::mark(reader, axis.at(*offset), y(0, reader))) }
             }
         }
         @for (i, part) in drawn.iter().enumerate() {
             @let at = i + usize::from(means);
-            (svg::from(1.0, lane * at as f64 + 12.0, "small", &cut(&part.name, NAME_MAX)))
+            (svg::from(1.0, lane * at as f64 + 13.0, "small", &cut(&part.name, NAME_MAX)))
             @for (reader, deviation) in &part.deviations {
                 (svg::mark(*reader, axis.at(*deviation), y(at, *reader)))
             }
         }
     };
-    Some(Strip { height: bottom + SCALE, body, words: words(subject, spread, drawn.len()) })
+    let caption = caption(subject, spread, drawn.len());
+    Some(Strip {
+        height: bottom + SCALE,
+        body,
+        caption,
+        aloud: offset_words(subject, spread),
+    })
 }
 
 fn scale(subject: Subject<'_>, axis: Axis, bottom: f64) -> Markup {
@@ -74,7 +83,12 @@ fn scale(subject: Subject<'_>, axis: Axis, bottom: f64) -> Markup {
 /// All parts, or the ones with the widest deviations; in the plan's order.
 fn drawn(parts: &[Part]) -> Vec<&Part> {
     let mut by_reach: Vec<usize> = (0..parts.len()).collect();
-    by_reach.sort_by(|&a, &b| parts[b].reach().total_cmp(&parts[a].reach()).then(a.cmp(&b)));
+    by_reach.sort_by(|&a, &b| {
+        parts[b]
+            .reach()
+            .total_cmp(&parts[a].reach())
+            .then(a.cmp(&b))
+    });
     by_reach.truncate(PARTS_MAX);
     by_reach.sort_unstable();
     by_reach.into_iter().map(|i| &parts[i]).collect()
@@ -88,16 +102,48 @@ fn row_height(readers: usize) -> f64 {
     }
 }
 
-fn words(subject: Subject<'_>, spread: &Spread, drawn: usize) -> String {
+fn caption(subject: Subject<'_>, spread: &Spread, drawn: usize) -> String {
     let readings: usize = spread.parts.iter().map(|p| p.deviations.len()).sum();
     let scale = match subject.whole() {
-        Some(whole) => format!("in percent of the tolerance; 1{NBSP}% is {}", subject.unit().three_digits(whole / 100.0)),
+        Some(whole) => {
+            let one = whole / 100.0;
+            let unit = Unit::for_size(subject.record.unit.as_deref(), one);
+            format!(
+                "in percent of the tolerance; 1{NBSP}% is {}",
+                unit.short(one)
+            )
+        }
         None if subject.unit().name().is_empty() => "in the readings' own unit".to_owned(),
         None => format!("in {}", subject.unit().name()),
     };
     let left_out = match spread.parts.len() - drawn {
         0 => String::new(),
-        n => format!(" {} with narrower deviations are not drawn.", count(n, "part")),
+        n => format!(
+            " {} with narrower deviations are not drawn.",
+            count(n, "part")
+        ),
     };
-    format!("{}, each as a mark about its part's mean, {scale}.{left_out}", count(readings, "reading"))
+    format!(
+        "{}, each as a mark about its part's mean, {scale}.{left_out}",
+        count(readings, "reading")
+    )
+}
+
+/// Each reader's mean over all parts.
+fn offset_words(subject: Subject<'_>, spread: &Spread) -> String {
+    let unit = subject.unit();
+    let of = |(name, offset): (&String, Option<f64>)| {
+        Some(format!("{name} {}", unit.three_digits(offset?)))
+    };
+    let means: Vec<String> = spread
+        .readers
+        .iter()
+        .zip(spread.offsets())
+        .filter_map(of)
+        .collect();
+    if means.len() > 1 {
+        format!("Mean of all parts: {}.", list(&means))
+    } else {
+        String::new()
+    }
 }

@@ -34,7 +34,11 @@ const NOT_USED_MAX: usize = 200;
 pub fn page(site: &str, zone: &TimeZone, plan: &Plan, worked: &Worked) -> String {
     let evidence = &worked.evidence;
     let ranked = ranked(&worked.outcomes);
-    let worst = ranked.iter().map(|o| o.standing()).max().unwrap_or(Standing::NotJudged);
+    let worst = ranked
+        .iter()
+        .map(|o| o.standing())
+        .max()
+        .unwrap_or(Standing::NotJudged);
     let round = &evidence.round;
     html! {
         (DOCTYPE)
@@ -93,7 +97,7 @@ fn ranking(worked: &Worked, ranked: &[&Outcome], limits: &Limits) -> Markup {
             h2 { "Which characteristics, worst first?" }
             ol class="ranking" { @for outcome in ranked { (row(worked, outcome, limits)) } }
             p class="small" {
-                "Bars: the gauge's share of the tolerance, solid up to what it is at least; lines: the watch and the act limit."
+                "Bars: the gauge's share of the tolerance, solid up to what it is at least; lines: the watch and the act limit; a bar with a gap goes on beyond the scale."
                 @if few_pictures {
                     " With more than " (PICTURES_MAX) " characteristics, only those above a limit, not judged or changed have pictures below."
                 }
@@ -105,16 +109,36 @@ fn ranking(worked: &Worked, ranked: &[&Outcome], limits: &Limits) -> Markup {
 fn row(worked: &Worked, outcome: &Outcome, limits: &Limits) -> Markup {
     let record = outcome.study.as_ref().ok();
     let earlier = worked.earlier.get(&outcome.characteristic);
-    let share = record.and_then(|r| share_words(r)).unwrap_or_else(|| "–".to_owned());
-    let at_least = record.and_then(|r| r.study.figures.gauge.share_of_tolerance.at_least).map(|x| format!("at least {}", percent(x)));
+    let share = record
+        .and_then(|r| share_words(r))
+        .unwrap_or_else(|| "–".to_owned());
+    let at_least = record
+        .and_then(|r| r.study.figures.gauge.share_of_tolerance.at_least)
+        .map(|x| format!("at least {}", percent(x)));
     let before = match earlier {
         Some(earlier) => match earlier.study.share {
-            Some(share) => format!("was {}, {}", percent(share), earlier.study.standing.as_str()),
+            Some(share) => format!(
+                "was {}, {}",
+                percent(share),
+                earlier.study.standing.as_str()
+            ),
             None => format!("was {}", earlier.study.standing.as_str()),
         },
         None => "first study".to_owned(),
     };
-    let details: Vec<String> = [at_least, record.and_then(|r| sure(r)), Some(before)].into_iter().flatten().collect();
+    let why_not = (outcome.standing() == Standing::NotJudged).then(|| match &outcome.study {
+        Ok(record) => record.standing.why.clone(),
+        Err(fault) => fault.clone(),
+    });
+    let details: Vec<String> = [
+        why_not,
+        at_least,
+        record.and_then(|r| sure(r)),
+        Some(before),
+    ]
+    .into_iter()
+    .flatten()
+    .collect();
     html! {
         li {
             div class="entry" {
@@ -131,9 +155,13 @@ fn row(worked: &Worked, outcome: &Outcome, limits: &Limits) -> Markup {
 
 /// A thin bar: share and its lower limit against the characteristic's limits, all rows to one scale.
 fn bar(outcome: &Outcome, plan: &Limits) -> Markup {
-    let Ok(record) = &outcome.study else { return html! {} };
+    let Ok(record) = &outcome.study else {
+        return html! {};
+    };
     let share = &record.study.figures.gauge.share_of_tolerance;
-    let Some((axis, estimate)) = Axis::over([0.0, BARS_TO * plan.act]).zip(share.estimate) else { return html! {} };
+    let Some((axis, estimate)) = Axis::over([0.0, BARS_TO * plan.act]).zip(share.estimate) else {
+        return html! {};
+    };
     let limits = record.standing.limits.unwrap_or(*plan);
     let (zero, solid) = (axis.at(0.0), share.at_least.unwrap_or(0.0).min(estimate));
     html! {
@@ -141,7 +169,7 @@ fn bar(outcome: &Outcome, plan: &Limits) -> Markup {
             (svg::block(zero, axis.at(estimate), 3.0, 8.0, "share-estimate"))
             (svg::block(zero, axis.at(solid), 3.0, 8.0, "share-sure"))
             @for limit in [limits.watch, limits.act] { (svg::upright(axis.at(limit), 0.0, 14.0, "limit")) }
-            @if !axis.holds(estimate) { (svg::arrow(100.0, 7.0)) }
+            @if !axis.holds(estimate) { (svg::block(95.0, 96.5, 0.0, 14.0, "break")) }
         }
     }
 }
@@ -151,7 +179,12 @@ fn section(worked: &Worked, outcome: &Outcome) -> Markup {
     match (&outcome.study, feature) {
         (Ok(record), Some(feature)) => {
             let earlier = worked.earlier.get(&outcome.characteristic);
-            let subject = Subject { record, feature, evidence: &worked.evidence, earlier };
+            let subject = Subject {
+                record,
+                feature,
+                evidence: &worked.evidence,
+                earlier,
+            };
             studied(outcome, subject, has_pictures(worked, outcome))
         }
         (Ok(_), None) => without_study(outcome, "its readings are not at hand"),
@@ -174,10 +207,16 @@ fn not_used(evidence: &Evidence) -> Markup {
 }
 
 fn method(plan: &Plan, evidence: &Evidence) -> Markup {
-    let factors: Vec<String> = evidence.factors.iter().map(|f| count(f.levels.len(), &f.word)).collect();
+    let factors: Vec<String> = evidence
+        .factors
+        .iter()
+        .map(|f| count(f.levels.len(), &f.word))
+        .collect();
     let interaction = match plan.interaction {
         Interaction::Keep => "is always kept".to_owned(),
-        Interaction::PoolAbove(p) => format!("is pooled into repeatability when its p is above {p}"),
+        Interaction::PoolAbove(p) => {
+            format!("is pooled into repeatability when its p is above {p}")
+        }
     };
     let judged = match plan.judge {
         Judge::Estimate => "the estimated share".to_owned(),

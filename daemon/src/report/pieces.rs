@@ -6,23 +6,33 @@ use restudy_engine::Standing;
 
 use super::svg::Picture;
 
-/// A picture's drawing with its height in pixels and what it shows in words.
+/// A picture's drawing, with its height in pixels.
 pub(super) struct Strip {
     pub(super) height: f64,
     pub(super) body: Markup,
-    pub(super) words: String,
+    /// How to read it, printed below it.
+    pub(super) caption: String,
+    /// What it shows, for those who do not see it; goes before the caption.
+    pub(super) aloud: String,
 }
 
-/// A picture under its question, its words below it.
-pub(super) fn figure(id: &str, question: &str, strips: Vec<Strip>, above: Option<Markup>, below: Option<&str>) -> Markup {
+/// Pictures under their question, each with its caption.
+pub(super) fn figure(
+    id: &str,
+    question: &str,
+    strips: Vec<Strip>,
+    above: Option<Markup>,
+    below: Option<&str>,
+) -> Markup {
     html! {
         figure {
             h3 { (question) }
             @if let Some(above) = above { (above) }
             @for (i, strip) in strips.into_iter().enumerate() {
                 @let id = format!("{id}-{}", i + 1);
-                (Picture { id: &id, question, words: &strip.words, height: strip.height, body: strip.body }.markup())
-                figcaption { (strip.words) }
+                @let words = format!("{} {}", strip.aloud, strip.caption);
+                (Picture { id: &id, question, words: words.trim(), height: strip.height, body: strip.body }.markup())
+                p class="caption" { (strip.caption) }
             }
             @if let Some(below) = below { p class="advice" { (below) } }
         }
@@ -42,5 +52,7 @@ pub(super) fn standing(standing: Standing) -> Markup {
 
 /// A civil time as a reader writes it.
 pub(super) fn time(at: DateTime) -> String {
-    at.strftime("%-d %B %Y, %H:%M").to_string()
+    at.strftime("%-d %B %Y, %H:%M")
+        .to_string()
+        .replace(' ', "\u{a0}")
 }

@@ -17,7 +17,11 @@ pub(super) fn ranked(outcomes: &[Outcome]) -> Vec<&Outcome> {
             .cmp(&urgency(a.standing()))
             .then(b.special.cmp(&a.special))
             .then_with(|| chance(b).total_cmp(&chance(a)))
-            .then_with(|| b.share().unwrap_or(0.0).total_cmp(&a.share().unwrap_or(0.0)))
+            .then_with(|| {
+                b.share()
+                    .unwrap_or(0.0)
+                    .total_cmp(&a.share().unwrap_or(0.0))
+            })
             .then_with(|| natural::compare(&a.characteristic, &b.characteristic))
     });
     ranked
@@ -27,8 +31,13 @@ pub(super) fn ranked(outcomes: &[Outcome]) -> Vec<&Outcome> {
 /// or changed.
 pub(super) fn has_pictures(worked: &Worked, outcome: &Outcome) -> bool {
     let now = outcome.standing();
-    let before = worked.earlier.get(&outcome.characteristic).map(|e| e.study.standing);
-    worked.outcomes.len() <= PICTURES_MAX || now != Standing::Under || before.is_some_and(|before| before != now)
+    let before = worked
+        .earlier
+        .get(&outcome.characteristic)
+        .map(|e| e.study.standing);
+    worked.outcomes.len() <= PICTURES_MAX
+        || now != Standing::Under
+        || before.is_some_and(|before| before != now)
 }
 
 fn urgency(standing: Standing) -> u8 {
@@ -41,8 +50,14 @@ fn urgency(standing: Standing) -> u8 {
 }
 
 fn chance(outcome: &Outcome) -> f64 {
-    let Ok(record) = &outcome.study else { return 0.0 };
+    let Ok(record) = &outcome.study else {
+        return 0.0;
+    };
     let above = record.study.chance_above;
-    let chance = if record.standing.now == Standing::Act { above.act } else { above.watch };
+    let chance = if record.standing.now == Standing::Act {
+        above.act
+    } else {
+        above.watch
+    };
     chance.unwrap_or(0.0)
 }

@@ -29,21 +29,29 @@ pub(super) fn rungs(subject: Subject<'_>, ladder: &Ladder) -> Option<Strip> {
     let limits: Vec<(&str, f64)> = subject
         .limits()
         .zip(per_sd)
-        .map(|(l, per_sd)| [("watch", l.watch, l.watch / per_sd), ("act", l.act, l.act / per_sd)])
+        .map(|(l, per_sd)| {
+            [
+                ("watch", l.watch, l.watch / per_sd),
+                ("act", l.act, l.act / per_sd),
+            ]
+        })
         .into_iter()
         .flatten()
         .filter(|(.., sd)| *sd <= STRETCH_MAX * now)
         .map(|(name, _, sd)| (name, sd))
         .collect();
-    let reach = limits.iter().map(|(_, sd)| 1.1 * sd).fold(BEYOND * now, f64::max);
+    let reach = limits
+        .iter()
+        .map(|(_, sd)| 1.1 * sd)
+        .fold(BEYOND * now, f64::max);
     let axis = Axis::over([0.0, reach])?;
     let rows: Vec<&Rung> = std::iter::once(&ladder.now).chain(&ladder.steps).collect();
     let bottom = RUNG * rows.len() as f64;
     let unit = subject.unit();
     let body = html! {
-        @for (_, sd) in &limits { (svg::upright(axis.at(*sd), 0.0, bottom, "limit faint")) }
         @for (i, rung) in rows.iter().enumerate() {
             @let top = RUNG * i as f64;
+            @for (_, sd) in &limits { (svg::upright(axis.at(*sd), top + LINE - 7.0, top + LINE + 9.0, "limit faint")) }
             (row(axis, rung, now, top))
             (svg::from(0.0, top + TEXT, "halo", &capital(&cut(&rung.change.label(), LABEL_MAX))))
             (svg::up_to(100.0, top + TEXT, "strong halo", &amount(rung.sd, per_sd, &unit)))
@@ -51,20 +59,32 @@ pub(super) fn rungs(subject: Subject<'_>, ladder: &Ladder) -> Option<Strip> {
         @for (i, (name, sd)) in limits.iter().enumerate() {
             @let at = axis.at(*sd);
             @let text = format!("{name} {}", limit(sd * per_sd.unwrap_or(1.0)));
-            (svg::upright(at, bottom, bottom + 16.0 * (i + 1) as f64, "limit faint"))
+            (svg::upright(at, bottom - 6.0, bottom + 16.0 * (i + 1) as f64, "limit faint"))
             (svg::beside(at, bottom + 14.0 + 16.0 * i as f64, Side::roomier(at), "halo", &text))
         }
     };
     let height = bottom + 16.0 * limits.len() as f64 + 6.0;
-    let steps: Vec<String> = rows.iter().map(|r| format!("{}: {}", r.change.label(), amount(r.sd, per_sd, &unit))).collect();
-    let words = format!("{}. Each rung takes away one thing only; whiskers: {} limits where they are known.",
-        capital(&steps.join("; ")), limit(subject.record.study.confidence));
-    Some(Strip { height, body, words })
+    let steps: Vec<String> = rows
+        .iter()
+        .map(|r| format!("{}: {}", r.change.label(), amount(r.sd, per_sd, &unit)))
+        .collect();
+    let confidence = limit(subject.record.study.confidence);
+    let caption = format!(
+        "Each rung takes away one thing only. Whiskers: {confidence} limits where they are known."
+    );
+    Some(Strip {
+        height,
+        body,
+        caption,
+        aloud: format!("{}.", capital(&steps.join("; "))),
+    })
 }
 
 fn row(axis: Axis, rung: &Rung, now: f64, top: f64) -> Markup {
     let (y, at) = (top + LINE, axis.at(rung.sd));
-    let whisker = rung.lower.map(|lower| (lower, rung.upper.filter(|u| axis.holds(*u))));
+    let whisker = rung
+        .lower
+        .map(|lower| (lower, rung.upper.filter(|u| axis.holds(*u))));
     html! {
         (svg::level(axis.at(0.0), axis.at(axis.high()), y, "track"))
         @if rung.sd < now { (svg::level(at, axis.at(now), y, "step")) }

@@ -63,10 +63,21 @@ fn pictures(outcome: &Outcome, subject: Subject<'_>) -> Markup {
     let spread = Spread::of(subject);
     let id = anchor(outcome);
     let toleranced = subject.record.lower.is_some() || subject.record.upper.is_some();
-    let question = if toleranced { "How much of the tolerance is gauge?" } else { "How wide is the gauge beside the parts?" };
-    let how_much: Vec<Strip> = [band(subject, &spread), share(subject)].into_iter().flatten().collect();
+    let question = if toleranced {
+        "How much of the tolerance is gauge?"
+    } else {
+        "How wide is the gauge beside the parts?"
+    };
+    let how_much: Vec<Strip> = [band(subject, &spread), share(subject)]
+        .into_iter()
+        .flatten()
+        .collect();
     let ladder = Ladder::of(subject);
-    let what = if outcome.standing() == Standing::Under { "What is it made of?" } else { "What is wrong?" };
+    let what = if outcome.standing() >= Standing::Watch {
+        "What is wrong?"
+    } else {
+        "What is it made of?"
+    };
     html! {
         @if !how_much.is_empty() { (figure(&format!("{id}-band"), question, how_much, None, None)) }
         @if let Some((ladder, strip)) = ladder.as_ref().and_then(|l| Some((l, rungs(subject, l)?))) {
@@ -104,6 +115,16 @@ fn not_used(counts: &Counts) -> Option<String> {
         (counts.late, "too late"),
         (counts.excluded, "excluded by a person"),
     ];
-    let others: Vec<String> = others.iter().filter(|(n, _)| *n > 0).map(|(n, what)| format!("{n} {what}")).collect();
-    (!others.is_empty()).then(|| capital(&format!("{} readings used; not used: {}.", counts.used, others.join(", "))))
+    let others: Vec<String> = others
+        .iter()
+        .filter(|(n, _)| *n > 0)
+        .map(|(n, what)| format!("{n} {what}"))
+        .collect();
+    (!others.is_empty()).then(|| {
+        capital(&format!(
+            "{} readings used; not used: {}.",
+            counts.used,
+            others.join(", ")
+        ))
+    })
 }

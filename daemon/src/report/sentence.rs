@@ -6,14 +6,16 @@ use crate::analyse::study::Outcome;
 use crate::ledger::Earlier;
 use crate::record::Record;
 
-use super::words::{capital, chance, limit, list, percent, percent_beside};
+use super::words::{chance, limit, list, percent, percent_beside};
 
 /// An upper limit above this share of the tolerance tells nobody anything.
 const UPPER_USEFUL: f64 = 1.0;
 
 /// The whole round in one sentence; the outcomes come worst first.
 pub(super) fn round(ranked: &[&Outcome]) -> String {
-    let judged = ranked.iter().find_map(|o| Some((*o, o.study.as_ref().ok()?)).filter(|(o, _)| o.standing() != Standing::NotJudged));
+    let judged = ranked.iter().find_map(|o| {
+        Some((*o, o.study.as_ref().ok()?)).filter(|(o, _)| o.standing() != Standing::NotJudged)
+    });
     let Some((worst, record)) = judged else {
         return match ranked {
             [] => "Nothing was measured.".to_owned(),
@@ -22,22 +24,37 @@ pub(super) fn round(ranked: &[&Outcome]) -> String {
         };
     };
     let share = share_words(record).unwrap_or_else(|| "an unknown part".to_owned());
-    let sure = sure(record).map(|sure| format!(", with {sure}")).unwrap_or_default();
-    let others = if ranked.len() > 1 { format!("; {}", counts(ranked)) } else { String::new() };
+    let sure = sure(record)
+        .map(|sure| format!(", with {sure}"))
+        .unwrap_or_default();
+    let others = if ranked.len() > 1 {
+        format!("; {}", counts(ranked))
+    } else {
+        String::new()
+    };
     let name = &worst.characteristic;
     let limits = record.standing.limits;
     match (worst.standing(), limits) {
         (standing @ (Standing::Act | Standing::Watch), Some(limits)) => {
-            format!("The gauge takes {share} of the tolerance of {name}, {}{sure}{others}.", place(record, standing, &limits))
+            format!(
+                "The gauge takes {share} of the tolerance of {name}, {}{sure}{others}.",
+                place(record, standing, &limits)
+            )
         }
-        _ if ranked.len() == 1 => format!("The gauge takes {share} of the tolerance of {name}, under its limits{sure}."),
-        _ => format!("The gauge takes the largest share of the tolerance of {name}: {share}, under its limits{sure}{others}."),
+        _ if ranked.len() == 1 => {
+            format!("The gauge takes {share} of the tolerance of {name}, under its limits{sure}.")
+        }
+        _ => format!(
+            "The gauge takes the largest share of the tolerance of {name}: {share}, under its limits{sure}{others}."
+        ),
     }
 }
 
 /// One characteristic in one or two sentences.
 pub(super) fn characteristic(record: &Record, earlier: Option<&Earlier>) -> String {
-    let before = earlier.map(|e| format!(" {}", before(e))).unwrap_or_else(|| " This is its first study.".to_owned());
+    let before = earlier
+        .map(|e| format!(" {}", before(e)))
+        .unwrap_or_else(|| " This is its first study.".to_owned());
     let (Some(share), Some(limits)) = (share_words(record), record.standing.limits) else {
         return format!("Not judged: {}.{before}", record.standing.why);
     };
@@ -45,15 +62,40 @@ pub(super) fn characteristic(record: &Record, earlier: Option<&Earlier>) -> Stri
         Standing::NotJudged => return format!("Not judged: {}.{before}", record.standing.why),
         standing => place(record, standing, &limits),
     };
-    let sure = sure(record).map(|sure| format!(" How sure: {sure}.")).unwrap_or_default();
-    format!("The gauge takes {share} of the tolerance, {place}.{sure}{}{before}", upper(record))
+    let at_least = record
+        .study
+        .figures
+        .gauge
+        .share_of_tolerance
+        .at_least
+        .filter(|_| record.standing.now != Standing::Under);
+    let at_least = at_least
+        .map(|least| {
+            format!(
+                "; {} that it is above {}",
+                limit(record.study.confidence),
+                percent(least)
+            )
+        })
+        .unwrap_or_default();
+    let sure = sure(record)
+        .map(|sure| format!(" How sure: {sure}{at_least}."))
+        .unwrap_or_default();
+    format!(
+        "The gauge takes {share} of the tolerance, {place}.{sure}{}{before}",
+        upper(record)
+    )
 }
 
 /// The study of the round before: its share and standing.
 pub(super) fn before(earlier: &Earlier) -> String {
     let standing = earlier.study.standing.as_str();
     match earlier.study.share {
-        Some(share) => format!("In round {} it was {}, “{standing}”.", earlier.number, percent(share)),
+        Some(share) => format!(
+            "In round {} it was {}, “{standing}”.",
+            earlier.number,
+            percent(share)
+        ),
         None => format!("In round {} it was “{standing}”.", earlier.number),
     }
 }
@@ -63,7 +105,11 @@ pub(super) fn sure(record: &Record) -> Option<String> {
     let limits = record.standing.limits?;
     let above = record.study.chance_above;
     match record.standing.now {
-        Standing::Act => Some(format!("{} confidence that the true share is above {}", chance(above.act?), limit(limits.act))),
+        Standing::Act => Some(format!(
+            "{} confidence that the true share is above {}",
+            chance(above.act?),
+            limit(limits.act)
+        )),
         Standing::Watch => Some(format!(
             "{} confidence that the true share is above {} and {} that it is above {}",
             chance(above.watch?),
@@ -83,13 +129,22 @@ pub(super) fn sure(record: &Record) -> Option<String> {
 /// The share with as many digits as show on which side of its limits it lies.
 pub(super) fn share_words(record: &Record) -> Option<String> {
     let share = record.study.figures.gauge.share_of_tolerance.estimate?;
-    let limits = record.standing.limits.map(|l| vec![l.watch, l.act]).unwrap_or_default();
+    let limits = record
+        .standing
+        .limits
+        .map(|l| vec![l.watch, l.act])
+        .unwrap_or_default();
     Some(percent_beside(share, &limits))
 }
 
 /// `1 stands at act, 3 under`.
 fn counts(ranked: &[&Outcome]) -> String {
-    let standings = [Standing::Act, Standing::Watch, Standing::Under, Standing::NotJudged];
+    let standings = [
+        Standing::Act,
+        Standing::Watch,
+        Standing::Under,
+        Standing::NotJudged,
+    ];
     let of = |standing: Standing| ranked.iter().filter(|o| o.standing() == standing).count();
     let counts: Vec<String> = standings
         .into_iter()
@@ -106,28 +161,41 @@ fn counts(ranked: &[&Outcome]) -> String {
 
 /// Where the judged figure lies; the record's own reason where the plain one does not tell it.
 fn place(record: &Record, standing: Standing, limits: &Limits) -> String {
-    let share = record.study.figures.gauge.share_of_tolerance.estimate.unwrap_or(0.0);
+    let share = record
+        .study
+        .figures
+        .gauge
+        .share_of_tolerance
+        .estimate
+        .unwrap_or(0.0);
     let by_share = record.standing.judged_by == Some("estimate");
     match standing {
-        Standing::Act if by_share && share > limits.act => format!("above the act limit of {}", limit(limits.act)),
+        Standing::Act if by_share && share > limits.act => {
+            format!("above the act limit of {}", limit(limits.act))
+        }
         Standing::Watch if by_share && share > limits.watch && share <= limits.act => {
             format!("above the watch limit of {}", limit(limits.watch))
         }
-        Standing::Under if by_share => format!("not above the watch limit of {}", limit(limits.watch)),
-        other => format!("which stands at “{}” because {}", other.as_str(), record.standing.why),
+        Standing::Under if by_share => {
+            format!("not above the watch limit of {}", limit(limits.watch))
+        }
+        other => format!(
+            "which stands at “{}” because {}",
+            other.as_str(),
+            record.standing.why
+        ),
     }
 }
 
 /// Whether the data set a useful upper end; empty while they do.
 fn upper(record: &Record) -> String {
     let share = &record.study.figures.gauge.share_of_tolerance;
-    let useless = share.open.is_some() || share.upper.is_some_and(|u| u > UPPER_USEFUL && share.estimate.is_some_and(|e| e < u));
+    let useless = share.open.is_some()
+        || share
+            .upper
+            .is_some_and(|u| u > UPPER_USEFUL && share.estimate.is_some_and(|e| e < u));
     if !useless {
         return String::new();
     }
-    let few = record.study.design.factors.iter().filter(|f| f.name != restudy_engine::PART).map(|f| f.levels).min();
-    match few {
-        Some(levels) if levels < 6 => format!(" {}.", capital("so few levels beside the parts give no useful upper end")),
-        _ => " The data give no useful upper end.".to_owned(),
-    }
+    " The data give no useful upper end.".to_owned()
 }

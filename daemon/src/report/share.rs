@@ -27,7 +27,11 @@ pub(super) fn share(subject: Subject<'_>) -> Option<Strip> {
     let solid = subject.share().at_least.unwrap_or(0.0).min(estimate);
     let (zero, end) = (axis.at(0.0), axis.at(estimate));
     let (watch, act) = (axis.at(limits.watch), axis.at(limits.act));
-    let watch_side = if watch > 24.0 { Side::Left } else { Side::Right };
+    let watch_side = if watch > 24.0 {
+        Side::Left
+    } else {
+        Side::Right
+    };
     let value = percent_beside(estimate, &[limits.watch, limits.act]);
     let body = html! {
         (svg::block(zero, end, BAR_TOP, BAR_HEIGHT, "share-estimate"))
@@ -47,8 +51,18 @@ pub(super) fn share(subject: Subject<'_>) -> Option<Strip> {
         ),
         None => "Its lower limit is not known.".to_owned(),
     };
-    let words = format!("Bar: the gauge's share of the tolerance, {value}. {at_least}");
-    Some(Strip { height: HEIGHT, body, words })
+    let caption = format!("Bar: the gauge's share of the tolerance, {value}. {at_least}");
+    let aloud = format!(
+        "Watch limit {}, act limit {}.",
+        limit(limits.watch),
+        limit(limits.act)
+    );
+    Some(Strip {
+        height: HEIGHT,
+        body,
+        caption,
+        aloud,
+    })
 }
 
 fn scale(estimate: f64, limits: &Limits) -> Option<Axis> {

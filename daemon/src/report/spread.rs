@@ -43,11 +43,16 @@ impl Spread {
             .filter_map(|(&run, &value)| {
                 let run = evidence.runs.get(run)?;
                 let part = *run.levels.first()?;
-                let reader = readers.map_or(Some(0), |(index, _)| run.levels.get(index).copied())?;
+                let reader =
+                    readers.map_or(Some(0), |(index, _)| run.levels.get(index).copied())?;
                 Some((part, reader, run.slot, value))
             })
             .collect();
-        sorted.sort_by(|a, b| (a.0, a.1, a.2).cmp(&(b.0, b.1, b.2)).then(a.3.total_cmp(&b.3)));
+        sorted.sort_by(|a, b| {
+            (a.0, a.1, a.2)
+                .cmp(&(b.0, b.1, b.2))
+                .then(a.3.total_cmp(&b.3))
+        });
         let parts = sorted
             .chunk_by(|a, b| a.0 == b.0)
             .map(|readings| {
@@ -61,32 +66,45 @@ impl Spread {
                 }
             })
             .collect();
-        let readers = readers.map_or_else(|| vec![String::new()], |(_, factor)| factor.levels.clone());
+        let readers =
+            readers.map_or_else(|| vec![String::new()], |(_, factor)| factor.levels.clone());
         Spread { parts, readers }
     }
 
     /// The mean deviation of each reader over all parts.
     pub(super) fn offsets(&self) -> Vec<Option<f64>> {
         let of = |reader: usize| self.parts.iter().flat_map(move |p| p.of(reader));
-        (0..self.readers.len()).map(|reader| mean(of(reader))).collect()
+        (0..self.readers.len())
+            .map(|reader| mean(of(reader)))
+            .collect()
     }
 
     /// The reader furthest from the mean of the others; `None` when there is nothing to compare.
     pub(super) fn outstanding(&self) -> Option<Outstanding> {
         let offsets = self.offsets();
         let against = |reader: usize| {
-            let others = offsets.iter().enumerate().filter(|&(other, _)| other != reader);
+            let others = offsets
+                .iter()
+                .enumerate()
+                .filter(|&(other, _)| other != reader);
             Some(offsets[reader]? - mean(others.filter_map(|(_, offset)| *offset))?)
         };
         let (reader, offset) = (0..self.readers.len())
             .filter_map(|reader| Some((reader, against(reader)?)))
             .reduce(|a, b| if b.1.abs() > a.1.abs() { b } else { a })
             .filter(|(_, offset)| *offset != 0.0)?;
-        let differences: Vec<f64> = self.parts.iter().filter_map(|part| part.against_others(reader)).collect();
+        let differences: Vec<f64> = self
+            .parts
+            .iter()
+            .filter_map(|part| part.against_others(reader))
+            .collect();
         Some(Outstanding {
             name: self.readers[reader].clone(),
             offset,
-            alike: differences.iter().filter(|d| **d * offset.signum() > 0.0).count(),
+            alike: differences
+                .iter()
+                .filter(|d| **d * offset.signum() > 0.0)
+                .count(),
             compared: differences.len(),
         })
     }
@@ -99,15 +117,25 @@ impl Spread {
 
 impl Part {
     pub(super) fn reach(&self) -> f64 {
-        self.deviations.iter().map(|(_, d)| d.abs()).fold(0.0, f64::max)
+        self.deviations
+            .iter()
+            .map(|(_, d)| d.abs())
+            .fold(0.0, f64::max)
     }
 
     fn of(&self, reader: usize) -> impl Iterator<Item = f64> {
-        self.deviations.iter().filter(move |(r, _)| *r == reader).map(|(_, d)| *d)
+        self.deviations
+            .iter()
+            .filter(move |(r, _)| *r == reader)
+            .map(|(_, d)| *d)
     }
 
     fn against_others(&self, reader: usize) -> Option<f64> {
-        let others = self.deviations.iter().filter(|(r, _)| *r != reader).map(|(_, d)| *d);
+        let others = self
+            .deviations
+            .iter()
+            .filter(|(r, _)| *r != reader)
+            .map(|(_, d)| *d);
         Some(mean(self.of(reader))? - mean(others)?)
     }
 }

@@ -64,7 +64,9 @@ impl<'a> Subject<'a> {
     /// The length that counts as the whole tolerance: its width, or the width that its rule gives it.
     pub(super) fn whole(self) -> Option<f64> {
         let by_rule = || Some(self.record.study.spread_sds / self.share_per_sd()?);
-        self.width().or_else(by_rule).filter(|whole| *whole > 0.0 && whole.is_finite())
+        self.width()
+            .or_else(by_rule)
+            .filter(|whole| *whole > 0.0 && whole.is_finite())
     }
 
     /// The unit for sds and deviations.
@@ -76,13 +78,24 @@ impl<'a> Subject<'a> {
 
     /// Index of the factor whose levels are told apart in pictures: the appraiser, or else the first further factor.
     pub(super) fn readers(self) -> Option<(usize, &'a Factor)> {
-        let others = || self.evidence.factors.iter().enumerate().skip(1).find(|(_, f)| f.levels.len() > 1);
+        let others = || {
+            self.evidence
+                .factors
+                .iter()
+                .enumerate()
+                .skip(1)
+                .find(|(_, f)| f.levels.len() > 1)
+        };
         self.evidence.appraiser().or_else(others)
     }
 
     /// The components that make up the gauge, in the order of the analysis.
     pub(super) fn causes(self) -> impl Iterator<Item = (Cause, &'a Component)> {
-        self.record.study.components.iter().filter_map(|component| Some((cause(component)?, component)))
+        self.record
+            .study
+            .components
+            .iter()
+            .filter_map(|component| Some((cause(component)?, component)))
     }
 
     /// A term in the plant's words: `loading`, `part × loading`.

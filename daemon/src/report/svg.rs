@@ -115,7 +115,10 @@ pub(super) fn shared() -> Markup {
         ("M0 -4.6V4.6M-4.6 0H4.6", "stroke"),
         ("M-3.2 -3.2H3.2V3.2H-3.2Z", "hollow"),
     ];
-    let hatchings = [("hatch-up", "M-2 2L2 -2M0 8L8 0M6 10L10 6"), ("hatch-down", "M-2 6L2 10M0 0L8 8M6 -2L10 2")];
+    let hatchings = [
+        ("hatch-up", "M-2 2L2 -2M0 8L8 0M6 10L10 6"),
+        ("hatch-down", "M-2 6L2 10M0 0L8 8M6 -2L10 2"),
+    ];
     html! {
         svg class="shared" aria-hidden="true" width="0" height="0" {
             defs {

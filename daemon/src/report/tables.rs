@@ -7,6 +7,8 @@ use super::subject::{Cause, Subject};
 use super::words::{NBSP, limit, percent, three_digits};
 
 const NONE: &str = "–";
+/// Where a long heading may break on a narrow screen.
+const SOFT_HYPHEN: char = '\u{ad}';
 
 /// One cause with the answers to each question.
 struct Column {
@@ -45,10 +47,14 @@ pub(super) fn figures(subject: Subject<'_>) -> Markup {
     .collect();
     let number = |x: Option<f64>| x.map_or(NONE.to_owned(), |x| three_digits(unit.of(x)));
     let share = |x: Option<f64>| x.map_or(NONE.to_owned(), percent);
-    let in_unit = if unit.name().is_empty() { String::new() } else { format!(", {}", unit.name()) };
+    let in_unit = if unit.name().is_empty() {
+        String::new()
+    } else {
+        format!(", {}", unit.name())
+    };
     let confidence = limit(subject.record.study.confidence);
     html! {
-        div class="wide" {
+        div class="wide" tabindex="0" {
             table class="figures" {
                 caption { "Figures: one column a cause, sd" (in_unit) }
                 thead { tr { td {} @for column in &columns { th scope="col" { (column.head) } } } }
@@ -66,16 +72,33 @@ pub(super) fn figures(subject: Subject<'_>) -> Markup {
 
 /// The part of AV that changes from part to part; `None` when the analysis has no such term.
 fn interaction(subject: Subject<'_>) -> Option<Column> {
-    let terms: Vec<_> = subject.causes().filter(|(cause, _)| *cause == Cause::Interaction).map(|(_, c)| c).collect();
+    let terms: Vec<_> = subject
+        .causes()
+        .filter(|(cause, _)| *cause == Cause::Interaction)
+        .map(|(_, c)| c)
+        .collect();
     let first = terms.first()?;
     let alone = terms.len() == 1;
-    let sd = terms.iter().map(|c| c.variance.estimate).sum::<Option<f64>>().map(f64::sqrt);
-    let total = subject.record.study.figures.total.sd.estimate.filter(|t| *t > 0.0);
+    let sd = terms
+        .iter()
+        .map(|c| c.variance.estimate)
+        .sum::<Option<f64>>()
+        .map(f64::sqrt);
+    let total = subject
+        .record
+        .study
+        .figures
+        .total
+        .sd
+        .estimate
+        .filter(|t| *t > 0.0);
     Some(Column {
-        head: if alone { subject.term(&first.of, &first.within) } else { "interactions".to_owned() },
+        head: format!("inter{SOFT_HYPHEN}action{}", if alone { "" } else { "s" }),
         sd,
         at_least: first.sd.at_least.filter(|_| alone),
-        share_of_tolerance: sd.zip(subject.share_per_sd()).map(|(sd, per_sd)| sd * per_sd),
+        share_of_tolerance: sd
+            .zip(subject.share_per_sd())
+            .map(|(sd, per_sd)| sd * per_sd),
         share_of_tv: sd.zip(total).map(|(sd, total)| sd / total),
     })
 }
@@ -83,11 +106,29 @@ fn interaction(subject: Subject<'_>) -> Option<Column> {
 fn notes(subject: Subject<'_>) -> String {
     let study = &subject.record.study;
     let unit = subject.unit();
-    let held = if study.interaction.kept { "AV holds the interaction; " } else { "" };
-    let total = study.figures.total.sd.estimate.map_or(NONE.to_owned(), |tv| unit.three_digits(tv));
+    let held = if study.interaction.kept {
+        "AV holds the interaction; "
+    } else {
+        ""
+    };
+    let total = study
+        .figures
+        .total
+        .sd
+        .estimate
+        .map_or(NONE.to_owned(), |tv| unit.three_digits(tv));
     let ndc = match study.ndc.whole {
-        Some(whole) => format!("ndc {whole} (1.41{NBSP}×{NBSP}PV{NBSP}÷{NBSP}GRR, cut to a whole number)"),
-        None => format!("ndc {NONE}: {}", study.part_to_gauge.why.as_deref().unwrap_or("it is not known")),
+        Some(whole) => {
+            format!("ndc {whole} (1.41{NBSP}×{NBSP}PV{NBSP}÷{NBSP}GRR, cut to a whole number)")
+        }
+        None => format!(
+            "ndc {NONE}: {}",
+            study
+                .part_to_gauge
+                .why
+                .as_deref()
+                .unwrap_or("it is not known")
+        ),
     };
     format!("{held}GRR² = EV² + AV², TV² = GRR² + PV². TV {total}; {ndc}.")
 }
@@ -95,12 +136,21 @@ fn notes(subject: Subject<'_>) -> String {
 /// Mean squares with their degrees of freedom, and the choice about the interaction.
 pub(super) fn mean_squares(subject: Subject<'_>) -> Markup {
     let unit = subject.unit();
-    let in_unit = if unit.name().is_empty() { String::new() } else { format!(", {}", unit.squared_name()) };
-    let lines = subject.record.study.mean_squares.iter().filter_map(|line| Some((line, line.ms?)));
+    let in_unit = if unit.name().is_empty() {
+        String::new()
+    } else {
+        format!(", {}", unit.squared_name())
+    };
+    let lines = subject
+        .record
+        .study
+        .mean_squares
+        .iter()
+        .filter_map(|line| Some((line, line.ms?)));
     html! {
-        div class="wide" {
+        div class="wide" tabindex="0" {
             table class="mean-squares" {
-                caption { "Mean squares" (in_unit) ", with their degrees of freedom" }
+                caption { "Mean squares" (in_unit) }
                 thead { tr { td {} th scope="col" { "mean square" } th scope="col" { "df" } } }
                 tbody {
                     @for (line, ms) in lines {
@@ -116,7 +166,11 @@ pub(super) fn mean_squares(subject: Subject<'_>) -> Markup {
 fn interaction_choice(subject: Subject<'_>) -> Option<String> {
     let choice = &subject.record.study.interaction;
     let p = choice.p.map_or(NONE.to_owned(), |p| format!("{p:.2}"));
-    let done = if choice.kept { "kept" } else { "pooled into repeatability" };
+    let done = if choice.kept {
+        "kept"
+    } else {
+        "pooled into repeatability"
+    };
     let why = match choice.pool_above {
         Some(limit) => format!("the plan pools it when p is above {limit}"),
         None => "the plan always keeps it".to_owned(),
@@ -124,7 +178,10 @@ fn interaction_choice(subject: Subject<'_>) -> Option<String> {
     let other = choice.other_reading?;
     let other = match (other.share_of_tolerance, other.gauge_sd) {
         (Some(share), _) => format!(" The other way the share would be {}.", percent(share)),
-        (None, Some(sd)) => format!(" The other way GRR would be {}.", subject.unit().three_digits(sd)),
+        (None, Some(sd)) => format!(
+            " The other way GRR would be {}.",
+            subject.unit().three_digits(sd)
+        ),
         (None, None) => String::new(),
     };
     Some(format!("Interaction {done} (p = {p}): {why}.{other}"))

@@ -17,9 +17,15 @@ impl Unit {
     pub(super) fn for_size(unit: Option<&str>, size: f64) -> Unit {
         let name = unit.unwrap_or_default().trim();
         if name.eq_ignore_ascii_case("mm") && size.abs() < SMALL_MM {
-            Unit { factor: 1000.0, name: "µm".to_owned() }
+            Unit {
+                factor: 1000.0,
+                name: "µm".to_owned(),
+            }
         } else {
-            Unit { factor: 1.0, name: name.to_owned() }
+            Unit {
+                factor: 1.0,
+                name: name.to_owned(),
+            }
         }
     }
 
@@ -50,11 +56,19 @@ impl Unit {
 
     /// The unit of squared lengths.
     pub(super) fn squared_name(&self) -> String {
-        if self.name.is_empty() { String::new() } else { format!("{}²", self.name) }
+        if self.name.is_empty() {
+            String::new()
+        } else {
+            format!("{}²", self.name)
+        }
     }
 
     fn named(&self, number: String) -> String {
-        if self.name.is_empty() { number } else { format!("{number}{NBSP}{}", self.name) }
+        if self.name.is_empty() {
+            number
+        } else {
+            format!("{number}{NBSP}{}", self.name)
+        }
     }
 }
 
@@ -68,8 +82,14 @@ mod tests {
         assert_eq!(small.three_digits(0.001_567_8), format!("1.57{NBSP}µm"));
         assert_eq!(small.squared(1.531e-4), "153");
         assert_eq!(small.squared_name(), "µm²");
-        assert_eq!(Unit::for_size(Some("mm"), 0.2).short(0.2), format!("0.2{NBSP}mm"));
+        assert_eq!(
+            Unit::for_size(Some("mm"), 0.2).short(0.2),
+            format!("0.2{NBSP}mm")
+        );
         assert_eq!(Unit::for_size(None, 0.002).short(0.002), "0.002");
-        assert_eq!(Unit::for_size(Some("°"), 0.002).short(0.002), format!("0.002{NBSP}°"));
+        assert_eq!(
+            Unit::for_size(Some("°"), 0.002).short(0.002),
+            format!("0.002{NBSP}°")
+        );
     }
 }

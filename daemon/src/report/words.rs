@@ -24,10 +24,14 @@ pub(super) fn percent_beside(share: f64, limits: &[f64]) -> String {
     let tells = |decimals: usize| {
         let scale = 10f64.powi(decimals as i32);
         let written = (exact * scale).round() / scale;
-        limits.iter().all(|limit| written.partial_cmp(&(100.0 * limit)) == exact.partial_cmp(&(100.0 * limit)))
+        limits.iter().all(|limit| {
+            written.partial_cmp(&(100.0 * limit)) == exact.partial_cmp(&(100.0 * limit))
+        })
     };
     match (0..=DECIMALS_MAX).find(|&d| tells(d)) {
-        Some(decimals) if decimals > 0 && share <= SHARE_MAX => format!("{exact:.decimals$}{NBSP}%"),
+        Some(decimals) if decimals > 0 && share <= SHARE_MAX => {
+            format!("{exact:.decimals$}{NBSP}%")
+        }
         _ => percent(share),
     }
 }
@@ -54,12 +58,20 @@ pub(super) fn three_digits(x: f64) -> String {
 /// At most four significant digits, no trailing zeros.
 pub(super) fn short(x: f64) -> String {
     let text = digits(x, 4);
-    if text.contains('e') { text } else { trimmed(&text).to_owned() }
+    if text.contains('e') {
+        text
+    } else {
+        trimmed(&text).to_owned()
+    }
 }
 
 /// A number as it was written, with a true minus sign.
 pub(super) fn exact(x: f64) -> String {
-    if x != 0.0 && !(1e-6..1e9).contains(&x.abs()) { minus(&format!("{x:e}")) } else { minus(&x.to_string()) }
+    if x != 0.0 && !(1e-6..1e9).contains(&x.abs()) {
+        minus(&format!("{x:e}"))
+    } else {
+        minus(&x.to_string())
+    }
 }
 
 /// `a, b and c`.
@@ -73,7 +85,11 @@ pub(super) fn list(words: &[String]) -> String {
 
 /// `1 part`, `10 parts`.
 pub(super) fn count(n: usize, noun: &str) -> String {
-    if n == 1 { format!("1{NBSP}{noun}") } else { format!("{n}{NBSP}{noun}s") }
+    if n == 1 {
+        format!("1{NBSP}{noun}")
+    } else {
+        format!("{n}{NBSP}{noun}s")
+    }
 }
 
 /// A text cut to a number of letters for a place that cannot wrap.
@@ -88,7 +104,9 @@ pub(super) fn cut(text: &str, letters: usize) -> String {
 /// A sentence begins with a capital.
 pub(super) fn capital(text: &str) -> String {
     let mut letters = text.chars();
-    letters.next().map_or_else(String::new, |first| first.to_uppercase().chain(letters).collect())
+    letters.next().map_or_else(String::new, |first| {
+        first.to_uppercase().chain(letters).collect()
+    })
 }
 
 fn digits(x: f64, significant: usize) -> String {
@@ -96,7 +114,10 @@ fn digits(x: f64, significant: usize) -> String {
         return "0".to_owned();
     }
     let scientific = format!("{x:.*e}", significant - 1);
-    let power: i32 = scientific.split_once('e').and_then(|(_, power)| power.parse().ok()).unwrap_or(0);
+    let power: i32 = scientific
+        .split_once('e')
+        .and_then(|(_, power)| power.parse().ok())
+        .unwrap_or(0);
     if !(-4..6).contains(&power) {
         return minus(&scientific);
     }
@@ -109,7 +130,11 @@ fn minus(text: &str) -> String {
 }
 
 fn trimmed(text: &str) -> &str {
-    if text.contains('.') { text.trim_end_matches('0').trim_end_matches('.') } else { text }
+    if text.contains('.') {
+        text.trim_end_matches('0').trim_end_matches('.')
+    } else {
+        text
+    }
 }
 
 #[cfg(test)]
@@ -137,7 +162,18 @@ mod tests {
     #[test]
     fn chances_are_rounded_to_five_percent() {
         let words = [0.0, 0.02, 0.03, 0.79, 0.96, 0.98, 1.0].map(|p| plain(&chance(p)));
-        assert_eq!(words, ["under 5 %", "under 5 %", "5 %", "80 %", "95 %", "over 95 %", "over 95 %"]);
+        assert_eq!(
+            words,
+            [
+                "under 5 %",
+                "under 5 %",
+                "5 %",
+                "80 %",
+                "95 %",
+                "over 95 %",
+                "over 95 %"
+            ]
+        );
     }
 
     #[test]
@@ -163,7 +199,10 @@ mod tests {
     fn lists_counts_and_cuts() {
         let names = ["KL", "MO", "TS"].map(str::to_owned);
         assert_eq!(list(&names), "KL, MO and TS");
-        assert_eq!((plain(&count(1, "part")), plain(&count(10, "part"))), ("1 part".into(), "10 parts".into()));
+        assert_eq!(
+            (plain(&count(1, "part")), plain(&count(10, "part"))),
+            ("1 part".into(), "10 parts".into())
+        );
         assert_eq!(cut("loading", 7), "loading");
         assert_eq!(cut("loading bay", 8), "loading…");
     }

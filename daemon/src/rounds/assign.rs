@@ -95,12 +95,21 @@ pub fn assign(
         }
     }
     candidates.sort_by_key(|c| (c.run.facts.taken, c.run.id));
-    let (labelled, plain): (Vec<_>, Vec<_>) =
-        candidates.into_iter().partition(|c| c.run.facts.round_label.is_some());
+    let (labelled, plain): (Vec<_>, Vec<_>) = candidates
+        .into_iter()
+        .partition(|c| c.run.facts.round_label.is_some());
 
     let mut rounds = labelled_rounds(frame, labelled, clock, opened);
     let first_ever = closed.is_empty() && rounds.is_empty();
-    plain_rounds(frame, &plain, clock, opened(None), first_ever, &mut rounds, &mut elsewhere);
+    plain_rounds(
+        frame,
+        &plain,
+        clock,
+        opened(None),
+        first_ever,
+        &mut rounds,
+        &mut elsewhere,
+    );
     Assigned { rounds, elsewhere }
 }
 
@@ -108,7 +117,9 @@ fn is_late(run: &RunRow, closed: &[Closed]) -> bool {
     match &run.facts.round_label {
         Some(label) => {
             let label = fold(label);
-            closed.iter().any(|c| c.label.as_deref().map(fold).as_deref() == Some(&label))
+            closed
+                .iter()
+                .any(|c| c.label.as_deref().map(fold).as_deref() == Some(&label))
         }
         None => closed
             .iter()
@@ -133,8 +144,9 @@ fn labelled_rounds(
     }
     let mut rounds = Vec::new();
     for name in order {
-        let (its, rest): (Vec<_>, Vec<_>) =
-            candidates.into_iter().partition(|c| fold(&label(c)) == fold(&name));
+        let (its, rest): (Vec<_>, Vec<_>) = candidates
+            .into_iter()
+            .partition(|c| fold(&label(c)) == fold(&name));
         candidates = rest;
         let close = filled_by(frame, &its).unwrap_or(its.len());
         let placed = place(frame, &its[..close]);
@@ -164,12 +176,20 @@ fn plain_rounds(
         let end = filled_by(frame, &rest[..in_time]).unwrap_or(in_time);
         let (its, later) = rest.split_at(end);
         rest = later;
-        let mut laid = lay(frame, None, place(frame, its), its, opens_at_once || opened.is_some());
+        let mut laid = lay(
+            frame,
+            None,
+            place(frame, its),
+            its,
+            opens_at_once || opened.is_some(),
+        );
         let overtaken = end == in_time && !later.is_empty() && !laid.state.closed();
         if overtaken && laid.state == RoundState::Pending {
-            elsewhere.extend(its.iter().map(|c| {
-                Seat::out(c.run.id, RunStatus::Surplus, "no round grew from it".into())
-            }));
+            elsewhere.extend(
+                its.iter().map(|c| {
+                    Seat::out(c.run.id, RunStatus::Surplus, "no round grew from it".into())
+                }),
+            );
             continue;
         }
         if overtaken {
@@ -183,12 +203,17 @@ fn plain_rounds(
 
 /// How many of the runs, in order, were taken within the time that a round has.
 fn within_time(frame: &Frame, runs: &[Candidate<'_>]) -> usize {
-    let (Some(limit), Some(first)) =
-        (frame.finish_within, runs.iter().find_map(|c| c.run.facts.taken))
-    else {
+    let (Some(limit), Some(first)) = (
+        frame.finish_within,
+        runs.iter().find_map(|c| c.run.facts.taken),
+    ) else {
         return runs.len();
     };
-    let ms = |t: DateTime| (t - first).total(jiff::Unit::Millisecond).unwrap_or(f64::INFINITY);
+    let ms = |t: DateTime| {
+        (t - first)
+            .total(jiff::Unit::Millisecond)
+            .unwrap_or(f64::INFINITY)
+    };
     runs.iter()
         .position(|c| c.run.facts.taken.is_some_and(|t| ms(t) > limit as f64))
         .unwrap_or(runs.len())
@@ -224,7 +249,13 @@ fn lay(
         (None, false) => RoundState::Pending,
     };
     debug_assert!(state != RoundState::Complete || its.len() >= frame.cells() * frame.trials);
-    let mut laid = Laid { label, state, reason: placed.hold, through, seats: placed.seats };
+    let mut laid = Laid {
+        label,
+        state,
+        reason: placed.hold,
+        through,
+        seats: placed.seats,
+    };
     if state == RoundState::Held {
         turn(&mut laid, RunStatus::Held);
     }
@@ -240,7 +271,8 @@ fn expire(frame: &Frame, laid: &mut Laid, opened: Option<i64>, clock: Clock) {
 
 fn unfinish(laid: &mut Laid) {
     laid.state = RoundState::Unfinished;
-    laid.reason.get_or_insert_with(|| "its time was up before every cell was filled".into());
+    laid.reason
+        .get_or_insert_with(|| "its time was up before every cell was filled".into());
     turn(laid, RunStatus::Unfinished);
 }
 

@@ -24,11 +24,21 @@ pub struct Seat {
 
 impl Seat {
     pub(super) fn out(run: i64, status: RunStatus, reason: String) -> Self {
-        Self { run, status, slot: None, reason: Some(reason) }
+        Self {
+            run,
+            status,
+            slot: None,
+            reason: Some(reason),
+        }
     }
 
     fn fills(run: i64, slot: usize) -> Self {
-        Self { run, status: RunStatus::Used, slot: Some(slot), reason: None }
+        Self {
+            run,
+            status: RunStatus::Used,
+            slot: Some(slot),
+            reason: None,
+        }
     }
 }
 
@@ -47,7 +57,10 @@ pub(super) fn place(frame: &Frame, runs: &[Candidate<'_>]) -> Placed {
     let mut seats: Vec<Option<Seat>> = vec![None; runs.len()];
     let mut cells: BTreeMap<Vec<String>, Vec<usize>> = BTreeMap::new();
     for (index, candidate) in runs.iter().enumerate() {
-        cells.entry(candidate.names.iter().map(|n| fold(n)).collect()).or_default().push(index);
+        cells
+            .entry(candidate.names.iter().map(|n| fold(n)).collect())
+            .or_default()
+            .push(index);
     }
     let mut filled_slots = 0;
     for members in cells.values() {
@@ -56,7 +69,11 @@ pub(super) fn place(frame: &Frame, runs: &[Candidate<'_>]) -> Placed {
     let seats: Vec<Seat> = seats.into_iter().flatten().collect();
     debug_assert_eq!(seats.len(), runs.len());
     let hold = too_many_levels(frame, runs).or_else(|| same_differs(runs, &seats));
-    Placed { filled: filled_slots == frame.cells() * frame.trials, seats, hold }
+    Placed {
+        filled: filled_slots == frame.cells() * frame.trials,
+        seats,
+        hold,
+    }
 }
 
 fn expected(frame: &Frame, runs: &[Candidate<'_>]) -> BTreeSet<String> {
@@ -105,7 +122,11 @@ fn fill_cell(
                 slots[slot] = Some(index);
                 Seat::fills(run.id, slot)
             }
-            None => Seat::out(run.id, RunStatus::Surplus, "its cell had enough runs".into()),
+            None => Seat::out(
+                run.id,
+                RunStatus::Surplus,
+                "its cell had enough runs".into(),
+            ),
         });
     }
     slots.iter().flatten().filter(|&&i| complete(i)).count()
@@ -114,9 +135,10 @@ fn fill_cell(
 fn stated_slot(label: &str, trials: usize) -> Result<usize, (RunStatus, String)> {
     match label.trim().parse::<usize>() {
         Ok(n) if (1..=trials).contains(&n) => Ok(n - 1),
-        Ok(n) if n > trials => {
-            Err((RunStatus::Surplus, format!("trial {n}; the plan has {trials}")))
-        }
+        Ok(n) if n > trials => Err((
+            RunStatus::Surplus,
+            format!("trial {n}; the plan has {trials}"),
+        )),
         _ => Err((
             RunStatus::SetAside,
             format!("trial `{label}` is not a number from 1 to {trials}"),
@@ -126,15 +148,26 @@ fn stated_slot(label: &str, trials: usize) -> Result<usize, (RunStatus, String)>
 
 fn shortfall(holds: &BTreeSet<String>, expected: &BTreeSet<String>) -> String {
     let has = expected.intersection(holds).count();
-    let first = expected.difference(holds).next().map(String::as_str).unwrap_or_default();
-    format!("short: {has} of {} characteristics; `{first}` is missing", expected.len())
+    let first = expected
+        .difference(holds)
+        .next()
+        .map(String::as_str)
+        .unwrap_or_default();
+    format!(
+        "short: {has} of {} characteristics; `{first}` is missing",
+        expected.len()
+    )
 }
 
 fn too_many_levels(frame: &Frame, runs: &[Candidate<'_>]) -> Option<String> {
     frame.factors.iter().enumerate().find_map(|(f, factor)| {
-        let FactorLevels::Count(planned) = factor.levels else { return None };
+        let FactorLevels::Count(planned) = factor.levels else {
+            return None;
+        };
         let mut seen = BTreeSet::new();
-        let extra = runs.iter().find(|c| seen.insert(fold(&c.names[f])) && seen.len() > planned)?;
+        let extra = runs
+            .iter()
+            .find(|c| seen.insert(fold(&c.names[f])) && seen.len() > planned)?;
         Some(format!(
             "`{}` is {} number {}; the plan has {planned}",
             extra.names[f],
@@ -151,12 +184,25 @@ fn same_differs(runs: &[Candidate<'_>], seats: &[Seat]) -> Option<String> {
             continue;
         }
         for (name, value) in &candidate.run.facts.same {
-            values.entry(name).or_default().entry(fold(value)).or_insert((value, 0)).1 += 1;
+            values
+                .entry(name)
+                .or_default()
+                .entry(fold(value))
+                .or_insert((value, 0))
+                .1 += 1;
         }
     }
-    values.into_iter().find(|(_, distinct)| distinct.len() > 1).map(|(name, distinct)| {
-        let list: Vec<String> =
-            distinct.values().map(|(value, n)| format!("`{value}` in {n} runs")).collect();
-        format!("{name} must stay the same within a round, but is {}", list.join(", "))
-    })
+    values
+        .into_iter()
+        .find(|(_, distinct)| distinct.len() > 1)
+        .map(|(name, distinct)| {
+            let list: Vec<String> = distinct
+                .values()
+                .map(|(value, n)| format!("`{value}` in {n} runs"))
+                .collect();
+            format!(
+                "{name} must stay the same within a round, but is {}",
+                list.join(", ")
+            )
+        })
 }

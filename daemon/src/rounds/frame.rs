@@ -51,14 +51,20 @@ impl Frame {
         if let Some(appraisers) = &plan.appraisers {
             factors.push(factor("appraiser", &appraisers.word, &appraisers.levels));
         }
-        factors.extend(plan.factors.iter().map(|f| factor(&f.name, &f.name, &f.levels)));
+        factors.extend(
+            plan.factors
+                .iter()
+                .map(|f| factor(&f.name, &f.name, &f.levels)),
+        );
         Self {
             factors,
             trials: plan.trials as usize,
             whole_list: plan
                 .whole_list
                 .then(|| plan.characteristics.iter().map(|c| fold(&c.name)).collect()),
-            finish_within: plan.finish_within.and_then(|d| i64::try_from(d.as_millis()).ok()),
+            finish_within: plan
+                .finish_within
+                .and_then(|d| i64::try_from(d.as_millis()).ok()),
         }
     }
 
@@ -73,7 +79,10 @@ impl Frame {
     /// # Errors
     /// A label that the plan does not know, or a factor that the export does not name.
     pub fn names(&self, facts: &RunFacts) -> Result<Vec<String>, Unknown> {
-        self.factors.iter().map(|factor| factor.name_of(factor.label(facts))).collect()
+        self.factors
+            .iter()
+            .map(|factor| factor.name_of(factor.label(facts)))
+            .collect()
     }
 }
 
@@ -97,27 +106,34 @@ impl FrameFactor {
 
     fn name_of(&self, label: Option<&str>) -> Result<String, Unknown> {
         let Some(label) = label.filter(|l| !l.trim().is_empty()) else {
-            return Err(Unknown { reason: format!("the export names no {}", self.word) });
+            return Err(Unknown {
+                reason: format!("the export names no {}", self.word),
+            });
         };
         let FactorLevels::Named(levels) = &self.levels else {
             return Ok(label.trim().to_owned());
         };
         let folded = fold(label);
         let known = levels.iter().flat_map(|l| {
-            std::iter::once(&l.name).chain(&l.spellings).map(move |s| (s.as_str(), l.name.as_str()))
+            std::iter::once(&l.name)
+                .chain(&l.spellings)
+                .map(move |s| (s.as_str(), l.name.as_str()))
         });
         if let Some((_, name)) = known.clone().find(|(spelling, _)| fold(spelling) == folded) {
             return Ok(name.to_owned());
         }
         let likely = nearest(label, known.clone().map(|(spelling, _)| spelling));
-        let nearest =
-            likely.and_then(|s| known.clone().find(|(spelling, _)| *spelling == s)).map(|(_, name)| name);
+        let nearest = likely
+            .and_then(|s| known.clone().find(|(spelling, _)| *spelling == s))
+            .map(|(_, name)| name);
         let names: Vec<&str> = levels.iter().map(|l| l.name.as_str()).collect();
         let list = match names.len() {
             0..=12 => names.join(", "),
             n => format!("{} … {} ({n} names)", names[0], names[n - 1]),
         };
-        let near = nearest.map(|name| format!("; perhaps {name}?")).unwrap_or_default();
+        let near = nearest
+            .map(|name| format!("; perhaps {name}?"))
+            .unwrap_or_default();
         Err(Unknown {
             reason: format!("{} `{label}` is not in the plan ({list}){near}", self.word),
         })

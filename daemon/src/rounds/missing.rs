@@ -40,11 +40,15 @@ pub fn missing(frame: &Frame, runs: &[RunRow]) -> Vec<Missing> {
     for (names, slot, run) in &seated {
         taken.insert((names.iter().map(|n| fold(n)).collect(), *slot), run);
     }
-    let levels: Vec<Vec<Option<String>>> =
-        (0..frame.factors.len()).map(|f| levels(frame, f, &seated)).collect();
+    let levels: Vec<Vec<Option<String>>> = (0..frame.factors.len())
+        .map(|f| levels(frame, f, &seated))
+        .collect();
     let mut out = Vec::new();
     for cell in cells(&levels) {
-        let key: Vec<String> = cell.iter().map(|l| l.as_deref().map(fold).unwrap_or_default()).collect();
+        let key: Vec<String> = cell
+            .iter()
+            .map(|l| l.as_deref().map(fold).unwrap_or_default())
+            .collect();
         let mut absent = Vec::new();
         for slot in 0..frame.trials {
             match taken.get(&(key.clone(), slot)) {
@@ -69,18 +73,27 @@ pub fn missing(frame: &Frame, runs: &[RunRow]) -> Vec<Missing> {
 }
 
 /// The level names of a factor; `None` for each that is planned and not seen yet.
-fn levels(frame: &Frame, f: usize, seated: &[(Vec<String>, usize, &RunRow)]) -> Vec<Option<String>> {
+fn levels(
+    frame: &Frame,
+    f: usize,
+    seated: &[(Vec<String>, usize, &RunRow)],
+) -> Vec<Option<String>> {
     match &frame.factors[f].levels {
         FactorLevels::Named(names) => names.iter().map(|l| Some(l.name.clone())).collect(),
         FactorLevels::Count(n) => {
             let mut seen = BTreeMap::new();
             for (names, ..) in seated {
-                seen.entry(fold(&names[f])).or_insert_with(|| names[f].clone());
+                seen.entry(fold(&names[f]))
+                    .or_insert_with(|| names[f].clone());
             }
             let mut names: Vec<String> = seen.into_values().collect();
             names.sort_by(|a, b| natural::compare(a, b));
             let unseen = n.saturating_sub(names.len());
-            names.into_iter().map(Some).chain(std::iter::repeat_n(None, unseen)).collect()
+            names
+                .into_iter()
+                .map(Some)
+                .chain(std::iter::repeat_n(None, unseen))
+                .collect()
         }
     }
 }

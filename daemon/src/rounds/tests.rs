@@ -11,14 +11,24 @@ use super::missing::missing;
 use crate::ledger::{Placement, RoundState, RunFacts, RunRow, RunStatus};
 
 fn named(names: &[&str]) -> FactorLevels {
-    let label = |n: &&str| Label { name: (*n).into(), spellings: Vec::new() };
+    let label = |n: &&str| Label {
+        name: (*n).into(),
+        spellings: Vec::new(),
+    };
     FactorLevels::Named(names.iter().map(label).collect())
 }
 
 fn frame(parts: FactorLevels, trials: usize) -> Frame {
-    let factor = |name: &str, word: &str, levels| FrameFactor { name: name.into(), word: word.into(), levels };
+    let factor = |name: &str, word: &str, levels| FrameFactor {
+        name: name.into(),
+        word: word.into(),
+        levels,
+    };
     Frame {
-        factors: vec![factor("part", "part", parts), factor("appraiser", "loading", named(&["KL", "MO"]))],
+        factors: vec![
+            factor("part", "part", parts),
+            factor("appraiser", "loading", named(&["KL", "MO"])),
+        ],
         trials,
         whole_list: None,
         finish_within: None,
@@ -44,7 +54,12 @@ fn run(id: i64, text: &str) -> RunRow {
         holds: ["bore a".to_owned()].into(),
         tie: None,
         changed: false,
-        place: Placement { round: None, slot: None, status: RunStatus::Used, reason: None },
+        place: Placement {
+            round: None,
+            slot: None,
+            status: RunStatus::Used,
+            reason: None,
+        },
     }
 }
 
@@ -58,11 +73,21 @@ fn laid(frame: &Frame, runs: &[RunRow]) -> Assigned {
 
 fn status(assigned: &Assigned, id: i64) -> &Seat {
     let in_rounds = assigned.rounds.iter().flat_map(|r| &r.seats);
-    in_rounds.chain(&assigned.elsewhere).find(|s| s.run == id).unwrap()
+    in_rounds
+        .chain(&assigned.elsewhere)
+        .find(|s| s.run == id)
+        .unwrap()
 }
 
 const FULL: [&str; 8] = [
-    "P1 KL - 1", "P1 MO - 2", "P2 KL - 3", "P2 MO - 4", "P1 KL - 5", "P1 MO - 6", "P2 KL - 7", "P2 MO - 8",
+    "P1 KL - 1",
+    "P1 MO - 2",
+    "P2 KL - 3",
+    "P2 MO - 4",
+    "P1 KL - 5",
+    "P1 MO - 6",
+    "P2 KL - 7",
+    "P2 MO - 8",
 ];
 
 #[test]
@@ -81,7 +106,11 @@ fn the_order_of_arrival_does_not_matter() {
     assert_eq!(a.rounds[0].state, RoundState::Complete);
     assert_eq!(a.rounds[0].through, straight[7].facts.taken);
     assert_eq!(seats(&a), seats(&b));
-    assert_eq!(seats(&a)[4], (5, Some(1)), "the later run of a cell is its second trial");
+    assert_eq!(
+        seats(&a)[4],
+        (5, Some(1)),
+        "the later run of a cell is its second trial"
+    );
 }
 
 #[test]
@@ -106,7 +135,10 @@ fn the_first_round_ever_opens_at_once() {
 fn a_run_taken_before_the_close_is_late() {
     let frame = frame(named(&["P1", "P2"]), 2);
     let through = Some(jiff::civil::date(2026, 3, 2).at(8, 8, 0, 0));
-    let closed = [Closed { label: None, through }];
+    let closed = [Closed {
+        label: None,
+        through,
+    }];
     let texts = ["P1 KL - 8", "P1 KL - 9"];
     let assigned = assign(&frame, &closed, &runs(&texts), Clock { now: 0 }, &|_| None);
     assert_eq!(status(&assigned, 1).status, RunStatus::Late);
@@ -120,7 +152,10 @@ fn the_first_valid_run_counts_and_a_later_one_is_surplus() {
     let assigned = laid(&frame, &runs(&texts));
     assert_eq!(status(&assigned, 1).status, RunStatus::Used);
     assert_eq!(status(&assigned, 2).status, RunStatus::Surplus);
-    assert_eq!(status(&assigned, 3).reason.as_deref(), Some("trial 2; the plan has 1"));
+    assert_eq!(
+        status(&assigned, 3).reason.as_deref(),
+        Some("trial 2; the plan has 1")
+    );
 }
 
 #[test]
@@ -128,7 +163,10 @@ fn a_trial_that_is_no_number_is_set_aside() {
     let assigned = laid(&frame(named(&["P1", "P2"]), 2), &runs(&["P1 KL b 1"]));
     let seat = status(&assigned, 1);
     assert_eq!(seat.status, RunStatus::SetAside);
-    assert_eq!(seat.reason.as_deref(), Some("trial `b` is not a number from 1 to 2"));
+    assert_eq!(
+        seat.reason.as_deref(),
+        Some("trial `b` is not a number from 1 to 2")
+    );
 }
 
 #[test]
@@ -145,7 +183,10 @@ fn one_part_too_many_holds_a_round_that_only_counts_them() {
     let texts = ["P1 KL - 1", "P2 KL - 2", "P3 KL - 3"];
     let assigned = laid(&frame(FactorLevels::Count(2), 2), &runs(&texts));
     assert_eq!(assigned.rounds[0].state, RoundState::Held);
-    assert_eq!(assigned.rounds[0].reason.as_deref(), Some("`P3` is part number 3; the plan has 2"));
+    assert_eq!(
+        assigned.rounds[0].reason.as_deref(),
+        Some("`P3` is part number 3; the plan has 2")
+    );
     assert_eq!(status(&assigned, 1).status, RunStatus::Held);
 }
 
@@ -157,11 +198,17 @@ fn a_value_that_must_stay_the_same_holds_a_full_round() {
         run.facts.same.insert("program".into(), "hub rev 12".into());
     }
     assert_eq!(laid(&frame, &runs).rounds[0].state, RoundState::Complete);
-    runs[3].facts.same.insert("program".into(), "hub rev 13".into());
+    runs[3]
+        .facts
+        .same
+        .insert("program".into(), "hub rev 13".into());
     let held = laid(&frame, &runs);
     assert_eq!(held.rounds[0].state, RoundState::Held);
     let reason = held.rounds[0].reason.clone().unwrap();
-    assert!(reason.contains("`hub rev 12` in 7 runs, `hub rev 13` in 1 runs"), "{reason}");
+    assert!(
+        reason.contains("`hub rev 12` in 7 runs, `hub rev 13` in 1 runs"),
+        "{reason}"
+    );
 }
 
 #[test]
@@ -200,13 +247,29 @@ fn time_runs_out_by_the_wall_clock_and_by_the_stamps() {
 #[test]
 fn rounds_with_a_name_are_filled_by_name() {
     let frame = frame(named(&["P1", "P2"]), 1);
-    let mut runs = runs(&["P1 KL 1 1", "P1 MO 1 2", "P2 KL 1 3", "P2 MO 1 4", "P1 KL 1 5"]);
+    let mut runs = runs(&[
+        "P1 KL 1 1",
+        "P1 MO 1 2",
+        "P2 KL 1 3",
+        "P2 MO 1 4",
+        "P1 KL 1 5",
+    ]);
     for (run, label) in runs.iter_mut().zip(["r1", "R1", "r1", "r1", "r2"]) {
         run.facts.round_label = Some(label.into());
     }
     let assigned = laid(&frame, &runs);
-    let states: Vec<_> = assigned.rounds.iter().map(|r| (r.label.as_deref(), r.state)).collect();
-    assert_eq!(states, [(Some("r1"), RoundState::Complete), (Some("r2"), RoundState::Open)]);
+    let states: Vec<_> = assigned
+        .rounds
+        .iter()
+        .map(|r| (r.label.as_deref(), r.state))
+        .collect();
+    assert_eq!(
+        states,
+        [
+            (Some("r1"), RoundState::Complete),
+            (Some("r2"), RoundState::Open)
+        ]
+    );
 }
 
 #[test]
@@ -216,7 +279,12 @@ fn what_is_missing_is_named() {
     let assigned = laid(&frame, &rows);
     for row in &mut rows {
         let seat = status(&assigned, row.id);
-        row.place = Placement { round: Some(1), slot: seat.slot, status: seat.status, reason: None };
+        row.place = Placement {
+            round: Some(1),
+            slot: seat.slot,
+            status: seat.status,
+            reason: None,
+        };
     }
     let cells: Vec<_> = missing(&frame, &rows)
         .into_iter()

@@ -26,12 +26,19 @@ impl Stop {
     /// Not set.
     #[must_use]
     pub fn new() -> Self {
-        Self(Arc::new(Inner { since: watch::Sender::new(None), wakes: Mutex::new(Vec::new()) }))
+        Self(Arc::new(Inner {
+            since: watch::Sender::new(None),
+            wakes: Mutex::new(Vec::new()),
+        }))
     }
 
     /// Has the stop wake this thread too.
     pub fn wakes(&self, wake: Wake) {
-        self.0.wakes.lock().unwrap_or_else(PoisonError::into_inner).push(wake);
+        self.0
+            .wakes
+            .lock()
+            .unwrap_or_else(PoisonError::into_inner)
+            .push(wake);
     }
 
     /// Sets it.
@@ -41,7 +48,13 @@ impl Stop {
             since.get_or_insert_with(Instant::now);
             first
         });
-        for wake in self.0.wakes.lock().unwrap_or_else(PoisonError::into_inner).iter() {
+        for wake in self
+            .0
+            .wakes
+            .lock()
+            .unwrap_or_else(PoisonError::into_inner)
+            .iter()
+        {
             wake.now();
         }
     }
@@ -55,7 +68,11 @@ impl Stop {
     /// How long ago it was set; zero when it is not.
     #[must_use]
     pub fn since(&self) -> Duration {
-        self.0.since.borrow().map(|at| at.elapsed()).unwrap_or_default()
+        self.0
+            .since
+            .borrow()
+            .map(|at| at.elapsed())
+            .unwrap_or_default()
     }
 
     /// Waits until it is set.

@@ -13,8 +13,16 @@ use crate::ledger::Stat;
 const DEPTH_MAX: usize = 32;
 
 /// Names that programs give to files they are still writing: common practice, no source.
-const TEMPORARY_ENDINGS: [&str; 8] =
-    [".tmp", ".temp", ".part", ".partial", ".filepart", ".crdownload", ".swp", "~"];
+const TEMPORARY_ENDINGS: [&str; 8] = [
+    ".tmp",
+    ".temp",
+    ".part",
+    ".partial",
+    ".filepart",
+    ".crdownload",
+    ".swp",
+    "~",
+];
 const TEMPORARY_STARTS: [&str; 3] = [".", "~$", "#"];
 
 /// A file that an instrument's patterns name.
@@ -47,20 +55,29 @@ pub fn walk(root: &Path, patterns: &FilePatterns) -> (Vec<Found>, Vec<Unreadable
         let entries = match fs_err::read_dir(&folder) {
             Ok(entries) => entries,
             Err(error) => {
-                unreadable.push(Unreadable { path: folder, error });
+                unreadable.push(Unreadable {
+                    path: folder,
+                    error,
+                });
                 continue;
             }
         };
         for entry in entries.flatten() {
             let path = entry.path();
-            let Ok(metadata) = fs_err::metadata(&path) else { continue };
+            let Ok(metadata) = fs_err::metadata(&path) else {
+                continue;
+            };
             if metadata.is_dir() {
                 if depth < DEPTH_MAX && !hidden(&entry.file_name()) {
                     folders.push((path, depth + 1));
                 }
             } else if metadata.is_file() && is_export(&entry.file_name(), patterns) {
                 let shown = shown(root, &path);
-                found.push(Found { path, shown, stat: stat(&metadata) });
+                found.push(Found {
+                    path,
+                    shown,
+                    stat: stat(&metadata),
+                });
             }
         }
     }
@@ -104,5 +121,8 @@ fn temporary(name: &OsStr) -> bool {
 /// A path below the watched folder as people and `path` roles see it.
 #[must_use]
 pub fn shown(root: &Path, path: &Path) -> String {
-    path.strip_prefix(root).unwrap_or(path).to_string_lossy().into_owned()
+    path.strip_prefix(root)
+        .unwrap_or(path)
+        .to_string_lossy()
+        .into_owned()
 }

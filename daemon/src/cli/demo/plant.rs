@@ -85,10 +85,42 @@ struct Feature {
 }
 
 const FEATURES: [Feature; 4] = [
-    Feature { name: "bore A", nominal: 50.0, tolerance: 0.0135, part_sd: 0.0041, repeat_sd: 0.0007, loading_sd: 0.0003, shift: 0.0024 },
-    Feature { name: "height B", nominal: 18.0, tolerance: 0.05, part_sd: 0.014, repeat_sd: 0.0011, loading_sd: 0.0005, shift: 0.0031 },
-    Feature { name: "face C runout", nominal: 0.05, tolerance: 0.04, part_sd: 0.009, repeat_sd: 0.0016, loading_sd: 0.0007, shift: 0.0 },
-    Feature { name: "slot width", nominal: 6.0, tolerance: 0.09, part_sd: 0.017, repeat_sd: 0.0009, loading_sd: 0.0003, shift: 0.0 },
+    Feature {
+        name: "bore A",
+        nominal: 50.0,
+        tolerance: 0.0135,
+        part_sd: 0.0041,
+        repeat_sd: 0.00035,
+        loading_sd: 0.0001,
+        shift: 0.0026,
+    },
+    Feature {
+        name: "height B",
+        nominal: 18.0,
+        tolerance: 0.05,
+        part_sd: 0.014,
+        repeat_sd: 0.0011,
+        loading_sd: 0.0005,
+        shift: 0.0031,
+    },
+    Feature {
+        name: "face C runout",
+        nominal: 0.05,
+        tolerance: 0.04,
+        part_sd: 0.009,
+        repeat_sd: 0.0009,
+        loading_sd: 0.0003,
+        shift: 0.0,
+    },
+    Feature {
+        name: "slot width",
+        nominal: 6.0,
+        tolerance: 0.09,
+        part_sd: 0.017,
+        repeat_sd: 0.0009,
+        loading_sd: 0.0003,
+        shift: 0.0,
+    },
 ];
 
 /// One export: one run.
@@ -113,10 +145,22 @@ pub(super) fn build(folder: &Path) -> std::io::Result<PathBuf> {
 pub(super) fn exports() -> Vec<Export> {
     let mut chance = Chance(SEED);
     let parts: Vec<Vec<f64>> = (0..PARTS)
-        .map(|_| FEATURES.iter().map(|f| f.nominal + f.part_sd * chance.normal()).collect())
+        .map(|_| {
+            FEATURES
+                .iter()
+                .map(|f| f.nominal + f.part_sd * chance.normal())
+                .collect()
+        })
         .collect();
-    let habits: Vec<Vec<f64>> =
-        LOADINGS.iter().map(|_| FEATURES.iter().map(|f| f.loading_sd * chance.normal()).collect()).collect();
+    let habits: Vec<Vec<f64>> = LOADINGS
+        .iter()
+        .map(|_| {
+            FEATURES
+                .iter()
+                .map(|f| f.loading_sd * chance.normal())
+                .collect()
+        })
+        .collect();
     let mut exports = Vec::new();
     for (round, start) in [(1, date(2026, 3, 2)), (2, date(2026, 6, 1))] {
         let mut taken = start.at(7, 30, 0, 0);
@@ -126,11 +170,16 @@ pub(super) fn exports() -> Vec<Export> {
                     let shifted = round == 2 && *loading == "TS";
                     let values = FEATURES.iter().enumerate().map(|(f, feature)| {
                         let shift = if shifted { feature.shift } else { 0.0 };
-                        let value = part[f] + habits[l][f] + shift + feature.repeat_sd * chance.normal();
+                        let value =
+                            part[f] + habits[l][f] + shift + feature.repeat_sd * chance.normal();
                         (value * 1e5).round() / 1e5
                     });
                     exports.push(Export {
-                        name: format!("GRR/round-{round}/hub-{:02} {loading} run-{trial}.xlsx", p + 1).into(),
+                        name: format!(
+                            "GRR/round-{round}/hub-{:02} {loading} run-{trial}.xlsx",
+                            p + 1
+                        )
+                        .into(),
                         part: format!("hub-{:02}", p + 1),
                         loading,
                         taken,
@@ -166,7 +215,10 @@ impl Export {
         let head = [
             ("Halden Pump Works", String::new()),
             ("Loaded by", self.loading.to_owned()),
-            ("Measured", self.taken.strftime("%Y-%m-%d %H:%M").to_string()),
+            (
+                "Measured",
+                self.taken.strftime("%Y-%m-%d %H:%M").to_string(),
+            ),
             ("Program", "hub rev 12".to_owned()),
             ("Stylus", "ST-20".to_owned()),
         ];
@@ -176,14 +228,26 @@ impl Export {
                 sheet.write_string(row, 1, value)?;
             }
         }
-        let headings = ["Serial no.", "Feature", "Nominal", "Lower tol.", "Upper tol.", "Actual"];
+        let headings = [
+            "Serial no.",
+            "Feature",
+            "Nominal",
+            "Lower tol.",
+            "Upper tol.",
+            "Actual",
+        ];
         for (column, heading) in (0..).zip(headings) {
             sheet.write_string(6, column, heading)?;
         }
         for ((row, feature), value) in (7..).zip(&FEATURES).zip(&self.values) {
             sheet.write_string(row, 0, &self.part)?;
             sheet.write_string(row, 1, feature.name)?;
-            let numbers = [feature.nominal, -feature.tolerance, feature.tolerance, *value];
+            let numbers = [
+                feature.nominal,
+                -feature.tolerance,
+                feature.tolerance,
+                *value,
+            ];
             for (column, number) in (2..).zip(numbers) {
                 sheet.write_number(row, column, number)?;
             }

@@ -121,7 +121,12 @@ pub(super) fn reads(name: &'static str, repeat_um: f64, ts_um: f64) -> Reads {
     }
 }
 
-pub(super) fn round(config: &Config, number: i64, features: &[Reads], before: Option<&Worked>) -> Worked {
+pub(super) fn round(
+    config: &Config,
+    number: i64,
+    features: &[Reads],
+    before: Option<&Worked>,
+) -> Worked {
     revised(config, number, 1, features, before)
 }
 
@@ -137,7 +142,11 @@ pub(super) fn revised(
     let earlier = before.map(earlier).unwrap_or_default();
     let standing = |label: &str| earlier.get(label).map(|e: &Earlier| e.study.standing);
     let outcomes = work_out(&config.site.name, plan, &evidence, &standing);
-    Worked { evidence, outcomes, earlier }
+    Worked {
+        evidence,
+        outcomes,
+        earlier,
+    }
 }
 
 /// The studies as the ledger would keep them.
@@ -146,7 +155,10 @@ pub(super) fn rows(worked: &Worked) -> Vec<StudyRow> {
         round: worked.evidence.round.id,
         revision: worked.evidence.round.revision,
         characteristic: outcome.characteristic.clone(),
-        record: outcome.study.as_ref().map_or_else(|_| "{}".into(), |r| serde_json::to_string(r).unwrap()),
+        record: outcome
+            .study
+            .as_ref()
+            .map_or_else(|_| "{}".into(), |r| serde_json::to_string(r).unwrap()),
         share: outcome.share(),
         standing: outcome.standing(),
     };
@@ -159,7 +171,14 @@ fn earlier(before: &Worked) -> BTreeMap<String, Earlier> {
         .into_iter()
         .map(|study| {
             let closed = round.closed.unwrap();
-            (study.characteristic.clone(), Earlier { number: round.number, closed, study })
+            (
+                study.characteristic.clone(),
+                Earlier {
+                    number: round.number,
+                    closed,
+                    study,
+                },
+            )
         })
         .collect()
 }
@@ -167,19 +186,35 @@ fn earlier(before: &Worked) -> BTreeMap<String, Earlier> {
 fn evidence(plan: &Plan, number: i64, revision: i64, features: &[Reads]) -> Evidence {
     let names = |count: usize| (1..=count).map(|n| format!("P{n:02}")).collect();
     let factors = vec![
-        Factor { name: "part".into(), word: "part".into(), levels: names(PARTS) },
-        Factor { name: "appraiser".into(), word: "loading".into(), levels: LOADINGS.map(String::from).to_vec() },
+        Factor {
+            name: "part".into(),
+            word: "part".into(),
+            levels: names(PARTS),
+        },
+        Factor {
+            name: "appraiser".into(),
+            word: "loading".into(),
+            levels: LOADINGS.map(String::from).to_vec(),
+        },
     ];
     let mut runs = Vec::new();
     for part in 0..PARTS {
         for loading in 0..LOADINGS.len() {
             for slot in 0..TRIALS {
                 let taken = date(2026, 3, 1).at(8, (runs.len() / 2) as i8, 0, 0);
-                runs.push(Run { levels: vec![part, loading], cell: part * LOADINGS.len() + loading, slot, taken: Some(taken) });
+                runs.push(Run {
+                    levels: vec![part, loading],
+                    cell: part * LOADINGS.len() + loading,
+                    slot,
+                    taken: Some(taken),
+                });
             }
         }
     }
-    let measured = runs[0].taken.zip(runs[runs.len() - 1].taken).map(|(first, last)| Measured { first, last });
+    let measured = runs[0]
+        .taken
+        .zip(runs[runs.len() - 1].taken)
+        .map(|(first, last)| Measured { first, last });
     Evidence {
         round: RoundRow {
             id: number,
@@ -227,6 +262,9 @@ fn feature(reads: &Reads, runs: &[Run]) -> Feature {
         values: runs.iter().map(value).collect(),
         unit_differs: None,
         limits_differ: None,
-        counts: Counts { used: runs.len(), ..Counts::default() },
+        counts: Counts {
+            used: runs.len(),
+            ..Counts::default()
+        },
     }
 }
