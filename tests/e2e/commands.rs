@@ -316,6 +316,25 @@ fn analyse_says_what_a_smaller_design_allows() {
 }
 
 #[test]
+fn without_a_ledger_there_is_nothing_to_show() {
+    let plant = Plant::new(DESIGN, None);
+    let says_so = || {
+        for command in ["status", "results"] {
+            let output = on(&plant, command, &[]);
+            assert_code(&output, 3);
+            let said = text(&output.stderr);
+            assert!(said.contains("there is no ledger at"), "{said}");
+        }
+    };
+    says_so();
+    // A service that has only just started: the file is there, its tables are not.
+    fs_err::create_dir_all(plant.state()).expect("a state folder");
+    let ledger = restudy::ledger::Ledger::path(&plant.state());
+    fs_err::write(ledger, b"").expect("an empty ledger");
+    says_so();
+}
+
+#[test]
 fn a_second_service_is_refused() {
     let plant = Plant::new(DESIGN, None);
     let mut first = Service::start(&plant);

@@ -1,6 +1,11 @@
 //! Rules that no compiler knows: who may import whom, where clocks and SQL are, that every fixture names its
 //! origin; and the checks that need the toolchain's own tools.
 
+#![allow(
+    clippy::unwrap_used,
+    reason = "a helper of a test fails as the test does"
+)]
+
 mod sources;
 mod tools;
 mod tree;
