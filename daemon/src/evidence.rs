@@ -295,19 +295,10 @@ fn limits(nominal: Option<f64>, lower: Option<f64>, upper: Option<f64>) -> Strin
 }
 
 fn why_not(row: &RunRow) -> String {
-    let who: Vec<&str> = std::iter::once(row.facts.part.as_str())
-        .chain(row.facts.appraiser.as_deref())
-        .chain(row.facts.factors.values().map(String::as_str))
-        .collect();
-    let taken = row
-        .facts
-        .taken
-        .map(|t| format!(" of {}", t.strftime("%Y-%m-%d %H:%M")))
-        .unwrap_or_default();
     let reason = row.place.reason.as_deref().unwrap_or("not used");
     format!(
-        "{}{taken}: {}: {reason}",
-        who.join(" "),
+        "{}: {}: {reason}",
+        row.facts.who(),
         row.place.status.as_str()
     )
 }

@@ -19,7 +19,9 @@ use std::sync::Arc;
 use restudy_config::{Config, Plan};
 use restudy_parsers::fold;
 
-use crate::ledger::{LedgerError, Placement, RoundRow, RoundState, RunRow, SharedLedger, Write};
+use crate::ledger::{
+    LedgerError, Placement, RoundRow, RoundState, RunRow, RunStatus, SharedLedger, Write,
+};
 use crate::now::Now;
 use assign::{Assigned, Clock, Closed, Laid};
 use frame::Frame;
@@ -30,18 +32,22 @@ pub struct Rounds {
     config: Arc<Config>,
 }
 
-/// What a pass changed about one round.
+/// What a pass changed, to be said once it is recorded.
 #[derive(Debug, Clone, PartialEq, Eq)]
-struct Change {
-    plan: String,
-    number: i64,
-    what: What,
-}
-
-#[derive(Debug, Clone, PartialEq, Eq)]
-enum What {
-    State(RoundState, Option<String>),
-    Revision(i64),
+enum Change {
+    State {
+        number: i64,
+        state: RoundState,
+        reason: Option<String>,
+    },
+    Revision {
+        number: i64,
+        revision: i64,
+    },
+    SetAside {
+        who: String,
+        reason: String,
+    },
 }
 
 impl Rounds {
@@ -60,7 +66,7 @@ impl Rounds {
         for plan in &self.config.plans {
             let changes = self.ledger.lock().write(|w| reconcile(w, plan, now))?;
             for change in &changes {
-                say(change);
+                say(&plan.name, change);
             }
             owed |= !self
                 .ledger
@@ -73,27 +79,39 @@ impl Rounds {
     }
 }
 
-fn say(change: &Change) {
-    let Change { plan, number, what } = change;
-    match what {
-        What::State(RoundState::Held, reason) => {
+fn say(plan: &str, change: &Change) {
+    match change {
+        Change::State {
+            number: round,
+            state: RoundState::Held,
+            reason,
+        } => {
             let reason = reason.as_deref().unwrap_or_default();
-            tracing::warn!(plan, round = number, reason, "round waits for a person");
+            tracing::warn!(plan, round, reason, "round waits for a person");
         }
-        What::State(RoundState::Unfinished, reason) => {
+        Change::State {
+            number: round,
+            state: RoundState::Unfinished,
+            reason,
+        } => {
             let reason = reason.as_deref().unwrap_or_default();
-            tracing::warn!(plan, round = number, reason, "round closed unfinished");
+            tracing::warn!(plan, round, reason, "round closed unfinished");
         }
-        What::State(state, _) => {
-            tracing::info!(plan, round = number, "round is {}", state.as_str());
+        Change::State {
+            number: round,
+            state,
+            ..
+        } => {
+            tracing::info!(plan, round, "round is {}", state.as_str());
         }
-        What::Revision(revision) => {
-            tracing::info!(
-                plan,
-                round = number,
-                revision,
-                "values of a closed round changed"
-            );
+        Change::Revision {
+            number: round,
+            revision,
+        } => {
+            tracing::info!(plan, round, revision, "values of a closed round changed");
+        }
+        Change::SetAside { who, reason } => {
+            tracing::warn!(plan, "run set aside: {who}: {reason}");
         }
     }
 }
@@ -146,9 +164,15 @@ fn reconcile(w: &Write<'_>, plan: &Plan, now: Now) -> Result<Vec<Change>, Ledger
         };
         kept.push(row.id);
         settle_round(w, row, laid, now, &mut changes)?;
-        move_runs(w, &runs, &laid.seats, Some(kept[kept.len() - 1]))?;
+        move_runs(
+            w,
+            &runs,
+            &laid.seats,
+            Some(kept[kept.len() - 1]),
+            &mut changes,
+        )?;
     }
-    move_runs(w, &runs, &elsewhere, None)?;
+    move_runs(w, &runs, &elsewhere, None, &mut changes)?;
     for lost in rounds
         .iter()
         .filter(|r| !r.state.closed() && !kept.contains(&r.id))
@@ -171,10 +195,9 @@ fn revise(w: &Write<'_>, round: &RoundRow, changes: &mut Vec<Change>) -> Result<
         ..round.clone()
     };
     w.put_round(&revised)?;
-    changes.push(Change {
-        plan: round.plan.clone(),
+    changes.push(Change::Revision {
         number: round.number,
-        what: What::Revision(revised.revision),
+        revision: revised.revision,
     });
     Ok(())
 }
@@ -202,10 +225,11 @@ fn settle_round(
         w.put_round(&next)?;
     }
     if next.state != row.state || next.reason != row.reason {
-        changes.push(Change {
-            plan: row.plan,
+        let (state, reason) = (laid.state, laid.reason.clone());
+        changes.push(Change::State {
             number: row.number,
-            what: What::State(laid.state, laid.reason.clone()),
+            state,
+            reason,
         });
     }
     Ok(())
@@ -216,8 +240,9 @@ fn move_runs(
     runs: &[RunRow],
     seats: &[fill::Seat],
     round: Option<i64>,
+    changes: &mut Vec<Change>,
 ) -> Result<(), LedgerError> {
-    let known: HashMap<i64, &Placement> = runs.iter().map(|r| (r.id, &r.place)).collect();
+    let known: HashMap<i64, &RunRow> = runs.iter().map(|r| (r.id, r)).collect();
     for seat in seats {
         let place = Placement {
             round,
@@ -225,8 +250,16 @@ fn move_runs(
             status: seat.status,
             reason: seat.reason.clone(),
         };
-        if known.get(&seat.run) != Some(&&place) {
-            w.place_run(seat.run, &place)?;
+        let run = known.get(&seat.run);
+        if run.is_some_and(|r| r.place == place) {
+            continue;
+        }
+        w.place_run(seat.run, &place)?;
+        if let (RunStatus::SetAside, Some(run), Some(reason)) = (place.status, run, place.reason) {
+            changes.push(Change::SetAside {
+                who: run.facts.who(),
+                reason,
+            });
         }
     }
     Ok(())

@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 use std::str::FromStr;
 
+use indicatif::{ProgressBar, ProgressFinish, ProgressStyle};
 use restudy_engine::{
     Design, Factor, Interaction, Judge, OneSided, Process, Settings, Standing, Study, Tolerance,
 };
@@ -16,6 +17,9 @@ use crate::figures::significant;
 use crate::intake::workbook::Ask;
 use crate::natural;
 use crate::record::{Counts, Judgement, Measured, Record, SCHEMA, Source, hex};
+
+/// From so many files on, reading them shows a bar.
+const MANY_FILES: usize = 20;
 
 /// Work a study out from files, without a service
 #[derive(Debug, clap::Args)]
@@ -216,7 +220,8 @@ fn read_all(line: &Line) -> Result<(Vec<File>, End), Failure> {
         .transpose()?;
     let mut files = Vec::new();
     let mut end = End::Fine;
-    for path in &line.files {
+    let bar = progress(line.files.len());
+    for path in bar.wrap_iter(line.files.iter()) {
         let shown = path.display().to_string();
         let outcome = match (&config, &line.instrument) {
             (Some(config), Some(name)) => {
@@ -250,6 +255,17 @@ fn read_all(line: &Line) -> Result<(Vec<File>, End), Failure> {
         }
     }
     Ok((files, end))
+}
+
+/// A bar for many files; hidden when nobody sits at a terminal.
+fn progress(files: usize) -> ProgressBar {
+    if files < MANY_FILES {
+        return ProgressBar::hidden();
+    }
+    let style = ProgressStyle::with_template("{bar:40} {pos} of {len} files");
+    ProgressBar::new(files as u64)
+        .with_style(style.unwrap_or_else(|_| ProgressStyle::default_bar()))
+        .with_finish(ProgressFinish::AndClear)
 }
 
 fn read_plain(path: &Path) -> Result<Result<Parsed, Refused>, Failure> {

@@ -108,6 +108,9 @@ fn join(
         Some(round) => w.read().round(round)?.is_some_and(|r| r.state.closed()),
         None => false,
     };
+    if !closed && row.facts.same != run.same {
+        w.put_same(id, &run.same)?;
+    }
     let used = row.place.slot.is_some();
     let changed = row.changed || (closed && used && merged.last_changed);
     w.put_tally(id, &merged.tallies, &holds, merged.tie.as_deref(), changed)

@@ -81,6 +81,25 @@ pub struct RunFacts {
     pub round_label: Option<String>,
 }
 
+impl RunFacts {
+    /// The run as people call it: part, appraiser, further factors, time.
+    #[must_use]
+    pub fn who(&self) -> String {
+        let names = std::iter::once(&self.part)
+            .chain(&self.appraiser)
+            .chain(self.factors.values());
+        let names: Vec<&str> = names.map(String::as_str).collect();
+        match self.taken {
+            Some(taken) => format!(
+                "{} of {}",
+                names.join(" "),
+                taken.strftime("%Y-%m-%d %H:%M")
+            ),
+            None => names.join(" "),
+        }
+    }
+}
+
 /// A recorded run.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct RunRow {
@@ -272,6 +291,17 @@ impl Write<'_> {
         self.transaction
             .prepare_cached("UPDATE run SET holds = ?2, tie = ?3, changed = ?4 WHERE id = ?1")?
             .execute(params![run, json(holds)?, tie, changed])?;
+        Ok(())
+    }
+
+    /// A later export of a run whose round is open states what must stay the same anew.
+    ///
+    /// # Errors
+    /// The database's refusal.
+    pub fn put_same(&self, run: i64, same: &BTreeMap<String, String>) -> Result<(), LedgerError> {
+        self.transaction
+            .prepare_cached("UPDATE run SET same = ?2 WHERE id = ?1")?
+            .execute(params![run, json(same)?])?;
         Ok(())
     }
 

@@ -1,9 +1,12 @@
 //! Studies and the standings that follow from them.
 
+use jiff::civil::{Date, DateTime};
+use jiff::tz::TimeZone;
 use restudy_engine::Standing;
 use rusqlite::{OptionalExtension, Row, params};
 
 use super::{LedgerError, Read, Write};
+use crate::now::in_zone;
 
 /// One recorded study.
 #[derive(Debug, Clone, PartialEq)]
@@ -31,6 +34,22 @@ pub struct Earlier {
     pub closed: i64,
     /// The study.
     pub study: StudyRow,
+}
+
+impl Earlier {
+    /// The day on which its last run was measured, where the exports say so, else on which it closed.
+    #[must_use]
+    pub fn day(&self, zone: &TimeZone) -> Date {
+        let record: Option<serde_json::Value> = serde_json::from_str(&self.study.record).ok();
+        record
+            .and_then(|r| {
+                r.pointer("/measured/last")?
+                    .as_str()?
+                    .parse::<DateTime>()
+                    .ok()
+            })
+            .map_or_else(|| in_zone(self.closed, zone).date(), DateTime::date)
+    }
 }
 
 impl Read<'_> {

@@ -118,7 +118,7 @@ fn up(
     let window = match (head.earlier, head.share_before()) {
         (Some(earlier), Some(_)) => format!(
             "Measured since {}, the last round below this limit: whether those results are affected is your call",
-            day(earlier.closed, round.zone())
+            day(earlier.day(round.zone()))
         ),
         _ => "Since when it has been above the limit is not known".into(),
     };
@@ -265,7 +265,7 @@ fn lost(round: &Round<'_>, head: Item<'_>) -> Vec<Line> {
             format!(
                 " It was {} of the tolerance on {}.",
                 super::words::percent(share),
-                day(earlier.closed, round.zone())
+                day(earlier.day(round.zone()))
             )
         }
         _ => String::new(),

@@ -50,12 +50,10 @@ pub(super) fn what(
         text.push_str(&format!(" {}.", capital(&sentence(&record.standing.why))));
     }
     text.push_str(&match (item.earlier, item.share_before()) {
-        (Some(earlier), Some(before)) => format!(
-            " It was {} on {}.",
-            percent(before),
-            day(earlier.closed, zone)
-        ),
-        (Some(earlier), None) => format!(" It was not judged on {}.", day(earlier.closed, zone)),
+        (Some(earlier), Some(before)) => {
+            format!(" It was {} on {}.", percent(before), day(earlier.day(zone)))
+        }
+        (Some(earlier), None) => format!(" It was not judged on {}.", day(earlier.day(zone))),
         (None, _) => " This is its first study.".into(),
     });
     if past.is_some_and(|past| past.other_tolerance(record.lower, record.upper)) {

@@ -1,6 +1,6 @@
 //! Numbers, dates and foreign texts in words: no more digits than a study supports.
 
-use jiff::civil::DateTime;
+use jiff::civil::{Date, DateTime};
 use jiff::tz::TimeZone;
 use restudy_engine::Limits;
 
@@ -61,8 +61,8 @@ pub(super) fn chance(p: f64) -> String {
 }
 
 /// `3 March 2026`.
-pub(super) fn day(utc_ms: i64, zone: &TimeZone) -> String {
-    in_zone(utc_ms, zone).strftime("%-d %B %Y").to_string()
+pub(super) fn day(date: Date) -> String {
+    date.strftime("%-d %B %Y").to_string()
 }
 
 /// `3 March 2026 14:20`.
