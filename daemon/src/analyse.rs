@@ -6,32 +6,22 @@
 //! Invariant: a round's revision is analysed once; its notices are owed in the same transaction.
 
 pub mod study;
+pub mod worked;
 
-use std::collections::BTreeMap;
 use std::sync::Arc;
 
 use restudy_config::{Config, Plan};
 
-use crate::evidence::Evidence;
-use crate::ledger::{Earlier, LedgerError, Read, RoundRow, SharedLedger, StudyRow, Write};
+use crate::ledger::{LedgerError, RoundRow, SharedLedger, StudyRow, Write};
 use crate::notice;
 use crate::now::Now;
-use study::{Outcome, work_out};
+use study::Outcome;
+use worked::Worked;
 
 /// The stage that works studies out.
 pub struct Analyse {
     ledger: SharedLedger,
     config: Arc<Config>,
-}
-
-/// A round with everything worked out.
-pub struct Worked {
-    /// What it was worked out from.
-    pub evidence: Evidence,
-    /// One a characteristic.
-    pub outcomes: Vec<Outcome>,
-    /// Each characteristic's study in the round before, by label.
-    pub earlier: BTreeMap<String, Earlier>,
 }
 
 impl Analyse {
@@ -61,56 +51,6 @@ impl Analyse {
         }
         Ok(recorded)
     }
-}
-
-impl Worked {
-    /// Loads a round and works it out, holding the ledger only while reading.
-    ///
-    /// # Errors
-    /// The ledger's refusal.
-    pub fn load(
-        ledger: &SharedLedger,
-        config: &Config,
-        plan: &Plan,
-        round: RoundRow,
-    ) -> Result<Self, LedgerError> {
-        let (evidence, earlier) = {
-            let ledger = ledger.lock();
-            read_all(ledger.read(), plan, round)?
-        };
-        Ok(Self::work(config, plan, evidence, earlier))
-    }
-
-    fn work(
-        config: &Config,
-        plan: &Plan,
-        evidence: Evidence,
-        earlier: BTreeMap<String, Earlier>,
-    ) -> Self {
-        let before = |label: &str| earlier.get(label).map(|e| e.study.standing);
-        let outcomes = work_out(&config.site.name, plan, &evidence, &before);
-        Self {
-            evidence,
-            outcomes,
-            earlier,
-        }
-    }
-}
-
-fn read_all(
-    read: Read<'_>,
-    plan: &Plan,
-    round: RoundRow,
-) -> Result<(Evidence, BTreeMap<String, Earlier>), LedgerError> {
-    let number = round.number;
-    let evidence = Evidence::load(read, plan, round)?;
-    let mut earlier = BTreeMap::new();
-    for feature in &evidence.features {
-        if let Some(before) = read.study_before(&plan.name, number, &feature.label)? {
-            earlier.insert(feature.label.clone(), before);
-        }
-    }
-    Ok((evidence, earlier))
 }
 
 fn record(

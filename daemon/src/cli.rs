@@ -50,7 +50,7 @@ impl Failure {
     }
 
     fn machine(error: &dyn std::error::Error) -> Self {
-        Self::Machine(crate::service::chain(error))
+        Self::Machine(crate::causes::chain(error))
     }
 }
 
@@ -92,7 +92,7 @@ enum Command {
     Results(results::Line),
     /// Watch the real service at work in an invented plant
     Demo(demo::Line),
-    #[command(name = crate::intake::child::COMMAND, hide = true)]
+    #[command(name = crate::intake::request::COMMAND, hide = true)]
     ReadWorkbooks,
 }
 

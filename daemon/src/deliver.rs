@@ -24,9 +24,10 @@ use restudy_config::{Config, Mail};
 use tokio::sync::Notify;
 use tokio::time::{Instant, sleep, timeout};
 
+use crate::causes::chain;
 use crate::ledger::{LedgerError, Owed, Read, SharedLedger, Tried};
 use crate::now::Now;
-use crate::service::{Stop, chain};
+use crate::stop::Stop;
 use backoff::Backoff;
 use session::{Down, Failed, Session};
 

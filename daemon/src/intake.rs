@@ -11,6 +11,7 @@
 pub mod child;
 pub mod file;
 pub mod merge;
+pub mod request;
 pub mod workbook;
 
 use std::collections::HashMap;
@@ -28,7 +29,8 @@ use crate::ledger::{
 use crate::now::Now;
 use crate::settle::Settler;
 use crate::watch::walk::{Found, Unreadable, walk};
-use workbook::{Ask, Workbooks};
+use request::Ask;
+use workbook::Workbooks;
 
 /// Readers of one content that may die before the export is refused.
 const STRIKES: u32 = 3;

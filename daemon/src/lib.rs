@@ -8,6 +8,7 @@
 //! Not here: statistics (`restudy-engine`), formats (`restudy-parsers`), settings (`restudy-config`).
 
 pub mod analyse;
+pub mod causes;
 pub mod cli;
 pub mod deliver;
 pub mod evidence;
@@ -22,4 +23,5 @@ pub mod report;
 pub mod rounds;
 pub mod service;
 pub mod settle;
+pub mod stop;
 pub mod watch;

@@ -30,7 +30,7 @@ use jiff::tz::TimeZone;
 use restudy_config::{Config, NoticeKind, Plan};
 use restudy_engine::Standing;
 
-use crate::analyse::Worked;
+use crate::analyse::worked::Worked;
 use crate::evidence::Evidence;
 use crate::ledger::{LedgerError, NewNotice, NoticeRow, Read, StudyRow};
 use crate::now::Now;

@@ -34,7 +34,7 @@ use std::sync::Arc;
 
 use restudy_config::{Config, Plan};
 
-use crate::analyse::Worked;
+use crate::analyse::worked::Worked;
 use crate::ledger::{LedgerError, RoundRow, SharedLedger, StudyRow};
 use crate::now::Now;
 

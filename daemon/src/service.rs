@@ -5,8 +5,6 @@
 //! Invariant: after [`Stop::now`] the service ends within [`STOP_LIMIT`]; what was not committed is done again
 //! at the next start.
 
-mod stop;
-
 use std::path::PathBuf;
 use std::sync::Arc;
 use std::sync::mpsc::{Receiver, RecvTimeoutError, Sender, channel};
@@ -16,14 +14,15 @@ use std::time::{Duration, Instant};
 use restudy_config::Config;
 
 use crate::analyse::Analyse;
+use crate::causes::chain;
 use crate::deliver;
 use crate::intake::{Intake, RuleError};
 use crate::ledger::{Ledger, LedgerError, SharedLedger};
 use crate::now::Now;
 use crate::report::Reporter;
 use crate::rounds::Rounds;
+use crate::stop::Stop;
 use crate::watch::{Waiting, Wake, Watch, wake};
-pub use stop::Stop;
 
 /// The service ends within this time once it is told to.
 pub const STOP_LIMIT: Duration = Duration::from_millis(4500);
@@ -256,16 +255,4 @@ impl Work {
         self.reporter.pass(now)?;
         Ok(())
     }
-}
-
-/// An error with its causes, in one line.
-#[must_use]
-pub fn chain(error: &dyn std::error::Error) -> String {
-    let mut text = error.to_string();
-    let mut cause = error.source();
-    while let Some(inner) = cause {
-        text = format!("{text}: {inner}");
-        cause = inner.source();
-    }
-    text
 }

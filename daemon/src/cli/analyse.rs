@@ -1,22 +1,23 @@
 //! `restudy analyse`: a study from files, without a service.
 
+mod asked;
+mod material;
+mod words;
+
 use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
-use std::str::FromStr;
 
 use indicatif::{ProgressBar, ProgressFinish, ProgressStyle};
-use restudy_engine::{
-    Design, Factor, Interaction, Judge, OneSided, Process, Settings, Standing, Study, Tolerance,
-};
+use restudy_engine::{Design, Factor, Interaction, Judge, Settings, Standing, Study, Tolerance};
 use restudy_parsers::{Bounds, Export, Parsed, Plain, Refused, fold};
 use sha2::{Digest as _, Sha256};
 
-use super::table::table;
 use super::{Answer, End, Failure, complain, configuration, preview, print, print_json};
-use crate::figures::significant;
-use crate::intake::workbook::Ask;
-use crate::natural;
-use crate::record::{Counts, Judgement, Measured, Record, SCHEMA, Source, hex};
+use crate::intake::request::Ask;
+use crate::record::{Counts, Judgement, Record, SCHEMA, hex};
+use asked::{OneSidedText, ProcessText};
+use material::{File, Gathered, Material, gather, levels};
+use words::for_people;
 
 /// From so many files on, reading them shows a bar.
 const MANY_FILES: usize = 20;
@@ -69,77 +70,6 @@ pub(super) struct Line {
     /// Print the study records as JSON
     #[arg(long)]
     json: bool,
-}
-
-#[derive(Debug, Clone, Copy)]
-struct OneSidedText(OneSided);
-
-impl FromStr for OneSidedText {
-    type Err = String;
-
-    fn from_str(text: &str) -> Result<Self, String> {
-        let folded = fold(&text.replace('-', " "));
-        match folded.as_str() {
-            "from zero" => return Ok(Self(OneSided::FromZero)),
-            "to process mean" => return Ok(Self(OneSided::ToProcessMean)),
-            "to study mean" => return Ok(Self(OneSided::ToStudyMean)),
-            _ => {}
-        }
-        folded
-            .strip_prefix("width")
-            .and_then(|rest| rest.trim_start_matches([' ', '=']).parse::<f64>().ok())
-            .filter(|w| w.is_finite() && *w > 0.0)
-            .map(|w| Self(OneSided::Width(w)))
-            .ok_or_else(|| {
-                "expected `from zero`, `width=NUMBER`, `to process mean` or `to study mean`".into()
-            })
-    }
-}
-
-#[derive(Debug, Clone, Copy)]
-struct ProcessText(Process);
-
-impl FromStr for ProcessText {
-    type Err = String;
-
-    fn from_str(text: &str) -> Result<Self, String> {
-        if fold(&text.replace('-', " ")) == "study parts" {
-            return Ok(Self(Process::StudyParts));
-        }
-        let numbers = text.split_once(',').and_then(|(mean, sd)| {
-            Some((
-                mean.trim().parse::<f64>().ok()?,
-                sd.trim().parse::<f64>().ok()?,
-            ))
-        });
-        numbers
-            .filter(|(mean, sd)| mean.is_finite() && sd.is_finite() && *sd > 0.0)
-            .map(|(mean, sd)| Self(Process::Stated { mean, sd }))
-            .ok_or_else(|| "expected `MEAN,SD` with an sd above 0, or `study parts`".into())
-    }
-}
-
-/// All readings of one characteristic, over all files.
-#[derive(Default)]
-struct Gathered {
-    label: String,
-    unit: Option<String>,
-    nominal: Option<f64>,
-    lower: Option<f64>,
-    upper: Option<f64>,
-    /// Labels (part, appraiser, further factors) and value.
-    rows: Vec<(Vec<String>, f64)>,
-    seen: BTreeMap<String, f64>,
-    fault: Option<String>,
-}
-
-/// The readings of all files.
-struct Material {
-    factors: Vec<String>,
-    characteristics: Vec<Gathered>,
-    measured: Option<Measured>,
-    same: BTreeMap<String, Vec<String>>,
-    source: Vec<Source>,
 }
 
 pub(super) fn run(line: &Line) -> Answer {
@@ -203,12 +133,6 @@ fn settings(line: &Line) -> Result<Settings, Failure> {
         limits: None,
         judge: Judge::Estimate,
     })
-}
-
-struct File {
-    shown: String,
-    sha256: String,
-    parsed: Parsed,
 }
 
 /// Reads the files; a refused one costs only itself.
@@ -285,121 +209,6 @@ fn read_plain(path: &Path) -> Result<Result<Parsed, Refused>, Failure> {
     })
 }
 
-fn gather(files: &[File]) -> Material {
-    let runs = || files.iter().flat_map(|f| &f.parsed.runs);
-    let has_appraiser = runs().any(|r| r.appraiser.is_some());
-    let mut further: Vec<String> = runs().flat_map(|r| r.factors.keys().cloned()).collect();
-    further.sort();
-    further.dedup();
-    let mut factors = vec!["part".to_owned()];
-    factors.extend(has_appraiser.then(|| "appraiser".to_owned()));
-    factors.extend(further.iter().cloned());
-
-    let mut characteristics: Vec<Gathered> = Vec::new();
-    let mut index: BTreeMap<String, usize> = BTreeMap::new();
-    for file in files {
-        for reading in &file.parsed.readings {
-            let run = &file.parsed.runs[reading.run];
-            let at = *index
-                .entry(fold(&reading.characteristic))
-                .or_insert_with(|| {
-                    characteristics.push(Gathered {
-                        label: reading.characteristic.clone(),
-                        unit: reading.unit.clone(),
-                        nominal: reading.nominal,
-                        lower: reading.lower,
-                        upper: reading.upper,
-                        ..Gathered::default()
-                    });
-                    characteristics.len() - 1
-                });
-            let gathered = &mut characteristics[at];
-            let mut labels = vec![run.part.clone()];
-            if has_appraiser {
-                labels.push(run.appraiser.clone().unwrap_or_default());
-            }
-            labels.extend(
-                further
-                    .iter()
-                    .map(|f| run.factors.get(f).cloned().unwrap_or_default()),
-            );
-            gathered.add(labels, run.trial.as_deref(), run.taken, reading);
-        }
-    }
-    let stamps = || runs().filter_map(|r| r.taken);
-    let mut same: BTreeMap<String, Vec<String>> = BTreeMap::new();
-    for (name, value) in runs().flat_map(|r| &r.same) {
-        let values = same.entry(name.clone()).or_default();
-        if !values.iter().any(|v| fold(v) == fold(value)) {
-            values.push(value.clone());
-        }
-    }
-    Material {
-        factors,
-        characteristics,
-        measured: stamps()
-            .min()
-            .zip(stamps().max())
-            .map(|(first, last)| Measured { first, last }),
-        same,
-        source: files
-            .iter()
-            .map(|f| Source {
-                export: f.shown.clone(),
-                sha256: f.sha256.clone(),
-            })
-            .collect(),
-    }
-}
-
-impl Gathered {
-    fn add(
-        &mut self,
-        labels: Vec<String>,
-        trial: Option<&str>,
-        taken: Option<jiff::civil::DateTime>,
-        reading: &restudy_parsers::Reading,
-    ) {
-        if self.unit != reading.unit {
-            self.fault.get_or_insert_with(|| {
-                let unit = |u: &Option<String>| u.clone().unwrap_or_else(|| "no unit".into());
-                format!(
-                    "readings come in {} and in {}",
-                    unit(&self.unit),
-                    unit(&reading.unit)
-                )
-            });
-        }
-        if (self.lower, self.upper) != (reading.lower, reading.upper) {
-            self.fault.get_or_insert_with(|| {
-                format!(
-                    "the tolerance limits differ between readings ({})",
-                    reading.origin
-                )
-            });
-        }
-        if trial.is_some() || taken.is_some() {
-            let folded: Vec<String> = labels.iter().map(|l| fold(l)).collect();
-            let key = format!("{folded:?}{:?}{taken:?}", trial.map(fold));
-            match self.seen.insert(key, reading.value) {
-                Some(value) if value == reading.value => return,
-                Some(value) => {
-                    let who = labels.join(" ");
-                    let trial = trial.map(|t| format!(" trial {t}")).unwrap_or_default();
-                    self.fault.get_or_insert_with(|| {
-                        format!(
-                            "{who}{trial} is given twice, as {value} and as {}",
-                            reading.value
-                        )
-                    });
-                }
-                None => {}
-            }
-        }
-        self.rows.push((labels, reading.value));
-    }
-}
-
 fn study(
     line: &Line,
     settings: &Settings,
@@ -467,18 +276,6 @@ fn study(
     })
 }
 
-/// Folded level names in natural order.
-fn levels(gathered: &Gathered, factor: usize) -> Vec<String> {
-    let mut names: Vec<String> = gathered
-        .rows
-        .iter()
-        .map(|(labels, _)| fold(&labels[factor]))
-        .collect();
-    names.sort_by(|a, b| natural::compare(a, b));
-    names.dedup();
-    names
-}
-
 /// The engine's refusal, with the cells that have too few or too many readings by name.
 fn in_names(
     error: &restudy_engine::StudyError,
@@ -544,111 +341,4 @@ fn unjudged(study: &Study) -> Judgement {
         judged_by: None,
         why: why.to_owned(),
     }
-}
-
-fn for_people(record: &Record) -> String {
-    let study = &record.study;
-    let layout = &study.design;
-    let factors: Vec<String> = layout
-        .factors
-        .iter()
-        .map(|f| format!("{} {}", f.levels, f.name))
-        .collect();
-    let unit = record
-        .unit
-        .as_deref()
-        .map(|u| format!(" in {u}"))
-        .unwrap_or_default();
-    let mut out = format!(
-        "{}: {} × {} trials, {} readings{unit}\n\n",
-        record.characteristic,
-        factors.join(" × "),
-        layout.trials,
-        layout.readings
-    );
-    let sd = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| significant(x, 4));
-    let percent = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| format!("{:.1} %", 100.0 * x));
-    let figures = &study.figures;
-    let rows = [
-        ("EV, repeatability", &figures.repeatability),
-        (
-            "AV, reproducibility with interaction",
-            &figures.reproducibility,
-        ),
-        ("GRR, gauge", &figures.gauge),
-        ("PV, part", &figures.part),
-        ("TV, total", &figures.total),
-    ];
-    let rows = rows.iter().map(|(name, spread)| {
-        let tolerance = match name {
-            name if name.starts_with("PV") || name.starts_with("TV") => "–".into(),
-            _ => percent(spread.share_of_tolerance.estimate),
-        };
-        vec![
-            (*name).to_owned(),
-            sd(spread.sd.estimate),
-            sd(spread.sd.lower),
-            sd(spread.sd.upper),
-            tolerance,
-            percent(spread.share_of_tv.estimate),
-        ]
-    });
-    let level = format!(
-        "{} % limits: lower",
-        significant(100.0 * study.confidence, 3)
-    );
-    let headings = ["", "sd", level.as_str(), "upper", "of tolerance", "of TV"];
-    out.push_str(&table(&headings, &[1, 2, 3, 4, 5], rows.collect()));
-    let rows = study.mean_squares.iter().map(|line| {
-        let p = line.p.map_or_else(
-            || "–".into(),
-            |p| {
-                if p < 0.0001 {
-                    "< 0.0001".into()
-                } else {
-                    format!("{p:.4}")
-                }
-            },
-        );
-        vec![
-            line.name.to_string(),
-            line.df.to_string(),
-            significant(line.ss, 5),
-            sd(line.ms),
-            line.f.map_or_else(|| "–".into(), |f| significant(f, 4)),
-            p,
-        ]
-    });
-    out.push('\n');
-    let headings = [
-        "mean squares",
-        "df",
-        "sum of squares",
-        "mean square",
-        "F",
-        "p",
-    ];
-    out.push_str(&table(&headings, &[1, 2, 3, 4, 5], rows.collect()));
-    let share = &figures.gauge.share_of_tolerance;
-    out.push('\n');
-    match (share.estimate, share.at_least) {
-        (Some(estimate), at_least) => out.push_str(&format!(
-            "The gauge takes {} of the tolerance; with {} % confidence at least {}.\n",
-            percent(Some(estimate)),
-            significant(100.0 * study.confidence, 3),
-            percent(at_least)
-        )),
-        (None, _) => {
-            let why = share.why.as_deref().unwrap_or("no tolerance is known");
-            out.push_str(&format!("Share of tolerance: none ({why}).\n"));
-        }
-    }
-    if let Some(ndc) = study.ndc.whole {
-        out.push_str(&format!("ndc {ndc}.\n"));
-    }
-    for remark in &study.remarks {
-        out.push_str(&format!("{}\n", remark.text));
-    }
-    out.push_str("A study is evidence about the gauge, not a release of product.\n\n");
-    out
 }

@@ -75,6 +75,6 @@ fn state(config: &Config) -> Option<String> {
                 .err()
                 .map(|e| format!("the state folder cannot be written: {e}"))
         }
-        Err(error) => Some(crate::service::chain(&error)),
+        Err(error) => Some(crate::causes::chain(&error)),
     }
 }

@@ -13,11 +13,12 @@ use indicatif::{ProgressBar, ProgressStyle};
 use restudy_config::Config;
 
 use super::{Answer, End, Failure, configuration, print, results};
-use crate::analyse::Worked;
+use crate::analyse::worked::Worked;
 use crate::ledger::{Ledger, LedgerError, RoundRow, SharedLedger};
 use crate::notice;
 use crate::report;
-use crate::service::{self, ServiceError, Stop};
+use crate::service::{self, ServiceError};
+use crate::stop::Stop;
 
 /// How long the exports take to arrive.
 const ARRIVAL: Duration = Duration::from_secs(18);

@@ -10,7 +10,8 @@ use serde::Serialize;
 use super::table::table;
 use super::{Answer, ConfigPath, End, Failure, complain, configuration, print, print_json};
 use crate::intake::file::too_large;
-use crate::intake::workbook::{Ask, Failure as WorkbookFailure, Workbooks, refusal};
+use crate::intake::request::Ask;
+use crate::intake::workbook::{Failure as WorkbookFailure, Workbooks, refusal};
 use crate::watch::walk::shown;
 
 /// Show how one export maps to runs and readings, and what would be set aside

@@ -1,7 +1,8 @@
 //! `restudy serve`: the service.
 
 use super::{Answer, ConfigPath, End, Failure, configuration, log};
-use crate::service::{self, Stop};
+use crate::service;
+use crate::stop::Stop;
 
 /// Run the service until SIGTERM or Ctrl-C
 #[derive(Debug, clap::Args)]

@@ -10,22 +10,12 @@ use std::process::{Child, ChildStdin, ChildStdout, Command, Stdio};
 use std::sync::mpsc::{RecvTimeoutError, channel};
 use std::time::Duration;
 
-use restudy_parsers::{Parsed, Plain, Refused, Rule};
-use serde::{Deserialize, Serialize};
+use restudy_parsers::{Parsed, Refused};
 
-use super::child;
+use super::request::{Ask, COMMAND, Head, put_frame, take_frame};
 
 /// One workbook may take so long.
 const TIME_LIMIT: Duration = Duration::from_secs(60);
-
-/// How a workbook is to be read.
-#[derive(Debug, Clone, Serialize, Deserialize)]
-pub enum Ask {
-    /// By an instrument's rule.
-    Rule(Box<Rule>),
-    /// By plain headings.
-    Plain(Plain),
-}
 
 /// Why there is no answer.
 #[derive(Debug)]
@@ -79,21 +69,21 @@ impl Workbooks {
         let Some((mut stdin, mut stdout)) = running.ends.take() else {
             return Err(Failure::Died("lost its ends".into()));
         };
-        let head = serde_json::to_vec(&child::Head {
+        let head = serde_json::to_vec(&Head {
             path: path.to_owned(),
             ask: ask.clone(),
         })
         .map_err(|e| Failure::CannotStart(e.into()))?;
         let mut request = Vec::with_capacity(head.len() + bytes.len() + 16);
-        child::put_frame(&mut request, &head);
-        child::put_frame(&mut request, bytes);
+        put_frame(&mut request, &head);
+        put_frame(&mut request, bytes);
 
         let (sender, receiver) = channel();
         std::thread::spawn(move || {
             let answer = stdin
                 .write_all(&request)
                 .and_then(|()| stdin.flush())
-                .and_then(|()| child::take_frame(&mut stdout));
+                .and_then(|()| take_frame(&mut stdout));
             // Nobody waits any more when the time was up.
             let _ = sender.send((answer, stdin, stdout));
         });
@@ -131,7 +121,7 @@ pub fn refusal(how: &str, strikes: u32) -> Refused {
 
 fn start() -> io::Result<Running> {
     let mut child = Command::new(own_program()?)
-        .arg(child::COMMAND)
+        .arg(COMMAND)
         .stdin(Stdio::piped())
         .stdout(Stdio::piped())
         .stderr(Stdio::null())

@@ -4,8 +4,8 @@ use std::cmp::Ordering;
 
 use restudy_engine::{Limits, Standing};
 
-use crate::analyse::Worked;
 use crate::analyse::study::Outcome;
+use crate::analyse::worked::Worked;
 use crate::evidence::Feature;
 use crate::ledger::Earlier;
 use crate::record::Record;

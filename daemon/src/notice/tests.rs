@@ -7,7 +7,7 @@ use restudy_config::{Config, NoticeKind};
 use restudy_engine::Standing;
 
 use super::{Message, Told, compose};
-use crate::analyse::Worked;
+use crate::analyse::worked::Worked;
 use bench::{Reads, config, halden, reads, revised, round, rows};
 
 fn told(config: &Config, worked: &Worked) -> Option<Message> {

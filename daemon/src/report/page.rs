@@ -7,8 +7,8 @@ use maud::{DOCTYPE, Markup, PreEscaped, html};
 use restudy_config::Plan;
 use restudy_engine::{Interaction, Judge, Limits, Standing};
 
-use crate::analyse::Worked;
 use crate::analyse::study::Outcome;
+use crate::analyse::worked::Worked;
 use crate::evidence::Evidence;
 use crate::now::in_zone;
 

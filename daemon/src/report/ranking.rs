@@ -2,8 +2,8 @@
 
 use restudy_engine::Standing;
 
-use crate::analyse::Worked;
 use crate::analyse::study::Outcome;
+use crate::analyse::worked::Worked;
 use crate::natural;
 
 /// Up to so many characteristics each gets its pictures.

@@ -10,7 +10,7 @@ use restudy_engine::{OneSided, Standing};
 use self::plant::{Drawn, Plant};
 use super::page;
 use super::words::NBSP;
-use crate::analyse::Worked;
+use crate::analyse::worked::Worked;
 
 fn rendered(plant: &Plant) -> String {
     rendered_with(plant, &plant.worked())

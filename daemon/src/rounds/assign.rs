@@ -14,7 +14,7 @@ use std::collections::BTreeSet;
 use jiff::civil::DateTime;
 use restudy_parsers::fold;
 
-use super::fill::{Placed, Seat, place};
+use super::fill::{Candidate, Placed, Seat, place};
 use super::frame::Frame;
 use crate::ledger::{RoundState, RunRow, RunStatus};
 
@@ -56,12 +56,6 @@ pub struct Assigned {
     pub rounds: Vec<Laid>,
     /// Runs that belong to no round.
     pub elsewhere: Vec<Seat>,
-}
-
-/// A run with its level names in the plan's spelling.
-pub(super) struct Candidate<'a> {
-    pub(super) run: &'a RunRow,
-    pub(super) names: Vec<String>,
 }
 
 /// Lays all runs out in rounds.

@@ -5,9 +5,14 @@ use std::collections::{BTreeMap, BTreeSet};
 use restudy_config::FactorLevels;
 use restudy_parsers::fold;
 
-use super::assign::Candidate;
 use super::frame::Frame;
-use crate::ledger::RunStatus;
+use crate::ledger::{RunRow, RunStatus};
+
+/// A run with its level names in the plan's spelling.
+pub(super) struct Candidate<'a> {
+    pub(super) run: &'a RunRow,
+    pub(super) names: Vec<String>,
+}
 
 /// Where one run is.
 #[derive(Debug, Clone, PartialEq, Eq)]

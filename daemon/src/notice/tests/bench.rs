@@ -9,8 +9,8 @@ use std::path::Path;
 use jiff::civil::date;
 use restudy_config::{Config, Disk, Plan};
 
-use crate::analyse::Worked;
 use crate::analyse::study::work_out;
+use crate::analyse::worked::Worked;
 use crate::evidence::{Evidence, Factor, Feature, Run};
 use crate::ledger::{Earlier, RoundRow, RoundState, StudyRow};
 use crate::record::{Counts, Measured};

@@ -7,7 +7,7 @@ use tempfile::TempDir;
 use super::super::{draft, message_id, owed};
 use super::bench::{Reads, config, halden, reads, revised, round, rows};
 use super::{good, shifted};
-use crate::analyse::Worked;
+use crate::analyse::worked::Worked;
 use crate::ledger::{Ledger, NewNotice};
 use crate::now::Now;
 

@@ -5,8 +5,8 @@ use std::collections::BTreeMap;
 use restudy_config::{Appraisers, Characteristic, FactorLevels, Plan};
 use restudy_engine::{Interaction, Judge, Limits, OneSided, Standing};
 
-use crate::analyse::Worked;
 use crate::analyse::study::work_out;
+use crate::analyse::worked::Worked;
 use crate::evidence::{Evidence, Factor, Feature, Run};
 use crate::ledger::{Earlier, RoundRow, RoundState, StudyRow};
 use crate::record::{Counts, Measured, Source};

@@ -1,0 +1,164 @@
+//! The readings of all files, sorted by characteristic.
+
+use std::collections::BTreeMap;
+
+use restudy_parsers::{Parsed, fold};
+
+use crate::natural;
+use crate::record::{Measured, Source};
+
+pub(super) struct File {
+    pub(super) shown: String,
+    pub(super) sha256: String,
+    pub(super) parsed: Parsed,
+}
+
+/// All readings of one characteristic, over all files.
+#[derive(Default)]
+pub(super) struct Gathered {
+    pub(super) label: String,
+    pub(super) unit: Option<String>,
+    pub(super) nominal: Option<f64>,
+    pub(super) lower: Option<f64>,
+    pub(super) upper: Option<f64>,
+    /// Labels (part, appraiser, further factors) and value.
+    pub(super) rows: Vec<(Vec<String>, f64)>,
+    seen: BTreeMap<String, f64>,
+    pub(super) fault: Option<String>,
+}
+
+/// The readings of all files.
+pub(super) struct Material {
+    pub(super) factors: Vec<String>,
+    pub(super) characteristics: Vec<Gathered>,
+    pub(super) measured: Option<Measured>,
+    pub(super) same: BTreeMap<String, Vec<String>>,
+    pub(super) source: Vec<Source>,
+}
+
+pub(super) fn gather(files: &[File]) -> Material {
+    let runs = || files.iter().flat_map(|f| &f.parsed.runs);
+    let has_appraiser = runs().any(|r| r.appraiser.is_some());
+    let mut further: Vec<String> = runs().flat_map(|r| r.factors.keys().cloned()).collect();
+    further.sort();
+    further.dedup();
+    let mut factors = vec!["part".to_owned()];
+    factors.extend(has_appraiser.then(|| "appraiser".to_owned()));
+    factors.extend(further.iter().cloned());
+
+    let mut characteristics: Vec<Gathered> = Vec::new();
+    let mut index: BTreeMap<String, usize> = BTreeMap::new();
+    for file in files {
+        for reading in &file.parsed.readings {
+            let run = &file.parsed.runs[reading.run];
+            let at = *index
+                .entry(fold(&reading.characteristic))
+                .or_insert_with(|| {
+                    characteristics.push(Gathered {
+                        label: reading.characteristic.clone(),
+                        unit: reading.unit.clone(),
+                        nominal: reading.nominal,
+                        lower: reading.lower,
+                        upper: reading.upper,
+                        ..Gathered::default()
+                    });
+                    characteristics.len() - 1
+                });
+            let gathered = &mut characteristics[at];
+            let mut labels = vec![run.part.clone()];
+            if has_appraiser {
+                labels.push(run.appraiser.clone().unwrap_or_default());
+            }
+            labels.extend(
+                further
+                    .iter()
+                    .map(|f| run.factors.get(f).cloned().unwrap_or_default()),
+            );
+            gathered.add(labels, run.trial.as_deref(), run.taken, reading);
+        }
+    }
+    let stamps = || runs().filter_map(|r| r.taken);
+    let mut same: BTreeMap<String, Vec<String>> = BTreeMap::new();
+    for (name, value) in runs().flat_map(|r| &r.same) {
+        let values = same.entry(name.clone()).or_default();
+        if !values.iter().any(|v| fold(v) == fold(value)) {
+            values.push(value.clone());
+        }
+    }
+    Material {
+        factors,
+        characteristics,
+        measured: stamps()
+            .min()
+            .zip(stamps().max())
+            .map(|(first, last)| Measured { first, last }),
+        same,
+        source: files
+            .iter()
+            .map(|f| Source {
+                export: f.shown.clone(),
+                sha256: f.sha256.clone(),
+            })
+            .collect(),
+    }
+}
+
+impl Gathered {
+    fn add(
+        &mut self,
+        labels: Vec<String>,
+        trial: Option<&str>,
+        taken: Option<jiff::civil::DateTime>,
+        reading: &restudy_parsers::Reading,
+    ) {
+        if self.unit != reading.unit {
+            self.fault.get_or_insert_with(|| {
+                let unit = |u: &Option<String>| u.clone().unwrap_or_else(|| "no unit".into());
+                format!(
+                    "readings come in {} and in {}",
+                    unit(&self.unit),
+                    unit(&reading.unit)
+                )
+            });
+        }
+        if (self.lower, self.upper) != (reading.lower, reading.upper) {
+            self.fault.get_or_insert_with(|| {
+                format!(
+                    "the tolerance limits differ between readings ({})",
+                    reading.origin
+                )
+            });
+        }
+        if trial.is_some() || taken.is_some() {
+            let folded: Vec<String> = labels.iter().map(|l| fold(l)).collect();
+            let key = format!("{folded:?}{:?}{taken:?}", trial.map(fold));
+            match self.seen.insert(key, reading.value) {
+                Some(value) if value == reading.value => return,
+                Some(value) => {
+                    let who = labels.join(" ");
+                    let trial = trial.map(|t| format!(" trial {t}")).unwrap_or_default();
+                    self.fault.get_or_insert_with(|| {
+                        format!(
+                            "{who}{trial} is given twice, as {value} and as {}",
+                            reading.value
+                        )
+                    });
+                }
+                None => {}
+            }
+        }
+        self.rows.push((labels, reading.value));
+    }
+}
+
+/// Folded level names in natural order.
+pub(super) fn levels(gathered: &Gathered, factor: usize) -> Vec<String> {
+    let mut names: Vec<String> = gathered
+        .rows
+        .iter()
+        .map(|(labels, _)| fold(&labels[factor]))
+        .collect();
+    names.sort_by(|a, b| natural::compare(a, b));
+    names.dedup();
+    names
+}
