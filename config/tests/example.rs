@@ -105,7 +105,8 @@ fn the_rule_of_a_table() {
         taken: Some(Taken {
             role: at(3, 1),
             format: Some("%d.%m.%Y %H:%M".to_owned()),
-            zone: Some("Europe/Oslo".to_owned()),
+            written_in: None,
+            shown_in: Some("Europe/Oslo".to_owned()),
         }),
         round: None,
         characteristic: Some(column("Feature")),
@@ -156,7 +157,8 @@ fn the_rule_of_an_xml_export() {
         taken: Some(Taken {
             role: xml("../@time"),
             format: None,
-            zone: Some("UTC".to_owned()),
+            written_in: Some("UTC".to_owned()),
+            shown_in: Some("Europe/Oslo".to_owned()),
         }),
         round: None,
         characteristic: Some(xml("@name")),

@@ -48,7 +48,7 @@ pub struct Factor {
     pub name: String,
     /// What the plant calls it.
     pub word: String,
-    /// In the plan's order, or in natural order where the plan only counts them.
+    /// Those that were measured, in the plan's order, or in natural order where the plan only counts them.
     pub levels: Vec<String>,
 }
 
@@ -127,7 +127,7 @@ impl Evidence {
             });
         }
         for row in rows.iter().filter(|r| r.place.status != RunStatus::Used) {
-            for name in &row.holds {
+            for name in row.holds.keys() {
                 let Some(feature) = features.get_mut(name) else {
                     continue;
                 };
@@ -157,6 +157,12 @@ impl Evidence {
                 .into_iter()
                 .map(|(export, reason)| format!("{export}: {reason}")),
         );
+        let superseded: usize = features.iter().map(|f| f.counts.superseded).sum();
+        if superseded > 0 {
+            not_used.push(format!(
+                "{superseded} readings: superseded by later exports of the same runs"
+            ));
+        }
         Ok(Self {
             instruments: distinct(seated.iter().map(|s| s.0.facts.instrument.as_str())),
             same: same(&seated),
@@ -205,7 +211,16 @@ fn factors(frame: &Frame, seated: &[(&RunRow, Vec<String>, usize)]) -> Vec<Facto
         .enumerate()
         .map(|(f, factor)| {
             let levels = match &factor.levels {
-                FactorLevels::Named(names) => names.iter().map(|l| l.name.clone()).collect(),
+                FactorLevels::Named(names) => {
+                    let seen: BTreeSet<&String> =
+                        seated.iter().map(|(_, names, _)| &names[f]).collect();
+                    names
+                        .iter()
+                        .map(|l| &l.name)
+                        .filter(|n| seen.contains(n))
+                        .cloned()
+                        .collect()
+                }
                 FactorLevels::Count(_) => {
                     let mut seen = BTreeMap::new();
                     for (_, names, _) in seated {

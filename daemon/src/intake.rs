@@ -11,11 +11,17 @@
 pub mod child;
 pub mod file;
 pub mod merge;
+pub mod plausible;
 pub mod request;
 pub mod workbook;
 
-use std::collections::HashMap;
+#[cfg(test)]
+mod tests;
+
+use std::collections::{HashMap, HashSet};
+use std::ffi::OsStr;
 use std::os::unix::ffi::OsStrExt as _;
+use std::path::Path;
 use std::sync::Arc;
 use std::time::{Duration, Instant};
 
@@ -23,12 +29,15 @@ use restudy_config::{Config, Instrument, Plan};
 use restudy_parsers::{Export, Parsed, Reader, Refused};
 use sha2::{Digest as _, Sha256};
 
+use crate::causes::chain;
 use crate::ledger::{
     Digest, ExportState, LedgerError, NewExport, PackedExport, SharedLedger, Stat, Write,
 };
 use crate::now::Now;
+use crate::record::hex;
 use crate::settle::Settler;
-use crate::watch::walk::{Found, Unreadable, walk};
+use crate::watch::walk::{Found, Unreadable, shown, walk};
+use merge::Before;
 use request::Ask;
 use workbook::Workbooks;
 
@@ -57,8 +66,9 @@ struct Known {
     stat: Stat,
     export: Option<i64>,
     attempts: u32,
-    /// Read by a rule that has changed since, with something refused or set aside: worth another reading.
+    /// Read by a rule, for a plan or with a list that has changed since: worth another reading.
     stale: bool,
+    gone: bool,
 }
 
 /// What a pass did.
@@ -70,6 +80,8 @@ pub struct Looked {
     pub next: Duration,
     /// Folders that could not be looked at.
     pub unreadable: Vec<Unreadable>,
+    /// Files that have not settled yet.
+    pub settling: bool,
 }
 
 /// Why an instrument's rule cannot be used.
@@ -87,6 +99,8 @@ enum Content<'a> {
     /// Its reader died; another try is due.
     Struck { attempts: u32 },
     New {
+        before: Before,
+        mark: String,
         sha256: Digest,
         raw: Option<PackedExport>,
         plan: Option<&'a Plan>,
@@ -125,12 +139,16 @@ impl Intake {
         let own = &config.instruments[self.instrument];
         self.learn(own)?;
         let (found, unreadable) = look_through(own);
+        let seen: HashSet<Vec<u8>> = found.iter().map(|f| bytes_of(&f.path)).collect();
         let mut ready: Vec<Found> = found
             .into_iter()
             .filter(|file| self.worth_reading(file, now))
             .collect();
         self.settler.keep_only_seen_at(now.uptime);
         ready.sort_by_key(|f| (f.stat.mtime, f.path.clone()));
+        if unreadable.is_empty() {
+            self.mark_gone(own, &seen)?;
+        }
 
         let mut recorded = 0;
         let mut fault = false;
@@ -140,7 +158,7 @@ impl Intake {
             let started = Instant::now();
             while batch.len() < BATCH_FILES && started.elapsed() < BATCH_TIME && !stop() {
                 let Some(file) = ready.next() else { break };
-                match self.prepare(own, &config.plans, file) {
+                match self.prepare(own, &config, file, now) {
                     Ok(Some(prepared)) => batch.push(prepared),
                     Ok(None) => {}
                     Err(sentence) => {
@@ -163,6 +181,7 @@ impl Intake {
             recorded,
             next,
             unreadable,
+            settling: due.is_some(),
         })
     }
 
@@ -177,23 +196,48 @@ impl Intake {
                 .export
                 .map(|e| ledger.read().dealt_with(e))
                 .transpose()?;
-            let stale = dealt.is_some_and(|d| d.rule_mark != own.rule_mark && !d.clean);
-            known.insert(
-                row.path,
-                Known {
-                    stat: row.stat,
-                    export: row.export,
-                    attempts: row.attempts,
-                    stale,
-                },
-            );
+            let shown = shown_of(own, &row.path);
+            let mark = mark(own, plan_of(&self.config.plans, &own.name, &shown));
+            let stale = dealt.is_some_and(|d| d.mark != mark && !d.closed);
+            let known_as = Known {
+                stat: row.stat,
+                export: row.export,
+                attempts: row.attempts,
+                stale,
+                gone: row.gone,
+            };
+            known.insert(row.path, known_as);
         }
         self.known = Some(known);
         Ok(())
     }
 
+    /// Paths that a full look no longer finds are not shown any more, until they come back.
+    fn mark_gone(&mut self, own: &Instrument, seen: &HashSet<Vec<u8>>) -> Result<(), LedgerError> {
+        let known = self.known.get_or_insert_default();
+        let changed: Vec<(Vec<u8>, bool)> = known
+            .iter()
+            .filter(|(path, known)| seen.contains(*path) == known.gone)
+            .map(|(path, known)| (path.clone(), !known.gone))
+            .collect();
+        if changed.is_empty() {
+            return Ok(());
+        }
+        self.ledger.lock().write(|w| {
+            changed
+                .iter()
+                .try_for_each(|(path, gone)| w.mark_gone(&own.name, path, *gone))
+        })?;
+        for (path, gone) in changed {
+            if let Some(known) = known.get_mut(&path) {
+                known.gone = gone;
+            }
+        }
+        Ok(())
+    }
+
     fn worth_reading(&mut self, file: &Found, now: Now) -> bool {
-        let path = file.path.as_os_str().as_bytes();
+        let path = &bytes_of(&file.path);
         let known = self.known.as_ref().and_then(|k| k.get(path));
         let dealt_with =
             known.is_some_and(|k| k.stat == file.stat && k.export.is_some() && !k.stale);
@@ -204,33 +248,36 @@ impl Intake {
     fn prepare<'a>(
         &mut self,
         own: &Instrument,
-        plans: &'a [Plan],
+        config: &'a Config,
         found: Found,
+        now: Now,
     ) -> Result<Option<Prepared<'a>>, String> {
-        let key = found.path.as_os_str().as_bytes().to_vec();
+        let key = bytes_of(&found.path);
         self.settler.forget(&key);
         let bound = own.rule.bounds.file_bytes;
         let bytes = match file::read_still(&found.path, &found.stat, bound) {
             file::Content::Bytes(bytes) => Ok(bytes),
             file::Content::TooLarge => Err(file::too_large(found.stat.size, bound)),
             file::Content::Changed => return Ok(None),
+            file::Content::Unreadable(error)
+                if error.kind() == std::io::ErrorKind::PermissionDenied =>
+            {
+                Err(file::forbidden())
+            }
             file::Content::Unreadable(error) => {
                 tracing::warn!(instrument = own.name, export = found.shown, %error, "export cannot be read yet");
                 return Ok(None);
             }
         };
-        let plan = plans.iter().find(|p| {
-            p.instruments.contains(&own.name)
-                && p.only
-                    .as_ref()
-                    .is_none_or(|only| only.is_match(&found.shown))
-        });
+        let plan = plan_of(&config.plans, &own.name, &found.shown);
+        let mark = mark(own, plan);
         let known = self.known.as_ref().and_then(|k| k.get(&key)).copied();
-        let (sha256, raw, outcome) = match bytes {
-            Err(refused) => ([0; 32], None, Err(refused)),
+        let (before, sha256, raw, outcome) = match bytes {
+            Err(refused) => (Before::Nothing, [0; 32], None, Err(refused)),
             Ok(bytes) => {
                 let sha256: Digest = Sha256::digest(&bytes).into();
-                if let Some(export) = self.same_content(own, known, &sha256)? {
+                let before = self.before(known, &sha256, &mark)?;
+                if let Err(export) = before {
                     return Ok(Some(Prepared {
                         found,
                         content: Content::Touched { export },
@@ -240,7 +287,13 @@ impl Intake {
                     .filter(|k| k.stat == found.stat)
                     .map_or(0, |k| k.attempts);
                 let outcome = match self.parse(own, &found.shown, &bytes) {
-                    Parse::Done(outcome) => outcome,
+                    Parse::Done(outcome) => match plan {
+                        Some(plan) => {
+                            let latest = plausible::latest(now, &config.site.zone);
+                            outcome.map(|parsed| plausible::sift(parsed, plan, latest))
+                        }
+                        None => outcome,
+                    },
                     Parse::Died(_) if attempts + 1 < STRIKES => {
                         let content = Content::Struck {
                             attempts: attempts + 1,
@@ -252,12 +305,14 @@ impl Intake {
                 };
                 let raw = plan.map(|_| PackedExport::new(&bytes)).transpose();
                 let raw = raw.map_err(|e| format!("`{}` could not be packed: {e}", found.shown))?;
-                (sha256, raw, outcome)
+                (before.unwrap_or(Before::Nothing), sha256, raw, outcome)
             }
         };
         Ok(Some(Prepared {
             found,
             content: Content::New {
+                before,
+                mark,
                 sha256,
                 raw,
                 plan,
@@ -266,26 +321,27 @@ impl Intake {
         }))
     }
 
-    /// The export that this path already is, when its bytes and the rule are the same.
-    fn same_content(
+    /// What this path brought before; `Err` with the export when there is nothing new to read.
+    fn before(
         &self,
-        own: &Instrument,
         known: Option<Known>,
         sha256: &Digest,
-    ) -> Result<Option<i64>, String> {
+        mark: &str,
+    ) -> Result<Result<Before, i64>, String> {
         let Some(export) = known.and_then(|k| k.export) else {
-            return Ok(None);
+            return Ok(Ok(Before::Nothing));
         };
         let dealt = self
             .ledger
             .lock()
             .read()
             .dealt_with(export)
-            .map_err(|e| e.to_string())?;
-        Ok(
-            (dealt.sha256 == *sha256 && (dealt.rule_mark == own.rule_mark || dealt.clean))
-                .then_some(export),
-        )
+            .map_err(|e| chain(&e))?;
+        Ok(match dealt.sha256 == *sha256 {
+            true if dealt.mark == mark || dealt.closed => Err(export),
+            true => Ok(Before::SameBytes(export)),
+            false => Ok(Before::OtherBytes(export)),
+        })
     }
 
     fn parse(&mut self, own: &Instrument, shown: &str, bytes: &[u8]) -> Parse {
@@ -313,28 +369,76 @@ impl Intake {
         if batch.is_empty() {
             return Ok(0);
         }
-        let dealt: Vec<(Option<i64>, u32)> = self.ledger.lock().write(|w| {
+        let together: Result<Vec<_>, LedgerError> = self.ledger.lock().write(|w| {
             batch
                 .iter()
                 .map(|prepared| record_one(w, own, prepared, now))
-                .collect::<Result<_, LedgerError>>()
-        })?;
+                .collect()
+        });
+        match together {
+            Ok(dealt) => {
+                for (prepared, dealt) in batch.iter().zip(dealt) {
+                    self.note(own, prepared, dealt);
+                }
+                Ok(batch.len())
+            }
+            Err(error) if batch.len() == 1 => Err(error),
+            Err(_) => self.record_one_by_one(own, &batch, now),
+        }
+    }
+
+    /// A file that cannot be recorded costs only itself.
+    fn record_one_by_one(
+        &mut self,
+        own: &Instrument,
+        batch: &[Prepared<'_>],
+        now: Now,
+    ) -> Result<usize, LedgerError> {
         let mut recorded = 0;
-        for (prepared, (export, attempts)) in batch.iter().zip(dealt) {
-            let path = prepared.found.path.as_os_str().as_bytes().to_vec();
-            let known = Known {
-                stat: prepared.found.stat,
-                export,
-                attempts,
-                stale: false,
-            };
-            self.known.get_or_insert_default().insert(path, known);
-            if let Content::New { plan, outcome, .. } = &prepared.content {
-                recorded += 1;
-                say(own, &prepared.found.shown, *plan, outcome);
+        let mut failure = None;
+        for prepared in batch {
+            let alone = self
+                .ledger
+                .lock()
+                .write(|w| record_one(w, own, prepared, now));
+            match alone {
+                Ok(dealt) => {
+                    recorded += 1;
+                    self.note(own, prepared, dealt);
+                }
+                Err(error) => {
+                    let (instrument, export) = (own.name.as_str(), prepared.found.shown.as_str());
+                    tracing::error!(instrument, export, error = %chain(&error), "cannot be recorded");
+                    failure = Some(error);
+                }
             }
         }
-        Ok(recorded)
+        match failure {
+            Some(error) if recorded == 0 => Err(error),
+            _ => Ok(recorded),
+        }
+    }
+
+    fn note(
+        &mut self,
+        own: &Instrument,
+        prepared: &Prepared<'_>,
+        (export, attempts): (Option<i64>, u32),
+    ) {
+        let stat = prepared.found.stat;
+        let known = Known {
+            stat,
+            export,
+            attempts,
+            stale: false,
+            gone: false,
+        };
+        self.known
+            .get_or_insert_default()
+            .insert(bytes_of(&prepared.found.path), known);
+        if let Content::New { plan, outcome, .. } = &prepared.content {
+            say(own, &prepared.found.shown, *plan, outcome);
+        }
     }
 }
 
@@ -342,6 +446,42 @@ enum Parse {
     Done(Result<Parsed, Refused>),
     Died(String),
     Machine(String),
+}
+
+/// The first plan that takes an instrument's export of that path.
+#[must_use]
+pub fn plan_of<'a>(plans: &'a [Plan], instrument: &str, shown: &str) -> Option<&'a Plan> {
+    plans.iter().find(|plan| {
+        plan.instruments.iter().any(|i| i == instrument)
+            && plan.only.as_ref().is_none_or(|only| only.is_match(shown))
+    })
+}
+
+/// What an export's reading depends on beside its bytes: the rule, the plan that takes it, that plan's list.
+fn mark(own: &Instrument, plan: Option<&Plan>) -> String {
+    let mut digest = Sha256::new();
+    digest.update(&own.rule_mark);
+    if let Some(plan) = plan {
+        digest.update(format!("\0{}", plan.name));
+        for characteristic in plan.characteristics.iter().filter(|_| plan.whole_list) {
+            digest.update(format!("\0{}", characteristic.name));
+        }
+    }
+    hex(&digest.finalize()[..16])
+}
+
+fn bytes_of(path: &Path) -> Vec<u8> {
+    path.as_os_str().as_bytes().to_vec()
+}
+
+/// A recorded path as people and `path` roles see it.
+fn shown_of(own: &Instrument, path: &[u8]) -> String {
+    let path = Path::new(OsStr::from_bytes(path));
+    let root = own.folders.iter().find(|root| path.starts_with(root));
+    root.map_or_else(
+        || path.to_string_lossy().into_owned(),
+        |root| shown(root, path),
+    )
 }
 
 fn look_through(own: &Instrument) -> (Vec<Found>, Vec<Unreadable>) {
@@ -360,11 +500,13 @@ fn record_one(
     prepared: &Prepared<'_>,
     now: Now,
 ) -> Result<(Option<i64>, u32), LedgerError> {
-    let path = prepared.found.path.as_os_str().as_bytes();
+    let path = &bytes_of(&prepared.found.path);
     let (export, attempts) = match &prepared.content {
         Content::Touched { export } => (Some(*export), 0),
         Content::Struck { attempts } => (None, *attempts),
         Content::New {
+            before,
+            mark,
             sha256,
             raw,
             plan,
@@ -378,7 +520,7 @@ fn record_one(
                 path,
                 shown: &prepared.found.shown,
                 sha256,
-                rule_mark: &own.rule_mark,
+                mark,
                 arrived: now.utc,
                 plan: plan.map(|p| p.name.as_str()),
                 state: ExportState::Read,
@@ -386,7 +528,10 @@ fn record_one(
                 readings: 0,
                 unplanned: 0,
             };
-            (Some(merge::record(w, &mut new, *plan, outcome)?), 0)
+            (
+                Some(merge::record(w, &mut new, *plan, outcome, *before)?),
+                0,
+            )
         }
     };
     w.put_file(&own.name, path, &prepared.found.stat, export, attempts)?;
@@ -403,9 +548,9 @@ fn say(own: &Instrument, export: &str, plan: Option<&Plan>, outcome: &Result<Par
         Ok(parsed) => {
             let (runs, readings) = (parsed.runs.len(), parsed.readings.len());
             tracing::debug!(instrument, export, runs, readings, "export read");
-            for aside in &parsed.set_aside {
-                let hint = aside.hint.as_deref();
-                tracing::warn!(instrument, export, hint, "set aside: {}", aside.reason);
+            if let Some(first) = parsed.set_aside.first() {
+                let (hint, all) = (first.hint.as_deref(), parsed.set_aside.len());
+                tracing::warn!(instrument, export, hint, all, "set aside: {}", first.reason);
             }
         }
         Err(refused) => {

@@ -23,13 +23,13 @@ use std::time::Duration;
 
 use rusqlite::{Connection, OpenFlags, Transaction, TransactionBehavior};
 
-pub use account::{Accounting, RefusedExport, SetAsideRun};
+pub use account::{Accounting, RefusedExport, SetAsideRun, UnusedRun};
 pub use export::{DealtWith, Digest, ExportState, NewExport, PackedExport};
 pub use file::{FileRow, Stat};
 pub use outbox::{NewNotice, NoticeRow, OutboxRow, Owed, Tried};
 pub use readings::{Delivered, PackedReading};
 pub use round::{RoundRow, RoundState};
-pub use run::{Placement, RunFacts, RunRow, RunStatus, Tally};
+pub use run::{Holds, Placement, RunFacts, RunRow, RunStatus, Tally};
 pub use study::{Earlier, StudyRow};
 
 /// The schema this program writes.
@@ -78,11 +78,36 @@ pub enum LedgerError {
     #[error("there is no ledger at `{0}` yet: has `restudy serve` run with this configuration?")]
     Absent(PathBuf),
     /// The database said no.
-    #[error("the ledger could not be used")]
-    Database(#[from] rusqlite::Error),
+    #[error("the ledger could not be used: {}", in_words(.0))]
+    Database(rusqlite::Error),
     /// A row holds what no version of this program writes.
     #[error("the ledger holds an unreadable {0}")]
     Damaged(String),
+}
+
+impl From<rusqlite::Error> for LedgerError {
+    fn from(error: rusqlite::Error) -> Self {
+        Self::Database(error)
+    }
+}
+
+/// The database's refusal as a person would say it.
+fn in_words(error: &rusqlite::Error) -> String {
+    use rusqlite::ErrorCode;
+    let what = match error.sqlite_error_code() {
+        Some(ErrorCode::DiskFull) => "the disk is full",
+        Some(ErrorCode::SystemIoFailure) => "the disk refused to read or write (is it full?)",
+        Some(ErrorCode::ReadOnly) => "this user may not write it",
+        Some(ErrorCode::PermissionDenied | ErrorCode::CannotOpen) => {
+            "its file cannot be opened (is its folder there, and may this user use it?)"
+        }
+        Some(ErrorCode::NotADatabase | ErrorCode::DatabaseCorrupt) => {
+            "its file is damaged, or something else"
+        }
+        Some(ErrorCode::DatabaseBusy | ErrorCode::DatabaseLocked) => "another program holds it",
+        _ => return error.to_string(),
+    };
+    format!("{what} ({error})")
 }
 
 impl Ledger {

@@ -18,6 +18,7 @@ pub mod ledger;
 pub mod natural;
 pub mod notice;
 pub mod now;
+mod plain;
 pub mod record;
 pub mod report;
 pub mod rounds;

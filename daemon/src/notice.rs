@@ -12,6 +12,7 @@ mod cause;
 mod corrected;
 mod facts;
 mod html;
+mod judged;
 mod letter;
 mod mail;
 mod news;

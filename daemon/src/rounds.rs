@@ -44,8 +44,9 @@ enum Change {
         number: i64,
         revision: i64,
     },
-    SetAside {
+    NotUsed {
         who: String,
+        status: RunStatus,
         reason: String,
     },
 }
@@ -57,14 +58,18 @@ impl Rounds {
         Self { ledger, config }
     }
 
-    /// Brings every plan's rounds up to date; true when a round is owed an analysis.
+    /// Brings every plan's rounds up to date; true when a round is owed an analysis. Until every export at hand
+    /// has been read (`all_read`), no round is closed because its time is up.
     ///
     /// # Errors
     /// The ledger's refusal.
-    pub fn pass(&mut self, now: Now) -> Result<bool, LedgerError> {
+    pub fn pass(&mut self, now: Now, all_read: bool) -> Result<bool, LedgerError> {
         let mut owed = false;
         for plan in &self.config.plans {
-            let changes = self.ledger.lock().write(|w| reconcile(w, plan, now))?;
+            let changes = self
+                .ledger
+                .lock()
+                .write(|w| reconcile(w, plan, now, all_read))?;
             for change in &changes {
                 say(&plan.name, change);
             }
@@ -110,13 +115,29 @@ fn say(plan: &str, change: &Change) {
         } => {
             tracing::info!(plan, round, revision, "values of a closed round changed");
         }
-        Change::SetAside { who, reason } => {
+        Change::NotUsed {
+            who,
+            status: RunStatus::SetAside,
+            reason,
+        } => {
             tracing::warn!(plan, "run set aside: {who}: {reason}");
+        }
+        Change::NotUsed {
+            who,
+            status,
+            reason,
+        } => {
+            tracing::info!(plan, "run not used ({}): {who}: {reason}", status.as_str());
         }
     }
 }
 
-fn reconcile(w: &Write<'_>, plan: &Plan, now: Now) -> Result<Vec<Change>, LedgerError> {
+fn reconcile(
+    w: &Write<'_>,
+    plan: &Plan,
+    now: Now,
+    all_read: bool,
+) -> Result<Vec<Change>, LedgerError> {
     let mut changes = Vec::new();
     let rounds = w.read().rounds(&plan.name)?;
     for round in rounds.iter().filter(|r| r.state.closed()) {
@@ -131,6 +152,7 @@ fn reconcile(w: &Write<'_>, plan: &Plan, now: Now) -> Result<Vec<Change>, Ledger
         .iter()
         .filter(|r| r.state.closed())
         .map(|r| Closed {
+            id: r.id,
             label: r.label.clone(),
             through: r.through,
         })
@@ -143,8 +165,17 @@ fn reconcile(w: &Write<'_>, plan: &Plan, now: Now) -> Result<Vec<Change>, Ledger
     let opened = |label: Option<&str>| filling(label).and_then(|r| r.opened);
     let Assigned {
         rounds: laid,
+        late,
         elsewhere,
-    } = assign::assign(&frame, &closed, &runs, Clock { now: now.utc }, &opened);
+    } = assign::assign(
+        &frame,
+        &closed,
+        &runs,
+        Clock {
+            now: all_read.then_some(now.utc),
+        },
+        &opened,
+    );
 
     let mut next_number = rounds.iter().map(|r| r.number).max().unwrap_or(0) + 1;
     let mut kept: Vec<i64> = Vec::new();
@@ -173,6 +204,9 @@ fn reconcile(w: &Write<'_>, plan: &Plan, now: Now) -> Result<Vec<Change>, Ledger
         )?;
     }
     move_runs(w, &runs, &elsewhere, None, &mut changes)?;
+    for (round, seat) in late {
+        move_runs(w, &runs, &[seat], Some(round), &mut changes)?;
+    }
     for lost in rounds
         .iter()
         .filter(|r| !r.state.closed() && !kept.contains(&r.id))
@@ -255,9 +289,11 @@ fn move_runs(
             continue;
         }
         w.place_run(seat.run, &place)?;
-        if let (RunStatus::SetAside, Some(run), Some(reason)) = (place.status, run, place.reason) {
-            changes.push(Change::SetAside {
-                who: run.facts.who(),
+        if let (Some(run), Some(reason)) = (run, place.reason) {
+            let (who, status) = (run.facts.who(), place.status);
+            changes.push(Change::NotUsed {
+                who,
+                status,
                 reason,
             });
         }

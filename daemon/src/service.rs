@@ -7,6 +7,7 @@
 
 use std::path::PathBuf;
 use std::sync::Arc;
+use std::sync::atomic::{AtomicBool, Ordering};
 use std::sync::mpsc::{Receiver, RecvTimeoutError, Sender, channel};
 use std::thread;
 use std::time::{Duration, Instant};
@@ -82,17 +83,21 @@ pub fn run(config: Arc<Config>, stop: &Stop) -> Result<(), ServiceError> {
     let mail = Arc::new(tokio::sync::Notify::new());
     let (rounds_wake, rounds_waiting) = wake();
     stop.wakes(rounds_wake.clone());
+    let mut read = Vec::new();
     for (intake, folders) in intakes {
+        let its_read = Arc::new(AtomicBool::new(false));
+        read.push(Arc::clone(&its_read));
         let (look, looking) = wake();
         stop.wakes(look.clone());
         let watch = Watch::new(&folders, look);
         let (rounds, stop) = (rounds_wake.clone(), stop.clone());
         stage("intake", &ended, &mut stages, move || {
-            look_on(intake, watch, &looking, &rounds, &stop)
+            look_on(intake, watch, &looking, &rounds, &its_read, &stop)
         });
     }
     rounds_wake.now();
     let work = Work {
+        read: read.clone(),
         rounds: Rounds::new(ledger.clone(), Arc::clone(&config)),
         analyse: Analyse::new(ledger.clone(), Arc::clone(&config)),
         reporter: Reporter::new(ledger.clone(), Arc::clone(&config)),
@@ -189,7 +194,15 @@ fn lock(config: &Config) -> Result<std::fs::File, ServiceError> {
     Ok(file)
 }
 
-fn look_on(mut intake: Intake, mut watch: Watch, looking: &Waiting, rounds: &Wake, stop: &Stop) {
+/// Looks through an instrument's folders until the stop; `read` says whether all that lies there was read.
+fn look_on(
+    mut intake: Intake,
+    mut watch: Watch,
+    looking: &Waiting,
+    rounds: &Wake,
+    read: &AtomicBool,
+    stop: &Stop,
+) {
     let mut unreadable_before = Vec::new();
     while !stop.is_set() {
         let looked_at = Instant::now();
@@ -198,6 +211,10 @@ fn look_on(mut intake: Intake, mut watch: Watch, looking: &Waiting, rounds: &Wak
                 if looked.recorded > 0 {
                     rounds.now();
                 }
+                read.store(
+                    looked.unreadable.is_empty() && !looked.settling,
+                    Ordering::Release,
+                );
                 let mut unreadable = Vec::new();
                 for folder in looked.unreadable {
                     if !unreadable_before.contains(&folder.path) {
@@ -225,6 +242,7 @@ fn look_on(mut intake: Intake, mut watch: Watch, looking: &Waiting, rounds: &Wak
 }
 
 struct Work {
+    read: Vec<Arc<AtomicBool>>,
     rounds: Rounds,
     analyse: Analyse,
     reporter: Reporter,
@@ -248,7 +266,8 @@ impl Work {
     }
 
     fn pass(&mut self, now: Now) -> Result<(), Box<dyn std::error::Error>> {
-        self.rounds.pass(now)?;
+        let all_read = self.read.iter().all(|read| read.load(Ordering::Acquire));
+        self.rounds.pass(now, all_read)?;
         if self.analyse.pass(now)? {
             self.mail.notify_one();
         }

@@ -21,7 +21,7 @@ const NOT_APART: &str = "with one trial a part's spread and the gauge's cannot b
 const NO_REPEATS: &str = "the mean square within cells is zero, so the data set no limits";
 const GAUGE_ZERO: &str = "the gauge variance is zero";
 const REST_ZERO: &str =
-    "the variance that it is divided by has no estimate above zero, so the data set no limits";
+    "the rest of the variance has no estimate above zero, so the data set no limits";
 /// The handbooks' factor; √2 is 0.3 % larger.
 const NDC_FACTOR: f64 = 1.41;
 

@@ -7,10 +7,9 @@ use std::io::{BufReader, Cursor};
 
 use quick_xml::events::Event;
 use zip::ZipArchive;
-use zip::result::ZipError;
 
+use crate::damage::{NO_PASSWORD, damaged, of_zip};
 use crate::kind::Kind;
-use crate::names::shorten_to;
 use crate::parsed::Refused;
 use crate::rule::Bounds;
 
@@ -37,9 +36,7 @@ pub(crate) fn check(bytes: &[u8], kind: Kind, bounds: &Bounds) -> Result<(), Ref
     let mut inflated = 0_u64;
     let mut names = Vec::with_capacity(zip.len());
     for index in 0..zip.len() {
-        let part = zip
-            .by_index_raw(index)
-            .map_err(|why| damaged(&in_words(&why)))?;
+        let part = zip.by_index_raw(index).map_err(|why| of_zip(&why))?;
         inflated = inflated.saturating_add(part.size());
         names.push(
             String::from_utf8_lossy(part.name_raw())
@@ -61,7 +58,8 @@ pub(crate) fn check(bytes: &[u8], kind: Kind, bounds: &Bounds) -> Result<(), Ref
         return Err(not_yet("an OpenDocument file"));
     }
     if !has("_rels/.rels") {
-        return Err(Refused::new("this is a zip archive that holds no workbook"));
+        return Err(Refused::new("this is a zip archive that holds no workbook")
+            .hint("have it saved as xlsx, or leave such files out with `files`"));
     }
     let tables: Vec<usize> = (0..names.len())
         .filter(|&index| names[index].ends_with("sharedstrings.xml"))
@@ -75,9 +73,7 @@ pub(crate) fn check(bytes: &[u8], kind: Kind, bounds: &Bounds) -> Result<(), Ref
 /// The count that a string table states is taken as an allocation by its reader: it must be one that
 /// the part can hold.
 fn check_string_count(zip: &mut ZipArchive<Cursor<&[u8]>>, index: usize) -> Result<(), Refused> {
-    let part = zip
-        .by_index(index)
-        .map_err(|why| damaged(&in_words(&why)))?;
+    let part = zip.by_index(index).map_err(|why| of_zip(&why))?;
     let size = part.size();
     let mut xml = quick_xml::Reader::from_reader(BufReader::new(part));
     let mut buffer = Vec::new();
@@ -99,7 +95,7 @@ fn check_string_count(zip: &mut ZipArchive<Cursor<&[u8]>>, index: usize) -> Resu
             }
             Ok(Event::Eof) => return Ok(()),
             Ok(_) => {}
-            Err(why) => return Err(damaged(&why.to_string())),
+            Err(_) => return Err(damaged("its table of texts is no well-formed XML")),
         }
     }
 }
@@ -112,7 +108,7 @@ fn compound(bytes: &[u8]) -> Refused {
     if bytes.windows(name.len()).any(|window| window == name) {
         return Refused {
             sentence: "the workbook is protected by a password".to_owned(),
-            hint: Some("have it exported without a password".to_owned()),
+            hint: Some(NO_PASSWORD.to_owned()),
             perhaps_unfinished: false,
         };
     }
@@ -124,22 +120,5 @@ fn not_yet(what: &str) -> Refused {
         sentence: format!("this is {what}, which is not yet read"),
         hint: Some("have it saved as xlsx".to_owned()),
         perhaps_unfinished: false,
-    }
-}
-
-/// A workbook whose table of parts is whole but whose inside is not.
-pub(crate) fn damaged(why: &str) -> Refused {
-    Refused {
-        sentence: format!("the workbook is damaged: {}", shorten_to(why, 160)),
-        hint: Some("export it again".to_owned()),
-        perhaps_unfinished: false,
-    }
-}
-
-fn in_words(why: &ZipError) -> String {
-    match why {
-        ZipError::Io(why) => why.to_string(),
-        ZipError::InvalidArchive(why) => why.to_string(),
-        other => other.to_string(),
     }
 }

@@ -7,6 +7,7 @@ use std::borrow::Cow;
 
 use encoding_rs::{Encoding, UTF_8, UTF_16BE, UTF_16LE};
 
+use crate::kind::{is_binary, neither};
 use crate::parsed::Refused;
 
 /// The end-of-file mark that old exporters append.
@@ -22,7 +23,11 @@ pub(crate) fn decode<'a>(
     declared: Option<&'static Encoding>,
     named: Option<&'static Encoding>,
 ) -> Result<Cow<'a, str>, Refused> {
-    let text = match Encoding::for_bom(bytes) {
+    let marked = Encoding::for_bom(bytes);
+    if marked.is_none() && is_binary(bytes) {
+        return Err(neither(bytes));
+    }
+    let text = match marked {
         Some((encoding, mark)) => with(encoding, &bytes[mark..])?,
         None => match declared.or(named.filter(|encoding| !encoding.is_ascii_compatible())) {
             Some(encoding) => with(encoding, bytes)?,
@@ -72,7 +77,7 @@ fn with<'a>(encoding: &'static Encoding, bytes: &'a [u8]) -> Result<Cow<'a, str>
                     encoding.name()
                 ),
                 hint: Some(
-                    "name the encoding that the instrument writes with `encoding`".to_owned(),
+                    "correct `encoding`: it is what the instrument writes its text in".to_owned(),
                 ),
                 perhaps_unfinished: odd,
             }
@@ -125,10 +130,10 @@ fn checked(text: Cow<'_, str>) -> Result<Cow<'_, str>, Refused> {
                 1 + text[..at].matches('\n').count(),
                 u32::from(found)
             ),
-            hint: (found == '\0').then(|| {
-                "if this is UTF-16 without a byte-order mark, set `encoding = \"utf-16le\"`"
-                    .to_owned()
-            }),
+            hint: Some(match found {
+                '\0' => "if this is UTF-16 without a byte-order mark, set `encoding = \"utf-16le\"`",
+                _ => "have it exported again; text holds no control characters but tabs and line ends",
+            }.to_owned()),
             perhaps_unfinished: false,
         }),
         None => Ok(match text {

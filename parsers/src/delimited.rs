@@ -62,7 +62,7 @@ pub(crate) fn grid(text: &str, delimiter: Delimiter, bounds: &Bounds) -> Result<
     let mut cells = 0;
     while reader
         .read_record(&mut record)
-        .map_err(|why| unreadable(&why))?
+        .map_err(|_| unreadable(lines.line))?
     {
         let start = record.position().map_or(0, csv::Position::byte);
         let line = lines.advance_to(start);
@@ -143,8 +143,11 @@ fn within_columns(text: &str, mark: u8, bounds: &Bounds) -> Result<(), Refused> 
     Ok(())
 }
 
-fn unreadable(why: &csv::Error) -> Refused {
-    Refused::new(format!("the text cannot be split into fields: {why}"))
+fn unreadable(line: u32) -> Refused {
+    Refused::new(format!(
+        "below line {}: the text cannot be split into fields",
+        line.saturating_add(1)
+    ))
 }
 
 /// Counts line ends (CR LF, LF, lone CR) as far as records have been read.

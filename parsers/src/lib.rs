@@ -17,6 +17,7 @@
 //! in [`SetAside::readings`].
 
 mod container;
+mod damage;
 mod decode;
 mod delimited;
 mod fault;
@@ -27,6 +28,7 @@ mod moment;
 mod names;
 mod no_value;
 mod number;
+mod one_field;
 mod parsed;
 mod plain;
 mod reader;

@@ -1,4 +1,11 @@
-//! When a run was measured: a text or a date cell to the instrument's civil time.
+//! When a run was measured: a text or a date cell to civil time.
+//!
+//! Model: a stamp with an offset is a moment; one without, a date cell too, is what the clock of
+//! [`Taken::written_in`](crate::Taken) showed. Both are shown by the clock of `shown_in`. A day
+//! without a time of day is that day in every zone.
+//!
+//! A time that a clock shows twice (it was set back) is taken as the earlier one; a time that it
+//! never shows (it was set forward) as that much later. Source: RFC 5545, section 3.3.5.
 //!
 //! Invariant: a time lies in the years 1990 to 2100 and is rounded to the millisecond.
 
@@ -6,37 +13,52 @@ use jiff::Unit;
 use jiff::civil::{self, Time};
 use jiff::fmt::strtime;
 use jiff::fmt::temporal::{Pieces, PiecesOffset};
-use jiff::tz::{TimeZone, TimeZoneDatabase};
+use jiff::tz::{Offset, TimeZone, TimeZoneDatabase};
 
 use crate::fault::{Fault, shown};
 use crate::grid::{Content, Field};
 use crate::names::shorten;
+use crate::rule::Taken;
 
 const YEARS: std::ops::RangeInclusive<i16> = 1990..=2100;
 
-/// How time stamps are written.
+/// How time stamps are written, and by which clock they are shown.
 #[derive(Debug, Clone)]
 pub(crate) struct Clock {
     format: Option<String>,
-    zone: Option<TimeZone>,
+    written_in: Option<TimeZone>,
+    shown_in: Option<TimeZone>,
+}
+
+/// A stamp as it is written.
+struct Stamp {
+    day: civil::Date,
+    /// `None`: a day alone.
+    time: Option<Time>,
+    offset: Option<Offset>,
 }
 
 impl Clock {
     /// # Errors
-    /// The sentence that says which of both cannot be used. Zones are looked up in the tables that
-    /// are built in, so that the answer does not depend on the machine.
-    pub(crate) fn new(format: Option<&str>, zone: Option<&str>) -> Result<Self, String> {
-        let zone = match zone {
-            None => None,
-            Some(name) => Some(
-                TimeZoneDatabase::bundled()
-                    .get(name)
-                    .map_err(|_| format!("`{}` is no IANA time zone", shorten(name)))?,
-            ),
+    /// The sentence that says which zone cannot be used. Zones are looked up in the tables that are
+    /// built in, so that the answer does not depend on the machine.
+    pub(crate) fn new(taken: &Taken) -> Result<Self, String> {
+        let zone = |name: &Option<String>| match name {
+            None => Ok(None),
+            Some(name) => TimeZoneDatabase::bundled()
+                .get(name)
+                .map(Some)
+                .map_err(|_| format!("`{}` is no IANA time zone", shorten(name))),
         };
+        if taken.written_in.is_some() && taken.shown_in.is_none() {
+            return Err(
+                "a zone in which times are written, but none in which they are shown".into(),
+            );
+        }
         Ok(Self {
-            format: format.map(str::to_owned),
-            zone,
+            format: taken.format.clone(),
+            written_in: zone(&taken.written_in)?,
+            shown_in: zone(&taken.shown_in)?,
         })
     }
 
@@ -46,60 +68,106 @@ impl Clock {
         field: Field<'_>,
         text: Option<&str>,
     ) -> Result<civil::DateTime, Fault> {
-        let expected = match &self.format {
-            Some(format) => format!("a time as `{format}`"),
-            None => "a time as `2026-06-02T14:20:05`".to_owned(),
-        };
+        let expected = self.expected();
         let fault =
             |wrong: String| Fault::new(field.place, shown(field.content), expected.clone(), wrong);
-        let read = match (text, field.content) {
-            (None, Content::Date(date)) => *date,
-            (Some(text), _) => self.parse(text).map_err(|why| {
-                let fault = fault(format!("`{}` is not {expected}: {why}", shorten(text)));
-                match field.content {
-                    Content::Number(_) => fault.hint("have the cell formatted as a date"),
-                    _ => fault,
-                }
+        let stamp = match (text, field.content) {
+            (None, Content::Date(date)) => Stamp {
+                day: date.date(),
+                time: Some(date.time()),
+                offset: None,
+            },
+            (Some(text), content) => self.parse(text).ok_or_else(|| {
+                fault(format!("`{}` is not {expected}", shorten(text))).hint(match content {
+                    Content::Number(_) => "have the cell formatted as a date",
+                    _ if self.format.is_some() => {
+                        "correct `format`, or cut the time out of the text with `find`"
+                    }
+                    _ => "have it written so, or say how it is written with `format`",
+                })
             })?,
-            (None, _) => return Err(fault(format!("blank, where {expected} should stand"))),
+            (None, _) => {
+                return Err(fault(format!("blank, where {expected} should stand"))
+                    .hint("have the instrument write the time, or correct where `taken` is read"));
+            }
         };
-        let year = read.year();
-        if !YEARS.contains(&year) {
-            return Err(
-                fault(format!("`{read}` lies outside the years 1990 to 2100"))
-                    .hint("`%y` reads a year of two digits, `%Y` one of four"),
-            );
-        }
-        read.round(Unit::Millisecond)
-            .map_err(|why| fault(format!("`{read}`: {why}")))
+        let outside = |time: &dyn std::fmt::Display| {
+            fault(format!("`{time}` lies outside the years 1990 to 2100")).hint(match self.format {
+                Some(_) => "`%y` reads a year of two digits, `%Y` one of four",
+                None => "is the instrument's clock set?",
+            })
+        };
+        let written = stamp
+            .day
+            .to_datetime(stamp.time.unwrap_or(Time::midnight()));
+        self.show(&stamp, written)
+            .and_then(|time| time.round(Unit::Millisecond).ok())
+            .filter(|time| YEARS.contains(&time.year()))
+            .ok_or_else(|| outside(&written))
     }
 
-    fn parse(&self, text: &str) -> Result<civil::DateTime, jiff::Error> {
+    /// `None` beyond the calendar.
+    fn show(&self, stamp: &Stamp, written: civil::DateTime) -> Option<civil::DateTime> {
+        let Some(shown_in) = &self.shown_in else {
+            return Some(written);
+        };
+        let moment = match (stamp.offset, &self.written_in) {
+            (Some(offset), _) => offset.to_timestamp(written).ok()?,
+            (None, Some(zone)) if stamp.time.is_some() => zone.to_timestamp(written).ok()?,
+            (None, _) => return Some(written),
+        };
+        Some(shown_in.to_datetime(moment))
+    }
+
+    fn parse(&self, text: &str) -> Option<Stamp> {
         match &self.format {
             Some(format) => {
-                let time = strtime::parse(format, text)?;
-                match (&self.zone, time.offset()) {
-                    (Some(zone), Some(_)) => Ok(zone.to_datetime(time.to_timestamp()?)),
-                    _ if time.hour().is_none() => Ok(time.to_date()?.at(0, 0, 0, 0)),
-                    _ => time.to_datetime(),
+                let read = strtime::parse(format, text).ok()?;
+                if let Some(moment) = read.timestamp() {
+                    let written = Offset::UTC.to_datetime(moment);
+                    return Some(Stamp {
+                        day: written.date(),
+                        time: Some(written.time()),
+                        offset: Some(Offset::UTC),
+                    });
                 }
+                let time = match read.hour() {
+                    Some(_) => Some(read.to_time().ok()?),
+                    None => None,
+                };
+                Some(Stamp {
+                    day: read.to_date().ok()?,
+                    time,
+                    offset: read.offset().filter(|_| time.is_some()),
+                })
             }
             None => {
-                let pieces = Pieces::parse(text)?;
-                let written = pieces
-                    .date()
-                    .to_datetime(pieces.time().unwrap_or(Time::midnight()));
+                let pieces = Pieces::parse(text).ok()?;
                 let offset = pieces.offset().map(|offset| match offset {
                     PiecesOffset::Numeric(numeric) => numeric.offset(),
-                    _ => jiff::tz::Offset::UTC,
+                    _ => Offset::UTC,
                 });
-                match (&self.zone, offset) {
-                    (Some(zone), Some(offset)) => {
-                        Ok(zone.to_datetime(offset.to_timestamp(written)?))
-                    }
-                    _ => Ok(written),
-                }
+                Some(Stamp {
+                    day: pieces.date(),
+                    time: pieces.time(),
+                    offset,
+                })
             }
+        }
+    }
+
+    /// What should stand there, with a time written so.
+    fn expected(&self) -> String {
+        let Some(format) = &self.format else {
+            return "a time as `2026-06-02T14:20:05`".to_owned();
+        };
+        let sample = civil::date(2026, 6, 2).at(14, 20, 5, 0);
+        let written = sample
+            .to_zoned_datetime(TimeZone::UTC)
+            .and_then(|sample| strtime::format(format, &sample));
+        match written {
+            Ok(written) => format!("a time as `{format}`, such as `{written}`"),
+            Err(_) => format!("a time as `{format}`"),
         }
     }
 }
@@ -108,14 +176,31 @@ impl Clock {
 mod tests {
     use super::*;
     use crate::grid::Place;
+    use crate::rule::{Cell, Role};
 
-    fn read(format: Option<&str>, zone: Option<&str>, text: &str) -> String {
+    fn clock(format: Option<&str>, written_in: Option<&str>, shown_in: Option<&str>) -> Clock {
+        Clock::new(&taken(format, written_in, shown_in)).unwrap()
+    }
+
+    fn taken(format: Option<&str>, written_in: Option<&str>, shown_in: Option<&str>) -> Taken {
+        Taken {
+            role: Role::plain(Cell::Column("taken".to_owned())),
+            format: format.map(str::to_owned),
+            written_in: written_in.map(str::to_owned),
+            shown_in: shown_in.map(str::to_owned),
+        }
+    }
+
+    fn read(format: Option<&str>, shown_in: Option<&str>, text: &str) -> String {
+        read_by(&clock(format, None, shown_in), text)
+    }
+
+    fn read_by(clock: &Clock, text: &str) -> String {
         let content = Content::Text(text.into());
         let field = Field {
             place: Place::Field { line: 3, field: 2 },
             content: &content,
         };
-        let clock = Clock::new(format, zone).unwrap();
         match clock.read(field, Some(text)) {
             Ok(time) => time.to_string(),
             Err(fault) => fault.sentence(),
@@ -187,13 +272,77 @@ mod tests {
         );
     }
 
+    /// Oslo is two hours ahead of UTC in summer, Tokyo nine all the year.
     #[test]
-    fn other_texts_are_named() {
-        let answer = read(None, None, "2 June 2026");
-        assert!(
-            answer.starts_with("line 3, field 2: `2 June 2026` is not a time as"),
-            "{answer}"
+    fn a_stamp_without_offset_is_read_by_the_clock_that_wrote_it() {
+        let utc = clock(None, Some("UTC"), Some("Europe/Oslo"));
+        assert_eq!(read_by(&utc, "2026-06-02T12:20:05"), "2026-06-02T14:20:05");
+        assert_eq!(
+            read_by(&utc, "2026-06-02T12:20:05+09:00"),
+            "2026-06-02T05:20:05"
         );
-        assert!(Clock::new(None, Some("Europe/Halden")).is_err());
+        let tokyo = clock(
+            Some("%d.%m.%Y %H:%M"),
+            Some("Asia/Tokyo"),
+            Some("Europe/Oslo"),
+        );
+        assert_eq!(read_by(&tokyo, "02.06.2026 03:00"), "2026-06-01T20:00:00");
+        let cell = Content::Date(civil::date(2026, 6, 2).at(12, 20, 5, 0));
+        let field = Field {
+            place: Place::Rule,
+            content: &cell,
+        };
+        assert_eq!(
+            utc.read(field, None).unwrap().to_string(),
+            "2026-06-02T14:20:05"
+        );
+        let unzoned = clock(None, None, Some("Europe/Oslo"));
+        assert_eq!(
+            read_by(&unzoned, "2026-06-02T12:20:05"),
+            "2026-06-02T12:20:05"
+        );
+    }
+
+    #[test]
+    fn a_day_alone_is_that_day_in_every_zone() {
+        let tokyo = clock(None, Some("Asia/Tokyo"), Some("Europe/Oslo"));
+        assert_eq!(read_by(&tokyo, "2026-06-02"), "2026-06-02T00:00:00");
+        let tokyo = clock(Some("%d.%m.%Y"), Some("Asia/Tokyo"), Some("Europe/Oslo"));
+        assert_eq!(read_by(&tokyo, "02.06.2026"), "2026-06-02T00:00:00");
+    }
+
+    /// Oslo sets its clocks forward at 02:00 on 2026-03-29 and back at 03:00 on 2026-10-25: the last
+    /// Sundays of March and October at 01:00 UTC (Directive 2000/84/EC).
+    #[test]
+    fn a_clock_that_was_set_back_means_the_earlier_time_and_one_set_forward_the_later() {
+        let oslo = clock(None, Some("Europe/Oslo"), Some("UTC"));
+        assert_eq!(read_by(&oslo, "2026-10-25T01:59"), "2026-10-24T23:59:00");
+        assert_eq!(read_by(&oslo, "2026-10-25T02:30"), "2026-10-25T00:30:00");
+        assert_eq!(read_by(&oslo, "2026-10-25T03:00"), "2026-10-25T02:00:00");
+        assert_eq!(read_by(&oslo, "2026-03-29T02:30"), "2026-03-29T01:30:00");
+    }
+
+    #[test]
+    fn other_texts_are_named_in_our_own_words() {
+        assert_eq!(
+            read(None, None, "2 June 2026"),
+            "line 3, field 2: `2 June 2026` is not a time as `2026-06-02T14:20:05`"
+        );
+        assert_eq!(
+            read(Some("%d.%m.%Y %H:%M"), None, "2026-06-02 14:20"),
+            "line 3, field 2: `2026-06-02 14:20` is not a time as `%d.%m.%Y %H:%M`, such as `02.06.2026 14:20`"
+        );
+        assert_eq!(
+            read(Some("%d.%m.%Y %H:%M"), None, "31.02.2026 14:20"),
+            "line 3, field 2: `31.02.2026 14:20` is not a time as `%d.%m.%Y %H:%M`, such as `02.06.2026 14:20`"
+        );
+    }
+
+    #[test]
+    fn zones_that_cannot_be_used() {
+        let wrong = |written_in, shown_in| Clock::new(&taken(None, written_in, shown_in)).is_err();
+        assert!(wrong(None, Some("Europe/Halden")));
+        assert!(wrong(Some("Europe/Halden"), Some("UTC")));
+        assert!(wrong(Some("UTC"), None));
     }
 }

@@ -126,6 +126,9 @@ fn hint(text: &str, mark: char) -> Option<String> {
     if ungrouped.len() < text.len() && plain(&ungrouped, mark).is_some() {
         return Some("have the numbers written without marks between thousands".to_owned());
     }
+    if !text.contains(|c: char| c.is_ascii_digit()) {
+        return Some("if it means that nothing was measured, list it in `no_value`".to_owned());
+    }
     let (number, suffix) = text.split_at(text.find(|c: char| {
         !(c.is_ascii_digit() || grouped(c) || matches!(c, '+' | '-' | '\u{2212}'))
     })?);
@@ -247,7 +250,8 @@ mod tests {
         assert!(hint("1\u{202f}234,5", ',').contains("thousands"));
         assert!(hint("12.0034 mm", '.').contains("`mm` looks like a unit"));
         assert!(hint("12.0034\u{b5}m", '.').contains("unit"));
-        assert_eq!(hint("n.c.", '.'), "");
+        assert!(hint("n.c.", '.').contains("`no_value`"));
+        assert_eq!(hint("12.03.4", '.'), "");
     }
 
     /// 50 + 0.05 in floating point is 50.05; 1.1 + 2.2 and 0.1 + 0.2 are the textbook cases that are not.

@@ -13,6 +13,10 @@ pub struct Parsed {
     pub readings: Vec<Reading>,
     /// What could not be used; a run is set aside whole.
     pub set_aside: Vec<SetAside>,
+    /// What a person should know of the export as a whole, a sentence each. Empty for exports that
+    /// are read by a rule.
+    #[serde(default)]
+    pub notes: Vec<String>,
 }
 
 /// One part measured once by one appraiser, as the export names them (blanks trimmed, not yet
@@ -29,7 +33,7 @@ pub struct Run {
     pub factors: BTreeMap<String, String>,
     /// Values that must stay the same within a round, by name.
     pub same: BTreeMap<String, String>,
-    /// When the part was measured: the instrument's civil time, to the millisecond.
+    /// When the part was measured: civil time of the rule's `shown_in`, to the millisecond.
     pub taken: Option<jiff::civil::DateTime>,
     /// The round's own label, when the rule names that role.
     pub round: Option<String>,
@@ -95,6 +99,11 @@ impl Refused {
             hint: None,
             perhaps_unfinished: false,
         }
+    }
+
+    pub(crate) fn hint(mut self, hint: impl Into<String>) -> Self {
+        self.hint = Some(hint.into());
+        self
     }
 
     /// A refusal of what a file that is still being written would look like.

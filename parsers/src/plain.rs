@@ -7,16 +7,18 @@
 //! Nothing is guessed that could be two things. The delimiter is the comma, the semicolon or the tab,
 //! whichever splits the heading line into the most known headings (a first line `sep=;` decides). The
 //! decimal mark is the point; it is the comma when the delimiter is not the comma and numbers of the
-//! file are written with commas and none with a point. A file with both is refused.
+//! file are written with commas and none with a point. A file with both is refused. A column under
+//! another heading is not used but named in [`Parsed::notes`], whatever its heading may mean.
 
 use std::collections::BTreeMap;
 
 use crate::Export;
 use crate::decode;
 use crate::delimited::{self, Delimiter};
-use crate::grid::{Content, Grid};
-use crate::kind::Kind;
+use crate::grid::{Content, Grid, Row};
+use crate::kind::{Kind, misnamed};
 use crate::names::{fold, listed, shorten};
+use crate::one_field;
 use crate::parsed::{Parsed, Refused};
 use crate::reader::Reader;
 use crate::rule::{
@@ -38,6 +40,17 @@ const HEADINGS: [&str; 10] = [
 ];
 const NUMBERS: [&str; 4] = ["value", "nominal", "lower", "upper"];
 
+/// Everyday words for some of them.
+const SYNONYMS: [(&str, &[&str]); 5] = [
+    ("appraiser", &["operator", "inspector", "user"]),
+    ("part", &["serial", "serial no.", "piece", "sample"]),
+    ("trial", &["run", "repeat", "replicate"]),
+    ("characteristic", &["feature", "dimension"]),
+    ("value", &["result", "measured", "actual"]),
+];
+/// Columns that are named one by one when they are not used.
+const UNUSED_SHOWN: usize = 12;
+
 /// What is asked of an export beside its plain headings.
 #[derive(Debug, Clone, Default, PartialEq, Eq, serde::Serialize, serde::Deserialize)]
 pub struct Plain {
@@ -49,7 +62,8 @@ pub struct Plain {
 ///
 /// Headings (any case, any order): `part` and `value`; optionally `appraiser`, `trial`,
 /// `characteristic`, `nominal`, `lower`, `upper` (absolute limits), `unit`, `taken` (ISO 8601 or a
-/// date cell), and those that `asked` names. Without `trial`, trials are counted by order in the
+/// date cell), and those that `asked` names. Columns under other headings are not used, and
+/// [`Parsed::notes`] says so. Without `trial`, trials are counted by order in the
 /// file; without `characteristic` there is one, called `value`.
 ///
 /// The delimiter of text is the comma, semicolon or tab, whichever splits the heading line into the
@@ -61,54 +75,115 @@ pub struct Plain {
 pub fn read_plain(export: Export<'_>, asked: &Plain) -> Result<Parsed, Refused> {
     let bounds = Bounds::default();
     let kind = Kind::of(export.bytes, &bounds)?;
-    let (grid, comma_free) = match kind {
-        Kind::Text => {
-            let text = decode::decode(export.bytes, None, None)?;
-            let delimiter = delimiter(&text, asked);
-            (
-                delimited::grid(&text, delimiter, &bounds)?,
-                delimiter.mark != b',',
-            )
-        }
-        _ => (
-            workbook::grid(export.bytes, kind, &Sheet::First, &bounds)?,
-            true,
-        ),
-    };
+    if kind == Kind::Text {
+        let text = decode::decode(export.bytes, None, None)?;
+        let delimiter = delimiter(&text, asked);
+        return delimited::grid(&text, delimiter, &bounds)
+            .and_then(|grid| by_headings(export.path, &grid, delimiter.mark != b',', asked))
+            .map_err(|refused| misnamed(export.path, &text, refused));
+    }
+    let grid = workbook::grid(export.bytes, kind, &Sheet::First, &bounds)?;
+    by_headings(export.path, &grid, true, asked)
+}
+
+/// Reads by the headings in the first row; `comma_free` when commas in fields can be decimal marks.
+fn by_headings(
+    path: &str,
+    grid: &Grid,
+    comma_free: bool,
+    asked: &Plain,
+) -> Result<Parsed, Refused> {
     let Some(header) = grid.rows.first() else {
         return Err(Refused::unfinished("there is no row of headings"));
     };
-    let headings: Vec<String> = header
+    let written: Vec<&str> = header
         .cells
         .iter()
         .filter_map(|(_, content)| match content {
-            Content::Text(text) => Some(fold(text)),
+            Content::Text(text) => Some(&**text),
             _ => None,
         })
         .collect();
+    let headings: Vec<String> = written.iter().map(|text| fold(text)).collect();
     for needed in ["part", "value"] {
         if !headings.iter().any(|heading| heading == needed) {
             return Err(Refused {
                 sentence: format!(
                     "no column is headed `{needed}`; {} has {}",
                     grid.row_name(header.number),
-                    listed(headings.iter().map(String::as_str))
+                    listed(written.iter().copied())
                 ),
-                hint: Some(format!("the headings are {}", listed(HEADINGS))),
+                hint: Some(hint_at(needed, header, &written)),
                 perhaps_unfinished: grid.may_be_cut_at(header.number),
             });
         }
     }
-    let decimal = if comma_free {
-        decimal_mark(&grid)?
-    } else {
-        '.'
-    };
+    let decimal = if comma_free { decimal_mark(grid)? } else { '.' };
     let header = Header::Row(header.number.saturating_add(1));
-    let rule = rule(&headings, asked, header.clone(), decimal, bounds);
+    let notes = unused(grid, &written, asked);
+    let rule = rule(&headings, asked, header.clone(), decimal, Bounds::default());
     let reader = Reader::new(&rule).map_err(|why| Refused::new(why.to_string()))?;
-    let once = reader.once(export.path)?;
-    reader.read_grid(&grid, &header, once)
+    let once = reader.once(path)?;
+    let parsed = reader.read_grid(grid, &header, once)?;
+    Ok(Parsed {
+        notes: notes.into_iter().collect(),
+        ..parsed
+    })
+}
+
+/// What a person could do when the heading `needed` is missing.
+fn hint_at(needed: &str, header: &Row, written: &[&str]) -> String {
+    if one_field::alone(header).is_some() {
+        return "one field only; part the fields by `,`, `;` or a tab".to_owned();
+    }
+    match written.iter().find(|text| meaning(text) == Some(needed)) {
+        Some(text) => format!("is it `{}`? head that column `{needed}`", shorten(text)),
+        None => format!("the headings are {}", listed(HEADINGS)),
+    }
+}
+
+/// The plain heading that an everyday word in place of it means.
+fn meaning(heading: &str) -> Option<&'static str> {
+    let heading = fold(heading);
+    SYNONYMS
+        .into_iter()
+        .find(|(_, words)| words.contains(&heading.as_str()))
+        .map(|(meant, _)| meant)
+}
+
+/// One sentence that names the columns that are not used.
+fn unused(grid: &Grid, written: &[&str], asked: &Plain) -> Option<String> {
+    let is_used = |heading: &str| {
+        let heading = fold(heading);
+        HEADINGS.contains(&heading.as_str())
+            || asked.factors.iter().any(|factor| fold(factor) == heading)
+    };
+    let has = |name: &str| written.iter().any(|text| fold(text) == name);
+    let unused: Vec<&str> = written
+        .iter()
+        .copied()
+        .filter(|text| !is_used(text))
+        .collect();
+    let shown = |text: &&str| match meaning(text).filter(|meant| !has(meant)) {
+        Some(meant) => format!("`{}` (perhaps `{meant}`?)", shorten(text)),
+        None => format!("`{}`", shorten(text)),
+    };
+    let row = grid.row_name(grid.rows.first()?.number);
+    match unused.as_slice() {
+        [] => None,
+        [one] => Some(format!("{row}: the column {} is not used", shown(one))),
+        several => {
+            let names: Vec<String> = several.iter().take(UNUSED_SHOWN).map(shown).collect();
+            let more = match several.len().saturating_sub(UNUSED_SHOWN) {
+                0 => String::new(),
+                more => format!(" and {more} more"),
+            };
+            Some(format!(
+                "{row}: the columns {}{more} are not used",
+                names.join(", ")
+            ))
+        }
+    }
 }
 
 fn delimiter(text: &str, asked: &Plain) -> Delimiter {
@@ -204,7 +279,8 @@ fn rule(headings: &[String], asked: &Plain, header: Header, decimal: char, bound
         taken: role("taken").map(|role| Taken {
             role,
             format: None,
-            zone: None,
+            written_in: None,
+            shown_in: None,
         }),
         round: None,
         characteristic: role("characteristic"),

@@ -1,16 +1,14 @@
 //! A rule, checked and compiled once, and the way from an export's bytes to its content.
 
-use std::borrow::Cow;
-
 use encoding_rs::Encoding;
 
 use crate::Export;
 use crate::decode;
 use crate::delimited;
 use crate::grid::{Content, Field, Grid, Place};
-use crate::kind::Kind;
+use crate::kind::{Kind, misnamed};
 use crate::moment::Clock;
-use crate::names::{fold, shorten};
+use crate::names::{fold, shorten, shorten_to};
 use crate::no_value::NoValue;
 use crate::parsed::{Parsed, Refused};
 use crate::rule::{Bounds, Count, Form, Header, Limit, Role, Rule, Sheet, Trial};
@@ -19,6 +17,12 @@ use crate::table;
 use crate::workbook;
 use crate::xml;
 use crate::xml_path::XmlPath;
+
+/// What to do about exports of another form.
+pub(crate) const OTHER_FORM: &str =
+    "correct `form`, or leave such files out with `files`; one instrument has exports of one form";
+/// Longest path quoted in a sentence, in characters.
+const PATH_MAX: usize = 200;
 
 /// A rule that no export can be read with.
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
@@ -157,9 +161,10 @@ impl Reader {
             } => {
                 let grid = match kind {
                     Kind::Text => {
-                        let text = self.text(export.bytes)?;
-                        let delimiter = delimited::delimiter(&text, *delimiter, self.roles.decimal);
-                        delimited::grid(&text, delimiter, &self.bounds)?
+                        let text = decode::decode(export.bytes, None, self.encoding)?;
+                        return self
+                            .read_text(&text, header, *delimiter, once)
+                            .map_err(|refused| misnamed(export.path, &text, refused));
                     }
                     workbook_kind => {
                         workbook::grid(export.bytes, workbook_kind, sheet, &self.bounds)?
@@ -168,10 +173,16 @@ impl Reader {
                 self.read_grid(&grid, header, once)
             }
             Shape::Xml { each } => match kind {
-                Kind::Text => xml::read(&self.text(export.bytes)?, self, each, once),
-                _ => Err(Refused::new(
-                    "this is a workbook; this instrument's exports are XML",
-                )),
+                Kind::Text => {
+                    let declared = decode::declared(export.bytes);
+                    let text = decode::decode(export.bytes, declared, self.encoding)?;
+                    xml::read(&text, self, each, once)
+                        .map_err(|refused| misnamed(export.path, &text, refused))
+                }
+                _ => Err(
+                    Refused::new("this is a workbook; this instrument's exports are XML")
+                        .hint(OTHER_FORM),
+                ),
             },
         }
     }
@@ -185,19 +196,21 @@ impl Reader {
         table::read(grid, header, &self.roles, &once)
     }
 
-    fn text<'a>(&self, bytes: &'a [u8]) -> Result<Cow<'a, str>, Refused> {
-        let declared = match self.shape {
-            Shape::Xml { .. } => decode::declared(bytes),
-            Shape::Table { .. } => None,
-        };
-        let text = decode::decode(bytes, declared, self.encoding)?;
-        let is_markup = text.trim_start().starts_with("<?xml");
-        if is_markup && matches!(self.shape, Shape::Table { .. }) {
-            return Err(Refused::new(
-                "this is XML; this instrument's exports are tables",
-            ));
+    fn read_text(
+        &self,
+        text: &str,
+        header: &Header,
+        delimiter: Option<u8>,
+        once: Vec<Option<Content>>,
+    ) -> Result<Parsed, Refused> {
+        if text.trim_start().starts_with("<?xml") {
+            return Err(
+                Refused::new("this is XML; this instrument's exports are tables").hint(OTHER_FORM),
+            );
         }
-        Ok(text)
+        let delimiter = delimited::delimiter(text, delimiter, self.roles.decimal);
+        let grid = delimited::grid(text, delimiter, &self.bounds)?;
+        self.read_grid(&grid, header, once)
     }
 
     /// Contents that hold for the whole export whatever its form: by source, `None` where the form
@@ -211,9 +224,11 @@ impl Reader {
                 Where::Path(regex) => match first_group(regex, path) {
                     Some(found) => Ok(Some(Content::Text(found.into()))),
                     None => Err(Refused::new(format!(
-                        "nothing in the export's path matches `{regex}`, where the {} should stand",
+                        "nothing in the path `{}` matches `{regex}`, where the {} should stand",
+                        shorten_to(path, PATH_MAX),
                         source.role
-                    ))),
+                    ))
+                    .hint("name folder or file as the others, or correct `path`; it is searched in the path below the watched folder")),
                 },
                 Where::Column(_) | Where::At { .. } | Where::Label(_) | Where::Xml(_) => Ok(None),
             })
@@ -345,8 +360,7 @@ impl Roles {
         let taken = match (&rule.taken, taken) {
             (Some(rule), Some(source)) => Some((
                 source,
-                Clock::new(rule.format.as_deref(), rule.zone.as_deref())
-                    .map_err(|what| RuleError::new("taken", what))?,
+                Clock::new(rule).map_err(|what| RuleError::new("taken", what))?,
             )),
             _ => None,
         };

@@ -146,8 +146,13 @@ pub struct Taken {
     pub role: Role,
     /// A strptime format; `None`: ISO 8601 (or a workbook date cell).
     pub format: Option<String>,
-    /// IANA zone in which a text with an offset is shown as civil time; `None`: the offset's own civil time.
-    pub zone: Option<String>,
+    /// IANA zone of the instrument's clock: texts without an offset, and date cells, are civil time
+    /// there. A time that its clock shows twice is the earlier one, a time that it skips as much
+    /// later as it was set forward. `None`: they are civil time of `shown_in` already.
+    pub written_in: Option<String>,
+    /// IANA zone in whose civil time [`Run::taken`](crate::Run::taken) is given, usually the site's.
+    /// `None`: as written, an offset left aside; `written_in` must then be `None` too.
+    pub shown_in: Option<String>,
 }
 
 /// The measured value.

@@ -203,7 +203,8 @@ impl<'r> Runs<'r> {
                         shorten(now),
                         shorten(before)
                     ),
-                ));
+                )
+                .hint("a run keeps it from beginning to end: measure this run again"));
             }
         }
         Ok(())
@@ -357,7 +358,8 @@ fn limit(
         return Err(fault(
             "a nominal value",
             format!("the {role} is taken from the nominal, which is blank"),
-        ));
+        )
+        .hint("fill in the nominal, or leave `from` out if the limit is absolute"));
     };
     match nominal.plus(&written) {
         Some(sum) => Ok(Some(sum)),

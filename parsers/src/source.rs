@@ -97,7 +97,13 @@ impl Source {
                     shorten(what),
                     format!("the {}", self.role),
                     format!("holds {what}, where the {} should stand", self.role),
-                ));
+                )
+                .hint(match self.from {
+                    Where::Xml(_) => "correct the path so that it leads to one text a reading",
+                    _ => {
+                        "correct the cell where the export is made; it must hold a text or a number"
+                    }
+                }));
             }
         };
         let found = match &self.find {
@@ -109,8 +115,13 @@ impl Source {
                         field.place,
                         shown(field.content),
                         format!("a text in which `{find}` is found"),
-                        format!("nothing in `{}` matches `{find}`", shorten(&whole)),
-                    ));
+                        format!(
+                            "nothing in `{}` matches `{find}`, where the {} should stand",
+                            shorten(&whole),
+                            self.role
+                        ),
+                    )
+                    .hint("have it written as before, or correct `find`"));
                 }
             },
         };
@@ -155,7 +166,8 @@ impl Source {
                     "holds the date {date}, where the {} should stand",
                     self.role
                 ),
-            ));
+            )
+            .hint("have the cell formatted as a number"));
         }
         let Some(text) = self.text(field)? else {
             return Ok(None);
@@ -187,6 +199,17 @@ impl Source {
             format!("the {}", self.role),
             format!("blank, where the {} should stand", self.role),
         )
+        .hint(match self.from {
+            _ if self.role == "value" => "measure this run again",
+            Where::Column(_) => {
+                "have every row filled in: nothing is taken over from the row above"
+            }
+            Where::At { .. } => "fill the cell in at the instrument, or correct `cell`",
+            Where::Label(_) => "fill it in beside the label, or correct `label`",
+            Where::Path(_) => "name folder or file as before, or correct `path`",
+            Where::Xml(_) => "have the instrument write it, or correct `xml`",
+            Where::Constant(_) => "correct `constant`",
+        })
     }
 }
 

@@ -6,12 +6,16 @@
 use crate::fault::Fault;
 use crate::grid::{Content, Field, Grid, Origin, Place, Row};
 use crate::names::{fold, listed, nearest, shorten};
+use crate::one_field;
 use crate::parsed::{Parsed, Refused};
 use crate::reader::{End, Roles};
 use crate::rule::Header;
 use crate::runs::Runs;
 use crate::source::{Source, Where};
 
+/// What to do when other headings were expected.
+const NOT_THE_HEADINGS: &str =
+    "correct `header`: a row number, or { find = \"a heading\" } to look for the row";
 /// The text cells above and in which a mistyped text is sought for a hint.
 const HINT_CELLS: usize = 4096;
 
@@ -46,8 +50,14 @@ pub(crate) fn read(
     };
     if runs.is_empty() {
         return Err(Refused {
-            sentence: "no readings stand below the headings".to_owned(),
-            hint: None,
+            sentence: match &headings {
+                Some(headings) => format!(
+                    "no readings stand below the headings in {}",
+                    grid.row_name(headings.row.number)
+                ),
+                None => "the export holds no reading".to_owned(),
+            },
+            hint: Some("was anything measured? export it again".to_owned()),
             perhaps_unfinished: grid.origin == Origin::Text,
         });
     }
@@ -84,7 +94,7 @@ impl<'g> Headings<'g> {
                         "{} is blank; the headings should stand there",
                         grid.row_name(number)
                     ),
-                    hint: None,
+                    hint: Some(NOT_THE_HEADINGS.to_owned()),
                     perhaps_unfinished: grid.origin == Origin::Text,
                 })?
             }
@@ -114,6 +124,22 @@ impl<'g> Headings<'g> {
         let mut found = self.row.holding(&sought).chain(self.numbered(&sought));
         let names = || self.names.iter().map(|(_, name)| name.as_str());
         let Some(column) = found.next() else {
+            if let Some(field) = one_field::alone(self.row) {
+                let refused = Refused {
+                    perhaps_unfinished: grid.may_be_cut_at(self.row.number),
+                    ..Refused::new(format!(
+                        "no column is headed `{}`, where the {} should stand; {} has one field only: `{}`",
+                        shorten(heading),
+                        source.role,
+                        grid.row_name(self.row.number),
+                        shorten(field)
+                    ))
+                };
+                return Err(match one_field::mark(field) {
+                    Some(mark) => one_field::hint(refused, mark),
+                    None => refused.hint(NOT_THE_HEADINGS),
+                });
+            }
             return Err(Refused {
                 sentence: format!(
                     "no column is headed `{}`, where the {} should stand; {} has {}",
@@ -122,7 +148,9 @@ impl<'g> Headings<'g> {
                     grid.row_name(self.row.number),
                     listed(names())
                 ),
-                hint: nearest(heading, names()).map(|name| format!("did you mean `{name}`?")),
+                hint: nearest(heading, names())
+                    .map(|name| format!("did you mean `{name}`?"))
+                    .or_else(|| Some(NOT_THE_HEADINGS.to_owned())),
                 perhaps_unfinished: grid.may_be_cut_at(self.row.number),
             });
         };
@@ -132,7 +160,8 @@ impl<'g> Headings<'g> {
                 shorten(heading),
                 source.role,
                 grid.row_name(self.row.number)
-            )));
+            ))
+            .hint("have one of them headed otherwise, so that it is clear which is meant"));
         }
         let name = self
             .names
@@ -192,7 +221,7 @@ impl<'g> Headings<'g> {
         );
         Some(match used > headings {
             true => fault.hint("does a decimal comma or a text part the fields as well?"),
-            false => fault,
+            false => fault.hint("was the line cut short? export it again"),
         })
     }
 }
@@ -285,7 +314,8 @@ fn beside<'g>(grid: &'g Grid, label: &str, header: Option<u32>) -> Result<Field<
                 shorten(label),
                 grid.place(a.number, *a_column),
                 grid.place(b.number, *b_column)
-            )));
+            ))
+            .hint("name the cell itself with `cell`"));
         }
     };
     let right = row.cells.iter().find(|(at, _)| *at > column);
@@ -299,6 +329,15 @@ fn beside<'g>(grid: &'g Grid, label: &str, header: Option<u32>) -> Result<Field<
 }
 
 fn nowhere(grid: &Grid, what: &str, text: &str) -> Refused {
+    if let Some((row, field, mark)) = one_field::hiding(grid, text) {
+        let refused = Refused::new(format!(
+            "no cell holds the {what} `{}`; {} has one field only: `{}`",
+            shorten(text),
+            grid.row_name(row.number),
+            shorten(field)
+        ));
+        return one_field::hint(refused, mark);
+    }
     let texts =
         grid.rows
             .iter()
@@ -310,7 +349,12 @@ fn nowhere(grid: &Grid, what: &str, text: &str) -> Refused {
     Refused {
         sentence: format!("no cell holds the {what} `{}`", shorten(text)),
         hint: nearest(text, texts.take(HINT_CELLS))
-            .map(|near| format!("did you mean `{}`?", shorten(near))),
+            .map(|near| format!("did you mean `{}`?", shorten(near)))
+            .or_else(|| {
+                Some(format!(
+                    "correct the {what}, or the sheet or file it is sought in"
+                ))
+            }),
         perhaps_unfinished: grid.origin == Origin::Text,
     }
 }

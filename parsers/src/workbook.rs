@@ -13,7 +13,8 @@ use calamine::{
 };
 use jiff::civil;
 
-use crate::container::{self, damaged};
+use crate::container;
+use crate::damage::{damaged, of_cell, of_workbook};
 use crate::delimited::CELLS_MAX;
 use crate::grid::{Content, Grid, Origin, Row, cell_name};
 use crate::kind::Kind;
@@ -34,7 +35,7 @@ pub(crate) fn grid(
 }
 
 fn cells(bytes: &[u8], sheet: &Sheet, bounds: &Bounds) -> Result<Grid, Refused> {
-    let mut book = Xlsx::new(Cursor::new(bytes)).map_err(|why| damaged(&why.to_string()))?;
+    let mut book = Xlsx::new(Cursor::new(bytes)).map_err(|why| of_workbook(&why))?;
     let name = chosen(&book, sheet)?;
     let mut rows = Rows::scan(&mut book, &name, None, bounds)?;
     if rows.unreadable > 0 {
@@ -60,12 +61,9 @@ fn places(
     }
     let mut reader = book
         .worksheet_cells_reader(name)
-        .map_err(|why| damaged(&why.to_string()))?;
+        .map_err(|why| of_workbook(&why))?;
     let mut places = Vec::new();
-    while let Some(cell) = reader
-        .next_formula()
-        .map_err(|why| damaged(&why.to_string()))?
-    {
+    while let Some(cell) = reader.next_formula().map_err(|why| of_workbook(&why))? {
         places.push(cell.get_position());
     }
     Ok(places)
@@ -134,7 +132,7 @@ impl<'a> Rows<'a> {
     ) -> Result<Self, Refused> {
         let mut reader = book
             .worksheet_cells_reader(sheet)
-            .map_err(|why| damaged(&why.to_string()))?;
+            .map_err(|why| of_workbook(&why))?;
         let mut rows = Rows {
             sheet,
             bounds,
@@ -161,10 +159,10 @@ impl<'a> Rows<'a> {
                 Err(why) if costs_one_cell(&why) => {
                     rows.unreadable += 1;
                     if let Some(place) = place {
-                        rows.put(place, Content::Unusable(unreadable(&why).into()))?;
+                        rows.put(place, Content::Unusable(of_cell(&why).into()))?;
                     }
                 }
-                Err(why) => return Err(damaged(&why.to_string())),
+                Err(why) => return Err(of_workbook(&why)),
             }
         }
         Ok(rows)
@@ -249,13 +247,6 @@ impl<'a> Rows<'a> {
             self.sheet,
             cell_name(row, column)
         ))
-    }
-}
-
-fn unreadable(why: &XlsxError) -> String {
-    match why {
-        XlsxError::CellError(text) => format!("the error `{}`", shorten(text)),
-        other => format!("what cannot be read ({})", shorten(&other.to_string())),
     }
 }
 

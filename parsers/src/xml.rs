@@ -10,11 +10,12 @@
 
 mod document;
 mod lines;
+mod malformed;
 
 use crate::grid::{BLANK, Content, Field, Place};
 use crate::names::shorten;
 use crate::parsed::{Parsed, Refused};
-use crate::reader::{Reader, Roles};
+use crate::reader::{OTHER_FORM, Reader, Roles};
 use crate::runs::Runs;
 use crate::source::Where;
 use crate::xml_path::XmlPath;
@@ -30,9 +31,10 @@ pub(crate) fn read(
     let sources = &reader.roles.sources;
     if !text.trim_start().starts_with('<') {
         return Err(Refused::new(format!(
-            "this is not XML; it begins with `{}`",
+            "this is not XML, as this instrument's exports are; it begins with `{}`",
             shorten(text)
-        )));
+        ))
+        .hint(OTHER_FORM));
     }
     let mut document = Document::new(text, reader, each);
     document.read()?;
@@ -96,6 +98,7 @@ fn check_found(document: &Document<'_>, roles: &Roles) -> Result<(), Refused> {
         Some(sought) => Err(Refused::new(format!(
             "there is no {} in this export, where the {} should stand",
             sought.path, roles.sources[sought.source].role
-        ))),
+        ))
+        .hint("correct the path; names stand without prefix, and case counts")),
     }
 }

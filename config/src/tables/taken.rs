@@ -1,6 +1,7 @@
 //! The role `taken`: when a run was measured.
 
 use jiff::fmt::strtime;
+use jiff::tz::TimeZone;
 use restudy_parsers::Taken;
 
 use crate::checked::Site;
@@ -8,18 +9,19 @@ use crate::tables::role::{Shape, role_in, table as role_table};
 use crate::tables::site::zone;
 use crate::walk::Node;
 
-/// The role with its format and zone; times with an offset are shown in the site's zone unless another is named.
+/// The role with its format and the zone that the instrument writes in; times are shown in the site's.
 pub(crate) fn taken(node: &Node<'_>, shape: Shape, site: Option<&Site>) -> Option<Taken> {
     let table = role_table(node)?;
     let role = role_in(&table, shape);
     let format = table.optional("format", time_format);
-    let own = table.optional("zone", zone);
+    let written_in = table.optional("zone", zone);
     table.finish();
-    let zone = own?.or_else(|| site.map(|site| site.zone.clone()));
+    let name = |zone: &TimeZone| zone.iana_name().map(str::to_owned);
     Some(Taken {
         role: role?,
         format: format?,
-        zone: zone.and_then(|zone| zone.iana_name().map(str::to_owned)),
+        written_in: written_in?.as_ref().and_then(name),
+        shown_in: name(&site?.zone),
     })
 }
 
@@ -28,32 +30,33 @@ fn time_format(node: &Node<'_>) -> Option<String> {
     let format = node.text()?;
     let expected = "a format of date and time such as \"%d.%m.%Y %H:%M\"";
     let sample = jiff::civil::date(2026, 11, 23).at(15, 47, 0, 0);
-    let read = strtime::format(
-        format,
-        &sample.to_zoned_datetime(jiff::tz::TimeZone::UTC).ok()?,
-    )
-    .and_then(|text| {
-        let time = strtime::parse(format, text)?;
-        Ok((time.to_datetime(), time.hour().is_some()))
-    });
-    match read {
-        Err(error) => node.fault_hint(expected, error.to_string()),
-        Ok((Err(error), _)) => node.fault_hint(expected, error.to_string()),
-        Ok((Ok(_), false)) => node.fault_hint(
-            expected,
-            "a date alone does not put the runs of a day in order",
-        ),
-        Ok((Ok(time), true)) if time != sample => {
+    let Ok(text) = strtime::format(format, &sample.to_zoned_datetime(TimeZone::UTC).ok()?) else {
+        node.fault_hint(expected, "`%` stands before a letter that means a part of the time: %d day, %m month, %Y year, %H hour, %M minute, %S second");
+        return None;
+    };
+    let read = strtime::parse(format, &text).ok();
+    let time = read.as_ref().and_then(|read| read.to_datetime().ok());
+    let has_hour = read.is_some_and(|read| read.hour().is_some());
+    match time {
+        Some(time) if has_hour && time == sample => return Some(format.to_owned()),
+        Some(_) if !has_hour => {
             node.fault_hint(
                 expected,
-                format!(
-                    "{} reads back as {}",
-                    sample.strftime("%Y-%m-%d %H:%M"),
-                    time.strftime("%Y-%m-%d %H:%M")
-                ),
+                "a date alone does not put the runs of a day in order",
             );
         }
-        Ok((Ok(_), true)) => return Some(format.to_owned()),
+        Some(time) => node.fault_hint(
+            expected,
+            format!(
+                "{} reads back as {}",
+                sample.strftime("%Y-%m-%d %H:%M"),
+                time.strftime("%Y-%m-%d %H:%M")
+            ),
+        ),
+        None => node.fault_hint(
+            expected,
+            format!("`{text}`, written with it, does not tell year, month, day, hour and minute"),
+        ),
     }
     None
 }

@@ -230,49 +230,55 @@ fn judge(
     figure: &restudy_engine::Figure,
 ) -> Judgement {
     let now = standing(share, &limits, before);
-    let (judged_by, what) = match settings.judge {
-        Judge::Estimate => ("estimate", "the estimated share".to_owned()),
+    let percent = |x: f64| format!("{:.1} %", 100.0 * x);
+    let (judged_by, is): (_, Box<dyn Fn(f64) -> String>) = match settings.judge {
+        Judge::Estimate => (
+            "estimate",
+            Box::new(move |x| format!("the share is estimated at {}", percent(x))),
+        ),
         Judge::Chance(p) => (
             "chance",
-            format!("the share that is exceeded with confidence {p}"),
+            Box::new(move |x| {
+                format!(
+                    "with {} % confidence the share is above {}",
+                    100.0 * p,
+                    percent(x)
+                )
+            }),
         ),
-        Judge::Upper => ("upper", "the upper limit of the share".to_owned()),
+        Judge::Upper => (
+            "upper",
+            Box::new(move |x| format!("the share's upper limit is {}", percent(x))),
+        ),
     };
-    let percent = |x: f64| format!("{:.1} %", 100.0 * x);
+    let (watch, act, back) = (
+        percent(limits.watch),
+        percent(limits.act),
+        limits.back_below,
+    );
     let why = match (share, now) {
         (None, _) => figure
             .why
             .as_deref()
             .unwrap_or("there is no share of tolerance")
             .to_owned(),
-        (Some(share), Standing::Act) if share <= limits.act => format!(
-            "{what} is {}, not yet below {} × the act limit {}",
-            percent(share),
-            limits.back_below,
-            percent(limits.act)
-        ),
-        (Some(share), Standing::Watch) if share <= limits.watch => format!(
-            "{what} is {}, not yet below {} × the watch limit {}",
-            percent(share),
-            limits.back_below,
-            percent(limits.watch)
-        ),
-        (Some(share), Standing::Act) => format!(
-            "{what} is {}, above the act limit {}",
-            percent(share),
-            percent(limits.act)
-        ),
-        (Some(share), Standing::Watch) => format!(
-            "{what} is {}, above the watch limit {}, not above the act limit {}",
-            percent(share),
-            percent(limits.watch),
-            percent(limits.act)
-        ),
-        (Some(share), _) => format!(
-            "{what} is {}, not above the watch limit {}",
-            percent(share),
-            percent(limits.watch)
-        ),
+        (Some(share), Standing::Act) if share <= limits.act => {
+            format!("{}, not yet below {back} × the act limit {act}", is(share))
+        }
+        (Some(share), Standing::Watch) if share <= limits.watch => {
+            format!(
+                "{}, not yet below {back} × the watch limit {watch}",
+                is(share)
+            )
+        }
+        (Some(share), Standing::Act) => format!("{}; the act limit is {act}", is(share)),
+        (Some(share), Standing::Watch) => {
+            format!(
+                "{}, between the watch limit {watch} and the act limit {act}",
+                is(share)
+            )
+        }
+        (Some(share), _) => format!("{}; the watch limit is {watch}", is(share)),
     };
     Judgement {
         now,

@@ -4,12 +4,13 @@ mod asked;
 mod material;
 mod words;
 
-use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 
 use indicatif::{ProgressBar, ProgressFinish, ProgressStyle};
-use restudy_engine::{Design, Factor, Interaction, Judge, Settings, Standing, Study, Tolerance};
-use restudy_parsers::{Bounds, Export, Parsed, Plain, Refused, fold};
+use restudy_engine::{
+    Design, Factor, Interaction, Judge, Settings, Standing, Study, StudyError, Tolerance,
+};
+use restudy_parsers::{Bounds, Export, Parsed, Plain, Refused, SetAside, fold};
 use sha2::{Digest as _, Sha256};
 
 use super::{Answer, End, Failure, complain, configuration, preview, print, print_json};
@@ -21,6 +22,8 @@ use words::for_people;
 
 /// From so many files on, reading them shows a bar.
 const MANY_FILES: usize = 20;
+/// Set-aside runs of a file that are told one by one.
+const SET_ASIDE_SHOWN: usize = 5;
 
 /// Work a study out from files, without a service
 #[derive(Debug, clap::Args)]
@@ -100,12 +103,12 @@ pub(super) fn run(line: &Line) -> Answer {
 }
 
 fn settings(line: &Line) -> Result<Settings, Failure> {
-    let fraction = |name: &str, x: f64| {
-        if x > 0.0 && x < 1.0 {
+    let fraction = |name: &str, x: f64, least: f64| {
+        if x >= least && x > 0.0 && x < 1.0 {
             Ok(x)
         } else {
             Err(Failure::usage(format!(
-                "--{name} is {x}; expected a fraction between 0 and 1"
+                "--{name} is {x}; expected a fraction between {least} and 1"
             )))
         }
     };
@@ -123,10 +126,10 @@ fn settings(line: &Line) -> Result<Settings, Failure> {
         )));
     }
     Ok(Settings {
-        confidence: fraction("confidence", line.confidence)?,
+        confidence: fraction("confidence", line.confidence, 0.5)?,
         spread_sds: line.spread_sds,
         interaction: match line.pool_above {
-            Some(p) => Interaction::PoolAbove(fraction("pool-above", p)?),
+            Some(p) => Interaction::PoolAbove(fraction("pool-above", p, 0.0)?),
             None => Interaction::Keep,
         },
         process: line.process.map(|p| p.0),
@@ -155,12 +158,12 @@ fn read_all(line: &Line) -> Result<(Vec<File>, End), Failure> {
         };
         match outcome {
             Ok(parsed) => {
-                for aside in &parsed.set_aside {
+                for note in &parsed.notes {
+                    complain(&format!("{shown}: {note}"), None);
+                }
+                if !parsed.set_aside.is_empty() {
                     end = End::BadNews;
-                    complain(
-                        &format!("{shown}: set aside: {}", aside.reason),
-                        aside.hint.as_deref(),
-                    );
+                    complain_of(&shown, &parsed.set_aside);
                 }
                 let bytes = fs_err::read(path).map_err(|e| Failure::usage(e.to_string()))?;
                 files.push(File {
@@ -179,6 +182,21 @@ fn read_all(line: &Line) -> Result<(Vec<File>, End), Failure> {
         }
     }
     Ok((files, end))
+}
+
+/// The first few runs that were set aside, and how many more.
+fn complain_of(file: &str, set_aside: &[SetAside]) {
+    for aside in set_aside.iter().take(SET_ASIDE_SHOWN) {
+        let sentence = format!("{file}: set aside: {}", aside.reason);
+        complain(&sentence, aside.hint.as_deref());
+    }
+    if let Some(more) = set_aside
+        .len()
+        .checked_sub(SET_ASIDE_SHOWN)
+        .filter(|n| *n > 0)
+    {
+        complain(&format!("{file}: and {more} more were set aside"), None);
+    }
 }
 
 /// A bar for many files; hidden when nobody sits at a terminal.
@@ -233,8 +251,8 @@ fn study(
     let cell = |labels: &[String]| {
         kept.iter().fold(0, |cell, &f| {
             let name = fold(&labels[f]);
-            let level = levels[f].iter().position(|l| *l == name).unwrap_or(0);
-            cell * levels[f].len() + level
+            let level = levels[f].iter().position(|l| fold(l) == name);
+            cell * levels[f].len() + level.unwrap_or(0)
         })
     };
     let cells: Vec<usize> = gathered
@@ -248,8 +266,15 @@ fn study(
         upper: gathered.upper.or(line.upper),
         one_sided: line.one_sided.map(|o| o.0),
     };
+    if line.one_sided.is_some() && tolerance.lower.is_some() && tolerance.upper.is_some() {
+        let name = &gathered.label;
+        complain(
+            &format!("{name}: --one-sided is not used, both limits are known"),
+            None,
+        );
+    }
     let study = restudy_engine::analyse(&design, &cells, &values, &tolerance, settings)
-        .map_err(|e| in_names(&e, material, &kept, gathered))?;
+        .map_err(|e| in_names(e, &kept, &levels))?;
     Ok(Record {
         schema: SCHEMA,
         site: None,
@@ -276,52 +301,25 @@ fn study(
     })
 }
 
-/// The engine's refusal, with the cells that have too few or too many readings by name.
-fn in_names(
-    error: &restudy_engine::StudyError,
-    material: &Material,
-    kept: &[usize],
-    gathered: &Gathered,
-) -> String {
-    let mut counts: BTreeMap<Vec<String>, usize> = BTreeMap::new();
-    let all: Vec<Vec<String>> = kept.iter().map(|&f| levels(gathered, f)).collect();
-    for combination in all
-        .iter()
-        .fold(vec![Vec::new()], |cells: Vec<Vec<String>>, names| {
-            cells
-                .iter()
-                .flat_map(|c| {
-                    names
-                        .iter()
-                        .map(|n| c.iter().cloned().chain([n.clone()]).collect())
-                })
-                .collect()
-        })
-    {
-        counts.insert(combination, 0);
-    }
-    for (labels, _) in &gathered.rows {
-        let key: Vec<String> = kept.iter().map(|&f| fold(&labels[f])).collect();
-        *counts.entry(key).or_default() += 1;
-    }
-    let most = counts.values().copied().max().unwrap_or(0);
-    let odd: Vec<String> = counts
-        .iter()
-        .filter(|(_, n)| **n != most)
-        .take(3)
-        .map(|(names, n)| {
-            let named: Vec<String> = kept
-                .iter()
-                .zip(names)
-                .map(|(&f, n)| format!("{} {n}", material.factors[f]))
-                .collect();
-            format!("{} has {n} of {most}", named.join(", "))
-        })
-        .collect();
-    if odd.is_empty() {
-        error.to_string()
-    } else {
-        format!("{error} ({})", odd.join("; "))
+/// The engine's refusal, with the cell by its names.
+fn in_names(error: StudyError, kept: &[usize], levels: &[Vec<String>]) -> String {
+    match error {
+        StudyError::Unbalanced {
+            mut cell,
+            count,
+            expected,
+            ..
+        } => {
+            let mut names = Vec::new();
+            for &f in kept.iter().rev() {
+                names.push(levels[f][cell % levels[f].len()].clone());
+                cell /= levels[f].len();
+            }
+            names.reverse();
+            let who = names.join(", ");
+            format!("{who} has {count} readings; expected {expected} as in the other cells")
+        }
+        other => other.to_string(),
     }
 }
 

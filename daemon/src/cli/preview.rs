@@ -10,9 +10,17 @@ use serde::Serialize;
 use super::table::table;
 use super::{Answer, ConfigPath, End, Failure, complain, configuration, print, print_json};
 use crate::intake::file::too_large;
+use crate::intake::merge::facts;
+use crate::intake::plan_of;
+use crate::intake::plausible::{latest, sift};
 use crate::intake::request::Ask;
 use crate::intake::workbook::{Failure as WorkbookFailure, Workbooks, refusal};
+use crate::now::Now;
+use crate::rounds::frame::Frame;
 use crate::watch::walk::shown;
+
+/// Readings that are shown one by one; the JSON has all.
+const READINGS_SHOWN: usize = 40;
 
 /// Show how one export maps to runs and readings, and what would be set aside
 #[derive(Debug, clap::Args)]
@@ -65,12 +73,18 @@ pub(super) fn run(line: &Line) -> Answer {
     let config = configuration::sound(&line.config.config)?;
     let instrument = instrument(&config, &line.instrument)?;
     match read_file(instrument, &line.file)? {
+        Ok(parsed) if line.json => {
+            print_json(&as_shown(&parsed))?;
+            Ok(End::Fine)
+        }
         Ok(parsed) => {
-            if line.json {
-                print_json(&as_shown(&parsed))?;
-            } else {
-                print(&for_people(&parsed))?;
-            }
+            let path = path_below(instrument, &line.file);
+            let parsed = match plan_of(&config.plans, &instrument.name, &path) {
+                Some(plan) => sift(parsed, plan, latest(Now::read(), &config.site.zone)),
+                None => parsed,
+            };
+            print(&for_people(&parsed))?;
+            print(&by_plan(&config, instrument, &path, &parsed))?;
             Ok(End::Fine)
         }
         Err(refused) => {
@@ -190,6 +204,7 @@ fn for_people(parsed: &Parsed) -> String {
             .map(|(name, value)| format!("{name} {value}"))
             .collect();
         vec![
+            (index + 1).to_string(),
             run.part.clone(),
             text(&run.appraiser),
             text(&run.trial),
@@ -201,8 +216,45 @@ fn for_people(parsed: &Parsed) -> String {
             readings.to_string(),
         ]
     });
-    let headings = ["part", "appraiser", "trial", "taken", "further", "readings"];
-    let mut out = table(&headings, &[5], rows.collect());
+    let headings = [
+        "run",
+        "part",
+        "appraiser",
+        "trial",
+        "taken",
+        "further",
+        "readings",
+    ];
+    let mut out = table(&headings, &[0, 6], rows.collect());
+    out.push('\n');
+    let number = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| x.to_string());
+    let rows = parsed.readings.iter().take(READINGS_SHOWN).map(|r| {
+        vec![
+            (r.run + 1).to_string(),
+            r.characteristic.clone(),
+            r.value.to_string(),
+            text(&r.unit),
+            number(r.nominal),
+            number(r.lower),
+            number(r.upper),
+            r.origin.clone(),
+        ]
+    });
+    let headings = [
+        "run",
+        "characteristic",
+        "value",
+        "unit",
+        "nominal",
+        "lower",
+        "upper",
+        "where it stands",
+    ];
+    out.push_str(&table(&headings, &[0, 2, 4, 5, 6], rows.collect()));
+    if parsed.readings.len() > READINGS_SHOWN {
+        let more = parsed.readings.len() - READINGS_SHOWN;
+        out.push_str(&format!("and {more} more readings (--json has all)\n"));
+    }
     if !parsed.set_aside.is_empty() {
         let n: usize = parsed.set_aside.iter().map(|a| a.readings).sum();
         out.push_str(&format!("\nset aside ({n} readings):\n"));
@@ -211,6 +263,24 @@ fn for_people(parsed: &Parsed) -> String {
         out.push_str(&format!("  {}\n", aside.reason));
         if let Some(hint) = &aside.hint {
             out.push_str(&format!("  hint: {hint}\n"));
+        }
+    }
+    out
+}
+
+/// Which plan would take the export, and which of its runs that plan does not know.
+fn by_plan(config: &Config, instrument: &Instrument, path: &str, parsed: &Parsed) -> String {
+    let Some(plan) = plan_of(&config.plans, &instrument.name, path) else {
+        return "\nNo plan takes this export.\n".into();
+    };
+    let frame = Frame::of(plan);
+    let mut out = format!("\nThe plan `{}` takes it.\n", plan.name);
+    for run in &parsed.runs {
+        if let Err(unknown) = frame.names(&facts(&instrument.name, run)) {
+            out.push_str(&format!(
+                "  set aside by the plan: {}: {}\n",
+                run.part, unknown.reason
+            ));
         }
     }
     out

@@ -42,8 +42,8 @@ const HEADINGS: [&str; 12] = [
     "standing",
     "share %",
     "at least %",
-    "ev",
-    "grr",
+    "EV",
+    "GRR",
     "unit",
     "ndc",
 ];

@@ -1,8 +1,13 @@
 //! `restudy serve`: the service.
 
+use std::time::Duration;
+
 use super::{Answer, ConfigPath, End, Failure, configuration, log};
 use crate::service;
 use crate::stop::Stop;
+
+/// Beyond the stop's limit, for the process to end by itself.
+const AFTER_STOP: Duration = Duration::from_millis(300);
 
 /// Run the service until SIGTERM or Ctrl-C
 #[derive(Debug, clap::Args)]
@@ -27,7 +32,7 @@ pub(super) fn run(line: &Line) -> Answer {
     Ok(End::Fine)
 }
 
-/// SIGTERM and SIGINT set the stop.
+/// SIGTERM and SIGINT set the stop; whatever happens, the process ends soon after.
 pub(super) fn on_signals(stop: Stop) -> Result<(), Failure> {
     use tokio::signal::unix::{SignalKind, signal};
     let runtime = tokio::runtime::Builder::new_current_thread()
@@ -48,6 +53,9 @@ pub(super) fn on_signals(stop: Stop) -> Result<(), Failure> {
             }
         });
         stop.now();
+        // A full log pipe can block any thread that still logs; the ledger is sound at every moment.
+        std::thread::sleep(service::STOP_LIMIT + AFTER_STOP);
+        std::process::exit(0);
     });
     Ok(())
 }

@@ -1,4 +1,5 @@
-//! One SMTP session: opened once a pass, one mail after the other, every step judged by where it failed.
+//! One SMTP session: opened once a pass, one mail after the other, every step with our own time limit and judged by
+//! where it failed.
 //!
 //! Model: what fails before a recipient is named concerns the server, or our account there, and so every mail;
 //! what a server answers to the recipient or to the content concerns that mail.
@@ -6,6 +7,7 @@
 //! Not here: when to try again, the ledger.
 
 use std::error::Error as _;
+use std::time::Duration;
 
 use lettre::Address;
 use lettre::transport::smtp::Error;
@@ -14,11 +16,15 @@ use lettre::transport::smtp::client::{AsyncSmtpConnection, TlsParameters};
 use lettre::transport::smtp::commands::{Data, Mail as MailFrom, Rcpt};
 use lettre::transport::smtp::extension::ClientId;
 use restudy_config::{Mail, Tls};
+use tokio::time::timeout;
 
-use super::{one_line, password};
+use super::{Steps, one_line, password};
 
 /// An open session, logged in where the configuration says so.
-pub(super) struct Session(AsyncSmtpConnection);
+pub(super) struct Session {
+    connection: AsyncSmtpConnection,
+    steps: Steps,
+}
 
 /// Why no mail can be sent at all for now.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -40,6 +46,12 @@ pub(super) enum Failed {
     Refused(String),
 }
 
+impl From<Down> for Failed {
+    fn from(down: Down) -> Self {
+        Self::Down(down)
+    }
+}
+
 /// How far a mail had come.
 #[derive(Clone, Copy, PartialEq, Eq)]
 enum Step {
@@ -49,7 +61,7 @@ enum Step {
 }
 
 impl Session {
-    pub(super) async fn open(mail: &Mail) -> Result<Self, Down> {
+    pub(super) async fn open(mail: &Mail, steps: Steps) -> Result<Self, Down> {
         let credentials = credentials(mail)?;
         let hello = ClientId::default();
         let tls = match mail.tls {
@@ -60,23 +72,28 @@ impl Session {
         };
         let implicit = tls.clone().filter(|_| mail.tls == Tls::Implicit);
         let server = (mail.server.as_str(), mail.port);
-        let mut connection =
-            AsyncSmtpConnection::connect_tokio1(server, None, &hello, implicit, None)
-                .await
-                .map_err(|e| at_server(mail, &e))?;
+        let call = AsyncSmtpConnection::connect_tokio1(
+            server,
+            Some(steps.connect),
+            &hello,
+            implicit,
+            None,
+        );
+        let mut connection = within(steps.greeting, "our call", call)
+            .await?
+            .map_err(|e| at_server(mail, &e))?;
         if let Some(tls) = tls.filter(|_| mail.tls == Tls::StartTls) {
-            connection
-                .starttls(tls, &hello)
-                .await
+            within(steps.command, "STARTTLS", connection.starttls(tls, &hello))
+                .await?
                 .map_err(|e| at_server(mail, &e))?;
         }
         if let Some(credentials) = credentials {
-            connection
-                .auth(DEFAULT_MECHANISMS, &credentials)
-                .await
+            let login = connection.auth(DEFAULT_MECHANISMS, &credentials);
+            within(steps.command, "the login", login)
+                .await?
                 .map_err(|e| at_server(mail, &e))?;
         }
-        Ok(Self(connection))
+        Ok(Self { connection, steps })
     }
 
     /// Sends one mail; returns once the server has taken it over.
@@ -86,29 +103,38 @@ impl Session {
         to: &Address,
         bytes: &[u8],
     ) -> Result<(), Failed> {
-        let connection = &mut self.0;
-        connection
-            .command(MailFrom::new(Some(from.clone()), Vec::new()))
-            .await
+        let Self { connection, steps } = self;
+        let sender = MailFrom::new(Some(from.clone()), Vec::new());
+        within(steps.command, "MAIL", connection.command(sender))
+            .await?
             .map_err(|e| failed(Step::Sender, &e))?;
-        connection
-            .command(Rcpt::new(to.clone(), Vec::new()))
-            .await
+        let recipient = Rcpt::new(to.clone(), Vec::new());
+        within(steps.command, "RCPT", connection.command(recipient))
+            .await?
             .map_err(|e| failed(Step::Recipient, &e))?;
-        connection
-            .command(Data)
-            .await
+        within(steps.data, "DATA", connection.command(Data))
+            .await?
             .map_err(|e| failed(Step::Content, &e))?;
-        connection
-            .message(bytes)
-            .await
+        within(steps.content, "the content", connection.message(bytes))
+            .await?
             .map_err(|e| failed(Step::Content, &e))?;
         Ok(())
     }
 
     pub(super) async fn close(mut self) {
-        self.0.abort().await;
+        self.connection.abort().await;
     }
+}
+
+/// A step with our own time limit: the server's silence must not be ours.
+async fn within<T>(limit: Duration, asked: &str, step: impl Future<Output = T>) -> Result<T, Down> {
+    timeout(limit, step).await.map_err(|_| Down {
+        sentence: format!(
+            "the mail server did not answer within {} s after {asked}",
+            limit.as_secs_f64()
+        ),
+        needs_person: false,
+    })
 }
 
 fn credentials(mail: &Mail) -> Result<Option<Credentials>, Down> {

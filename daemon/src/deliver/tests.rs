@@ -1,8 +1,13 @@
 //! The real delivery against a server on loopback that takes, refuses, hangs and drops.
 
 mod bench;
+mod patient;
 mod server;
+mod unrecorded;
 
+use tokio::time::Instant;
+
+use super::outbox::BATCH;
 use super::*;
 use crate::ledger::OutboxRow;
 use bench::{Bench, DEADLINE, SHORT, config, plain};

@@ -28,7 +28,7 @@ pub fn read_still(path: &Path, stat: &Stat, bound: u64) -> Content {
         return Content::TooLarge;
     }
     let mut bytes = Vec::with_capacity(usize::try_from(stat.size).unwrap_or(0));
-    let read = fs_err::File::open(path).and_then(|f| f.take(bound + 1).read_to_end(&mut bytes));
+    let read = open(path).and_then(|f| f.take(bound + 1).read_to_end(&mut bytes));
     match (read, look(path)) {
         (Ok(_), Ok(after)) if after == *stat && bytes.len() as u64 == stat.size => {
             Content::Bytes(bytes)
@@ -38,6 +38,26 @@ pub fn read_still(path: &Path, stat: &Stat, bound: u64) -> Content {
             Content::Changed
         }
         (Err(error), _) | (_, Err(error)) => Content::Unreadable(error),
+    }
+}
+
+/// Opens a file, but follows no link: what it points to may be no export.
+fn open(path: &Path) -> std::io::Result<fs_err::File> {
+    use fs_err::os::unix::fs::OpenOptionsExt as _;
+    let follow_none = rustix::fs::OFlags::NOFOLLOW.bits().cast_signed();
+    fs_err::OpenOptions::new()
+        .read(true)
+        .custom_flags(follow_none)
+        .open(path)
+}
+
+/// The refusal of a file that the service's user may not read.
+#[must_use]
+pub fn forbidden() -> Refused {
+    Refused {
+        sentence: "the file may not be read by the service's user".into(),
+        hint: Some("give that user the right to read it; it is looked at again then".into()),
+        perhaps_unfinished: false,
     }
 }
 

@@ -9,8 +9,19 @@ use restudy_config::Plan;
 use restudy_parsers::{Parsed, Refused, Run, fold};
 
 use crate::ledger::{
-    Delivered, ExportState, LedgerError, NewExport, PackedReading, RunFacts, Tally, Write,
+    Delivered, ExportState, Holds, LedgerError, NewExport, PackedReading, RunFacts, Tally, Write,
 };
+
+/// What the same path brought before.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Before {
+    /// Nothing that matters.
+    Nothing,
+    /// The same bytes, read by another rule: what they brought is taken back.
+    SameBytes(i64),
+    /// Other bytes.
+    OtherBytes(i64),
+}
 
 /// Records an export with its runs; answers with its number.
 ///
@@ -21,7 +32,11 @@ pub fn record<'a>(
     new: &mut NewExport<'a>,
     plan: Option<&Plan>,
     outcome: &'a Result<Parsed, Refused>,
+    before: Before,
 ) -> Result<i64, LedgerError> {
+    if let Before::SameBytes(export) = before {
+        take_back(w, export)?;
+    }
     let parsed = match (outcome, plan) {
         (Ok(parsed), Some(_)) => parsed,
         (Ok(parsed), None) => {
@@ -64,12 +79,91 @@ pub fn record<'a>(
         w.add_set_aside(export, aside)?;
     }
     let plan = plan.map_or("", |p| p.name.as_str());
+    let mut by_key: BTreeMap<String, (&Run, Vec<PackedReading>)> = BTreeMap::new();
     for (run, readings) in parsed.runs.iter().zip(by_run) {
         if !readings.is_empty() {
-            join(w, plan, new, export, run, &readings)?;
+            by_key
+                .entry(key(run)?)
+                .or_insert((run, Vec::new()))
+                .1
+                .extend(readings);
         }
     }
+    if let Before::OtherBytes(export) = before {
+        withdraw(w, export, new.shown, &by_key)?;
+    }
+    for (key, (run, readings)) in &by_key {
+        join(w, plan, new, export, key, run, readings)?;
+    }
     Ok(export)
+}
+
+/// Takes back what an export brought. Runs that other exports brought too stay with what those say.
+fn take_back(w: &Write<'_>, export: i64) -> Result<(), LedgerError> {
+    let runs = w.read().runs_of_export(export)?;
+    w.take_back(export)?;
+    for run in runs {
+        let deliveries = w.read().deliveries(run.id)?;
+        if deliveries.is_empty() {
+            w.drop_run(run.id)?;
+            continue;
+        }
+        let counted = run.facts.trial.is_none() && run.facts.taken.is_some();
+        let merged = tally(&deliveries, counted);
+        w.put_tally(
+            run.id,
+            &merged.tallies,
+            &merged.holds(),
+            merged.tie.as_deref(),
+            run.changed,
+        )?;
+    }
+    Ok(())
+}
+
+/// A rewritten file that gives a run another part, appraiser or trial no longer means the run it brought before:
+/// known by the time stamp, or by equal values. Runs of closed rounds stay as they were worked out.
+fn withdraw(
+    w: &Write<'_>,
+    previous: i64,
+    file: &str,
+    now: &BTreeMap<String, (&Run, Vec<PackedReading>)>,
+) -> Result<(), LedgerError> {
+    let before = w.read().runs_of_export(previous)?;
+    let known: BTreeSet<&str> = before.iter().map(|r| r.key.as_str()).collect();
+    let renamed: Vec<_> = now
+        .iter()
+        .filter(|(key, _)| !known.contains(key.as_str()))
+        .collect();
+    for run in before.iter().filter(|r| !now.contains_key(&r.key)) {
+        let closed = match run.place.round {
+            Some(round) => w.read().round(round)?.is_some_and(|r| r.state.closed()),
+            None => false,
+        };
+        if closed {
+            continue;
+        }
+        let values = tally(&w.read().deliveries(run.id)?, false).values;
+        let same_values = |readings: &[PackedReading]| {
+            readings.len() == values.len()
+                && readings.iter().all(|r| {
+                    values
+                        .get(&fold(&r.characteristic))
+                        .is_some_and(|v| same_reading(v, r))
+                })
+        };
+        let is = renamed.iter().find(|(_, (now, readings))| {
+            (now.taken.is_some() && now.taken == run.facts.taken) || same_values(readings)
+        });
+        if let Some((_, (now, _))) = is {
+            let who = facts("", now).who();
+            w.set_tie(
+                run.id,
+                &format!("`{file}` was written anew and gives this run as {who}"),
+            )?;
+        }
+    }
+    Ok(())
 }
 
 fn met(parsed: &Parsed) -> usize {
@@ -81,39 +175,43 @@ fn join(
     plan: &str,
     new: &NewExport<'_>,
     export: i64,
+    key: &str,
     run: &Run,
     readings: &[PackedReading],
 ) -> Result<(), LedgerError> {
-    let key = key(run)?;
-    let known = w.read().run_by_key(plan, &key)?;
+    let known = w.read().run_by_key(plan, key)?;
     let id = match &known {
         Some(row) => row.id,
-        None => w.add_run(plan, &key, &facts(new.instrument, run))?,
+        None => w.add_run(plan, key, &facts(new.instrument, run))?,
     };
     w.add_delivery(id, export, readings)?;
     let counted = run.trial.is_none() && run.taken.is_some();
     let Some(row) = known else {
-        let holds = readings.iter().map(|r| fold(&r.characteristic)).collect();
         let alone = Delivered {
             export,
             path: new.path.to_vec(),
             readings: readings.to_vec(),
         };
         let merged = tally(&[alone], counted);
-        return w.put_tally(id, &merged.tallies, &holds, None, false);
+        return w.put_tally(id, &merged.tallies, &merged.holds(), None, false);
     };
     let merged = tally(&w.read().deliveries(id)?, counted);
-    let holds = merged.values.keys().cloned().collect();
     let closed = match row.place.round {
         Some(round) => w.read().round(round)?.is_some_and(|r| r.state.closed()),
         None => false,
     };
-    if !closed && row.facts.same != run.same {
+    if row.facts.same != run.same && (!closed || merged.last_changed) {
         w.put_same(id, &run.same)?;
     }
     let used = row.place.slot.is_some();
     let changed = row.changed || (closed && used && merged.last_changed);
-    w.put_tally(id, &merged.tallies, &holds, merged.tie.as_deref(), changed)
+    w.put_tally(
+        id,
+        &merged.tallies,
+        &merged.holds(),
+        merged.tie.as_deref(),
+        changed,
+    )
 }
 
 /// What makes two deliveries the same run: the mapped roles, any case, blanks folded.
@@ -135,7 +233,9 @@ fn key(run: &Run) -> Result<String, LedgerError> {
     .map_err(|e| LedgerError::Damaged(e.to_string()))
 }
 
-fn facts(instrument: &str, run: &Run) -> RunFacts {
+/// A run's facts as the ledger keeps them.
+#[must_use]
+pub fn facts(instrument: &str, run: &Run) -> RunFacts {
     RunFacts {
         instrument: instrument.to_owned(),
         part: run.part.clone(),
@@ -162,8 +262,19 @@ pub struct Merged {
     pub last_changed: bool,
 }
 
+impl Merged {
+    /// The characteristics that the run has values of, with their units.
+    #[must_use]
+    pub fn holds(&self) -> Holds {
+        self.values
+            .iter()
+            .map(|(name, r)| (name.clone(), r.unit.clone()))
+            .collect()
+    }
+}
+
 /// Joins a run's deliveries; `counted`: its trial is counted by time stamp, so that another file with the same
-/// stamp and another value is a contradiction, not a correction.
+/// stamp and another value is a contradiction, not a correction, until one of the two files is written anew.
 #[must_use]
 pub fn tally(deliveries: &[Delivered], counted: bool) -> Merged {
     let mut standing: BTreeMap<String, (usize, &PackedReading)> = BTreeMap::new();
@@ -176,7 +287,6 @@ pub fn tally(deliveries: &[Delivered], counted: bool) -> Merged {
         })
         .collect();
     let mut replaced = Vec::new();
-    let mut tie = None;
     let mut last_changed = false;
     for (index, delivered) in deliveries.iter().enumerate() {
         last_changed = false;
@@ -184,10 +294,10 @@ pub fn tally(deliveries: &[Delivered], counted: bool) -> Merged {
             let name = fold(&reading.characteristic);
             match standing.get(&name) {
                 Some((_, known)) if same_reading(known, reading) => tallies[index].copies += 1,
-                Some(&(holder, known)) => {
-                    if counted && deliveries[holder].path != delivered.path {
-                        tie.get_or_insert_with(|| contradiction(known, reading));
-                    }
+                Some(&(holder, _)) if counted && deliveries[holder].path != delivered.path => {
+                    tallies[index].superseded += 1;
+                }
+                Some(&(holder, _)) => {
                     tallies[holder].superseded += 1;
                     replaced.push(name.clone());
                     standing.insert(name, (index, reading));
@@ -204,6 +314,11 @@ pub fn tally(deliveries: &[Delivered], counted: bool) -> Merged {
         .into_iter()
         .map(|(name, (_, r))| (name, r.clone()))
         .collect();
+    let tie = if counted {
+        contradiction(deliveries)
+    } else {
+        None
+    };
     Merged {
         values,
         tallies,
@@ -218,11 +333,30 @@ fn same_reading(a: &PackedReading, b: &PackedReading) -> bool {
         && (&a.unit, a.nominal, a.lower, a.upper) == (&b.unit, b.nominal, b.lower, b.upper)
 }
 
-fn contradiction(known: &PackedReading, other: &PackedReading) -> String {
-    format!(
-        "two exports with the same time stamp give `{}` as {} and as {}; trials are counted by time stamp, \
-         so one of the stamps is wrong",
-        known.characteristic, known.value, other.value
+/// Two files whose present contents give one run different values.
+fn contradiction(deliveries: &[Delivered]) -> Option<String> {
+    let mut latest: BTreeMap<(String, &[u8]), &PackedReading> = BTreeMap::new();
+    for delivered in deliveries {
+        for reading in &delivered.readings {
+            latest.insert((fold(&reading.characteristic), &delivered.path), reading);
+        }
+    }
+    let all: Vec<(&(String, &[u8]), &&PackedReading)> = latest.iter().collect();
+    all.windows(2).find(|pair| pair[0].0.0 == pair[1].0.0 && !same_reading(pair[0].1, pair[1].1)).map(
+        |pair| {
+            let told = |((_, path), reading): (&(String, &[u8]), &&PackedReading)| {
+                let file = path.rsplit(|b| *b == b'/').next().unwrap_or_default();
+                let unit = reading.unit.as_deref().map(|u| format!(" {u}")).unwrap_or_default();
+                format!("{}{unit} in `{}`", reading.value, String::from_utf8_lossy(file))
+            };
+            format!(
+                "`{}` is {} and {} for one time stamp; trials are counted by time stamp, so export the \
+                 right one again under both names, or measure this run again",
+                pair[0].1.characteristic,
+                told(pair[0]),
+                told(pair[1])
+            )
+        },
     )
 }
 
@@ -297,5 +431,11 @@ mod tests {
             delivered(2, "a", &[("x", 2.0)]),
         ];
         assert!(tally(&rewritten, true).tie.is_none());
+        let settled = [
+            delivered(1, "a", &[("x", 1.0)]),
+            delivered(2, "b", &[("x", 2.0)]),
+            delivered(3, "a", &[("x", 2.0)]),
+        ];
+        assert!(tally(&settled, true).tie.is_none(), "both files agree now");
     }
 }

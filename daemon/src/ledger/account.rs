@@ -61,6 +61,21 @@ pub struct RefusedExport {
     pub hint: Option<String>,
 }
 
+/// A run that is kept and not used, for no fault of its own.
+#[derive(Debug, Clone, PartialEq, Eq, serde::Serialize)]
+pub struct UnusedRun {
+    /// Its plan.
+    pub plan: String,
+    /// The export that brought it first.
+    pub export: String,
+    /// The run as people call it.
+    pub run: String,
+    /// `surplus`, `late` or `excluded`.
+    pub status: String,
+    /// Why.
+    pub reason: String,
+}
+
 /// A run, or a piece of an export, that could not be used.
 #[derive(Debug, Clone, PartialEq, Eq, serde::Serialize)]
 pub struct SetAsideRun {
@@ -83,6 +98,33 @@ pub struct SetAsideRun {
 }
 
 impl Read<'_> {
+    /// Runs that are surplus, late or excluded, newest first.
+    ///
+    /// # Errors
+    /// The database's refusal.
+    pub fn unused(&self) -> Result<Vec<UnusedRun>, LedgerError> {
+        let mut statement = self.connection.prepare_cached(
+            "SELECT run.plan, min(export.shown), run.part, coalesce(run.appraiser, ''),
+                    coalesce(' of ' || run.taken, ''), run.status, coalesce(run.reason, '')
+             FROM run JOIN delivery ON delivery.run = run.id JOIN export ON export.id = delivery.export
+             WHERE run.status IN ('surplus', 'late', 'excluded') GROUP BY run.id ORDER BY run.id DESC",
+        )?;
+        let rows = statement.query_map([], |r| {
+            let (part, appraiser, taken): (String, String, String) =
+                (r.get(2)?, r.get(3)?, r.get(4)?);
+            Ok(UnusedRun {
+                plan: r.get(0)?,
+                export: r.get(1)?,
+                run: format!("{} {taken}", format!("{part} {appraiser}").trim())
+                    .trim()
+                    .to_owned(),
+                status: r.get(5)?,
+                reason: r.get(6)?,
+            })
+        })?;
+        Ok(rows.collect::<Result<_, _>>()?)
+    }
+
     /// Counts every reading.
     ///
     /// # Errors
@@ -131,7 +173,7 @@ impl Read<'_> {
     pub fn refused(&self) -> Result<Vec<RefusedExport>, LedgerError> {
         let mut statement = self.connection.prepare_cached(
             "SELECT instrument, shown, sentence, hint FROM export
-             WHERE state = 'refused' AND id IN (SELECT export FROM file) ORDER BY id DESC",
+             WHERE state = 'refused' AND id IN (SELECT export FROM file WHERE NOT gone) ORDER BY id DESC",
         )?;
         let rows = statement.query_map([], |r: &Row<'_>| {
             Ok(RefusedExport {
@@ -157,7 +199,7 @@ impl Read<'_> {
         let mut statement = self.connection.prepare_cached(
             "SELECT export.shown, set_aside.reason FROM set_aside JOIN export ON export.id = set_aside.export
              WHERE export.plan = ?1 AND export.arrived BETWEEN ?2 AND ?3
-               AND export.id IN (SELECT export FROM file) ORDER BY set_aside.id",
+               AND export.id IN (SELECT export FROM file WHERE NOT gone) ORDER BY set_aside.id",
         )?;
         let (from, to) = (opened.unwrap_or(i64::MIN), closed.unwrap_or(i64::MAX));
         let rows = statement.query_map(rusqlite::params![plan, from, to], |r| {
@@ -175,7 +217,7 @@ impl Read<'_> {
             "SELECT export.plan, export.shown, set_aside.place, set_aside.found, set_aside.expected,
                     set_aside.hint, set_aside.reason, set_aside.readings
              FROM set_aside JOIN export ON export.id = set_aside.export
-             WHERE export.id IN (SELECT export FROM file) ORDER BY set_aside.id DESC",
+             WHERE export.id IN (SELECT export FROM file WHERE NOT gone) ORDER BY set_aside.id DESC",
         )?;
         let mut asides: Vec<SetAsideRun> = statement
             .query_map([], |r| {
@@ -195,7 +237,7 @@ impl Read<'_> {
             "SELECT run.plan, min(export.shown), coalesce(run.reason, ''),
                     sum(delivery.count - delivery.copies - delivery.superseded)
              FROM run JOIN delivery ON delivery.run = run.id JOIN export ON export.id = delivery.export
-             WHERE run.status = 'set aside' AND export.id IN (SELECT export FROM file)
+             WHERE run.status = 'set aside' AND export.id IN (SELECT export FROM file WHERE NOT gone)
              GROUP BY run.id ORDER BY run.id DESC",
         )?;
         let by_plan = statement.query_map([], |r| {

@@ -43,8 +43,8 @@ pub struct NewExport<'a> {
     pub shown: &'a str,
     /// Of all its bytes.
     pub sha256: &'a Digest,
-    /// The rule it was read by.
-    pub rule_mark: &'a str,
+    /// The rule, plan and list it was read by.
+    pub mark: &'a str,
     /// ms since 1970.
     pub arrived: i64,
     /// The plan that takes it.
@@ -64,10 +64,10 @@ pub struct NewExport<'a> {
 pub struct DealtWith {
     /// Of its bytes.
     pub sha256: Digest,
-    /// The rule it was read by.
-    pub rule_mark: String,
-    /// True when nothing in it was refused or set aside.
-    pub clean: bool,
+    /// The rule, plan and list it was read by.
+    pub mark: String,
+    /// True when a closed round has a run of it: its reading stands.
+    pub closed: bool,
 }
 
 impl Read<'_> {
@@ -76,11 +76,13 @@ impl Read<'_> {
     /// # Errors
     /// The database's refusal, or a digest of another length.
     pub fn dealt_with(&self, export: i64) -> Result<DealtWith, LedgerError> {
-        let (sha256, rule_mark, clean): (Vec<u8>, String, bool) = self
+        let (sha256, mark, closed): (Vec<u8>, String, bool) = self
             .connection
             .prepare_cached(
-                "SELECT sha256, rule_mark, state <> 'refused' AND NOT EXISTS
-                   (SELECT 1 FROM set_aside WHERE export = export.id)
+                "SELECT sha256, rule_mark, EXISTS
+                   (SELECT 1 FROM delivery JOIN run ON run.id = delivery.run
+                      JOIN round ON round.id = run.round
+                    WHERE delivery.export = export.id AND round.state IN ('complete', 'unfinished'))
                  FROM export WHERE id = ?1",
             )?
             .query_row([export], |r| Ok((r.get(0)?, r.get(1)?, r.get(2)?)))?;
@@ -89,8 +91,8 @@ impl Read<'_> {
             .map_err(|_| LedgerError::Damaged("digest".into()))?;
         Ok(DealtWith {
             sha256,
-            rule_mark,
-            clean,
+            mark,
+            closed,
         })
     }
 
@@ -186,7 +188,7 @@ impl Write<'_> {
                 new.path,
                 new.shown,
                 &new.sha256[..],
-                new.rule_mark,
+                new.mark,
                 new.arrived,
                 new.plan,
                 new.state.as_str(),
@@ -220,6 +222,23 @@ impl Write<'_> {
                 run,
                 aside.readings as i64,
             ])?;
+        Ok(())
+    }
+
+    /// Takes back what an export brought: its bytes are read anew, by another rule.
+    ///
+    /// # Errors
+    /// The database's refusal.
+    pub fn take_back(&self, export: i64) -> Result<(), LedgerError> {
+        for statement in [
+            "DELETE FROM delivery WHERE export = ?1",
+            "DELETE FROM set_aside WHERE export = ?1",
+            "UPDATE export SET state = 'replaced', readings = 0, unplanned = 0 WHERE id = ?1",
+        ] {
+            self.transaction
+                .prepare_cached(statement)?
+                .execute([export])?;
+        }
         Ok(())
     }
 }

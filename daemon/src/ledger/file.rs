@@ -30,6 +30,8 @@ pub struct FileRow {
     pub export: Option<i64>,
     /// Readers of this content that died.
     pub attempts: u32,
+    /// A full look no longer found it.
+    pub gone: bool,
 }
 
 impl Read<'_> {
@@ -39,7 +41,7 @@ impl Read<'_> {
     /// The database's refusal.
     pub fn files(&self, instrument: &str) -> Result<Vec<FileRow>, LedgerError> {
         let mut statement = self.connection.prepare_cached(
-            "SELECT path, size, mtime, ctime, device, inode, export, attempts FROM file WHERE instrument = ?1",
+            "SELECT path, size, mtime, ctime, device, inode, export, attempts, gone FROM file WHERE instrument = ?1",
         )?;
         let rows = statement.query_map([instrument], |r| {
             Ok(FileRow {
@@ -53,6 +55,7 @@ impl Read<'_> {
                 },
                 export: r.get(6)?,
                 attempts: r.get(7)?,
+                gone: r.get(8)?,
             })
         })?;
         Ok(rows.collect::<Result<_, _>>()?)
@@ -78,7 +81,7 @@ impl Write<'_> {
                  VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9)
                  ON CONFLICT (instrument, path) DO UPDATE SET size = excluded.size, mtime = excluded.mtime,
                    ctime = excluded.ctime, device = excluded.device, inode = excluded.inode,
-                   export = excluded.export, attempts = excluded.attempts",
+                   export = excluded.export, attempts = excluded.attempts, gone = 0",
             )?
             .execute(params![
                 instrument,
@@ -94,14 +97,14 @@ impl Write<'_> {
         Ok(())
     }
 
-    /// Forgets a path whose content lives on under another one.
+    /// Records that a full look no longer finds a path, or finds it again. What it brought stays.
     ///
     /// # Errors
     /// The database's refusal.
-    pub fn drop_file(&self, instrument: &str, path: &[u8]) -> Result<(), LedgerError> {
+    pub fn mark_gone(&self, instrument: &str, path: &[u8], gone: bool) -> Result<(), LedgerError> {
         self.transaction
-            .prepare_cached("DELETE FROM file WHERE instrument = ?1 AND path = ?2")?
-            .execute(params![instrument, path])?;
+            .prepare_cached("UPDATE file SET gone = ?3 WHERE instrument = ?1 AND path = ?2")?
+            .execute(params![instrument, path, gone])?;
         Ok(())
     }
 }

@@ -1,6 +1,6 @@
 //! Runs: one part measured once by one appraiser, whatever number of exports it came in.
 
-use std::collections::{BTreeMap, BTreeSet};
+use std::collections::BTreeMap;
 
 use jiff::civil::DateTime;
 use rusqlite::{OptionalExtension, Row, params};
@@ -100,15 +100,20 @@ impl RunFacts {
     }
 }
 
+/// Folded characteristics and the unit that each one's value comes in.
+pub type Holds = BTreeMap<String, Option<String>>;
+
 /// A recorded run.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct RunRow {
     /// Its number, in order of arrival.
     pub id: i64,
+    /// What makes two deliveries the same run.
+    pub key: String,
     /// What it is.
     pub facts: RunFacts,
-    /// Characteristics it has values of, folded.
-    pub holds: BTreeSet<String>,
+    /// Characteristics it has values of, folded, each with its unit.
+    pub holds: Holds,
     /// Why its deliveries contradict each other.
     pub tie: Option<String>,
     /// Its values differ from those its closed round was worked out with.
@@ -143,7 +148,7 @@ pub struct Tally {
 
 const COLUMNS: &str =
     "id, instrument, part, appraiser, trial, factors, same, taken, round_label, holds, tie,
-  changed, round, slot, status, reason";
+  changed, round, slot, status, reason, key";
 
 impl Read<'_> {
     /// The run of that key.
@@ -192,6 +197,17 @@ impl Read<'_> {
         rows.map(|row| row?).collect()
     }
 
+    /// The runs that an export brought readings of.
+    ///
+    /// # Errors
+    /// The database's refusal.
+    pub fn runs_of_export(&self, export: i64) -> Result<Vec<RunRow>, LedgerError> {
+        self.runs(
+            "id IN (SELECT run FROM delivery WHERE export = ?1)",
+            rusqlite::params![export],
+        )
+    }
+
     /// What every export brought for a run, in order of arrival.
     ///
     /// # Errors
@@ -228,7 +244,7 @@ impl Write<'_> {
         self.transaction
             .prepare_cached(
                 "INSERT INTO run (plan, key, instrument, part, appraiser, trial, factors, same, taken,
-                   round_label, holds) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, ?10, '[]')",
+                   round_label, holds) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, ?10, '{}')",
             )?
             .execute(params![
                 plan,
@@ -277,7 +293,7 @@ impl Write<'_> {
         &self,
         run: i64,
         tallies: &[Tally],
-        holds: &BTreeSet<String>,
+        holds: &Holds,
         tie: Option<&str>,
         changed: bool,
     ) -> Result<(), LedgerError> {
@@ -294,7 +310,29 @@ impl Write<'_> {
         Ok(())
     }
 
-    /// A later export of a run whose round is open states what must stay the same anew.
+    /// A run that an export no longer means is set aside, for this reason.
+    ///
+    /// # Errors
+    /// The database's refusal.
+    pub fn set_tie(&self, run: i64, why: &str) -> Result<(), LedgerError> {
+        self.transaction
+            .prepare_cached("UPDATE run SET tie = ?2 WHERE id = ?1")?
+            .execute(params![run, why])?;
+        Ok(())
+    }
+
+    /// Forgets a run that no export brings any more.
+    ///
+    /// # Errors
+    /// The database's refusal.
+    pub fn drop_run(&self, run: i64) -> Result<(), LedgerError> {
+        self.transaction
+            .prepare_cached("DELETE FROM run WHERE id = ?1")?
+            .execute([run])?;
+        Ok(())
+    }
+
+    /// A later export of a run states what must stay the same anew.
     ///
     /// # Errors
     /// The database's refusal.
@@ -368,5 +406,6 @@ fn run_row(r: &Row<'_>) -> Result<RunRow, LedgerError> {
             status: RunStatus::parse(&r.get::<_, String>(14)?)?,
             reason: r.get(15)?,
         },
+        key: r.get(16)?,
     })
 }

@@ -9,6 +9,7 @@ CREATE TABLE file (
   inode      INTEGER NOT NULL,
   export     INTEGER REFERENCES export(id), -- NULL: content not read yet
   attempts   INTEGER NOT NULL DEFAULT 0,    -- readers of this content that died
+  gone       INTEGER NOT NULL DEFAULT 0,    -- a full look no longer found it
   PRIMARY KEY (instrument, path)
 ) WITHOUT ROWID;
 
@@ -26,10 +27,10 @@ CREATE TABLE export (
   path       BLOB NOT NULL,
   shown      TEXT NOT NULL,                 -- path below the watched folder, as shown to people
   sha256     BLOB NOT NULL,
-  rule_mark  TEXT NOT NULL,                 -- changes when the instrument's rule does
+  rule_mark  TEXT NOT NULL,                 -- changes with the rule, the plan that takes it, and that plan's list
   arrived    INTEGER NOT NULL,              -- ms since 1970, our clock
   plan       TEXT,                          -- NULL: not for a plan
-  state      TEXT NOT NULL CHECK (state IN ('read', 'refused', 'no plan')),
+  state      TEXT NOT NULL CHECK (state IN ('read', 'refused', 'no plan', 'replaced')),
   sentence   TEXT,                          -- why it was refused
   hint       TEXT,
   readings   INTEGER NOT NULL,              -- every reading met in it, usable or not
@@ -80,7 +81,7 @@ CREATE TABLE run (
   same        TEXT NOT NULL,                -- JSON object
   taken       TEXT,                         -- civil time of the instrument
   round_label TEXT,
-  holds       TEXT NOT NULL,                -- JSON array: the characteristics it has values of
+  holds       TEXT NOT NULL,                -- JSON object: the characteristics it has values of, with units
   tie         TEXT,                         -- why its deliveries contradict each other
   changed     INTEGER NOT NULL DEFAULT 0,   -- its values differ from those its closed round was worked out with
   round       INTEGER REFERENCES round(id),

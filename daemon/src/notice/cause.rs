@@ -8,10 +8,8 @@
 use restudy_engine::{PART, WITHIN_CELLS};
 
 use crate::evidence::{Evidence, Feature};
+use crate::plain::{in_error, stands_out};
 use crate::record::Record;
-
-/// One level stands out when the others lie within this part of its distance from them.
-const OTHERS_WITHIN: f64 = 0.5;
 
 /// The largest source.
 #[derive(Debug, Clone, PartialEq)]
@@ -45,8 +43,11 @@ pub(super) enum Source {
         factors: Vec<usize>,
         furthest: Option<(usize, usize, f64)>,
     },
-    /// Repeats within a cell; the widest cell's levels and its range.
-    Repeatability { widest: Option<(Vec<usize>, f64)> },
+    /// Repeats within a cell: the widest cell's levels and its range, and the term that one trial leaves in them.
+    Repeatability {
+        widest: Option<(Vec<usize>, f64)>,
+        with: Option<String>,
+    },
 }
 
 /// The largest source of the gauge's variance; `None` when there is no variance, or it cannot be told apart.
@@ -60,6 +61,7 @@ pub(super) fn of(evidence: &Evidence, feature: &Feature, record: &Record) -> Opt
     let source = if component.name == WITHIN_CELLS {
         Source::Repeatability {
             widest: widest(evidence, feature),
+            with: in_error(study).map(|term| term.name),
         }
     } else {
         let factors: Vec<usize> = component
@@ -123,21 +125,7 @@ fn levels(evidence: &Evidence, feature: &Feature, factor: usize) -> Option<Sourc
     let extreme =
         |sign: f64| (0..count).max_by(|a, b| (sign * overall[*a]).total_cmp(&(sign * overall[*b])));
     let (lowest, highest) = (extreme(-1.0)?, extreme(1.0)?);
-    let level = if from_others(&overall, highest) >= -from_others(&overall, lowest) {
-        highest
-    } else {
-        lowest
-    };
-    let by = from_others(&overall, level);
-    let others = || {
-        overall
-            .iter()
-            .enumerate()
-            .filter(|(l, _)| *l != level)
-            .map(|(_, m)| *m)
-    };
-    let range = others().fold(f64::MIN, f64::max) - others().fold(f64::MAX, f64::min);
-    if count > 2 && range <= OTHERS_WITHIN * by.abs() {
+    if let Some((level, by)) = stands_out(&overall) {
         let parts = means
             .iter()
             .filter(|row| from_others(row, level) * by > 0.0)

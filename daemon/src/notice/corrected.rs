@@ -180,6 +180,16 @@ fn first(told: &Told, head: &Correction<'_>, round: &Round<'_>) -> String {
             head.standing
         ));
     }
+    if let Some(record) = head
+        .item
+        .record()
+        .filter(|r| r.standing.judged_by != Some("estimate"))
+    {
+        text.push_str(&format!(
+            " {}.",
+            capital(&words::sentence(&record.standing.why))
+        ));
+    }
     if let Some(limits) = head.item.limits() {
         text.push_str(&format!(
             " Limits {} and {}.",

@@ -7,10 +7,11 @@ use restudy_engine::{Standing, WITHIN_CELLS};
 
 use super::letter::Block;
 use super::news::{Item, News};
-use super::sure::share_and_before;
+use super::sure::{self, share_and_before};
 use super::telling::Telling;
-use super::words::{Scale, capital, count, minute, percent, sentence, span};
+use super::words::{Scale, at_least, capital, count, minute, sentence, span};
 use crate::evidence::Evidence;
+use crate::plain::in_error;
 use crate::record::Record;
 
 /// Characteristics named, and runs named that were not used.
@@ -144,8 +145,8 @@ fn ranked(item: Item<'_>) -> String {
     let least = item
         .record()
         .and_then(|r| r.study.figures.gauge.share_of_tolerance.at_least);
-    if let Some(least) = least.filter(|least| *least >= 0.005) {
-        line.push_str(&format!(", at least {}", percent(least)));
+    if let Some(least) = least.filter(|least| *least >= sure::SAID_FROM) {
+        line.push_str(&format!(", at least {}", at_least(least)));
     }
     if item.outcome.special {
         line.push_str("; special");
@@ -198,10 +199,21 @@ pub(super) fn figures(
     } else {
         format!(" in {}²", scale.unit)
     };
-    vec![
-        Block::Text(spreads),
-        Block::Text(format!("Mean squares{unit} (df): {}.", squares.join(", "))),
-    ]
+    let squares = format!("Mean squares{unit} (df): {}.", squares.join(", "));
+    let one_trial = one_trial(record, telling);
+    [Some(spreads), Some(squares), one_trial]
+        .into_iter()
+        .flatten()
+        .map(Block::Text)
+        .collect()
+}
+
+/// What one trial cannot tell, with the plant's words for the factors.
+fn one_trial(record: &Record, telling: Telling<'_>) -> Option<String> {
+    let study = &record.study;
+    let remark = study.remarks.iter().find(|r| r.kind == "one trial")?;
+    let term = in_error(study)?.name;
+    Some(remark.text.replace(&term, &telling.in_plant_words(&term)))
 }
 
 /// Where to read on.

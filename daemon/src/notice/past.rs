@@ -5,6 +5,8 @@ use std::collections::BTreeMap;
 use restudy_engine::{Study, WITHIN_CELLS, quantile};
 use serde_json::Value;
 
+use crate::plain::same_model;
+
 /// A change of repeatability is called real below this one-sided p.
 const REAL_BELOW: f64 = 0.05;
 
@@ -15,6 +17,9 @@ pub(super) struct Past {
     /// Share of tolerance of the repeatability.
     pub(super) repeatability: Option<f64>,
     within_df: Option<f64>,
+    /// Lines of its table of mean squares.
+    lines: Vec<String>,
+    trials: Option<u64>,
     lower: Option<f64>,
     upper: Option<f64>,
 }
@@ -40,22 +45,33 @@ impl Past {
                     component["sd"]["estimate"].as_f64()?,
                 ))
             });
-        let within = record["mean_squares"]
-            .as_array()?
-            .iter()
-            .find(|line| line["name"] == WITHIN_CELLS);
+        let lines = record["mean_squares"].as_array()?;
+        let within = lines.iter().find(|line| line["name"] == WITHIN_CELLS);
+        let names = lines.iter().filter_map(|line| line["name"].as_str());
         Some(Self {
             sds: sds.collect(),
             repeatability: record["figures"]["repeatability"]["share_of_tolerance"]["estimate"]
                 .as_f64(),
             within_df: within.and_then(|line| line["df"].as_f64()),
+            lines: names.map(str::to_owned).collect(),
+            trials: record["design"]["trials"].as_u64(),
             lower: record["lower"].as_f64(),
             upper: record["upper"].as_f64(),
         })
     }
 
-    /// How the repeatability has moved; `None` where one of the two rounds does not tell it.
+    /// Whether the line within cells holds repeats and nothing else than before: more than one trial in both
+    /// rounds, and the same terms kept out of it.
+    pub(super) fn same_repeats(&self, now: &Study) -> bool {
+        let repeats = now.design.trials > 1 && self.trials.is_some_and(|trials| trials > 1);
+        repeats && same_model(now, &self.lines)
+    }
+
+    /// How the repeatability has moved; `None` where the two rounds do not tell it.
     pub(super) fn repeatability_now(&self, now: &Study) -> Option<Repeatability> {
+        if !self.same_repeats(now) {
+            return None;
+        }
         let line = now
             .mean_squares
             .iter()

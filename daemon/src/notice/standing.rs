@@ -1,12 +1,14 @@
 //! The message of a round in which standings changed.
 
+use restudy_engine::Judge;
+
 use super::cause::{self, Cause, Source};
 use super::facts::{self, CAUTION};
 use super::letter::{Letter, Line};
 use super::news::{Item, News};
 use super::past::Past;
 use super::telling::Telling;
-use super::words::{Scale, capital, count, day, sentence, some};
+use super::words::{Scale, capital, count, day, limit, sentence, some};
 use super::{Round, sure};
 use crate::record::Record;
 
@@ -79,10 +81,13 @@ fn subject(round: &Round<'_>, head: Item<'_>) -> String {
                 .into_iter()
                 .flatten()
                 .collect::<Vec<_>>();
+            let at = match round.plan.judge {
+                Judge::Estimate => sure::share(head),
+                _ => format!("\"{}\", estimate {}", head.now(), sure::share(head)),
+            };
             return format!(
-                "BACK: {}: {label} at {} of tolerance ({})",
+                "BACK: {}: {label} at {at} of tolerance ({})",
                 round.place(),
-                sure::share(head),
                 aside.join("; ")
             );
         }
@@ -229,7 +234,7 @@ fn back(
     let held: Vec<String> = round
         .items
         .iter()
-        .filter_map(|i| sure::held(*i))
+        .filter_map(|i| sure::held(*i, round.plan.judge))
         .take(IN_A_LINE)
         .collect();
     let mut also = also(round, head, None);
@@ -237,8 +242,17 @@ fn back(
         also = format!("{also} {}.", capital(&held.join(". ")));
     }
     let before = head.before().map_or("above its limit", |b| b.as_str());
+    let begun = head
+        .limit()
+        .filter(|(at, _)| head.share().is_some_and(|share| share > *at))
+        .map_or_else(String::new, |(at, _)| {
+            format!(
+                "the estimate still lies above {}: finish what was begun at the gauge; ",
+                limit(at)
+            )
+        });
     vec![
-        line("", sure::back(head)),
+        line("", sure::back(head, round.plan.judge)),
         line(
             "How sure",
             sure::below(head).map_or_else(|| "the data do not tell.".into(), |s| format!("{s}.")),
@@ -253,7 +267,7 @@ fn back(
         line(
             "Next",
             format!(
-                "nothing to do at the gauge. Whether results measured while it stood at \"{before}\" need another look is your call."
+                "{begun}whether results measured while it stood at \"{before}\" need another look is your call."
             ),
         ),
     ]

@@ -1,17 +1,21 @@
 //! What a characteristic takes of its tolerance, and how sure that is.
 
 use jiff::tz::TimeZone;
-use restudy_engine::{PART, Standing};
+use restudy_engine::{Judge, Standing};
 
+use super::judged;
 use super::news::{Item, News};
 use super::past::Past;
-use super::words::{capital, chance, day, limit, name, percent, percent_against, sentence};
+use super::words::{
+    at_least, at_most, capital, chance, day, limit, name, percent, percent_against, sentence,
+};
 use crate::evidence::Evidence;
 use crate::figures::significant;
+use crate::plain::UpperEnd;
 use crate::record::Record;
 
-/// An upper limit further above the estimate than this helps nobody.
-const USEFUL_UPPER: f64 = 1.5;
+/// A lower limit below this is not worth a word.
+pub(super) const SAID_FROM: f64 = 0.01;
 
 /// The share, or that there is none.
 pub(super) fn share(item: Item<'_>) -> String {
@@ -97,7 +101,7 @@ fn width(record: &Record) -> String {
 /// How sure it is that the true share is above its limit, and above what it is for sure.
 pub(super) fn above(item: Item<'_>, record: &Record, evidence: &Evidence) -> String {
     let figure = &record.study.figures.gauge.share_of_tolerance;
-    let confidence = percent(record.study.confidence);
+    let confidence = limit(record.study.confidence);
     let mut parts = Vec::new();
     if let Some((at, Some(p))) = item.limit() {
         parts.push(format!(
@@ -106,8 +110,8 @@ pub(super) fn above(item: Item<'_>, record: &Record, evidence: &Evidence) -> Str
             limit(at)
         ));
     }
-    if let Some(least) = figure.at_least.filter(|least| *least >= 0.005) {
-        parts.push(format!("{confidence} that it is above {}", percent(least)));
+    if let Some(least) = figure.at_least.filter(|least| *least >= SAID_FROM) {
+        parts.push(format!("{confidence} that it is above {}", at_least(least)));
     }
     if parts.is_empty() {
         return format!(
@@ -119,93 +123,84 @@ pub(super) fn above(item: Item<'_>, record: &Record, evidence: &Evidence) -> Str
                 .unwrap_or_default()
         );
     }
-    let times = |upper: f64| figure.estimate.map_or(f64::INFINITY, |e| upper / e);
-    let end = match figure.upper {
-        Some(upper) if times(upper) < 1.0 => {
-            "The estimate lies above its upper limit: components below zero count as zero in it"
-                .into()
-        }
-        Some(upper) if upper <= 1.0 && times(upper) <= USEFUL_UPPER => {
-            format!("Two-sided, {confidence}: at most {}", percent(upper))
-        }
-        _ => few(evidence),
-    };
-    format!("{}. {end}.", parts.join(", "))
-}
-
-/// Why there is no useful upper end: the factor with the fewest levels.
-fn few(evidence: &Evidence) -> String {
-    let others = evidence
-        .factors
-        .iter()
-        .filter(|f| f.name != PART && f.levels.len() > 1);
-    match others.min_by_key(|f| f.levels.len()) {
-        Some(factor) => format!(
-            "{} {}s give no useful upper end",
-            capital(&number(factor.levels.len())),
-            name(&factor.word)
-        ),
-        None => "This design gives no useful upper end".into(),
-    }
-}
-
-fn number(n: usize) -> String {
-    let words = [
-        "two", "three", "four", "five", "six", "seven", "eight", "nine",
-    ];
-    n.checked_sub(2)
-        .and_then(|i| words.get(i))
-        .map_or_else(|| n.to_string(), |word| (*word).to_owned())
+    let end = UpperEnd::of(&record.study, &evidence.factors).sentence(&confidence, at_most);
+    format!("{}. {}.", parts.join(", "), sentence(&end))
 }
 
 /// The first line of a characteristic that came back.
-pub(super) fn back(item: Item<'_>) -> String {
+pub(super) fn back(item: Item<'_>, judge: Judge) -> String {
     let (label, now) = (capital(&item.label()), item.now());
-    match (item.before(), item.limits(), item.share()) {
-        (Some(before @ (Standing::Act | Standing::Watch)), Some(limits), Some(_)) => {
+    let before = item.before();
+    match (before, item.limits(), judged::of(item, judge)) {
+        (Some(before @ (Standing::Act | Standing::Watch)), Some(limits), Some(judged)) => {
             let held = if before == Standing::Act {
                 limits.act
             } else {
                 limits.watch
             };
-            format!(
-                "{label} has left \"{before}\": {}, below the {} needed to come back ({} × {}). Now \"{now}\".",
-                share_and_before(item),
+            let needed = format!(
+                "below the {} needed to come back ({} × {})",
                 limit(limits.back_below * held),
                 limits.back_below,
-                limit(held),
+                limit(held)
+            );
+            match judged.name {
+                None => format!(
+                    "{label} has left \"{before}\": {}, {needed}. Now \"{now}\".",
+                    share_and_before(item)
+                ),
+                Some(name) => format!(
+                    "{label} has left \"{before}\": {name} is {}, {needed}. The estimate is {}. Now \"{now}\".",
+                    judged.value,
+                    share_and_before(item)
+                ),
+            }
+        }
+        _ => {
+            let rule = match judge {
+                Judge::Estimate => String::new(),
+                _ => format!(" {}.", capital(&sentence(item.why()))),
+            };
+            format!(
+                "{label} is judged again: {} of the tolerance.{rule} Now \"{now}\".",
+                share(item)
             )
         }
-        _ => format!(
-            "{label} is judged again: {} of the tolerance. Now \"{now}\".",
-            share(item)
-        ),
     }
 }
 
-/// How sure it is that the true share is below the limit it came back under.
+/// How sure it is on which side of the limit that it came back under the true share lies.
 pub(super) fn below(item: Item<'_>) -> Option<String> {
     let (at, p) = item.limit()?;
+    let above = p?;
+    let (p, side) = if above > 0.5 {
+        (above, "still above")
+    } else {
+        (1.0 - above, "below")
+    };
     Some(format!(
-        "confidence {} that the true share is below {}",
-        chance(1.0 - p?),
+        "confidence {} that the true share is {side} {}",
+        chance(p),
         limit(at)
     ))
 }
 
-/// Why a standing is held although the share is not above its limit.
-pub(super) fn held(item: Item<'_>) -> Option<String> {
-    let (limits, share_now) = (item.limits()?, item.share()?);
+/// Why a standing is held although the judged figure is not above its limit.
+pub(super) fn held(item: Item<'_>, judge: Judge) -> Option<String> {
+    let (limits, judged) = (item.limits()?, judged::of(item, judge)?);
     let at = match item.news {
         News::StillAct => limits.act,
         News::StillWatch => limits.watch,
         _ => return None,
     };
-    (share_now <= at).then(|| {
+    let is_at = match judged.name {
+        None => format!("is at {}", judged.value),
+        Some(name) => format!("is held: {name} is {}", judged.value),
+    };
+    (judged.share <= at).then(|| {
         format!(
-            "{} is at {}: under {}, not yet under {}, so it stays at {}",
+            "{} {is_at}: under {}, not yet under {}, so it stays at {}",
             item.label(),
-            share(item),
             limit(at),
             limit(limits.back_below * at),
             item.now()

@@ -6,6 +6,7 @@ use super::cause::{Cause, Source};
 use super::past::{Past, Repeatability};
 use super::words::{self, Scale, count, list, percent};
 use crate::evidence::Evidence;
+use crate::plain::plural;
 
 /// More other levels than these are counted, not named.
 const OTHERS_NAMED: usize = 3;
@@ -81,7 +82,13 @@ impl Telling<'_> {
                 };
                 format!("{}{where_}; that makes {part}", words::capital(&what))
             }
-            Source::Repeatability { widest } => {
+            Source::Repeatability {
+                with: Some(term), ..
+            } => format!(
+                "Repeatability with {} makes {part}; one trial does not tell them apart",
+                self.in_plant_words(term)
+            ),
+            Source::Repeatability { widest, with: None } => {
                 let where_ = widest.as_ref().map(|(levels, range)| {
                     let runs = count(self.evidence.trials, "run");
                     format!(
@@ -128,7 +135,11 @@ impl Telling<'_> {
                 ),
                 _ => "look at the combinations that differ; then repeat the whole round".to_owned(),
             },
-            Source::Repeatability { .. } => {
+            Source::Repeatability { with: Some(term), .. } => format!(
+                "repeat the whole round with two trials or more: only they tell repeatability from {}",
+                self.in_plant_words(term)
+            ),
+            Source::Repeatability { with: None, .. } => {
                 "same part, same hands, other value: look at seat, clamping, stylus and cleaning; then repeat the whole round".to_owned()
             }
         }
@@ -168,6 +179,7 @@ impl Telling<'_> {
             .components
             .iter()
             .filter(|c| c.of != [PART])
+            .filter(|c| c.name != WITHIN_CELLS || past.same_repeats(now))
             .filter_map(|c| {
                 Some((
                     c.name.as_ref(),
@@ -236,14 +248,5 @@ impl Telling<'_> {
             }
         });
         names.collect::<Vec<_>>().join(" with ")
-    }
-}
-
-/// Of the plant's word for a factor.
-fn plural(word: &str) -> String {
-    if word.ends_with('s') {
-        word.to_owned()
-    } else {
-        format!("{word}s")
     }
 }

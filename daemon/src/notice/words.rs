@@ -6,13 +6,12 @@ use restudy_engine::Limits;
 
 use crate::figures::significant;
 use crate::now::in_zone;
+use crate::plain::{Rounded, percent_as_set};
 
 /// Names out of exports are cut to this many characters.
 const NAME_MAX: usize = 80;
 /// Sentences from elsewhere are cut to this many characters.
 const SENTENCE_MAX: usize = 400;
-/// Shares closer than this are the same.
-const SAME: f64 = 1e-9;
 /// Above this a gauge sd in mm is told in mm, not in µm.
 const MM_FROM: f64 = 0.1;
 
@@ -21,34 +20,33 @@ pub(super) fn percent(share: f64) -> String {
     format!("{:.0} %", 100.0 * share)
 }
 
-/// A share in whole per cent; with more digits where whole ones would put it on another side of a limit.
-pub(super) fn percent_against(share: f64, limits: Option<Limits>) -> String {
-    let near = limits.map_or([f64::INFINITY; 4], |l| {
-        [l.act, l.watch, l.act * l.back_below, l.watch * l.back_below]
-    });
-    let side = |x: f64, limit: f64| {
-        if (x - limit).abs() < SAME {
-            0
-        } else if x < limit {
-            -1
-        } else {
-            1
-        }
-    };
-    let told = |decimals: i32| {
-        let shown =
-            (share * 100.0 * 10_f64.powi(decimals)).round() / (100.0 * 10_f64.powi(decimals));
-        near.iter()
-            .all(|limit| side(shown, *limit) == side(share, *limit))
-    };
-    let decimals = (0..3).find(|d| told(*d)).unwrap_or(3);
-    format!("{:.*} %", decimals as usize, 100.0 * share)
+/// A lower limit of a share in whole per cent.
+pub(super) fn at_least(share: f64) -> String {
+    rounded(Rounded::Down, share, None)
 }
 
-/// A limit as the plan has it.
+/// An upper limit of a share in whole per cent; never as much as the whole tolerance.
+pub(super) fn at_most(share: f64) -> String {
+    format!("{} %", Rounded::Up.beside(100.0 * share, &[100.0], 0))
+}
+
+/// A share in whole per cent; with more digits where whole ones would put it on another side of a limit.
+pub(super) fn percent_against(share: f64, limits: Option<Limits>) -> String {
+    rounded(Rounded::Nearest, share, limits)
+}
+
+/// The same, rounded one way.
+pub(super) fn rounded(rounded: Rounded, share: f64, limits: Option<Limits>) -> String {
+    let near = limits.map(|l| {
+        [l.act, l.watch, l.act * l.back_below, l.watch * l.back_below].map(|limit| 100.0 * limit)
+    });
+    let near = near.as_ref().map_or(&[][..], |near| near);
+    format!("{} %", rounded.beside(100.0 * share, near, 0))
+}
+
+/// A limit or a confidence as the plan has it.
 pub(super) fn limit(share: f64) -> String {
-    let text = format!("{:.2}", 100.0 * share);
-    format!("{} %", text.trim_end_matches('0').trim_end_matches('.'))
+    format!("{} %", percent_as_set(share))
 }
 
 /// A chance to 5 %; never a certainty.

@@ -12,6 +12,7 @@ use super::spread::Spread;
 use super::subject::{Cause, Subject};
 use super::unit::Unit;
 use super::words::{list, percent};
+use crate::plain::plural;
 
 /// The least part of the spread that a step must take away to be worth advice.
 const WORTH: f64 = 0.01;
@@ -78,9 +79,11 @@ impl Ladder {
                 )
             })
             .collect();
+        let undivided = subject.undivided().is_some();
         let steps = parts
             .iter()
             .enumerate()
+            .filter(|(_, (cause, ..))| *cause != Cause::Repeats || !undivided)
             .filter_map(|(i, (cause, variance, term))| {
                 let (change, kept) = match cause {
                     Cause::Repeats => (Change::Twice, OF_TWO * OF_TWO * variance),
@@ -123,8 +126,18 @@ impl Ladder {
         (least.sd < (1.0 - WORTH) * self.now.sd).then_some(least)
     }
 
-    /// The longest step as one sentence of advice.
+    /// The longest step as advice, and what no step here can take away.
     pub(super) fn advice(&self, subject: Subject<'_>, spread: &Spread) -> String {
+        let step = self.step(subject, spread);
+        match subject.undivided() {
+            Some(term) => format!(
+                "{step} One trial does not tell repeatability from {term}; two or more would."
+            ),
+            None => step,
+        }
+    }
+
+    fn step(&self, subject: Subject<'_>, spread: &Spread) -> String {
         let unit = subject.unit();
         let amount = |sd: f64| amount(sd, subject.share_per_sd(), &unit);
         let Some(step) = self.longest() else {
@@ -176,7 +189,14 @@ fn who(term: &str, subject: Subject<'_>, spread: &Spread, unit: &Unit) -> Option
     let (_, factor) = subject
         .readers()
         .filter(|(_, factor)| factor.word == term)?;
-    let found = spread.outstanding()?;
+    let Some(found) = spread.outstanding() else {
+        let (lowest, highest, by) = spread.ends()?;
+        return Some(format!(
+            "{} differ by {}, from {lowest} (lowest) to {highest} (highest)",
+            plural(term),
+            unit.three_digits(by)
+        ));
+    };
     let others: Vec<String> = factor
         .levels
         .iter()
@@ -250,8 +270,8 @@ mod tests {
         // 6 √2 / 40 = 21 %, 6 × 2 / 40 = 30 %.
         assert_eq!(
             advice,
-            "The longest step down is without the loading differences, 21 % instead of 30 %: KL reads 2.00 mm lower \
-             than MO, on 2 of 2 parts."
+            "The longest step down is without the loading differences, 21 % instead of 30 %: loadings differ by \
+             2.00 mm, from KL (lowest) to MO (highest)."
         );
     }
 }

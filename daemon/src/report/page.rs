@@ -11,15 +11,16 @@ use crate::analyse::study::Outcome;
 use crate::analyse::worked::Worked;
 use crate::evidence::Evidence;
 use crate::now::in_zone;
+use crate::plain::interactions;
 
 use super::axis::Axis;
 use super::pieces::{standing, time};
 use super::ranking::{PICTURES_MAX, has_pictures, ranked};
 use super::section::{anchor, studied, without_study};
-use super::sentence::{self, share_words, sure};
+use super::sentence::{self, said_least, share_words, sure};
 use super::subject::Subject;
 use super::svg;
-use super::words::{capital, count, limit, list, percent, short};
+use super::words::{at_least, capital, count, limit, list, percent, short};
 
 const STYLE: &str = include_str!("style.css");
 const CAUTION: &str = "A study is evidence about a gauge, not a release of product. What follows from it, and every rule of a \
@@ -57,7 +58,7 @@ pub fn page(site: &str, zone: &TimeZone, plan: &Plan, worked: &Worked) -> String
                     (ranking(worked, &ranked, &plan.limits))
                     @for outcome in &ranked { (section(worked, outcome)) }
                     (not_used(evidence))
-                    (method(plan, evidence))
+                    (method(plan, worked))
                     (sources(evidence))
                 }
                 footer { p { (CAUTION) } }
@@ -112,9 +113,9 @@ fn row(worked: &Worked, outcome: &Outcome, limits: &Limits) -> Markup {
     let share = record
         .and_then(|r| share_words(r))
         .unwrap_or_else(|| "–".to_owned());
-    let at_least = record
-        .and_then(|r| r.study.figures.gauge.share_of_tolerance.at_least)
-        .map(|x| format!("at least {}", percent(x)));
+    let least = record
+        .and_then(|r| said_least(r))
+        .map(|least| format!("at least {}", at_least(least)));
     let before = match earlier {
         Some(earlier) => match earlier.study.share {
             Some(share) => format!(
@@ -130,15 +131,10 @@ fn row(worked: &Worked, outcome: &Outcome, limits: &Limits) -> Markup {
         Ok(record) => record.standing.why.clone(),
         Err(fault) => fault.clone(),
     });
-    let details: Vec<String> = [
-        why_not,
-        at_least,
-        record.and_then(|r| sure(r)),
-        Some(before),
-    ]
-    .into_iter()
-    .flatten()
-    .collect();
+    let details: Vec<String> = [why_not, least, record.and_then(|r| sure(r)), Some(before)]
+        .into_iter()
+        .flatten()
+        .collect();
     html! {
         li {
             div class="entry" {
@@ -175,21 +171,20 @@ fn bar(outcome: &Outcome, plan: &Limits) -> Markup {
 }
 
 fn section(worked: &Worked, outcome: &Outcome) -> Markup {
-    let feature = worked.evidence.features.get(outcome.feature);
-    match (&outcome.study, feature) {
-        (Ok(record), Some(feature)) => {
-            let earlier = worked.earlier.get(&outcome.characteristic);
-            let subject = Subject {
-                record,
-                feature,
-                evidence: &worked.evidence,
-                earlier,
-            };
-            studied(outcome, subject, has_pictures(worked, outcome))
-        }
-        (Ok(_), None) => without_study(outcome, "its readings are not at hand"),
+    match (&outcome.study, subject(worked, outcome)) {
         (Err(fault), _) => without_study(outcome, fault),
+        (Ok(_), None) => without_study(outcome, "its readings are not at hand"),
+        (Ok(_), Some(subject)) => studied(outcome, subject, has_pictures(worked, outcome)),
     }
+}
+
+fn subject<'a>(worked: &'a Worked, outcome: &'a Outcome) -> Option<Subject<'a>> {
+    Some(Subject {
+        record: outcome.study.as_ref().ok()?,
+        feature: worked.evidence.features.get(outcome.feature)?,
+        evidence: &worked.evidence,
+        earlier: worked.earlier.get(&outcome.characteristic),
+    })
 }
 
 fn not_used(evidence: &Evidence) -> Markup {
@@ -206,18 +201,13 @@ fn not_used(evidence: &Evidence) -> Markup {
     }
 }
 
-fn method(plan: &Plan, evidence: &Evidence) -> Markup {
+fn method(plan: &Plan, worked: &Worked) -> Markup {
+    let evidence = &worked.evidence;
     let factors: Vec<String> = evidence
         .factors
         .iter()
         .map(|f| count(f.levels.len(), &f.word))
         .collect();
-    let interaction = match plan.interaction {
-        Interaction::Keep => "is always kept".to_owned(),
-        Interaction::PoolAbove(p) => {
-            format!("is pooled into repeatability when its p is above {p}")
-        }
-    };
     let judged = match plan.judge {
         Judge::Estimate => "the estimated share".to_owned(),
         Judge::Chance(p) => format!("the share that is exceeded with {} confidence", limit(p)),
@@ -229,7 +219,7 @@ fn method(plan: &Plan, evidence: &Evidence) -> Markup {
             h2 { "How was it worked out?" }
             ul {
                 li { "Design: " (factors.join(" × ")) ", each cell " (count(evidence.trials, "trial")) "." }
-                li { "Method: crossed random-effects analysis of variance; the interaction of parts with other factors " (interaction) ". Components below zero count as zero." }
+                li { "Method: crossed random-effects analysis of variance" (interaction(plan, worked)) ". Components below zero count as zero." }
                 li { "Share of tolerance: " (short(plan.spread_sds)) " gauge standard deviations over the width of the tolerance." }
                 li { "Limits: " (limit(plan.confidence)) " two-sided, “at least” " (limit(plan.confidence)) " one-sided; exact for repeatability, modified large sample for the rest." }
                 li { "Standing: " (judged) " against watch " (limit(limits.watch)) " and act " (limit(limits.act)) "; a limit once reached is left only below " (short(limits.back_below)) " of it. A characteristic may have limits of its own." }
@@ -239,6 +229,28 @@ fn method(plan: &Plan, evidence: &Evidence) -> Markup {
             }
         }
     }
+}
+
+/// What becomes of the interaction, as far as the design has one.
+fn interaction(plan: &Plan, worked: &Worked) -> String {
+    let studied = worked.outcomes.iter().find_map(|o| subject(worked, o));
+    let undivided = studied.and_then(Subject::undivided);
+    let some = studied.is_none_or(|s| !interactions(&s.record.study).is_empty());
+    let choice = match plan.interaction {
+        Interaction::Keep => "is always kept".to_owned(),
+        Interaction::PoolAbove(p) => {
+            format!("is pooled into repeatability when its p is above {p}")
+        }
+    };
+    let choice = if some {
+        format!("; the interaction of parts with other factors {choice}")
+    } else {
+        String::new()
+    };
+    let one_trial = undivided.map_or_else(String::new, |term| {
+        format!("; one trial does not tell {term} from repeatability")
+    });
+    format!("{choice}{one_trial}")
 }
 
 fn sources(evidence: &Evidence) -> Markup {

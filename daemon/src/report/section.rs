@@ -30,7 +30,7 @@ pub(super) fn studied(outcome: &Outcome, subject: Subject<'_>, with_pictures: bo
     html! {
         section id=(anchor(outcome)) {
             (heading(outcome))
-            p { (sentence::characteristic(record, subject.earlier)) }
+            p { (sentence::characteristic(subject)) }
             @if with_pictures { (pictures(outcome, subject)) }
             (figures(subject))
             (mean_squares(subject))

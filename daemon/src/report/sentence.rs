@@ -4,12 +4,14 @@ use restudy_engine::{Limits, Standing};
 
 use crate::analyse::study::Outcome;
 use crate::ledger::Earlier;
+use crate::plain::UpperEnd;
 use crate::record::Record;
 
-use super::words::{chance, limit, list, percent, percent_beside};
+use super::subject::Subject;
+use super::words::{at_least, at_most, chance, limit, list, percent, percent_beside};
 
-/// An upper limit above this share of the tolerance tells nobody anything.
-const UPPER_USEFUL: f64 = 1.0;
+/// A lower limit below this is not worth a word.
+const SAID_FROM: f64 = 0.01;
 
 /// The whole round in one sentence; the outcomes come worst first.
 pub(super) fn round(ranked: &[&Outcome]) -> String {
@@ -51,8 +53,10 @@ pub(super) fn round(ranked: &[&Outcome]) -> String {
 }
 
 /// One characteristic in one or two sentences.
-pub(super) fn characteristic(record: &Record, earlier: Option<&Earlier>) -> String {
-    let before = earlier
+pub(super) fn characteristic(subject: Subject<'_>) -> String {
+    let record = subject.record;
+    let before = subject
+        .earlier
         .map(|e| format!(" {}", before(e)))
         .unwrap_or_else(|| " This is its first study.".to_owned());
     let (Some(share), Some(limits)) = (share_words(record), record.standing.limits) else {
@@ -62,29 +66,23 @@ pub(super) fn characteristic(record: &Record, earlier: Option<&Earlier>) -> Stri
         Standing::NotJudged => return format!("Not judged: {}.{before}", record.standing.why),
         standing => place(record, standing, &limits),
     };
-    let at_least = record
-        .study
-        .figures
-        .gauge
-        .share_of_tolerance
-        .at_least
-        .filter(|_| record.standing.now != Standing::Under);
-    let at_least = at_least
-        .map(|least| {
-            format!(
-                "; {} that it is above {}",
-                limit(record.study.confidence),
-                percent(least)
-            )
-        })
+    let confidence = limit(record.study.confidence);
+    let least = said_least(record).filter(|_| record.standing.now != Standing::Under);
+    let least = least
+        .map(|least| format!("; {confidence} that it is above {}", at_least(least)))
         .unwrap_or_default();
     let sure = sure(record)
-        .map(|sure| format!(" How sure: {sure}{at_least}."))
+        .map(|sure| format!(" How sure: {sure}{least}."))
         .unwrap_or_default();
-    format!(
-        "The gauge takes {share} of the tolerance, {place}.{sure}{}{before}",
-        upper(record)
-    )
+    let end = UpperEnd::of(&record.study, &subject.evidence.factors);
+    let end = end.sentence(&confidence, at_most);
+    format!("The gauge takes {share} of the tolerance, {place}.{sure} {end}.{before}")
+}
+
+/// The one-sided lower limit of the share where it says something.
+pub(super) fn said_least(record: &Record) -> Option<f64> {
+    let share = &record.study.figures.gauge.share_of_tolerance;
+    share.at_least.filter(|least| *least >= SAID_FROM)
 }
 
 /// The study of the round before: its share and standing.
@@ -185,17 +183,4 @@ fn place(record: &Record, standing: Standing, limits: &Limits) -> String {
             record.standing.why
         ),
     }
-}
-
-/// Whether the data set a useful upper end; empty while they do.
-fn upper(record: &Record) -> String {
-    let share = &record.study.figures.gauge.share_of_tolerance;
-    let useless = share.open.is_some()
-        || share
-            .upper
-            .is_some_and(|u| u > UPPER_USEFUL && share.estimate.is_some_and(|e| e < u));
-    if !useless {
-        return String::new();
-    }
-    " The data give no useful upper end.".to_owned()
 }

@@ -9,7 +9,7 @@ use super::axis::Axis;
 use super::pieces::Strip;
 use super::subject::Subject;
 use super::svg::{self, Side};
-use super::words::{limit, percent, percent_beside};
+use super::words::{at_least, limit, percent_beside};
 
 const BAR_TOP: f64 = 20.0;
 const BAR_HEIGHT: f64 = 16.0;
@@ -43,15 +43,15 @@ pub(super) fn share(subject: Subject<'_>) -> Option<Strip> {
         (svg::beside(act, ACT_TEXT, Side::roomier(act), "halo", &format!("act {}", limit(limits.act))))
         (svg::beside(end, 14.0, Side::roomier(end), "strong halo", &value))
     };
-    let at_least = match subject.share().at_least {
-        Some(at_least) => format!(
+    let least = match subject.share().at_least {
+        Some(least) => format!(
             "Solid: at least {}, with {} confidence; lighter: from there to the estimate.",
-            percent(at_least),
+            at_least(least),
             limit(subject.record.study.confidence)
         ),
         None => "Its lower limit is not known.".to_owned(),
     };
-    let caption = format!("Bar: the gauge's share of the tolerance, {value}. {at_least}");
+    let caption = format!("Bar: the gauge's share of the tolerance, {value}. {least}");
     let aloud = format!(
         "Watch limit {}, act limit {}.",
         limit(limits.watch),

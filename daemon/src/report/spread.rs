@@ -1,6 +1,7 @@
 //! Readings about their part's mean: who reads what on which part.
 
 use super::subject::Subject;
+use crate::plain::stands_out;
 
 /// All readings of a characteristic, part by part, in reading units.
 #[derive(Debug, Clone, PartialEq)]
@@ -79,20 +80,10 @@ impl Spread {
             .collect()
     }
 
-    /// The reader furthest from the mean of the others; `None` when there is nothing to compare.
+    /// The reader who stands out from the others; `None` when nobody does.
     pub(super) fn outstanding(&self) -> Option<Outstanding> {
-        let offsets = self.offsets();
-        let against = |reader: usize| {
-            let others = offsets
-                .iter()
-                .enumerate()
-                .filter(|&(other, _)| other != reader);
-            Some(offsets[reader]? - mean(others.filter_map(|(_, offset)| *offset))?)
-        };
-        let (reader, offset) = (0..self.readers.len())
-            .filter_map(|reader| Some((reader, against(reader)?)))
-            .reduce(|a, b| if b.1.abs() > a.1.abs() { b } else { a })
-            .filter(|(_, offset)| *offset != 0.0)?;
+        let offsets: Option<Vec<f64>> = self.offsets().into_iter().collect();
+        let (reader, offset) = stands_out(&offsets?)?;
         let differences: Vec<f64> = self
             .parts
             .iter()
@@ -107,6 +98,21 @@ impl Spread {
                 .count(),
             compared: differences.len(),
         })
+    }
+
+    /// The readers with the lowest and the highest mean, and the difference; `None` when there is none.
+    pub(super) fn ends(&self) -> Option<(&str, &str, f64)> {
+        let offsets = self.offsets();
+        let known = || {
+            self.readers
+                .iter()
+                .zip(&offsets)
+                .filter_map(|(name, o)| Some((name, (*o)?)))
+        };
+        let lowest = known().reduce(|a, b| if b.1 < a.1 { b } else { a })?;
+        let highest = known().reduce(|a, b| if b.1 > a.1 { b } else { a })?;
+        let by = highest.1 - lowest.1;
+        (by > 0.0).then_some((lowest.0, highest.0, by))
     }
 
     /// The largest deviation, in absolute value.

@@ -4,6 +4,7 @@ use restudy_engine::{Component, Figure, Limits, PART};
 
 use crate::evidence::{Evidence, Factor, Feature};
 use crate::ledger::Earlier;
+use crate::plain::in_error;
 use crate::record::Record;
 
 use super::unit::Unit;
@@ -98,6 +99,12 @@ impl<'a> Subject<'a> {
             .filter_map(|component| Some((cause(component)?, component)))
     }
 
+    /// The term that one trial does not tell from repeatability, in the plant's words.
+    pub(super) fn undivided(self) -> Option<String> {
+        let term = in_error(&self.record.study)?;
+        Some(self.term(&term.of, &term.within))
+    }
+
     /// A term in the plant's words: `loading`, `part × loading`.
     pub(super) fn term(self, of: &[String], within: &[String]) -> String {
         let word = |name: &String| {
@@ -106,7 +113,10 @@ impl<'a> Subject<'a> {
         };
         let words = |names: &[String]| names.iter().map(word).collect::<Vec<_>>().join(" × ");
         match (of, within) {
-            ([], _) => "repeatability".to_owned(),
+            ([], _) => self.undivided().map_or_else(
+                || "repeatability".to_owned(),
+                |term| format!("repeatability with {term}"),
+            ),
             (of, []) => words(of),
             (of, within) => format!("{} within {}", words(of), words(within)),
         }

@@ -1,10 +1,11 @@
 //! The figures: causes across, questions down; and the mean squares they come from.
 
 use maud::{Markup, html};
-use restudy_engine::Spread;
+use restudy_engine::{Line, Spread};
 
 use super::subject::{Cause, Subject};
-use super::words::{NBSP, limit, percent, three_digits};
+use super::words::{NBSP, limit, list, p_value, percent, three_digits};
+use crate::plain::{interactions, is_interaction, pooled};
 
 const NONE: &str = "–";
 /// Where a long heading may break on a narrow screen.
@@ -106,11 +107,15 @@ fn interaction(subject: Subject<'_>) -> Option<Column> {
 fn notes(subject: Subject<'_>) -> String {
     let study = &subject.record.study;
     let unit = subject.unit();
-    let held = if study.interaction.kept {
-        "AV holds the interaction; "
-    } else {
-        ""
-    };
+    let mut held = String::new();
+    if study.interaction.kept {
+        held.push_str("AV holds the interaction; ");
+    }
+    if let Some(term) = subject.undivided() {
+        held.push_str(&format!(
+            "EV holds {term}, which one trial does not tell from it; "
+        ));
+    }
     let total = study
         .figures
         .total
@@ -164,18 +169,47 @@ pub(super) fn mean_squares(subject: Subject<'_>) -> Markup {
 }
 
 fn interaction_choice(subject: Subject<'_>) -> Option<String> {
-    let choice = &subject.record.study.interaction;
-    let p = choice.p.map_or(NONE.to_owned(), |p| format!("{p:.2}"));
-    let done = if choice.kept {
-        "kept"
+    let study = &subject.record.study;
+    let choice = &study.interaction;
+    let other = choice.other_reading?;
+    let tested = interactions(study);
+    let pooled = pooled(study);
+    let kept: Vec<String> = study
+        .mean_squares
+        .iter()
+        .filter(|line| is_interaction(&line.of))
+        .map(|line| subject.term(&line.of, &line.within))
+        .collect();
+    let names = |lines: &[Line]| {
+        list(
+            &lines
+                .iter()
+                .map(|l| subject.term(&l.of, &l.within))
+                .collect::<Vec<_>>(),
+        )
+    };
+    let done = match (&kept[..], &pooled[..]) {
+        (_, []) => "kept".to_owned(),
+        ([], _) => "pooled into repeatability".to_owned(),
+        (kept, pooled) => format!(
+            "partly pooled into repeatability: {} went into it, {} remain{} in the table",
+            names(pooled),
+            list(kept),
+            if kept.len() == 1 { "s" } else { "" }
+        ),
+    };
+    let p = choice
+        .p
+        .map_or(format!("p {NONE}"), |p| p_value(p, choice.pool_above));
+    let of_which = if tested.len() > 1 {
+        format!(" of {}", names(&tested[tested.len() - 1..]))
     } else {
-        "pooled into repeatability"
+        String::new()
     };
     let why = match choice.pool_above {
         Some(limit) => format!("the plan pools it when p is above {limit}"),
         None => "the plan always keeps it".to_owned(),
     };
-    let other = choice.other_reading?;
     let other = match (other.share_of_tolerance, other.gauge_sd) {
         (Some(share), _) => format!(" The other way the share would be {}.", percent(share)),
         (None, Some(sd)) => format!(
@@ -184,5 +218,5 @@ fn interaction_choice(subject: Subject<'_>) -> Option<String> {
         ),
         (None, None) => String::new(),
     };
-    Some(format!("Interaction {done} (p = {p}): {why}.{other}"))
+    Some(format!("Interaction {done} ({p}{of_which}): {why}.{other}"))
 }

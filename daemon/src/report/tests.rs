@@ -1,5 +1,6 @@
 //! Pages of rounds, whole: what they say, and that no round breaks them.
 
+mod honest;
 pub(super) mod plant;
 mod sound;
 mod stage;

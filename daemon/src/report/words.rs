@@ -1,11 +1,13 @@
 //! Numbers and lists as a reader sees them: rounded to what a study can support.
 
+use crate::plain::{Rounded, percent_as_set};
+
 /// A blank that keeps a number and its unit on one line.
 pub(super) const NBSP: char = '\u{a0}';
 /// Shares above this are not told apart.
 const SHARE_MAX: f64 = 99.99;
-/// Decimals that are tried to show on which side of a limit a share lies.
-const DECIMALS_MAX: usize = 3;
+/// A p below this is not told apart from a smaller one.
+const P_MIN: f64 = 0.001;
 
 /// A share in whole percent.
 pub(super) fn percent(share: f64) -> String {
@@ -20,25 +22,42 @@ pub(super) fn percent(share: f64) -> String {
 
 /// A share in whole percent, with as many decimals more as show on which side of each limit it lies.
 pub(super) fn percent_beside(share: f64, limits: &[f64]) -> String {
-    let exact = 100.0 * share;
-    let tells = |decimals: usize| {
-        let scale = 10f64.powi(decimals as i32);
-        let written = (exact * scale).round() / scale;
-        limits.iter().all(|limit| {
-            written.partial_cmp(&(100.0 * limit)) == exact.partial_cmp(&(100.0 * limit))
-        })
-    };
-    match (0..=DECIMALS_MAX).find(|&d| tells(d)) {
-        Some(decimals) if decimals > 0 && share <= SHARE_MAX => {
-            format!("{exact:.decimals$}{NBSP}%")
-        }
-        _ => percent(share),
+    let limits: Vec<f64> = limits.iter().map(|limit| 100.0 * limit).collect();
+    let text = Rounded::Nearest.beside(100.0 * share, &limits, 0);
+    if text.contains('.') && share <= SHARE_MAX {
+        format!("{text}{NBSP}%")
+    } else {
+        percent(share)
     }
 }
 
-/// A limit on a share, as it was set.
+/// A lower limit of a share in whole percent.
+pub(super) fn at_least(share: f64) -> String {
+    if share > SHARE_MAX {
+        return percent(share);
+    }
+    format!("{}{NBSP}%", Rounded::Down.beside(100.0 * share, &[], 0))
+}
+
+/// An upper limit of a share in whole percent; never as much as the whole tolerance.
+pub(super) fn at_most(share: f64) -> String {
+    format!("{}{NBSP}%", Rounded::Up.beside(100.0 * share, &[100.0], 0))
+}
+
+/// A p, never rounded to nothing, and on its side of the one above which the plan pools.
+pub(super) fn p_value(p: f64, pool_above: Option<f64>) -> String {
+    let limits: Vec<f64> = pool_above.into_iter().collect();
+    match p {
+        p if p < P_MIN => format!("p < {P_MIN}"),
+        p if p > 1.0 - P_MIN => format!("p > {}", 1.0 - P_MIN),
+        p if p < 0.1 => format!("p = {}", Rounded::Nearest.beside(p, &limits, 3)),
+        p => format!("p = {}", Rounded::Nearest.beside(p, &limits, 2)),
+    }
+}
+
+/// A limit on a share, or a confidence, as it was set.
 pub(super) fn limit(share: f64) -> String {
-    format!("{}{NBSP}%", trimmed(&format!("{:.2}", 100.0 * share)))
+    format!("{}{NBSP}%", percent_as_set(share))
 }
 
 /// A chance to the nearest 5 %.
@@ -174,6 +193,28 @@ mod tests {
                 "over 95 %"
             ]
         );
+    }
+
+    #[test]
+    fn limits_of_a_share_claim_no_more_than_they_have() {
+        assert_eq!(plain(&at_least(0.317)), "31 %");
+        assert_eq!(plain(&at_most(0.552)), "56 %");
+        assert_eq!(plain(&at_most(0.996)), "99.6 %");
+        assert_eq!(plain(&limit(0.975)), "97.5 %");
+    }
+
+    #[test]
+    fn a_p_is_never_nothing() {
+        let table = [
+            (1e-9, None, "p < 0.001"),
+            (0.0123, None, "p = 0.012"),
+            (0.254, None, "p = 0.25"),
+            (0.254, Some(0.25), "p = 0.254"),
+            (1.0, None, "p > 0.999"),
+        ];
+        for (p, pool_above, text) in table {
+            assert_eq!(p_value(p, pool_above), text);
+        }
     }
 
     #[test]

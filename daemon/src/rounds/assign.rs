@@ -7,9 +7,9 @@
 //!
 //! Not here: the ledger (`stage`), what a standing is.
 //!
-//! Invariant: every run given is in exactly one round of the answer or in `elsewhere`.
+//! Invariant: every run given is in exactly one round of the answer, in `late` or in `elsewhere`.
 
-use std::collections::BTreeSet;
+use std::collections::{BTreeSet, HashMap};
 
 use jiff::civil::DateTime;
 use restudy_parsers::fold;
@@ -21,6 +21,8 @@ use crate::ledger::{RoundState, RunRow, RunStatus};
 /// A round that is closed already.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Closed {
+    /// The round.
+    pub id: i64,
     /// The export's own name of it.
     pub label: Option<String>,
     /// Latest time of its runs.
@@ -28,10 +30,12 @@ pub struct Closed {
 }
 
 /// The wall clock, for rounds whose time is up.
+///
+/// `None` while it is not sure that every export at hand has been read: no round is closed unfinished then.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub struct Clock {
     /// ms since 1970.
-    pub now: i64,
+    pub now: Option<i64>,
 }
 
 /// A round that filled, is filling, or waits.
@@ -54,6 +58,8 @@ pub struct Laid {
 pub struct Assigned {
     /// Rounds in order.
     pub rounds: Vec<Laid>,
+    /// Runs of rounds that are closed already.
+    pub late: Vec<(i64, Seat)>,
     /// Runs that belong to no round.
     pub elsewhere: Vec<Seat>,
 }
@@ -70,22 +76,22 @@ pub fn assign(
     opened: &dyn Fn(Option<&str>) -> Option<i64>,
 ) -> Assigned {
     let mut elsewhere = Vec::new();
+    let mut late = Vec::new();
     let mut candidates = Vec::new();
     for run in runs {
         if let Some(tie) = &run.tie {
             elsewhere.push(Seat::out(run.id, RunStatus::SetAside, tie.clone()));
             continue;
         }
-        match frame.names(&run.facts) {
-            Err(unknown) => {
+        match (frame.names(&run.facts), missed(run, closed)) {
+            (Err(unknown), _) => {
                 elsewhere.push(Seat::out(run.id, RunStatus::SetAside, unknown.reason));
             }
-            Ok(_) if is_late(run, closed) => elsewhere.push(Seat::out(
-                run.id,
-                RunStatus::Late,
-                "arrived after its round was closed".into(),
-            )),
-            Ok(names) => candidates.push(Candidate { run, names }),
+            (Ok(_), Some(round)) => {
+                let reason = "arrived after its round was closed".into();
+                late.push((round, Seat::out(run.id, RunStatus::Late, reason)));
+            }
+            (Ok(names), None) => candidates.push(Candidate { run, names }),
         }
     }
     candidates.sort_by_key(|c| (c.run.facts.taken, c.run.id));
@@ -104,22 +110,24 @@ pub fn assign(
         &mut rounds,
         &mut elsewhere,
     );
-    Assigned { rounds, elsewhere }
+    Assigned {
+        rounds,
+        late,
+        elsewhere,
+    }
 }
 
-fn is_late(run: &RunRow, closed: &[Closed]) -> bool {
-    match &run.facts.round_label {
-        Some(label) => {
-            let label = fold(label);
-            closed
-                .iter()
-                .any(|c| c.label.as_deref().map(fold).as_deref() == Some(&label))
-        }
-        None => closed
-            .iter()
-            .filter(|c| c.label.is_none())
-            .any(|c| run.facts.taken.is_none() || run.facts.taken <= c.through),
-    }
+/// The closed round that a run came too late for.
+fn missed(run: &RunRow, closed: &[Closed]) -> Option<i64> {
+    let mut its = closed
+        .iter()
+        .filter(|c| c.label.as_deref().map(fold) == run.facts.round_label.as_deref().map(fold));
+    let round = match (&run.facts.round_label, run.facts.taken) {
+        (Some(_), _) => its.next(),
+        (None, Some(taken)) => its.find(|c| Some(taken) <= c.through),
+        (None, None) => its.last(),
+    };
+    round.map(|c| c.id)
 }
 
 fn labelled_rounds(
@@ -177,8 +185,8 @@ fn plain_rounds(
             its,
             opens_at_once || opened.is_some(),
         );
-        let overtaken = end == in_time && !later.is_empty() && !laid.state.closed();
-        if overtaken && laid.state == RoundState::Pending {
+        let overtaken = end == in_time && parts(later) >= 2 && !laid.state.closed();
+        if overtaken && parts(its) < 2 {
             elsewhere.extend(
                 its.iter().map(|c| {
                     Seat::out(c.run.id, RunStatus::Surplus, "no round grew from it".into())
@@ -215,11 +223,31 @@ fn within_time(frame: &Frame, runs: &[Candidate<'_>]) -> usize {
 
 /// The smallest number of runs, in order, that fill every cell without a reason to hold.
 fn filled_by(frame: &Frame, runs: &[Candidate<'_>]) -> Option<usize> {
-    let needed = frame.cells() * frame.trials;
-    (needed..=runs.len()).find(|&n| {
-        let placed = place(frame, &runs[..n]);
-        placed.filled && placed.hold.is_none()
-    })
+    let mut tried = enough_a_cell(frame, runs)?;
+    loop {
+        let placed = place(frame, &runs[..tried]);
+        if placed.filled {
+            return placed.hold.is_none().then_some(tried);
+        }
+        let next = runs[tried..]
+            .iter()
+            .position(|c| placed.lacking.contains(&c.cell()))?;
+        tried += next + 1;
+    }
+}
+
+/// The smallest number of runs, in order, with which every cell has as many as the plan wants.
+fn enough_a_cell(frame: &Frame, runs: &[Candidate<'_>]) -> Option<usize> {
+    let mut counts: HashMap<Vec<String>, usize> = HashMap::new();
+    let mut full = 0;
+    runs.iter()
+        .position(|candidate| {
+            let count = counts.entry(candidate.cell()).or_default();
+            *count += 1;
+            full += usize::from(*count == frame.trials);
+            full >= frame.cells()
+        })
+        .map(|last| last + 1)
 }
 
 fn lay(
@@ -235,11 +263,10 @@ fn lay(
         .filter(|(_, seat)| seat.status == RunStatus::Used)
         .filter_map(|(c, _)| c.run.facts.taken)
         .max();
-    let parts: BTreeSet<&str> = its.iter().map(|c| c.names[0].as_str()).collect();
     let state = match (&placed.hold, placed.filled) {
         (Some(_), _) => RoundState::Held,
         (None, true) => RoundState::Complete,
-        (None, false) if opens_at_once || label.is_some() || parts.len() >= 2 => RoundState::Open,
+        (None, false) if opens_at_once || label.is_some() || parts(its) >= 2 => RoundState::Open,
         (None, false) => RoundState::Pending,
     };
     debug_assert!(state != RoundState::Complete || its.len() >= frame.cells() * frame.trials);
@@ -256,8 +283,15 @@ fn lay(
     laid
 }
 
+fn parts(runs: &[Candidate<'_>]) -> usize {
+    runs.iter()
+        .map(|c| fold(&c.names[0]))
+        .collect::<BTreeSet<String>>()
+        .len()
+}
+
 fn expire(frame: &Frame, laid: &mut Laid, opened: Option<i64>, clock: Clock) {
-    let up = matches!((frame.finish_within, opened), (Some(w), Some(o)) if clock.now > o.saturating_add(w));
+    let up = matches!((frame.finish_within, opened, clock.now), (Some(w), Some(o), Some(now)) if now > o.saturating_add(w));
     if up && laid.state == RoundState::Open {
         unfinish(laid);
     }

@@ -6,12 +6,19 @@ use restudy_config::FactorLevels;
 use restudy_parsers::fold;
 
 use super::frame::Frame;
-use crate::ledger::{RunRow, RunStatus};
+use crate::ledger::{Holds, RunRow, RunStatus};
 
 /// A run with its level names in the plan's spelling.
 pub(super) struct Candidate<'a> {
     pub(super) run: &'a RunRow,
     pub(super) names: Vec<String>,
+}
+
+impl Candidate<'_> {
+    /// Its cell, folded.
+    pub(super) fn cell(&self) -> Vec<String> {
+        self.names.iter().map(|name| fold(name)).collect()
+    }
 }
 
 /// Where one run is.
@@ -53,29 +60,34 @@ pub(super) struct Placed {
     pub(super) seats: Vec<Seat>,
     /// Every trial of every cell has a run with every characteristic.
     pub(super) filled: bool,
+    /// Cells with a run whose trial is not filled.
+    pub(super) lacking: BTreeSet<Vec<String>>,
     /// Why the round must wait for a person.
     pub(super) hold: Option<String>,
 }
 
 pub(super) fn place(frame: &Frame, runs: &[Candidate<'_>]) -> Placed {
     let expected = expected(frame, runs);
-    let mut seats: Vec<Option<Seat>> = vec![None; runs.len()];
+    let mut seats: Vec<Option<Seat>> = odd_units(runs);
     let mut cells: BTreeMap<Vec<String>, Vec<usize>> = BTreeMap::new();
-    for (index, candidate) in runs.iter().enumerate() {
-        cells
-            .entry(candidate.names.iter().map(|n| fold(n)).collect())
-            .or_default()
-            .push(index);
+    for (index, candidate) in runs.iter().enumerate().filter(|(i, _)| seats[*i].is_none()) {
+        cells.entry(candidate.cell()).or_default().push(index);
     }
     let mut filled_slots = 0;
-    for members in cells.values() {
-        filled_slots += fill_cell(frame, runs, members, &expected, &mut seats);
+    let mut lacking = BTreeSet::new();
+    for (cell, members) in cells {
+        let filled = fill_cell(frame, runs, &members, &expected, &mut seats);
+        filled_slots += filled;
+        if filled < frame.trials {
+            lacking.insert(cell);
+        }
     }
     let seats: Vec<Seat> = seats.into_iter().flatten().collect();
     debug_assert_eq!(seats.len(), runs.len());
     let hold = too_many_levels(frame, runs).or_else(|| same_differs(runs, &seats));
     Placed {
         filled: filled_slots == frame.cells() * frame.trials,
+        lacking,
         seats,
         hold,
     }
@@ -85,8 +97,11 @@ fn expected(frame: &Frame, runs: &[Candidate<'_>]) -> BTreeSet<String> {
     match &frame.whole_list {
         Some(list) => list.clone(),
         None => {
-            let distinct: BTreeSet<&BTreeSet<String>> = runs.iter().map(|c| &c.run.holds).collect();
-            distinct.into_iter().flatten().cloned().collect()
+            let distinct: BTreeSet<&Holds> = runs.iter().map(|c| &c.run.holds).collect();
+            distinct
+                .into_iter()
+                .flat_map(|holds| holds.keys().cloned())
+                .collect()
         }
     }
 }
@@ -99,7 +114,11 @@ fn fill_cell(
     expected: &BTreeSet<String>,
     seats: &mut [Option<Seat>],
 ) -> usize {
-    let complete = |i: usize| runs[i].run.holds.is_superset(expected);
+    let complete = |i: usize| {
+        expected
+            .iter()
+            .all(|name| runs[i].run.holds.contains_key(name))
+    };
     let mut slots: Vec<Option<usize>> = vec![None; frame.trials];
     // Complete runs first; a short one gets a trial only where no complete run claims it.
     let (whole, short): (Vec<usize>, Vec<usize>) = members.iter().partition(|&&i| complete(i));
@@ -151,17 +170,45 @@ fn stated_slot(label: &str, trials: usize) -> Result<usize, (RunStatus, String)>
     }
 }
 
-fn shortfall(holds: &BTreeSet<String>, expected: &BTreeSet<String>) -> String {
-    let has = expected.intersection(holds).count();
-    let first = expected
-        .difference(holds)
-        .next()
-        .map(String::as_str)
-        .unwrap_or_default();
+fn shortfall(holds: &Holds, expected: &BTreeSet<String>) -> String {
+    let has = expected
+        .iter()
+        .filter(|name| holds.contains_key(*name))
+        .count();
+    let first = expected.iter().find(|name| !holds.contains_key(*name));
+    let first = first.map(String::as_str).unwrap_or_default();
     format!(
         "short: {has} of {} characteristics; `{first}` is missing",
         expected.len()
     )
+}
+
+/// Runs with a value in another unit than most runs' values of that characteristic.
+fn odd_units(runs: &[Candidate<'_>]) -> Vec<Option<Seat>> {
+    let mut counts: BTreeMap<&str, BTreeMap<&Option<String>, usize>> = BTreeMap::new();
+    for candidate in runs {
+        for (name, unit) in &candidate.run.holds {
+            *counts.entry(name).or_default().entry(unit).or_default() += 1;
+        }
+    }
+    counts.retain(|_, units| units.len() > 1);
+    let usual: BTreeMap<&str, &Option<String>> = counts
+        .into_iter()
+        .filter_map(|(name, units)| Some((name, units.into_iter().max_by_key(|(_, n)| *n)?.0)))
+        .collect();
+    let odd = |run: &RunRow| {
+        run.holds.iter().find_map(|(name, unit)| {
+            let usual = usual.get(name.as_str()).filter(|usual| **usual != unit)?;
+            let text = |u: &Option<String>| u.clone().unwrap_or_else(|| "no unit".into());
+            let reason = format!(
+                "`{name}` comes in {}, in the other runs in {}; export it again in that unit",
+                text(unit),
+                text(usual)
+            );
+            Some(Seat::out(run.id, RunStatus::SetAside, reason))
+        })
+    };
+    runs.iter().map(|candidate| odd(candidate.run)).collect()
 }
 
 fn too_many_levels(frame: &Frame, runs: &[Candidate<'_>]) -> Option<String> {
@@ -203,7 +250,9 @@ fn same_differs(runs: &[Candidate<'_>], seats: &[Seat]) -> Option<String> {
         .map(|(name, distinct)| {
             let list: Vec<String> = distinct
                 .values()
-                .map(|(value, n)| format!("`{value}` in {n} runs"))
+                .map(|(value, n)| {
+                    format!("`{value}` in {n} {}", if *n == 1 { "run" } else { "runs" })
+                })
                 .collect();
             format!(
                 "{name} must stay the same within a round, but is {}",

@@ -34,7 +34,7 @@ pub fn missing(frame: &Frame, runs: &[RunRow]) -> Vec<Missing> {
         .collect();
     let expected: BTreeSet<&String> = match &frame.whole_list {
         Some(list) => list.iter().collect(),
-        None => seated.iter().flat_map(|s| &s.2.holds).collect(),
+        None => seated.iter().flat_map(|s| s.2.holds.keys()).collect(),
     };
     let mut taken: BTreeMap<(Vec<String>, usize), &RunRow> = BTreeMap::new();
     for (names, slot, run) in &seated {
@@ -56,7 +56,7 @@ pub fn missing(frame: &Frame, runs: &[RunRow]) -> Vec<Missing> {
                 Some(run) => {
                     let lacks: Vec<String> = expected
                         .iter()
-                        .filter(|c| !run.holds.contains(**c))
+                        .filter(|c| !run.holds.contains_key(**c))
                         .map(|c| (*c).clone())
                         .collect();
                     if !lacks.is_empty() {

@@ -41,6 +41,7 @@ fn run(id: i64, text: &str) -> RunRow {
     let minute: i8 = words[3].parse().unwrap();
     RunRow {
         id,
+        key: text.into(),
         facts: RunFacts {
             instrument: "bridge-1".into(),
             part: words[0].into(),
@@ -51,7 +52,7 @@ fn run(id: i64, text: &str) -> RunRow {
             taken: Some(jiff::civil::date(2026, 3, 2).at(8, minute, 0, 0)),
             round_label: None,
         },
-        holds: ["bore a".to_owned()].into(),
+        holds: [("bore a".to_owned(), Some("mm".to_owned()))].into(),
         tie: None,
         changed: false,
         place: Placement {
@@ -68,12 +69,14 @@ fn runs(texts: &[&str]) -> Vec<RunRow> {
 }
 
 fn laid(frame: &Frame, runs: &[RunRow]) -> Assigned {
-    assign(frame, &[], runs, Clock { now: 0 }, &|_| None)
+    assign(frame, &[], runs, Clock { now: Some(0) }, &|_| None)
 }
 
 fn status(assigned: &Assigned, id: i64) -> &Seat {
     let in_rounds = assigned.rounds.iter().flat_map(|r| &r.seats);
+    let late = assigned.late.iter().map(|(_, seat)| seat);
     in_rounds
+        .chain(late)
         .chain(&assigned.elsewhere)
         .find(|s| s.run == id)
         .unwrap()
@@ -136,11 +139,18 @@ fn a_run_taken_before_the_close_is_late() {
     let frame = frame(named(&["P1", "P2"]), 2);
     let through = Some(jiff::civil::date(2026, 3, 2).at(8, 8, 0, 0));
     let closed = [Closed {
+        id: 7,
         label: None,
         through,
     }];
     let texts = ["P1 KL - 8", "P1 KL - 9"];
-    let assigned = assign(&frame, &closed, &runs(&texts), Clock { now: 0 }, &|_| None);
+    let assigned = assign(
+        &frame,
+        &closed,
+        &runs(&texts),
+        Clock { now: Some(0) },
+        &|_| None,
+    );
     assert_eq!(status(&assigned, 1).status, RunStatus::Late);
     assert_eq!(assigned.rounds[0].state, RoundState::Pending);
 }
@@ -206,7 +216,7 @@ fn a_value_that_must_stay_the_same_holds_a_full_round() {
     assert_eq!(held.rounds[0].state, RoundState::Held);
     let reason = held.rounds[0].reason.clone().unwrap();
     assert!(
-        reason.contains("`hub rev 12` in 7 runs, `hub rev 13` in 1 runs"),
+        reason.contains("`hub rev 12` in 7 runs, `hub rev 13` in 1 run"),
         "{reason}"
     );
 }
@@ -216,7 +226,7 @@ fn a_short_run_gives_way_to_a_whole_one() {
     let frame = frame(named(&["P1", "P2"]), 1);
     let mut runs = runs(&["P1 KL 1 1", "P1 KL 1 2", "P2 KL 1 3"]);
     for whole in [1, 2] {
-        runs[whole].holds.insert("height b".into());
+        runs[whole].holds.insert("height b".into(), None);
     }
     let assigned = laid(&frame, &runs);
     assert_eq!(status(&assigned, 1).status, RunStatus::SetAside);
@@ -228,11 +238,26 @@ fn a_short_run_gives_way_to_a_whole_one() {
 }
 
 #[test]
+fn a_run_in_another_unit_is_set_aside() {
+    let frame = frame(named(&["P1", "P2"]), 2);
+    let mut runs = runs(&FULL);
+    runs[2].holds.insert("bore a".into(), Some("µm".into()));
+    let assigned = laid(&frame, &runs);
+    assert_eq!(assigned.rounds[0].state, RoundState::Open);
+    assert_eq!(
+        status(&assigned, 3).reason.as_deref(),
+        Some("`bore a` comes in µm, in the other runs in mm; export it again in that unit")
+    );
+}
+
+#[test]
 fn time_runs_out_by_the_wall_clock_and_by_the_stamps() {
     let mut frame = frame(named(&["P1", "P2"]), 2);
     frame.finish_within = Some(5 * 60_000);
     let texts = ["P1 KL - 1", "P2 KL - 2"];
-    let clock = Clock { now: 10 * 60_000 };
+    let clock = Clock {
+        now: Some(10 * 60_000),
+    };
     let by_wall = assign(&frame, &[], &runs(&texts), clock, &|_| Some(0));
     assert_eq!(by_wall.rounds[0].state, RoundState::Unfinished);
     assert_eq!(status(&by_wall, 1).status, RunStatus::Unfinished);
@@ -242,6 +267,27 @@ fn time_runs_out_by_the_wall_clock_and_by_the_stamps() {
     assert_eq!(by_stamp.rounds[0].state, RoundState::Unfinished);
     assert_eq!(by_stamp.rounds[1].state, RoundState::Open);
     assert_eq!(status(&by_stamp, 3).status, RunStatus::Used);
+}
+
+#[test]
+fn one_wrong_clock_closes_no_round() {
+    let mut frame = frame(named(&["P1", "P2"]), 1);
+    frame.finish_within = Some(5 * 60_000);
+    let late = laid(&frame, &runs(&["P1 KL - 10", "P2 KL - 11", "P1 MO - 50"]));
+    assert_eq!(late.rounds[0].state, RoundState::Open);
+    assert_eq!(late.rounds[1].state, RoundState::Pending);
+    let early = laid(&frame, &runs(&["P1 MO - 1", "P1 KL - 50", "P2 KL - 51"]));
+    assert_eq!(status(&early, 1).status, RunStatus::Surplus);
+    assert_eq!(early.rounds[0].state, RoundState::Open);
+}
+
+#[test]
+fn no_round_is_given_up_before_everything_was_read() {
+    let mut frame = frame(named(&["P1", "P2"]), 2);
+    frame.finish_within = Some(5 * 60_000);
+    let runs = runs(&["P1 KL - 1", "P2 KL - 2"]);
+    let unread = assign(&frame, &[], &runs, Clock { now: None }, &|_| Some(0));
+    assert_eq!(unread.rounds[0].state, RoundState::Open);
 }
 
 #[test]

@@ -9,7 +9,7 @@ use restudy_config::FilePatterns;
 
 use crate::ledger::Stat;
 
-/// Folders further down are not entered: a link that points upwards must end somewhere.
+/// Folders further down are not entered.
 const DEPTH_MAX: usize = 32;
 
 /// Names that programs give to files they are still writing: common practice, no source.
@@ -45,7 +45,7 @@ pub struct Unreadable {
     pub error: std::io::Error,
 }
 
-/// Everything below `root` that the patterns name and that is not a program's temporary file, by path.
+/// Everything below `root`, without following links, that the patterns name and that is not a program's temporary file, by path.
 #[must_use]
 pub fn walk(root: &Path, patterns: &FilePatterns) -> (Vec<Found>, Vec<Unreadable>) {
     let mut found = Vec::new();
@@ -64,7 +64,7 @@ pub fn walk(root: &Path, patterns: &FilePatterns) -> (Vec<Found>, Vec<Unreadable
         };
         for entry in entries.flatten() {
             let path = entry.path();
-            let Ok(metadata) = fs_err::metadata(&path) else {
+            let Ok(metadata) = fs_err::symlink_metadata(&path) else {
                 continue;
             };
             if metadata.is_dir() {
@@ -90,7 +90,7 @@ pub fn walk(root: &Path, patterns: &FilePatterns) -> (Vec<Found>, Vec<Unreadable
 /// # Errors
 /// The system's refusal, with the path.
 pub fn look(path: &Path) -> std::io::Result<Stat> {
-    fs_err::metadata(path).map(|m| stat(&m))
+    fs_err::symlink_metadata(path).map(|m| stat(&m))
 }
 
 fn stat(metadata: &std::fs::Metadata) -> Stat {

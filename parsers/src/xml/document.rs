@@ -12,8 +12,9 @@ use quick_xml::name::ResolveResult;
 use quick_xml::reader::NsReader;
 
 use super::lines::Lines;
+use super::malformed::{in_words, of_attribute};
 use crate::grid::Content;
-use crate::names::{fold, shorten, shorten_to};
+use crate::names::{fold, shorten};
 use crate::parsed::Refused;
 use crate::reader::{End, Reader};
 use crate::source::Where;
@@ -125,7 +126,8 @@ impl<'a> Document<'a> {
                         return Err(Refused::new(format!(
                             "line {line}: the reference `&{};` means nothing here",
                             shorten(&entity)
-                        )));
+                        ))
+                        .hint("write `&` as `&amp;`"));
                     };
                     self.gather(c.encode_utf8(&mut [0; 4]), line)?;
                 }
@@ -164,13 +166,15 @@ impl<'a> Document<'a> {
                 return Err(Refused::new(format!(
                     "line {line}: a second root element `{}`",
                     shorten(name)
-                )));
+                ))
+                .hint("an export has one; were two written into one file?"));
             }
             if name != root {
                 return Err(Refused::new(format!(
-                    "the root element is `{}`; this instrument's exports have `{root}`",
+                    "line {line}: the root element is `{}`; this instrument's exports have `{root}`",
                     shorten(name)
-                )));
+                ))
+                .hint("correct `each`, or leave such files out with `files`"));
             }
         }
         self.open.push(Open {
@@ -230,7 +234,7 @@ impl<'a> Document<'a> {
                     "line {line}: an attribute that cannot be read: {why}"
                 ))
             };
-            let attribute = attribute.map_err(|why| wrong(why.to_string()))?;
+            let attribute = attribute.map_err(|why| wrong(of_attribute(&why)))?;
             if attribute.key.as_namespace_binding().is_some() {
                 continue;
             }
@@ -239,7 +243,7 @@ impl<'a> Document<'a> {
             let name = local.into_inner();
             let value = attribute
                 .normalized_value(XmlVersion::Implicit1_0)
-                .map_err(|why| wrong(why.to_string()))?;
+                .map_err(|_| wrong("its value holds a reference that means nothing".to_owned()))?;
             self.within_text_limit(value.len(), line)?;
             for index in 0..self.sought.len() {
                 let sought = &self.sought[index];
@@ -329,10 +333,10 @@ impl<'a> Document<'a> {
             return Err(Refused::unfinished("the file holds no XML element"));
         }
         if self.records.is_empty() {
-            return Err(Refused::new(format!(
-                "there is no element {} in this export",
-                self.each
-            )));
+            return Err(
+                Refused::new(format!("there is no element {} in this export", self.each))
+                    .hint("correct `each`; names stand without prefix, and case counts"),
+            );
         }
         Ok(())
     }
@@ -346,11 +350,8 @@ impl<'a> Document<'a> {
                 | quick_xml::Error::IllFormed(IllFormedError::UnclosedReference)
         );
         Refused {
-            sentence: format!(
-                "line {line}: the XML is malformed: {}",
-                shorten_to(&why.to_string(), 160)
-            ),
-            hint: None,
+            sentence: format!("line {line}: the XML is malformed: {}", in_words(why)),
+            hint: Some("export it again".to_owned()),
             perhaps_unfinished: cut,
         }
     }

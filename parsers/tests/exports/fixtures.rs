@@ -33,7 +33,8 @@ pub(crate) fn bridge_1() -> Rule {
         taken: Some(Taken {
             role: crate::shared::at(2, 1),
             format: Some("%d.%m.%Y %H:%M".to_owned()),
-            zone: None,
+            written_in: None,
+            shown_in: None,
         }),
         characteristic: Some(column("Feature")),
         value: Value {
@@ -117,7 +118,8 @@ fn utf_16_with_tabs_and_trials_told_apart_by_time() {
         taken: Some(Taken {
             role: column("taken"),
             format: None,
-            zone: None,
+            written_in: None,
+            shown_in: None,
         }),
         value: Value {
             role: column("value"),
@@ -151,7 +153,8 @@ pub(crate) fn bridge_2() -> Rule {
         taken: Some(Taken {
             role: xml("/export/run/@start"),
             format: None,
-            zone: Some("Europe/Oslo".to_owned()),
+            written_in: None,
+            shown_in: Some("Europe/Oslo".to_owned()),
         }),
         round: Some(xml("/export/@id")),
         characteristic: Some(xml("@id")),

@@ -92,7 +92,8 @@ fn equal_time_stamps_are_a_tie() {
         taken: Some(Taken {
             role: column("taken"),
             format: None,
-            zone: None,
+            written_in: None,
+            shown_in: None,
         }),
         ..table()
     };

@@ -76,7 +76,8 @@ pub(crate) fn hub_rule() -> Rule {
         taken: Some(Taken {
             role: at(2, 1),
             format: Some("%d.%m.%Y %H:%M".to_owned()),
-            zone: None,
+            written_in: None,
+            shown_in: None,
         }),
         trial: Some(Trial::Counted(Count::Taken)),
         characteristic: Some(column("Feature")),

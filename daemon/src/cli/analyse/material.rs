@@ -151,14 +151,14 @@ impl Gathered {
     }
 }
 
-/// Folded level names in natural order.
+/// The levels of a factor in natural order, each as first written.
 pub(super) fn levels(gathered: &Gathered, factor: usize) -> Vec<String> {
-    let mut names: Vec<String> = gathered
-        .rows
-        .iter()
-        .map(|(labels, _)| fold(&labels[factor]))
-        .collect();
+    let mut seen = BTreeMap::new();
+    for (labels, _) in &gathered.rows {
+        let label = &labels[factor];
+        seen.entry(fold(label)).or_insert_with(|| label.clone());
+    }
+    let mut names: Vec<String> = seen.into_values().collect();
     names.sort_by(|a, b| natural::compare(a, b));
-    names.dedup();
     names
 }

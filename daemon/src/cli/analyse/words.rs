@@ -3,6 +3,7 @@
 use crate::cli::table::table;
 use crate::figures::significant;
 use crate::record::Record;
+use restudy_engine::Spread;
 
 pub(super) fn for_people(record: &Record) -> String {
     let study = &record.study;
@@ -10,7 +11,7 @@ pub(super) fn for_people(record: &Record) -> String {
     let factors: Vec<String> = layout
         .factors
         .iter()
-        .map(|f| format!("{} {}", f.levels, f.name))
+        .map(|f| counted(f.levels, &f.name))
         .collect();
     let unit = record
         .unit
@@ -18,45 +19,53 @@ pub(super) fn for_people(record: &Record) -> String {
         .map(|u| format!(" in {u}"))
         .unwrap_or_default();
     let mut out = format!(
-        "{}: {} × {} trials, {} readings{unit}\n\n",
+        "{}: {} × {}, {}{unit}\n\n",
         record.characteristic,
         factors.join(" × "),
-        layout.trials,
-        layout.readings
+        counted(layout.trials, "trial"),
+        counted(layout.readings, "reading")
     );
     let sd = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| significant(x, 4));
     let percent = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| format!("{:.1} %", 100.0 * x));
     let figures = &study.figures;
-    let rows = [
-        ("EV, repeatability", &figures.repeatability),
-        (
-            "AV, reproducibility with interaction",
-            &figures.reproducibility,
-        ),
-        ("GRR, gauge", &figures.gauge),
-        ("PV, part", &figures.part),
-        ("TV, total", &figures.total),
+    let sources = [
+        &figures.repeatability,
+        &figures.reproducibility,
+        &figures.gauge,
+        &figures.part,
+        &figures.total,
     ];
-    let rows = rows.iter().map(|(name, spread)| {
-        let tolerance = match name {
-            name if name.starts_with("PV") || name.starts_with("TV") => "–".into(),
-            _ => percent(spread.share_of_tolerance.estimate),
-        };
-        vec![
-            (*name).to_owned(),
-            sd(spread.sd.estimate),
-            sd(spread.sd.lower),
-            sd(spread.sd.upper),
-            tolerance,
-            percent(spread.share_of_tv.estimate),
-        ]
+    let confidence = percent_as_set(study.confidence);
+    let question = |name: &str, answer: &dyn Fn(&Spread) -> String| {
+        std::iter::once(name.to_owned())
+            .chain(sources.iter().map(|s| answer(s)))
+            .collect()
+    };
+    let unit = record
+        .unit
+        .as_deref()
+        .map(|u| format!(", {u}"))
+        .unwrap_or_default();
+    let rows: Vec<Vec<String>> = vec![
+        question(&format!("how big (sd{unit})"), &|s| sd(s.sd.estimate)),
+        question(&format!("at least, {confidence} confidence"), &|s| {
+            sd(s.sd.at_least)
+        }),
+        question("of the tolerance", &|s| {
+            percent(s.share_of_tolerance.estimate)
+        }),
+        question("of TV", &|s| percent(s.share_of_tv.estimate)),
+    ];
+    out.push_str(&table(
+        &["", "EV", "AV", "GRR", "PV", "TV"],
+        &[1, 2, 3, 4, 5],
+        rows,
+    ));
+    out.push_str(match (study.interaction.kept, layout.trials) {
+        (true, _) => "AV holds the interaction.\n",
+        (false, 1) => "One trial: EV holds the interaction.\n",
+        (false, _) => "",
     });
-    let level = format!(
-        "{} % limits: lower",
-        significant(100.0 * study.confidence, 3)
-    );
-    let headings = ["", "sd", level.as_str(), "upper", "of tolerance", "of TV"];
-    out.push_str(&table(&headings, &[1, 2, 3, 4, 5], rows.collect()));
     let rows = study.mean_squares.iter().map(|line| {
         let p = line.p.map_or_else(
             || "–".into(),
@@ -89,18 +98,21 @@ pub(super) fn for_people(record: &Record) -> String {
     out.push_str(&table(&headings, &[1, 2, 3, 4, 5], rows.collect()));
     let share = &figures.gauge.share_of_tolerance;
     out.push('\n');
-    match (share.estimate, share.at_least) {
-        (Some(estimate), at_least) => out.push_str(&format!(
-            "The gauge takes {} of the tolerance; with {} % confidence at least {}.\n",
+    let why = share.why.as_deref().unwrap_or("no tolerance is known");
+    out.push_str(&match (share.estimate, share.at_least) {
+        (Some(estimate), Some(at_least)) => format!(
+            "The gauge takes {} of the tolerance; with {confidence} confidence at least {:.1} %.\n",
             percent(Some(estimate)),
-            significant(100.0 * study.confidence, 3),
-            percent(at_least)
-        )),
-        (None, _) => {
-            let why = share.why.as_deref().unwrap_or("no tolerance is known");
-            out.push_str(&format!("Share of tolerance: none ({why}).\n"));
+            (1000.0 * at_least).floor() / 10.0
+        ),
+        (Some(estimate), None) => {
+            format!(
+                "The gauge takes {} of the tolerance; no limits: {why}.\n",
+                percent(Some(estimate))
+            )
         }
-    }
+        (None, _) => format!("Share of tolerance: none ({why}).\n"),
+    });
     if let Some(ndc) = study.ndc.whole {
         out.push_str(&format!("ndc {ndc}.\n"));
     }
@@ -109,4 +121,15 @@ pub(super) fn for_people(record: &Record) -> String {
     }
     out.push_str("A study is evidence about the gauge, not a release of product.\n\n");
     out
+}
+
+fn counted(n: usize, what: &str) -> String {
+    let plural = if n == 1 { "" } else { "s" };
+    format!("{n} {what}{plural}")
+}
+
+/// A confidence with every digit that was asked for.
+fn percent_as_set(confidence: f64) -> String {
+    let percent = (1e9 * confidence).round() / 1e7;
+    format!("{percent} %")
 }

@@ -4,13 +4,22 @@ use std::path::Path;
 
 use restudy_config::Disk;
 use tempfile::TempDir;
+use tokio::time::{Instant, timeout};
 
+use super::super::backoff::Backoff;
 use super::super::*;
 use crate::ledger::{Ledger, NewNotice, OutboxRow};
+use crate::now::Now;
 
 /// Short enough for a test, long enough for a busy machine.
 pub(super) const SHORT: Limits = Limits {
-    send: Duration::from_millis(700),
+    steps: Steps {
+        connect: Duration::from_millis(700),
+        greeting: Duration::from_millis(700),
+        command: Duration::from_millis(700),
+        data: Duration::from_millis(700),
+        content: Duration::from_secs(10),
+    },
     goodbye: Duration::from_millis(300),
     stop: Duration::from_millis(400),
     after_fault: Duration::from_millis(100),
@@ -128,6 +137,13 @@ impl Bench {
     }
 
     pub(super) fn start(&mut self, config: Config) {
+        let state = self.folder.path().to_owned();
+        self.start_in(&state, config);
+    }
+
+    /// With another state folder than the ledger's.
+    pub(super) fn start_in(&mut self, state: &Path, mut config: Config) {
+        config.state = state.to_owned();
         let (ledger, wake, stop) = (
             self.ledger.clone(),
             Arc::clone(&self.wake),
@@ -140,6 +156,16 @@ impl Bench {
             stop,
             SHORT,
         )));
+    }
+
+    /// From now on the ledger can be read only, as on a full disk.
+    pub(super) fn refuse_records(&self) {
+        *self.ledger.lock() = Ledger::open_to_read(self.folder.path()).unwrap();
+    }
+
+    /// The ledger can be written again.
+    pub(super) fn take_records(&self) {
+        *self.ledger.lock() = Ledger::open(self.folder.path()).unwrap();
     }
 
     fn undelivered(&self) -> Vec<OutboxRow> {

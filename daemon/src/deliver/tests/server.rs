@@ -4,6 +4,7 @@ use std::io::{BufRead as _, BufReader, Write as _};
 use std::net::{TcpListener, TcpStream};
 use std::sync::{Arc, Mutex};
 use std::thread;
+use std::time::Duration;
 
 /// How one connection is treated.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -22,6 +23,8 @@ pub(super) enum Manner {
     Silent,
     /// Takes the mail and drops the line before saying so.
     DropsAfterDot,
+    /// Takes the mail and says so only after this time.
+    SlowAfterDot(Duration),
 }
 
 /// A mail that the server has read to its final dot.
@@ -126,6 +129,10 @@ fn talk(stream: TcpStream, manner: Manner, received: &Mutex<Vec<Received>>) -> s
                 match manner {
                     Manner::DropsAfterDot => return Ok(()),
                     Manner::ToContent(words) => words,
+                    Manner::SlowAfterDot(wait) => {
+                        thread::sleep(wait);
+                        "250 taken"
+                    }
                     _ => "250 taken",
                 }
             }

@@ -17,7 +17,6 @@ use crate::record::{Counts, Measured};
 
 pub(super) const LOADINGS: [&str; 3] = ["KL", "MO", "TS"];
 const PARTS: usize = 10;
-const TRIALS: usize = 3;
 /// 3 March 2026 09:00 in Oslo.
 const FIRST_CLOSED: i64 = 1_772_524_800_000;
 const QUARTER: i64 = 91 * 86_400_000;
@@ -200,7 +199,7 @@ fn evidence(plan: &Plan, number: i64, revision: i64, features: &[Reads]) -> Evid
     let mut runs = Vec::new();
     for part in 0..PARTS {
         for loading in 0..LOADINGS.len() {
-            for slot in 0..TRIALS {
+            for slot in 0..plan.trials as usize {
                 let taken = date(2026, 3, 1).at(8, (runs.len() / 2) as i8, 0, 0);
                 runs.push(Run {
                     levels: vec![part, loading],
@@ -232,7 +231,7 @@ fn evidence(plan: &Plan, number: i64, revision: i64, features: &[Reads]) -> Evid
         },
         instruments: vec!["bridge-1".into()],
         factors,
-        trials: TRIALS,
+        trials: plan.trials as usize,
         features: features.iter().map(|reads| feature(reads, &runs)).collect(),
         runs,
         same: BTreeMap::new(),

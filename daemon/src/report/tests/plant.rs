@@ -160,7 +160,11 @@ impl Plant {
         self.work(self.evidence(), earlier)
     }
 
-    fn work(&self, evidence: Evidence, earlier: BTreeMap<String, Earlier>) -> Worked {
+    pub(in crate::report) fn work(
+        &self,
+        evidence: Evidence,
+        earlier: BTreeMap<String, Earlier>,
+    ) -> Worked {
         let plan = Plan {
             characteristics: self.drawn.iter().map(characteristic).collect(),
             ..self.plan.clone()
@@ -175,7 +179,7 @@ impl Plant {
         }
     }
 
-    fn evidence(&self) -> Evidence {
+    pub(in crate::report) fn evidence(&self) -> Evidence {
         let readers = self.readers.len();
         let at = |minutes: i32| {
             jiff::civil::date(2026, 6, 1).at(7, 30, 0, 0) + jiff::Span::new().minutes(minutes)
