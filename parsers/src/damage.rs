@@ -64,7 +64,7 @@ pub(crate) fn of_cell(why: &XlsxError) -> String {
             format!("a content of the unknown kind `{}`", shorten(kind))
         }
         XlsxError::Unrecognized { val, .. } => {
-            format!("`{}`, which its kind does not have", shorten(val))
+            format!("`{}`, which means nothing there", shorten(val))
         }
         _ => "what cannot be read".to_owned(),
     }

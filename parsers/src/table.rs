@@ -15,7 +15,7 @@ use crate::source::{Source, Where};
 
 /// What to do when other headings were expected.
 const NOT_THE_HEADINGS: &str =
-    "correct `header`: a row number, or { find = \"a heading\" } to look for the row";
+    "correct the heading, or `header` if the headings stand in another row";
 /// The text cells above and in which a mistyped text is sought for a hint.
 const HINT_CELLS: usize = 4096;
 

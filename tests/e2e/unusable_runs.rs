@@ -66,7 +66,7 @@ fn two_programs_hold_the_round() {
     for word in [
         "program",
         "`hub rev 12` in 17 runs",
-        "`hub rev 13` in 1 runs",
+        "`hub rev 13` in 1 run",
     ] {
         assert!(reason.contains(word), "{word} is not in: {reason}");
     }

@@ -5,12 +5,10 @@ mod patient;
 mod server;
 mod unrecorded;
 
-use tokio::time::Instant;
-
 use super::outbox::BATCH;
 use super::*;
 use crate::ledger::OutboxRow;
-use bench::{Bench, DEADLINE, SHORT, config, plain};
+use bench::{Bench, DEADLINE, SHORT, config, plain, until};
 use server::{FakeServer, Manner};
 
 #[tokio::test]
@@ -199,11 +197,7 @@ async fn a_stop_does_not_wait_for_a_silent_server() {
     let mut bench = Bench::new();
     bench.owe("mail", "quality@halden.example");
     bench.start(config(&plain(server.port)));
-    let deadline = Instant::now() + DEADLINE;
-    while *server.connections.lock().unwrap() == 0 {
-        assert!(Instant::now() < deadline);
-        sleep(Duration::from_millis(5)).await;
-    }
+    until(|| *server.connections.lock().unwrap() > 0).await;
     let ledger = bench.ledger.clone();
     let took = bench.stopped().await;
     assert!(took < SHORT.stop + Duration::from_secs(2), "{took:?}");

@@ -127,7 +127,7 @@ impl<'a> Document<'a> {
                             "line {line}: the reference `&{};` means nothing here",
                             shorten(&entity)
                         ))
-                        .hint("write `&` as `&amp;`"));
+                        .hint("only `&amp;`, `&lt;`, `&gt;`, `&quot;`, `&apos;` and numbers of printable characters do"));
                     };
                     self.gather(c.encode_utf8(&mut [0; 4]), line)?;
                 }

@@ -213,6 +213,50 @@ fn plain_headings_need_no_rule() {
 }
 
 #[test]
+fn columns_that_plain_reading_does_not_use_are_named() {
+    let notes = |text: &str, factors: &[&str]| {
+        let asked = Plain {
+            factors: factors.iter().map(|&name| name.to_owned()).collect(),
+        };
+        let export = Export {
+            path: "",
+            bytes: text.as_bytes(),
+        };
+        read_plain(export, &asked).unwrap().notes
+    };
+    assert_snapshot!(notes("part,Operator,value\nP1,KL,1\n", &[]).join("\n"), @"");
+    assert_snapshot!(notes("\npart;Run;Dimension;batch;value\nP1;1;bore;7;1\n", &[]).join("\n"), @"");
+    assert_snapshot!(notes("part,sample,value\nP1,3,1\n", &[]).join("\n"), @"");
+    let many: Vec<String> = (1..=15).map(|n| format!("x{n}")).collect();
+    let many = format!("part,value,{}\nP1,1{}\n", many.join(","), ",2".repeat(15));
+    assert_snapshot!(notes(&many, &[]).join("\n"), @"");
+    assert!(notes("Part,User,Value\nP1,KL,1\n", &["user"]).is_empty());
+    assert!(notes("part,value\nP1,1\n", &[]).is_empty());
+}
+
+#[test]
+fn an_outcome_without_notes_is_one_with_none() {
+    let parsed: restudy_parsers::Parsed =
+        serde_json::from_str(r#"{"runs":[],"readings":[],"set_aside":[]}"#).unwrap();
+    assert!(parsed.notes.is_empty());
+}
+
+#[test]
+fn stamps_of_an_instrument_that_runs_on_utc_are_shown_in_the_sites_zone() {
+    let rule = Rule {
+        taken: Some(Taken {
+            role: column("taken"),
+            format: None,
+            written_in: Some("UTC".to_owned()),
+            shown_in: Some("Europe/Oslo".to_owned()),
+        }),
+        ..table()
+    };
+    let text = "part,value,taken\nP1,1,2026-06-11T19:50:00\nP2,2,2026-06-11T21:50:00+02:00\n";
+    assert_snapshot!(read(text, &rule), @"");
+}
+
+#[test]
 fn an_outcome_survives_the_way_through_json() {
     let export = Export {
         path: "hub/run-2.csv",

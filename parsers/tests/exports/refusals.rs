@@ -1,6 +1,6 @@
 //! Exports that cannot be read at all: one sentence each.
 
-use crate::shared::{column, label, path, read, table, xml};
+use crate::shared::{column, label, path, read, read_at, table, xml};
 use insta::assert_snapshot;
 use restudy_parsers::{
     Bounds, Cell, Export, Form, Header, Plain, Reader, Role, Rule, Sheet, Trial, read_plain,
@@ -288,4 +288,84 @@ fn plain_exports_that_are_not_plain() {
     run P1 | 2 | fixture left
       value: 1 (line 3, column `value`)
     ");
+}
+
+#[test]
+fn bytes_that_are_neither_text_nor_a_workbook_whatever_the_file_is_called() {
+    let picture = b"\x89PNG\r\n\x1a\n\0\0\0\rIHDR\0\0\x02\0\0\0\x01\x80";
+    let latin = Rule {
+        encoding: Some("windows-1252".to_owned()),
+        ..table()
+    };
+    assert_snapshot!(read_at("run-1.xlsx", picture, &table()), @"");
+    assert_eq!(
+        read_at("run-1.csv", picture, &table()),
+        read_at("run-1.xlsx", picture, &latin)
+    );
+    assert_snapshot!(read("%PDF-1.7\n\u{1}\u{2}\u{3}\u{4}", &table()), @"");
+    assert_snapshot!(read(b"part,value\nSt\xfcck,1\n", &table()), @"");
+}
+
+#[test]
+fn text_under_a_workbooks_name_is_told_so_only_when_it_cannot_be_read() {
+    assert_snapshot!(read_at("GRR/run-1.XLSX", "part,value\nP1,1\n", &table()), @"");
+    assert_snapshot!(read_at("GRR/run-1.XLSX", "part;actual\nP1;1\n", &table()), @"");
+    assert_snapshot!(read_at("run-1.xlsx", "<?xml version=\"1.0\"?><a/>", &table()), @"");
+    assert_snapshot!(read_at("run-1.xls", "<html><table></table></html>", &table()), @"");
+    assert_snapshot!(read_at("run-1.xlsx", "part,value\nP1,1\n", &xml_rule()), @"");
+    let plain = read_plain(
+        Export {
+            path: "run-1.xlsx",
+            bytes: b"<html><table></table></html>",
+        },
+        &Plain::default(),
+    );
+    assert_snapshot!(crate::shared::shown(&plain), @"");
+}
+
+#[test]
+fn a_wrong_delimiter_leaves_one_field_a_line() {
+    assert_snapshot!(read("part;value;unit, SI\nP1;1;mm\n", &table()), @"");
+    let semicolons = "by;KL;\n\npart;value\nP1;1,5\n";
+    let find = Rule {
+        form: Form::Table {
+            sheet: Sheet::First,
+            header: Header::Find("Part".to_owned()),
+            delimiter: Some('\t'),
+        },
+        ..table()
+    };
+    assert_snapshot!(read(semicolons, &find), @"");
+    let third = Rule {
+        form: Form::Table {
+            sheet: Sheet::First,
+            header: Header::Row(3),
+            delimiter: Some('|'),
+        },
+        appraiser: Some(label("by")),
+        ..table()
+    };
+    assert_snapshot!(read(semicolons, &third), @"");
+    assert_snapshot!(read("by;KL;\n\npart|value\nP1|1,5\n", &third), @"");
+    assert_snapshot!(read("part\tvalue\nP1\t1\n", &table()), @"");
+    let plain = read_plain(
+        Export {
+            path: "",
+            bytes: b"part|value\nP1|1\n",
+        },
+        &Plain::default(),
+    );
+    assert_snapshot!(crate::shared::shown(&plain), @"");
+}
+
+#[test]
+fn everyday_words_for_plain_headings_are_asked_about() {
+    let plain = read_plain(
+        Export {
+            path: "",
+            bytes: b"Part,Operator,Result\nP1,KL,1\n",
+        },
+        &Plain::default(),
+    );
+    assert_snapshot!(crate::shared::shown(&plain), @"");
 }

@@ -198,3 +198,12 @@ impl Bench {
         asked.elapsed()
     }
 }
+
+/// Waits for something that the ledger does not show.
+pub(super) async fn until(state: impl Fn() -> bool) {
+    let deadline = Instant::now() + DEADLINE;
+    while !state() {
+        assert!(Instant::now() < deadline);
+        sleep(Duration::from_millis(5)).await;
+    }
+}

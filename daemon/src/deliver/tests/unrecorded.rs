@@ -86,14 +86,6 @@ async fn without_room_for_a_record_nothing_is_delivered() {
     bench.stopped().await;
 }
 
-async fn until(state: impl Fn() -> bool) {
-    let deadline = Instant::now() + DEADLINE;
-    while !state() {
-        assert!(Instant::now() < deadline);
-        sleep(Duration::from_millis(5)).await;
-    }
-}
-
 /// What was logged.
 #[derive(Clone, Default)]
 struct Lines(Arc<Mutex<Vec<u8>>>);
