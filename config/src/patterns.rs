@@ -1,6 +1,6 @@
 //! File name patterns, and whether one file name could match two of them.
 
-use globset::{GlobBuilder, GlobSet, GlobSetBuilder};
+use globset::{ErrorKind, GlobBuilder, GlobSet, GlobSetBuilder};
 
 use crate::checked::FilePatterns;
 use crate::walk::Node;
@@ -25,12 +25,24 @@ pub(crate) fn patterns(node: &Node<'_>) -> Option<FilePatterns> {
             }
             Err(error) => entry.fault_hint(
                 "a file name pattern such as \"*.xlsx\"",
-                error.kind().to_string(),
+                in_words(error.kind()),
             ),
         }
     }
     let set: GlobSet = set.build().ok()?;
     (written.len() == entries.len() && !written.is_empty()).then_some(FilePatterns { written, set })
+}
+
+fn in_words(why: &ErrorKind) -> String {
+    match why {
+        ErrorKind::UnclosedClass => "`[` without its `]`",
+        ErrorKind::InvalidRange(..) => "a range such as `[a-z]` begins with the lower character",
+        ErrorKind::UnopenedAlternates => "`}` without its `{`",
+        ErrorKind::UnclosedAlternates => "`{` without its `}`",
+        ErrorKind::DanglingEscape => "`\\` at the end stands before nothing",
+        _ => "`*` stands for any characters, `?` for one, `{a,b}` for either",
+    }
+    .to_owned()
 }
 
 /// The first two patterns that one file name could match. Never misses an overlap; a character class counts as any character.

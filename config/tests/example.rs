@@ -392,3 +392,30 @@ fn mail_and_routes() {
     ];
     assert_eq!(config.routes, expected);
 }
+
+#[test]
+fn what_its_comments_offer_is_read_when_it_is_taken_in() {
+    let taken_in = HALDEN
+        .replace("# appraiser    = ", "appraiser = ")
+        .replace("# port        = ", "port = ")
+        .replace(
+            "parts       = [\"C1\"",
+            "appraisers = [\"KL\", \"MO\"]\nparts = [\"C1\"",
+        );
+    let (config, warnings) =
+        read_at_halden(&taken_in).unwrap_or_else(|faults| panic!("{}", shown(&faults)));
+    assert_eq!(shown(&warnings), "");
+    assert_eq!(
+        config.instruments[1].rule.appraiser,
+        Some(xml("/export/@operator"))
+    );
+    let port = |tls: &str, text: &str| {
+        let text = text.replace("= \"starttls\"  ", &format!("= \"{tls}\"  "));
+        let (config, _) =
+            read_at_halden(&text).unwrap_or_else(|faults| panic!("{}", shown(&faults)));
+        config.mail.map(|mail| mail.port)
+    };
+    assert_eq!(port("starttls", &taken_in), Some(587));
+    assert_eq!(port("starttls", HALDEN), Some(587));
+    assert_eq!(port("implicit", HALDEN), Some(465));
+}

@@ -1,8 +1,9 @@
 //! Notices: what a round's result is worth telling, to whom, and in which words.
 //!
 //! Model: one message a round, made from everything that was worked out, the most urgent characteristic first.
-//! There is one when a standing differs from the round before, when a first study lies above a limit, or when a
-//! revision changes what people were told. From it follows one row for the log and one finished mail a recipient.
+//! There is one when a standing differs from the round before, when a first study lies above a limit, when a
+//! characteristic could not be worked out, or when a revision changes what people were told. From it follows one row
+//! for the log and one finished mail a recipient.
 //!
 //! Not here: sending (`deliver`), judging (`analyse`).
 //!

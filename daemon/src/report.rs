@@ -28,6 +28,7 @@ mod tables;
 #[cfg(test)]
 mod tests;
 mod unit;
+mod unjudged;
 mod words;
 
 use std::sync::Arc;

@@ -91,23 +91,21 @@ pub(crate) fn misnamed(path: &str, text: &str, refused: Refused) -> Refused {
         return refused;
     }
     let begins = shorten_to(text, 40).to_lowercase();
-    let what = if begins.starts_with("<?xml") {
-        "XML"
-    } else if begins.starts_with("<!doctype html") || begins.starts_with("<html") {
-        "HTML"
-    } else {
-        "plain text"
+    let is_html = begins.starts_with("<!doctype html") || begins.starts_with("<html");
+    let what = match begins.starts_with("<?xml") {
+        true => "XML",
+        false if is_html => "HTML",
+        false => "plain text",
     };
+    let hint = refused.hint.filter(|_| !is_html);
     Refused {
         sentence: format!(
             "`{}` is named as a workbook but holds {what}: {}",
             shorten_to(name, 100),
             refused.sentence
         ),
-        hint: refused
-            .hint
-            .or_else(|| Some("have it saved as a workbook (xlsx)".to_owned())),
-        ..refused
+        hint: hint.or_else(|| Some("have it saved as a workbook (xlsx)".to_owned())),
+        perhaps_unfinished: refused.perhaps_unfinished,
     }
 }
 

@@ -51,8 +51,8 @@ pub(crate) fn drafts<'a>(source: &'a Source<'a>) -> Option<Vec<Draft<'a>>> {
     for record in records {
         let record = match record {
             Ok(record) => record,
-            Err(error) => {
-                whole.fault(error.to_string(), "delimited text");
+            Err(_) => {
+                whole.fault("a line that cannot be split into fields", "delimited text");
                 continue;
             }
         };

@@ -12,7 +12,7 @@ use crate::now::Now;
 /// Notices fetched at once; bounds memory, whatever the backlog.
 pub(super) const BATCH: usize = 16;
 /// What the disk must take before a batch is handed out, bytes: more than the records of a batch.
-const ROOM: [u8; 256 * 1024] = [0; 256 * 1024];
+const ROOM: usize = 256 * 1024;
 
 /// Why nothing is delivered for now.
 #[derive(Debug, thiserror::Error)]
@@ -106,6 +106,6 @@ async fn apart<T: Send + 'static>(
 /// Writes a file without a name, which is gone when it is closed.
 fn room(state: &Path) -> io::Result<()> {
     let mut file = tempfile::tempfile_in(state)?;
-    file.write_all(&ROOM)?;
+    file.write_all(&vec![0; ROOM])?;
     file.sync_all()
 }

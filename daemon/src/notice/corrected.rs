@@ -97,10 +97,13 @@ fn corrections<'a>(round: &Round<'a>, told: &Told) -> Vec<Correction<'a>> {
             .find(|row| row.characteristic == item.outcome.characteristic)
     };
     let differs = |item: &Item<'a>| {
+        let row = before(item);
         let (standing, share) =
-            before(item).map_or((Standing::NotJudged, None), |row| (row.standing, row.share));
+            row.map_or((Standing::NotJudged, None), |row| (row.standing, row.share));
         let printed = |share: Option<f64>| share.map(percent);
-        let differs = standing != item.now() || printed(share) != printed(item.share());
+        let new_and_failed = row.is_none() && item.outcome.study.is_err();
+        let differs =
+            standing != item.now() || printed(share) != printed(item.share()) || new_and_failed;
         differs.then_some(Correction {
             item: *item,
             standing,
@@ -121,6 +124,7 @@ fn line(label: &'static str, text: impl Into<String>) -> Line {
 fn brief(correction: &Correction<'_>) -> String {
     let item = correction.item;
     match correction.share {
+        _ if item.outcome.study.is_err() => what(correction),
         Some(told) if item.share().map(percent) == Some(percent(told)) => what(correction),
         Some(told) => format!(
             "{} {} (not {})",
@@ -141,6 +145,11 @@ fn what(correction: &Correction<'_>) -> String {
     let item = correction.item;
     let label = item.label();
     match (item.share(), correction.share) {
+        (None, Some(told)) if item.outcome.study.is_err() => format!(
+            "{label} could not be worked out, and had been told with {}",
+            percent(told)
+        ),
+        (None, None) if item.outcome.study.is_err() => format!("{label} could not be worked out"),
         (Some(now), Some(told)) if percent(now) == percent(told) => {
             format!(
                 "{label} stands at {}, not at {}",
@@ -171,7 +180,7 @@ fn what(correction: &Correction<'_>) -> String {
 
 fn first(told: &Told, head: &Correction<'_>, round: &Round<'_>) -> String {
     let mut text = format!("{}.", capital(&what(head)));
-    if head.standing == head.item.now() {
+    if head.standing == head.item.now() && head.item.record().is_some() {
         text.push_str(&format!(" It stays at \"{}\".", head.item.now()));
     } else if head.item.share().is_some() {
         text.push_str(&format!(

@@ -9,9 +9,10 @@ use super::letter::Block;
 use super::news::{Item, News};
 use super::sure::{self, share_and_before};
 use super::telling::Telling;
-use super::words::{Scale, at_least, capital, count, minute, sentence, span};
+use super::words::{Scale, at_least, capital, count, limit, percent, sentence};
 use crate::evidence::Evidence;
-use crate::plain::in_error;
+use crate::now::in_zone;
+use crate::plain::{dates, held_clause, in_error};
 use crate::record::Record;
 
 /// Characteristics named, and runs named that were not used.
@@ -66,7 +67,8 @@ fn closed(config: &Config, evidence: &Evidence) -> String {
     let round = &evidence.round;
     let closed = round
         .closed
-        .map(|at| format!(", closed {}", minute(at, &config.site.zone)))
+        .map(|at| in_zone(at, &config.site.zone).datetime())
+        .map(|at| format!(", closed {}", dates::minute(at)))
         .unwrap_or_default();
     let revision = if round.revision > 1 {
         format!(", revision {}", round.revision)
@@ -74,7 +76,7 @@ fn closed(config: &Config, evidence: &Evidence) -> String {
         String::new()
     };
     let measured = evidence.measured.map_or_else(String::new, |m| {
-        format!(" Measured {}.", span(m.first, m.last))
+        format!(" Measured {}.", dates::span(m.first, m.last))
     });
     let not_used = match evidence.not_used.len() {
         0 => String::new(),
@@ -135,6 +137,9 @@ fn counts(items: &[Item<'_>]) -> String {
 }
 
 fn ranked(item: Item<'_>) -> String {
+    if item.now() == Standing::NotJudged {
+        return not_judged(item);
+    }
     let mut line = format!("{}: {}", item.label(), item.now());
     match item.before() {
         Some(before) if before == item.now() => line.push_str(" as before"),
@@ -142,9 +147,11 @@ fn ranked(item: Item<'_>) -> String {
         None => {}
     }
     line.push_str(&format!(", {}", share_and_before(item)));
-    let least = item
-        .record()
-        .and_then(|r| r.study.figures.gauge.share_of_tolerance.at_least);
+    let record = item.record();
+    if let Some(held) = record.and_then(|record| held_clause(record, limit)) {
+        line.push_str(&format!(", {held}"));
+    }
+    let least = record.and_then(|r| r.study.figures.gauge.share_of_tolerance.at_least);
     if let Some(least) = least.filter(|least| *least >= sure::SAID_FROM) {
         line.push_str(&format!(", at least {}", at_least(least)));
     }
@@ -152,6 +159,26 @@ fn ranked(item: Item<'_>) -> String {
         line.push_str("; special");
     }
     line
+}
+
+/// `bore A: could not be worked out (was under, 18 %)`.
+fn not_judged(item: Item<'_>) -> String {
+    let now = if item.news == News::Failed {
+        "could not be worked out"
+    } else {
+        "not judged any more"
+    };
+    let before = match (item.before(), item.share_before()) {
+        (Some(before), Some(share)) => format!("was {before}, {}", percent(share)),
+        (Some(before), None) => format!("was {before}"),
+        (None, _) => "first study".into(),
+    };
+    let special = if item.outcome.special {
+        "; special"
+    } else {
+        ""
+    };
+    format!("{}: {now} ({before}){special}", item.label())
 }
 
 /// Spreads and mean squares of one characteristic, as a reader's own sheet would have them.
@@ -218,5 +245,8 @@ fn one_trial(record: &Record, telling: Telling<'_>) -> Option<String> {
 
 /// Where to read on.
 pub(super) fn report(path: &Path) -> Block {
-    Block::Text(format!("Report: {}", path.display()))
+    Block::Text(format!(
+        "Report (on the server that runs Restudy): {}",
+        path.display()
+    ))
 }

@@ -19,6 +19,8 @@ pub(super) enum News {
     NewWatch,
     /// At act, as before.
     StillAct,
+    /// Could not be worked out, in a first study or after one that was judged.
+    Failed,
     /// Judged before, not any more.
     Lost,
     /// Below a limit that it held, or judged again and under both.
@@ -30,8 +32,8 @@ pub(super) enum News {
 }
 
 impl News {
-    /// From the standing in the plan's round before, if there was one, to now.
-    pub(super) fn of(before: Option<Standing>, now: Standing) -> Self {
+    /// From the standing in the plan's round before, if there was one, to now; `worked_out`: there is a study.
+    pub(super) fn of(before: Option<Standing>, now: Standing, worked_out: bool) -> Self {
         use Standing::{Act, NotJudged, Under, Watch};
         match (before, now) {
             (Some(Act), Act) => Self::StillAct,
@@ -39,6 +41,7 @@ impl News {
             (Some(Watch), Watch) => Self::StillWatch,
             (Some(Act), Watch) => Self::Back,
             (_, Watch) => Self::NewWatch,
+            (None | Some(Act | Watch | Under), NotJudged) if !worked_out => Self::Failed,
             (Some(Act | Watch | Under), NotJudged) => Self::Lost,
             (Some(Act | Watch | NotJudged), Under) => Self::Back,
             (Some(Under) | None, Under) | (Some(NotJudged) | None, NotJudged) => Self::Quiet,
@@ -49,7 +52,7 @@ impl News {
     pub(super) const fn changed(self) -> bool {
         matches!(
             self,
-            Self::NewAct | Self::NewWatch | Self::Lost | Self::Back
+            Self::NewAct | Self::NewWatch | Self::Failed | Self::Lost | Self::Back
         )
     }
 }
@@ -137,7 +140,8 @@ pub(super) fn ranked(worked: &Worked) -> Vec<Item<'_>> {
         .iter()
         .filter_map(|outcome| {
             let earlier = worked.earlier.get(&outcome.characteristic);
-            let news = News::of(earlier.map(|e| e.study.standing), outcome.standing());
+            let before = earlier.map(|e| e.study.standing);
+            let news = News::of(before, outcome.standing(), outcome.study.is_ok());
             let feature = worked.evidence.features.get(outcome.feature)?;
             Some(Item {
                 outcome,
@@ -153,7 +157,7 @@ pub(super) fn ranked(worked: &Worked) -> Vec<Item<'_>> {
 
 #[cfg(test)]
 mod tests {
-    use super::News::{Back, Lost, NewAct, NewWatch, Quiet, StillAct, StillWatch};
+    use super::News::{Back, Failed, Lost, NewAct, NewWatch, Quiet, StillAct, StillWatch};
     use super::*;
     use Standing::{Act, NotJudged, Under, Watch};
 
@@ -180,12 +184,27 @@ mod tests {
             (Some(NotJudged), Under, Back),
         ];
         for (before, now, news) in table {
-            assert_eq!(News::of(before, now), news, "{before:?} to {now:?}");
+            assert_eq!(News::of(before, now, true), news, "{before:?} to {now:?}");
             assert_eq!(
                 news.changed(),
                 before.map_or(now >= Watch, |b| b != now),
                 "{before:?} to {now:?}"
             );
+        }
+    }
+
+    #[test]
+    fn what_could_not_be_worked_out_is_told_once() {
+        let table = [
+            (None, Failed),
+            (Some(Under), Failed),
+            (Some(Watch), Failed),
+            (Some(Act), Failed),
+            (Some(NotJudged), Quiet),
+        ];
+        for (before, news) in table {
+            assert_eq!(News::of(before, NotJudged, false), news, "{before:?}");
+            assert_eq!(news.changed(), before != Some(NotJudged), "{before:?}");
         }
     }
 }

@@ -1,4 +1,4 @@
-//! The message of a round in which standings changed.
+//! The message of a round in which standings changed, a first study lies above a limit, or a study is missing.
 
 use restudy_engine::Judge;
 
@@ -8,14 +8,15 @@ use super::letter::{Letter, Line};
 use super::news::{Item, News};
 use super::past::Past;
 use super::telling::Telling;
-use super::words::{Scale, capital, count, day, limit, sentence, some};
+use super::words::{Scale, capital, count, limit, list, sentence, some};
 use super::{Round, sure};
+use crate::plain::dates::day;
 use crate::record::Record;
 
 /// Characteristics named in one line.
 const IN_A_LINE: usize = 4;
 
-/// `None` when no standing changed.
+/// `None` when nothing needs a person.
 pub(super) fn letter(round: &Round<'_>) -> Option<Letter> {
     let head = round.items.iter().copied().find(|i| i.news.changed())?;
     let scale = scale(head);
@@ -29,6 +30,7 @@ pub(super) fn letter(round: &Round<'_>) -> Option<Letter> {
             up(round, head, record, past.as_ref(), telling)
         }
         (News::Back, Some(record)) => back(round, head, record, past.as_ref(), telling),
+        (News::Failed, _) => failed(round, head),
         _ => lost(round, head),
     };
     let mut body = facts::round(round.config, round.evidence(), &round.items);
@@ -36,20 +38,48 @@ pub(super) fn letter(round: &Round<'_>) -> Option<Letter> {
         body.extend(facts::figures(head, record, telling, &scale));
     }
     body.push(facts::report(&round.report));
-    let changed = round.items.iter().filter(|i| i.news.changed()).count();
     Some(Letter {
         subject: subject(round, head),
         lead,
         body,
         foot: vec![
             format!(
-                "You get this because {} changed. The next mail comes when one changes again.",
-                count(changed, "standing")
+                "You get this because {}. The next mail comes when a standing changes.",
+                reasons(&round.items)
             ),
             CAUTION.into(),
             round.signature(),
         ],
     })
+}
+
+/// `2 standings changed and 1 first study lies above a limit`.
+fn reasons(items: &[Item<'_>]) -> String {
+    let told =
+        |of: fn(&Item<'_>) -> bool| items.iter().filter(|i| i.news.changed() && of(i)).count();
+    let failed = told(|i| i.news == News::Failed);
+    let first = told(|i| i.news != News::Failed && i.earlier.is_none());
+    let changed = told(|i| i.news != News::Failed && i.earlier.is_some());
+    let lie = match first {
+        1 => "1 first study lies above a limit".into(),
+        n => format!("{n} first studies lie above a limit"),
+    };
+    let reasons = [
+        (changed, format!("{} changed", count(changed, "standing"))),
+        (first, lie),
+        (
+            failed,
+            format!(
+                "{} could not be worked out",
+                count(failed, "characteristic")
+            ),
+        ),
+    ];
+    let reasons: Vec<String> = reasons
+        .into_iter()
+        .filter_map(|(n, reason)| (n > 0).then_some(reason))
+        .collect();
+    list(&reasons)
 }
 
 pub(super) fn scale(item: Item<'_>) -> Scale {
@@ -92,10 +122,15 @@ fn subject(round: &Round<'_>, head: Item<'_>) -> String {
             );
         }
         _ => {
+            let failed = if head.news == News::Failed {
+                " could not be worked out"
+            } else {
+                ""
+            };
             let before = head.share_before().map_or_else(String::new, |s| {
                 format!(" (was {} of tolerance)", super::words::percent(s))
             });
-            ("NOT JUDGED", format!("{label}{before}"))
+            ("NOT JUDGED", format!("{label}{failed}{before}"))
         }
     };
     let more = more.map(|more| format!(" ({more})")).unwrap_or_default();
@@ -174,6 +209,9 @@ fn also(round: &Round<'_>, head: Item<'_>, cause: Option<&Cause>) -> String {
         group(News::NewWatch, "new at watch", with_share),
         same_level(round, head, cause).filter(|_| head.news == News::NewWatch),
         group(News::StillAct, "still at act", with_both),
+        group(News::Failed, "could not be worked out", |i| {
+            format!("{} ({})", i.label(), sentence(i.why()))
+        }),
         group(News::Lost, "not judged any more", |i| i.label()),
         group(News::Back, "back", with_both),
     ];
@@ -184,10 +222,26 @@ fn also(round: &Round<'_>, head: Item<'_>, cause: Option<&Cause>) -> String {
         .map(|(n, s)| if n == 0 { s } else { capital(&s) })
         .collect();
     if told.is_empty() {
-        "nothing else changed.".into()
+        nothing_else(head, others())
     } else {
         format!("{}.", told.join(". "))
     }
+}
+
+/// That the others are not news: a first study has nothing that it could have changed from.
+fn nothing_else<'a>(head: Item<'_>, mut others: impl Iterator<Item = Item<'a>> + Clone) -> String {
+    let nothing = if head.earlier.is_some() {
+        "nothing else changed."
+    } else if others.clone().next().is_none() {
+        "no other characteristic was studied."
+    } else if others.any(|i| i.earlier.is_some()) {
+        "no other standing changed."
+    } else if head.news == News::Failed {
+        "no first study lies above a limit."
+    } else {
+        "no other first study lies above a limit."
+    };
+    nothing.into()
 }
 
 /// How many of the others with the same news have the same level standing out.
@@ -273,8 +327,32 @@ fn back(
     ]
 }
 
-fn lost(round: &Round<'_>, head: Item<'_>) -> Vec<Line> {
-    let before = match (head.share_before(), head.earlier) {
+fn failed(round: &Round<'_>, head: Item<'_>) -> Vec<Line> {
+    let before = if head.earlier.is_some() {
+        before(round, head)
+    } else {
+        " This is its first study.".into()
+    };
+    vec![
+        line(
+            "",
+            format!(
+                "{} could not be worked out.{before}",
+                capital(&head.label())
+            ),
+        ),
+        line("Why", format!("{}.", sentence(head.why()))),
+        line("Also", also(round, head, None)),
+        line(
+            "Next",
+            "set right what the reason names, in the exports or in the plan. Until then nothing says where it stands.",
+        ),
+    ]
+}
+
+/// What a characteristic that is not judged took before.
+fn before(round: &Round<'_>, head: Item<'_>) -> String {
+    match (head.share_before(), head.earlier) {
         (Some(share), Some(earlier)) => {
             format!(
                 " It was {} of the tolerance on {}.",
@@ -283,7 +361,11 @@ fn lost(round: &Round<'_>, head: Item<'_>) -> Vec<Line> {
             )
         }
         _ => String::new(),
-    };
+    }
+}
+
+fn lost(round: &Round<'_>, head: Item<'_>) -> Vec<Line> {
+    let before = before(round, head);
     vec![
         line(
             "",

@@ -7,11 +7,12 @@ use super::judged;
 use super::news::{Item, News};
 use super::past::Past;
 use super::words::{
-    at_least, at_most, capital, chance, day, limit, name, percent, percent_against, sentence,
+    at_least, at_most, capital, chance, limit, name, percent, percent_against, sentence,
 };
 use crate::evidence::Evidence;
 use crate::figures::significant;
-use crate::plain::UpperEnd;
+use crate::plain::dates::day;
+use crate::plain::{UpperEnd, held as held_limit};
 use crate::record::Record;
 
 /// A lower limit below this is not worth a word.
@@ -188,22 +189,19 @@ pub(super) fn below(item: Item<'_>) -> Option<String> {
 /// Why a standing is held although the judged figure is not above its limit.
 pub(super) fn held(item: Item<'_>, judge: Judge) -> Option<String> {
     let (limits, judged) = (item.limits()?, judged::of(item, judge)?);
-    let at = match item.news {
-        News::StillAct => limits.act,
-        News::StillWatch => limits.watch,
-        _ => return None,
-    };
+    if !matches!(item.news, News::StillAct | News::StillWatch) {
+        return None;
+    }
+    let at = held_limit(item.now(), Some(judged.share), limits)?;
     let is_at = match judged.name {
         None => format!("is at {}", judged.value),
         Some(name) => format!("is held: {name} is {}", judged.value),
     };
-    (judged.share <= at).then(|| {
-        format!(
-            "{} {is_at}: under {}, not yet under {}, so it stays at {}",
-            item.label(),
-            limit(at),
-            limit(limits.back_below * at),
-            item.now()
-        )
-    })
+    Some(format!(
+        "{} {is_at}: under {}, not yet under {}, so it stays at {}",
+        item.label(),
+        limit(at),
+        limit(limits.back_below * at),
+        item.now()
+    ))
 }

@@ -166,8 +166,8 @@ impl Telling<'_> {
         };
         let moved = match past.repeatability_now(now)? {
             Repeatability::AsBefore => "no more change than chance makes",
-            Repeatability::Higher => "more than chance explains",
-            Repeatability::Lower => "less than chance explains",
+            Repeatability::Higher => "higher, by more than chance explains",
+            Repeatability::Lower => "lower, by more than chance explains",
         };
         Some(format!("Repeatability: {shown}, {moved}"))
     }

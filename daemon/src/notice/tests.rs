@@ -1,6 +1,7 @@
 //! Messages of rounds whose figures are known by exact arithmetic (see `bench`).
 
 mod bench;
+mod first;
 mod honest;
 mod ledger;
 
@@ -87,9 +88,9 @@ fn a_crossing_is_told_with_its_cause_and_what_it_would_be_without() {
     1 characteristic: act 1 (was 0), watch 0 (was 0), under 0 (was 1), not judged 0 (was 0).
     Bore A, standard deviations in µm: EV 0.800, AV 1.39, GRR 1.60, PV 6.06; ndc 5.
     Mean squares in µm² (df): part 330.0 (9), loading 57.60 (2), part × loading 0 (18), within cells 0.6400 (60).
-    Report: /var/lib/restudy/reports/impeller_hub/round-0002.html
+    Report (on the server that runs Restudy): /var/lib/restudy/reports/impeller_hub/round-0002.html
 
-    You get this because 1 standing changed. The next mail comes when one changes again.
+    You get this because 1 standing changed. The next mail comes when a standing changes.
     A study is evidence about a gauge, not a release of product. Decisions, and rules of your customer or of the law, are for the people responsible for them.
     Restudy at Halden Pump Works, plan impeller hub.
     "#);
@@ -168,7 +169,9 @@ fn repeatability_is_told_against_the_round_before() {
         message.text
     );
     assert!(
-        why.contains("Repeatability: 36 % of tolerance (was 18 %), more than chance explains"),
+        why.contains(
+            "Repeatability: 36 % of tolerance (was 18 %), higher, by more than chance explains"
+        ),
         "{why}"
     );
 }

@@ -1,12 +1,9 @@
-//! Numbers, dates and foreign texts in words: no more digits than a study supports.
+//! Numbers and foreign texts in words: no more digits than a study supports.
 
-use jiff::civil::{Date, DateTime};
-use jiff::tz::TimeZone;
 use restudy_engine::Limits;
 
 use crate::figures::significant;
-use crate::now::in_zone;
-use crate::plain::{Rounded, percent_as_set};
+use crate::plain::{Rounded, dates, percent_as_set};
 
 /// Names out of exports are cut to this many characters.
 const NAME_MAX: usize = 80;
@@ -58,32 +55,6 @@ pub(super) fn chance(p: f64) -> String {
     }
 }
 
-/// `3 March 2026`.
-pub(super) fn day(date: Date) -> String {
-    date.strftime("%-d %B %Y").to_string()
-}
-
-/// `3 March 2026 14:20`.
-pub(super) fn minute(utc_ms: i64, zone: &TimeZone) -> String {
-    in_zone(utc_ms, zone)
-        .strftime("%-d %B %Y %H:%M")
-        .to_string()
-}
-
-/// `3 March 2026 08:00 to 14:20`, or with both days.
-pub(super) fn span(first: DateTime, last: DateTime) -> String {
-    let end = if first.date() == last.date() {
-        "%H:%M"
-    } else {
-        "%-d %B %Y %H:%M"
-    };
-    format!(
-        "{} to {}",
-        first.strftime("%-d %B %Y %H:%M"),
-        last.strftime(end)
-    )
-}
-
 /// `a`, `a and b`, `a, b and c`.
 pub(super) fn list(names: &[String]) -> String {
     match names {
@@ -111,9 +82,9 @@ pub(super) fn name(text: &str) -> String {
     one_line(text, NAME_MAX)
 }
 
-/// A sentence from elsewhere: one line, not too long, without its full stop.
+/// A sentence from elsewhere: one line, not too long, its dates in words, without its full stop.
 pub(super) fn sentence(text: &str) -> String {
-    one_line(text, SENTENCE_MAX)
+    one_line(&dates::in_words(text), SENTENCE_MAX)
         .trim_end_matches('.')
         .to_owned()
 }

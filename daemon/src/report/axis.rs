@@ -5,11 +5,17 @@
 //!
 //! Invariant: a position is a finite number from 0 to 100, whatever number is asked for.
 
+use std::ops::RangeInclusive;
+
 /// Where the scale begins and ends, in percent of the picture's width.
 const LEFT: f64 = 0.0;
 const RIGHT: f64 = 100.0;
 /// More ticks than this are never drawn.
 const TICKS_MAX: usize = 24;
+/// Where a tick's label has room, in percent of the picture's width.
+const LABELLED: RangeInclusive<f64> = 6.0..=94.0;
+/// Labelled ticks beside zero that make a scale readable.
+const READABLE: usize = 2;
 
 /// A scale.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -67,8 +73,24 @@ impl Axis {
         self.high
     }
 
-    /// Round values on the scale, about `wanted` of them.
+    /// Round values on the scale, about `wanted` of them; more where fewer than two beside zero had a label.
     pub(super) fn ticks(self, wanted: u32) -> Vec<f64> {
+        let readable = |ticks: &Vec<f64>| {
+            let labelled = |x: &&f64| **x != 0.0 && self.labels(**x);
+            ticks.iter().filter(labelled).count() >= READABLE
+        };
+        (wanted..=TICKS_MAX as u32)
+            .map(|wanted| self.about(wanted))
+            .find(readable)
+            .unwrap_or_else(|| self.about(wanted))
+    }
+
+    /// Whether a label has room at a value.
+    pub(super) fn labels(self, x: f64) -> bool {
+        LABELLED.contains(&self.at(x))
+    }
+
+    fn about(self, wanted: u32) -> Vec<f64> {
         let step = round_step((self.high - self.low) / f64::from(wanted.max(1)));
         let first = (self.low / step).ceil();
         (0..TICKS_MAX)
@@ -128,6 +150,23 @@ mod tests {
             Axis::over([-11.0, 9.0]).unwrap().ticks(4),
             [-10.0, -5.0, 0.0, 5.0]
         );
-        assert_eq!(Axis::over([0.0, 0.42]).unwrap().ticks(4), [0.0, 0.2, 0.4]);
+        assert_eq!(Axis::over([0.0, 0.5]).unwrap().ticks(4), [0.0, 0.2, 0.4]);
+    }
+
+    #[test]
+    fn a_scale_about_zero_always_has_two_labels_beside_it() {
+        let ticks = |reach: f64| Axis::over([-reach, reach]).unwrap().ticks(4);
+        assert_eq!(ticks(10.5), [-10.0, -5.0, 0.0, 5.0, 10.0]);
+        assert_eq!(ticks(4.2), [-4.0, -2.0, 0.0, 2.0, 4.0]);
+        assert_eq!(ticks(1e-3), [-1e-3, -5e-4, 0.0, 5e-4, 1e-3]);
+        for reach in (10..1000).map(|n| 0.1 * f64::from(n)) {
+            let axis = Axis::over([-reach, reach]).unwrap();
+            let labelled = axis.ticks(4).into_iter().filter(|x| axis.labels(*x));
+            let beside: Vec<f64> = labelled.filter(|x| *x != 0.0).collect();
+            assert!(
+                (READABLE..=4).contains(&beside.len()),
+                "{reach}: {beside:?}"
+            );
+        }
     }
 }

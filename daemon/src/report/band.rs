@@ -223,25 +223,33 @@ fn doubt_words(subject: Subject<'_>, doubt: Option<f64>) -> Option<String> {
     ))
 }
 
-fn part_words(subject: Subject<'_>, means: &[f64], outside: usize) -> Option<String> {
+fn part_words(subject: Subject<'_>, means: &[f64], not_drawn: usize) -> Option<String> {
     let (first, rest) = means.split_first()?;
     let (low, high) = rest.iter().fold((*first, *first), |(low, high), m| {
         (low.min(*m), high.max(*m))
     });
+    let (lower, upper) = (subject.record.lower, subject.record.upper);
+    let beyond_limits = means
+        .iter()
+        .filter(|m| lower.is_some_and(|l| **m < l) || upper.is_some_and(|u| **m > u))
+        .count();
     let covered = subject
         .width()
         .map(|width| {
-            format!(
-                "; they cover {} of the tolerance",
-                words::percent((high - low) / width)
-            )
+            let spread = words::percent((high - low) / width);
+            if beyond_limits > 0 {
+                format!("; their spread is {spread} of the tolerance's width")
+            } else {
+                format!("; they cover {spread} of the tolerance")
+            }
         })
         .unwrap_or_default();
-    let beyond = if outside > 0 {
-        format!("; {outside} of them lie outside the picture")
-    } else {
-        String::new()
+    let lie = |n: usize, whose: &str| match n {
+        0 => String::new(),
+        1 => format!("; 1 of them lies outside {whose}"),
+        n => format!("; {n} of them lie outside {whose}"),
     };
+    let beyond = lie(beyond_limits, "the tolerance") + &lie(not_drawn, "the picture");
     Some(format!(
         "Ticks: the means of the {}{covered}{beyond}.",
         count(means.len(), "study part")

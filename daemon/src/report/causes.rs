@@ -126,25 +126,31 @@ impl Ladder {
         (least.sd < (1.0 - WORTH) * self.now.sd).then_some(least)
     }
 
-    /// The longest step as advice, and what no step here can take away.
-    pub(super) fn advice(&self, subject: Subject<'_>, spread: &Spread) -> String {
-        let step = self.step(subject, spread);
-        match subject.undivided() {
-            Some(term) => format!(
-                "{step} One trial does not tell repeatability from {term}; two or more would."
-            ),
-            None => step,
-        }
+    /// The longest step as advice, and what no step here can take away; `None` when there is neither.
+    pub(super) fn advice(&self, subject: Subject<'_>, spread: &Spread) -> Option<String> {
+        let one_trial = subject.undivided().map(|term| {
+            format!("One trial does not tell repeatability from {term}; two or more would.")
+        });
+        let told: Vec<String> = [self.step(subject, spread), one_trial]
+            .into_iter()
+            .flatten()
+            .collect();
+        (!told.is_empty()).then(|| told.join(" "))
     }
 
-    fn step(&self, subject: Subject<'_>, spread: &Spread) -> String {
+    /// `None` when the step is too short to be seen in the numbers.
+    fn step(&self, subject: Subject<'_>, spread: &Spread) -> Option<String> {
         let unit = subject.unit();
         let amount = |sd: f64| amount(sd, subject.share_per_sd(), &unit);
         let Some(step) = self.longest() else {
-            return "None of these changes by itself brings it down.".to_owned();
+            return Some("None of these changes by itself brings it down.".to_owned());
         };
-        let from_to = format!("{} instead of {}", amount(step.sd), amount(self.now.sd));
-        match &step.change {
+        let (to, from) = (amount(step.sd), amount(self.now.sd));
+        if to == from {
+            return None;
+        }
+        let from_to = format!("{to} instead of {from}");
+        Some(match &step.change {
             Change::AsItIs | Change::Twice => format!(
                 "The longest step down is to load and measure each part twice and take the mean, {from_to}: \
                  repeatability weighs most."
@@ -158,7 +164,7 @@ impl Ladder {
                 who(term, subject, spread, &unit)
                     .unwrap_or_else(|| "find out what differs".to_owned())
             ),
-        }
+        })
     }
 }
 
@@ -266,6 +272,7 @@ mod tests {
         assert_eq!(ladder.longest(), Some(&ladder.steps[0]));
         let advice = ladder
             .advice(subject, &Spread::of(subject))
+            .unwrap()
             .replace('\u{a0}', " ");
         // 6 √2 / 40 = 21 %, 6 × 2 / 40 = 30 %.
         assert_eq!(

@@ -73,7 +73,7 @@ fn scale(subject: Subject<'_>, axis: Axis, bottom: f64) -> Markup {
         @for tick in printed.map(|a| a.ticks(4)).unwrap_or_default() {
             @let x = axis.at(tick * per_printed);
             (svg::upright(x, 0.0, bottom, if tick == 0.0 { "axis" } else { "grid" }))
-            @if (6.0..=94.0).contains(&x) {
+            @if axis.labels(tick * per_printed) {
                 (svg::centred(x, bottom + 16.0, "small", format!("{}{}{NBSP}{name}", if tick > 0.0 { "+" } else { "" }, short(tick)).trim_end()))
             }
         }

@@ -11,7 +11,7 @@ use crate::analyse::study::Outcome;
 use crate::analyse::worked::Worked;
 use crate::evidence::Evidence;
 use crate::now::in_zone;
-use crate::plain::interactions;
+use crate::plain::{dates, held_clause, interactions};
 
 use super::axis::Axis;
 use super::pieces::{standing, time};
@@ -131,10 +131,16 @@ fn row(worked: &Worked, outcome: &Outcome, limits: &Limits) -> Markup {
         Ok(record) => record.standing.why.clone(),
         Err(fault) => fault.clone(),
     });
-    let details: Vec<String> = [why_not, least, record.and_then(|r| sure(r)), Some(before)]
-        .into_iter()
-        .flatten()
-        .collect();
+    let details: Vec<String> = [
+        why_not,
+        record.and_then(|r| held_clause(r, limit)),
+        least,
+        record.and_then(|r| sure(r)),
+        Some(before),
+    ]
+    .into_iter()
+    .flatten()
+    .collect();
     html! {
         li {
             div class="entry" {
@@ -194,7 +200,7 @@ fn not_used(evidence: &Evidence) -> Markup {
             h2 { "What was not used, and why?" }
             @if all.is_empty() { p { "Nothing was left out." } }
             @else {
-                ul class="plain" { @for sentence in all.iter().take(NOT_USED_MAX) { li { (capital(sentence)) } } }
+                ul class="plain" { @for sentence in all.iter().take(NOT_USED_MAX) { li { (capital(&dates::in_words(sentence))) } } }
                 @if all.len() > NOT_USED_MAX { p { "And " (all.len() - NOT_USED_MAX) " more, which the ledger keeps." } }
             }
         }

@@ -5,6 +5,7 @@ use maud::{Markup, html};
 use restudy_engine::Standing;
 
 use super::svg::Picture;
+use crate::plain::dates;
 
 /// A picture's drawing, with its height in pixels.
 pub(super) struct Strip {
@@ -52,7 +53,5 @@ pub(super) fn standing(standing: Standing) -> Markup {
 
 /// A civil time as a reader writes it.
 pub(super) fn time(at: DateTime) -> String {
-    at.strftime("%-d %B %Y, %H:%M")
-        .to_string()
-        .replace(' ', "\u{a0}")
+    dates::minute(at).replace(' ', "\u{a0}")
 }

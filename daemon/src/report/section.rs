@@ -82,7 +82,7 @@ fn pictures(outcome: &Outcome, subject: Subject<'_>) -> Markup {
         @if !how_much.is_empty() { (figure(&format!("{id}-band"), question, how_much, None, None)) }
         @if let Some((ladder, strip)) = ladder.as_ref().and_then(|l| Some((l, rungs(subject, l)?))) {
             @let advice = ladder.advice(subject, &spread);
-            (figure(&format!("{id}-rungs"), what, vec![strip], None, Some(&advice)))
+            (figure(&format!("{id}-rungs"), what, vec![strip], None, advice.as_deref()))
         }
         @if let Some(strip) = lanes(subject, &spread) {
             (figure(&format!("{id}-lanes"), &who(subject), vec![strip], Some(legend(&spread)), None))

@@ -8,29 +8,27 @@ use crate::plain::UpperEnd;
 use crate::record::Record;
 
 use super::subject::Subject;
+use super::unjudged::unjudged;
 use super::words::{at_least, at_most, chance, limit, list, percent, percent_beside};
 
 /// A lower limit below this is not worth a word.
 const SAID_FROM: f64 = 0.01;
 
-/// The whole round in one sentence; the outcomes come worst first.
+/// The whole round in two sentences: the worst characteristic, then how many stand where; the outcomes come worst
+/// first.
 pub(super) fn round(ranked: &[&Outcome]) -> String {
     let judged = ranked.iter().find_map(|o| {
         Some((*o, o.study.as_ref().ok()?)).filter(|(o, _)| o.standing() != Standing::NotJudged)
     });
     let Some((worst, record)) = judged else {
-        return match ranked {
-            [] => "Nothing was measured.".to_owned(),
-            [only] => format!("{} could not be judged.", only.characteristic),
-            all => format!("None of the {} characteristics could be judged.", all.len()),
-        };
+        return unjudged(ranked);
     };
     let share = share_words(record).unwrap_or_else(|| "an unknown part".to_owned());
     let sure = sure(record)
         .map(|sure| format!(", with {sure}"))
         .unwrap_or_default();
     let others = if ranked.len() > 1 {
-        format!("; {}", counts(ranked))
+        format!(" {}.", counts(ranked))
     } else {
         String::new()
     };
@@ -39,7 +37,7 @@ pub(super) fn round(ranked: &[&Outcome]) -> String {
     match (worst.standing(), limits) {
         (standing @ (Standing::Act | Standing::Watch), Some(limits)) => {
             format!(
-                "The gauge takes {share} of the tolerance of {name}, {}{sure}{others}.",
+                "The gauge takes {share} of the tolerance of {name}, {}{sure}.{others}",
                 place(record, standing, &limits)
             )
         }
@@ -47,7 +45,7 @@ pub(super) fn round(ranked: &[&Outcome]) -> String {
             format!("The gauge takes {share} of the tolerance of {name}, under its limits{sure}.")
         }
         _ => format!(
-            "The gauge takes the largest share of the tolerance of {name}: {share}, under its limits{sure}{others}."
+            "The gauge takes the largest share of the tolerance of {name}: {share}, under its limits{sure}.{others}"
         ),
     }
 }
@@ -135,26 +133,29 @@ pub(super) fn share_words(record: &Record) -> Option<String> {
     Some(percent_beside(share, &limits))
 }
 
-/// `1 stands at act, 3 under`.
+/// `Of 4 characteristics, 1 is at “act” and 3 under the limits`.
 fn counts(ranked: &[&Outcome]) -> String {
-    let standings = [
-        Standing::Act,
-        Standing::Watch,
-        Standing::Under,
-        Standing::NotJudged,
+    let places = [
+        (Standing::Act, "at “act”"),
+        (Standing::Watch, "at “watch”"),
+        (Standing::Under, "under the limits"),
+        (Standing::NotJudged, "not judged"),
     ];
-    let of = |standing: Standing| ranked.iter().filter(|o| o.standing() == standing).count();
-    let counts: Vec<String> = standings
+    let counted = places.map(|(standing, place)| {
+        let at = ranked.iter().filter(|o| o.standing() == standing);
+        (at.count(), place)
+    });
+    let counts: Vec<String> = counted
         .into_iter()
-        .filter(|s| of(*s) > 0)
-        .map(|s| match s {
-            Standing::Act => format!("{} at “act”", of(s)),
-            Standing::Watch => format!("{} at “watch”", of(s)),
-            Standing::Under => format!("{} under the limits", of(s)),
-            Standing::NotJudged => format!("{} not judged", of(s)),
+        .filter(|(n, _)| *n > 0)
+        .enumerate()
+        .map(|(i, (n, place))| match (i, n) {
+            (0, 1) => format!("1 is {place}"),
+            (0, n) => format!("{n} are {place}"),
+            (_, n) => format!("{n} {place}"),
         })
         .collect();
-    format!("of {} characteristics {}", ranked.len(), list(&counts))
+    format!("Of {} characteristics, {}", ranked.len(), list(&counts))
 }
 
 /// Where the judged figure lies; the record's own reason where the plain one does not tell it.

@@ -1,7 +1,7 @@
 //! The figures: causes across, questions down; and the mean squares they come from.
 
 use maud::{Markup, html};
-use restudy_engine::{Line, Spread};
+use restudy_engine::{Line, MeanSquare, Spread, WITHIN_CELLS};
 
 use super::subject::{Cause, Subject};
 use super::words::{NBSP, limit, list, p_value, percent, three_digits};
@@ -159,12 +159,22 @@ pub(super) fn mean_squares(subject: Subject<'_>) -> Markup {
                 thead { tr { td {} th scope="col" { "mean square" } th scope="col" { "df" } } }
                 tbody {
                     @for (line, ms) in lines {
-                        tr { th scope="row" { (subject.term(&line.of, &line.within)) } td { (unit.squared(ms)) } td { (line.df) } }
+                        tr { th scope="row" { (line_name(subject, line)) } td { (unit.squared(ms)) } td { (line.df) } }
                     }
                 }
             }
         }
         @if let Some(words) = interaction_choice(subject) { p class="small" { (words) } }
+    }
+}
+
+/// A line in the plant's words; the one within cells with what it holds.
+fn line_name(subject: Subject<'_>, line: &MeanSquare) -> String {
+    let term = subject.term(&line.of, &line.within);
+    if line.name == WITHIN_CELLS {
+        format!("{WITHIN_CELLS} ({term})")
+    } else {
+        term
     }
 }
 

@@ -1,7 +1,9 @@
 //! Pages of rounds, whole: what they say, and that no round breaks them.
 
 mod honest;
+mod lead;
 pub(super) mod plant;
+mod readable;
 mod sound;
 mod stage;
 
@@ -166,7 +168,10 @@ fn a_characteristic_without_tolerance_is_shown_in_its_own_unit() {
         ..Drawn::named("web 4")
     }];
     let page = plain(&rendered(&plant));
-    assert!(page.contains("web 4 could not be judged."));
+    assert!(page.contains(
+        "web 4 could not be judged: the characteristic has no tolerance. Next: give its limits in the plan, or read \
+         them from the exports."
+    ));
     assert!(page.contains("Not judged: the characteristic has no tolerance."));
     assert!(page.contains("How wide is the gauge beside the parts?"));
     assert!(page.contains("as a mark about its part's mean, in µm"));

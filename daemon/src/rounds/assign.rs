@@ -125,7 +125,7 @@ fn missed(run: &RunRow, closed: &[Closed]) -> Option<i64> {
     let round = match (&run.facts.round_label, run.facts.taken) {
         (Some(_), _) => its.next(),
         (None, Some(taken)) => its.find(|c| Some(taken) <= c.through),
-        (None, None) => its.last(),
+        (None, None) => its.next_back(),
     };
     round.map(|c| c.id)
 }

@@ -102,6 +102,7 @@ fn several_runs_in_windows_1252_with_decimal_commas() {
     set aside (2): line 7, column `Istwert`: `12.004` is not a number; this instrument's decimal mark is `,`
       hint: set `decimal = "."` if this instrument writes `.`
     set aside (1): line 9, column `Stück`: blank, where the part should stand
+      hint: have every row filled in: nothing is taken over from the row above
     "#);
 }
 
@@ -180,6 +181,7 @@ fn xml_with_a_namespace_split_texts_and_one_text_for_a_value() {
       bore A: 50.012 mm [49.95 50 50.05] (line 10, /export/run/feature/value)
       face C flatness: 0.021 mm [- 0 0.08] (line 16, /export/run/feature/value)
     set aside (2): line 23, /export/run/feature/value: `n/a` is not a number; this instrument's decimal mark is `.`
+      hint: if it means that nothing was measured, list it in `no_value`
     ");
 }
 
@@ -224,12 +226,12 @@ fn columns_that_plain_reading_does_not_use_are_named() {
         };
         read_plain(export, &asked).unwrap().notes
     };
-    assert_snapshot!(notes("part,Operator,value\nP1,KL,1\n", &[]).join("\n"), @"");
-    assert_snapshot!(notes("\npart;Run;Dimension;batch;value\nP1;1;bore;7;1\n", &[]).join("\n"), @"");
-    assert_snapshot!(notes("part,sample,value\nP1,3,1\n", &[]).join("\n"), @"");
+    assert_snapshot!(notes("part,Operator,value\nP1,KL,1\n", &[]).join("\n"), @"line 1: the column `Operator` (perhaps `appraiser`?) is not used");
+    assert_snapshot!(notes("\npart;Run;Dimension;batch;value\nP1;1;bore;7;1\n", &[]).join("\n"), @"line 2: the columns `Run` (perhaps `trial`?), `Dimension` (perhaps `characteristic`?), `batch` are not used");
+    assert_snapshot!(notes("part,sample,value\nP1,3,1\n", &[]).join("\n"), @"line 1: the column `sample` is not used");
     let many: Vec<String> = (1..=15).map(|n| format!("x{n}")).collect();
     let many = format!("part,value,{}\nP1,1{}\n", many.join(","), ",2".repeat(15));
-    assert_snapshot!(notes(&many, &[]).join("\n"), @"");
+    assert_snapshot!(notes(&many, &[]).join("\n"), @"line 1: the columns `x1`, `x2`, `x3`, `x4`, `x5`, `x6`, `x7`, `x8`, `x9`, `x10`, `x11`, `x12` and 3 more are not used");
     assert!(notes("Part,User,Value\nP1,KL,1\n", &["user"]).is_empty());
     assert!(notes("part,value\nP1,1\n", &[]).is_empty());
 }
@@ -253,7 +255,12 @@ fn stamps_of_an_instrument_that_runs_on_utc_are_shown_in_the_sites_zone() {
         ..table()
     };
     let text = "part,value,taken\nP1,1,2026-06-11T19:50:00\nP2,2,2026-06-11T21:50:00+02:00\n";
-    assert_snapshot!(read(text, &rule), @"");
+    assert_snapshot!(read(text, &rule), @"
+    run P1 | 2026-06-11T21:50:00
+      value: 1 (line 2, column `value`)
+    run P2 | 2026-06-11T21:50:00
+      value: 2 (line 3, column `value`)
+    ");
 }
 
 #[test]

@@ -5,6 +5,8 @@ mod damage;
 #[cfg(test)]
 mod fixtures;
 #[cfg(test)]
+mod mistaken;
+#[cfg(test)]
 mod refusals;
 #[cfg(test)]
 mod runs;

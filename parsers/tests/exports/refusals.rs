@@ -1,12 +1,12 @@
 //! Exports that cannot be read at all: one sentence each.
 
-use crate::shared::{column, label, path, read, read_at, table, xml};
+use crate::shared::{column, label, path, read, table, xml};
 use insta::assert_snapshot;
 use restudy_parsers::{
     Bounds, Cell, Export, Form, Header, Plain, Reader, Role, Rule, Sheet, Trial, read_plain,
 };
 
-fn xml_rule() -> Rule {
+pub(crate) fn xml_rule() -> Rule {
     Rule {
         form: Form::Xml {
             each: "/export/run".to_owned(),
@@ -38,16 +38,21 @@ fn files_that_hold_no_table() {
     refused, perhaps unfinished: the file holds nothing but blanks
     refused, perhaps unfinished: the file ends in NUL bytes, as one does that is still being written
     refused, perhaps unfinished: the file holds nothing but blanks
-    refused, perhaps unfinished: no readings stand below the headings
+    refused, perhaps unfinished: no readings stand below the headings in line 1
+      hint: was anything measured? export it again
     refused, perhaps unfinished: the file holds nothing but blanks
     refused: line 1: the control character U+0007 does not belong in text
+      hint: have it exported again; text holds no control characters but tabs and line ends
     ");
     let junk: Vec<u8> = (0..=255).collect();
-    assert_snapshot!(read(junk, &table()), @r#"
-    refused: byte 129 (0x80) is not UTF-8 text, and nothing names another encoding
-      hint: if this is text, name its encoding, as in `encoding = "windows-1252"`
-    "#);
-    assert_snapshot!(read("<?xml version=\"1.0\"?><a/>", &table()), @"refused: this is XML; this instrument's exports are tables");
+    assert_snapshot!(read(junk, &table()), @"
+    refused: the file is neither text nor a workbook; it begins with the bytes 00 01 02 03
+      hint: export it again; if the instrument writes such files beside its exports, leave them out of `files`
+    ");
+    assert_snapshot!(read("<?xml version=\"1.0\"?><a/>", &table()), @"
+    refused: this is XML; this instrument's exports are tables
+      hint: correct `form`, or leave such files out with `files`; one instrument has exports of one form
+    ");
 }
 
 #[test]
@@ -60,7 +65,10 @@ fn headings_that_are_missing_mistyped_or_double() {
     refused: no column is headed `Loaded by`, where the appraiser should stand; line 1 has `part`, `loadedby`, `value`
       hint: did you mean `loadedby`?
     ");
-    assert_snapshot!(read("part,value,Value \nP1,1,2\n", &table()), @"refused: two columns are headed `value`, where the value should stand, in line 1");
+    assert_snapshot!(read("part,value,Value \nP1,1,2\n", &table()), @"
+    refused: two columns are headed `value`, where the value should stand, in line 1
+      hint: have one of them headed otherwise, so that it is clear which is meant
+    ");
     assert!(read("part,value,note,note\nP1,1,,\n", &table()).starts_with("run P1"));
     let find = |text: &str| Rule {
         form: Form::Table {
@@ -82,7 +90,10 @@ fn headings_that_are_missing_mistyped_or_double() {
         },
         ..table()
     };
-    assert_snapshot!(read("part,value\nP1,1\n", &third), @"refused, perhaps unfinished: line 3 is blank; the headings should stand there");
+    assert_snapshot!(read("part,value\nP1,1\n", &third), @"
+    refused, perhaps unfinished: line 3 is blank; the headings should stand there
+      hint: correct the heading, or `header` if the headings stand in another row
+    ");
 }
 
 #[test]
@@ -101,8 +112,14 @@ fn labels_and_paths_that_lead_nowhere() {
         header: Header::Row(3),
         delimiter: None,
     };
-    assert_snapshot!(read(two, &Rule { form: third, ..rule(label("by")) }), @"refused: the label `by` stands at two places: line 1, field 1 and line 2, field 1");
-    assert_snapshot!(read("part,value\nP1,1\n", &rule(path(r"by-(\w+)"))), @r#"refused: nothing in the export's path matches `by-(\w+)`, where the appraiser should stand"#);
+    assert_snapshot!(read(two, &Rule { form: third, ..rule(label("by")) }), @"
+    refused: the label `by` stands at two places: line 1, field 1 and line 2, field 1
+      hint: name the cell itself with `cell`
+    ");
+    assert_snapshot!(read("part,value\nP1,1\n", &rule(path(r"by-(\w+)"))), @r#"
+    refused: nothing in the path `export` matches `by-(\w+)`, where the appraiser should stand
+      hint: name folder or file as the others, or correct `path`; it is searched in the path below the watched folder
+    "#);
 }
 
 #[test]
@@ -128,20 +145,29 @@ fn xml_that_is_no_whole_export() {
     .concat();
     assert_snapshot!(all, @"
     refused, perhaps unfinished: line 1: the file ends inside 2 open elements
-    refused, perhaps unfinished: line 1: the XML is malformed: syntax error: tag not closed: `>` not found before end of input
+    refused, perhaps unfinished: line 1: the XML is malformed: a tag without its `>`
+      hint: export it again
     refused, perhaps unfinished: the file holds no XML element
     refused: line 1: a second root element `export`
+      hint: an export has one; were two written into one file?
     refused: line 1: text outside the root element: `tail`
-    refused: the root element is `report`; this instrument's exports have `export`
+    refused: line 1: the root element is `report`; this instrument's exports have `export`
+      hint: correct `each`, or leave such files out with `files`
     refused: there is no element /export/run in this export
+      hint: correct `each`; names stand without prefix, and case counts
     refused: there is no /export/run/value in this export, where the value should stand
+      hint: correct the path; names stand without prefix, and case counts
     refused: line 1: a document type (DOCTYPE); exports that declare one are not read
     refused: line 1: the reference `&a;` means nothing here
+      hint: only `&amp;`, `&lt;`, `&gt;`, `&quot;`, `&apos;` and numbers of printable characters do
     refused: line 1: the reference `&#1;` means nothing here
-    refused: line 1: an attribute that cannot be read: position 14: duplicated attribute, previous declaration at position 4
+      hint: only `&amp;`, `&lt;`, `&gt;`, `&quot;`, `&apos;` and numbers of printable characters do
+    refused: line 1: an attribute that cannot be read: its name stands twice in one tag
     refused: line 1: the namespace prefix `x` is not declared
-    refused: line 2: the XML is malformed: ill-formed document: expected `</run>`, but `</export>` was found
-    refused: this is not XML; it begins with `part,value P1,1`
+    refused: line 2: the XML is malformed: `</export>` closes the element `run`
+      hint: export it again
+    refused: this is not XML, as this instrument's exports are; it begins with `part,value P1,1`
+      hint: correct `form`, or leave such files out with `files`; one instrument has exports of one form
     ");
 }
 
@@ -152,7 +178,9 @@ fn xml_values_that_occur_twice_or_not_at_all_cost_one_run() {
     run P3
       value: 3 (line 4, /export/run/value)
     set aside (1): line 2, /export/run/value: holds a second text after the one in line 2, where the value should stand
+      hint: correct the path so that it leads to one text a reading
     set aside (1): line 3, /export/run/value: blank, where the value should stand
+      hint: measure this run again
     ");
 }
 
@@ -281,6 +309,7 @@ fn plain_exports_that_are_not_plain() {
     refused: the numbers have two decimal marks: `1,5` (line 2, field 2) and `2.5` (line 2, field 3)
       hint: write all numbers with one decimal mark and no marks between thousands
     refused: no column is headed `fixture`, where the factor `fixture` should stand; line 1 has `part`, `value`
+      hint: correct the heading, or `header` if the headings stand in another row
     set aside (1): line 2, field 2: 3 fields below 2 headings
       hint: does a decimal comma or a text part the fields as well?
     run P1 | 1 | fixture left
@@ -288,84 +317,4 @@ fn plain_exports_that_are_not_plain() {
     run P1 | 2 | fixture left
       value: 1 (line 3, column `value`)
     ");
-}
-
-#[test]
-fn bytes_that_are_neither_text_nor_a_workbook_whatever_the_file_is_called() {
-    let picture = b"\x89PNG\r\n\x1a\n\0\0\0\rIHDR\0\0\x02\0\0\0\x01\x80";
-    let latin = Rule {
-        encoding: Some("windows-1252".to_owned()),
-        ..table()
-    };
-    assert_snapshot!(read_at("run-1.xlsx", picture, &table()), @"");
-    assert_eq!(
-        read_at("run-1.csv", picture, &table()),
-        read_at("run-1.xlsx", picture, &latin)
-    );
-    assert_snapshot!(read("%PDF-1.7\n\u{1}\u{2}\u{3}\u{4}", &table()), @"");
-    assert_snapshot!(read(b"part,value\nSt\xfcck,1\n", &table()), @"");
-}
-
-#[test]
-fn text_under_a_workbooks_name_is_told_so_only_when_it_cannot_be_read() {
-    assert_snapshot!(read_at("GRR/run-1.XLSX", "part,value\nP1,1\n", &table()), @"");
-    assert_snapshot!(read_at("GRR/run-1.XLSX", "part;actual\nP1;1\n", &table()), @"");
-    assert_snapshot!(read_at("run-1.xlsx", "<?xml version=\"1.0\"?><a/>", &table()), @"");
-    assert_snapshot!(read_at("run-1.xls", "<html><table></table></html>", &table()), @"");
-    assert_snapshot!(read_at("run-1.xlsx", "part,value\nP1,1\n", &xml_rule()), @"");
-    let plain = read_plain(
-        Export {
-            path: "run-1.xlsx",
-            bytes: b"<html><table></table></html>",
-        },
-        &Plain::default(),
-    );
-    assert_snapshot!(crate::shared::shown(&plain), @"");
-}
-
-#[test]
-fn a_wrong_delimiter_leaves_one_field_a_line() {
-    assert_snapshot!(read("part;value;unit, SI\nP1;1;mm\n", &table()), @"");
-    let semicolons = "by;KL;\n\npart;value\nP1;1,5\n";
-    let find = Rule {
-        form: Form::Table {
-            sheet: Sheet::First,
-            header: Header::Find("Part".to_owned()),
-            delimiter: Some('\t'),
-        },
-        ..table()
-    };
-    assert_snapshot!(read(semicolons, &find), @"");
-    let third = Rule {
-        form: Form::Table {
-            sheet: Sheet::First,
-            header: Header::Row(3),
-            delimiter: Some('|'),
-        },
-        appraiser: Some(label("by")),
-        ..table()
-    };
-    assert_snapshot!(read(semicolons, &third), @"");
-    assert_snapshot!(read("by;KL;\n\npart|value\nP1|1,5\n", &third), @"");
-    assert_snapshot!(read("part\tvalue\nP1\t1\n", &table()), @"");
-    let plain = read_plain(
-        Export {
-            path: "",
-            bytes: b"part|value\nP1|1\n",
-        },
-        &Plain::default(),
-    );
-    assert_snapshot!(crate::shared::shown(&plain), @"");
-}
-
-#[test]
-fn everyday_words_for_plain_headings_are_asked_about() {
-    let plain = read_plain(
-        Export {
-            path: "",
-            bytes: b"Part,Operator,Result\nP1,KL,1\n",
-        },
-        &Plain::default(),
-    );
-    assert_snapshot!(crate::shared::shown(&plain), @"");
 }

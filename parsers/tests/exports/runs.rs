@@ -30,8 +30,11 @@ fn a_reading_without_a_label_is_set_aside_alone() {
     run P3 | KL | 1
       bore: 50.02 (line 5, column `value`)
     set aside (1): line 2, column `part`: blank, where the part should stand
+      hint: have every row filled in: nothing is taken over from the row above
     set aside (1): line 3, column `by`: blank, where the appraiser should stand
+      hint: have every row filled in: nothing is taken over from the row above
     set aside (1): line 4, column `feature`: blank, where the characteristic should stand
+      hint: have every row filled in: nothing is taken over from the row above
     ");
 }
 
@@ -43,7 +46,9 @@ fn a_label_that_fails_for_the_whole_export_is_said_once() {
     };
     assert_snapshot!(read("part,value\nP1,1\nP1,2\nP2,3\n", &Rule { trial: Some(Trial::Counted(Count::Order)), ..rule }), @"
     set aside (2): line 1, field 10: blank, where the appraiser should stand
+      hint: fill the cell in at the instrument, or correct `cell`
     set aside (1): line 1, field 10: blank, where the appraiser should stand
+      hint: fill the cell in at the instrument, or correct `cell`
     ");
 }
 
@@ -82,6 +87,7 @@ fn an_unusable_value_keeps_its_place_in_the_count_of_trials() {
     run P1 | 3
       value: 50.03 (line 4, column `value`)
     set aside (1): line 3, column `value`: `---` is not a number; this instrument's decimal mark is `.`
+      hint: if it means that nothing was measured, list it in `no_value`
     ");
 }
 
@@ -104,7 +110,9 @@ fn equal_time_stamps_are_a_tie() {
     set aside (2): line 3, column `value`: `value` occurs twice in one run
       hint: if these are trials, say where the trial stands or how trials are counted
     set aside (1): line 5, column `taken`: blank, where a time as `2026-06-02T14:20:05` should stand
-    set aside (1): line 6, column `taken`: `yesterday` is not a time as `2026-06-02T14:20:05`: failed to parse four digit integer as year: invalid digit, expected 0-9 but got y
+      hint: have the instrument write the time, or correct where `taken` is read
+    set aside (1): line 6, column `taken`: `yesterday` is not a time as `2026-06-02T14:20:05`
+      hint: have it written so, or say how it is written with `format`
     ");
 }
 
@@ -120,6 +128,7 @@ fn what_must_stay_the_same_does_so_within_a_run() {
       bore: 50.02 (line 4, column `value`)
       slot: 12.02 (line 5, column `value`)
     set aside (2): line 3, column `program`: program is `rev 13` here and `rev 12` before in the same run
+      hint: a run keeps it from beginning to end: measure this run again
     ");
 }
 
@@ -163,9 +172,11 @@ fn limits_are_absent_deviations_or_wrong() {
     run P6
       value: 0.1 [0.1 0.1 0.3] (line 7, column `value`)
     set aside (1): line 4, column `up`: the upper limit is taken from the nominal, which is blank
+      hint: fill in the nominal, or leave `from` out if the limit is absolute
     set aside (1): line 5, column `low`: the lower limit 50.1 lies above the upper limit 49.9
       hint: are the limits signed deviations (`from = "nominal"`), or exchanged?
     set aside (1): line 6, column `low`: `n/a` is not a number; this instrument's decimal mark is `.`
+      hint: if it means that nothing was measured, list it in `no_value`
     "#);
 }
 
@@ -194,6 +205,7 @@ fn a_missing_end_makes_every_run_incomplete() {
     set aside (1): end of the export: the text `end of report` is missing, so the run is incomplete
       hint: a run that was broken off looks like this: measure it again
     set aside (1): line 3, column `value`: `x` is not a number; this instrument's decimal mark is `.`
+      hint: if it means that nothing was measured, list it in `no_value`
     set aside (1): end of the export: the text `end of report` is missing, so the run is incomplete
       hint: a run that was broken off looks like this: measure it again
     ");
@@ -214,6 +226,7 @@ fn lines_that_do_not_fit_the_headings_are_set_aside() {
     set aside (1): line 2, field 5: 8 fields below 5 headings
       hint: does a decimal comma or a text part the fields as well?
     set aside (1): line 3, field 4: only 4 fields below 5 headings
+      hint: was the line cut short? export it again
     ");
 }
 
@@ -238,7 +251,10 @@ fn units_and_texts_are_taken_apart_by_a_regex() {
     run 07 | 2
       value: 50.02 µm (line 3, column `value`)
     ");
-    assert_snapshot!(read_at("GRR/hub-x/a.csv", "value\n50.01 mm\n", &rule), @r#"set aside (1): the export's path: nothing in `x` matches `\d+`"#);
+    assert_snapshot!(read_at("GRR/hub-x/a.csv", "value\n50.01 mm\n", &rule), @r#"
+    set aside (1): the export's path: nothing in `x` matches `\d+`, where the part should stand
+      hint: have it written as before, or correct `find`
+    "#);
 }
 
 #[test]

@@ -202,21 +202,26 @@ fn cells_that_are_no_values() {
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: blank, where the value should stand
+      hint: measure this run again
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: `12.03.4` is not a number; this instrument's decimal mark is `.`
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: `TRUE` is not a number; this instrument's decimal mark is `.`
+      hint: if it means that nothing was measured, list it in `no_value`
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: holds the date 2026-06-02T00:00:00, where the value should stand
+      hint: have the cell formatted as a number
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: holds a span of time, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: holds the error `#DIV/0!`, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     ");
 }
 
@@ -241,27 +246,35 @@ fn formulas_errors_and_numbers_that_a_library_would_pass_on() {
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: holds a formula without a result, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: holds the error `#SPILL!`, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: holds the error `#SPILL!`, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: holds `inf`, which is no finite number, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: holds `NaN`, which is no finite number, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
-    set aside (1): sheet `Sheet1`, cell B2: holds what cannot be read (Parse float error: invalid float literal), where the value should stand
+    set aside (1): sheet `Sheet1`, cell B2: holds a text in place of its number, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
-    set aside (1): sheet `Sheet1`, cell B2: holds what cannot be read (Unrecognized boolean cell value: 7), where the value should stand
+    set aside (1): sheet `Sheet1`, cell B2: holds `7`, which means nothing there, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: holds two contents, where the value should stand
+      hint: correct the cell where the export is made; it must hold a text or a number
     run P1
       value: 3.5 (sheet `Sheet1`, cell B2)
     run P2
@@ -354,7 +367,8 @@ fn containers_that_are_not_read() {
     refused: this is an xlsb workbook, which is not yet read
       hint: have it saved as xlsx
     refused: this is a zip archive that holds no workbook
-    refused: the workbook is damaged: Unexpected end of xml, expecting '</Relationships>'
+      hint: have it saved as xlsx, or leave such files out with `files`
+    refused: the workbook is damaged: a part ends inside the element `Relationships`
       hint: export it again
     refused, perhaps unfinished: the workbook is cut short or damaged: its table of parts cannot be read
       hint: export it again
@@ -367,7 +381,10 @@ fn containers_that_are_not_read() {
         },
         ..only_constants()
     };
-    assert_snapshot!(read(hub, &xml), @"refused: this is a workbook; this instrument's exports are XML");
+    assert_snapshot!(read(hub, &xml), @"
+    refused: this is a workbook; this instrument's exports are XML
+      hint: correct `form`, or leave such files out with `files`; one instrument has exports of one form
+    ");
 }
 
 fn only_constants() -> Rule {
@@ -412,7 +429,9 @@ fn two_far_cells_cost_two_cells() {
     run P2
       value: 50.25 (sheet `Sheet1`, cell B3)
     set aside (1): sheet `Sheet1`, cell B2: blank, where the value should stand
+      hint: measure this run again
     set aside (1): sheet `Sheet1`, cell A1048576: blank, where the part should stand
+      hint: have every row filled in: nothing is taken over from the row above
     ");
     let book = with_cell(|sheet| drop(sheet.write(1_048_575, 16_383, 1.0)));
     assert_snapshot!(read(book, &table()), @"refused: sheet `Sheet1`, cell XFD1048576: beyond the limit of 4096 columns");

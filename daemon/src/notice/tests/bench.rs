@@ -106,6 +106,8 @@ pub(super) struct Reads {
     pub(super) crossed: [f64; 3],
     pub(super) lower: Option<f64>,
     pub(super) upper: Option<f64>,
+    /// Why it cannot be worked out.
+    pub(super) fault: Option<&'static str>,
 }
 
 /// A tolerance of 0.027 mm; limits at 5.4 µm and 8.1 µm of six gauge sds.
@@ -117,6 +119,7 @@ pub(super) fn reads(name: &'static str, repeat_um: f64, ts_um: f64) -> Reads {
         crossed: [0.0; 3],
         lower: Some(50.0),
         upper: Some(50.027),
+        fault: None,
     }
 }
 
@@ -259,7 +262,7 @@ fn feature(reads: &Reads, runs: &[Run]) -> Feature {
         cells: runs.iter().map(|r| r.cell).collect(),
         runs: (0..runs.len()).collect(),
         values: runs.iter().map(value).collect(),
-        unit_differs: None,
+        unit_differs: reads.fault.map(str::to_owned),
         limits_differ: None,
         counts: Counts {
             used: runs.len(),

@@ -53,6 +53,11 @@ fn a_share_that_is_back_by_its_lower_limit_names_that_limit() {
         "{}",
         message.text
     );
+    let ranked = line(&message, "  - bore B: act as before");
+    assert!(
+        ranked.contains(", held, as the judged figure is not below 0.85 × 30 %"),
+        "{ranked}"
+    );
     let also = line(&message, "Also: ");
     assert!(
         also.contains(&format!("Bore B is held: {judged}2")),

@@ -95,7 +95,9 @@ fn one_trial_promises_no_repeats() {
             "One trial does not tell repeatability from part × loading; two or more would."
         )
     );
-    assert!(page.contains("<th scope=\"row\">repeatability with part × loading</th>"));
+    assert!(
+        page.contains("<th scope=\"row\">within cells (repeatability with part × loading)</th>")
+    );
     assert!(page.contains("EV holds part × loading, which one trial does not tell from it"));
 }
 
