@@ -12,6 +12,7 @@
 mod basis;
 mod chance;
 mod combination;
+pub mod consistency;
 mod design;
 mod estimates;
 mod fault;
@@ -21,7 +22,7 @@ mod mls;
 mod model;
 pub mod quantile;
 mod record;
-mod remark;
+mod remarks;
 mod root;
 mod settings;
 mod standing;
@@ -41,6 +42,7 @@ pub use record::{
     Against, ChanceAbove, Component, Figures, InteractionChoice, Layout, MeanSquare, Ndc,
     OtherReading, Remark, Reml, Risk, Spread, Study,
 };
+pub use remarks::{Context, FALSE_ALARMS, Names, REMARKS_MAX, remarks};
 pub use settings::{Interaction, Judge, Limits, OneSided, Process, Settings, Tolerance};
 pub use standing::{Standing, standing};
 pub use study::{Prepared, TRIALS_MAX, analyse};

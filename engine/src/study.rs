@@ -14,7 +14,7 @@ use crate::model::Model;
 use crate::record::{
     ChanceAbove, Component, Figures, InteractionChoice, Layout, OtherReading, Remark, Study,
 };
-use crate::remark;
+use crate::remarks::outside;
 use crate::settings::{Interaction, Judge, Settings, Tolerance};
 use crate::sums::{Sums, Sweep};
 use crate::table::Table;
@@ -199,10 +199,10 @@ impl Prepared {
         figures: &Figures,
         part_to_gauge: &Figure,
     ) -> Vec<Remark> {
-        let one_trial = self.taken_in.as_deref().map(remark::one_trial);
+        let one_trial = self.taken_in.as_deref().map(outside::one_trial);
         one_trial
             .into_iter()
-            .chain(remark::outside_limits(components, figures, part_to_gauge))
+            .chain(outside::outside_limits(components, figures, part_to_gauge))
             .collect()
     }
 
