@@ -18,10 +18,13 @@ mod estimates;
 mod fault;
 mod figure;
 mod figures;
+pub mod ladder;
 mod mls;
 mod model;
 pub mod quantile;
+mod random;
 mod record;
+mod recorded;
 mod remarks;
 mod root;
 mod settings;
@@ -42,6 +45,7 @@ pub use record::{
     Against, ChanceAbove, Component, Figures, InteractionChoice, Layout, MeanSquare, Ndc,
     OtherReading, Remark, Reml, Risk, Spread, Study,
 };
+pub use recorded::{Recorded, RecordedError};
 pub use remarks::{Context, FALSE_ALARMS, Names, REMARKS_MAX, remarks};
 pub use settings::{Interaction, Judge, Limits, OneSided, Process, Settings, Tolerance};
 pub use standing::{Standing, standing};
