@@ -12,6 +12,7 @@
 mod cells;
 mod exchange;
 mod levels;
+mod luck;
 mod material;
 pub(crate) mod outside;
 mod repeats;
@@ -75,7 +76,7 @@ pub fn remarks(
         return study.remarks.clone();
     };
     let mut all = Vec::new();
-    if material.spread() == 0.0 {
+    if step::too_few_values(&material) {
         all.extend(step::remark(&material));
         all.extend(study.remarks.iter().cloned());
     } else {

@@ -6,6 +6,7 @@
 #![allow(clippy::unwrap_used, reason = "a test stops at its first surprise")]
 
 mod check;
+mod consistency;
 mod data;
 mod degenerate;
 mod design_rules;

@@ -4,10 +4,11 @@
 //! two-way table).
 
 use super::LEVEL;
+use super::luck::{at_least, f_above};
 use super::material::{Found, Material, Square, remark};
+use super::step;
 use super::words::{list, number, percent};
 use crate::consistency::{Cochran, RangeChart, cochran};
-use crate::quantile::f_above;
 
 /// The interaction is worth a remark from this part of the gauge's variance on.
 const MATTERS: f64 = 0.1;
@@ -21,8 +22,10 @@ pub(super) fn spread(material: &Material<'_>) -> Option<Found> {
     let cochran = cochran(cells)?;
     let chart = RangeChart::of(trials);
     let mean_range = cells.iter().map(|c| c.range).sum::<f64>() / cells.len() as f64;
+    // A range of rounded readings may be one step wider than the readings were.
+    let rounding = step::step(&material.shifted).unwrap_or(0.0);
     let mut above: Vec<usize> = chart.map_or_else(Vec::new, |chart| {
-        let limit = chart.upper * mean_range;
+        let limit = chart.upper * mean_range + rounding;
         (0..cells.len())
             .filter(|&c| cells[c].range > limit)
             .collect()
@@ -114,7 +117,10 @@ pub(super) fn mean(material: &Material<'_>) -> Option<Found> {
     cells.sort_by(|a, b| b.1.abs().total_cmp(&a.1.abs()).then(a.0.cmp(&b.0)));
     let total: f64 = cells.iter().map(|(_, d)| d * d).sum();
     let &(cell, departure) = cells.first()?;
-    let p = p_of_largest(&square, departure, total)?;
+    if material.is_rounding(total, cells.len()) {
+        return None;
+    }
+    let p = p_of_largest(&square, departure, total);
     if p <= LEVEL / 2.0 {
         return Some(one_off(material, &square, cell, departure, p));
     }
@@ -126,19 +132,12 @@ pub(super) fn mean(material: &Material<'_>) -> Option<Found> {
 }
 
 /// Upper bound (Bonferroni) of the chance that the largest departure of a sound table is this large.
-fn p_of_largest(square: &Square, departure: f64, total: f64) -> Option<f64> {
+fn p_of_largest(square: &Square, departure: f64, total: f64) -> f64 {
     let df = square.df() as f64;
     let cells = (square.parts * square.levels) as f64;
     let own = departure * departure * cells / df;
-    let ratio = own / (total - own) * (df - 1.0);
-    if total <= 0.0 || ratio.is_nan() {
-        return None;
-    }
-    Some(if total > own {
-        (cells * f_above(ratio, 1.0, df - 1.0)).min(1.0)
-    } else {
-        0.0
-    })
+    let ratio = own / (total - own).max(0.0) * (df - 1.0);
+    (cells * f_above(ratio, 1.0, df - 1.0)).min(1.0)
 }
 
 fn one_off(material: &Material<'_>, square: &Square, cell: usize, departure: f64, p: f64) -> Found {
@@ -199,16 +198,4 @@ fn parts_of(material: &Material<'_>, square: &Square, cell: usize) -> (String, S
     let part = material.design.part();
     let level = material.level(square.factor, levels[square.factor]);
     (material.level(part, levels[part]), level)
-}
-
-/// Chance of at least `k` of `n` when each comes with chance `p`.
-pub(super) fn at_least(k: usize, n: usize, p: f64) -> f64 {
-    if k == 0 || p >= 1.0 {
-        return 1.0;
-    }
-    if k > n || p <= 0.0 {
-        return 0.0;
-    }
-    let (a, b) = (k as f64, (n - k + 1) as f64);
-    f_above(a * (1.0 - p) / (p * b), 2.0 * b, 2.0 * a)
 }

@@ -2,14 +2,15 @@
 //!
 //! Model: a condition is a combination of all factors but the part. Two readings of one trial, or two whole cells,
 //! are held against the rest of their cells or of their rows and columns; the contrast of the two is one degree of
-//! freedom of the error. It must be larger than luck gives over all pairs that were looked at, and it must vanish
-//! once the two change places. The readings themselves are left as they are.
+//! freedom of the error. It must be larger than luck gives over all pairs that were looked at, and both must fit
+//! once they change places. The readings themselves are left as they are.
 //!
 //! Source: the contrast in a two-way layout, Scheffé, *The Analysis of Variance*, Wiley 1959, ch. 3 and 4.
 
 use std::collections::BTreeMap;
 
 use super::LEVEL;
+use super::luck::f_above;
 use super::material::{Material, remark};
 use super::words::percent;
 use crate::quantile::{Side, f};
@@ -22,10 +23,12 @@ pub(super) struct Exchanged {
     pub(super) remark: Remark,
 }
 
-/// After the exchange the contrast must be one that luck gives more often than this.
-const VANISHES: f64 = 0.05;
-/// Rounding of a contrast against the one before the exchange.
+/// After the exchange both must fit their new places as well as luck lets them more often than this.
+const FITS: f64 = 0.01;
+/// Rounding of a sum of squares against the one before the exchange.
 const ROUNDING: f64 = 1e-9;
+/// Pairs that are looked at; larger studies are left alone.
+const PAIRS_MAX: usize = 1_000_000;
 
 /// The rows that would change places.
 struct Pair {
@@ -78,129 +81,165 @@ pub(super) fn find(material: &Material<'_>) -> Option<Exchanged> {
     })
 }
 
-/// What is left of a sum of squares of `df` degrees of freedom when one contrast of it is taken out.
-struct Test {
-    total: f64,
+/// An error sum of squares with its degrees of freedom; a contrast is one of them.
+#[derive(Clone, Copy)]
+struct Error {
+    squares: f64,
     df: f64,
 }
 
-impl Test {
+impl Error {
+    /// Whether F of a contrast against the rest of the error exceeds a limit.
     fn exceeds(&self, contrast: f64, limit: f64) -> bool {
-        contrast * (self.df - 1.0) > limit * (self.total - contrast).max(0.0)
+        contrast * (self.df - 1.0) > limit * (self.squares - contrast).max(0.0)
+    }
+
+    /// The F that the largest of so many contrasts exceeds by luck too seldom to be believed; `None` when none does.
+    fn limit(&self, contrasts: impl Iterator<Item = f64>, tried: usize) -> Option<f64> {
+        let largest = contrasts.fold(0.0, f64::max);
+        let ratio = largest / (self.squares - largest).max(0.0) * (self.df - 1.0);
+        let level = LEVEL / 2.0 / tried as f64;
+        if largest == 0.0 || f_above(ratio, 1.0, self.df - 1.0) > level {
+            return None;
+        }
+        Some(f(Side::Above, level, 1.0, self.df - 1.0))
+    }
+
+    /// Whether the squares of two that changed places, `before` in all, are now what luck gives.
+    fn fits(&self, of_both: f64, before: f64) -> bool {
+        if of_both <= ROUNDING * before || self.df <= 2.0 {
+            return of_both <= ROUNDING * before;
+        }
+        let luck = f(Side::Above, FITS, 2.0, self.df - 2.0);
+        of_both / 2.0 * (self.df - 2.0) <= luck * (self.squares - of_both).max(0.0)
     }
 }
 
 /// Single readings of one trial.
 fn of_readings(material: &Material<'_>) -> Option<Pair> {
     let trial = material.trial_of_row()?;
-    let (total, df) = material.within();
-    if df < 2 || total <= 0.0 {
-        return None;
-    }
     let part = material.design.part();
     let mut together: BTreeMap<(Vec<usize>, usize), Vec<usize>> = BTreeMap::new();
     for (row, &cell) in material.cells.iter().enumerate() {
         if material.brief[cell].count > 1 {
             let mut condition = material.design.levels_of(cell);
             condition[part] = 0;
-            together
-                .entry((condition, trial[row]))
-                .or_default()
-                .push(row);
+            let key = (condition, trial[row]);
+            together.entry(key).or_default().push(row);
         }
     }
-    let tried: usize = together
-        .values()
-        .map(|rows| rows.len() * rows.len().saturating_sub(1) / 2)
-        .sum();
-    if tried == 0 {
+    let (squares, df) = material.within();
+    let tried = together.values().map(|rows| pairs_of(rows.len())).sum();
+    if df < 2 || squares <= 0.0 || !(1..=PAIRS_MAX).contains(&tried) {
         return None;
     }
-    let df = df as f64;
-    let limit = f(Side::Above, LEVEL / 2.0 / tried as f64, 1.0, df - 1.0);
-    let luck = f(Side::Above, VANISHES, 1.0, df - 1.0);
+    let error = Error {
+        squares,
+        df: df as f64,
+    };
     let own = material.within_cells();
-    let mut best: Option<Pair> = None;
-    for rows in together.values() {
-        for (i, &a) in rows.iter().enumerate() {
-            for &b in &rows[i + 1..] {
-                let of_a = &material.brief[material.cells[a]];
-                let of_b = &material.brief[material.cells[b]];
-                let (n_a, n_b) = (of_a.count as f64, of_b.count as f64);
-                let contrast = (own[a] - own[b]).powi(2) / (2.0 - 1.0 / n_a - 1.0 / n_b);
-                if material.cells[a] == material.cells[b]
-                    || !(Test { total, df }).exceeds(contrast, limit)
-                {
-                    continue;
-                }
-                // Each against the mean of the other cell's remaining readings.
-                let rest_a = of_a.mean - own[a] / (n_a - 1.0);
-                let rest_b = of_b.mean - own[b] / (n_b - 1.0);
-                let in_a = material.shifted[b] - rest_a;
-                let in_b = material.shifted[a] - rest_b;
-                let change = |n: f64, own: f64, new: f64| {
-                    new * new * (n - 1.0) / n - own * own * n / (n - 1.0)
-                };
-                let left = total + change(n_a, own[a], in_a) + change(n_b, own[b], in_b);
-                let still = (in_a - in_b).powi(2) / (n_a / (n_a - 1.0) + n_b / (n_b - 1.0));
-                if left < best.as_ref().map_or(total, |b| b.left)
-                    && vanishes(still, contrast, left, df, luck)
-                {
-                    let cells = [material.cells[a], material.cells[b]];
-                    let name =
-                        |cell: usize| format!("{} trial {}", material.cell(cell), trial[a] + 1);
-                    best = Some(Pair {
-                        swaps: vec![(a, b)],
-                        names: cells.map(name),
-                        cells,
-                        left: left.max(0.0),
-                    });
-                }
-            }
+    let count = |row: usize| material.brief[material.cells[row]].count as f64;
+    let contrast =
+        |a: usize, b: usize| (own[a] - own[b]).powi(2) / (2.0 - 1.0 / count(a) - 1.0 / count(b));
+    let pairs = || {
+        together.values().flat_map(|rows| {
+            let from = rows.iter().enumerate();
+            from.flat_map(|(i, &a)| rows[i + 1..].iter().map(move |&b| (a, b)))
+        })
+    };
+    let limit = error.limit(pairs().map(|(a, b)| contrast(a, b)), tried)?;
+    let mut best: Option<(usize, usize, f64)> = None;
+    for (a, b) in pairs() {
+        let cells = [material.cells[a], material.cells[b]];
+        let before = contrast(a, b);
+        if cells[0] == cells[1] || !error.exceeds(before, limit) {
+            continue;
+        }
+        // Each against the mean of the other cell's remaining readings.
+        let rest =
+            |row: usize, cell: usize| material.brief[cell].mean - own[row] / (count(row) - 1.0);
+        let in_a = material.shifted[b] - rest(a, cells[0]);
+        let in_b = material.shifted[a] - rest(b, cells[1]);
+        let change =
+            |n: f64, own: f64, new: f64| new * new * (n - 1.0) / n - own * own * n / (n - 1.0);
+        let left = squares + change(count(a), own[a], in_a) + change(count(b), own[b], in_b);
+        let after = Error {
+            squares: left.max(0.0),
+            ..error
+        };
+        let new_place = |n: f64, new: f64| new * new * (n - 1.0) / n;
+        let of_both = new_place(count(a), in_a) + new_place(count(b), in_b);
+        if left < best.map_or(squares, |(.., left)| left) && after.fits(of_both, before) {
+            best = Some((a, b, left));
         }
     }
-    best
+    let (a, b, left) = best?;
+    let cells = [material.cells[a], material.cells[b]];
+    Some(Pair {
+        swaps: vec![(a, b)],
+        names: cells.map(|cell| format!("{} trial {}", material.cell(cell), trial[a] + 1)),
+        cells,
+        left: left.max(0.0),
+    })
 }
 
-fn vanishes(still: f64, before: f64, left: f64, df: f64, luck: f64) -> bool {
-    still <= ROUNDING * before || !(Test { total: left, df }).exceeds(still, luck)
+fn pairs_of(n: usize) -> usize {
+    n * n.saturating_sub(1) / 2
 }
 
 /// Whole cells; with two levels nobody could say in which of them.
 fn of_cells(material: &Material<'_>) -> Option<Pair> {
     let square = material.square().filter(|s| s.levels > 2 && s.df() > 1)?;
-    let df = square.df() as f64;
     let levels = square.levels as f64;
     let mean = |cell: usize| material.brief[cell].mean;
     let departures = square.departures(mean);
     let squares = |table: &[Vec<f64>]| table.iter().flatten().map(|d| d * d).sum::<f64>();
-    let total = squares(&departures);
-    let tried = square.levels * square.parts * (square.parts - 1) / 2;
-    let limit = f(Side::Above, LEVEL / 2.0 / tried as f64, 1.0, df - 1.0);
-    let luck = f(Side::Above, VANISHES, 1.0, df - 1.0);
-    let contrast = |a: f64, b: f64| (a - b).powi(2) * levels / (2.0 * (levels - 1.0));
+    let error = Error {
+        squares: squares(&departures),
+        df: square.df() as f64,
+    };
+    let tried = square.levels * pairs_of(square.parts);
+    if material.is_rounding(error.squares, material.brief.len()) || tried > PAIRS_MAX {
+        return None;
+    }
+    let contrast = |of: &[Vec<f64>], (a, b, j): (usize, usize, usize)| {
+        (of[a][j] - of[b][j]).powi(2) * levels / (2.0 * (levels - 1.0))
+    };
+    let places = || {
+        (0..square.parts).flat_map(|a| {
+            let others = a + 1..square.parts;
+            others.flat_map(move |b| (0..square.levels).map(move |j| (a, b, j)))
+        })
+    };
+    let limit = error.limit(places().map(|place| contrast(&departures, place)), tried)?;
     let mut best: Option<([usize; 2], f64)> = None;
-    for j in 0..square.levels {
-        for a in 0..square.parts {
-            for b in a + 1..square.parts {
-                let before = contrast(departures[a][j], departures[b][j]);
-                if total <= 0.0 || !(Test { total, df }).exceeds(before, limit) {
-                    continue;
-                }
-                let cells = [square.cell(a, j), square.cell(b, j)];
-                let changed = square.departures(|cell| match cell {
-                    c if c == cells[0] => mean(cells[1]),
-                    c if c == cells[1] => mean(cells[0]),
-                    c => mean(c),
-                });
-                let left = squares(&changed);
-                let still = contrast(changed[a][j], changed[b][j]);
-                if left < best.map_or(total, |(_, left)| left)
-                    && vanishes(still, before, left, df, luck)
-                {
-                    best = Some((cells, left));
-                }
-            }
+    for place in places() {
+        let before = contrast(&departures, place);
+        if !error.exceeds(before, limit) {
+            continue;
+        }
+        let (a, b, j) = place;
+        let cells = [square.cell(a, j), square.cell(b, j)];
+        let changed = square.departures(|cell| match cell {
+            c if c == cells[0] => mean(cells[1]),
+            c if c == cells[1] => mean(cells[0]),
+            c => mean(c),
+        });
+        let after = Error {
+            squares: squares(&changed),
+            ..error
+        };
+        let (of_a, of_b) = (changed[a][j], changed[b][j]);
+        // Difference and sum of the two are independent; with two parts the sum is nothing.
+        let of_sum = match square.parts {
+            2 => 0.0,
+            parts => (of_a + of_b).powi(2) / (1.0 - 2.0 / parts as f64),
+        };
+        let of_both = ((of_a - of_b).powi(2) + of_sum) * levels / (2.0 * (levels - 1.0));
+        if after.squares < best.map_or(error.squares, |(_, left)| left)
+            && after.fits(of_both, before)
+        {
+            best = Some((cells, after.squares));
         }
     }
     let (cells, left) = best?;

@@ -1,10 +1,11 @@
 //! Levels of a factor that stand out, such as one appraiser: by an own repeatability, or by an offset from the others.
 
 use super::LEVEL;
+use super::luck::f_above;
 use super::material::{Material, remark};
 use super::words::{list, number};
 use crate::consistency::{Cell, Own, RangeChart, mandel_h, mandel_k};
-use crate::quantile::{Side, f, f_above};
+use crate::quantile::{Side, f};
 use crate::record::Remark;
 
 /// An offset is worth a remark from this part of the gauge's variance on.
@@ -166,7 +167,7 @@ fn furthest(material: &Material<'_>, factor: usize, tests: usize) -> Option<Offs
         error,
         df,
         h: h[level],
-        p: if error > 0.0 { p.min(1.0) } else { 0.0 },
+        p: p.min(1.0),
     })
 }
 

@@ -11,6 +11,9 @@ use crate::design::Design;
 use crate::record::{Remark, Study};
 use crate::settings::Tolerance;
 
+/// Roundings that a mean or a difference of readings gathers.
+const ROUNDINGS: f64 = 8.0;
+
 /// A study's readings with everything the remarks look at.
 pub(super) struct Material<'a> {
     pub(super) design: &'a Design,
@@ -19,6 +22,8 @@ pub(super) struct Material<'a> {
     pub(super) values: &'a [f64],
     /// From the first reading.
     pub(super) shifted: Vec<f64>,
+    /// Differences up to this are rounding of the readings to f64.
+    rounding: f64,
     /// Every cell in brief, its mean from the first reading.
     pub(super) brief: Vec<Cell>,
     pub(super) study: &'a Study,
@@ -92,23 +97,24 @@ impl<'a> Material<'a> {
             return None;
         }
         let shifted: Vec<f64> = values.iter().map(|y| y - origin).collect();
+        let rounding =
+            ROUNDINGS * f64::EPSILON * values.iter().map(|y| y.abs()).fold(0.0, f64::max);
+        let mut brief = in_cells(design.cells(), cells, &shifted);
+        for cell in brief.iter_mut().filter(|cell| cell.range <= rounding) {
+            cell.range = 0.0;
+            cell.squares = 0.0;
+        }
         Some(Material {
             design,
             cells,
             values,
-            brief: in_cells(design.cells(), cells, &shifted),
+            brief,
             shifted,
+            rounding,
             study,
             tolerance,
             context,
         })
-    }
-
-    /// Largest less smallest reading.
-    pub(super) fn spread(&self) -> f64 {
-        let highest = self.shifted.iter().copied().fold(f64::MIN, f64::max);
-        let lowest = self.shifted.iter().copied().fold(f64::MAX, f64::min);
-        highest - lowest
     }
 
     /// Readings in every cell, when all have equally many.
@@ -141,7 +147,16 @@ impl<'a> Material<'a> {
     /// Each reading less the mean of its cell.
     pub(super) fn within_cells(&self) -> Vec<f64> {
         let rows = self.cells.iter().zip(&self.shifted);
-        rows.map(|(&c, y)| y - self.brief[c].mean).collect()
+        rows.map(|(&c, y)| match &self.brief[c] {
+            cell if cell.range == 0.0 => 0.0,
+            cell => y - cell.mean,
+        })
+        .collect()
+    }
+
+    /// Whether a sum of so many squares is rounding alone.
+    pub(super) fn is_rounding(&self, squares: f64, count: usize) -> bool {
+        squares <= count as f64 * self.rounding * self.rounding
     }
 
     /// Sum of squares and degrees of freedom within cells.

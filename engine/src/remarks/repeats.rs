@@ -1,7 +1,7 @@
 //! Cells whose repeats agree to the last digit, against how many rounding alone would make so.
 
 use super::LEVEL;
-use super::cells::at_least;
+use super::luck::at_least;
 use super::material::{self, Material};
 use super::step;
 use crate::consistency::below_normal;
@@ -23,7 +23,7 @@ pub(super) fn remark(material: &Material<'_>) -> Option<Remark> {
     let same: Vec<usize> = (0..cells.len())
         .filter(|&c| cells[c].range == 0.0)
         .collect();
-    if same.is_empty() || step::distinct(material) < step::DISTINCT_MIN {
+    if same.is_empty() {
         return None;
     }
     let (squares, df) = material.within();

@@ -6,7 +6,7 @@ use super::words::percent;
 use crate::record::Remark;
 
 /// Fewer distinct readings than this say nothing about spread.
-pub(super) const DISTINCT_MIN: usize = 5;
+const DISTINCT_MIN: usize = 5;
 /// A step above this part of the tolerance, or of six gauge sd, is too coarse.
 const SHARE_MAX: f64 = 0.1;
 const SPREAD_SDS: f64 = 6.0;
@@ -19,8 +19,8 @@ const OFF_STEP: f64 = 1e-3;
 
 /// The readings show too few steps to tell a spread from rounding.
 pub(super) fn remark(material: &Material<'_>) -> Option<Remark> {
-    let distinct = distinct(material);
-    if distinct < DISTINCT_MIN {
+    if too_few_values(material) {
+        let distinct = sorted(material.values).len();
         let values = if distinct == 1 { "value" } else { "values" };
         let text = format!(
             "All {} readings take only {distinct} different {values}: the steps are too coarse to show a spread. \
@@ -68,9 +68,9 @@ fn gauge_sd(material: &Material<'_>) -> Option<f64> {
     material.study.figures.gauge.sd.estimate
 }
 
-/// How many different values there are.
-pub(super) fn distinct(material: &Material<'_>) -> usize {
-    sorted(material.values).len()
+/// Whether the readings take too few values to say anything about spread.
+pub(super) fn too_few_values(material: &Material<'_>) -> bool {
+    sorted(material.values).len() < DISTINCT_MIN
 }
 
 fn sorted(values: &[f64]) -> Vec<f64> {

@@ -1,9 +1,10 @@
 //! The readings against the clock: drift between repeats, and trials that follow one another directly.
 
 use super::LEVEL;
+use super::luck::f_above;
 use super::material::{self, Material};
 use super::words::{duration, number};
-use crate::quantile::{Side, f, f_above};
+use crate::quantile::{Side, f};
 use crate::record::Remark;
 
 const HOUR: f64 = 3600.0;
@@ -45,13 +46,7 @@ pub(super) fn drift(material: &Material<'_>) -> Option<Remark> {
     let slope = products / times;
     let explained = products * slope;
     let rest = (squares - explained).max(0.0) / (df - 1) as f64;
-    let p = if rest > 0.0 {
-        f_above(explained / rest, 1.0, (df - 1) as f64)
-    } else if explained > 0.0 {
-        0.0
-    } else {
-        1.0
-    };
+    let p = f_above(explained / rest, 1.0, (df - 1) as f64);
     if p > LEVEL {
         return None;
     }
