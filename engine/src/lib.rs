@@ -18,7 +18,9 @@ mod estimates;
 mod fault;
 mod figure;
 mod figures;
+mod generalized;
 pub mod ladder;
+mod limits;
 mod mls;
 mod model;
 pub mod quantile;
@@ -26,6 +28,7 @@ mod random;
 mod record;
 mod recorded;
 mod remarks;
+pub mod risk;
 mod root;
 mod settings;
 mod standing;
@@ -40,10 +43,12 @@ pub use combination::Combination;
 pub use design::{CELLS_MAX, Design, DesignError, FACTORS_MAX, Factor, PART};
 pub use fault::StudyError;
 pub use figure::{Figure, Interval, Open};
+pub use generalized::{DRAWS, SEED, Simulation};
+pub use limits::Quantity;
 pub use model::{Line, Model, WITHIN_CELLS};
 pub use record::{
-    Against, ChanceAbove, Component, Figures, InteractionChoice, Layout, MeanSquare, Ndc,
-    OtherReading, Remark, Reml, Risk, Spread, Study,
+    Against, ChanceAbove, Component, ConsumerRisk, Figures, InteractionChoice, Layout, MeanSquare,
+    Ndc, OtherReading, ProducerRisk, Remark, Reml, Risk, RiskProcess, Spread, Study,
 };
 pub use recorded::{Recorded, RecordedError};
 pub use remarks::{Context, FALSE_ALARMS, Names, REMARKS_MAX, remarks};

@@ -11,6 +11,7 @@ use serde::Serialize;
 
 use crate::design::Factor;
 use crate::figure::Figure;
+use crate::risk::Guarded;
 
 /// One study. Variances are in squared reading units, sds in reading units, shares are fractions.
 #[derive(Debug, Clone, PartialEq, Serialize)]
@@ -213,6 +214,53 @@ pub struct Remark {
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub enum Reml {}
 
-/// Misclassification: no value exists while no risk is worked out.
+/// How often parts of a process are judged wrongly by this gauge; every number is a probability.
 #[derive(Debug, Clone, PartialEq, Serialize)]
-pub enum Risk {}
+pub struct Risk {
+    /// The process that the parts come from.
+    pub process: RiskProcess,
+    /// A part is bad: its true value lies outside the limits.
+    pub bad: Figure,
+    /// A part is accepted: its reading lies within the limits.
+    pub accepted: Figure,
+    /// Good parts rejected.
+    pub producer: ProducerRisk,
+    /// Bad parts accepted.
+    pub consumer: ConsumerRisk,
+    /// Acceptance limits that keep the joint consumer's risk at 100, 10 and 1 in a million; those that need no guard
+    /// band are left out.
+    pub guarded: Vec<Guarded>,
+}
+
+/// The process behind the risks.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+pub struct RiskProcess {
+    /// `stated`, or `study parts`: the parts that somebody chose for the study.
+    pub from: &'static str,
+    /// Mean of the true values, in reading units.
+    pub mean: Option<f64>,
+    /// Their sd, in reading units.
+    pub sd: Option<f64>,
+}
+
+/// Producer's risk.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct ProducerRisk {
+    /// A part is good and rejected.
+    pub joint: Figure,
+    /// A good part is rejected.
+    pub given_good: Figure,
+    /// A rejected part is good.
+    pub given_rejected: Figure,
+}
+
+/// Consumer's risk.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct ConsumerRisk {
+    /// A part is bad and accepted.
+    pub joint: Figure,
+    /// A bad part is accepted.
+    pub given_bad: Figure,
+    /// An accepted part is bad.
+    pub given_accepted: Figure,
+}

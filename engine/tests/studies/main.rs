@@ -7,6 +7,7 @@ mod invented;
 mod pooling;
 mod record;
 mod refused;
+mod risk;
 mod sound;
 mod thin;
 mod tolerances;
