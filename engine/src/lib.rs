@@ -23,6 +23,8 @@ pub mod ladder;
 mod limits;
 mod mls;
 mod model;
+pub mod over_time;
+pub mod planning;
 pub mod quantile;
 mod random;
 mod record;
