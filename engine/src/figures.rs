@@ -17,7 +17,7 @@ use crate::record::{Component, Figures, Ndc, Spread};
 use crate::tolerance::{FromMean, Share};
 
 pub(crate) const ALL_EQUAL: &str = "all readings are equal";
-const ONE_LEVEL: &str = "the design has no factor beside the part with two or more levels, so reproducibility cannot be seen";
+pub(crate) const ONE_LEVEL: &str = "the design has no factor beside the part with two or more levels, so reproducibility cannot be seen";
 pub(crate) const NOT_APART: &str =
     "with one trial a part's spread and the gauge's cannot be told apart";
 pub(crate) const GAUGE_ZERO: &str = "the gauge variance is zero";
@@ -106,18 +106,6 @@ impl Evidence<'_> {
                 interval: r.interval,
             }),
         )
-    }
-
-    pub(crate) fn ndc(&self, part_to_gauge: &Figure) -> Ndc {
-        let categories = |ratio: Option<f64>| ratio.map(|r| (2.0 * r).sqrt());
-        Ndc {
-            whole: part_to_gauge
-                .estimate
-                .map(|r| (NDC_FACTOR * r.sqrt()).floor() as u64),
-            estimate: categories(part_to_gauge.estimate),
-            lower: categories(part_to_gauge.lower),
-            upper: categories(part_to_gauge.upper),
-        }
     }
 
     /// The one-sided lower limit of the gauge share at the confidence that judges.
@@ -253,6 +241,19 @@ impl Evidence<'_> {
             _ => Interval::MlsRoot,
         };
         self.limits_of_ratio(numerator, denominator, by)
+    }
+}
+
+/// Categories from the ratio of part to gauge variance.
+pub(crate) fn ndc(part_to_gauge: &Figure) -> Ndc {
+    let categories = |ratio: Option<f64>| ratio.map(|r| (2.0 * r).sqrt());
+    Ndc {
+        whole: part_to_gauge
+            .estimate
+            .map(|r| (NDC_FACTOR * r.sqrt()).floor() as u64),
+        estimate: categories(part_to_gauge.estimate),
+        lower: categories(part_to_gauge.lower),
+        upper: categories(part_to_gauge.upper),
     }
 }
 

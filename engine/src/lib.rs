@@ -30,6 +30,7 @@ mod random;
 mod record;
 mod recorded;
 mod remarks;
+mod reml;
 pub mod risk;
 mod root;
 mod settings;
@@ -50,10 +51,11 @@ pub use limits::Quantity;
 pub use model::{Line, Model, WITHIN_CELLS};
 pub use record::{
     Against, ChanceAbove, Component, ConsumerRisk, Figures, InteractionChoice, Layout, MeanSquare,
-    Ndc, OtherReading, ProducerRisk, Remark, Reml, Risk, RiskProcess, Spread, Study,
+    Ndc, OtherReading, ProducerRisk, Remark, Risk, RiskProcess, Spread, Study,
 };
 pub use recorded::{Recorded, RecordedError};
 pub use remarks::{Context, FALSE_ALARMS, Names, REMARKS_MAX, remarks};
+pub use reml::{GaugeBootstrap, Reml, reml};
 pub use settings::{Interaction, Judge, Limits, OneSided, Process, Settings, Tolerance};
 pub use standing::{Standing, standing};
 pub use study::{Prepared, TRIALS_MAX, analyse};

@@ -11,6 +11,7 @@ use serde::Serialize;
 
 use crate::design::Factor;
 use crate::figure::Figure;
+use crate::reml::Reml;
 use crate::risk::Guarded;
 
 /// One study. Variances are in squared reading units, sds in reading units, shares are fractions.
@@ -209,10 +210,6 @@ pub struct Remark {
     /// The numbers behind it.
     pub figures: BTreeMap<String, f64>,
 }
-
-/// Restricted maximum likelihood: no value exists while unequal trials are refused.
-#[derive(Debug, Clone, PartialEq, Serialize)]
-pub enum Reml {}
 
 /// How often parts of a process are judged wrongly by this gauge; every number is a probability.
 #[derive(Debug, Clone, PartialEq, Serialize)]

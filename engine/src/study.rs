@@ -8,7 +8,7 @@ use crate::design::Design;
 use crate::estimates::Estimates;
 use crate::fault::StudyError;
 use crate::figure::{Figure, Interval};
-use crate::figures::Evidence;
+use crate::figures::{Evidence, ndc};
 use crate::generalized::Simulation;
 use crate::limits::Quantity;
 use crate::model::Model;
@@ -16,6 +16,7 @@ use crate::record::{
     ChanceAbove, Component, Figures, InteractionChoice, Layout, OtherReading, Remark, Study,
 };
 use crate::remarks::outside;
+use crate::reml;
 use crate::risk::of_study;
 use crate::settings::{Interaction, Judge, Settings, Tolerance};
 use crate::sums::{Sums, Sweep};
@@ -41,7 +42,11 @@ pub fn analyse(
     settings: &Settings,
 ) -> Result<Study, StudyError> {
     let counts = counts(design, cells, values)?;
-    Prepared::new(design, usual(&counts), settings)?.study(cells, values, tolerance)
+    let trials = counts[0];
+    if trials > 0 && counts.iter().all(|&count| count == trials) {
+        return Prepared::new(design, trials, settings)?.study(cells, values, tolerance);
+    }
+    reml::study(design, counts, cells, values, tolerance, settings)
 }
 
 /// A design with everything that does not depend on the readings, shared by all its characteristics.
@@ -75,17 +80,7 @@ impl Prepared {
         trials: usize,
         settings: &Settings,
     ) -> Result<Prepared, StudyError> {
-        check(settings)?;
-        let parts = design.factors()[design.part()].levels;
-        if parts < 2 {
-            return Err(StudyError::TooFewParts(parts));
-        }
-        if trials == 0 {
-            return Err(StudyError::Empty);
-        }
-        if trials > TRIALS_MAX {
-            return Err(StudyError::TooManyTrials(trials));
-        }
+        check(design, trials, settings)?;
         let kept = Basis::new(Model::estimable(design, trials), settings);
         let interactions = kept.model.interactions();
         let pooled = (!interactions.is_empty()).then(|| kept.model.without(design, &interactions));
@@ -243,7 +238,7 @@ impl Prepared {
             interaction: self.interaction(&evidence.basis.model, sums, share),
             mean_squares: table.lines(sums.total()),
             reml: None,
-            ndc: evidence.ndc(&part_to_gauge),
+            ndc: ndc(&part_to_gauge),
             risk,
             chance_above: self.chance_above(evidence, judged.estimate.is_some()),
             remarks: self.remarks(&components, &figures, &part_to_gauge),
@@ -340,13 +335,7 @@ impl Prepared {
         readings
             .chunks_exact_mut(self.trials)
             .for_each(|cell| cell.sort_by(f64::total_cmp));
-        let spread = readings
-            .iter()
-            .map(|y| (y - readings[0]).abs())
-            .fold(0.0, f64::max);
-        if spread != 0.0 && !SPREAD.contains(&spread) {
-            return Err(StudyError::Spread(spread));
-        }
+        check_spread(&readings, readings[0])?;
         Ok(readings)
     }
 }
@@ -366,7 +355,11 @@ fn other_reading(model: &Model, sums: &Sums, share: &Share) -> OtherReading {
     }
 }
 
-fn counts(design: &Design, cells: &[usize], values: &[f64]) -> Result<Vec<usize>, StudyError> {
+pub(crate) fn counts(
+    design: &Design,
+    cells: &[usize],
+    values: &[f64],
+) -> Result<Vec<usize>, StudyError> {
     if cells.len() != values.len() {
         return Err(StudyError::Lengths {
             cells: cells.len(),
@@ -393,17 +386,32 @@ fn counts(design: &Design, cells: &[usize], values: &[f64]) -> Result<Vec<usize>
     Ok(counts)
 }
 
-/// The count that most cells have; of equally frequent ones the largest.
-fn usual(counts: &[usize]) -> usize {
-    let largest = counts.iter().copied().max().unwrap_or(0);
-    let mut cells_with = vec![0; largest + 1];
-    counts.iter().for_each(|&count| cells_with[count] += 1);
-    (1..=largest)
-        .max_by_key(|&count| cells_with[count])
-        .unwrap_or(0)
+/// What is asked of any study, whatever its readings.
+pub(crate) fn check(design: &Design, trials: usize, settings: &Settings) -> Result<(), StudyError> {
+    check_settings(settings)?;
+    let parts = design.factors()[design.part()].levels;
+    if parts < 2 {
+        return Err(StudyError::TooFewParts(parts));
+    }
+    if trials == 0 {
+        return Err(StudyError::Empty);
+    }
+    if trials > TRIALS_MAX {
+        return Err(StudyError::TooManyTrials(trials));
+    }
+    Ok(())
 }
 
-fn check(settings: &Settings) -> Result<(), StudyError> {
+/// Checks that squares can hold the differences between the readings and one of them.
+pub(crate) fn check_spread(values: &[f64], one: f64) -> Result<(), StudyError> {
+    let spread = values.iter().map(|y| (y - one).abs()).fold(0.0, f64::max);
+    if spread != 0.0 && !SPREAD.contains(&spread) {
+        return Err(StudyError::Spread(spread));
+    }
+    Ok(())
+}
+
+fn check_settings(settings: &Settings) -> Result<(), StudyError> {
     let fault = |setting, value, expected| {
         Err(StudyError::Setting {
             setting,

@@ -17,4 +17,5 @@ mod limits;
 mod offsets;
 mod point_values;
 mod quantiles;
+mod reml;
 mod risk;

@@ -11,3 +11,4 @@ mod risk;
 mod sound;
 mod thin;
 mod tolerances;
+mod unequal;
