@@ -238,7 +238,7 @@ mod tests {
 
     /// Parts -6, -2, 2, 6; appraisers -3, 0, 3; repeats ± 1 about them; interaction by a sign.
     fn invented(levels: &[usize], k: usize) -> f64 {
-        let sign = if (levels[0] + levels[1]) % 2 == 0 {
+        let sign = if (levels[0] + levels[1]).is_multiple_of(2) {
             1.0
         } else {
             -1.0

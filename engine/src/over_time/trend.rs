@@ -297,7 +297,7 @@ mod tests {
         let mut held = 0;
         for _ in 0..TRIALS {
             let points: Vec<(f64, f64)> = (0..8)
-                .map(|i| f64::from(i))
+                .map(f64::from)
                 .map(|x| (x, (slope * x + 0.05 * normal()).exp()))
                 .collect();
             let trend = Trend::of(&points, Some(1.5), 0.8).unwrap();

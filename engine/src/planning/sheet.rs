@@ -44,16 +44,17 @@ pub fn run_sheet(
             .map(|last| order(parts, *last, &mut random))
             .collect();
         for place in 0..parts {
-            let mut turn: Vec<usize> = (0..appraisers).collect();
+            let mut turn: Vec<(usize, usize)> = orders
+                .iter()
+                .map(|order| order[place])
+                .enumerate()
+                .collect();
             random.shuffle(&mut turn);
-            sheet.extend(turn.into_iter().map(|appraiser| {
-                let part = orders[appraiser][place];
-                SheetRun {
-                    appraiser,
-                    part,
-                    trial,
-                    label: labels[appraiser * parts + part],
-                }
+            sheet.extend(turn.into_iter().map(|(appraiser, part)| SheetRun {
+                appraiser,
+                part,
+                trial,
+                label: labels[appraiser * parts + part],
             }));
         }
         for (last, order) in last.iter_mut().zip(&orders) {
