@@ -7,7 +7,7 @@
 //! | part over gauge, shares of the total, ndc | exact with one term, else the root method |
 //! | share of the distance from an estimated mean, risks, ratio of two studies | generalized |
 //!
-//! Satterthwaite's limits are at hand for comparison and never reported: for a gauge with three appraisers its
+//! From mean squares Satterthwaite's limits are for comparison and never reported: for a gauge with three appraisers its
 //! 95 % limits hold the truth in 82 % of studies when appraisers dominate. Generalized limits cover too seldom with
 //! three or more factors crossed, and are then reported for nothing.
 //!

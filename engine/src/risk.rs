@@ -14,4 +14,4 @@ mod scaled;
 
 pub use guard::{Guarded, guarded};
 pub use misclassification::{Judged, Misclassification, misclassification};
-pub(crate) use of_study::of_study;
+pub(crate) use of_study::{Spreads, of_estimates, of_study};

@@ -19,10 +19,18 @@ pub(super) const SEED: u64 = 20_231;
 /// Multiplications in one evaluation of the likelihood above which no study is drawn.
 pub(super) const WORK_MAX: f64 = 2e6;
 
-/// Components of the drawn studies, in squares of the readings' scale.
+/// The drawn studies that could be fitted.
 #[derive(Debug, Clone)]
 pub(super) struct Draws {
-    components: Vec<Vec<f64>>,
+    studies: Vec<Drawn>,
+}
+
+/// One drawn study, in the readings' scale.
+#[derive(Debug, Clone)]
+pub(super) struct Drawn {
+    pub(super) components: Vec<f64>,
+    /// Its mean; the truth is zero.
+    pub(super) mean: f64,
 }
 
 /// Sorted quotients `drawn / estimate` of one figure.
@@ -43,22 +51,25 @@ impl Draws {
             let summit = blocks
                 .climb(&seen, components.to_vec(), Ends::Nearly)
                 .ok()?;
-            Some(summit.components)
+            Some(Drawn {
+                mean: summit.at.mean,
+                components: summit.components,
+            })
         });
         Some(Draws {
-            components: fitted.collect(),
+            studies: fitted.collect(),
         })
     }
 
-    /// Studies that could be fitted.
+    /// How many.
     pub(super) fn len(&self) -> usize {
-        self.components.len()
+        self.studies.len()
     }
 
-    /// The quotients of a figure that multiplies with the readings' variance or not at all.
-    pub(super) fn of(&self, figure: impl Fn(&[f64]) -> f64, estimate: f64) -> Quotients {
+    /// The quotients of a figure.
+    pub(super) fn of(&self, figure: impl Fn(&Drawn) -> f64, estimate: f64) -> Quotients {
         let mut sorted: Vec<f64> = self
-            .components
+            .studies
             .iter()
             .map(|drawn| figure(drawn) / estimate)
             .collect();

@@ -14,9 +14,10 @@ use crate::quantile::{Side, chi_square};
 use crate::record::{Component, Figures, Spread};
 use crate::tolerance::Share;
 
-use super::bootstrap::{Draws, Quotients};
+use super::bootstrap::{Drawn, Draws, Quotients};
 use super::dense::Matrix;
 use super::fit::{Evidence, Fit};
+use super::written::GaugeBootstrap;
 
 const AT_ZERO: &str = "the estimate is zero, where approximate limits do not exist";
 const REPEATS_EQUAL: &str = "all repeats are equal, so the data set no limits";
@@ -84,6 +85,11 @@ impl<'a> Limits<'a> {
 
     fn all(&self) -> Vec<usize> {
         (0..self.fit.components.len()).collect()
+    }
+
+    pub(super) fn part_variance(&self) -> Option<f64> {
+        let part = self.fit.model.part()?;
+        Some(self.fit.components[part] * self.square)
     }
 
     pub(super) fn gauge_variance(&self) -> Option<f64> {
@@ -190,19 +196,59 @@ impl<'a> Limits<'a> {
         let variance = self.variance(&members);
         let sd = variance.rising(f64::sqrt);
         Spread {
-            share_of_tolerance: self.share_of_tolerance(&sd),
+            share_of_tolerance: self.share_of_tolerance(&members, &sd),
             share_of_tv: self.share_of_total(&members),
             variance,
             sd,
         }
     }
 
-    fn share_of_tolerance(&self, sd: &Figure) -> Figure {
+    /// A mean that the study estimates makes the share uncertain too; then its limits are by bootstrap.
+    fn share_of_tolerance(&self, members: &[usize], sd: &Figure) -> Figure {
         match &self.share.per_sd {
             Err(why) => Figure::absent(why.clone()),
             Ok(_) if self.all_equal() => Figure::absent(ALL_EQUAL),
+            Ok(_) if self.share.from_estimated_mean.is_some() => self.share_by_bootstrap(members),
             Ok(per_sd) => sd.rising(|sd| sd * per_sd),
         }
+    }
+
+    /// The share of tolerance of a sum of components, with bootstrap limits.
+    fn share_by_bootstrap(&self, members: &[usize]) -> Figure {
+        let per_sd = match &self.share.per_sd {
+            Err(why) => return Figure::absent(why.clone()),
+            Ok(_) if self.all_equal() => return Figure::absent(ALL_EQUAL),
+            Ok(per_sd) => per_sd,
+        };
+        let estimate = (self.sum(members) * self.square).sqrt() * per_sd;
+        match self.share_quotients(members) {
+            Ok(quotients) => Figure::new(estimate, self.bootstrap(estimate, &quotients)),
+            Err(why) => Figure::without_limits(estimate, why),
+        }
+    }
+
+    fn share_quotients(&self, members: &[usize]) -> Result<Quotients, &'static str> {
+        let draws = self.draws.as_ref().map_err(|why| *why)?;
+        let estimate = self.sum(members).sqrt();
+        if estimate == 0.0 {
+            return Err(AT_ZERO);
+        }
+        let sd = |drawn: &Drawn| {
+            members
+                .iter()
+                .map(|&i| drawn.components[i])
+                .sum::<f64>()
+                .sqrt()
+        };
+        Ok(match &self.share.from_estimated_mean {
+            None => draws.of(sd, estimate),
+            Some(from) => {
+                let scale = self.square.sqrt();
+                let share =
+                    |sd: f64, mean: f64| from.share(sd * scale, self.fit.mean + mean * scale);
+                draws.of(|drawn| share(sd(drawn), drawn.mean), share(estimate, 0.0))
+            }
+        })
     }
 
     fn share_of_total(&self, members: &[usize]) -> Figure {
@@ -267,17 +313,16 @@ impl<'a> Limits<'a> {
         if estimate == 0.0 {
             return Err(AT_ZERO);
         }
-        let sum = |drawn: &[f64], members: &[usize]| members.iter().map(|&i| drawn[i]).sum::<f64>();
+        let sum = |drawn: &Drawn, members: &[usize]| -> f64 {
+            members.iter().map(|&i| drawn.components[i]).sum()
+        };
         let quotients = draws.of(|drawn| sum(drawn, above) / sum(drawn, below), estimate);
         Ok(self.bootstrap(estimate, &quotients))
     }
 
-    /// The gauge variance of the drawn studies over its estimate.
+    /// The gauge share of the drawn studies over its estimate.
     pub(super) fn gauge_quotients(&self) -> Result<Quotients, &'static str> {
-        let draws = self.draws.as_ref().map_err(|why| *why)?;
-        let gauge = self.gauge();
-        let estimate = self.sum(&gauge);
-        Ok(draws.of(|drawn| gauge.iter().map(|&i| drawn[i]).sum(), estimate))
+        self.share_quotients(&self.gauge())
     }
 
     /// Limits of a figure from its quotients.
@@ -293,19 +338,27 @@ impl<'a> Limits<'a> {
     }
 
     /// Gauge variance, sd and share of tolerance with bootstrap limits.
-    pub(super) fn gauge_by_bootstrap(&self) -> Option<super::GaugeBootstrap> {
+    pub(super) fn gauge_by_bootstrap(&self) -> Option<GaugeBootstrap> {
+        let draws = self.draws.as_ref().ok()?;
         let estimate = self.gauge_variance()?;
-        let quotients = self.gauge_quotients().ok()?;
-        let variance = Figure::new(estimate, self.bootstrap(estimate, &quotients));
-        let sd = variance.rising(f64::sqrt);
-        Some(super::GaugeBootstrap {
-            share_of_tolerance: self.share_of_tolerance(&sd),
-            variance,
-            sd,
+        let gauge = self.gauge();
+        let sd = |drawn: &Drawn| {
+            gauge
+                .iter()
+                .map(|&i| drawn.components[i])
+                .sum::<f64>()
+                .sqrt()
+        };
+        let quotients = draws.of(sd, self.sum(&gauge).sqrt());
+        let bounds = self.bootstrap(estimate.sqrt(), &quotients);
+        Some(GaugeBootstrap {
+            variance: Figure::new(estimate, bounds.rising(|sd| sd * sd)),
+            sd: Figure::new(estimate.sqrt(), bounds),
+            share_of_tolerance: self.share_by_bootstrap(&gauge),
         })
     }
 
-    fn all_equal(&self) -> bool {
+    pub(super) fn all_equal(&self) -> bool {
         matches!(self.fit.evidence, Evidence::AllEqual)
     }
 }

@@ -7,9 +7,10 @@ use crate::fault::StudyError;
 use crate::figures::ndc;
 use crate::model::Model;
 use crate::quantile::chi_square_above;
-use crate::record::{ChanceAbove, InteractionChoice, Layout, OtherReading, Remark, Study};
+use crate::record::{ChanceAbove, InteractionChoice, Layout, OtherReading, Remark, Risk, Study};
 use crate::remarks::outside::one_trial;
-use crate::settings::{Interaction, Judge, Settings, Tolerance};
+use crate::risk::{Spreads, of_estimates};
+use crate::settings::{Interaction, Judge, Process, Settings, Tolerance};
 use crate::study::check;
 use crate::tolerance::Share;
 
@@ -18,6 +19,8 @@ use super::fit::{Fit, NoFit};
 use super::limits::Limits;
 use super::reduced::Reduced;
 use super::written::Reml;
+
+const RISK_LIMITS: &str = "limits of risks need equal numbers of readings in all cells";
 
 /// One study's readings under one design.
 struct Bench<'a> {
@@ -76,7 +79,9 @@ pub(crate) fn study(
             ..Reml::of(fit, reduced.scale)
         }),
         ndc: ndc(&part_to_gauge),
-        risk: None,
+        risk: settings
+            .process
+            .map(|process| risk(&limits, process, &share)),
         chance_above: chance_above(&limits, settings, judged.estimate),
         remarks: remarks(&full.model, design, &layout),
         draws: drawn.map(|draws| draws.len() as u32),
@@ -177,17 +182,28 @@ fn p_of_interaction(statistic: f64) -> f64 {
     0.5 * chi_square_above(statistic, 1.0)
 }
 
+fn risk(limits: &Limits<'_>, process: Process, share: &Share) -> Risk {
+    let spreads = Spreads {
+        mean: limits.fit.mean,
+        part: limits.part_variance(),
+        gauge: limits.gauge_variance(),
+        all_equal: limits.all_equal(),
+        share,
+    };
+    of_estimates(&spreads, process, |_| Err(RISK_LIMITS))
+}
+
 /// The one-sided lower limit of the share at a confidence.
 fn lower_at(limits: &Limits<'_>, share: f64, confidence: f64) -> Option<f64> {
     let quotients = limits.gauge_quotients().ok()?;
-    Some(share / quotients.percentile(confidence).sqrt())
+    Some(share / quotients.percentile(confidence))
 }
 
 fn chance_above(limits: &Limits<'_>, settings: &Settings, share: Option<f64>) -> ChanceAbove {
     let above = || {
         let (share, limits_of_share) = (share?, settings.limits?);
         let quotients = limits.gauge_quotients().ok()?;
-        let above = |limit: f64| Some(quotients.probability((share / limit).powi(2)));
+        let above = |limit: f64| Some(quotients.probability(share / limit));
         Some(ChanceAbove {
             watch: above(limits_of_share.watch),
             act: above(limits_of_share.act),

@@ -9,6 +9,7 @@ use crate::figures::{ALL_EQUAL, Evidence, GAUGE_ZERO, NOT_APART};
 use crate::limits::MANY_CROSSED;
 use crate::record::{ConsumerRisk, ProducerRisk, Risk, RiskProcess};
 use crate::settings::Process;
+use crate::tolerance::Share;
 
 /// Joint consumer's risks that guarded limits are given for: 100, 10 and 1 in a million.
 const WANTED: [f64; 3] = [1e-4, 1e-5, 1e-6];
@@ -19,14 +20,41 @@ const FIGURES: usize = 8;
 const NO_LIMITS: &str = "the characteristic has no tolerance";
 const NEVER: &str = "the condition has a probability of zero";
 
-/// Risks under a named process.
+/// What a study estimates that risks are made from; variances in squared reading units.
+pub(crate) struct Spreads<'a> {
+    pub(crate) mean: f64,
+    pub(crate) part: Option<f64>,
+    pub(crate) gauge: Option<f64>,
+    pub(crate) all_equal: bool,
+    pub(crate) share: &'a Share,
+}
+
+/// Risks under a named process, with generalized limits.
 pub(crate) fn of_study(evidence: &Evidence<'_>, process: Process, grand_mean: f64) -> Risk {
+    let spreads = Spreads {
+        mean: grand_mean,
+        part: evidence.estimates.part,
+        gauge: evidence.estimates.gauge,
+        all_equal: evidence.all_equal,
+        share: evidence.share,
+    };
+    of_estimates(&spreads, process, |judged| {
+        limits(evidence, process, judged)
+    })
+}
+
+/// Risks under a named process, with limits from elsewhere or a reason why there are none.
+pub(crate) fn of_estimates(
+    spreads: &Spreads<'_>,
+    process: Process,
+    limits: impl FnOnce(&Judged) -> Result<[Bounds; FIGURES], &'static str>,
+) -> Risk {
     let (from, mean, sd) = match process {
         Process::Stated { mean, sd } => ("stated", Some(mean), Some(sd)),
         Process::StudyParts => (
             "study parts",
-            Some(grand_mean),
-            evidence.estimates.part.map(f64::sqrt),
+            Some(spreads.mean),
+            spreads.part.map(f64::sqrt),
         ),
     };
     let named = RiskProcess {
@@ -34,7 +62,7 @@ pub(crate) fn of_study(evidence: &Evidence<'_>, process: Process, grand_mean: f6
         mean: mean.filter(|x| x.is_finite()),
         sd: sd.filter(|x| x.is_finite()),
     };
-    let risks = judged(evidence, process, &named).and_then(|judged| {
+    let risks = judged(spreads, process, &named).and_then(|judged| {
         let risks = misclassification(&judged).ok_or_else(|| out_of_order(&judged))?;
         Ok((judged, risks))
     });
@@ -42,25 +70,25 @@ pub(crate) fn of_study(evidence: &Evidence<'_>, process: Process, grand_mean: f6
         Err(why) => record(named, std::array::from_fn(|_| Figure::absent(why.clone()))),
         Ok((judged, risks)) => Risk {
             guarded: guard_bands(&judged, &risks),
-            ..record(named, with_limits(evidence, process, &judged, &risks))
+            ..record(named, with_limits(&risks, limits(&judged)))
         },
     }
 }
 
 /// The process, the gauge and the limits, or why they do not make a risk.
 fn judged(
-    evidence: &Evidence<'_>,
+    spreads: &Spreads<'_>,
     process: Process,
     named: &RiskProcess,
 ) -> Result<Judged, Cow<'static, str>> {
-    let share = evidence.share;
+    let share = spreads.share;
     if share.lower.is_none() && share.upper.is_none() {
         return Err(NO_LIMITS.into());
     }
-    if evidence.all_equal {
+    if spreads.all_equal {
         return Err(ALL_EQUAL.into());
     }
-    let gauge = evidence.estimates.gauge.ok_or(NOT_APART)?;
+    let gauge = spreads.gauge.ok_or(NOT_APART)?;
     if gauge == 0.0 {
         return Err(GAUGE_ZERO.into());
     }
@@ -99,14 +127,11 @@ fn guard_bands(judged: &Judged, risks: &Misclassification) -> Vec<Guarded> {
 }
 
 fn with_limits(
-    evidence: &Evidence<'_>,
-    process: Process,
-    judged: &Judged,
     risks: &Misclassification,
+    limits: Result<[Bounds; FIGURES], &'static str>,
 ) -> [Figure; FIGURES] {
     let estimates = in_order(risks);
-    let mut limits = limits(evidence, process, judged);
-    std::array::from_fn(|i| match (estimates[i], &mut limits) {
+    std::array::from_fn(|i| match (estimates[i], &limits) {
         (None, _) => Figure::absent(NEVER),
         (Some(estimate), Err(why)) => Figure::without_limits(estimate, *why),
         (Some(estimate), Ok(limits)) => Figure::new(estimate, limits[i]),

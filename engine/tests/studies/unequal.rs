@@ -1,6 +1,10 @@
 //! Missing cells and unequal trials.
 
-use restudy_engine::{Factor, Judge, Limits, Reml, Settings, StudyError, analyse, reml};
+use restudy_engine::risk::{Judged, misclassification};
+use restudy_engine::{
+    Factor, Interval, Judge, Limits, OneSided, Process, Reml, Settings, StudyError, Tolerance,
+    analyse, reml,
+};
 
 use crate::invented::{Readings, crossed, simulated, three_factors};
 use crate::sound::{TWO_SIDED, settings, study, study_with};
@@ -183,6 +187,53 @@ fn the_study_of_unequal_cells_is_whole() {
     assert_eq!(bootstrap, &study.reml.as_ref().unwrap().bootstrap);
     let act = again.chance_above.act.unwrap();
     assert!(act > 0.3 && act < 0.9, "{act}");
+}
+
+/// An estimated mean widens the limits of a share of the distance to it; a stated process gives risks.
+#[test]
+fn a_share_of_the_distance_to_the_mean_and_the_risks() {
+    let tolerance = Tolerance {
+        lower: None,
+        upper: Some(30.0),
+        one_sided: Some(OneSided::ToStudyMean),
+    };
+    let process = Settings {
+        process: Some(Process::Stated { mean: 5.0, sd: 8.0 }),
+        ..settings()
+    };
+    let study = study_with(&unequal(5), &tolerance, &process);
+    let gauge = &study.figures.gauge;
+    assert_eq!(gauge.share_of_tolerance.interval, Some(Interval::Bootstrap));
+    assert_eq!(
+        gauge.share_of_tolerance,
+        study
+            .reml
+            .as_ref()
+            .unwrap()
+            .bootstrap
+            .as_ref()
+            .unwrap()
+            .share_of_tolerance
+    );
+    let share = 3.0 * gauge.sd.estimate.unwrap() / (30.0 - study.grand_mean);
+    near(
+        &[gauge.share_of_tolerance.estimate.unwrap()],
+        &[share],
+        1e-12,
+    );
+
+    let risk = study.risk.unwrap();
+    let judged = Judged {
+        mean: 5.0,
+        part_sd: 8.0,
+        gauge_sd: gauge.sd.estimate.unwrap(),
+        lower: None,
+        upper: Some(30.0),
+    };
+    let expected = misclassification(&judged).unwrap();
+    assert_eq!(risk.producer.joint.estimate, Some(expected.producer_joint));
+    assert_eq!(risk.consumer.joint.estimate, Some(expected.consumer_joint));
+    assert!(risk.consumer.joint.lower.is_none() && risk.consumer.joint.why.is_some());
 }
 
 /// With repeats alone, `df × estimate / variance` is chi-square, and the bootstrap must find its limits.
