@@ -388,7 +388,7 @@ pub(crate) fn counts(
 
 /// What is asked of any study, whatever its readings.
 pub(crate) fn check(design: &Design, trials: usize, settings: &Settings) -> Result<(), StudyError> {
-    check_settings(settings)?;
+    settings.check()?;
     let parts = design.factors()[design.part()].levels;
     if parts < 2 {
         return Err(StudyError::TooFewParts(parts));
@@ -409,41 +409,4 @@ pub(crate) fn check_spread(values: &[f64], one: f64) -> Result<(), StudyError> {
         return Err(StudyError::Spread(spread));
     }
     Ok(())
-}
-
-fn check_settings(settings: &Settings) -> Result<(), StudyError> {
-    let fault = |setting, value, expected| {
-        Err(StudyError::Setting {
-            setting,
-            value,
-            expected,
-        })
-    };
-    if !(settings.confidence >= 0.5 && settings.confidence < 1.0) {
-        return fault(
-            "the confidence",
-            settings.confidence,
-            "at least 0.5 and below 1",
-        );
-    }
-    if !(settings.spread_sds > 0.0 && settings.spread_sds.is_finite()) {
-        return fault(
-            "the multiple of the gauge sd",
-            settings.spread_sds,
-            "a number above 0, such as 6",
-        );
-    }
-    if let Judge::Chance(p) = settings.judge
-        && !(p > 0.0 && p < 1.0)
-    {
-        return fault("the confidence that judges", p, "between 0 and 1");
-    }
-    match settings.interaction {
-        Interaction::PoolAbove(p) if !(0.0..=1.0).contains(&p) => fault(
-            "the p above which the interaction is pooled",
-            p,
-            "from 0 to 1",
-        ),
-        _ => Ok(()),
-    }
 }

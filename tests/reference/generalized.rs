@@ -27,9 +27,11 @@ const VARIANCES: [(Quantity, &str); 5] = [
     (Quantity::Total, "total"),
 ];
 
-/// Interaction kept or pooled, and the block of the reference.
-const CHOICES: [(fn(Settings) -> Settings, &str); 2] =
-    [(|s| s, "with_interaction"), (pooling, "pooled")];
+/// Interaction kept or pooled.
+type Choice = fn(Settings) -> Settings;
+
+/// Each choice with its block of the reference.
+const CHOICES: [(Choice, &str); 2] = [(|s| s, "with_interaction"), (pooling, "pooled")];
 
 fn crossed() -> [Fixture; 6] {
     [
@@ -89,7 +91,7 @@ impl Near {
             self.fields += 1;
             let found = found.unwrap_or(f64::NAN);
             let apart = (found - wanted).abs();
-            if !(apart <= allowed + 1e-5 * wanted.abs()) {
+            if apart.is_nan() || apart > allowed + 1e-5 * wanted.abs() {
                 self.far.push(format!(
                     "{field} {end}: found {found:e}, expected {wanted:e} ± {allowed:e}"
                 ));
@@ -120,13 +122,7 @@ fn simulated<'a>(block: &'a Value, field: &str, level: &str) -> Option<&'a Value
         .find_map(|kind| block["simulated"].get(kind)?.get(field)?.get(level))
 }
 
-fn compare(
-    fixture: &Fixture,
-    factors: Factors,
-    choice: fn(Settings) -> Settings,
-    block: &str,
-    at_least: usize,
-) {
+fn compare(fixture: &Fixture, factors: Factors, choice: Choice, block: &str, at_least: usize) {
     let mut near = Near::new(fixture, block, FEWER);
     let expected = &fixture.expected[block];
     for (confidence, level) in [(0.90, "0.90"), (0.95, "0.95")] {
@@ -259,11 +255,11 @@ fn shares_of_the_distance_from_the_study_mean() {
 
 #[test]
 fn satterthwaite() {
-    let mut cases: Vec<(Fixture, Factors, fn(Settings) -> Settings, &str)> = Vec::new();
+    let mut cases: Vec<(Fixture, Factors, Choice, &str)> = Vec::new();
     for (choice, block) in CHOICES {
         cases.extend(crossed().map(|fixture| (fixture, PART_APPRAISER, choice, block)));
     }
-    let same: fn(Settings) -> Settings = |s| s;
+    let same: Choice = |s| s;
     cases.push((fixture!("edge_one_trial"), PART_APPRAISER, same, "additive"));
     cases.push((fixture!("f_nested_3x8x3"), NESTED, same, "model"));
     cases.push((fixture!("f_three_factor_8x3x2x2"), THREE, same, "model"));
