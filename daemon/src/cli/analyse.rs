@@ -5,14 +5,17 @@ use std::path::{Path, PathBuf};
 use std::str::FromStr;
 
 use indicatif::{ProgressBar, ProgressFinish, ProgressStyle};
+use jiff::civil::DateTime;
 use restudy_engine::{
-    Design, Factor, Interaction, Judge, OneSided, Process, Settings, Standing, Study, Tolerance,
+    Context, Design, Factor, Interaction, Judge, Names, OneSided, Process, Settings, Standing,
+    Study, Tolerance, remarks,
 };
 use restudy_parsers::{Bounds, Export, Parsed, Plain, Refused, fold};
 use sha2::{Digest as _, Sha256};
 
 use super::table::table;
 use super::{Answer, End, Failure, complain, configuration, preview, print, print_json};
+use crate::analyse::study::seconds;
 use crate::figures::significant;
 use crate::intake::workbook::Ask;
 use crate::natural;
@@ -127,10 +130,18 @@ struct Gathered {
     nominal: Option<f64>,
     lower: Option<f64>,
     upper: Option<f64>,
-    /// Labels (part, appraiser, further factors) and value.
-    rows: Vec<(Vec<String>, f64)>,
+    rows: Vec<Row>,
     seen: BTreeMap<String, f64>,
     fault: Option<String>,
+}
+
+/// One reading.
+struct Row {
+    /// Part, appraiser, further factors.
+    labels: Vec<String>,
+    trial: Option<String>,
+    taken: Option<DateTime>,
+    value: f64,
 }
 
 /// The readings of all files.
@@ -357,7 +368,7 @@ impl Gathered {
         &mut self,
         labels: Vec<String>,
         trial: Option<&str>,
-        taken: Option<jiff::civil::DateTime>,
+        taken: Option<DateTime>,
         reading: &restudy_parsers::Reading,
     ) {
         if self.unit != reading.unit {
@@ -396,7 +407,12 @@ impl Gathered {
                 None => {}
             }
         }
-        self.rows.push((labels, reading.value));
+        self.rows.push(Row {
+            labels,
+            trial: trial.map(fold),
+            taken,
+            value: reading.value,
+        });
     }
 }
 
@@ -428,19 +444,38 @@ fn study(
             cell * levels[f].len() + level
         })
     };
-    let cells: Vec<usize> = gathered
-        .rows
-        .iter()
-        .map(|(labels, _)| cell(labels))
-        .collect();
-    let values: Vec<f64> = gathered.rows.iter().map(|(_, value)| *value).collect();
+    let cells: Vec<usize> = gathered.rows.iter().map(|row| cell(&row.labels)).collect();
+    let values: Vec<f64> = gathered.rows.iter().map(|row| row.value).collect();
     let tolerance = Tolerance {
         lower: gathered.lower.or(line.lower),
         upper: gathered.upper.or(line.upper),
         one_sided: line.one_sided.map(|o| o.0),
     };
-    let study = restudy_engine::analyse(&design, &cells, &values, &tolerance, settings)
+    let mut study = restudy_engine::analyse(&design, &cells, &values, &tolerance, settings)
         .map_err(|e| in_names(&e, material, &kept, gathered))?;
+    let spelled: Vec<Vec<&str>> = kept
+        .iter()
+        .map(|&f| spelled(gathered, f, &levels[f]))
+        .collect();
+    let unit = gathered.unit.as_deref().or(line.unit.as_deref());
+    let context = Context {
+        factors: kept
+            .iter()
+            .zip(spelled)
+            .map(|(&f, levels)| Names {
+                word: &material.factors[f],
+                levels,
+            })
+            .collect(),
+        taken: gathered
+            .rows
+            .iter()
+            .map(|row| row.taken.map(seconds))
+            .collect(),
+        trials: trials(gathered, &cells).unwrap_or_default(),
+        unit,
+    };
+    study.remarks = remarks(&design, &cells, &values, &study, &tolerance, &context);
     Ok(Record {
         schema: SCHEMA,
         site: None,
@@ -472,11 +507,54 @@ fn levels(gathered: &Gathered, factor: usize) -> Vec<String> {
     let mut names: Vec<String> = gathered
         .rows
         .iter()
-        .map(|(labels, _)| fold(&labels[factor]))
+        .map(|row| fold(&row.labels[factor]))
         .collect();
     names.sort_by(|a, b| natural::compare(a, b));
     names.dedup();
     names
+}
+
+/// The levels as they were first written.
+fn spelled<'a>(gathered: &'a Gathered, factor: usize, levels: &[String]) -> Vec<&'a str> {
+    let labels = || gathered.rows.iter().map(|row| row.labels[factor].as_str());
+    levels
+        .iter()
+        .map(|level| {
+            let written = labels().find(|label| fold(label) == *level);
+            written.unwrap_or_default()
+        })
+        .collect()
+}
+
+/// Which trial of its cell each reading is: by its label, which every cell must hold once, or else by its time.
+fn trials(gathered: &Gathered, cells: &[usize]) -> Option<Vec<usize>> {
+    let labelled: Option<Vec<&String>> = gathered.rows.iter().map(|r| r.trial.as_ref()).collect();
+    if let Some(labels) = labelled {
+        let mut names = labels.clone();
+        names.sort_by(|a, b| natural::compare(a, b));
+        names.dedup();
+        let of_name: BTreeMap<&String, usize> = names.into_iter().zip(0..).collect();
+        let most = cells.iter().fold(BTreeMap::new(), |mut counts, cell| {
+            *counts.entry(cell).or_insert(0) += 1;
+            counts
+        });
+        let most = most.into_values().max()?;
+        return (of_name.len() == most).then(|| labels.iter().map(|l| of_name[*l]).collect());
+    }
+    let taken: Vec<DateTime> = gathered
+        .rows
+        .iter()
+        .map(|r| r.taken)
+        .collect::<Option<_>>()?;
+    let mut order: Vec<usize> = (0..cells.len()).collect();
+    order.sort_by_key(|&row| (cells[row], taken[row]));
+    let mut trials = vec![0; cells.len()];
+    for pair in order.windows(2) {
+        if cells[pair[0]] == cells[pair[1]] {
+            trials[pair[1]] = trials[pair[0]] + 1;
+        }
+    }
+    Some(trials)
 }
 
 /// The engine's refusal, with the cells that have too few or too many readings by name.
@@ -503,8 +581,8 @@ fn in_names(
     {
         counts.insert(combination, 0);
     }
-    for (labels, _) in &gathered.rows {
-        let key: Vec<String> = kept.iter().map(|&f| fold(&labels[f])).collect();
+    for row in &gathered.rows {
+        let key: Vec<String> = kept.iter().map(|&f| fold(&row.labels[f])).collect();
         *counts.entry(key).or_default() += 1;
     }
     let most = counts.values().copied().max().unwrap_or(0);
