@@ -22,7 +22,7 @@ pub struct Study {
     pub tolerance_rule: &'static str,
     /// The design that the readings fill.
     pub design: Layout,
-    /// `anova`.
+    /// `anova`, or `reml` where cells hold unequal numbers of readings.
     pub method: &'static str,
     /// Two-sided confidence of all limits.
     pub confidence: f64,
@@ -30,7 +30,8 @@ pub struct Study {
     pub spread_sds: f64,
     /// What was done with the interaction of part and other factors.
     pub interaction: InteractionChoice,
-    /// One entry a term, then `within cells` and `total`.
+    /// One entry a term, then `within cells` and `total`; none with `reml`, for there sums of squares depend on the order
+    /// of the terms.
     pub mean_squares: Vec<MeanSquare>,
     /// Estimates by restricted maximum likelihood; a balanced study has none.
     pub reml: Option<Reml>,
@@ -52,7 +53,7 @@ pub struct Study {
     pub draws: Option<u32>,
     /// Seed of the draws.
     pub seed: Option<u64>,
-    /// Mean of all readings, in reading units.
+    /// Mean of all readings, in reading units; with `reml` by generalised least squares.
     #[serde(skip)]
     pub grand_mean: f64,
     /// The figure that is held against the limits; absent when the share is.
@@ -65,13 +66,13 @@ pub struct Study {
 pub struct Layout {
     /// The factors in the order of the design.
     pub factors: Vec<Factor>,
-    /// Readings in each cell.
+    /// Readings in each cell; where they differ, in the fullest.
     pub trials: usize,
     /// Number of cells.
     pub cells: usize,
     /// Number of readings.
     pub readings: usize,
-    /// Readings that the design wants and the study lacks.
+    /// Readings that the study lacks for every cell to be as full as the fullest.
     pub missing: usize,
     /// Whether all cells hold the same number of readings.
     pub balanced: bool,
@@ -82,7 +83,8 @@ pub struct Layout {
 pub struct InteractionChoice {
     /// Whether an interaction term stands in the table of mean squares.
     pub kept: bool,
-    /// p of the largest interaction term against its denominator, before any pooling.
+    /// p of the largest interaction term against its denominator, before any pooling; with `reml` of the likelihood
+    /// ratio.
     pub p: Option<f64>,
     /// The p above which the plan pools; absent when it always keeps.
     pub pool_above: Option<f64>,

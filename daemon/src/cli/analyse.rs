@@ -557,7 +557,7 @@ fn trials(gathered: &Gathered, cells: &[usize]) -> Option<Vec<usize>> {
     Some(trials)
 }
 
-/// The engine's refusal, with the cells that have too few or too many readings by name.
+/// The engine's refusal, with the cells that have fewer readings than others by name.
 fn in_names(
     error: &restudy_engine::StudyError,
     material: &Material,
@@ -637,11 +637,15 @@ fn for_people(record: &Record) -> String {
         .as_deref()
         .map(|u| format!(" in {u}"))
         .unwrap_or_default();
+    let trials = if layout.balanced {
+        format!("{} trials", layout.trials)
+    } else {
+        format!("up to {} trials", layout.trials)
+    };
     let mut out = format!(
-        "{}: {} × {} trials, {} readings{unit}\n\n",
+        "{}: {} × {trials}, {} readings{unit}\n\n",
         record.characteristic,
         factors.join(" × "),
-        layout.trials,
         layout.readings
     );
     let sd = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| significant(x, 4));
@@ -697,16 +701,18 @@ fn for_people(record: &Record) -> String {
             p,
         ]
     });
-    out.push('\n');
-    let headings = [
-        "mean squares",
-        "df",
-        "sum of squares",
-        "mean square",
-        "F",
-        "p",
-    ];
-    out.push_str(&table(&headings, &[1, 2, 3, 4, 5], rows.collect()));
+    if layout.balanced {
+        out.push('\n');
+        let headings = [
+            "mean squares",
+            "df",
+            "sum of squares",
+            "mean square",
+            "F",
+            "p",
+        ];
+        out.push_str(&table(&headings, &[1, 2, 3, 4, 5], rows.collect()));
+    }
     let share = &figures.gauge.share_of_tolerance;
     out.push('\n');
     match (share.estimate, share.at_least) {
