@@ -141,3 +141,42 @@ fn nested_and_further_factors_without_names_or_times() {
         assert_eq!(foreign, study.remarks);
     }
 }
+
+#[test]
+fn missing_readings_leave_what_needs_no_balance() {
+    let mut study = Plant::new(3, [10, 3, 3], REPEATABILITY_ALONE);
+    for row in [40, 17, 16, 15] {
+        study.cells.remove(row);
+        study.slots.remove(row);
+        study.taken.remove(row);
+        study.values.remove(row);
+    }
+    for (value, taken) in study.values.iter_mut().zip(&study.taken) {
+        *value += 0.0005 * taken;
+    }
+    let design = study.design();
+    let tolerance = two_sided(475.0, 525.0);
+    let worked_out = analyse(
+        &design,
+        &study.cells,
+        &study.values,
+        &tolerance,
+        &settings(),
+    )
+    .unwrap();
+    let context = Context {
+        taken: study.taken.iter().map(|&t| Some(t)).collect(),
+        trials: study.slots.clone(),
+        ..Context::default()
+    };
+    let found = remarks(
+        &design,
+        &study.cells,
+        &study.values,
+        &worked_out,
+        &tolerance,
+        &context,
+    );
+    is_sound(&found);
+    assert!(kinds(&found).contains(&"drift"), "{found:#?}");
+}
