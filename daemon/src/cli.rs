@@ -8,6 +8,7 @@ mod analyse;
 mod check;
 mod configuration;
 mod demo;
+mod design;
 mod log;
 mod preview;
 mod results;
@@ -66,6 +67,7 @@ Examples:
   restudy serve --config restudy.toml              the service; ends on SIGTERM
   restudy status --config restudy.toml             what is filling, what is missing, what was refused
   restudy analyse study.csv --lower 9.95 --upper 10.05
+  restudy design --share 0.2 --limit 0.3 --mix repeatability=60,interaction=10,appraiser=30
 
 A study is evidence about a gauge, not a release of product: decisions belong to the responsible, qualified people.";
 
@@ -86,6 +88,8 @@ enum Command {
     Preview(preview::Line),
     /// Work a study out from files, without a service
     Analyse(analyse::Line),
+    /// Show what a study of some size can tell, or print its blind run sheet
+    Design(design::Line),
     /// Show rounds with their missing cells, refused exports, owed notices
     Status(status::Line),
     /// Show the recorded studies
@@ -121,6 +125,7 @@ pub fn main() -> ExitCode {
         Command::Check(line) => check::run(&line),
         Command::Preview(line) => preview::run(&line),
         Command::Analyse(line) => analyse::run(&line),
+        Command::Design(line) => design::run(&line),
         Command::Status(line) => status::run(&line),
         Command::Results(line) => results::run(&line),
         Command::Demo(line) => demo::run(&line),

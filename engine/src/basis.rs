@@ -1,7 +1,10 @@
 //! A model with all that follows from it for a stated confidence, worked out once and used for every
 //! characteristic of the same design.
 
+use std::sync::OnceLock;
+
 use crate::combination::Combination;
+use crate::generalized::{Draws, Simulation};
 use crate::mls::Constants;
 use crate::model::Model;
 use crate::settings::{Judge, Settings};
@@ -17,6 +20,8 @@ pub(crate) struct Basis {
     pub(crate) one_sided: Constants,
     /// One-sided limits at the confidence that judges, when that is another one.
     pub(crate) judging: Option<Constants>,
+    simulation: Simulation,
+    draws: OnceLock<Draws>,
 }
 
 /// The figures as combinations of mean squares; absent where the design cannot tell them apart.
@@ -42,9 +47,26 @@ impl Basis {
             two_sided: Constants::all(&df, alpha / 2.0),
             one_sided: Constants::all(&df, alpha),
             judging,
+            simulation: Simulation::default(),
+            draws: OnceLock::new(),
             model,
             df,
         }
+    }
+
+    /// The same with other draws.
+    pub(crate) fn simulated(self, simulation: Simulation) -> Self {
+        Basis {
+            simulation,
+            draws: OnceLock::new(),
+            ..self
+        }
+    }
+
+    /// Drawn when first asked for, then shared by all characteristics.
+    pub(crate) fn draws(&self) -> &Draws {
+        self.draws
+            .get_or_init(|| Draws::new(&self.df, self.simulation))
     }
 }
 

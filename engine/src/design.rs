@@ -7,7 +7,7 @@
 //! Invariant: a `Design` has one factor called `part`, distinct names, at least one level a factor, and
 //! no factor that contains itself.
 
-use serde::Serialize;
+use serde::{Deserialize, Serialize};
 
 /// Factors that a design may have; bounds the terms (2⁶) and so the work per design.
 pub const FACTORS_MAX: usize = 6;
@@ -17,7 +17,7 @@ pub const CELLS_MAX: usize = 100_000;
 pub const PART: &str = "part";
 
 /// One factor: how many levels it has *within one combination of the factors it is nested in*.
-#[derive(Debug, Clone, PartialEq, Eq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Factor {
     /// Its name; one factor is called `part`.
     pub name: String,
@@ -226,6 +226,15 @@ impl Design {
         term.iter()
             .filter(|&f| !term.iter().any(|g| self.containers[g].has(f)))
             .collect()
+    }
+
+    /// Factors of two or more levels that contain no other factor: all of them crossed with one another.
+    pub(crate) fn crossed(&self) -> usize {
+        let all = (0..self.factors.len())
+            .map(FactorSet::of)
+            .fold(FactorSet::default(), FactorSet::with);
+        let inner = self.inner(all).into_iter();
+        inner.filter(|&f| self.factors[f].levels > 1).count()
     }
 
     /// Number of combinations of the levels of a term's factors.

@@ -48,6 +48,21 @@ pub enum StudyError {
         /// Readings of the other cells.
         expected: usize,
     },
+    /// A component that the cells with readings cannot tell from the others.
+    #[error(
+        "the cells that hold readings cannot tell the spread of {0} from the others; expected readings in more cells"
+    )]
+    NotApart(String),
+    /// Readings without an error.
+    #[error(
+        "the readings follow the factors without any rest, so that nothing is left for repeatability; expected repeats that differ"
+    )]
+    NoError,
+    /// No largest likelihood was found.
+    #[error(
+        "the likelihood of the components was not maximised; expected readings of a more even design"
+    )]
+    Unsettled,
     /// More readings in a cell than [`TRIALS_MAX`].
     #[error("every cell has {0} readings; expected at most {TRIALS_MAX}")]
     TooManyTrials(usize),

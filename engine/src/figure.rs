@@ -16,6 +16,15 @@ pub enum Interval {
     /// Modified large sample, solved for the ratio at which the difference may be zero.
     #[serde(rename = "mls root")]
     MlsRoot,
+    /// Percentiles of seeded draws of the mean squares.
+    #[serde(rename = "generalized")]
+    Generalized,
+    /// Chi-square with approximate degrees of freedom.
+    #[serde(rename = "satterthwaite")]
+    Satterthwaite,
+    /// Percentiles of studies drawn anew from the fitted model.
+    #[serde(rename = "bootstrap")]
+    Bootstrap,
 }
 
 /// The side on which a figure has no limit.

@@ -7,21 +7,20 @@
 use std::borrow::Cow;
 
 use crate::basis::Basis;
+use crate::chance;
 use crate::combination::Combination;
 use crate::estimates::Estimates;
 use crate::figure::{Bounds, Figure, Interval};
-use crate::mls::Constants;
-use crate::quantile::{Side, chi_square, f};
+use crate::generalized::percentile;
+use crate::limits::{MANY_CROSSED, RatioBounds, figure};
 use crate::record::{Component, Figures, Ndc, Spread};
-use crate::tolerance::Share;
+use crate::tolerance::{FromMean, Share};
 
-const ALL_EQUAL: &str = "all readings are equal";
-const ONE_LEVEL: &str = "the design has no factor beside the part with two or more levels, so reproducibility cannot be seen";
-const NOT_APART: &str = "with one trial a part's spread and the gauge's cannot be told apart";
-const NO_REPEATS: &str = "the mean square within cells is zero, so the data set no limits";
-const GAUGE_ZERO: &str = "the gauge variance is zero";
-const REST_ZERO: &str =
-    "the rest of the variance has no estimate above zero, so the data set no limits";
+pub(crate) const ALL_EQUAL: &str = "all readings are equal";
+pub(crate) const ONE_LEVEL: &str = "the design has no factor beside the part with two or more levels, so reproducibility cannot be seen";
+pub(crate) const NOT_APART: &str =
+    "with one trial a part's spread and the gauge's cannot be told apart";
+pub(crate) const GAUGE_ZERO: &str = "the gauge variance is zero";
 /// The handbooks' factor; √2 is 0.3 % larger.
 const NDC_FACTOR: f64 = 1.41;
 
@@ -33,14 +32,7 @@ pub(crate) struct Evidence<'a> {
     pub(crate) share: &'a Share,
     pub(crate) confidence: f64,
     pub(crate) all_equal: bool,
-}
-
-/// Limits of a ratio of two variances, two-sided and one-sided.
-#[derive(Debug, Clone, Copy)]
-struct RatioBounds {
-    two_sided: (f64, f64),
-    one_sided: (f64, f64),
-    interval: Interval,
+    pub(crate) grand_mean: f64,
 }
 
 /// Which side of a ratio a variance stands on in its share of the total.
@@ -105,7 +97,7 @@ impl Evidence<'_> {
             return Figure::absent(GAUGE_ZERO);
         }
         let bounds = self.part_over_gauge();
-        with_limits(
+        figure(
             part / gauge,
             bounds.map(|r| Bounds {
                 lower: r.two_sided.0,
@@ -116,20 +108,8 @@ impl Evidence<'_> {
         )
     }
 
-    pub(crate) fn ndc(&self, part_to_gauge: &Figure) -> Ndc {
-        let categories = |ratio: Option<f64>| ratio.map(|r| (2.0 * r).sqrt());
-        Ndc {
-            whole: part_to_gauge
-                .estimate
-                .map(|r| (NDC_FACTOR * r.sqrt()).floor() as u64),
-            estimate: categories(part_to_gauge.estimate),
-            lower: categories(part_to_gauge.lower),
-            upper: categories(part_to_gauge.upper),
-        }
-    }
-
     /// The one-sided lower limit of the gauge share at the confidence that judges.
-    pub(crate) fn judged_lower(&self) -> Option<f64> {
+    pub(crate) fn judged_lower(&self, confidence: f64) -> Option<f64> {
         let constants = self.basis.judging.as_ref()?;
         let gauge = self.basis.quantities.gauge.as_ref()?;
         let per_sd = self
@@ -138,12 +118,38 @@ impl Evidence<'_> {
             .as_ref()
             .ok()
             .filter(|_| !self.all_equal)?;
+        if let Some(from) = &self.share.from_estimated_mean {
+            let mut draws = self.shares_of_distance(gauge, from).ok()?;
+            return Some(percentile(&mut draws, 1.0 - confidence)).filter(|x| x.is_finite());
+        }
         let variance = match gauge.members().collect::<Vec<_>>()[..] {
             [only] if self.ms[only] > 0.0 => constants.lower(&gauge.weights(), self.ms),
             [_] => return None,
             _ => constants.lower(&gauge.weights(), self.ms),
         };
         Some(variance.max(0.0).sqrt() * per_sd)
+    }
+
+    /// The chance that the gauge share lies above each of some limits.
+    pub(crate) fn chances_above<const N: usize>(&self, limits: [f64; N]) -> [Option<f64>; N] {
+        let (Ok(per_sd), Some(gauge)) = (&self.share.per_sd, &self.basis.quantities.gauge) else {
+            return [None; N];
+        };
+        if gauge.members().all(|q| self.ms[q] == 0.0) {
+            return [None; N];
+        }
+        let Some(from) = &self.share.from_estimated_mean else {
+            let weights = gauge.weights();
+            let above = |limit: f64| {
+                chance::above((limit / per_sd).powi(2), &weights, &self.basis.df, self.ms)
+            };
+            return limits.map(|limit| Some(above(limit)));
+        };
+        let Ok(draws) = self.shares_of_distance(gauge, from) else {
+            return [None; N];
+        };
+        let above = |limit: f64| draws.iter().filter(|&&share| share > limit).count();
+        limits.map(|limit| Some(above(limit) as f64 / draws.len() as f64))
     }
 
     fn spread(
@@ -162,7 +168,10 @@ impl Evidence<'_> {
             _ if variance.estimate.is_none() => Figure::absent(absent),
             Err(why) => Figure::absent(why.clone()),
             Ok(_) if self.all_equal => Figure::absent(ALL_EQUAL),
-            Ok(per_sd) => sd.rising(|sd| sd * per_sd),
+            Ok(per_sd) => match (self.share.from_estimated_mean, combination) {
+                (Some(from), Some(sum)) => self.share_of_distance(&variance, sum, *per_sd, &from),
+                _ => sd.rising(|sd| sd * per_sd),
+            },
         };
         Spread {
             variance,
@@ -172,84 +181,79 @@ impl Evidence<'_> {
         }
     }
 
+    /// A share whose limits hold the uncertainty of the mean too.
+    fn share_of_distance(
+        &self,
+        variance: &Figure,
+        sum: &Combination,
+        per_sd: f64,
+        from: &FromMean,
+    ) -> Figure {
+        let estimate = variance.estimate.unwrap_or_default().sqrt() * per_sd;
+        match (&variance.why, variance.interval) {
+            (Some(why), None) => Figure::without_limits(estimate, why.clone()),
+            _ => figure(
+                estimate,
+                self.shares_of_distance(sum, from)
+                    .map(|mut draws| self.percentiles(&mut draws)),
+            ),
+        }
+    }
+
+    /// Draws of the share of a distance from an estimated mean.
+    pub(crate) fn shares_of_distance(
+        &self,
+        sum: &Combination,
+        from: &FromMean,
+    ) -> Result<Vec<f64>, &'static str> {
+        let model = &self.basis.model;
+        if model.crossed() > 2 {
+            return Err(MANY_CROSSED);
+        }
+        let draws = self.draws();
+        let mut shares = draws.variance(sum, self.ms);
+        let means = draws.mean(self.grand_mean, &model.variance_of_mean(), self.ms);
+        for (share, mean) in shares.iter_mut().zip(means) {
+            *share = from.share(share.sqrt(), mean);
+        }
+        Ok(shares)
+    }
+
     fn variance(&self, combination: &Combination, estimate: f64) -> Figure {
-        let error = self.ms.len() - 1;
-        let alone = combination.members().eq([error]) && combination.weights()[error] == 1.0;
-        if alone && self.ms[error] == 0.0 && !self.all_equal {
-            return Figure::without_limits(estimate, NO_REPEATS);
-        }
-        let bounds = if alone {
-            self.exact(error)
-        } else {
-            self.modified_large_sample(&combination.weights())
-        };
-        Figure::new(estimate, bounds.rising(|x| x.max(0.0)))
+        let bounds = self.limits_of_sum(combination, self.usual(combination));
+        figure(estimate, bounds.map(|b| b.rising(|x| x.max(0.0))))
     }
 
-    /// A single mean square with its chi-square limits.
-    fn exact(&self, line: usize) -> Bounds {
-        let n = self.basis.df[line];
-        let alpha = 1.0 - self.confidence;
-        let limit = |side, a| n * self.ms[line] / chi_square(side, a, n);
-        Bounds {
-            lower: limit(Side::Above, alpha / 2.0),
-            upper: limit(Side::Below, alpha / 2.0),
-            at_least: limit(Side::Above, alpha),
-            interval: Interval::Exact,
-        }
-    }
-
-    fn modified_large_sample(&self, weights: &[f64]) -> Bounds {
-        Bounds {
-            lower: self.basis.two_sided.lower(weights, self.ms),
-            upper: self.basis.two_sided.upper(weights, self.ms),
-            at_least: self.basis.one_sided.lower(weights, self.ms),
-            interval: Interval::Mls,
-        }
-    }
-
-    fn part_over_gauge(&self) -> Option<RatioBounds> {
+    fn part_over_gauge(&self) -> Result<RatioBounds, &'static str> {
         let q = &self.basis.quantities;
-        self.ratio(q.part.as_ref()?, q.gauge.as_ref()?)
+        let part = q.part.as_ref().ok_or(NOT_APART)?;
+        self.ratio(part, q.gauge.as_ref().ok_or(NOT_APART)?)
     }
 
-    /// Limits of the ratio of two variances; `None` when the denominator's estimate is not above zero.
-    fn ratio(&self, numerator: &Combination, denominator: &Combination) -> Option<RatioBounds> {
-        if let [term, _] = self.basis.model.lines() {
-            return self.ratio_to_error(self.basis.model.readings() / term.cells);
-        }
-        let (n, d) = (numerator.weights(), denominator.weights());
-        let limits = |constants: &Constants| constants.ratio(&n, &d, self.ms);
-        Some(RatioBounds {
-            two_sided: limits(&self.basis.two_sided)?,
-            one_sided: limits(&self.basis.one_sided)?,
-            interval: Interval::MlsRoot,
-        })
-    }
-
-    /// The exact limits of `variance of the only term / variance of the error`.
-    fn ratio_to_error(&self, readings_per_level: usize) -> Option<RatioBounds> {
-        if self.ms[1] <= 0.0 {
-            return None;
-        }
-        let (n, m) = (self.basis.df[0], self.basis.df[1]);
-        let observed = self.ms[0] / self.ms[1];
-        let limit =
-            |side, a| ((observed / f(side, a, n, m) - 1.0) / readings_per_level as f64).max(0.0);
-        let limits = |a| (limit(Side::Above, a), limit(Side::Below, a));
-        let alpha = 1.0 - self.confidence;
-        Some(RatioBounds {
-            two_sided: limits(alpha / 2.0),
-            one_sided: limits(alpha),
-            interval: Interval::Exact,
-        })
+    /// Limits of the ratio of two variances.
+    fn ratio(
+        &self,
+        numerator: &Combination,
+        denominator: &Combination,
+    ) -> Result<RatioBounds, &'static str> {
+        let by = match self.basis.model.lines() {
+            [_, _] => Interval::Exact,
+            _ => Interval::MlsRoot,
+        };
+        self.limits_of_ratio(numerator, denominator, by)
     }
 }
 
-fn with_limits(estimate: f64, bounds: Option<Bounds>) -> Figure {
-    match bounds {
-        Some(bounds) => Figure::new(estimate, bounds),
-        None => Figure::without_limits(estimate, REST_ZERO),
+/// Categories from the ratio of part to gauge variance.
+pub(crate) fn ndc(part_to_gauge: &Figure) -> Ndc {
+    let categories = |ratio: Option<f64>| ratio.map(|r| (2.0 * r).sqrt());
+    Ndc {
+        whole: part_to_gauge
+            .estimate
+            .map(|r| (NDC_FACTOR * r.sqrt()).floor() as u64),
+        estimate: categories(part_to_gauge.estimate),
+        lower: categories(part_to_gauge.lower),
+        upper: categories(part_to_gauge.upper),
     }
 }
 
@@ -262,7 +266,7 @@ impl ShareOfTv<'_> {
     fn repeatability(&self) -> Figure {
         let q = &self.evidence.basis.quantities;
         let ratio = || {
-            let repeatability = q.repeatability.as_ref()?;
+            let repeatability = q.repeatability.as_ref().ok_or(NOT_APART)?;
             self.evidence
                 .ratio(&q.total.minus(repeatability), repeatability)
         };
@@ -277,7 +281,7 @@ impl ShareOfTv<'_> {
     fn reproducibility(&self) -> Figure {
         let q = &self.evidence.basis.quantities;
         let ratio = || {
-            let reproducibility = q.reproducibility.as_ref()?;
+            let reproducibility = q.reproducibility.as_ref().ok_or(ONE_LEVEL)?;
             self.evidence
                 .ratio(reproducibility, &q.total.minus(reproducibility))
         };
@@ -327,7 +331,7 @@ impl ShareOfTv<'_> {
         variance: Option<f64>,
         absent: &'static str,
         place: As,
-        ratio: impl Fn() -> Option<RatioBounds>,
+        ratio: impl Fn() -> Result<RatioBounds, &'static str>,
     ) -> Figure {
         if self.evidence.all_equal {
             return Figure::absent(ALL_EQUAL);
@@ -353,7 +357,7 @@ impl ShareOfTv<'_> {
                 },
             }
         });
-        with_limits(estimate, bounds)
+        figure(estimate, bounds)
     }
 }
 

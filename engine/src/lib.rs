@@ -12,16 +12,26 @@
 mod basis;
 mod chance;
 mod combination;
+pub mod consistency;
 mod design;
 mod estimates;
 mod fault;
 mod figure;
 mod figures;
+mod generalized;
+pub mod ladder;
+mod limits;
 mod mls;
 mod model;
+pub mod over_time;
+pub mod planning;
 pub mod quantile;
+mod random;
 mod record;
-mod remark;
+mod recorded;
+mod remarks;
+mod reml;
+pub mod risk;
 mod root;
 mod settings;
 mod standing;
@@ -36,11 +46,16 @@ pub use combination::Combination;
 pub use design::{CELLS_MAX, Design, DesignError, FACTORS_MAX, Factor, PART};
 pub use fault::StudyError;
 pub use figure::{Figure, Interval, Open};
+pub use generalized::{DRAWS, SEED, Simulation};
+pub use limits::Quantity;
 pub use model::{Line, Model, WITHIN_CELLS};
 pub use record::{
-    Against, ChanceAbove, Component, Figures, InteractionChoice, Layout, MeanSquare, Ndc,
-    OtherReading, Remark, Reml, Risk, Spread, Study,
+    Against, ChanceAbove, Component, ConsumerRisk, Figures, InteractionChoice, Layout, MeanSquare,
+    Ndc, OtherReading, ProducerRisk, Remark, Risk, RiskProcess, Spread, Study,
 };
+pub use recorded::{Recorded, RecordedError};
+pub use remarks::{Context, FALSE_ALARMS, Names, REMARKS_MAX, remarks};
+pub use reml::{GaugeBootstrap, Reml, reml};
 pub use settings::{Interaction, Judge, Limits, OneSided, Process, Settings, Tolerance};
 pub use standing::{Standing, standing};
 pub use study::{Prepared, TRIALS_MAX, analyse};

@@ -52,6 +52,7 @@ pub struct Model {
     /// `weights[t][q]`: how often mean square `q` enters the inversion for line `t`.
     weights: Vec<Vec<i64>>,
     part: Option<usize>,
+    crossed: usize,
 }
 
 impl Model {
@@ -121,6 +122,7 @@ impl Model {
             weights: inversion(&lines),
             lines,
             part,
+            crossed: design.crossed(),
         }
     }
 
@@ -180,6 +182,17 @@ impl Model {
             .iter()
             .rfind(|line| line.df > 0 && line.set.is_some())?;
         (full.error().df == 0).then(|| largest.name.clone())
+    }
+
+    /// The variance of the grand mean.
+    pub(crate) fn variance_of_mean(&self) -> Combination {
+        let added = (0..self.lines.len()).map(|q| self.weights.iter().map(|w| w[q]).sum());
+        Combination::new(added.collect(), self.readings)
+    }
+
+    /// Factors of two or more levels that are crossed with one another and hold no other factor.
+    pub(crate) fn crossed(&self) -> usize {
+        self.crossed
     }
 
     pub(crate) fn readings(&self) -> usize {

@@ -11,6 +11,8 @@ use serde::Serialize;
 
 use crate::design::Factor;
 use crate::figure::Figure;
+use crate::reml::Reml;
+use crate::risk::Guarded;
 
 /// One study. Variances are in squared reading units, sds in reading units, shares are fractions.
 #[derive(Debug, Clone, PartialEq, Serialize)]
@@ -20,7 +22,7 @@ pub struct Study {
     pub tolerance_rule: &'static str,
     /// The design that the readings fill.
     pub design: Layout,
-    /// `anova`.
+    /// `anova`, or `reml` where cells hold unequal numbers of readings.
     pub method: &'static str,
     /// Two-sided confidence of all limits.
     pub confidence: f64,
@@ -28,7 +30,8 @@ pub struct Study {
     pub spread_sds: f64,
     /// What was done with the interaction of part and other factors.
     pub interaction: InteractionChoice,
-    /// One entry a term, then `within cells` and `total`.
+    /// One entry a term, then `within cells` and `total`; none with `reml`, for there sums of squares depend on the order
+    /// of the terms.
     pub mean_squares: Vec<MeanSquare>,
     /// Estimates by restricted maximum likelihood; a balanced study has none.
     pub reml: Option<Reml>,
@@ -50,7 +53,7 @@ pub struct Study {
     pub draws: Option<u32>,
     /// Seed of the draws.
     pub seed: Option<u64>,
-    /// Mean of all readings, in reading units.
+    /// Mean of all readings, in reading units; with `reml` by generalised least squares.
     #[serde(skip)]
     pub grand_mean: f64,
     /// The figure that is held against the limits; absent when the share is.
@@ -63,13 +66,13 @@ pub struct Study {
 pub struct Layout {
     /// The factors in the order of the design.
     pub factors: Vec<Factor>,
-    /// Readings in each cell.
+    /// Readings in each cell; where they differ, in the fullest.
     pub trials: usize,
     /// Number of cells.
     pub cells: usize,
     /// Number of readings.
     pub readings: usize,
-    /// Readings that the design wants and the study lacks.
+    /// Readings that the study lacks for every cell to be as full as the fullest.
     pub missing: usize,
     /// Whether all cells hold the same number of readings.
     pub balanced: bool,
@@ -80,7 +83,8 @@ pub struct Layout {
 pub struct InteractionChoice {
     /// Whether an interaction term stands in the table of mean squares.
     pub kept: bool,
-    /// p of the largest interaction term against its denominator, before any pooling.
+    /// p of the largest interaction term against its denominator, before any pooling; with `reml` of the likelihood
+    /// ratio.
     pub p: Option<f64>,
     /// The p above which the plan pools; absent when it always keeps.
     pub pool_above: Option<f64>,
@@ -209,10 +213,53 @@ pub struct Remark {
     pub figures: BTreeMap<String, f64>,
 }
 
-/// Restricted maximum likelihood: no value exists while unequal trials are refused.
+/// How often parts of a process are judged wrongly by this gauge; every number is a probability.
 #[derive(Debug, Clone, PartialEq, Serialize)]
-pub enum Reml {}
+pub struct Risk {
+    /// The process that the parts come from.
+    pub process: RiskProcess,
+    /// A part is bad: its true value lies outside the limits.
+    pub bad: Figure,
+    /// A part is accepted: its reading lies within the limits.
+    pub accepted: Figure,
+    /// Good parts rejected.
+    pub producer: ProducerRisk,
+    /// Bad parts accepted.
+    pub consumer: ConsumerRisk,
+    /// Acceptance limits that keep the joint consumer's risk at 100, 10 and 1 in a million; those that need no guard
+    /// band are left out.
+    pub guarded: Vec<Guarded>,
+}
 
-/// Misclassification: no value exists while no risk is worked out.
+/// The process behind the risks.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+pub struct RiskProcess {
+    /// `stated`, or `study parts`: the parts that somebody chose for the study.
+    pub from: &'static str,
+    /// Mean of the true values, in reading units.
+    pub mean: Option<f64>,
+    /// Their sd, in reading units.
+    pub sd: Option<f64>,
+}
+
+/// Producer's risk.
 #[derive(Debug, Clone, PartialEq, Serialize)]
-pub enum Risk {}
+pub struct ProducerRisk {
+    /// A part is good and rejected.
+    pub joint: Figure,
+    /// A good part is rejected.
+    pub given_good: Figure,
+    /// A rejected part is good.
+    pub given_rejected: Figure,
+}
+
+/// Consumer's risk.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct ConsumerRisk {
+    /// A part is bad and accepted.
+    pub joint: Figure,
+    /// A bad part is accepted.
+    pub given_bad: Figure,
+    /// An accepted part is bad.
+    pub given_accepted: Figure,
+}

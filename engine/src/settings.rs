@@ -1,5 +1,7 @@
 //! What the plan decides: nothing here has a default, because each choice changes results.
 
+use crate::fault::StudyError;
+
 /// Interaction (every term that joins the part with other factors): kept, or pooled.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub enum Interaction {
@@ -84,4 +86,44 @@ pub struct Settings {
     pub limits: Option<Limits>,
     /// The figure that is judged.
     pub judge: Judge,
+}
+
+impl Settings {
+    /// Refuses what no study can be worked out with.
+    pub(crate) fn check(&self) -> Result<(), StudyError> {
+        let fault = |setting, value, expected| {
+            Err(StudyError::Setting {
+                setting,
+                value,
+                expected,
+            })
+        };
+        if !(self.confidence >= 0.5 && self.confidence < 1.0) {
+            return fault(
+                "the confidence",
+                self.confidence,
+                "at least 0.5 and below 1",
+            );
+        }
+        if !(self.spread_sds > 0.0 && self.spread_sds.is_finite()) {
+            return fault(
+                "the multiple of the gauge sd",
+                self.spread_sds,
+                "a number above 0, such as 6",
+            );
+        }
+        if let Judge::Chance(p) = self.judge
+            && !(p > 0.0 && p < 1.0)
+        {
+            return fault("the confidence that judges", p, "between 0 and 1");
+        }
+        match self.interaction {
+            Interaction::PoolAbove(p) if !(0.0..=1.0).contains(&p) => fault(
+                "the p above which the interaction is pooled",
+                p,
+                "from 0 to 1",
+            ),
+            _ => Ok(()),
+        }
+    }
 }

@@ -3,18 +3,21 @@
 use std::sync::OnceLock;
 
 use crate::basis::Basis;
-use crate::chance;
 use crate::combination::Combination;
 use crate::design::Design;
 use crate::estimates::Estimates;
 use crate::fault::StudyError;
-use crate::figure::Figure;
-use crate::figures::Evidence;
+use crate::figure::{Figure, Interval};
+use crate::figures::{Evidence, ndc};
+use crate::generalized::Simulation;
+use crate::limits::Quantity;
 use crate::model::Model;
 use crate::record::{
     ChanceAbove, Component, Figures, InteractionChoice, Layout, OtherReading, Remark, Study,
 };
-use crate::remark;
+use crate::remarks::outside;
+use crate::reml;
+use crate::risk::of_study;
 use crate::settings::{Interaction, Judge, Settings, Tolerance};
 use crate::sums::{Sums, Sweep};
 use crate::table::Table;
@@ -39,7 +42,11 @@ pub fn analyse(
     settings: &Settings,
 ) -> Result<Study, StudyError> {
     let counts = counts(design, cells, values)?;
-    Prepared::new(design, usual(&counts), settings)?.study(cells, values, tolerance)
+    let trials = counts[0];
+    if trials > 0 && counts.iter().all(|&count| count == trials) {
+        return Prepared::new(design, trials, settings)?.study(cells, values, tolerance);
+    }
+    reml::study(design, counts, cells, values, tolerance, settings)
 }
 
 /// A design with everything that does not depend on the readings, shared by all its characteristics.
@@ -48,6 +55,7 @@ pub struct Prepared {
     design: Design,
     trials: usize,
     settings: Settings,
+    simulation: Simulation,
     sweep: Sweep,
     kept: Basis,
     /// The term that the error holds for want of a second trial.
@@ -72,17 +80,7 @@ impl Prepared {
         trials: usize,
         settings: &Settings,
     ) -> Result<Prepared, StudyError> {
-        check(settings)?;
-        let parts = design.factors()[design.part()].levels;
-        if parts < 2 {
-            return Err(StudyError::TooFewParts(parts));
-        }
-        if trials == 0 {
-            return Err(StudyError::Empty);
-        }
-        if trials > TRIALS_MAX {
-            return Err(StudyError::TooManyTrials(trials));
-        }
+        check(design, trials, settings)?;
         let kept = Basis::new(Model::estimable(design, trials), settings);
         let interactions = kept.model.interactions();
         let pooled = (!interactions.is_empty()).then(|| kept.model.without(design, &interactions));
@@ -90,6 +88,7 @@ impl Prepared {
             design: design.clone(),
             trials,
             settings: *settings,
+            simulation: Simulation::default(),
             sweep: Sweep::new(design, trials),
             taken_in: kept.model.taken_in_by_error(design),
             kept,
@@ -113,17 +112,53 @@ impl Prepared {
         let readings = self.by_cell(cells, values)?;
         let sums = self.sweep.sums(&readings);
         let share = Share::of(tolerance, &self.settings, sums.grand_mean);
-        match self.partly_pooled(&sums) {
-            None => Ok(self.record(&self.kept, &sums, &share)),
-            Some(model) => match &self.pooled {
-                Some(pooled) if pooled.model == model => {
-                    let basis = pooled
-                        .basis
-                        .get_or_init(|| Basis::new(model, &self.settings));
-                    Ok(self.record(basis, &sums, &share))
-                }
-                _ => Ok(self.record(&Basis::new(model, &self.settings), &sums, &share)),
-            },
+        Ok(self.with_basis(&sums, |basis| self.record(basis, &sums, &share)))
+    }
+
+    /// One figure of a characteristic with limits by a stated method instead of the one it is reported with; `None`
+    /// where the design does not show the figure.
+    ///
+    /// # Errors
+    /// [`StudyError`] when the readings do not fill the design with the prepared number of trials.
+    pub fn figure(
+        &self,
+        cells: &[usize],
+        values: &[f64],
+        quantity: Quantity,
+        by: Interval,
+    ) -> Result<Option<Figure>, StudyError> {
+        let readings = self.by_cell(cells, values)?;
+        let sums = self.sweep.sums(&readings);
+        let share = Share::of(&Tolerance::default(), &self.settings, sums.grand_mean);
+        Ok(self.with_basis(&sums, |basis| {
+            self.with_evidence(basis, &sums, &share, |evidence, _| {
+                evidence.figure_by(quantity, by)
+            })
+        }))
+    }
+
+    /// The same with other draws than the usual ones, at least one.
+    pub fn simulated(mut self, simulation: Simulation) -> Prepared {
+        let simulation = Simulation {
+            draws: simulation.draws.max(1),
+            ..simulation
+        };
+        self.simulation = simulation;
+        self.kept = self.kept.simulated(simulation);
+        if let Some(pooled) = &mut self.pooled {
+            pooled.basis = OnceLock::new();
+        }
+        self
+    }
+
+    fn with_basis<T>(&self, sums: &Sums, f: impl FnOnce(&Basis) -> T) -> T {
+        let basis = |model| Basis::new(model, &self.settings).simulated(self.simulation);
+        match (self.partly_pooled(sums), &self.pooled) {
+            (None, _) => f(&self.kept),
+            (Some(model), Some(pooled)) if pooled.model == model => {
+                f(pooled.basis.get_or_init(|| basis(model)))
+            }
+            (Some(model), _) => f(&basis(model)),
         }
     }
 
@@ -146,10 +181,15 @@ impl Prepared {
         }
     }
 
-    fn record(&self, basis: &Basis, sums: &Sums, share: &Share) -> Study {
+    fn with_evidence<T>(
+        &self,
+        basis: &Basis,
+        sums: &Sums,
+        share: &Share,
+        f: impl FnOnce(&Evidence<'_>, &Table<'_>) -> T,
+    ) -> T {
         let model = &basis.model;
         let table = Table::new(model, sums);
-        let total = sums.total();
         let components: Vec<Combination> = (0..model.lines().len())
             .map(|i| model.component(i))
             .collect();
@@ -160,31 +200,54 @@ impl Prepared {
             estimates: &estimates,
             share,
             confidence: self.settings.confidence,
-            all_equal: total == 0.0,
+            all_equal: sums.total() == 0.0,
+            grand_mean: sums.grand_mean,
         };
+        f(&evidence, &table)
+    }
+
+    fn record(&self, basis: &Basis, sums: &Sums, share: &Share) -> Study {
+        self.with_evidence(basis, sums, share, |evidence, table| {
+            self.study_of(evidence, table, sums, share)
+        })
+    }
+
+    fn study_of(
+        &self,
+        evidence: &Evidence<'_>,
+        table: &Table<'_>,
+        sums: &Sums,
+        share: &Share,
+    ) -> Study {
         let components = evidence.components();
         let figures = evidence.figures();
         let part_to_gauge = evidence.part_to_gauge();
         let judged = &figures.gauge.share_of_tolerance;
+        let process = self.settings.process;
+        let risk = process.map(|process| of_study(evidence, process, sums.grand_mean));
+        let drawn = [judged]
+            .into_iter()
+            .chain(risk.as_ref().map(|risk| &risk.producer.joint))
+            .any(|figure| figure.interval == Some(Interval::Generalized));
         Study {
             tolerance_rule: share.rule,
             design: self.layout(),
             method: "anova",
             confidence: self.settings.confidence,
             spread_sds: self.settings.spread_sds,
-            interaction: self.interaction(model, sums, share),
-            mean_squares: table.lines(total),
+            interaction: self.interaction(&evidence.basis.model, sums, share),
+            mean_squares: table.lines(sums.total()),
             reml: None,
-            ndc: evidence.ndc(&part_to_gauge),
-            risk: None,
-            chance_above: self.chance_above(basis, &table.ms, share, judged.estimate.is_some()),
+            ndc: ndc(&part_to_gauge),
+            risk,
+            chance_above: self.chance_above(evidence, judged.estimate.is_some()),
             remarks: self.remarks(&components, &figures, &part_to_gauge),
-            draws: None,
-            seed: None,
+            draws: drawn.then_some(self.simulation.draws),
+            seed: drawn.then_some(self.simulation.seed),
             grand_mean: sums.grand_mean,
             judged_share: match self.settings.judge {
                 Judge::Estimate => judged.estimate,
-                Judge::Chance(_) => judged.estimate.and_then(|_| evidence.judged_lower()),
+                Judge::Chance(p) => judged.estimate.and_then(|_| evidence.judged_lower(p)),
                 Judge::Upper => judged.upper,
             },
             components,
@@ -199,10 +262,10 @@ impl Prepared {
         figures: &Figures,
         part_to_gauge: &Figure,
     ) -> Vec<Remark> {
-        let one_trial = self.taken_in.as_deref().map(remark::one_trial);
+        let one_trial = self.taken_in.as_deref().map(outside::one_trial);
         one_trial
             .into_iter()
-            .chain(remark::outside_limits(components, figures, part_to_gauge))
+            .chain(outside::outside_limits(components, figures, part_to_gauge))
             .collect()
     }
 
@@ -240,22 +303,12 @@ impl Prepared {
         }
     }
 
-    fn chance_above(&self, basis: &Basis, ms: &[f64], share: &Share, judged: bool) -> ChanceAbove {
-        let (Some(limits), Ok(per_sd), Some(gauge)) =
-            (self.settings.limits, &share.per_sd, &basis.quantities.gauge)
-        else {
+    fn chance_above(&self, evidence: &Evidence<'_>, judged: bool) -> ChanceAbove {
+        let Some(limits) = self.settings.limits.filter(|_| judged) else {
             return ChanceAbove::default();
         };
-        let weights = gauge.weights();
-        let vanishes = gauge.members().all(|q| ms[q] == 0.0);
-        let above = |limit: f64| {
-            let variance = (limit / per_sd).powi(2);
-            (judged && !vanishes).then(|| chance::above(variance, &weights, &basis.df, ms))
-        };
-        ChanceAbove {
-            watch: above(limits.watch),
-            act: above(limits.act),
-        }
+        let [watch, act] = evidence.chances_above([limits.watch, limits.act]);
+        ChanceAbove { watch, act }
     }
 
     /// The readings cell by cell, ascending within each.
@@ -282,13 +335,7 @@ impl Prepared {
         readings
             .chunks_exact_mut(self.trials)
             .for_each(|cell| cell.sort_by(f64::total_cmp));
-        let spread = readings
-            .iter()
-            .map(|y| (y - readings[0]).abs())
-            .fold(0.0, f64::max);
-        if spread != 0.0 && !SPREAD.contains(&spread) {
-            return Err(StudyError::Spread(spread));
-        }
+        check_spread(&readings, readings[0])?;
         Ok(readings)
     }
 }
@@ -308,7 +355,11 @@ fn other_reading(model: &Model, sums: &Sums, share: &Share) -> OtherReading {
     }
 }
 
-fn counts(design: &Design, cells: &[usize], values: &[f64]) -> Result<Vec<usize>, StudyError> {
+pub(crate) fn counts(
+    design: &Design,
+    cells: &[usize],
+    values: &[f64],
+) -> Result<Vec<usize>, StudyError> {
     if cells.len() != values.len() {
         return Err(StudyError::Lengths {
             cells: cells.len(),
@@ -335,49 +386,27 @@ fn counts(design: &Design, cells: &[usize], values: &[f64]) -> Result<Vec<usize>
     Ok(counts)
 }
 
-/// The count that most cells have; of equally frequent ones the largest.
-fn usual(counts: &[usize]) -> usize {
-    let largest = counts.iter().copied().max().unwrap_or(0);
-    let mut cells_with = vec![0; largest + 1];
-    counts.iter().for_each(|&count| cells_with[count] += 1);
-    (1..=largest)
-        .max_by_key(|&count| cells_with[count])
-        .unwrap_or(0)
+/// What is asked of any study, whatever its readings.
+pub(crate) fn check(design: &Design, trials: usize, settings: &Settings) -> Result<(), StudyError> {
+    settings.check()?;
+    let parts = design.factors()[design.part()].levels;
+    if parts < 2 {
+        return Err(StudyError::TooFewParts(parts));
+    }
+    if trials == 0 {
+        return Err(StudyError::Empty);
+    }
+    if trials > TRIALS_MAX {
+        return Err(StudyError::TooManyTrials(trials));
+    }
+    Ok(())
 }
 
-fn check(settings: &Settings) -> Result<(), StudyError> {
-    let fault = |setting, value, expected| {
-        Err(StudyError::Setting {
-            setting,
-            value,
-            expected,
-        })
-    };
-    if !(settings.confidence >= 0.5 && settings.confidence < 1.0) {
-        return fault(
-            "the confidence",
-            settings.confidence,
-            "at least 0.5 and below 1",
-        );
+/// Checks that squares can hold the differences between the readings and one of them.
+pub(crate) fn check_spread(values: &[f64], one: f64) -> Result<(), StudyError> {
+    let spread = values.iter().map(|y| (y - one).abs()).fold(0.0, f64::max);
+    if spread != 0.0 && !SPREAD.contains(&spread) {
+        return Err(StudyError::Spread(spread));
     }
-    if !(settings.spread_sds > 0.0 && settings.spread_sds.is_finite()) {
-        return fault(
-            "the multiple of the gauge sd",
-            settings.spread_sds,
-            "a number above 0, such as 6",
-        );
-    }
-    if let Judge::Chance(p) = settings.judge
-        && !(p > 0.0 && p < 1.0)
-    {
-        return fault("the confidence that judges", p, "between 0 and 1");
-    }
-    match settings.interaction {
-        Interaction::PoolAbove(p) if !(0.0..=1.0).contains(&p) => fault(
-            "the p above which the interaction is pooled",
-            p,
-            "from 0 to 1",
-        ),
-        _ => Ok(()),
-    }
+    Ok(())
 }

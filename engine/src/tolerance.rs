@@ -9,24 +9,70 @@ use crate::settings::{OneSided, Process, Settings, Tolerance};
 pub(crate) struct Share {
     pub(crate) rule: &'static str,
     pub(crate) per_sd: Result<f64, Cow<'static, str>>,
+    /// Set when the room is a distance from a mean that the study itself estimates.
+    pub(crate) from_estimated_mean: Option<FromMean>,
+    pub(crate) lower: Option<f64>,
+    pub(crate) upper: Option<f64>,
+}
+
+/// The distance from a mean to a limit; what is held against it is half of a spread.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(crate) struct FromMean {
+    limit: f64,
+    /// 1 from a lower limit up, -1 from an upper limit down.
+    inward: f64,
+    sds: f64,
+}
+
+impl FromMean {
+    /// The share of an sd when the mean lies at `mean`; without end when that is not inside the limit.
+    pub(crate) fn share(&self, sd: f64, mean: f64) -> f64 {
+        let distance = (mean - self.limit) * self.inward;
+        if distance > 0.0 {
+            self.sds * sd / distance
+        } else {
+            f64::INFINITY
+        }
+    }
 }
 
 /// The stretch of reading units that a spread is held against.
 enum Room {
     /// All of the spread over a width.
     Width(f64),
-    /// Half of the spread over the distance from a mean to the limit.
+    /// Half of the spread over the distance from a known mean to the limit.
     Distance(f64),
+    /// The same from a mean that the study estimates.
+    Estimated {
+        distance: f64,
+        limit: f64,
+        inward: f64,
+    },
 }
 
 impl Share {
     pub(crate) fn of(tolerance: &Tolerance, settings: &Settings, grand_mean: f64) -> Share {
         let (rule, room) = room(tolerance, settings.process, grand_mean);
+        let half = settings.spread_sds / 2.0;
+        let from_estimated_mean = match room {
+            Ok(Room::Estimated { limit, inward, .. }) => Some(FromMean {
+                limit,
+                inward,
+                sds: half,
+            }),
+            _ => None,
+        };
         let per_sd = room.and_then(|room| match room {
             Room::Width(width) => over(settings.spread_sds, width),
-            Room::Distance(distance) => over(settings.spread_sds / 2.0, distance),
+            Room::Distance(distance) | Room::Estimated { distance, .. } => over(half, distance),
         });
-        Share { rule, per_sd }
+        Share {
+            rule,
+            per_sd,
+            from_estimated_mean,
+            lower: tolerance.lower,
+            upper: tolerance.upper,
+        }
     }
 }
 
@@ -55,12 +101,19 @@ fn room(
     let distance = |mean: f64, of: &str| {
         let distance = (mean - limit) * inward;
         if distance > 0.0 {
-            Ok(Room::Distance(distance))
+            Ok(distance)
         } else {
             Err(Cow::Owned(format!(
                 "the {of}, {mean}, does not lie inside the limit {limit}"
             )))
         }
+    };
+    let estimated = |of: &str| {
+        distance(grand_mean, of).map(|distance| Room::Estimated {
+            distance,
+            limit,
+            inward,
+        })
     };
     match tolerance.one_sided {
         None => (
@@ -69,12 +122,14 @@ fn room(
         ),
         Some(OneSided::FromZero) => ("from zero", Ok(Room::Width(limit.abs()))),
         Some(OneSided::Width(width)) => ("width", Ok(Room::Width(width))),
-        Some(OneSided::ToStudyMean) => ("to study mean", distance(grand_mean, "mean of the study")),
+        Some(OneSided::ToStudyMean) => ("to study mean", estimated("mean of the study")),
         Some(OneSided::ToProcessMean) => {
             let room = match process {
                 None => Err("the rule `to process mean` needs a stated process".into()),
-                Some(Process::Stated { mean, .. }) => distance(mean, "process mean"),
-                Some(Process::StudyParts) => distance(grand_mean, "mean of the study parts"),
+                Some(Process::Stated { mean, .. }) => {
+                    distance(mean, "process mean").map(Room::Distance)
+                }
+                Some(Process::StudyParts) => estimated("mean of the study parts"),
             };
             ("to process mean", room)
         }

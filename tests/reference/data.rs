@@ -3,7 +3,8 @@
 use std::collections::HashMap;
 
 use restudy_engine::{
-    Design, Factor, Interaction, Judge, OneSided, Settings, Study, Tolerance, analyse,
+    Design, Factor, Interaction, Judge, OneSided, Prepared, Settings, Simulation, Study, Tolerance,
+    analyse,
 };
 use serde_json::Value;
 
@@ -111,6 +112,24 @@ impl Fixture {
             upper: limit("upper"),
             one_sided: Some(OneSided::ToStudyMean),
         }
+    }
+
+    /// The study with a stated number of draws behind its simulated limits.
+    pub(crate) fn drawn(
+        &self,
+        factors: &[(&str, &[&str])],
+        settings: &Settings,
+        draws: u32,
+    ) -> Study {
+        let placed = self.placed(factors);
+        let trials = placed.values.len() / placed.design.cells();
+        let simulation = Simulation { draws, seed: 7 };
+        let prepared = Prepared::new(&placed.design, trials, settings)
+            .unwrap()
+            .simulated(simulation);
+        prepared
+            .study(&placed.cells, &placed.values, &self.tolerance())
+            .unwrap()
     }
 
     pub(crate) fn study(&self, factors: &[(&str, &[&str])], settings: &Settings) -> Study {

@@ -6,10 +6,16 @@
 #![allow(clippy::unwrap_used, reason = "a test stops at its first surprise")]
 
 mod check;
+mod comparison;
+mod consistency;
 mod data;
 mod degenerate;
 mod design_rules;
+mod generalized;
+mod ladder;
 mod limits;
 mod offsets;
 mod point_values;
 mod quantiles;
+mod reml;
+mod risk;

@@ -6,13 +6,15 @@
 
 use std::panic::{AssertUnwindSafe, catch_unwind};
 
+use jiff::civil::DateTime;
 use restudy_config::{Characteristic, Plan};
 use restudy_engine::{
-    Design, Factor, Judge, Limits, Remark, Settings, Standing, Tolerance, standing,
+    Context, Design, Factor, Judge, Limits, Names, PART, Remark, Settings, Standing, Tolerance,
+    remarks, standing,
 };
 use restudy_parsers::fold;
 
-use crate::evidence::{Evidence, Feature};
+use crate::evidence::{self, Evidence, Feature};
 use crate::record::{Judgement, Record, SCHEMA};
 
 /// What became of one characteristic.
@@ -127,6 +129,9 @@ fn one(
         &settings,
     )
     .map_err(|e| e.to_string())?;
+    let context = context(evidence, feature);
+    let (cells, values) = (&feature.cells, &feature.values);
+    study.remarks = remarks(&design, cells, values, &study, &tolerance, &context);
     if let Some(differ) = feature
         .limits_differ
         .as_ref()
@@ -207,19 +212,39 @@ fn drawing(feature: &Feature, named: Option<&Characteristic>) -> Result<Drawing,
     })
 }
 
+/// The factors of the design: one that never varies is none.
+fn studied(evidence: &Evidence) -> impl Iterator<Item = &evidence::Factor> {
+    let factors = evidence.factors.iter();
+    factors.filter(|f| f.name == PART || f.levels.len() > 1)
+}
+
 fn design(evidence: &Evidence) -> Result<Design, String> {
-    let factors = evidence
-        .factors
-        .iter()
-        .filter(|f| f.name == "part" || f.levels.len() > 1);
-    let factors = factors
-        .map(|f| Factor {
-            name: f.name.clone(),
-            levels: f.levels.len(),
-            within: Vec::new(),
-        })
+    let factors = studied(evidence)
+        .map(|f| Factor::crossed(&f.name, f.levels.len()))
         .collect();
     Design::new(factors).map_err(|e| e.to_string())
+}
+
+/// What people call the places of the readings, and when each was taken.
+fn context<'a>(evidence: &'a Evidence, feature: &'a Feature) -> Context<'a> {
+    let runs = || feature.runs.iter().map(|&run| &evidence.runs[run]);
+    Context {
+        factors: studied(evidence)
+            .map(|f| Names {
+                word: &f.word,
+                levels: f.levels.iter().map(String::as_str).collect(),
+            })
+            .collect(),
+        taken: runs().map(|run| run.taken.map(seconds)).collect(),
+        trials: runs().map(|run| run.slot).collect(),
+        unit: feature.unit.as_deref(),
+    }
+}
+
+/// Seconds on the clock of the instrument.
+pub(crate) fn seconds(taken: DateTime) -> f64 {
+    let origin = DateTime::constant(2000, 1, 1, 0, 0, 0, 0);
+    taken.duration_since(origin).as_secs_f64()
 }
 
 fn judge(

@@ -8,16 +8,18 @@ use std::path::{Path, PathBuf};
 
 use indicatif::{ProgressBar, ProgressFinish, ProgressStyle};
 use restudy_engine::{
-    Design, Factor, Interaction, Judge, Settings, Standing, Study, StudyError, Tolerance,
+    Context, Design, Factor, Interaction, Judge, Names, Settings, Standing, Study, Tolerance,
+    remarks,
 };
 use restudy_parsers::{Bounds, Export, Parsed, Plain, Refused, SetAside, fold};
 use sha2::{Digest as _, Sha256};
 
 use super::{Answer, End, Failure, complain, configuration, preview, print, print_json};
+use crate::analyse::study::seconds;
 use crate::intake::request::Ask;
 use crate::record::{Counts, Judgement, Record, SCHEMA, hex};
 use asked::{OneSidedText, ProcessText};
-use material::{File, Gathered, Material, gather, levels};
+use material::{File, Gathered, Material, gather, levels, trials};
 use words::for_people;
 
 /// From so many files on, reading them shows a bar.
@@ -255,12 +257,8 @@ fn study(
             cell * levels[f].len() + level.unwrap_or(0)
         })
     };
-    let cells: Vec<usize> = gathered
-        .rows
-        .iter()
-        .map(|(labels, _)| cell(labels))
-        .collect();
-    let values: Vec<f64> = gathered.rows.iter().map(|(_, value)| *value).collect();
+    let cells: Vec<usize> = gathered.rows.iter().map(|row| cell(&row.labels)).collect();
+    let values: Vec<f64> = gathered.rows.iter().map(|row| row.value).collect();
     let tolerance = Tolerance {
         lower: gathered.lower.or(line.lower),
         upper: gathered.upper.or(line.upper),
@@ -273,8 +271,25 @@ fn study(
             None,
         );
     }
-    let study = restudy_engine::analyse(&design, &cells, &values, &tolerance, settings)
-        .map_err(|e| in_names(e, &kept, &levels))?;
+    let mut study = restudy_engine::analyse(&design, &cells, &values, &tolerance, settings)
+        .map_err(|e| e.to_string())?;
+    let context = Context {
+        factors: kept
+            .iter()
+            .map(|&f| Names {
+                word: &material.factors[f],
+                levels: levels[f].iter().map(String::as_str).collect(),
+            })
+            .collect(),
+        taken: gathered
+            .rows
+            .iter()
+            .map(|row| row.taken.map(seconds))
+            .collect(),
+        trials: trials(gathered, &cells).unwrap_or_default(),
+        unit: gathered.unit.as_deref().or(line.unit.as_deref()),
+    };
+    study.remarks = remarks(&design, &cells, &values, &study, &tolerance, &context);
     Ok(Record {
         schema: SCHEMA,
         site: None,
@@ -299,28 +314,6 @@ fn study(
         source: material.source.clone(),
         engine: env!("CARGO_PKG_VERSION"),
     })
-}
-
-/// The engine's refusal, with the cell by its names.
-fn in_names(error: StudyError, kept: &[usize], levels: &[Vec<String>]) -> String {
-    match error {
-        StudyError::Unbalanced {
-            mut cell,
-            count,
-            expected,
-            ..
-        } => {
-            let mut names = Vec::new();
-            for &f in kept.iter().rev() {
-                names.push(levels[f][cell % levels[f].len()].clone());
-                cell /= levels[f].len();
-            }
-            names.reverse();
-            let who = names.join(", ");
-            format!("{who} has {count} readings; expected {expected} as in the other cells")
-        }
-        other => other.to_string(),
-    }
 }
 
 fn unjudged(study: &Study) -> Judgement {

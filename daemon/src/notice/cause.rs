@@ -1,10 +1,11 @@
 //! Why a gauge takes what it takes: the largest source of its variance, and where in the readings it shows.
 //!
 //! Model: sources are the components of the study, cut at zero. The largest names the cause; means and ranges of
-//! the readings name the level or the cell. Without a source the share shrinks by the root of the variance left.
+//! the readings name the level or the cell.
 //!
-//! Not here: words (`telling`).
+//! Not here: words (`telling`); what would be left without the source, which is the engine's ladder.
 
+use restudy_engine::ladder::Ladder;
 use restudy_engine::{PART, WITHIN_CELLS};
 
 use crate::evidence::{Evidence, Feature};
@@ -54,10 +55,11 @@ pub(super) enum Source {
 pub(super) fn of(evidence: &Evidence, feature: &Feature, record: &Record) -> Option<Cause> {
     let study = &record.study;
     let gauge = study.figures.gauge.variance.estimate.filter(|v| *v > 0.0)?;
-    let sources = study.components.iter().filter(|c| c.of != [PART]);
-    let (component, variance) = sources
-        .filter_map(|c| Some((c, c.variance.estimate?)))
-        .max_by(|a, b| a.1.total_cmp(&b.1))?;
+    let components = study.components.iter().enumerate();
+    let (place, component, variance) = components
+        .filter(|(_, c)| c.of != [PART])
+        .filter_map(|(i, c)| Some((i, c, c.variance.estimate?)))
+        .max_by(|a, b| a.2.total_cmp(&b.2))?;
     let source = if component.name == WITHIN_CELLS {
         Source::Repeatability {
             widest: widest(evidence, feature),
@@ -77,12 +79,11 @@ pub(super) fn of(evidence: &Evidence, feature: &Feature, record: &Record) -> Opt
             },
         }
     };
-    let left = ((gauge - variance) / gauge).clamp(0.0, 1.0).sqrt();
-    let share = study.figures.gauge.share_of_tolerance.estimate;
+    let left = Ladder::of(study).map(|ladder| ladder.without(place));
     Some(Cause {
         source,
         of_gauge: (variance / gauge).min(1.0),
-        without: share.map(|s| s * left),
+        without: left.and_then(|rung| rung.share_of_tolerance.estimate),
     })
 }
 

@@ -1,12 +1,8 @@
-//! What the gauge's spread would be without one of its causes.
+//! What the gauge's spread would be without one of its causes, in the plant's words.
 //!
-//! Model: the gauge variance is a sum of components cut at zero; leaving one out, or halving the repeats' one for
-//! the mean of two readings, gives what would be left. Each rung takes away one thing only.
-//!
-//! Not here: limits of what would be left, except where the record has them: for the gauge as it is, and where
-//! only the repeats remain.
+//! Not here: the arithmetic, which is the engine's ladder. Each rung takes away one thing only.
 
-use restudy_engine::Figure;
+use restudy_engine::{Figure, ladder};
 
 use super::spread::Spread;
 use super::subject::{Cause, Subject};
@@ -14,10 +10,6 @@ use super::unit::Unit;
 use super::words::{list, percent};
 use crate::plain::plural;
 
-/// The least part of the spread that a step must take away to be worth advice.
-const WORTH: f64 = 0.01;
-/// Standard deviation of the mean of two readings over that of one.
-const OF_TWO: f64 = std::f64::consts::FRAC_1_SQRT_2;
 /// With more others than this, they are not listed by name.
 const NAMED_MAX: usize = 3;
 
@@ -50,6 +42,7 @@ pub(super) enum Change {
 pub(super) struct Ladder {
     pub(super) now: Rung,
     pub(super) steps: Vec<Rung>,
+    longest: Option<usize>,
 }
 
 impl Change {
@@ -67,63 +60,32 @@ impl Change {
 impl Ladder {
     /// `None` when the gauge's spread is not known.
     pub(super) fn of(subject: Subject<'_>) -> Option<Ladder> {
-        let figures = &subject.record.study.figures;
-        let now = Rung::with_limits(Change::AsItIs, &figures.gauge.sd, 1.0)?;
-        let parts: Vec<(Cause, f64, String)> = subject
+        let ladder = ladder::Ladder::of(&subject.record.study)?;
+        let longest = ladder.longest();
+        let undivided = subject.undivided().is_some();
+        let causes = subject
             .causes()
-            .map(|(cause, c)| {
-                (
-                    cause,
-                    c.variance.estimate.unwrap_or(0.0),
-                    subject.term(&c.of, &c.within),
-                )
+            .zip(ladder.steps())
+            .filter(|((cause, _), _)| *cause != Cause::Repeats || !undivided);
+        let steps: Vec<(ladder::Change, Rung)> = causes
+            .filter_map(|((cause, component), step)| {
+                let change = match step.change {
+                    ladder::Change::MeanOf(_) => Change::Twice,
+                    _ => Change::Without(cause, subject.term(&component.of, &component.within)),
+                };
+                Some((step.change, Rung::of(change, &step.sd)?))
             })
             .collect();
-        let undivided = subject.undivided().is_some();
-        let steps = parts
-            .iter()
-            .enumerate()
-            .filter(|(_, (cause, ..))| *cause != Cause::Repeats || !undivided)
-            .filter_map(|(i, (cause, variance, term))| {
-                let (change, kept) = match cause {
-                    Cause::Repeats => (Change::Twice, OF_TWO * OF_TWO * variance),
-                    _ => (Change::Without(*cause, term.clone()), 0.0),
-                };
-                let others = parts
-                    .iter()
-                    .enumerate()
-                    .filter(|&(j, _)| j != i)
-                    .map(|(_, part)| part);
-                if others.clone().all(|(cause, ..)| *cause == Cause::Repeats) {
-                    let times = if *cause == Cause::Repeats {
-                        OF_TWO
-                    } else {
-                        1.0
-                    };
-                    return Rung::with_limits(change, &figures.repeatability.sd, times);
-                }
-                let left = kept + others.map(|(_, variance, _)| variance).sum::<f64>();
-                Some(Rung {
-                    change,
-                    sd: left.sqrt(),
-                    lower: None,
-                    upper: None,
-                    open: false,
-                })
-            });
         Some(Ladder {
-            steps: steps.collect(),
-            now,
+            now: Rung::of(Change::AsItIs, &ladder.now().sd)?,
+            longest: longest.and_then(|l| steps.iter().position(|(change, _)| *change == l.change)),
+            steps: steps.into_iter().map(|(_, rung)| rung).collect(),
         })
     }
 
     /// The longest step down; `None` when no change by itself brings the spread down.
     pub(super) fn longest(&self) -> Option<&Rung> {
-        let least = self
-            .steps
-            .iter()
-            .reduce(|a, b| if b.sd < a.sd { b } else { a })?;
-        (least.sd < (1.0 - WORTH) * self.now.sd).then_some(least)
+        self.longest.and_then(|i| self.steps.get(i))
     }
 
     /// The longest step as advice, and what no step here can take away; `None` when there is neither.
@@ -169,14 +131,12 @@ impl Ladder {
 }
 
 impl Rung {
-    fn with_limits(change: Change, sd: &Figure, times: f64) -> Option<Rung> {
-        let scaled = |x: Option<f64>| x.map(|x| times * x);
-        let estimate = scaled(sd.estimate)?;
+    fn of(change: Change, sd: &Figure) -> Option<Rung> {
         Some(Rung {
             change,
-            sd: estimate,
-            lower: scaled(sd.lower),
-            upper: scaled(sd.upper),
+            sd: sd.estimate?,
+            lower: sd.lower,
+            upper: sd.upper,
             open: sd.open.is_some(),
         })
     }

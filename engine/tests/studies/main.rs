@@ -7,6 +7,8 @@ mod invented;
 mod pooling;
 mod record;
 mod refused;
+mod risk;
 mod sound;
 mod thin;
 mod tolerances;
+mod unequal;

@@ -12,22 +12,6 @@ fn faulty_input_is_refused_in_one_sentence() {
         analyse(&readings.design, cells, values, &TWO_SIDED, settings).unwrap_err()
     };
     let (cells, values) = (readings.cells.as_slice(), readings.values.as_slice());
-    let n = values.len();
-    assert_eq!(
-        refused(&cells[..n - 1], &values[..n - 1], &settings()).to_string(),
-        "cell 11 (part 4, appraiser 3) holds 1 readings; expected 2 as in the other cells"
-    );
-    let mut twice = cells.to_vec();
-    twice[0] = 5;
-    assert!(matches!(
-        refused(&twice, values, &settings()),
-        StudyError::Unbalanced {
-            cell: 0,
-            count: 1,
-            expected: 2,
-            ..
-        }
-    ));
     for bad in [f64::NAN, f64::INFINITY] {
         let mut values = values.to_vec();
         values[3] = bad;
@@ -91,10 +75,11 @@ fn faulty_input_is_refused_in_one_sentence() {
         );
     }
     let prepared = Prepared::new(&readings.design, 3, &settings()).unwrap();
-    assert!(matches!(
-        prepared.study(cells, values, &TWO_SIDED),
-        Err(StudyError::Unbalanced { expected: 3, .. })
-    ));
+    let error = prepared.study(cells, values, &TWO_SIDED).unwrap_err();
+    assert_eq!(
+        error.to_string(),
+        "cell 0 (part 1, appraiser 1) holds 2 readings; expected 3 as in the other cells"
+    );
 }
 
 #[test]

@@ -2,6 +2,7 @@
 
 use std::collections::BTreeMap;
 
+use jiff::civil::DateTime;
 use restudy_parsers::{Parsed, fold};
 
 use crate::natural;
@@ -21,10 +22,19 @@ pub(super) struct Gathered {
     pub(super) nominal: Option<f64>,
     pub(super) lower: Option<f64>,
     pub(super) upper: Option<f64>,
-    /// Labels (part, appraiser, further factors) and value.
-    pub(super) rows: Vec<(Vec<String>, f64)>,
+    pub(super) rows: Vec<Row>,
     seen: BTreeMap<String, f64>,
     pub(super) fault: Option<String>,
+}
+
+/// One reading.
+pub(super) struct Row {
+    /// Part, appraiser, further factors.
+    pub(super) labels: Vec<String>,
+    /// Folded.
+    pub(super) trial: Option<String>,
+    pub(super) taken: Option<DateTime>,
+    pub(super) value: f64,
 }
 
 /// The readings of all files.
@@ -108,7 +118,7 @@ impl Gathered {
         &mut self,
         labels: Vec<String>,
         trial: Option<&str>,
-        taken: Option<jiff::civil::DateTime>,
+        taken: Option<DateTime>,
         reading: &restudy_parsers::Reading,
     ) {
         if self.unit != reading.unit {
@@ -147,18 +157,54 @@ impl Gathered {
                 None => {}
             }
         }
-        self.rows.push((labels, reading.value));
+        self.rows.push(Row {
+            labels,
+            trial: trial.map(fold),
+            taken,
+            value: reading.value,
+        });
     }
 }
 
 /// The levels of a factor in natural order, each as first written.
 pub(super) fn levels(gathered: &Gathered, factor: usize) -> Vec<String> {
     let mut seen = BTreeMap::new();
-    for (labels, _) in &gathered.rows {
-        let label = &labels[factor];
+    for row in &gathered.rows {
+        let label = &row.labels[factor];
         seen.entry(fold(label)).or_insert_with(|| label.clone());
     }
     let mut names: Vec<String> = seen.into_values().collect();
     names.sort_by(|a, b| natural::compare(a, b));
     names
+}
+
+/// Which trial of its cell each reading is: by its label, which every cell must hold once, or else by its time.
+pub(super) fn trials(gathered: &Gathered, cells: &[usize]) -> Option<Vec<usize>> {
+    let labelled: Option<Vec<&String>> = gathered.rows.iter().map(|r| r.trial.as_ref()).collect();
+    if let Some(labels) = labelled {
+        let mut names = labels.clone();
+        names.sort_by(|a, b| natural::compare(a, b));
+        names.dedup();
+        let of_name: BTreeMap<&String, usize> = names.into_iter().zip(0..).collect();
+        let most = cells.iter().fold(BTreeMap::new(), |mut counts, cell| {
+            *counts.entry(cell).or_insert(0) += 1;
+            counts
+        });
+        let most = most.into_values().max()?;
+        return (of_name.len() == most).then(|| labels.iter().map(|l| of_name[*l]).collect());
+    }
+    let taken: Vec<DateTime> = gathered
+        .rows
+        .iter()
+        .map(|r| r.taken)
+        .collect::<Option<_>>()?;
+    let mut order: Vec<usize> = (0..cells.len()).collect();
+    order.sort_by_key(|&row| (cells[row], taken[row]));
+    let mut trials = vec![0; cells.len()];
+    for pair in order.windows(2) {
+        if cells[pair[0]] == cells[pair[1]] {
+            trials[pair[1]] = trials[pair[0]] + 1;
+        }
+    }
+    Some(trials)
 }

@@ -3,7 +3,7 @@
 use crate::cli::table::table;
 use crate::figures::significant;
 use crate::record::Record;
-use restudy_engine::Spread;
+use restudy_engine::{Spread, Study};
 
 pub(super) fn for_people(record: &Record) -> String {
     let study = &record.study;
@@ -18,8 +18,9 @@ pub(super) fn for_people(record: &Record) -> String {
         .as_deref()
         .map(|u| format!(" in {u}"))
         .unwrap_or_default();
+    let up_to = if layout.balanced { "" } else { "up to " };
     let mut out = format!(
-        "{}: {} × {}, {}{unit}\n\n",
+        "{}: {} × {up_to}{}, {}{unit}\n\n",
         record.characteristic,
         factors.join(" × "),
         counted(layout.trials, "trial"),
@@ -66,36 +67,10 @@ pub(super) fn for_people(record: &Record) -> String {
         (false, 1) => "One trial: EV holds the interaction.\n",
         (false, _) => "",
     });
-    let rows = study.mean_squares.iter().map(|line| {
-        let p = line.p.map_or_else(
-            || "–".into(),
-            |p| {
-                if p < 0.0001 {
-                    "< 0.0001".into()
-                } else {
-                    format!("{p:.4}")
-                }
-            },
-        );
-        vec![
-            line.name.to_string(),
-            line.df.to_string(),
-            significant(line.ss, 5),
-            sd(line.ms),
-            line.f.map_or_else(|| "–".into(), |f| significant(f, 4)),
-            p,
-        ]
-    });
-    out.push('\n');
-    let headings = [
-        "mean squares",
-        "df",
-        "sum of squares",
-        "mean square",
-        "F",
-        "p",
-    ];
-    out.push_str(&table(&headings, &[1, 2, 3, 4, 5], rows.collect()));
+    if layout.balanced {
+        out.push('\n');
+        out.push_str(&mean_squares(study));
+    }
     let share = &figures.gauge.share_of_tolerance;
     out.push('\n');
     let why = share.why.as_deref().unwrap_or("no tolerance is known");
@@ -121,6 +96,40 @@ pub(super) fn for_people(record: &Record) -> String {
     }
     out.push_str("A study is evidence about the gauge, not a release of product.\n\n");
     out
+}
+
+/// The table of mean squares.
+fn mean_squares(study: &Study) -> String {
+    let sd = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| significant(x, 4));
+    let rows = study.mean_squares.iter().map(|line| {
+        let p = line.p.map_or_else(
+            || "–".into(),
+            |p| {
+                if p < 0.0001 {
+                    "< 0.0001".into()
+                } else {
+                    format!("{p:.4}")
+                }
+            },
+        );
+        vec![
+            line.name.to_string(),
+            line.df.to_string(),
+            significant(line.ss, 5),
+            sd(line.ms),
+            line.f.map_or_else(|| "–".into(), |f| significant(f, 4)),
+            p,
+        ]
+    });
+    let headings = [
+        "mean squares",
+        "df",
+        "sum of squares",
+        "mean square",
+        "F",
+        "p",
+    ];
+    table(&headings, &[1, 2, 3, 4, 5], rows.collect())
 }
 
 fn counted(n: usize, what: &str) -> String {

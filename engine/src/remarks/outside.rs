@@ -1,16 +1,20 @@
-//! Remarks: plain sentences about a study with the numbers behind them.
+//! What a study's own figures leave to be explained: estimates outside their limits, a term lost in the error.
 
 use std::collections::BTreeMap;
 
+use super::words::{list, rounded};
 use crate::figure::Figure;
 use crate::record::{Component, Figures, Remark};
 
-/// One remark for every figure whose estimate lies outside its limits.
+/// Digits that show an estimate apart from its limit.
+const DIGITS: i32 = 4;
+
+/// Names the figures whose estimates lie outside their limits; the numbers are those of the first.
 pub(crate) fn outside_limits(
     components: &[Component],
     figures: &Figures,
     part_to_gauge: &Figure,
-) -> Vec<Remark> {
+) -> Option<Remark> {
     let below_zero: Vec<&str> = components
         .iter()
         .filter(|c| c.raw < 0.0)
@@ -33,12 +37,14 @@ pub(crate) fn outside_limits(
         ]
     });
     let ratio = [("ratio of part to gauge variance".to_owned(), part_to_gauge)];
-    of_components
+    let outside: Vec<(String, &Figure)> = of_components
         .chain(of_spreads)
         .chain(ratio)
         .filter(|(_, figure)| figure.contradicts_itself())
-        .map(|(name, figure)| outside(&name, figure, &below_zero))
-        .collect()
+        .collect();
+    let ((name, figure), others) = outside.split_first()?;
+    let others: Vec<String> = others.iter().map(|(name, _)| name.clone()).collect();
+    Some(outside_its_limits(name, figure, &others, &below_zero))
 }
 
 /// What one trial cannot tell apart: the error line holds the largest term too.
@@ -53,7 +59,13 @@ pub(crate) fn one_trial(taken_in: &str) -> Remark {
     }
 }
 
-fn outside(name: &str, figure: &Figure, below_zero: &[&str]) -> Remark {
+fn outside_its_limits(
+    name: &str,
+    figure: &Figure,
+    others: &[String],
+    below_zero: &[&str],
+) -> Remark {
+    let brief = |x: f64| rounded(DIGITS, x);
     let numbers = [
         ("estimate", figure.estimate),
         ("lower", figure.lower),
@@ -78,23 +90,14 @@ fn outside(name: &str, figure: &Figure, below_zero: &[&str]) -> Remark {
         )
     };
     let estimate = figure.estimate.map(brief).unwrap_or_default();
+    let likewise = if others.is_empty() {
+        String::new()
+    } else {
+        format!(" Likewise: {}.", list(others))
+    };
     Remark {
         kind: "estimate outside limits",
-        text: format!("The {name}, {estimate}, lies outside its {limits}: {why}."),
+        text: format!("The {name}, {estimate}, lies outside its {limits}: {why}.{likewise}"),
         figures,
-    }
-}
-
-/// Four significant digits.
-fn brief(x: f64) -> String {
-    let magnitude = if x == 0.0 {
-        0
-    } else {
-        x.abs().log10().floor() as i32
-    };
-    if (-4..6).contains(&magnitude) {
-        format!("{:.*}", (3 - magnitude).max(0) as usize, x)
-    } else {
-        format!("{x:.3e}")
     }
 }

@@ -1,0 +1,223 @@
+//! Restricted maximum likelihood against Newton steps in 30-digit arithmetic and against lme4.
+
+use restudy_engine::{Interval, Reml, reml};
+use serde_json::Value;
+
+use crate::check::Check;
+use crate::data::{Fixture, PART_APPRAISER, fixture, name_of_line, settings};
+
+/// What is asked of components and covariances; the likelihood has its own.
+const COMPONENT_DIGITS: f64 = 9.0;
+const LIKELIHOOD_DIGITS: f64 = 11.0;
+/// lme4's search ends earlier.
+const LME4_DIGITS: f64 = 7.0;
+
+struct Case {
+    fixture: Fixture,
+    block: &'static str,
+    factors: &'static [(&'static str, &'static [&'static str])],
+    interaction: bool,
+}
+
+fn fitted(case: &Case) -> Reml {
+    let placed = case.fixture.placed(case.factors);
+    reml(
+        &placed.design,
+        &placed.cells,
+        &placed.values,
+        case.interaction,
+    )
+    .unwrap()
+}
+
+fn cases() -> Vec<Case> {
+    let case = |fixture, block, factors, interaction| Case {
+        fixture,
+        block,
+        factors,
+        interaction,
+    };
+    let mut cases = Vec::new();
+    for fixture in [
+        || fixture!("e_aiag_unbalanced"),
+        || fixture!("e_mr_unbalanced"),
+        || fixture!("e_synthetic_unbalanced"),
+    ] as [fn() -> Fixture; 3]
+    {
+        cases.push(case(
+            fixture(),
+            "reml_with_interaction",
+            PART_APPRAISER,
+            true,
+        ));
+        cases.push(case(
+            fixture(),
+            "reml_without_interaction",
+            PART_APPRAISER,
+            false,
+        ));
+    }
+    for fixture in [fixture!("a_aiag_10x3x3"), fixture!("b_mr_20x3x2")] {
+        cases.push(case(fixture, "reml", PART_APPRAISER, true));
+    }
+    cases.push(case(
+        fixture!("f_three_factor_8x3x2x2"),
+        "reml",
+        &[("part", &[]), ("appraiser", &[]), ("fixture", &[])],
+        true,
+    ));
+    cases.push(case(
+        fixture!("f_nested_3x8x3"),
+        "reml",
+        &[("appraiser", &[]), ("part", &["appraiser"])],
+        true,
+    ));
+    cases
+}
+
+/// Places of the reference's components among ours.
+fn places(order: &Value, fit: &Reml) -> Vec<usize> {
+    let place = |name: &Value| {
+        let name = name_of_line(name.as_str().unwrap());
+        fit.order.iter().position(|n| *n == name).unwrap()
+    };
+    order.as_array().unwrap().iter().map(place).collect()
+}
+
+fn matrix(
+    check: &mut Check,
+    field: &str,
+    found: &Option<Vec<Vec<f64>>>,
+    expected: &Value,
+    places: &[usize],
+) {
+    let found = found.as_ref().unwrap();
+    let expected = |i: usize, j: usize| expected[i][j].as_f64().unwrap();
+    // An entry far below its row and column holds rounding alone.
+    for (i, &a) in places.iter().enumerate() {
+        for (j, &b) in places.iter().enumerate() {
+            let scale = (expected(i, i) * expected(j, j)).abs().sqrt();
+            let away = expected(i, j) - found[a][b];
+            check.number(&format!("{field}[{i}][{j}]"), Some(scale + away), scale);
+        }
+    }
+}
+
+#[test]
+fn components_likelihood_slopes_and_covariances() {
+    for case in cases() {
+        let fit = fitted(&case);
+        let expected = &case.fixture.expected[case.block];
+        let name = format!("{} {}", case.fixture.name, case.block);
+        let places_of = places(&expected["order"], &fit);
+        let mut check = Check::new(&name, COMPONENT_DIGITS);
+        let mut at_zero: Vec<String> = Vec::new();
+        for (key, &place) in expected["order"].as_array().unwrap().iter().zip(&places_of) {
+            let key = key.as_str().unwrap();
+            let value = &expected["estimates"][key];
+            check.digits(key, Some(fit.estimates[place]), value);
+            let score = fit.score.as_ref().unwrap()[place];
+            if value.as_f64() == Some(0.0) {
+                at_zero.push(fit.order[place].clone());
+                check.digits(
+                    &format!("score of {key}"),
+                    Some(score),
+                    &expected["score_at_estimate"][key],
+                );
+            } else {
+                // Zero, in units of the score's own sd.
+                let information = &fit.expected_information.as_ref().unwrap()[place][place];
+                check.number(
+                    &format!("score of {key}"),
+                    Some(1.0 + score / information.sqrt()),
+                    1.0,
+                );
+            }
+        }
+        check.same("at zero", fit.at_zero.clone(), at_zero.clone());
+        for (field, found) in [
+            ("expected_information", &fit.expected_information),
+            ("observed_information", &fit.observed_information),
+            ("covariance_from_expected", &fit.covariance),
+        ] {
+            matrix(&mut check, field, found, &expected[field], &places_of);
+        }
+        if !at_zero.is_empty() {
+            let free = &expected["covariance_free_components"];
+            let kept: Vec<&String> = fit.order.iter().filter(|n| !at_zero.contains(n)).collect();
+            let places: Vec<usize> = free["order"]
+                .as_array()
+                .unwrap()
+                .iter()
+                .map(|n| {
+                    let name = name_of_line(n.as_str().unwrap());
+                    kept.iter().position(|k| **k == name).unwrap()
+                })
+                .collect();
+            matrix(
+                &mut check,
+                "covariance_free_components",
+                &fit.covariance_above_zero,
+                &free["from_expected"],
+                &places,
+            );
+        }
+        check.finish(30);
+
+        let mut check = Check::new(&name, LIKELIHOOD_DIGITS);
+        check.digits("loglik", fit.log_likelihood, &expected["loglik"]);
+        check.finish(1);
+    }
+}
+
+#[test]
+fn lme4_finds_the_same_maximum() {
+    let lme4: Value =
+        serde_json::from_str(include_str!("../../fixtures/reference/lme4_values.json")).unwrap();
+    for case in cases() {
+        let fit = fitted(&case);
+        let name = match case.block {
+            "reml_without_interaction" => format!("{}_no_interaction", case.fixture.name),
+            _ => case.fixture.name.to_owned(),
+        };
+        let theirs = &lme4[&name];
+        let mut check = Check::new(&name, LME4_DIGITS);
+        let largest = fit.estimates.iter().fold(0.0, |a: f64, b| a.max(*b));
+        for (key, estimate) in theirs["estimates"].as_object().unwrap() {
+            let line = name_of_line(key);
+            let place = fit.order.iter().position(|n| *n == line).unwrap();
+            let away = fit.estimates[place] - estimate.as_f64().unwrap();
+            check.number(key, Some(largest + away), largest);
+        }
+        check.digits("loglik", fit.log_likelihood, &theirs["loglik"]);
+        check.finish(4);
+    }
+}
+
+/// Chi-square limits of the gauge variance with matched degrees of freedom, by `analyse`.
+#[test]
+fn the_gauge_variance_has_its_approximate_limits() {
+    for case in cases()
+        .iter()
+        .filter(|case| case.fixture.name.starts_with("e_") && case.block == "reml_with_interaction")
+    {
+        let mut check = Check::new(case.fixture.name, COMPONENT_DIGITS);
+        for (level, confidence) in [("0.90", 0.90), ("0.95", 0.95)] {
+            let study = case.fixture.study(case.factors, &settings(confidence, 6.0));
+            let expected = &case.fixture.expected[case.block]["gauge_variance"];
+            let gauge = &study.figures.gauge.variance;
+            check.digits("estimate", gauge.estimate, &expected["estimate"]);
+            check.digits("lower", gauge.lower, &expected[level]["lower"]);
+            check.digits("upper", gauge.upper, &expected[level]["upper"]);
+            check.same("interval", gauge.interval, Some(Interval::Satterthwaite));
+            let interaction = &case.fixture.expected["likelihood_ratio_interaction"];
+            // A statistic of zero has its p of one half to the root of its rounding.
+            let (p, expected) = (
+                study.interaction.p.unwrap(),
+                interaction["p_half_chi2_1"].as_f64().unwrap(),
+            );
+            assert!((p / expected - 1.0).abs() < 1e-5, "{p:e} for {expected:e}");
+        }
+        check.finish(8);
+    }
+}
