@@ -292,3 +292,26 @@ fn a_refused_export_is_shown_until_its_file_is_gone() {
     room.look();
     assert_eq!(refused(&room), 0);
 }
+
+/// Here the child that should read workbooks is this test program, which answers with no frame and ends.
+#[test]
+fn a_workbook_whose_reader_dies_three_times_is_refused_and_costs_only_itself() {
+    let mut room = Room::new(&CONFIG.replace("*.csv", "*.*"));
+    fs_err::write(room.path("a.xlsx"), b"PK\x03\x04 and more").unwrap();
+    room.write("b.csv", &[FULL[0]]);
+    let refused = |room: &Room| room.ledger.lock().read().refused().unwrap();
+    for _ in 0..2 {
+        let now = Now {
+            utc: NOW,
+            uptime: room.uptime,
+        };
+        room.intake.pass(now, &|| false).unwrap();
+        room.uptime += Duration::from_secs(20);
+    }
+    assert_eq!(refused(&room), []);
+    room.look();
+    room.look();
+    let told = refused(&room).remove(0).reason;
+    assert!(told.starts_with("its reader failed 3 times ("), "{told}");
+    assert_eq!(room.account().used, 1);
+}
