@@ -5,62 +5,118 @@ use std::sync::OnceLock;
 
 use crate::combination::Combination;
 use crate::generalized::{Draws, Simulation};
-use crate::mls::Constants;
+use crate::linear::{Linear, Pair};
+use crate::mls::{Constants, Limit};
 use crate::model::Model;
+use crate::quantile::{ChiSquareByDf, Side};
 use crate::settings::{Judge, Settings};
+use crate::sums::{Sums, Sweep};
+use crate::table::Against;
 
-#[derive(Debug, Clone)]
+#[derive(Debug)]
 pub(crate) struct Basis {
     pub(crate) model: Model,
     pub(crate) df: Vec<f64>,
+    /// One a line.
+    pub(crate) components: Vec<Linear>,
+    /// What each line is tested against; `None` for the error.
+    pub(crate) against: Vec<Option<Against>>,
     pub(crate) quantities: Quantities,
-    /// Two-sided limits.
-    pub(crate) two_sided: Constants,
-    /// One-sided limits at the same confidence.
-    pub(crate) one_sided: Constants,
-    /// One-sided limits at the confidence that judges, when that is another one.
-    pub(crate) judging: Option<Constants>,
+    pub(crate) ratios: Ratios,
+    /// The lower limit of the gauge at the confidence that judges.
+    pub(crate) judging: Option<Limit>,
+    /// For every term of the design the line that its sum of squares goes to.
+    homes: Vec<usize>,
+    matched: OnceLock<Matched>,
+    alpha: f64,
     simulation: Simulation,
     draws: OnceLock<Draws>,
 }
 
 /// The figures as combinations of mean squares; absent where the design cannot tell them apart.
-#[derive(Debug, Clone)]
+#[derive(Debug)]
 pub(crate) struct Quantities {
-    pub(crate) repeatability: Option<Combination>,
-    pub(crate) reproducibility: Option<Combination>,
-    pub(crate) gauge: Option<Combination>,
-    pub(crate) part: Option<Combination>,
-    pub(crate) total: Combination,
+    pub(crate) repeatability: Option<Linear>,
+    pub(crate) reproducibility: Option<Linear>,
+    pub(crate) gauge: Option<Linear>,
+    pub(crate) part: Option<Linear>,
+    pub(crate) total: Linear,
+}
+
+/// Ratios of variances that figures follow from.
+#[derive(Debug)]
+pub(crate) struct Ratios {
+    pub(crate) part_to_gauge: Option<Pair>,
+    pub(crate) rest_to_repeatability: Option<Pair>,
+    pub(crate) reproducibility_to_rest: Option<Pair>,
+}
+
+/// Quantiles of chi-square at the tail probabilities of the limits.
+#[derive(Debug)]
+pub(crate) struct Matched {
+    pub(crate) lower: ChiSquareByDf,
+    pub(crate) upper: ChiSquareByDf,
+    pub(crate) at_least: ChiSquareByDf,
 }
 
 impl Basis {
-    pub(crate) fn new(model: Model, settings: &Settings) -> Self {
+    pub(crate) fn new(
+        model: Model,
+        sweep: &Sweep,
+        settings: &Settings,
+        simulation: Simulation,
+    ) -> Self {
         let df: Vec<f64> = model.lines().iter().map(|l| l.df as f64).collect();
         let alpha = 1.0 - settings.confidence;
-        let judging = match settings.judge {
-            Judge::Chance(p) => Some(Constants::all(&df, 1.0 - p)),
-            Judge::Estimate | Judge::Upper => None,
+        let two_sided = Constants::all(&df, alpha / 2.0);
+        let one_sided = Constants::all(&df, alpha);
+        let linear = |sum: Combination| Linear::new(sum, &two_sided, &one_sided);
+        let lines = 0..model.lines().len();
+        let sums = Variances::of(&model);
+        let judging = match (settings.judge, &sums.gauge) {
+            (Judge::Chance(p), Some(gauge)) => {
+                let weights = gauge.weights();
+                let constants = Constants::for_lower(&weights, &df, 1.0 - p);
+                Some(constants.lower_limit(&weights))
+            }
+            _ => None,
         };
         Basis {
-            quantities: Quantities::of(&model),
-            two_sided: Constants::all(&df, alpha / 2.0),
-            one_sided: Constants::all(&df, alpha),
+            components: lines.clone().map(|i| linear(model.component(i))).collect(),
+            against: lines.map(|i| Against::new(&model, i)).collect(),
+            ratios: Ratios::of(&sums, &two_sided, &one_sided),
+            quantities: Quantities {
+                repeatability: sums.repeatability.map(linear),
+                reproducibility: sums.reproducibility.map(linear),
+                gauge: sums.gauge.map(linear),
+                part: sums.part.map(linear),
+                total: linear(sums.total),
+            },
             judging,
-            simulation: Simulation::default(),
+            homes: sweep.terms().map(|set| model.home(set)).collect(),
+            matched: OnceLock::new(),
+            alpha,
+            simulation,
             draws: OnceLock::new(),
             model,
             df,
         }
     }
 
-    /// The same with other draws.
-    pub(crate) fn simulated(self, simulation: Simulation) -> Self {
-        Basis {
-            simulation,
-            draws: OnceLock::new(),
-            ..self
+    /// Sums of squares and mean squares of the lines.
+    pub(crate) fn mean_squares(&self, sums: &Sums, ss: &mut Vec<f64>, ms: &mut Vec<f64>) {
+        ss.clear();
+        ss.resize(self.df.len(), 0.0);
+        for (&home, term) in self.homes.iter().zip(&sums.terms) {
+            ss[home] += term;
         }
+        ss[self.df.len() - 1] += sums.within;
+        ms.clear();
+        ms.extend(ss.iter().zip(&self.df).map(|(ss, df)| ss / df));
+    }
+
+    pub(crate) fn simulation(&self) -> Simulation {
+        self.simulation
     }
 
     /// Drawn when first asked for, then shared by all characteristics.
@@ -68,10 +124,27 @@ impl Basis {
         self.draws
             .get_or_init(|| Draws::new(&self.df, self.simulation))
     }
+
+    pub(crate) fn matched(&self) -> &Matched {
+        self.matched.get_or_init(|| Matched {
+            lower: ChiSquareByDf::new(Side::Above, self.alpha / 2.0),
+            upper: ChiSquareByDf::new(Side::Below, self.alpha / 2.0),
+            at_least: ChiSquareByDf::new(Side::Above, self.alpha),
+        })
+    }
 }
 
-impl Quantities {
-    pub(crate) fn of(model: &Model) -> Self {
+/// The variances that people ask for.
+struct Variances {
+    repeatability: Option<Combination>,
+    reproducibility: Option<Combination>,
+    gauge: Option<Combination>,
+    part: Option<Combination>,
+    total: Combination,
+}
+
+impl Variances {
+    fn of(model: &Model) -> Self {
         let error = model.lines().len() - 1;
         let repeatability = model.component(error);
         let part = model.part().map(|part| model.component(part));
@@ -84,12 +157,28 @@ impl Quantities {
             .map_or(gauge.clone(), |part| part.plus(&gauge));
         // Without a part line the error holds the parts, and neither repeatability nor gauge stands apart.
         let apart = part.is_some();
-        Quantities {
+        Variances {
             repeatability: apart.then_some(repeatability),
             reproducibility,
             gauge: apart.then_some(gauge),
             part,
             total,
+        }
+    }
+}
+
+impl Ratios {
+    fn of(sums: &Variances, two_sided: &Constants, one_sided: &Constants) -> Ratios {
+        let pair = |numerator, denominator| Pair::new(numerator, denominator, two_sided, one_sided);
+        let part_to_gauge = sums.part.clone().zip(sums.gauge.clone());
+        let repeatability = sums.repeatability.clone();
+        let reproducibility = sums.reproducibility.clone();
+        Ratios {
+            part_to_gauge: part_to_gauge.map(|(part, gauge)| pair(part, gauge)),
+            rest_to_repeatability: repeatability
+                .map(|repeats| pair(sums.total.minus(&repeats), repeats)),
+            reproducibility_to_rest: reproducibility
+                .map(|between| pair(between.clone(), sums.total.minus(&between))),
         }
     }
 }

@@ -1,13 +1,10 @@
 //! Estimates of the figures: every component cut at zero, then added.
 
-use crate::combination::Combination;
 use crate::model::Model;
 
 /// Variances of one study, each built from components cut at zero; absent where they do not stand apart.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Copy, Default)]
 pub(crate) struct Estimates {
-    /// The components of all lines as they are.
-    pub(crate) raw: Vec<f64>,
     pub(crate) repeatability: Option<f64>,
     pub(crate) reproducibility: Option<f64>,
     pub(crate) gauge: Option<f64>,
@@ -16,13 +13,12 @@ pub(crate) struct Estimates {
 }
 
 impl Estimates {
-    pub(crate) fn new(model: &Model, components: &[Combination], ms: &[f64]) -> Self {
-        let raw: Vec<f64> = components.iter().map(|c| c.value(ms)).collect();
+    /// From the components of all lines as they are.
+    pub(crate) fn new(model: &Model, raw: &[f64]) -> Self {
         let cut = |line: usize| raw[line].max(0.0);
         let error = raw.len() - 1;
         let part = model.part().map(cut);
-        let others: Vec<f64> = model.reproducibility().map(cut).collect();
-        let reproducibility = (!others.is_empty()).then(|| others.iter().sum::<f64>());
+        let reproducibility = model.reproducibility().map(cut).reduce(|a, b| a + b);
         let gauge = reproducibility.unwrap_or(0.0) + cut(error);
         let apart = part.is_some();
         Estimates {
@@ -31,7 +27,6 @@ impl Estimates {
             total: gauge + part.unwrap_or(0.0),
             reproducibility,
             part,
-            raw,
         }
     }
 }

@@ -13,6 +13,7 @@ use crate::estimates::Estimates;
 use crate::figure::{Bounds, Figure, Interval};
 use crate::generalized::percentile;
 use crate::limits::{MANY_CROSSED, RatioBounds, figure};
+use crate::linear::{Linear, Pair};
 use crate::record::{Component, Figures, Ndc, Spread};
 use crate::tolerance::{FromMean, Share};
 
@@ -28,7 +29,9 @@ const NDC_FACTOR: f64 = 1.41;
 pub(crate) struct Evidence<'a> {
     pub(crate) basis: &'a Basis,
     pub(crate) ms: &'a [f64],
-    pub(crate) estimates: &'a Estimates,
+    /// The components of all lines as they are.
+    pub(crate) raw: &'a [f64],
+    pub(crate) estimates: Estimates,
     pub(crate) share: &'a Share,
     pub(crate) confidence: f64,
     pub(crate) all_equal: bool,
@@ -45,12 +48,12 @@ impl Evidence<'_> {
     pub(crate) fn components(&self) -> Vec<Component> {
         let model = &self.basis.model;
         let component = |(i, line): (usize, &crate::model::Line)| {
-            let variance = self.variance(&model.component(i), self.estimates.raw[i].max(0.0));
+            let variance = self.variance(&self.basis.components[i], self.raw[i].max(0.0));
             Component {
                 name: Cow::Owned(line.name.clone()),
                 of: line.of.clone(),
                 within: line.within.clone(),
-                raw: self.estimates.raw[i],
+                raw: self.raw[i],
                 sd: variance.rising(f64::sqrt),
                 variance,
             }
@@ -60,7 +63,7 @@ impl Evidence<'_> {
 
     pub(crate) fn figures(&self) -> Figures {
         let q = &self.basis.quantities;
-        let e = self.estimates;
+        let e = &self.estimates;
         let share_of_tv = ShareOfTv { evidence: self };
         Figures {
             repeatability: self.spread(
@@ -110,7 +113,7 @@ impl Evidence<'_> {
 
     /// The one-sided lower limit of the gauge share at the confidence that judges.
     pub(crate) fn judged_lower(&self, confidence: f64) -> Option<f64> {
-        let constants = self.basis.judging.as_ref()?;
+        let limit = self.basis.judging.as_ref()?;
         let gauge = self.basis.quantities.gauge.as_ref()?;
         let per_sd = self
             .share
@@ -119,15 +122,13 @@ impl Evidence<'_> {
             .ok()
             .filter(|_| !self.all_equal)?;
         if let Some(from) = &self.share.from_estimated_mean {
-            let mut draws = self.shares_of_distance(gauge, from).ok()?;
+            let mut draws = self.shares_of_distance(&gauge.sum, from).ok()?;
             return Some(percentile(&mut draws, 1.0 - confidence)).filter(|x| x.is_finite());
         }
-        let variance = match gauge.members().collect::<Vec<_>>()[..] {
-            [only] if self.ms[only] > 0.0 => constants.lower(&gauge.weights(), self.ms),
-            [_] => return None,
-            _ => constants.lower(&gauge.weights(), self.ms),
-        };
-        Some(variance.max(0.0).sqrt() * per_sd)
+        if gauge.is_error && self.ms[self.ms.len() - 1] <= 0.0 {
+            return None;
+        }
+        Some(limit.at(self.ms).max(0.0).sqrt() * per_sd)
     }
 
     /// The chance that the gauge share lies above each of some limits.
@@ -135,17 +136,17 @@ impl Evidence<'_> {
         let (Ok(per_sd), Some(gauge)) = (&self.share.per_sd, &self.basis.quantities.gauge) else {
             return [None; N];
         };
-        if gauge.members().all(|q| self.ms[q] == 0.0) {
+        if gauge.sum.members().all(|q| self.ms[q] == 0.0) {
             return [None; N];
         }
         let Some(from) = &self.share.from_estimated_mean else {
-            let weights = gauge.weights();
             let above = |limit: f64| {
-                chance::above((limit / per_sd).powi(2), &weights, &self.basis.df, self.ms)
+                let variance = (limit / per_sd).powi(2);
+                chance::above(variance, &gauge.weights, &self.basis.df, self.ms)
             };
             return limits.map(|limit| Some(above(limit)));
         };
-        let Ok(draws) = self.shares_of_distance(gauge, from) else {
+        let Ok(draws) = self.shares_of_distance(&gauge.sum, from) else {
             return [None; N];
         };
         let above = |limit: f64| draws.iter().filter(|&&share| share > limit).count();
@@ -154,13 +155,13 @@ impl Evidence<'_> {
 
     fn spread(
         &self,
-        combination: Option<&Combination>,
+        figure: Option<&Linear>,
         estimate: Option<f64>,
         absent: &'static str,
         share_of_tv: Figure,
     ) -> Spread {
-        let variance = match (combination, estimate) {
-            (Some(combination), Some(estimate)) => self.variance(combination, estimate),
+        let variance = match (figure, estimate) {
+            (Some(figure), Some(estimate)) => self.variance(figure, estimate),
             _ => Figure::absent(absent),
         };
         let sd = variance.rising(f64::sqrt);
@@ -168,8 +169,10 @@ impl Evidence<'_> {
             _ if variance.estimate.is_none() => Figure::absent(absent),
             Err(why) => Figure::absent(why.clone()),
             Ok(_) if self.all_equal => Figure::absent(ALL_EQUAL),
-            Ok(per_sd) => match (self.share.from_estimated_mean, combination) {
-                (Some(from), Some(sum)) => self.share_of_distance(&variance, sum, *per_sd, &from),
+            Ok(per_sd) => match (self.share.from_estimated_mean, figure) {
+                (Some(from), Some(figure)) => {
+                    self.share_of_distance(&variance, &figure.sum, *per_sd, &from)
+                }
                 _ => sd.rising(|sd| sd * per_sd),
             },
         };
@@ -219,28 +222,26 @@ impl Evidence<'_> {
         Ok(shares)
     }
 
-    fn variance(&self, combination: &Combination, estimate: f64) -> Figure {
-        let bounds = self.limits_of_sum(combination, self.usual(combination));
+    fn variance(&self, of: &Linear, estimate: f64) -> Figure {
+        let bounds = self.limits_of_sum(of, self.usual(of));
         figure(estimate, bounds.map(|b| b.rising(|x| x.max(0.0))))
     }
 
-    fn part_over_gauge(&self) -> Result<RatioBounds, &'static str> {
-        let q = &self.basis.quantities;
-        let part = q.part.as_ref().ok_or(NOT_APART)?;
-        self.ratio(part, q.gauge.as_ref().ok_or(NOT_APART)?)
-    }
-
-    /// Limits of the ratio of two variances.
+    /// Limits of the ratio of two variances, by the method that it is reported with.
     fn ratio(
         &self,
-        numerator: &Combination,
-        denominator: &Combination,
+        pair: Option<&Pair>,
+        absent: &'static str,
     ) -> Result<RatioBounds, &'static str> {
         let by = match self.basis.model.lines() {
             [_, _] => Interval::Exact,
             _ => Interval::MlsRoot,
         };
-        self.limits_of_ratio(numerator, denominator, by)
+        self.limits_of_ratio(pair.ok_or(absent)?, by)
+    }
+
+    fn part_over_gauge(&self) -> Result<RatioBounds, &'static str> {
+        self.ratio(self.basis.ratios.part_to_gauge.as_ref(), NOT_APART)
     }
 }
 
@@ -264,32 +265,22 @@ struct ShareOfTv<'a> {
 
 impl ShareOfTv<'_> {
     fn repeatability(&self) -> Figure {
-        let q = &self.evidence.basis.quantities;
-        let ratio = || {
-            let repeatability = q.repeatability.as_ref().ok_or(NOT_APART)?;
-            self.evidence
-                .ratio(&q.total.minus(repeatability), repeatability)
-        };
+        let pair = self.evidence.basis.ratios.rest_to_repeatability.as_ref();
         self.figure(
             self.evidence.estimates.repeatability,
             NOT_APART,
             As::Denominator,
-            ratio,
+            || self.evidence.ratio(pair, NOT_APART),
         )
     }
 
     fn reproducibility(&self) -> Figure {
-        let q = &self.evidence.basis.quantities;
-        let ratio = || {
-            let reproducibility = q.reproducibility.as_ref().ok_or(ONE_LEVEL)?;
-            self.evidence
-                .ratio(reproducibility, &q.total.minus(reproducibility))
-        };
+        let pair = self.evidence.basis.ratios.reproducibility_to_rest.as_ref();
         self.figure(
             self.evidence.estimates.reproducibility,
             ONE_LEVEL,
             As::Numerator,
-            ratio,
+            || self.evidence.ratio(pair, ONE_LEVEL),
         )
     }
 

@@ -19,8 +19,10 @@ mod fault;
 mod figure;
 mod figures;
 mod generalized;
+mod glance;
 pub mod ladder;
 mod limits;
+mod linear;
 mod mls;
 mod model;
 pub mod over_time;
@@ -47,6 +49,7 @@ pub use design::{CELLS_MAX, Design, DesignError, FACTORS_MAX, Factor, PART};
 pub use fault::StudyError;
 pub use figure::{Figure, Interval, Open};
 pub use generalized::{DRAWS, SEED, Simulation};
+pub use glance::Glance;
 pub use limits::Quantity;
 pub use model::{Line, Model, WITHIN_CELLS};
 pub use record::{

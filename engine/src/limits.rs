@@ -13,12 +13,11 @@
 //!
 //! Sources: Satterthwaite, *Biometrics Bulletin* 2 (1946) 110–114; the others stand in the modules of the methods.
 
-use crate::combination::Combination;
 use crate::figure::{Bounds, Figure, Interval};
 use crate::figures::Evidence;
 use crate::generalized::{Draws, percentile};
-use crate::mls::Constants;
-use crate::quantile::{Side, chi_square, f};
+use crate::linear::{Linear, Pair};
+use crate::quantile::{Side, f};
 
 pub(crate) const MANY_CROSSED: &str =
     "simulated limits hold their confidence only with fewer than three factors crossed";
@@ -61,8 +60,8 @@ pub(crate) struct RatioBounds {
 impl Evidence<'_> {
     /// The figure with limits by a stated method instead of the one it is reported with.
     pub(crate) fn figure_by(&self, quantity: Quantity, by: Interval) -> Option<Figure> {
-        let (q, e) = (&self.basis.quantities, self.estimates);
-        let sum = |c: Option<&Combination>, estimate: Option<f64>| {
+        let (q, e) = (&self.basis.quantities, &self.estimates);
+        let sum = |c: Option<&Linear>, estimate: Option<f64>| {
             let limits = self.limits_of_sum(c?, by);
             Some(figure(estimate?, limits.map(|b| b.rising(|x| x.max(0.0)))))
         };
@@ -77,7 +76,7 @@ impl Evidence<'_> {
             )),
             Quantity::Total => sum(Some(&q.total), Some(e.total)),
             Quantity::PartToGauge => {
-                let ratio = self.limits_of_ratio(q.part.as_ref()?, q.gauge.as_ref()?, by);
+                let ratio = self.limits_of_ratio(self.basis.ratios.part_to_gauge.as_ref()?, by);
                 let bounds = ratio.map(|r| Bounds {
                     lower: r.two_sided.0,
                     upper: r.two_sided.1,
@@ -90,8 +89,8 @@ impl Evidence<'_> {
     }
 
     /// The method that limits of a sum of mean squares are reported by.
-    pub(crate) fn usual(&self, sum: &Combination) -> Interval {
-        if self.alone(sum).is_some() {
+    pub(crate) fn usual(&self, figure: &Linear) -> Interval {
+        if figure.is_error {
             Interval::Exact
         } else {
             Interval::Mls
@@ -101,14 +100,17 @@ impl Evidence<'_> {
     /// Limits of a sum of mean squares; those of the exact and the linear methods may be below zero.
     pub(crate) fn limits_of_sum(
         &self,
-        sum: &Combination,
+        figure: &Linear,
         by: Interval,
     ) -> Result<Bounds, &'static str> {
         match by {
-            Interval::Exact => self.exact(self.alone(sum).ok_or(NOT_EXACT)?),
-            Interval::Mls => Ok(self.modified_large_sample(&sum.weights())),
-            Interval::Satterthwaite => self.satterthwaite(sum),
-            Interval::Generalized => Ok(self.percentiles(&mut self.draws().variance(sum, self.ms))),
+            Interval::Exact if figure.is_error => self.exact(figure),
+            Interval::Exact => Err(NOT_EXACT),
+            Interval::Mls => Ok(self.modified_large_sample(figure, by)),
+            Interval::Satterthwaite => self.satterthwaite(figure),
+            Interval::Generalized => {
+                Ok(self.percentiles(&mut self.draws().variance(&figure.sum, self.ms)))
+            }
             Interval::MlsRoot | Interval::Bootstrap => Err(NOT_FOR_THIS),
         }
     }
@@ -116,8 +118,7 @@ impl Evidence<'_> {
     /// Limits of a ratio of two variances, at zero or above; an infinite one means none.
     pub(crate) fn limits_of_ratio(
         &self,
-        numerator: &Combination,
-        denominator: &Combination,
+        pair: &Pair,
         by: Interval,
     ) -> Result<RatioBounds, &'static str> {
         match (by, self.basis.model.lines()) {
@@ -125,19 +126,15 @@ impl Evidence<'_> {
                 self.ratio_to_error(self.basis.model.readings() / term.cells)
             }
             (Interval::Exact, _) => Err(NOT_EXACT),
-            (Interval::MlsRoot, _) => {
-                let (n, d) = (numerator.weights(), denominator.weights());
-                let limits = |constants: &Constants| constants.ratio(&n, &d, self.ms);
-                Ok(RatioBounds {
-                    two_sided: limits(&self.basis.two_sided).ok_or(REST_ZERO)?,
-                    one_sided: limits(&self.basis.one_sided).ok_or(REST_ZERO)?,
-                    interval: by,
-                })
-            }
+            (Interval::MlsRoot, _) => Ok(RatioBounds {
+                two_sided: pair.two_sided.limits(self.ms).ok_or(REST_ZERO)?,
+                one_sided: pair.one_sided.limits(self.ms).ok_or(REST_ZERO)?,
+                interval: by,
+            }),
             (Interval::Generalized, _) => {
                 let draws = self.draws();
-                let mut ratios = draws.variance(numerator, self.ms);
-                let divisors = draws.divisor(denominator, self.ms);
+                let mut ratios = draws.variance(&pair.numerator, self.ms);
+                let divisors = draws.divisor(&pair.denominator, self.ms);
                 for (n, d) in ratios.iter_mut().zip(divisors) {
                     *n = if *n == 0.0 { 0.0 } else { *n / d.max(0.0) };
                 }
@@ -169,10 +166,10 @@ impl Evidence<'_> {
     fn drawn_total(&self) -> Vec<f64> {
         let (draws, q) = (self.draws(), &self.basis.quantities);
         let (Some(gauge), Some(part)) = (&q.gauge, &q.part) else {
-            return draws.variance(&q.total, self.ms);
+            return draws.variance(&q.total.sum, self.ms);
         };
-        let mut total = draws.divisor(gauge, self.ms);
-        for (sum, part) in total.iter_mut().zip(draws.variance(part, self.ms)) {
+        let mut total = draws.divisor(&gauge.sum, self.ms);
+        for (sum, part) in total.iter_mut().zip(draws.variance(&part.sum, self.ms)) {
             *sum += part;
         }
         total
@@ -182,54 +179,41 @@ impl Evidence<'_> {
         self.basis.draws()
     }
 
-    /// The mean square that a sum consists of, when it is the error's alone and as it is.
-    fn alone(&self, sum: &Combination) -> Option<usize> {
-        let error = self.ms.len() - 1;
-        let alone = sum.members().eq([error]) && sum.weights()[error] == 1.0;
-        alone.then_some(error)
-    }
-
-    fn exact(&self, line: usize) -> Result<Bounds, &'static str> {
-        if self.ms[line] == 0.0 && !self.all_equal {
+    /// The error alone: its modified-large-sample limits are the exact ones.
+    fn exact(&self, figure: &Linear) -> Result<Bounds, &'static str> {
+        if self.ms[self.ms.len() - 1] == 0.0 && !self.all_equal {
             return Err(NO_REPEATS);
         }
-        Ok(self.chi_square_limits(self.ms[line], self.basis.df[line], Interval::Exact))
+        Ok(self.modified_large_sample(figure, Interval::Exact))
     }
 
-    fn modified_large_sample(&self, weights: &[f64]) -> Bounds {
+    fn modified_large_sample(&self, figure: &Linear, interval: Interval) -> Bounds {
         Bounds {
-            lower: self.basis.two_sided.lower(weights, self.ms),
-            upper: self.basis.two_sided.upper(weights, self.ms),
-            at_least: self.basis.one_sided.lower(weights, self.ms),
-            interval: Interval::Mls,
+            lower: figure.lower.at(self.ms),
+            upper: figure.upper.at(self.ms),
+            at_least: figure.at_least.at(self.ms),
+            interval,
         }
     }
 
-    fn satterthwaite(&self, sum: &Combination) -> Result<Bounds, &'static str> {
-        let value = sum.value(self.ms);
+    fn satterthwaite(&self, figure: &Linear) -> Result<Bounds, &'static str> {
+        let value = figure.sum.value(self.ms);
         if value <= 0.0 {
             return Err(NOT_POSITIVE);
         }
-        let weights = sum.weights();
-        let pieces = weights.iter().zip(self.ms).zip(&self.basis.df);
+        let pieces = figure.weights.iter().zip(self.ms).zip(&self.basis.df);
         let pieces = pieces.map(|((c, ms), n)| (c * ms / value).powi(2) / n);
         let df = 1.0 / pieces.sum::<f64>();
         if df < DF_LEAST {
             return Err(FEW_DF);
         }
-        Ok(self.chi_square_limits(value, df, Interval::Satterthwaite))
-    }
-
-    /// Limits of the expectation of `value`, where `df × value / expectation` is chi-square.
-    fn chi_square_limits(&self, value: f64, df: f64, interval: Interval) -> Bounds {
-        let alpha = 1.0 - self.confidence;
-        let limit = |side, a| df * value / chi_square(side, a, df);
-        Bounds {
-            lower: limit(Side::Above, alpha / 2.0),
-            upper: limit(Side::Below, alpha / 2.0),
-            at_least: limit(Side::Above, alpha),
-            interval,
-        }
+        let quantiles = self.basis.matched();
+        Ok(Bounds {
+            lower: df * value / quantiles.lower.at(df),
+            upper: df * value / quantiles.upper.at(df),
+            at_least: df * value / quantiles.at_least.at(df),
+            interval: Interval::Satterthwaite,
+        })
     }
 
     /// The exact limits of `variance of the only term / variance of the error`.

@@ -1,4 +1,4 @@
-//! Modified-large-sample limits for sums of mean squares of any signs, and for ratios of two such sums.
+//! Modified-large-sample limits for sums of mean squares of any signs.
 //!
 //! Mean squares are independent, `df × MS / E[MS]` chi-square. With `x_q = |c_q| MS_q`, `A` the positive and `B`
 //! the negative members, the lower limit of `g = sum c_q MS_q` is `g - √V`:
@@ -14,11 +14,13 @@
 //! confidence and stays exact for a single mean square.
 //!
 //! Sources: Graybill & Wang, *J. Amer. Statist. Assoc.* 75 (1980) 869–873; Ting, Burdick, Graybill, Jeyaratnam
-//! & Lu, *J. Statist. Comput. Simul.* 35 (1990) 135–143; Gui, Graybill, Burdick & Ting, *J. Statist. Plann.
-//! Inference* 48 (1995) for ratios.
+//! & Lu, *J. Statist. Comput. Simul.* 35 (1990) 135–143.
+
+mod ratio;
+
+pub(crate) use ratio::Ratio;
 
 use crate::quantile::{Side, chi_square, f};
-use crate::root;
 
 /// One-sided tail probability above which `G`, `H` or `F - 1` may be negative for some df ≥ 1.
 const SIGNS_CHANGE_ABOVE: f64 = 0.3;
@@ -90,51 +92,51 @@ impl Constants {
         }
     }
 
+    /// The lower limit of `sum c_q MS_q`, one-sided; may be negative.
+    pub(crate) fn lower_limit(&self, c: &[f64]) -> Limit {
+        Limit {
+            weights: c.to_vec(),
+            form: self.form(c),
+            from: Side::Below,
+            signs_may_change: self.signs_may_change,
+        }
+    }
+
+    /// The upper limit of `sum c_q MS_q`, one-sided; may be negative.
+    pub(crate) fn upper_limit(&self, c: &[f64]) -> Limit {
+        let negated: Vec<f64> = c.iter().map(|c| -c).collect();
+        Limit {
+            from: Side::Above,
+            ..self.lower_limit(&negated)
+        }
+    }
+
     /// One-sided lower limit of `sum c_q MS_q`; may be negative.
     pub(crate) fn lower(&self, c: &[f64], ms: &[f64]) -> f64 {
-        let largest = c
-            .iter()
-            .zip(ms)
-            .map(|(c, ms)| (c * ms).abs())
-            .fold(0.0, f64::max);
-        if largest == 0.0 {
-            return 0.0;
-        }
-        let members = c.iter().filter(|&&c| c > 0.0).count();
-        let mixed = c.iter().any(|&c| c < 0.0);
-        let x = |q: usize| c[q].abs() * ms[q] / largest;
-        let mut v = 0.0;
-        for (q, &c_q) in c.iter().enumerate() {
-            if c_q < 0.0 {
-                v += signed_square(self.h[q]) * x(q) * x(q);
-            }
-            if c_q <= 0.0 {
-                continue;
-            }
-            v += signed_square(self.g[q]) * x(q) * x(q);
-            for (s, &c_s) in c.iter().enumerate() {
-                if c_s < 0.0 {
-                    v += self.across(q, s) * x(q) * x(s);
-                } else if mixed && s > q && c_s > 0.0 {
-                    v += self.alike(q, s) / (members - 1) as f64 * x(q) * x(s);
-                }
-            }
-        }
-        let g: f64 = c.iter().zip(ms).map(|(c, ms)| c * ms / largest).sum();
-        let root = if v >= 0.0 {
-            v.sqrt()
-        } else if self.signs_may_change {
-            -(-v).sqrt()
-        } else {
-            0.0
-        };
-        (g - root) * largest
+        self.lower_limit(c).at(ms)
     }
 
     /// One-sided upper limit of `sum c_q MS_q`; may be negative.
     pub(crate) fn upper(&self, c: &[f64], ms: &[f64]) -> f64 {
-        let negated: Vec<f64> = c.iter().map(|c| -c).collect();
-        -self.lower(&negated, ms)
+        self.upper_limit(c).at(ms)
+    }
+
+    /// What `x_q x_s` enters `V` with, for the signs of `c`; one row after another, `q <= s`.
+    fn form(&self, c: &[f64]) -> Vec<f64> {
+        let members = c.iter().filter(|&&c| c > 0.0).count();
+        let mixed = c.iter().any(|&c| c < 0.0);
+        let coefficient = |q: usize, s: usize| match (sign(c[q]), sign(c[s])) {
+            (1, 1) if q == s => signed_square(self.g[q]),
+            (-1, -1) if q == s => signed_square(self.h[q]),
+            (1, 1) if mixed => self.alike(q, s) / (members - 1) as f64,
+            (1, -1) => self.across(q, s),
+            (-1, 1) => self.across(s, q),
+            _ => 0.0,
+        };
+        (0..c.len())
+            .flat_map(|q| (q..c.len()).map(move |s| (q, s)))
+            .map(|(q, s)| coefficient(q, s))
+            .collect()
     }
 
     fn across(&self, q: usize, s: usize) -> f64 {
@@ -150,52 +152,45 @@ impl Constants {
             - signed_square(self.g[q]) * n / m
             - signed_square(self.g[t]) * m / n
     }
+}
 
-    /// Limits of `numerator / denominator` at zero or above; the upper one may be infinite.
-    ///
-    /// `None` when the denominator's estimate is not above zero.
-    pub(crate) fn ratio(
-        &self,
-        numerator: &[f64],
-        denominator: &[f64],
-        ms: &[f64],
-    ) -> Option<(f64, f64)> {
-        let value = |c: &[f64]| -> f64 { c.iter().zip(ms).map(|(c, ms)| c * ms).sum() };
-        if value(denominator) <= 0.0 {
-            return None;
+/// One limit of one sum of mean squares, with all that does not depend on them worked out.
+#[derive(Debug, Clone)]
+pub(crate) struct Limit {
+    /// Those of the sum; of its negative for an upper limit.
+    weights: Vec<f64>,
+    form: Vec<f64>,
+    from: Side,
+    signs_may_change: bool,
+}
+
+impl Limit {
+    /// The limit for given mean squares.
+    pub(crate) fn at(&self, ms: &[f64]) -> f64 {
+        let products = || self.weights.iter().zip(ms).map(|(c, ms)| c * ms);
+        let largest = products().fold(0.0, |a: f64, x| a.max(x.abs()));
+        if largest == 0.0 {
+            return 0.0;
         }
-        let estimate = value(numerator) / value(denominator);
-        let difference = |rho: f64| -> Vec<f64> {
-            numerator
+        let scale = 1.0 / largest;
+        let mut rest = &self.form[..];
+        let (mut g, mut v) = (0.0, 0.0);
+        for (q, x) in products().enumerate() {
+            let row;
+            (row, rest) = rest.split_at(self.weights.len() - q);
+            let sum: f64 = row
                 .iter()
-                .zip(denominator)
-                .map(|(n, d)| n - rho * d)
-                .collect()
-        };
-        let lower_at = |rho: f64| self.lower(&difference(rho), ms);
-        let upper_at = |rho: f64| self.upper(&difference(rho), ms);
-
-        let lower = if estimate > 0.0 && lower_at(0.0) > 0.0 {
-            root::between(lower_at, 0.0, estimate)
-        } else {
-            0.0
-        };
-        let upper = if self.lower(denominator, ms) <= 0.0 {
-            f64::INFINITY
-        } else if upper_at(0.0) > 0.0 {
-            let mut end = estimate.max(1e-6);
-            while upper_at(end) > 0.0 && end.is_finite() {
-                end *= 2.0;
-            }
-            if end.is_finite() {
-                root::between(upper_at, estimate.max(0.0), end)
-            } else {
-                f64::INFINITY
-            }
-        } else {
-            0.0
-        };
-        Some((lower, upper))
+                .zip(products().skip(q))
+                .map(|(k, x)| k * x.abs() * scale)
+                .sum();
+            g += x * scale;
+            v += sum * x.abs() * scale;
+        }
+        let limit = (g - root_of(v, self.signs_may_change)) * largest;
+        match self.from {
+            Side::Below => limit,
+            Side::Above => -limit,
+        }
     }
 }
 
@@ -208,6 +203,21 @@ pub(crate) fn lower_at_log_odds(c: &[f64], df: &[f64], ms: &[f64], log_odds: f64
     }
     let negated: Vec<f64> = c.iter().map(|c| -c).collect();
     -Constants::for_lower(&negated, df, tail).lower(&negated, ms)
+}
+
+/// The root of `V`. Rounding can bring a tiny negative; where signs may change, its root counts the other way.
+fn root_of(v: f64, signs_may_change: bool) -> f64 {
+    if v >= 0.0 {
+        v.sqrt()
+    } else if signs_may_change {
+        -(-v).sqrt()
+    } else {
+        0.0
+    }
+}
+
+fn sign(x: f64) -> i8 {
+    i8::from(x > 0.0) - i8::from(x < 0.0)
 }
 
 fn signed_square(x: f64) -> f64 {

@@ -208,6 +208,12 @@ impl Model {
         self.part
     }
 
+    /// The line that a term's sum of squares goes to: its own, or the error.
+    pub(crate) fn home(&self, term: FactorSet) -> usize {
+        let own = self.lines.iter().position(|l| l.set == Some(term));
+        own.unwrap_or(self.lines.len() - 1)
+    }
+
     /// Lines that are neither part nor error.
     pub(crate) fn reproducibility(&self) -> impl Iterator<Item = usize> {
         (0..self.lines.len() - 1).filter(|&i| Some(i) != self.part)

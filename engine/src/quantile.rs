@@ -3,7 +3,11 @@
 //! A quantile is found by Newton steps on the log of the smaller tail against the log of the point, which is
 //! concave, so that the steps come from one side; a bracket catches a poor start.
 
-use crate::tails::{self, Tails, ln_gamma_1p};
+mod by_df;
+
+pub(crate) use by_df::ChiSquareByDf;
+
+use crate::tails::{Beta, Gamma, Tails, ln_gamma_1p};
 
 const STEPS_MAX: usize = 200;
 /// How far to look for the other side of the root, in log of the point.
@@ -45,7 +49,8 @@ pub fn chi_square(side: Side, p: f64, df: f64) -> f64 {
     } else {
         f64::NAN
     };
-    2.0 * quantile(side, p, guess, first_term, |x| tails::gamma(a, x))
+    let gamma = Gamma::new(a);
+    2.0 * quantile(side, p, guess, first_term, |x| gamma.at(x))
 }
 
 /// The value of F with `df1` and `df2` degrees of freedom that has probability `p` on `side` of it.
@@ -63,15 +68,16 @@ fn f_below(p: f64, df1: f64, df2: f64) -> f64 {
     // Near zero the lower tail is (a f / b)^a / (a B(a, b)).
     let ln_a_beta = ln_gamma_1p(a) + ln_gamma_1p(b) - ln_gamma_1p(a + b) + (a / b).ln_1p();
     let first_term = |ln_p: f64| (ln_p + ln_a_beta) / a + (b / a).ln();
+    let beta = Beta::new(a, b);
     quantile(Side::Below, p, f_guess(p, df1, df2), first_term, |x| {
-        tails::beta(a, b, x)
+        beta.at(x)
     })
 }
 
 /// Probability of chi-square with `df` degrees of freedom above `x`.
 pub fn chi_square_above(x: f64, df: f64) -> f64 {
     if x > 0.0 {
-        tails::gamma(df / 2.0, x / 2.0).upper.clamp(0.0, 1.0)
+        Gamma::new(df / 2.0).at(x / 2.0).upper.clamp(0.0, 1.0)
     } else {
         1.0
     }
@@ -79,10 +85,25 @@ pub fn chi_square_above(x: f64, df: f64) -> f64 {
 
 /// Probability of F with `df1` and `df2` degrees of freedom above `x`.
 pub fn f_above(x: f64, df1: f64, df2: f64) -> f64 {
-    if x > 0.0 {
-        tails::beta(df1 / 2.0, df2 / 2.0, x).upper.clamp(0.0, 1.0)
-    } else {
-        1.0
+    FTail::new(df1, df2).above(x)
+}
+
+/// The upper tail of F with one pair of degrees of freedom.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct FTail(Beta);
+
+impl FTail {
+    pub(crate) fn new(df1: f64, df2: f64) -> FTail {
+        FTail(Beta::new(df1 / 2.0, df2 / 2.0))
+    }
+
+    /// Probability above `x`.
+    pub(crate) fn above(&self, x: f64) -> f64 {
+        if x > 0.0 {
+            self.0.at(x).upper.clamp(0.0, 1.0)
+        } else {
+            1.0
+        }
     }
 }
 

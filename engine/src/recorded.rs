@@ -159,7 +159,9 @@ impl Recorded {
 
     /// Variances built from components cut at zero.
     pub(crate) fn estimates(&self) -> Estimates {
-        Estimates::new(&self.model, &self.components(), &self.ms)
+        let components = self.components();
+        let raw: Vec<f64> = components.iter().map(|c| c.value(&self.ms)).collect();
+        Estimates::new(&self.model, &raw)
     }
 
     /// Standard deviation of the gauge, in reading units; absent where it does not stand apart from the parts.

@@ -1,15 +1,14 @@
 //! From readings to a study.
 
-use std::sync::OnceLock;
+use std::sync::{Arc, Mutex, PoisonError};
 
 use crate::basis::Basis;
-use crate::combination::Combination;
 use crate::design::Design;
-use crate::estimates::Estimates;
 use crate::fault::StudyError;
 use crate::figure::{Figure, Interval};
 use crate::figures::{Evidence, ndc};
 use crate::generalized::Simulation;
+use crate::glance::Glance;
 use crate::limits::Quantity;
 use crate::model::Model;
 use crate::record::{
@@ -19,14 +18,14 @@ use crate::remarks::outside;
 use crate::reml;
 use crate::risk::of_study;
 use crate::settings::{Interaction, Judge, Settings, Tolerance};
-use crate::sums::{Sums, Sweep};
+use crate::sums::Sweep;
 use crate::table::Table;
 use crate::tolerance::Share;
 
 /// Readings that a cell may hold.
 pub const TRIALS_MAX: usize = 10_000;
 /// Differences between readings that squares can hold.
-const SPREAD: std::ops::RangeInclusive<f64> = 1e-140..=1e140;
+pub(crate) const SPREAD: std::ops::RangeInclusive<f64> = 1e-140..=1e140;
 
 /// Works out one study: `cells[i]` is the cell of `values[i]`, readings of one cell are its trials.
 ///
@@ -54,20 +53,13 @@ pub fn analyse(
 pub struct Prepared {
     design: Design,
     trials: usize,
-    settings: Settings,
-    simulation: Simulation,
-    sweep: Sweep,
-    kept: Basis,
+    pub(crate) settings: Settings,
+    pub(crate) sweep: Sweep,
+    kept: Arc<Basis>,
     /// The term that the error holds for want of a second trial.
     taken_in: Option<String>,
-    /// All interaction terms pooled; absent when there are none.
-    pooled: Option<Pooled>,
-}
-
-#[derive(Debug)]
-struct Pooled {
-    model: Model,
-    basis: OnceLock<Basis>,
+    /// Models without some of the interaction terms, as far as they were needed.
+    others: Mutex<Vec<Arc<Basis>>>,
 }
 
 impl Prepared {
@@ -81,21 +73,18 @@ impl Prepared {
         settings: &Settings,
     ) -> Result<Prepared, StudyError> {
         check(design, trials, settings)?;
-        let kept = Basis::new(Model::estimable(design, trials), settings);
-        let interactions = kept.model.interactions();
-        let pooled = (!interactions.is_empty()).then(|| kept.model.without(design, &interactions));
+        let sweep = Sweep::new(design, trials);
+        let model = Model::estimable(design, trials);
+        let taken_in = model.taken_in_by_error(design);
+        let kept = Basis::new(model, &sweep, settings, Simulation::default());
         Ok(Prepared {
             design: design.clone(),
             trials,
             settings: *settings,
-            simulation: Simulation::default(),
-            sweep: Sweep::new(design, trials),
-            taken_in: kept.model.taken_in_by_error(design),
-            kept,
-            pooled: pooled.map(|model| Pooled {
-                model,
-                basis: OnceLock::new(),
-            }),
+            sweep,
+            kept: Arc::new(kept),
+            taken_in,
+            others: Mutex::default(),
         })
     }
 
@@ -109,10 +98,10 @@ impl Prepared {
         values: &[f64],
         tolerance: &Tolerance,
     ) -> Result<Study, StudyError> {
-        let readings = self.by_cell(cells, values)?;
-        let sums = self.sweep.sums(&readings);
-        let share = Share::of(tolerance, &self.settings, sums.grand_mean);
-        Ok(self.with_basis(&sums, |basis| self.record(basis, &sums, &share)))
+        let mut glance = self.glance();
+        glance.take(&self.by_cell(cells, values)?)?;
+        let share = Share::of(tolerance, &self.settings, glance.sums.grand_mean);
+        Ok(self.record(&glance, &share))
     }
 
     /// One figure of a characteristic with limits by a stated method instead of the one it is reported with; `None`
@@ -127,124 +116,104 @@ impl Prepared {
         quantity: Quantity,
         by: Interval,
     ) -> Result<Option<Figure>, StudyError> {
-        let readings = self.by_cell(cells, values)?;
-        let sums = self.sweep.sums(&readings);
-        let share = Share::of(&Tolerance::default(), &self.settings, sums.grand_mean);
-        Ok(self.with_basis(&sums, |basis| {
-            self.with_evidence(basis, &sums, &share, |evidence, _| {
-                evidence.figure_by(quantity, by)
-            })
-        }))
+        let mut glance = self.glance();
+        glance.take(&self.by_cell(cells, values)?)?;
+        Ok(glance.figure(quantity, by))
+    }
+
+    /// Numbers of one characteristic after another without their records, for many characteristics.
+    pub fn glance(&self) -> Glance<'_> {
+        Glance::new(self)
     }
 
     /// The same with other draws than the usual ones, at least one.
-    pub fn simulated(mut self, simulation: Simulation) -> Prepared {
+    pub fn simulated(self, simulation: Simulation) -> Prepared {
         let simulation = Simulation {
             draws: simulation.draws.max(1),
             ..simulation
         };
-        self.simulation = simulation;
-        self.kept = self.kept.simulated(simulation);
-        if let Some(pooled) = &mut self.pooled {
-            pooled.basis = OnceLock::new();
+        let model = self.kept.model.clone();
+        let kept = Basis::new(model, &self.sweep, &self.settings, simulation);
+        Prepared {
+            kept: Arc::new(kept),
+            others: Mutex::default(),
+            ..self
         }
-        self
     }
 
-    fn with_basis<T>(&self, sums: &Sums, f: impl FnOnce(&Basis) -> T) -> T {
-        let basis = |model| Basis::new(model, &self.settings).simulated(self.simulation);
-        match (self.partly_pooled(sums), &self.pooled) {
-            (None, _) => f(&self.kept),
-            (Some(model), Some(pooled)) if pooled.model == model => {
-                f(pooled.basis.get_or_init(|| basis(model)))
-            }
-            (Some(model), _) => f(&basis(model)),
+    pub(crate) fn kept(&self) -> Arc<Basis> {
+        Arc::clone(&self.kept)
+    }
+
+    /// A model without some lines of another, worked out when first needed.
+    fn without(&self, model: &Model, lines: &[usize]) -> Arc<Basis> {
+        let model = model.without(&self.design, lines);
+        let mut others = self.others.lock().unwrap_or_else(PoisonError::into_inner);
+        if let Some(basis) = others.iter().find(|basis| basis.model == model) {
+            return Arc::clone(basis);
         }
+        let simulation = self.kept.simulation();
+        let basis = Arc::new(Basis::new(model, &self.sweep, &self.settings, simulation));
+        others.push(Arc::clone(&basis));
+        basis
     }
 
     /// The model after pooling, largest interaction first; `None` when nothing is pooled.
-    fn partly_pooled(&self, sums: &Sums) -> Option<Model> {
+    pub(crate) fn partly_pooled(&self, glance: &Glance<'_>) -> Option<Arc<Basis>> {
         let Interaction::PoolAbove(limit) = self.settings.interaction else {
             return None;
         };
-        let mut model: Option<Model> = None;
+        let mut pooled: Option<Arc<Basis>> = None;
+        let (mut ss, mut ms) = (Vec::new(), Vec::new());
         loop {
-            let now = model.as_ref().unwrap_or(&self.kept.model);
-            let table = Table::new(now, sums);
+            let basis = pooled.as_deref().unwrap_or(&self.kept);
+            basis.mean_squares(&glance.sums, &mut ss, &mut ms);
+            let table = Table {
+                basis,
+                ss: &ss,
+                ms: &ms,
+            };
             let above = |line: usize| table.test(line).is_some_and(|t| t.p > limit);
-            let drop = now
+            let model = &basis.model;
+            let drop = model
                 .interactions()
                 .into_iter()
-                .find(|&line| now.is_outermost(line) && above(line));
-            let Some(line) = drop else { return model };
-            model = Some(now.without(&self.design, &[line]));
+                .find(|&line| model.is_outermost(line) && above(line));
+            let Some(line) = drop else { return pooled };
+            pooled = Some(self.without(model, &[line]));
         }
     }
 
-    fn with_evidence<T>(
-        &self,
-        basis: &Basis,
-        sums: &Sums,
-        share: &Share,
-        f: impl FnOnce(&Evidence<'_>, &Table<'_>) -> T,
-    ) -> T {
-        let model = &basis.model;
-        let table = Table::new(model, sums);
-        let components: Vec<Combination> = (0..model.lines().len())
-            .map(|i| model.component(i))
-            .collect();
-        let estimates = Estimates::new(model, &components, &table.ms);
-        let evidence = Evidence {
-            basis,
-            ms: &table.ms,
-            estimates: &estimates,
-            share,
-            confidence: self.settings.confidence,
-            all_equal: sums.total() == 0.0,
-            grand_mean: sums.grand_mean,
-        };
-        f(&evidence, &table)
-    }
-
-    fn record(&self, basis: &Basis, sums: &Sums, share: &Share) -> Study {
-        self.with_evidence(basis, sums, share, |evidence, table| {
-            self.study_of(evidence, table, sums, share)
-        })
-    }
-
-    fn study_of(
-        &self,
-        evidence: &Evidence<'_>,
-        table: &Table<'_>,
-        sums: &Sums,
-        share: &Share,
-    ) -> Study {
+    fn record(&self, glance: &Glance<'_>, share: &Share) -> Study {
+        let evidence = glance.evidence(share);
         let components = evidence.components();
         let figures = evidence.figures();
         let part_to_gauge = evidence.part_to_gauge();
         let judged = &figures.gauge.share_of_tolerance;
+        let grand_mean = glance.sums.grand_mean;
         let process = self.settings.process;
-        let risk = process.map(|process| of_study(evidence, process, sums.grand_mean));
+        let risk = process.map(|process| of_study(&evidence, process, grand_mean));
         let drawn = [judged]
             .into_iter()
             .chain(risk.as_ref().map(|risk| &risk.producer.joint))
             .any(|figure| figure.interval == Some(Interval::Generalized));
+        let simulation = self.kept.simulation();
         Study {
             tolerance_rule: share.rule,
             design: self.layout(),
             method: "anova",
             confidence: self.settings.confidence,
             spread_sds: self.settings.spread_sds,
-            interaction: self.interaction(&evidence.basis.model, sums, share),
-            mean_squares: table.lines(sums.total()),
+            interaction: self.interaction(glance, share),
+            mean_squares: glance.table().lines(glance.sums.total()),
             reml: None,
             ndc: ndc(&part_to_gauge),
             risk,
-            chance_above: self.chance_above(evidence, judged.estimate.is_some()),
+            chance_above: self.chance_above(&evidence, judged.estimate.is_some()),
             remarks: self.remarks(&components, &figures, &part_to_gauge),
-            draws: drawn.then_some(self.simulation.draws),
-            seed: drawn.then_some(self.simulation.seed),
-            grand_mean: sums.grand_mean,
+            draws: drawn.then_some(simulation.draws),
+            seed: drawn.then_some(simulation.seed),
+            grand_mean,
             judged_share: match self.settings.judge {
                 Judge::Estimate => judged.estimate,
                 Judge::Chance(p) => judged.estimate.and_then(|_| evidence.judged_lower(p)),
@@ -281,25 +250,33 @@ impl Prepared {
         }
     }
 
-    fn interaction(&self, chosen: &Model, sums: &Sums, share: &Share) -> InteractionChoice {
+    fn interaction(&self, glance: &Glance<'_>, share: &Share) -> InteractionChoice {
         let full = &self.kept.model;
-        let largest = full.interactions().first().copied();
-        let nothing_pooled = chosen == full;
-        let other = if nothing_pooled {
-            self.pooled.as_ref().map(|p| &p.model)
+        let interactions = full.interactions();
+        let chosen = &glance.basis.model;
+        let other = if interactions.is_empty() {
+            None
+        } else if chosen == full {
+            Some(self.without(full, &interactions))
         } else {
-            Some(full)
+            Some(self.kept())
+        };
+        let under = |basis: Arc<Basis>| {
+            let mut seen = self.glance();
+            seen.sums = glance.sums.clone();
+            seen.under(basis);
+            seen
         };
         InteractionChoice {
             kept: !chosen.interactions().is_empty(),
-            p: largest
-                .and_then(|line| Table::new(full, sums).test(line))
-                .map(|t| t.p),
+            p: interactions
+                .first()
+                .and_then(|&largest| under(self.kept()).p(largest)),
             pool_above: match self.settings.interaction {
                 Interaction::Keep => None,
                 Interaction::PoolAbove(p) => Some(p),
             },
-            other_reading: other.map(|model| other_reading(model, sums, share)),
+            other_reading: other.map(|basis| other_reading(&under(basis), share)),
         }
     }
 
@@ -340,15 +317,10 @@ impl Prepared {
     }
 }
 
-fn other_reading(model: &Model, sums: &Sums, share: &Share) -> OtherReading {
-    let table = Table::new(model, sums);
-    let components: Vec<Combination> = (0..model.lines().len())
-        .map(|i| model.component(i))
-        .collect();
-    let gauge_sd = Estimates::new(model, &components, &table.ms)
-        .gauge
-        .map(f64::sqrt);
-    let per_sd = share.per_sd.as_ref().ok().filter(|_| sums.total() > 0.0);
+fn other_reading(seen: &Glance<'_>, share: &Share) -> OtherReading {
+    let gauge_sd = seen.estimates().gauge.map(f64::sqrt);
+    let spread = seen.sums.total() > 0.0;
+    let per_sd = share.per_sd.as_ref().ok().filter(|_| spread);
     OtherReading {
         gauge_sd,
         share_of_tolerance: gauge_sd.zip(per_sd).map(|(sd, per_sd)| sd * per_sd),

@@ -1,18 +1,69 @@
-//! The table of mean squares of one study under one model: sums of squares, F and p.
+//! The table of mean squares of one study: sums of squares, F and p.
 
 use std::borrow::Cow;
 
+use crate::basis::Basis;
+use crate::combination::Combination;
 use crate::model::Model;
-use crate::quantile::f_above;
-use crate::record::{Against, MeanSquare};
-use crate::sums::Sums;
+use crate::quantile::{FTail, f_above};
+use crate::record::{Against as Written, MeanSquare};
 
-/// Mean squares of all lines of a model.
-#[derive(Debug, Clone)]
-pub(crate) struct Table<'a> {
-    model: &'a Model,
-    pub(crate) ss: Vec<f64>,
-    pub(crate) ms: Vec<f64>,
+/// What a line is tested against.
+#[derive(Debug)]
+pub(crate) struct Against {
+    sum: Combination,
+    df: f64,
+    by: By,
+}
+
+#[derive(Debug)]
+enum By {
+    /// One mean square: F is exact.
+    One { df: f64, tail: FTail },
+    /// Several: degrees of freedom by Satterthwaite.
+    Several { weights: Vec<f64>, df: Vec<f64> },
+}
+
+impl Against {
+    /// `None` for the error.
+    pub(crate) fn new(model: &Model, line: usize) -> Option<Against> {
+        let sum = model.denominator(line)?;
+        let df = |q: usize| model.lines()[q].df as f64;
+        let members: Vec<usize> = sum.members().collect();
+        let by = match members[..] {
+            [only] => By::One {
+                df: df(only),
+                tail: FTail::new(df(line), df(only)),
+            },
+            _ => By::Several {
+                weights: sum.weights(),
+                df: (0..model.lines().len()).map(df).collect(),
+            },
+        };
+        Some(Against {
+            sum,
+            df: df(line),
+            by,
+        })
+    }
+
+    fn test(&self, observed: f64, ms: &[f64]) -> Option<Test> {
+        let value = self.sum.value(ms);
+        if value <= 0.0 {
+            return None;
+        }
+        let f = observed / value;
+        let (p, against_df) = match &self.by {
+            By::One { df, tail } => (tail.above(f), *df),
+            By::Several { weights, df } => {
+                let pieces = weights.iter().zip(ms).zip(df);
+                let pieces = pieces.map(|((w, ms), df)| (w * ms / value).powi(2) / df);
+                let against_df = 1.0 / pieces.sum::<f64>();
+                (f_above(f, self.df, against_df), against_df)
+            }
+        };
+        Some(Test { f, p, against_df })
+    }
 }
 
 /// One F test.
@@ -23,51 +74,25 @@ pub(crate) struct Test {
     pub(crate) against_df: f64,
 }
 
-impl<'a> Table<'a> {
-    pub(crate) fn new(model: &'a Model, sums: &Sums) -> Self {
-        let sets: Vec<_> = (0..model.lines().len())
-            .filter_map(|i| model.set(i))
-            .collect();
-        let rest = sums.beside(|set| sets.contains(&set));
-        let ss: Vec<f64> = sets.iter().map(|&set| sums.of(set)).chain([rest]).collect();
-        let ms = ss
-            .iter()
-            .zip(model.lines())
-            .map(|(ss, line)| ss / line.df as f64)
-            .collect();
-        Table { model, ss, ms }
-    }
+/// Mean squares of all lines of a model.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Table<'a> {
+    pub(crate) basis: &'a Basis,
+    pub(crate) ss: &'a [f64],
+    pub(crate) ms: &'a [f64],
+}
 
+impl Table<'_> {
     /// The F test of a line; `None` for the error and where the denominator is not above zero.
     pub(crate) fn test(&self, line: usize) -> Option<Test> {
-        let against = self.model.denominator(line)?;
-        let value = against.value(&self.ms);
-        if value <= 0.0 {
-            return None;
-        }
-        let df = |q: usize| self.model.lines()[q].df as f64;
-        let members: Vec<usize> = against.members().collect();
-        let against_df = match members[..] {
-            [only] => df(only),
-            _ => {
-                let pieces = against
-                    .weights()
-                    .into_iter()
-                    .enumerate()
-                    .map(|(q, w)| (w * self.ms[q] / value).powi(2) / df(q));
-                1.0 / pieces.sum::<f64>()
-            }
-        };
-        let f = self.ms[line] / value;
-        Some(Test {
-            f,
-            p: f_above(f, df(line), against_df),
-            against_df,
-        })
+        self.basis.against[line]
+            .as_ref()?
+            .test(self.ms[line], self.ms)
     }
 
     /// The lines in the order of the model, then the total.
     pub(crate) fn lines(&self, total: f64) -> Vec<MeanSquare> {
+        let model = &self.basis.model;
         let line = |(i, line): (usize, &crate::model::Line)| {
             let test = self.test(i);
             MeanSquare {
@@ -83,13 +108,13 @@ impl<'a> Table<'a> {
                 against_df: test.map(|t| t.against_df),
             }
         };
-        let mut lines: Vec<MeanSquare> = self.model.lines().iter().enumerate().map(line).collect();
+        let mut lines: Vec<MeanSquare> = model.lines().iter().enumerate().map(line).collect();
         lines.push(MeanSquare {
             name: "total".into(),
             of: Vec::new(),
             within: Vec::new(),
             ss: total,
-            df: self.model.readings() - 1,
+            df: model.readings() - 1,
             ms: None,
             f: None,
             p: None,
@@ -99,17 +124,13 @@ impl<'a> Table<'a> {
         lines
     }
 
-    fn against(&self, line: usize) -> Option<Vec<Against>> {
-        let against = self.model.denominator(line)?;
-        let weights = against.weights();
-        Some(
-            against
-                .members()
-                .map(|q| Against {
-                    name: self.model.lines()[q].name.clone(),
-                    weight: weights[q],
-                })
-                .collect(),
-        )
+    fn against(&self, line: usize) -> Option<Vec<Written>> {
+        let sum = &self.basis.against[line].as_ref()?.sum;
+        let weights = sum.weights();
+        let written = |q: usize| Written {
+            name: self.basis.model.lines()[q].name.clone(),
+            weight: weights[q],
+        };
+        Some(sum.members().map(written).collect())
     }
 }

@@ -22,48 +22,79 @@ pub(crate) struct Tails {
     pub(crate) slope: f64,
 }
 
-/// Tails of the gamma distribution of shape `a` at `x > 0`.
-pub(crate) fn gamma(a: f64, x: f64) -> Tails {
-    let factor = (-deviance(a, x, x - a) - stirling_error(a)).exp() / (2.0 * PI * a).sqrt();
-    let slope = factor * a;
-    if x < a + 1.0 {
-        let lower = factor * gamma_series(a, x);
-        Tails {
-            lower,
-            upper: 1.0 - lower,
-            slope,
-        }
-    } else {
-        let upper = slope * gamma_fraction(a, x);
-        Tails {
-            lower: 1.0 - upper,
-            upper,
-            slope,
+/// The gamma distribution of one shape.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Gamma {
+    a: f64,
+    scale: f64,
+}
+
+impl Gamma {
+    pub(crate) fn new(a: f64) -> Gamma {
+        let scale = (-stirling_error(a)).exp() / (2.0 * PI * a).sqrt();
+        Gamma { a, scale }
+    }
+
+    /// Tails at `x > 0`.
+    pub(crate) fn at(&self, x: f64) -> Tails {
+        let a = self.a;
+        let factor = (-deviance(a, x, x - a)).exp() * self.scale;
+        let slope = factor * a;
+        if x < a + 1.0 {
+            let lower = factor * gamma_series(a, x);
+            Tails {
+                lower,
+                upper: 1.0 - lower,
+                slope,
+            }
+        } else {
+            let upper = slope * gamma_fraction(a, x);
+            Tails {
+                lower: 1.0 - upper,
+                upper,
+                slope,
+            }
         }
     }
 }
 
-/// Tails of F with `2a` and `2b` degrees of freedom at `f > 0`.
-pub(crate) fn beta(a: f64, b: f64, f: f64) -> Tails {
-    let below = a * f / (a * f + b);
-    let above = b / (a * f + b);
-    let apart = a * b * (f - 1.0) / (a * f + b);
-    let deviances = deviance(a, (a + b) * below, apart) + deviance(b, (a + b) * above, -apart);
-    let log = stirling_error(a + b) - stirling_error(a) - stirling_error(b) - deviances;
-    let slope = log.exp() * (a * b / (2.0 * PI * (a + b))).sqrt();
-    if below < (a + 1.0) / (a + b + 2.0) {
-        let lower = slope * beta_fraction(a, b, below, above, -apart);
-        Tails {
-            lower,
-            upper: 1.0 - lower,
-            slope,
-        }
-    } else {
-        let upper = slope * beta_fraction(b, a, above, below, apart);
-        Tails {
-            lower: 1.0 - upper,
-            upper,
-            slope,
+/// F with one pair of degrees of freedom, `2a` and `2b`.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Beta {
+    a: f64,
+    b: f64,
+    scale: f64,
+}
+
+impl Beta {
+    pub(crate) fn new(a: f64, b: f64) -> Beta {
+        let log = stirling_error(a + b) - stirling_error(a) - stirling_error(b);
+        let scale = log.exp() * (a * b / (2.0 * PI * (a + b))).sqrt();
+        Beta { a, b, scale }
+    }
+
+    /// Tails at `f > 0`.
+    pub(crate) fn at(&self, f: f64) -> Tails {
+        let (a, b) = (self.a, self.b);
+        let below = a * f / (a * f + b);
+        let above = b / (a * f + b);
+        let apart = a * b * (f - 1.0) / (a * f + b);
+        let deviances = deviance(a, (a + b) * below, apart) + deviance(b, (a + b) * above, -apart);
+        let slope = (-deviances).exp() * self.scale;
+        if below < (a + 1.0) / (a + b + 2.0) {
+            let lower = slope * beta_fraction(a, b, below, above, -apart);
+            Tails {
+                lower,
+                upper: 1.0 - lower,
+                slope,
+            }
+        } else {
+            let upper = slope * beta_fraction(b, a, above, below, apart);
+            Tails {
+                lower: 1.0 - upper,
+                upper,
+                slope,
+            }
         }
     }
 }

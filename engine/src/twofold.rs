@@ -63,7 +63,50 @@ impl Twofold {
         Twofold::sum(square.head, square.tail + 2.0 * self.head * self.tail)
     }
 
+    /// `self - other`, rounded.
+    pub(crate) fn less(self, other: Twofold) -> f64 {
+        (self.head - other.head) + (self.tail - other.tail)
+    }
+
     pub(crate) fn value(self) -> f64 {
         self.head + self.tail
+    }
+}
+
+/// A sum that is added to, with what its additions round off kept beside it.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Running {
+    sum: f64,
+    rest: f64,
+}
+
+impl Running {
+    pub(crate) const ZERO: Running = Running {
+        sum: 0.0,
+        rest: 0.0,
+    };
+
+    pub(crate) fn add(&mut self, x: f64) {
+        let sum = Twofold::sum(self.sum, x);
+        self.sum = sum.head;
+        self.rest += sum.tail;
+    }
+
+    pub(crate) fn add_twofold(&mut self, x: Twofold) {
+        self.add(x.head);
+        self.rest += x.tail;
+    }
+
+    pub(crate) fn value(self) -> Twofold {
+        Twofold::sum(self.sum, self.rest)
+    }
+}
+
+impl From<Twofold> for Running {
+    fn from(x: Twofold) -> Running {
+        Running {
+            sum: x.head,
+            rest: x.tail,
+        }
     }
 }

@@ -149,7 +149,7 @@ fn limits(
         return Err(MANY_CROSSED);
     }
     let (draws, ms, q) = (evidence.draws(), evidence.ms, &basis.quantities);
-    let gauges = draws.divisor(q.gauge.as_ref().ok_or(NOT_APART)?, ms);
+    let gauges = draws.divisor(&q.gauge.as_ref().ok_or(NOT_APART)?.sum, ms);
     let least = GAUGE_SD_LEAST * judged.gauge_sd;
     let with_gauge = |gauge: f64| Judged {
         gauge_sd: gauge.max(0.0).sqrt().max(least),
@@ -164,7 +164,7 @@ fn limits(
     match process {
         Process::Stated { .. } => gauges.iter().for_each(|&g| keep(&with_gauge(g))),
         Process::StudyParts => {
-            let parts = draws.variance(q.part.as_ref().ok_or(NOT_APART)?, ms);
+            let parts = draws.variance(&q.part.as_ref().ok_or(NOT_APART)?.sum, ms);
             let means = draws.mean(judged.mean, &basis.model.variance_of_mean(), ms);
             for ((&gauge, part), mean) in gauges.iter().zip(parts).zip(means) {
                 keep(&Judged {

@@ -1,0 +1,155 @@
+//! The closed-form numbers of one characteristic after another, without their records.
+//!
+//! A glance holds the mean squares of the readings that it took last; every other number is worked out when it is asked
+//! for. Its room is used again: once it has taken a characteristic, the next ones allocate nothing, except for figures
+//! with simulated limits.
+
+use std::sync::Arc;
+
+use crate::basis::Basis;
+use crate::estimates::Estimates;
+use crate::fault::StudyError;
+use crate::figure::{Figure, Interval};
+use crate::figures::Evidence;
+use crate::limits::Quantity;
+use crate::model::Line;
+use crate::settings::Tolerance;
+use crate::study::{Prepared, SPREAD};
+use crate::sums::{Room, Sums};
+use crate::table::Table;
+use crate::tolerance::Share;
+
+/// A look at one characteristic; see [`Prepared::glance`].
+#[derive(Debug)]
+pub struct Glance<'a> {
+    prepared: &'a Prepared,
+    pub(crate) basis: Arc<Basis>,
+    pub(crate) sums: Sums,
+    room: Room,
+    share: Share,
+    ss: Vec<f64>,
+    pub(crate) ms: Vec<f64>,
+    raw: Vec<f64>,
+    estimates: Estimates,
+}
+
+impl<'a> Glance<'a> {
+    pub(crate) fn new(prepared: &'a Prepared) -> Glance<'a> {
+        Glance {
+            prepared,
+            basis: prepared.kept(),
+            sums: Sums::default(),
+            room: Room::default(),
+            share: Share::of(&Tolerance::default(), &prepared.settings, 0.0),
+            ss: Vec::new(),
+            ms: Vec::new(),
+            raw: Vec::new(),
+            estimates: Estimates::default(),
+        }
+    }
+
+    /// Takes the readings of one characteristic, in reading units: cell by cell in the order of the design, the trials
+    /// of a cell side by side.
+    ///
+    /// Their order within a cell changes nothing but the last digit.
+    ///
+    /// # Errors
+    /// [`StudyError`] when their number is not that of the prepared study or one is not finite. The glance then holds
+    /// no characteristic: every number is absent until the next are taken.
+    pub fn take(&mut self, readings: &[f64]) -> Result<(), StudyError> {
+        self.ms.clear();
+        let expected = self.prepared.sweep.readings();
+        if readings.len() != expected {
+            return Err(StudyError::Lengths {
+                cells: expected,
+                values: readings.len(),
+            });
+        }
+        self.prepared
+            .sweep
+            .sums(readings, &mut self.room, &mut self.sums);
+        let not_finite = !(self.sums.grand_mean.is_finite() && self.sums.within.is_finite());
+        if not_finite && let Some(row) = readings.iter().position(|y| !y.is_finite()) {
+            let value = readings[row];
+            return Err(StudyError::NotFinite { row, value });
+        }
+        let spread = self.sums.spread;
+        if spread != 0.0 && !SPREAD.contains(&spread) {
+            return Err(StudyError::Spread(spread));
+        }
+        self.under(self.prepared.kept());
+        if let Some(pooled) = self.prepared.partly_pooled(self) {
+            self.under(pooled);
+        }
+        Ok(())
+    }
+
+    /// The same sums of squares under another model.
+    pub(crate) fn under(&mut self, basis: Arc<Basis>) {
+        basis.mean_squares(&self.sums, &mut self.ss, &mut self.ms);
+        self.raw.clear();
+        let components = basis.components.iter();
+        self.raw
+            .extend(components.map(|component| component.sum.value(&self.ms)));
+        self.estimates = Estimates::new(&basis.model, &self.raw);
+        self.basis = basis;
+    }
+
+    /// The lines that mean squares, F tests and components belong to, the error last; pooled ones are missing.
+    pub fn lines(&self) -> &[Line] {
+        self.basis.model.lines()
+    }
+
+    /// Mean squares of the lines, in squared reading units; none before readings are taken.
+    pub fn mean_squares(&self) -> &[f64] {
+        &self.ms
+    }
+
+    /// Upper tail of the F of a line; `None` for the error and where the denominator is not above zero.
+    pub fn p(&self, line: usize) -> Option<f64> {
+        if line < self.ms.len() {
+            self.table().test(line).map(|test| test.p)
+        } else {
+            None
+        }
+    }
+
+    /// The variance component of a line as it is, below zero or not, in squared reading units.
+    pub fn component(&self, line: usize) -> Option<f64> {
+        let taken = !self.ms.is_empty();
+        self.raw.get(line).copied().filter(|_| taken)
+    }
+
+    /// A figure with limits by a stated method; `None` where the design does not show it.
+    pub fn figure(&self, quantity: Quantity, by: Interval) -> Option<Figure> {
+        if self.ms.is_empty() {
+            return None;
+        }
+        self.evidence(&self.share).figure_by(quantity, by)
+    }
+
+    pub(crate) fn table(&self) -> Table<'_> {
+        Table {
+            basis: &self.basis,
+            ss: &self.ss,
+            ms: &self.ms,
+        }
+    }
+
+    pub(crate) fn estimates(&self) -> &Estimates {
+        &self.estimates
+    }
+
+    pub(crate) fn evidence<'b>(&'b self, share: &'b Share) -> Evidence<'b> {
+        Evidence {
+            basis: &self.basis,
+            ms: &self.ms,
+            raw: &self.raw,
+            estimates: self.estimates,
+            share,
+            confidence: self.prepared.settings.confidence,
+            all_equal: self.sums.total() == 0.0,
+            grand_mean: self.sums.grand_mean,
+        }
+    }
+}

@@ -1,0 +1,168 @@
+//! Limits of the ratio of two sums of mean squares: the ratio at which the limit of their difference is zero.
+//!
+//! Between the ratios at which a weight of `numerator - ρ denominator` changes sign, `V` of that difference is a
+//! polynomial of second degree in `ρ`. Its coefficients are themselves quadratic forms of the mean squares, worked
+//! out once for all characteristics of a design; a characteristic costs a few of them and a root.
+//!
+//! Source: Gui, Graybill, Burdick & Ting, *J. Statist. Plann. Inference* 48 (1995).
+
+use super::{Constants, Limit, root_of};
+use crate::root;
+
+/// The limits of one ratio at one tail probability, with all that does not depend on mean squares worked out.
+#[derive(Debug, Clone)]
+pub(crate) struct Ratio {
+    numerator: Vec<f64>,
+    denominator: Vec<f64>,
+    signs_may_change: bool,
+    denominator_at_least: Limit,
+    pieces: Vec<Piece>,
+}
+
+/// A stretch of ratios over which no weight of the difference changes sign.
+#[derive(Debug, Clone)]
+struct Piece {
+    end: f64,
+    lower: [Vec<f64>; 3],
+    upper: [Vec<f64>; 3],
+}
+
+/// `V` of the difference as a polynomial in the ratio, lowest power first.
+type Polynomial = [f64; 3];
+
+impl Ratio {
+    pub(crate) fn new(constants: &Constants, numerator: &[f64], denominator: &[f64]) -> Ratio {
+        let mut ends: Vec<f64> = numerator
+            .iter()
+            .zip(denominator)
+            .map(|(n, d)| n / d)
+            .filter(|end| *end > 0.0 && end.is_finite())
+            .collect();
+        ends.sort_by(f64::total_cmp);
+        ends.dedup();
+        ends.push(f64::INFINITY);
+        let mut start = 0.0;
+        let piece = |end: f64| {
+            let inside = if end.is_finite() {
+                0.5 * (start + end)
+            } else {
+                2.0 * start + 1.0
+            };
+            start = end;
+            let difference: Vec<f64> = numerator
+                .iter()
+                .zip(denominator)
+                .map(|(n, d)| n - inside * d)
+                .collect();
+            let negated: Vec<f64> = difference.iter().map(|c| -c).collect();
+            let powers = |c: &[f64]| powers(&constants.form(c), c, numerator, denominator);
+            Piece {
+                end,
+                lower: powers(&difference),
+                upper: powers(&negated),
+            }
+        };
+        let pieces = ends.into_iter().map(piece).collect();
+        Ratio {
+            numerator: numerator.to_vec(),
+            denominator: denominator.to_vec(),
+            denominator_at_least: constants.lower_limit(denominator),
+            signs_may_change: constants.signs_may_change,
+            pieces,
+        }
+    }
+
+    /// Both limits at zero or above; the upper one may be infinite.
+    ///
+    /// `None` when the denominator's estimate is not above zero.
+    pub(crate) fn limits(&self, ms: &[f64]) -> Option<(f64, f64)> {
+        let largest = ms.iter().fold(0.0, |a: f64, x| a.max(*x));
+        let sum = |c: &[f64]| -> f64 { c.iter().zip(ms).map(|(c, ms)| c * (ms / largest)).sum() };
+        let (n, d) = (sum(&self.numerator), sum(&self.denominator));
+        if d.is_nan() || d <= 0.0 {
+            return None;
+        }
+        let root_of = |v| root_of(v, self.signs_may_change);
+        let root = |[a, b, c]: Polynomial, rho: f64| root_of(a + rho * (b + rho * c));
+        let below = |v, rho: f64| n - rho * d - root(v, rho);
+        let above = |v, rho: f64| n - rho * d + root(v, rho);
+        // The same over the ratio, in terms of its inverse: reaches up to a ratio without end.
+        let above_inverse = |[a, b, c]: Polynomial, t: f64| n * t - d + root_of(c + t * (b + t * a));
+
+        let estimate = n / d;
+        let mut lower = 0.0;
+        if estimate > 0.0 {
+            let mut start = 0.0;
+            for piece in &self.pieces {
+                let v = piece.lower.each_ref().map(|form| value(form, ms, largest));
+                let end = piece.end.min(estimate);
+                if below(v, start) <= 0.0 {
+                    break;
+                }
+                if below(v, end) <= 0.0 {
+                    lower = root::between(|rho| below(v, rho), start, end);
+                    break;
+                }
+                start = end;
+                lower = end;
+            }
+        }
+        if self.denominator_at_least.at(ms) <= 0.0 {
+            return Some((lower, f64::INFINITY));
+        }
+        let mut upper = 0.0;
+        let mut start = 0.0;
+        for piece in &self.pieces {
+            let v = piece.upper.each_ref().map(|form| value(form, ms, largest));
+            if above(v, start) <= 0.0 {
+                break;
+            }
+            if piece.end == f64::INFINITY {
+                let from = start.max(f64::MIN_POSITIVE.sqrt());
+                upper = 1.0 / root::between(|t| above_inverse(v, t), 0.0, 1.0 / from);
+            } else if above(v, piece.end) <= 0.0 {
+                upper = root::between(|rho| above(v, rho), start, piece.end);
+                break;
+            } else {
+                upper = piece.end;
+            }
+            start = piece.end;
+        }
+        Some((lower, upper))
+    }
+}
+
+/// The forms that stand before the powers of the ratio, given that of `V` for the signs of `c`.
+fn powers(form: &[f64], c: &[f64], n: &[f64], d: &[f64]) -> [Vec<f64>; 3] {
+    let pairs = || (0..c.len()).flat_map(|q| (q..c.len()).map(move |s| (q, s)));
+    let signed = |(&k, (q, s)): (&f64, (usize, usize))| {
+        if k == 0.0 {
+            0.0
+        } else {
+            k * c[q].signum() * c[s].signum()
+        }
+    };
+    let each = |product: &dyn Fn(usize, usize) -> f64| -> Vec<f64> {
+        let pairs = form.iter().zip(pairs());
+        pairs.map(|(k, (q, s))| signed((k, (q, s))) * product(q, s)).collect()
+    };
+    [
+        each(&|q, s| n[q] * n[s]),
+        each(&|q, s| -(n[q] * d[s] + d[q] * n[s])),
+        each(&|q, s| d[q] * d[s]),
+    ]
+}
+
+/// A quadratic form of mean squares, each over the largest.
+fn value(form: &[f64], ms: &[f64], largest: f64) -> f64 {
+    let scale = 1.0 / largest;
+    let mut rest = form;
+    let mut sum = 0.0;
+    for (q, x) in ms.iter().enumerate() {
+        let row;
+        (row, rest) = rest.split_at(ms.len() - q);
+        let along: f64 = row.iter().zip(&ms[q..]).map(|(k, x)| k * (x * scale)).sum();
+        sum += along * (x * scale);
+    }
+    sum
+}
