@@ -25,6 +25,8 @@ pub(crate) struct Basis {
     pub(crate) ratios: Ratios,
     /// The lower limit of the gauge at the confidence that judges.
     pub(crate) judging: Option<Limit>,
+    /// Weights of the variance of the grand mean.
+    pub(crate) variance_of_mean: Vec<f64>,
     /// For every term of the design the line that its sum of squares goes to.
     homes: Vec<usize>,
     matched: OnceLock<Matched>,
@@ -94,6 +96,7 @@ impl Basis {
             },
             judging,
             homes: sweep.terms().map(|set| model.home(set)).collect(),
+            variance_of_mean: model.variance_of_mean().weights(),
             matched: OnceLock::new(),
             alpha,
             simulation,
@@ -169,16 +172,16 @@ impl Variances {
 
 impl Ratios {
     fn of(sums: &Variances, two_sided: &Constants, one_sided: &Constants) -> Ratios {
-        let pair = |numerator, denominator| Pair::new(numerator, denominator, two_sided, one_sided);
-        let part_to_gauge = sums.part.clone().zip(sums.gauge.clone());
-        let repeatability = sums.repeatability.clone();
-        let reproducibility = sums.reproducibility.clone();
+        let pair = |numerator: &Combination, denominator: &Combination| {
+            Pair::new(numerator, denominator, two_sided, one_sided)
+        };
+        let Variances { part, gauge, .. } = sums;
+        let rest = |of: &Combination| sums.total.minus(of);
+        let (repeats, between) = (&sums.repeatability, &sums.reproducibility);
         Ratios {
-            part_to_gauge: part_to_gauge.map(|(part, gauge)| pair(part, gauge)),
-            rest_to_repeatability: repeatability
-                .map(|repeats| pair(sums.total.minus(&repeats), repeats)),
-            reproducibility_to_rest: reproducibility
-                .map(|between| pair(between.clone(), sums.total.minus(&between))),
+            part_to_gauge: part.as_ref().zip(gauge.as_ref()).map(|(p, g)| pair(p, g)),
+            rest_to_repeatability: repeats.as_ref().map(|e| pair(&rest(e), e)),
+            reproducibility_to_rest: between.as_ref().map(|r| pair(r, &rest(r))),
         }
     }
 }

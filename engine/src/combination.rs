@@ -57,6 +57,23 @@ impl Combination {
             .value()
     }
 
+    /// The same in lowest terms.
+    pub(crate) fn reduced(&self) -> Combination {
+        let gcd = |a: usize, b: usize| {
+            let (mut a, mut b) = (a, b);
+            while b != 0 {
+                (a, b) = (b, a % b);
+            }
+            a
+        };
+        let numerators = self.numerators.iter();
+        let common = numerators.fold(self.denominator, |a, n| gcd(a, n.unsigned_abs() as usize));
+        Combination {
+            numerators: self.numerators.iter().map(|n| n / common as i64).collect(),
+            denominator: self.denominator / common,
+        }
+    }
+
     pub(crate) fn plus(&self, other: &Combination) -> Combination {
         self.joined(other, |a, b| a + b)
     }

@@ -8,12 +8,11 @@ use std::borrow::Cow;
 
 use crate::basis::Basis;
 use crate::chance;
-use crate::combination::Combination;
 use crate::estimates::Estimates;
 use crate::figure::{Bounds, Figure, Interval};
-use crate::generalized::percentile;
 use crate::limits::{MANY_CROSSED, RatioBounds, figure};
 use crate::linear::{Linear, Pair};
+use crate::percentile::BLOCK;
 use crate::record::{Component, Figures, Ndc, Spread};
 use crate::tolerance::{FromMean, Share};
 
@@ -122,8 +121,11 @@ impl Evidence<'_> {
             .ok()
             .filter(|_| !self.all_equal)?;
         if let Some(from) = &self.share.from_estimated_mean {
-            let mut draws = self.shares_of_distance(&gauge.sum, from).ok()?;
-            return Some(percentile(&mut draws, 1.0 - confidence)).filter(|x| x.is_finite());
+            self.check_crossed().ok()?;
+            let [at_least] = self.draws().percentiles([1.0 - confidence], |first, out| {
+                self.shares_of_distance(gauge, from, first, out);
+            });
+            return Some(at_least).filter(|x| x.is_finite());
         }
         if gauge.is_error && self.ms[self.ms.len() - 1] <= 0.0 {
             return None;
@@ -136,7 +138,7 @@ impl Evidence<'_> {
         let (Ok(per_sd), Some(gauge)) = (&self.share.per_sd, &self.basis.quantities.gauge) else {
             return [None; N];
         };
-        if gauge.sum.members().all(|q| self.ms[q] == 0.0) {
+        if gauge.is_zero(self.ms) {
             return [None; N];
         }
         let Some(from) = &self.share.from_estimated_mean else {
@@ -146,11 +148,14 @@ impl Evidence<'_> {
             };
             return limits.map(|limit| Some(above(limit)));
         };
-        let Ok(draws) = self.shares_of_distance(&gauge.sum, from) else {
+        if self.check_crossed().is_err() {
             return [None; N];
-        };
-        let above = |limit: f64| draws.iter().filter(|&&share| share > limit).count();
-        limits.map(|limit| Some(above(limit) as f64 / draws.len() as f64))
+        }
+        let shares = self
+            .draws()
+            .all(|first, out| self.shares_of_distance(gauge, from, first, out));
+        let above = |limit: f64| shares.iter().filter(|&&share| share > limit).count();
+        limits.map(|limit| Some(above(limit) as f64 / shares.len() as f64))
     }
 
     fn spread(
@@ -171,7 +176,7 @@ impl Evidence<'_> {
             Ok(_) if self.all_equal => Figure::absent(ALL_EQUAL),
             Ok(per_sd) => match (self.share.from_estimated_mean, figure) {
                 (Some(from), Some(figure)) => {
-                    self.share_of_distance(&variance, &figure.sum, *per_sd, &from)
+                    self.share_of_distance(&variance, figure, *per_sd, &from)
                 }
                 _ => sd.rising(|sd| sd * per_sd),
             },
@@ -188,7 +193,7 @@ impl Evidence<'_> {
     fn share_of_distance(
         &self,
         variance: &Figure,
-        sum: &Combination,
+        of: &Linear,
         per_sd: f64,
         from: &FromMean,
     ) -> Figure {
@@ -197,29 +202,32 @@ impl Evidence<'_> {
             (Some(why), None) => Figure::without_limits(estimate, why.clone()),
             _ => figure(
                 estimate,
-                self.shares_of_distance(sum, from)
-                    .map(|mut draws| self.percentiles(&mut draws)),
+                self.check_crossed().map(|()| {
+                    self.percentiles(|first, out| self.shares_of_distance(of, from, first, out))
+                }),
             ),
         }
     }
 
-    /// Draws of the share of a distance from an estimated mean.
-    pub(crate) fn shares_of_distance(
-        &self,
-        sum: &Combination,
-        from: &FromMean,
-    ) -> Result<Vec<f64>, &'static str> {
-        let model = &self.basis.model;
-        if model.crossed() > 2 {
+    /// Whether simulated limits hold their confidence in this design.
+    fn check_crossed(&self) -> Result<(), &'static str> {
+        if self.basis.model.crossed() > 2 {
             return Err(MANY_CROSSED);
         }
+        Ok(())
+    }
+
+    /// Draws of the share of a distance from an estimated mean, from the `first` on.
+    fn shares_of_distance(&self, of: &Linear, from: &FromMean, first: usize, out: &mut [f64]) {
         let draws = self.draws();
-        let mut shares = draws.variance(sum, self.ms);
-        let means = draws.mean(self.grand_mean, &model.variance_of_mean(), self.ms);
-        for (share, mean) in shares.iter_mut().zip(means) {
-            *share = from.share(share.sqrt(), mean);
+        let its_variance = &self.basis.variance_of_mean;
+        let mut means = [0.0; BLOCK];
+        let means = &mut means[..out.len()];
+        draws.variance(&of.weights, self.ms, first, out);
+        draws.mean(self.grand_mean, its_variance, self.ms, first, means);
+        for (share, mean) in out.iter_mut().zip(means) {
+            *share = from.share(share.sqrt(), *mean);
         }
-        Ok(shares)
     }
 
     fn variance(&self, of: &Linear, estimate: f64) -> Figure {

@@ -12,7 +12,7 @@
 //! Sources: Weerahandi, *J. Amer. Statist. Assoc.* 88 (1993) 899–905; Hamada & Weerahandi, *J. Quality
 //! Technology* 32 (2000) 241–253.
 
-use crate::combination::Combination;
+use crate::percentile::{BLOCK, percentiles};
 use crate::random::Random;
 
 /// Draws when nothing else is asked for.
@@ -61,85 +61,79 @@ impl Draws {
         }
     }
 
-    /// `sum c_q W_q`, one value a draw; may be negative.
-    pub(crate) fn sum(&self, combination: &Combination, ms: &[f64]) -> Vec<f64> {
-        let mut sums = vec![0.0; self.normal.len()];
-        let weights = combination.weights();
+    /// How many there are.
+    pub(crate) fn count(&self) -> usize {
+        self.normal.len()
+    }
+
+    /// `sum c_q W_q` for the draws from the `first` on; may be negative.
+    pub(crate) fn sum(&self, weights: &[f64], ms: &[f64], first: usize, out: &mut [f64]) {
+        out.fill(0.0);
         for (weight, (ms, ratios)) in weights.iter().zip(ms.iter().zip(&self.ratios)) {
             let scale = weight * ms;
             if scale != 0.0 {
-                for (sum, ratio) in sums.iter_mut().zip(ratios) {
+                for (sum, ratio) in out.iter_mut().zip(&ratios[first..]) {
                     *sum += scale * ratio;
                 }
             }
         }
-        sums
     }
 
-    /// A variance: the combination of `W`, cut at zero.
-    pub(crate) fn variance(&self, combination: &Combination, ms: &[f64]) -> Vec<f64> {
-        let mut sums = self.sum(combination, ms);
-        sums.iter_mut().for_each(|x| *x = x.max(0.0));
-        sums
+    /// A variance: the sum, cut at zero.
+    pub(crate) fn variance(&self, weights: &[f64], ms: &[f64], first: usize, out: &mut [f64]) {
+        self.sum(weights, ms, first, out);
+        out.iter_mut().for_each(|x| *x = x.max(0.0));
     }
 
     /// The gauge variance where something is divided by it: never below the repeatability of the same draw.
-    pub(crate) fn divisor(&self, gauge: &Combination, ms: &[f64]) -> Vec<f64> {
-        let mut sums = self.sum(gauge, ms);
-        if gauge.numerators().iter().any(|&n| n < 0)
+    pub(crate) fn divisor(&self, gauge: &[f64], ms: &[f64], first: usize, out: &mut [f64]) {
+        self.sum(gauge, ms, first, out);
+        if gauge.iter().any(|&c| c < 0.0)
             && let (Some(ratios), Some(&ms)) = (self.ratios.last(), ms.last())
         {
-            for (sum, ratio) in sums.iter_mut().zip(ratios) {
+            for (sum, ratio) in out.iter_mut().zip(&ratios[first..]) {
                 *sum = sum.max(ms * ratio);
             }
         }
-        sums
     }
 
     /// The grand mean.
-    pub(crate) fn mean(&self, grand_mean: f64, its_variance: &Combination, ms: &[f64]) -> Vec<f64> {
-        let mut means = self.variance(its_variance, ms);
-        for (x, z) in means.iter_mut().zip(&self.normal) {
+    pub(crate) fn mean(
+        &self,
+        grand_mean: f64,
+        its_variance: &[f64],
+        ms: &[f64],
+        first: usize,
+        out: &mut [f64],
+    ) {
+        self.variance(its_variance, ms, first, out);
+        for (x, z) in out.iter_mut().zip(&self.normal[first..]) {
             *x = grand_mean - z * x.sqrt();
         }
-        means
     }
-}
 
-/// The value of sorted draws at probability `p`: linear interpolation at position `(n - 1) p`.
-///
-/// Puts `values` into another order. They may be infinite, not NaN; at least one.
-pub(crate) fn percentile(values: &mut [f64], p: f64) -> f64 {
-    let position = (values.len() - 1) as f64 * p.clamp(0.0, 1.0);
-    let place = position as usize;
-    let (_, &mut here, above) = values.select_nth_unstable_by(place, f64::total_cmp);
-    let part = position - place as f64;
-    if part == 0.0 {
-        return here;
+    /// Percentiles of what `fill` makes of the draws from some place on.
+    pub(crate) fn percentiles<const N: usize>(
+        &self,
+        probabilities: [f64; N],
+        fill: impl FnMut(usize, &mut [f64]),
+    ) -> [f64; N] {
+        percentiles(self.count(), probabilities, fill)
     }
-    let next = above.iter().copied().fold(f64::INFINITY, f64::min);
-    if next == here {
-        here
-    } else {
-        here + part * (next - here)
+
+    /// What `fill` makes of all draws, at most [`BLOCK`] at a time.
+    pub(crate) fn all(&self, fill: impl Fn(usize, &mut [f64])) -> Vec<f64> {
+        let mut all = vec![0.0; self.count()];
+        for (i, out) in all.chunks_mut(BLOCK).enumerate() {
+            fill(i * BLOCK, out);
+        }
+        all
     }
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    #[test]
-    fn percentiles_interpolate_between_order_statistics() {
-        let mut values = [4.0, 1.0, f64::INFINITY, 2.0, 3.0];
-        assert_eq!(percentile(&mut values, 0.0), 1.0);
-        assert_eq!(percentile(&mut values, 0.5), 3.0);
-        assert!((percentile(&mut values, 0.4) - 2.6).abs() < 1e-15);
-        assert_eq!(percentile(&mut values, 0.75), 4.0);
-        assert_eq!(percentile(&mut values, 0.9), f64::INFINITY);
-        assert_eq!(percentile(&mut values, 1.0), f64::INFINITY);
-        assert_eq!(percentile(&mut [2.5], 0.3), 2.5);
-    }
 
     #[test]
     fn draws_depend_on_df_and_seed_alone() {

@@ -90,7 +90,7 @@ impl<'a> Glance<'a> {
         self.raw.clear();
         let components = basis.components.iter();
         self.raw
-            .extend(components.map(|component| component.sum.value(&self.ms)));
+            .extend(components.map(|component| component.value(&self.ms)));
         self.estimates = Estimates::new(&basis.model, &self.raw);
         self.basis = basis;
     }

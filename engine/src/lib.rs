@@ -26,6 +26,7 @@ mod linear;
 mod mls;
 mod model;
 pub mod over_time;
+mod percentile;
 pub mod planning;
 pub mod quantile;
 mod random;

@@ -15,8 +15,9 @@
 
 use crate::figure::{Bounds, Figure, Interval};
 use crate::figures::Evidence;
-use crate::generalized::{Draws, percentile};
+use crate::generalized::Draws;
 use crate::linear::{Linear, Pair};
+use crate::percentile::BLOCK;
 use crate::quantile::{Side, f};
 
 pub(crate) const MANY_CROSSED: &str =
@@ -72,7 +73,7 @@ impl Evidence<'_> {
             Quantity::Part => sum(q.part.as_ref(), e.part),
             Quantity::Total if by == Interval::Generalized => Some(figure(
                 e.total,
-                Ok(self.percentiles(&mut self.drawn_total())),
+                Ok(self.percentiles(|first, out| self.drawn_total(first, out))),
             )),
             Quantity::Total => sum(Some(&q.total), Some(e.total)),
             Quantity::PartToGauge => {
@@ -108,9 +109,9 @@ impl Evidence<'_> {
             Interval::Exact => Err(NOT_EXACT),
             Interval::Mls => Ok(self.modified_large_sample(figure, by)),
             Interval::Satterthwaite => self.satterthwaite(figure),
-            Interval::Generalized => {
-                Ok(self.percentiles(&mut self.draws().variance(&figure.sum, self.ms)))
-            }
+            Interval::Generalized => Ok(self.percentiles(|first, out| {
+                self.draws().variance(&figure.weights, self.ms, first, out)
+            })),
             Interval::MlsRoot | Interval::Bootstrap => Err(NOT_FOR_THIS),
         }
     }
@@ -132,18 +133,14 @@ impl Evidence<'_> {
                 interval: by,
             }),
             (Interval::Generalized, _) => {
-                let draws = self.draws();
-                let mut ratios = draws.variance(&pair.numerator, self.ms);
-                let divisors = draws.divisor(&pair.denominator, self.ms);
-                for (n, d) in ratios.iter_mut().zip(divisors) {
-                    *n = if *n == 0.0 { 0.0 } else { *n / d.max(0.0) };
-                }
                 let alpha = 1.0 - self.confidence;
-                let mut limits =
-                    |a: f64| (percentile(&mut ratios, a), percentile(&mut ratios, 1.0 - a));
+                let ends = [alpha / 2.0, 1.0 - alpha / 2.0, alpha, 1.0 - alpha];
+                let [lower, upper, at_least, at_most] = self
+                    .draws()
+                    .percentiles(ends, |first, out| self.drawn_ratio(pair, first, out));
                 Ok(RatioBounds {
-                    two_sided: limits(alpha / 2.0),
-                    one_sided: limits(alpha),
+                    two_sided: (lower, upper),
+                    one_sided: (at_least, at_most),
                     interval: by,
                 })
             }
@@ -152,27 +149,46 @@ impl Evidence<'_> {
     }
 
     /// Limits from draws of the figure itself.
-    pub(crate) fn percentiles(&self, draws: &mut [f64]) -> Bounds {
+    pub(crate) fn percentiles(&self, fill: impl FnMut(usize, &mut [f64])) -> Bounds {
         let alpha = 1.0 - self.confidence;
+        let ends = [alpha / 2.0, 1.0 - alpha / 2.0, alpha];
+        let [lower, upper, at_least] = self.draws().percentiles(ends, fill);
         Bounds {
-            lower: percentile(draws, alpha / 2.0),
-            upper: percentile(draws, 1.0 - alpha / 2.0),
-            at_least: percentile(draws, alpha),
+            lower,
+            upper,
+            at_least,
             interval: Interval::Generalized,
         }
     }
 
+    fn drawn_ratio(&self, pair: &Pair, first: usize, out: &mut [f64]) {
+        let draws = self.draws();
+        let mut divisors = [0.0; BLOCK];
+        let divisors = &mut divisors[..out.len()];
+        draws.variance(&pair.numerator, self.ms, first, out);
+        draws.divisor(&pair.denominator, self.ms, first, divisors);
+        for (x, divisor) in out.iter_mut().zip(divisors) {
+            *x = if *x == 0.0 {
+                0.0
+            } else {
+                *x / divisor.max(0.0)
+            };
+        }
+    }
+
     /// Gauge and part added in every draw, each cut by itself.
-    fn drawn_total(&self) -> Vec<f64> {
+    fn drawn_total(&self, first: usize, out: &mut [f64]) {
         let (draws, q) = (self.draws(), &self.basis.quantities);
         let (Some(gauge), Some(part)) = (&q.gauge, &q.part) else {
-            return draws.variance(&q.total.sum, self.ms);
+            return draws.variance(&q.total.weights, self.ms, first, out);
         };
-        let mut total = draws.divisor(&gauge.sum, self.ms);
-        for (sum, part) in total.iter_mut().zip(draws.variance(&part.sum, self.ms)) {
-            *sum += part;
+        let mut parts = [0.0; BLOCK];
+        let parts = &mut parts[..out.len()];
+        draws.divisor(&gauge.weights, self.ms, first, out);
+        draws.variance(&part.weights, self.ms, first, parts);
+        for (sum, part) in out.iter_mut().zip(parts) {
+            *sum += *part;
         }
-        total
     }
 
     pub(crate) fn draws(&self) -> &Draws {
@@ -197,7 +213,7 @@ impl Evidence<'_> {
     }
 
     fn satterthwaite(&self, figure: &Linear) -> Result<Bounds, &'static str> {
-        let value = figure.sum.value(self.ms);
+        let value = figure.value(self.ms);
         if value <= 0.0 {
             return Err(NOT_POSITIVE);
         }

@@ -6,7 +6,8 @@ use crate::mls::{Constants, Limit, Ratio};
 /// A sum of mean squares with its modified-large-sample limits.
 #[derive(Debug, Clone)]
 pub(crate) struct Linear {
-    pub(crate) sum: Combination,
+    numerators: Vec<(usize, f64)>,
+    denominator: f64,
     pub(crate) weights: Vec<f64>,
     pub(crate) lower: Limit,
     pub(crate) upper: Limit,
@@ -19,38 +20,54 @@ pub(crate) struct Linear {
 impl Linear {
     pub(crate) fn new(sum: Combination, two_sided: &Constants, one_sided: &Constants) -> Linear {
         let weights = sum.weights();
+        let reduced = sum.reduced();
         let error = weights.len() - 1;
         Linear {
             lower: two_sided.lower_limit(&weights),
             upper: two_sided.upper_limit(&weights),
             at_least: one_sided.lower_limit(&weights),
             is_error: sum.members().eq([error]) && weights[error] == 1.0,
+            numerators: reduced
+                .members()
+                .map(|q| (q, reduced.numerators()[q] as f64))
+                .collect(),
+            denominator: reduced.denominator() as f64,
             weights,
-            sum,
         }
+    }
+
+    /// Its value for given mean squares.
+    pub(crate) fn value(&self, ms: &[f64]) -> f64 {
+        let sum: f64 = self.numerators.iter().map(|&(q, n)| n * ms[q]).sum();
+        sum / self.denominator
+    }
+
+    /// Whether all its mean squares are zero.
+    pub(crate) fn is_zero(&self, ms: &[f64]) -> bool {
+        self.numerators.iter().all(|&(q, _)| ms[q] == 0.0)
     }
 }
 
 /// The ratio of two sums of mean squares with its limits by the root method.
 #[derive(Debug, Clone)]
 pub(crate) struct Pair {
-    pub(crate) numerator: Combination,
-    pub(crate) denominator: Combination,
+    pub(crate) numerator: Vec<f64>,
+    pub(crate) denominator: Vec<f64>,
     pub(crate) two_sided: Ratio,
     pub(crate) one_sided: Ratio,
 }
 
 impl Pair {
     pub(crate) fn new(
-        numerator: Combination,
-        denominator: Combination,
+        numerator: &Combination,
+        denominator: &Combination,
         two_sided: &Constants,
         one_sided: &Constants,
     ) -> Pair {
-        let (n, d) = (numerator.weights(), denominator.weights());
+        let (numerator, denominator) = (numerator.weights(), denominator.weights());
         Pair {
-            two_sided: Ratio::new(two_sided, &n, &d),
-            one_sided: Ratio::new(one_sided, &n, &d),
+            two_sided: Ratio::new(two_sided, &numerator, &denominator),
+            one_sided: Ratio::new(one_sided, &numerator, &denominator),
             numerator,
             denominator,
         }

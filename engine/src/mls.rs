@@ -95,8 +95,15 @@ impl Constants {
     /// The lower limit of `sum c_q MS_q`, one-sided; may be negative.
     pub(crate) fn lower_limit(&self, c: &[f64]) -> Limit {
         Limit {
-            weights: c.to_vec(),
-            form: self.form(c),
+            weights: (0..c.len())
+                .map(|q| (q, c[q]))
+                .filter(|w| w.1 != 0.0)
+                .collect(),
+            form: pairs(c.len())
+                .zip(self.form(c))
+                .map(|((q, s), k)| (q, s, k * (c[q] * c[s]).abs()))
+                .filter(|(_, _, k)| *k != 0.0)
+                .collect(),
             from: Side::Below,
             signs_may_change: self.signs_may_change,
         }
@@ -133,10 +140,7 @@ impl Constants {
             (-1, 1) => self.across(s, q),
             _ => 0.0,
         };
-        (0..c.len())
-            .flat_map(|q| (q..c.len()).map(move |s| (q, s)))
-            .map(|(q, s)| coefficient(q, s))
-            .collect()
+        pairs(c.len()).map(|(q, s)| coefficient(q, s)).collect()
     }
 
     fn across(&self, q: usize, s: usize) -> f64 {
@@ -158,8 +162,9 @@ impl Constants {
 #[derive(Debug, Clone)]
 pub(crate) struct Limit {
     /// Those of the sum; of its negative for an upper limit.
-    weights: Vec<f64>,
-    form: Vec<f64>,
+    weights: Vec<(usize, f64)>,
+    /// What the product of two mean squares enters `V` with.
+    form: Vec<(usize, usize, f64)>,
     from: Side,
     signs_may_change: bool,
 }
@@ -167,26 +172,18 @@ pub(crate) struct Limit {
 impl Limit {
     /// The limit for given mean squares.
     pub(crate) fn at(&self, ms: &[f64]) -> f64 {
-        let products = || self.weights.iter().zip(ms).map(|(c, ms)| c * ms);
-        let largest = products().fold(0.0, |a: f64, x| a.max(x.abs()));
+        let largest = ms.iter().fold(0.0, |a, &x| if x > a { x } else { a });
         if largest == 0.0 {
             return 0.0;
         }
         let scale = 1.0 / largest;
-        let mut rest = &self.form[..];
-        let (mut g, mut v) = (0.0, 0.0);
-        for (q, x) in products().enumerate() {
-            let row;
-            (row, rest) = rest.split_at(self.weights.len() - q);
-            let sum: f64 = row
-                .iter()
-                .zip(products().skip(q))
-                .map(|(k, x)| k * x.abs() * scale)
-                .sum();
-            g += x * scale;
-            v += sum * x.abs() * scale;
-        }
-        let limit = (g - root_of(v, self.signs_may_change)) * largest;
+        let v: f64 = self
+            .form
+            .iter()
+            .map(|&(q, s, k)| k * (ms[q] * scale) * (ms[s] * scale))
+            .sum();
+        let sum: f64 = self.weights.iter().map(|&(q, c)| c * (ms[q] * scale)).sum();
+        let limit = (sum - root_of(v, self.signs_may_change)) * largest;
         match self.from {
             Side::Below => limit,
             Side::Above => -limit,
@@ -203,6 +200,11 @@ pub(crate) fn lower_at_log_odds(c: &[f64], df: &[f64], ms: &[f64], log_odds: f64
     }
     let negated: Vec<f64> = c.iter().map(|c| -c).collect();
     -Constants::for_lower(&negated, df, tail).lower(&negated, ms)
+}
+
+/// All pairs of lines, `q <= s`, row by row.
+fn pairs(len: usize) -> impl Iterator<Item = (usize, usize)> {
+    (0..len).flat_map(move |q| (q..len).map(move |s| (q, s)))
 }
 
 /// The root of `V`. Rounding can bring a tiny negative; where signs may change, its root counts the other way.

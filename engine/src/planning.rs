@@ -14,9 +14,9 @@ pub use sheet::{SHEET_RUNS_MAX, SheetRun, run_sheet};
 
 use crate::combination::Combination;
 use crate::design::{Design, Factor, PART};
-use crate::generalized::percentile;
 use crate::mls::Constants;
 use crate::model::{Model, WITHIN_CELLS};
+use crate::percentile::percentile;
 use crate::random::Random;
 use crate::record::Study;
 

@@ -7,7 +7,7 @@
 //! The order of readings within a cell changes rounding only.
 
 use crate::design::{Design, FactorSet};
-use crate::twofold::{Running, Twofold};
+use crate::twofold::Running;
 
 /// A root of a sum of squares below this part of the largest deviation is nothing but rounding.
 const ROUNDING: f64 = 16.0 * f64::EPSILON * f64::EPSILON;
@@ -41,8 +41,8 @@ pub(crate) struct Sums {
 /// What is left of the cell means, and the means of a term: room that is used again.
 #[derive(Debug, Clone, Default)]
 pub(crate) struct Room {
-    left: Vec<Twofold>,
-    totals: Vec<Running>,
+    left: Vec<Running>,
+    means: Vec<Running>,
 }
 
 impl Sums {
@@ -78,76 +78,132 @@ impl Sweep {
 
     /// Sums of squares of readings that lie cell by cell.
     pub(crate) fn sums(&self, readings: &[f64], room: &mut Room, sums: &mut Sums) {
-        let origin = readings[0];
-        let trials = self.trials as f64;
-        let left = &mut room.left;
-        left.clear();
-        let mut spread = 0.0;
-        let mut within = Running::ZERO;
-        let mut total = Running::ZERO;
-        for cell in readings.chunks_exact(self.trials) {
-            let first = cell[0];
-            let mut sum = Running::ZERO;
-            for &y in cell {
-                sum.add_twofold(Twofold::difference(y, first));
-                let apart = (y - origin).abs();
-                spread = if apart > spread { apart } else { spread };
-            }
-            let mean = sum.value().over(trials);
-            for &y in cell {
-                let deviation = Twofold::difference(y, first).less(mean);
-                within.add(deviation * deviation);
-            }
-            let cell = Twofold::difference(first, origin).plus(mean);
-            total.add_twofold(cell);
-            left.push(cell);
+        let mut cells = Cells::new(readings[0], &mut room.left);
+        match self.trials {
+            2 => readings
+                .as_chunks::<2>()
+                .0
+                .iter()
+                .for_each(|c| cells.take(c)),
+            3 => readings
+                .as_chunks::<3>()
+                .0
+                .iter()
+                .for_each(|c| cells.take(c)),
+            n => readings.chunks_exact(n).for_each(|c| cells.take(c)),
         }
-        let mean = total.value().over(self.cells as f64);
-        left.iter_mut().for_each(|x| *x = x.minus(mean));
+        let (origin, within) = (cells.origin, cells.within.value());
+        let spread = (cells.most - origin).max(origin - cells.least);
 
         let floor = readings.len() as f64 * spread * spread * ROUNDING;
         let or_zero = |ss: f64| if ss > floor || ss.is_nan() { ss } else { 0.0 };
+        let (left, means) = (&mut room.left, &mut room.means);
+        let trials = self.trials as f64;
+        let mut grand_mean = None;
         sums.terms.clear();
         if let Some((_, others)) = self.terms.split_last() {
             for term in others {
-                let ss = term.sweep(left, &mut room.totals) * trials;
-                sums.terms.push(or_zero(ss));
+                term.take_out(left, means);
+                grand_mean.get_or_insert_with(|| centre(means));
+                let share = (left.len() / means.len()) as f64;
+                sums.terms.push(or_zero(squares(means) * share * trials));
             }
-            // The last term holds all factors: its means are what is left.
-            sums.terms.push(or_zero(squares(left) * trials));
         }
-        sums.within = or_zero(within.value().value());
-        sums.grand_mean = mean.plus(Twofold::difference(origin, 0.0)).value();
+        // The last term holds all factors: its means are what is left.
+        let mut grand_mean = grand_mean.unwrap_or_else(|| centre(left));
+        sums.terms.push(or_zero(squares(left) * trials));
+        grand_mean.add(origin);
+        sums.grand_mean = grand_mean.value();
+        sums.within = or_zero(within);
         sums.spread = spread;
     }
 }
 
-impl Term {
-    /// Takes the term's means out of what is left of the cell means; returns the sum of their squares over the cells.
-    fn sweep(&self, left: &mut [Twofold], totals: &mut Vec<Running>) -> f64 {
-        totals.clear();
-        totals.resize(self.combinations, Running::ZERO);
-        for (x, &place) in left.iter().zip(&self.place) {
-            totals[place as usize].add_twofold(*x);
+/// Cell after cell: its mean relative to the first reading of all, and what its readings add within cells.
+struct Cells<'a> {
+    origin: f64,
+    least: f64,
+    most: f64,
+    within: Running,
+    means: &'a mut Vec<Running>,
+}
+
+impl<'a> Cells<'a> {
+    fn new(origin: f64, means: &'a mut Vec<Running>) -> Cells<'a> {
+        means.clear();
+        Cells {
+            origin,
+            least: origin,
+            most: origin,
+            within: Running::ZERO,
+            means,
         }
-        let share = (left.len() / self.combinations) as f64;
-        let mut squares = Running::ZERO;
-        for total in totals.iter_mut() {
-            let mean = total.value().over(share);
-            squares.add(mean.value() * mean.value());
-            *total = Running::from(mean);
+    }
+
+    #[inline(always)]
+    fn take(&mut self, cell: &[f64]) {
+        let first = cell[0];
+        for &y in cell {
+            self.least = if y < self.least { y } else { self.least };
+            self.most = if y > self.most { y } else { self.most };
         }
-        for (x, &place) in left.iter_mut().zip(&self.place) {
-            *x = x.minus(totals[place as usize].value());
-        }
-        squares.value().value() * share
+        let above_first = sum(cell, |y| y - first) / cell.len() as f64;
+        self.within.add(sum(cell, |y| {
+            let deviation = (y - first) - above_first;
+            deviation * deviation
+        }));
+        let mut mean = Running::difference(first, self.origin);
+        mean.add(above_first);
+        self.means.push(mean);
     }
 }
 
-fn squares(values: &[Twofold]) -> f64 {
+impl Term {
+    /// Takes the means of the term out of what is left of the cell means.
+    fn take_out(&self, left: &mut [Running], means: &mut Vec<Running>) {
+        means.clear();
+        means.resize(self.combinations, Running::ZERO);
+        for (x, &place) in left.iter().zip(&self.place) {
+            means[place as usize].add_running(*x);
+        }
+        let share = (left.len() / self.combinations) as f64;
+        for mean in means.iter_mut() {
+            *mean = mean.over(share);
+        }
+        for (x, &place) in left.iter_mut().zip(&self.place) {
+            x.subtract(means[place as usize]);
+        }
+    }
+}
+
+/// Takes the mean of some values out of them, and returns it.
+fn centre(values: &mut [Running]) -> Running {
+    let mut total = Running::ZERO;
+    values.iter().for_each(|x| total.add_running(*x));
+    let mean = total.over(values.len() as f64);
+    values.iter_mut().for_each(|x| x.subtract(mean));
+    mean
+}
+
+fn squares(values: &[Running]) -> f64 {
     let mut sum = Running::ZERO;
     for x in values {
         sum.add(x.value() * x.value());
     }
-    sum.value().value()
+    sum.value()
+}
+
+/// The sum of a function of readings, rounded a few times however many they are.
+#[inline(always)]
+fn sum(readings: &[f64], f: impl Fn(f64) -> f64) -> f64 {
+    const AT_ONCE: usize = 8;
+    let plain = |readings: &[f64]| readings.iter().fold(0.0, |sum, &y| sum + f(y));
+    if readings.len() <= AT_ONCE {
+        return plain(readings);
+    }
+    let mut sum = Running::ZERO;
+    for some in readings.chunks(AT_ONCE) {
+        sum.add(plain(some));
+    }
+    sum.value()
 }

@@ -19,7 +19,7 @@ pub(crate) struct Against {
 #[derive(Debug)]
 enum By {
     /// One mean square: F is exact.
-    One { df: f64, tail: FTail },
+    One { line: usize, df: f64, tail: FTail },
     /// Several: degrees of freedom by Satterthwaite.
     Several { weights: Vec<f64>, df: Vec<f64> },
 }
@@ -31,7 +31,8 @@ impl Against {
         let df = |q: usize| model.lines()[q].df as f64;
         let members: Vec<usize> = sum.members().collect();
         let by = match members[..] {
-            [only] => By::One {
+            [only] if sum.weights()[only] == 1.0 => By::One {
+                line: only,
                 df: df(only),
                 tail: FTail::new(df(line), df(only)),
             },
@@ -48,13 +49,16 @@ impl Against {
     }
 
     fn test(&self, observed: f64, ms: &[f64]) -> Option<Test> {
-        let value = self.sum.value(ms);
+        let value = match &self.by {
+            By::One { line, .. } => ms[*line],
+            By::Several { .. } => self.sum.value(ms),
+        };
         if value <= 0.0 {
             return None;
         }
         let f = observed / value;
         let (p, against_df) = match &self.by {
-            By::One { df, tail } => (tail.above(f), *df),
+            By::One { df, tail, .. } => (tail.above(f), *df),
             By::Several { weights, df } => {
                 let pieces = weights.iter().zip(ms).zip(df);
                 let pieces = pieces.map(|((w, ms), df)| (w * ms / value).powi(2) / df);

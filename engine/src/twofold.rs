@@ -63,17 +63,13 @@ impl Twofold {
         Twofold::sum(square.head, square.tail + 2.0 * self.head * self.tail)
     }
 
-    /// `self - other`, rounded.
-    pub(crate) fn less(self, other: Twofold) -> f64 {
-        (self.head - other.head) + (self.tail - other.tail)
-    }
-
     pub(crate) fn value(self) -> f64 {
         self.head + self.tail
     }
 }
 
-/// A sum that is added to, with what its additions round off kept beside it.
+/// A sum that is added to, with what its additions round off kept beside it; cheaper than a [`Twofold`] as long as the
+/// rest is small beside what was added.
 #[derive(Debug, Clone, Copy)]
 pub(crate) struct Running {
     sum: f64,
@@ -92,13 +88,27 @@ impl Running {
         self.rest += sum.tail;
     }
 
-    pub(crate) fn add_twofold(&mut self, x: Twofold) {
-        self.add(x.head);
-        self.rest += x.tail;
+    pub(crate) fn add_running(&mut self, other: Running) {
+        self.add(other.sum);
+        self.rest += other.rest;
     }
 
-    pub(crate) fn value(self) -> Twofold {
-        Twofold::sum(self.sum, self.rest)
+    pub(crate) fn subtract(&mut self, other: Running) {
+        self.add(-other.sum);
+        self.rest -= other.rest;
+    }
+
+    /// `a - b` without rounding.
+    pub(crate) fn difference(a: f64, b: f64) -> Running {
+        Twofold::difference(a, b).into()
+    }
+
+    pub(crate) fn over(self, divisor: f64) -> Running {
+        Twofold::sum(self.sum, self.rest).over(divisor).into()
+    }
+
+    pub(crate) fn value(self) -> f64 {
+        self.sum + self.rest
     }
 }
 

@@ -6,7 +6,7 @@
 //!
 //! Source: Gui, Graybill, Burdick & Ting, *J. Statist. Plann. Inference* 48 (1995).
 
-use super::{Constants, Limit, root_of};
+use super::{Constants, Limit, pairs, root_of};
 use crate::root;
 
 /// The limits of one ratio at one tail probability, with all that does not depend on mean squares worked out.
@@ -87,7 +87,8 @@ impl Ratio {
         let below = |v, rho: f64| n - rho * d - root(v, rho);
         let above = |v, rho: f64| n - rho * d + root(v, rho);
         // The same over the ratio, in terms of its inverse: reaches up to a ratio without end.
-        let above_inverse = |[a, b, c]: Polynomial, t: f64| n * t - d + root_of(c + t * (b + t * a));
+        let above_inverse =
+            |[a, b, c]: Polynomial, t: f64| n * t - d + root_of(c + t * (b + t * a));
 
         let estimate = n / d;
         let mut lower = 0.0;
@@ -134,7 +135,6 @@ impl Ratio {
 
 /// The forms that stand before the powers of the ratio, given that of `V` for the signs of `c`.
 fn powers(form: &[f64], c: &[f64], n: &[f64], d: &[f64]) -> [Vec<f64>; 3] {
-    let pairs = || (0..c.len()).flat_map(|q| (q..c.len()).map(move |s| (q, s)));
     let signed = |(&k, (q, s)): (&f64, (usize, usize))| {
         if k == 0.0 {
             0.0
@@ -143,8 +143,10 @@ fn powers(form: &[f64], c: &[f64], n: &[f64], d: &[f64]) -> [Vec<f64>; 3] {
         }
     };
     let each = |product: &dyn Fn(usize, usize) -> f64| -> Vec<f64> {
-        let pairs = form.iter().zip(pairs());
-        pairs.map(|(k, (q, s))| signed((k, (q, s))) * product(q, s)).collect()
+        let of_pairs = form.iter().zip(pairs(c.len()));
+        of_pairs
+            .map(|(k, (q, s))| signed((k, (q, s))) * product(q, s))
+            .collect()
     };
     [
         each(&|q, s| n[q] * n[s]),

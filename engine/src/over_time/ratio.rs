@@ -9,8 +9,9 @@
 //! Assoc.* 88 (1993) 899–905.
 
 use crate::figure::{Bounds, Figure, Interval};
-use crate::generalized::{Draws, Simulation, percentile};
+use crate::generalized::{Draws, Simulation};
 use crate::limits::MANY_CROSSED;
+use crate::percentile::BLOCK;
 use crate::quantile::{Side, f, f_above};
 use crate::recorded::Recorded;
 
@@ -107,23 +108,30 @@ impl Ratios {
         }
         let alpha = 1.0 - self.confidence;
         let drawn = self.drawn(now, earlier);
-        let variances = |draws: &Draws, r: &Recorded| draws.divisor(&r.gauge(), &r.ms);
-        let earlier = variances(&drawn.earlier, earlier);
-        let mut ratios = variances(&drawn.now, now);
-        for (ratio, before) in ratios.iter_mut().zip(earlier) {
-            // Nothing over nothing tells nothing; it counts as no change.
-            let both = *ratio <= 0.0 && before <= 0.0;
-            *ratio = if both {
-                1.0
-            } else {
-                ratio.max(0.0) / before.max(0.0)
-            };
-        }
-        let mut limit = |p| percentile(&mut ratios, p).sqrt();
+        let (gauge, gauge_before) = (now.gauge().weights(), earlier.gauge().weights());
+        let ends = [alpha / 2.0, 1.0 - alpha / 2.0, alpha];
+        let ratios = |first: usize, out: &mut [f64]| {
+            let mut divisors = [0.0; BLOCK];
+            let divisors = &mut divisors[..out.len()];
+            drawn.now.divisor(&gauge, &now.ms, first, out);
+            drawn
+                .earlier
+                .divisor(&gauge_before, &earlier.ms, first, divisors);
+            for (ratio, before) in out.iter_mut().zip(divisors) {
+                // Nothing over nothing tells nothing; it counts as no change.
+                let both = *ratio <= 0.0 && *before <= 0.0;
+                *ratio = if both {
+                    1.0
+                } else {
+                    ratio.max(0.0) / before.max(0.0)
+                };
+            }
+        };
+        let [lower, upper, at_least] = drawn.now.percentiles(ends, ratios).map(f64::sqrt);
         let bounds = Bounds {
-            lower: limit(alpha / 2.0),
-            upper: limit(1.0 - alpha / 2.0),
-            at_least: limit(alpha),
+            lower,
+            upper,
+            at_least,
             interval: Interval::Generalized,
         };
         Figure::new(sd / before, bounds)

@@ -149,7 +149,8 @@ fn limits(
         return Err(MANY_CROSSED);
     }
     let (draws, ms, q) = (evidence.draws(), evidence.ms, &basis.quantities);
-    let gauges = draws.divisor(&q.gauge.as_ref().ok_or(NOT_APART)?.sum, ms);
+    let gauge = q.gauge.as_ref().ok_or(NOT_APART)?;
+    let gauges = draws.all(|first, out| draws.divisor(&gauge.weights, ms, first, out));
     let least = GAUGE_SD_LEAST * judged.gauge_sd;
     let with_gauge = |gauge: f64| Judged {
         gauge_sd: gauge.max(0.0).sqrt().max(least),
@@ -164,8 +165,10 @@ fn limits(
     match process {
         Process::Stated { .. } => gauges.iter().for_each(|&g| keep(&with_gauge(g))),
         Process::StudyParts => {
-            let parts = draws.variance(&q.part.as_ref().ok_or(NOT_APART)?.sum, ms);
-            let means = draws.mean(judged.mean, &basis.model.variance_of_mean(), ms);
+            let part = q.part.as_ref().ok_or(NOT_APART)?;
+            let parts = draws.all(|first, out| draws.variance(&part.weights, ms, first, out));
+            let spread = &basis.variance_of_mean;
+            let means = draws.all(|first, out| draws.mean(judged.mean, spread, ms, first, out));
             for ((&gauge, part), mean) in gauges.iter().zip(parts).zip(means) {
                 keep(&Judged {
                     mean,
@@ -175,7 +178,9 @@ fn limits(
             }
         }
     }
-    Ok(drawn.map(|mut values| evidence.percentiles(&mut values)))
+    Ok(drawn.map(|values| {
+        evidence.percentiles(|first, out| out.copy_from_slice(&values[first..first + out.len()]))
+    }))
 }
 
 fn in_order(risks: &Misclassification) -> [Option<f64>; FIGURES] {
