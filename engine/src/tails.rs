@@ -5,7 +5,7 @@
 //! log-gammas are large. Each tail is returned as itself, never as one minus the other where it is small.
 //!
 //! Sources: Loader, *Fast and Accurate Computation of Binomial Probabilities*, 2000 (deviances); NIST Digital
-//! Library of Mathematical Functions 5.11.1, 8.7.1, 8.9.2; DiDonato & Morris, *ACM Trans. Math. Software* 18
+//! Library of Mathematical Functions 5.11.1, 8.7.1, 8.9.2, 8.17.8; DiDonato & Morris, *ACM Trans. Math. Software* 18
 //! (1992) 360–373, eq. 9 (fraction of the incomplete beta function).
 
 use std::f64::consts::PI;
@@ -13,6 +13,10 @@ use std::f64::consts::PI;
 /// Terms of a series or fraction; reached only beyond the stated range of parameters.
 const STEPS_MAX: usize = 100_000;
 const TINY: f64 = 1e-300;
+/// Ratio of the first two terms of a series up to which it is summed rather than the fraction worked out.
+const SERIES_BELOW: f64 = 0.6;
+/// Parameters up to which `t - ln(1 + t)` loses no digit that counts after it is multiplied.
+const SMALL: f64 = 100.0;
 
 /// Both tails of a distribution at one point, and the slope of the lower one against the log of the point.
 #[derive(Debug, Clone, Copy)]
@@ -82,14 +86,14 @@ impl Beta {
         let deviances = deviance(a, (a + b) * below, apart) + deviance(b, (a + b) * above, -apart);
         let slope = (-deviances).exp() * self.scale;
         if below < (a + 1.0) / (a + b + 2.0) {
-            let lower = slope * beta_fraction(a, b, below, above, -apart);
+            let lower = slope * beta_part(a, b, below, above, -apart);
             Tails {
                 lower,
                 upper: 1.0 - lower,
                 slope,
             }
         } else {
-            let upper = slope * beta_fraction(b, a, above, below, apart);
+            let upper = slope * beta_part(b, a, above, below, apart);
             Tails {
                 lower: 1.0 - upper,
                 upper,
@@ -125,6 +129,9 @@ fn deviance(a: f64, m: f64, apart: f64) -> f64 {
     let t = apart / a;
     if t.abs() > 0.5 {
         return apart - a * (m / a).ln();
+    }
+    if a < SMALL {
+        return apart - a * t.ln_1p();
     }
     // t - ln(1 + t) with r = t / (2 + t): ln(1 + t) = 2 (r + r³/3 + r⁵/5 + …) and t = 2 r + r t.
     let r = t / (2.0 + t);
@@ -176,6 +183,30 @@ fn gamma_fraction(a: f64, x: f64) -> f64 {
         }
     }
     h
+}
+
+/// `B(x; a, b) / (x^a y^b)`, given `y = 1 - x` and `a - (a + b) x` to full precision.
+fn beta_part(a: f64, b: f64, x: f64, y: f64, apart: f64) -> f64 {
+    if x * (a + b) < SERIES_BELOW * (a + 1.0) {
+        beta_series(a, b, x)
+    } else {
+        beta_fraction(a, b, x, y, apart)
+    }
+}
+
+/// `1/a + (a+b)/(a (a+1)) x + (a+b)(a+b+1)/(a (a+1)(a+2)) x² + …`
+fn beta_series(a: f64, b: f64, x: f64) -> f64 {
+    let mut term = 1.0 / a;
+    let mut sum = term;
+    for n in 0..STEPS_MAX {
+        let n = n as f64;
+        term *= x * (a + b + n) / (a + 1.0 + n);
+        sum += term;
+        if term < sum * f64::EPSILON * 0.1 {
+            break;
+        }
+    }
+    sum
 }
 
 /// The continued fraction of `B(x; a, b) / (x^a y^b)`, given `y = 1 - x` and `a - (a + b) x` to full precision.
