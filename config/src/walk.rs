@@ -5,7 +5,7 @@
 //! wanted. `None` always means: missing, or its fault is already told.
 
 use std::cell::RefCell;
-use std::collections::BTreeSet;
+use std::collections::{BTreeMap, BTreeSet};
 use std::ops::Range;
 
 use toml::de::{DeTable, DeValue};
@@ -20,6 +20,7 @@ pub(crate) struct Table<'a> {
     entries: &'a DeTable<'a>,
     asked: RefCell<BTreeSet<&'static str>>,
     later: RefCell<BTreeSet<&'static str>>,
+    never: RefCell<BTreeMap<&'static str, &'static str>>,
 }
 
 impl<'a> Table<'a> {
@@ -29,6 +30,7 @@ impl<'a> Table<'a> {
             entries,
             asked: RefCell::default(),
             later: RefCell::default(),
+            never: RefCell::default(),
         }
     }
 
@@ -103,6 +105,12 @@ impl<'a> Table<'a> {
         self.later.borrow_mut().extend(keys);
     }
 
+    /// Keys that one might try and that will not come, with the reason.
+    pub(crate) fn never(&self, keys: &[&'static str], why: &'static str) {
+        let mut never = self.never.borrow_mut();
+        never.extend(keys.iter().map(|&key| (key, why)));
+    }
+
     /// Every entry, for tables whose keys are names that the user chooses.
     pub(crate) fn named(&self) -> Vec<(&'a str, Node<'a>)> {
         let node = |(name, value): (&'a toml::Spanned<_>, &'a toml::Spanned<DeValue<'a>>)| {
@@ -130,6 +138,8 @@ impl<'a> Table<'a> {
             let place = self.place.below(&shortened(key)).at(name.span().start);
             if self.later.borrow().contains(key) {
                 place.fault(format!("`{key}`: not yet"), "a key of this version");
+            } else if let Some(why) = self.never.borrow().get(key) {
+                place.fault_hint(format!("the key `{key}`"), "no such key", *why);
             } else {
                 let known = asked.iter().copied().collect::<Vec<_>>().join(", ");
                 let found = format!("the unknown key `{}`", shortened(key));

@@ -194,6 +194,12 @@ impl Design {
         self.part
     }
 
+    /// Index of a factor's level among those of all combinations of its containers, the last container fastest.
+    pub(crate) fn place_within_containers(&self, factor: usize, levels: &[usize]) -> usize {
+        let containers = self.containers[factor].iter().chain([factor]);
+        containers.fold(0, |place, f| place * self.factors[f].levels + levels[f])
+    }
+
     /// The cell in words, levels counted from 1: `part 2, appraiser 3`.
     pub(crate) fn cell_in_words(&self, cell: usize) -> String {
         let levels = self.levels_of(cell);

@@ -55,7 +55,7 @@ pub struct Context<'a> {
 pub struct Names<'a> {
     /// The factor's own word, such as `loading`.
     pub word: &'a str,
-    /// Its levels.
+    /// Its levels; of a nested factor those of each combination of its containers in turn, the last container fastest.
     pub levels: Vec<&'a str>,
 }
 

@@ -11,6 +11,7 @@ mod broken_exports;
 mod commands;
 mod demo;
 mod export;
+mod factors;
 mod ledger;
 mod mail_server_down;
 mod mailbox;

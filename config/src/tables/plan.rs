@@ -201,6 +201,8 @@ fn confidence(node: &Node<'_>) -> Option<f64> {
     (0.5..1.0).contains(&confidence).then_some(confidence)
 }
 
+const ALL_RANDOM: &str = "every factor is taken as random; confidence limits beside a fixed one need methods that are not here";
+
 fn factors<'a>(table: &Table<'a>) -> Option<Vec<(PlanFactor, Place<'a>)>> {
     let Some(node) = table.get("factor") else {
         return Some(Vec::new());
@@ -225,6 +227,7 @@ fn factors<'a>(table: &Table<'a>) -> Option<Vec<(PlanFactor, Place<'a>)>> {
                     .fault("nested factors: not yet", "an empty list");
             }
         }
+        table.never(&["fixed", "random"], ALL_RANDOM);
         table.finish();
         if let (Some(name), Some(levels)) = (name, levels) {
             factors.push((

@@ -1,25 +1,29 @@
 //! `restudy analyse`: a study from files, without a service.
 
 mod asked;
+mod fault;
 mod material;
+mod nesting;
+mod structure;
 mod words;
 
+use std::collections::BTreeSet;
 use std::path::{Path, PathBuf};
 
 use indicatif::{ProgressBar, ProgressFinish, ProgressStyle};
-use restudy_engine::{
-    Context, Design, Factor, Interaction, Judge, Names, Settings, Standing, Study, Tolerance,
-    remarks,
-};
-use restudy_parsers::{Bounds, Export, Parsed, Plain, Refused, SetAside, fold};
+use restudy_engine::{Context, Interaction, Judge, Settings, Standing, Study, Tolerance, remarks};
+use restudy_parsers::{Bounds, Export, Parsed, Plain, Refused, SetAside};
 use sha2::{Digest as _, Sha256};
 
 use super::{Answer, End, Failure, complain, configuration, preview, print, print_json};
 use crate::analyse::study::seconds;
 use crate::intake::request::Ask;
 use crate::record::{Counts, Judgement, Record, SCHEMA, hex};
-use asked::{OneSidedText, ProcessText};
-use material::{File, Gathered, Material, gather, levels, trials};
+use asked::{Asked, OneSidedText, ProcessText};
+use fault::Fault;
+use material::{File, Gathered, Material, gather, trials};
+use nesting::Nesting;
+use structure::Structure;
 use words::for_people;
 
 /// From so many files on, reading them shows a bar.
@@ -34,10 +38,12 @@ Examples:
   restudy analyse study.csv
   restudy analyse study.csv --lower 9.95 --upper 10.05 --unit mm --json
   restudy analyse \"GRR/*.xlsx\" --config restudy.toml --instrument bridge-1
+  restudy analyse study.csv --factor fixture          a further factor, from the column headed fixture
+  restudy analyse broken.csv --within part=appraiser  each appraiser had parts of their own
 
 Without --config the columns are headed part, appraiser, trial, characteristic, value, nominal, lower, upper, unit,
 taken (any case, any order; only part and value must be there). The options below fill in what the files do not say.
-All factors are random. Exit code 1: a file was refused, or a characteristic could not be worked out.")]
+All factors are random, and crossed unless --within says otherwise. Exit code 1: a file was refused, or a characteristic could not be worked out.")]
 pub(super) struct Line {
     /// The files, all of one study
     #[arg(value_name = "FILE", required = true)]
@@ -48,6 +54,8 @@ pub(super) struct Line {
     /// Whose rule
     #[arg(long, value_name = "NAME", requires = "config")]
     instrument: Option<String>,
+    #[command(flatten)]
+    asked: Asked,
     /// Lower tolerance limit
     #[arg(long, value_name = "NUMBER", allow_negative_numbers = true)]
     lower: Option<f64>,
@@ -79,18 +87,44 @@ pub(super) struct Line {
 
 pub(super) fn run(line: &Line) -> Answer {
     let settings = settings(line)?;
+    line.asked.check()?;
+    if line.config.is_some() && !line.asked.further.is_empty() {
+        return Err(Fault::hinted(
+            "--factor does not go with --config; there the instrument's rule says where further factors stand",
+            "name them under `factors` in the instrument's `read` table",
+        )
+        .into());
+    }
     let (files, mut end) = read_all(line)?;
     if files.is_empty() {
         return Ok(End::BadNews);
     }
-    let material = gather(&files);
+    let material = gather(&files, &line.asked);
+    if material.characteristics.is_empty() {
+        if line.json {
+            print_json::<[Record; 0]>(&[])?;
+        }
+        return Ok(end);
+    }
+    let nesting = Nesting::of(&material.factors, &line.asked)?;
     let mut records = Vec::new();
+    let mut told = BTreeSet::new();
     for gathered in &material.characteristics {
-        match study(line, &settings, &material, gathered) {
+        let structure = Structure::of(gathered, &nesting);
+        if let Ok(structure) = &structure {
+            for note in &structure.notes {
+                if told.insert(note.clone()) {
+                    complain(note, None);
+                }
+            }
+        }
+        let record = structure.and_then(|s| study(line, &settings, &material, gathered, &s));
+        match record {
             Ok(record) => records.push(record),
-            Err(sentence) => {
+            Err(fault) => {
                 end = End::BadNews;
-                complain(&format!("{}: {sentence}", gathered.label), None);
+                let sentence = format!("{}: {}", gathered.label, fault.sentence);
+                complain(&sentence, fault.hint.as_deref());
             }
         }
     }
@@ -156,7 +190,7 @@ fn read_all(line: &Line) -> Result<(Vec<File>, End), Failure> {
             (Some(config), Some(name)) => {
                 preview::read_file(preview::instrument(config, name)?, path)?
             }
-            _ => read_plain(path)?,
+            _ => read_plain(path, &line.asked.plain())?,
         };
         match outcome {
             Ok(parsed) => {
@@ -212,8 +246,7 @@ fn progress(files: usize) -> ProgressBar {
         .with_finish(ProgressFinish::AndClear)
 }
 
-fn read_plain(path: &Path) -> Result<Result<Parsed, Refused>, Failure> {
-    let plain = Plain::default();
+fn read_plain(path: &Path, plain: &Plain) -> Result<Result<Parsed, Refused>, Failure> {
     let shown = path.to_string_lossy().into_owned();
     preview::read_bytes(path, Bounds::default().file_bytes, |bytes| {
         if restudy_parsers::is_workbook(bytes) {
@@ -224,7 +257,7 @@ fn read_plain(path: &Path) -> Result<Result<Parsed, Refused>, Failure> {
                 path: &shown,
                 bytes,
             },
-            &plain,
+            plain,
         ))
     })
 }
@@ -234,30 +267,9 @@ fn study(
     settings: &Settings,
     material: &Material,
     gathered: &Gathered,
-) -> Result<Record, String> {
-    if let Some(fault) = &gathered.fault {
-        return Err(fault.clone());
-    }
-    let levels: Vec<Vec<String>> = (0..material.factors.len())
-        .map(|f| levels(gathered, f))
-        .collect();
-    let kept: Vec<usize> = (0..levels.len())
-        .filter(|&f| f == 0 || levels[f].len() > 1)
-        .collect();
-    let factors = kept.iter().map(|&f| Factor {
-        name: material.factors[f].clone(),
-        levels: levels[f].len(),
-        within: Vec::new(),
-    });
-    let design = Design::new(factors.collect()).map_err(|e| e.to_string())?;
-    let cell = |labels: &[String]| {
-        kept.iter().fold(0, |cell, &f| {
-            let name = fold(&labels[f]);
-            let level = levels[f].iter().position(|l| fold(l) == name);
-            cell * levels[f].len() + level.unwrap_or(0)
-        })
-    };
-    let cells: Vec<usize> = gathered.rows.iter().map(|row| cell(&row.labels)).collect();
+    structure: &Structure,
+) -> Result<Record, Fault> {
+    let Structure { design, cells, .. } = structure;
     let values: Vec<f64> = gathered.rows.iter().map(|row| row.value).collect();
     let tolerance = Tolerance {
         lower: gathered.lower.or(line.lower),
@@ -271,25 +283,19 @@ fn study(
             None,
         );
     }
-    let mut study = restudy_engine::analyse(&design, &cells, &values, &tolerance, settings)
-        .map_err(|e| e.to_string())?;
+    let mut study = restudy_engine::analyse(design, cells, &values, &tolerance, settings)
+        .map_err(|e| Fault::new(e.to_string()))?;
     let context = Context {
-        factors: kept
-            .iter()
-            .map(|&f| Names {
-                word: &material.factors[f],
-                levels: levels[f].iter().map(String::as_str).collect(),
-            })
-            .collect(),
+        factors: structure.names(),
         taken: gathered
             .rows
             .iter()
             .map(|row| row.taken.map(seconds))
             .collect(),
-        trials: trials(gathered, &cells).unwrap_or_default(),
+        trials: trials(gathered, cells).unwrap_or_default(),
         unit: gathered.unit.as_deref().or(line.unit.as_deref()),
     };
-    study.remarks = remarks(&design, &cells, &values, &study, &tolerance, &context);
+    study.remarks = remarks(design, cells, &values, &study, &tolerance, &context);
     Ok(Record {
         schema: SCHEMA,
         site: None,

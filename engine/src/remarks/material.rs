@@ -188,10 +188,14 @@ impl<'a> Material<'a> {
             .unwrap_or(&self.design.factors()[factor].name)
     }
 
-    /// What a level is called; a mere number gets the factor's word.
+    /// What a level of a factor that is not nested is called; a mere number gets the factor's word.
     pub(super) fn level(&self, factor: usize, level: usize) -> String {
+        self.named(factor, level, level)
+    }
+
+    fn named(&self, factor: usize, place: usize, level: usize) -> String {
         let names = self.context.factors.get(factor);
-        match names.and_then(|names| names.levels.get(level)) {
+        match names.and_then(|names| names.levels.get(place)) {
             Some(name) if name.starts_with(|c: char| c.is_ascii_digit()) => {
                 format!("{} {name}", self.word(factor))
             }
@@ -203,9 +207,11 @@ impl<'a> Material<'a> {
     /// What a cell is called: `P03 MO`.
     pub(super) fn cell(&self, cell: usize) -> String {
         let levels = self.design.levels_of(cell);
-        let names = levels.iter().enumerate();
-        let names: Vec<String> = names.map(|(f, &level)| self.level(f, level)).collect();
-        names.join(" ")
+        let names = levels.iter().enumerate().map(|(f, &level)| {
+            let place = self.design.place_within_containers(f, &levels);
+            self.named(f, place, level)
+        });
+        names.collect::<Vec<String>>().join(" ")
     }
 
     /// A length with its unit.

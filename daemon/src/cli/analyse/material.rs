@@ -5,6 +5,7 @@ use std::collections::BTreeMap;
 use jiff::civil::DateTime;
 use restudy_parsers::{Parsed, fold};
 
+use super::asked::Asked;
 use crate::natural;
 use crate::record::{Measured, Source};
 
@@ -46,7 +47,7 @@ pub(super) struct Material {
     pub(super) source: Vec<Source>,
 }
 
-pub(super) fn gather(files: &[File]) -> Material {
+pub(super) fn gather(files: &[File], asked: &Asked) -> Material {
     let runs = || files.iter().flat_map(|f| &f.parsed.runs);
     let has_appraiser = runs().any(|r| r.appraiser.is_some());
     let mut further: Vec<String> = runs().flat_map(|r| r.factors.keys().cloned()).collect();
@@ -54,7 +55,11 @@ pub(super) fn gather(files: &[File]) -> Material {
     further.dedup();
     let mut factors = vec!["part".to_owned()];
     factors.extend(has_appraiser.then(|| "appraiser".to_owned()));
-    factors.extend(further.iter().cloned());
+    factors.extend(
+        further
+            .iter()
+            .map(|column| asked.name_of(column).to_owned()),
+    );
 
     let mut characteristics: Vec<Gathered> = Vec::new();
     let mut index: BTreeMap<String, usize> = BTreeMap::new();
@@ -164,18 +169,6 @@ impl Gathered {
             value: reading.value,
         });
     }
-}
-
-/// The levels of a factor in natural order, each as first written.
-pub(super) fn levels(gathered: &Gathered, factor: usize) -> Vec<String> {
-    let mut seen = BTreeMap::new();
-    for row in &gathered.rows {
-        let label = &row.labels[factor];
-        seen.entry(fold(label)).or_insert_with(|| label.clone());
-    }
-    let mut names: Vec<String> = seen.into_values().collect();
-    names.sort_by(|a, b| natural::compare(a, b));
-    names
 }
 
 /// Which trial of its cell each reading is: by its label, which every cell must hold once, or else by its time.

@@ -3,16 +3,11 @@
 use crate::cli::table::table;
 use crate::figures::significant;
 use crate::record::Record;
-use restudy_engine::{Spread, Study};
+use restudy_engine::{Factor, PART, Spread, Study, WITHIN_CELLS};
 
 pub(super) fn for_people(record: &Record) -> String {
     let study = &record.study;
     let layout = &study.design;
-    let factors: Vec<String> = layout
-        .factors
-        .iter()
-        .map(|f| counted(f.levels, &f.name))
-        .collect();
     let unit = record
         .unit
         .as_deref()
@@ -22,7 +17,7 @@ pub(super) fn for_people(record: &Record) -> String {
     let mut out = format!(
         "{}: {} × {up_to}{}, {}{unit}\n\n",
         record.characteristic,
-        factors.join(" × "),
+        factors(&layout.factors),
         counted(layout.trials, "trial"),
         counted(layout.readings, "reading")
     );
@@ -62,11 +57,7 @@ pub(super) fn for_people(record: &Record) -> String {
         &[1, 2, 3, 4, 5],
         rows,
     ));
-    out.push_str(match (study.interaction.kept, layout.trials) {
-        (true, _) => "AV holds the interaction.\n",
-        (false, 1) => "One trial: EV holds the interaction.\n",
-        (false, _) => "",
-    });
+    out.push_str(&what_is_where(study));
     if layout.balanced {
         out.push('\n');
         out.push_str(&mean_squares(study));
@@ -96,6 +87,48 @@ pub(super) fn for_people(record: &Record) -> String {
     }
     out.push_str("A study is evidence about the gauge, not a release of product.\n\n");
     out
+}
+
+/// `10 parts × 3 appraisers`, or `3 appraisers × 8 parts within each appraiser`.
+fn factors(factors: &[Factor]) -> String {
+    let (crossed, nested): (Vec<&Factor>, Vec<&Factor>) =
+        factors.iter().partition(|f| f.within.is_empty());
+    let words: Vec<String> = crossed
+        .into_iter()
+        .chain(nested)
+        .map(|f| match f.within.as_slice() {
+            [] => counted(f.levels, &f.name),
+            within => {
+                let levels = counted(f.levels, &f.name);
+                format!("{levels} within each {}", within.join(" × "))
+            }
+        })
+        .collect();
+    words.join(" × ")
+}
+
+/// What AV and EV hold beside what their names say.
+fn what_is_where(study: &Study) -> String {
+    let is_of_part = |of: &[String]| of == [PART];
+    let reproducibility: Vec<&str> = study
+        .components
+        .iter()
+        .filter(|c| c.name != WITHIN_CELLS && !is_of_part(&c.of))
+        .map(|c| &*c.name)
+        .collect();
+    let one_trial = study.design.trials == 1;
+    match reproducibility.as_slice() {
+        [] if study.design.factors.len() == 1 => {
+            "Only the part is in the design: there is no AV, and GRR is EV.\n".into()
+        }
+        ["appraiser", "part × appraiser"] => "AV holds the interaction.\n".into(),
+        ["appraiser"] if one_trial && study.design.factors.iter().all(|f| f.within.is_empty()) => {
+            "One trial: EV holds the interaction.\n".into()
+        }
+        [] | ["appraiser"] => String::new(),
+        [one] => format!("AV holds {one}.\n"),
+        [most @ .., last] => format!("AV holds {} and {last}.\n", most.join(", ")),
+    }
 }
 
 /// The table of mean squares.
