@@ -1,0 +1,217 @@
+//! What is counted: a figure, its truth, the band its coverage keeps.
+
+use restudy_engine::{Figure, Study, Tolerance};
+use serde_json::Value;
+
+use crate::plant::Plant;
+
+/// Monte Carlo errors that a coverage may lie beyond its band.
+const SLACK: f64 = 3.0;
+/// What a gauge study needs to be sure of.
+const USUAL: (f64, f64) = (0.94, 0.97);
+/// Limits that err on the safe side, as `ACCURACY.md` says.
+const CAUTIOUS: (f64, f64) = (0.94, 0.982);
+
+/// A figure of a study that keeps the interaction, or of the same readings pooled above p 0.25.
+type Pick = for<'a> fn(&'a Study, &'a Study) -> &'a Figure;
+
+/// Quantity and method in the other simulation.
+type Elsewhere = Option<(&'static str, &'static str)>;
+
+/// One figure of a study and its true value.
+pub(crate) struct Target {
+    pub(crate) title: &'static str,
+    truth: f64,
+    band: (f64, f64),
+    elsewhere: Elsewhere,
+    figure: Pick,
+}
+
+impl Target {
+    fn new(
+        title: &'static str,
+        truth: f64,
+        band: (f64, f64),
+        elsewhere: Elsewhere,
+        figure: Pick,
+    ) -> Target {
+        Target {
+            title,
+            truth,
+            band,
+            elsewhere,
+            figure,
+        }
+    }
+
+    /// Every figure that is counted, for a plant.
+    pub(crate) fn all(plant: &Plant, tolerance: Tolerance) -> Vec<Target> {
+        let width = tolerance.upper.unwrap_or(0.0) - tolerance.lower.unwrap_or(0.0);
+        let (gauge, part) = (plant.gauge, plant.part);
+        let mls = |quantity| Some((quantity, "mls"));
+        let mut targets = vec![
+            Target::new("gauge sd", gauge.sqrt(), USUAL, mls("gauge"), |kept, _| {
+                &kept.figures.gauge.sd
+            }),
+            Target::new(
+                "gauge share of tolerance",
+                6.0 * gauge.sqrt() / width,
+                USUAL,
+                mls("gauge"),
+                |kept, _| &kept.figures.gauge.share_of_tolerance,
+            ),
+            Target::new(
+                "part/gauge ratio",
+                part / gauge,
+                CAUTIOUS,
+                Some(("part_to_gauge", "mls_root")),
+                |kept, _| &kept.part_to_gauge,
+            ),
+            Target::new(
+                "gauge share of TV",
+                (gauge / (gauge + part)).sqrt(),
+                CAUTIOUS,
+                None,
+                |kept, _| &kept.figures.gauge.share_of_tv,
+            ),
+            Target::new(
+                "gauge sd, pooled above p 0.25",
+                gauge.sqrt(),
+                USUAL,
+                Some(("gauge", "mls_pooled_when_p_above_0.25")),
+                |_, pooled| &pooled.figures.gauge.sd,
+            ),
+            Target::new(
+                "reproducibility sd",
+                plant.reproducibility.sqrt(),
+                CAUTIOUS,
+                mls("reproducibility"),
+                |kept, _| &kept.figures.reproducibility.sd,
+            ),
+            Target::new("part sd", part.sqrt(), CAUTIOUS, mls("part"), |kept, _| {
+                &kept.figures.part.sd
+            }),
+            Target::new(
+                "total sd",
+                (gauge + part).sqrt(),
+                CAUTIOUS,
+                mls("total"),
+                |kept, _| &kept.figures.total.sd,
+            ),
+        ];
+        if let [_, appraiser, interaction, _] = &plant.variances[..] {
+            targets.push(Target::new(
+                "appraiser sd",
+                appraiser.sqrt(),
+                CAUTIOUS,
+                mls("appraiser"),
+                |kept, _| &kept.components[1].sd,
+            ));
+            targets.push(Target::new(
+                "part × appraiser sd",
+                interaction.sqrt(),
+                CAUTIOUS,
+                mls("interaction"),
+                |kept, _| &kept.components[2].sd,
+            ));
+        }
+        targets
+    }
+}
+
+/// How often the limits of one figure held its truth.
+pub(crate) struct Count {
+    pub(crate) target: Target,
+    studies: u32,
+    /// Truth below the lower limit.
+    below: u32,
+    /// Truth above the upper limit.
+    above: u32,
+}
+
+impl Count {
+    pub(crate) fn new(target: Target) -> Count {
+        Count {
+            target,
+            studies: 0,
+            below: 0,
+            above: 0,
+        }
+    }
+
+    /// A figure without a lower limit counts as a miss on both sides; without an upper limit the truth lies below it.
+    pub(crate) fn add(&mut self, kept: &Study, pooled: &Study) {
+        let figure = (self.target.figure)(kept, pooled);
+        let truth = self.target.truth;
+        let rounding = 1e-12 * truth;
+        let upper = figure.upper.or(figure.open.map(|_| f64::INFINITY));
+        self.studies += 1;
+        self.below += u32::from(figure.lower.is_none_or(|lower| lower > truth + rounding));
+        self.above += u32::from(upper.is_none_or(|upper| upper < truth - rounding));
+    }
+
+    fn coverage(&self) -> f64 {
+        1.0 - self.frequency(self.below + self.above)
+    }
+
+    fn frequency(&self, count: u32) -> f64 {
+        f64::from(count) / f64::from(self.studies)
+    }
+
+    fn error(&self) -> f64 {
+        let coverage = self.coverage();
+        (coverage * (1.0 - coverage) / f64::from(self.studies)).sqrt()
+    }
+
+    pub(crate) fn in_words(&self) -> String {
+        format!(
+            "{:.1} ± {:.2} ({:.1}, {:.1})",
+            100.0 * self.coverage(),
+            100.0 * self.error(),
+            100.0 * self.frequency(self.below),
+            100.0 * self.frequency(self.above)
+        )
+    }
+
+    pub(crate) fn outside_its_band(&self) -> Option<String> {
+        let (low, high) = self.target.band;
+        let (coverage, slack) = (self.coverage(), SLACK * self.error());
+        let inside = coverage + slack >= low && coverage - slack <= high;
+        (!inside).then(|| {
+            format!(
+                "{} covers {:.2} %, expected {:.1} to {:.1} %",
+                self.target.title,
+                100.0 * coverage,
+                100.0 * low,
+                100.0 * high
+            )
+        })
+    }
+
+    /// Distances from the other simulation, in Monte Carlo errors of both.
+    pub(crate) fn apart_from(&self, elsewhere: &Value, key: &str) -> Vec<(&'static str, f64)> {
+        let Some((quantity, method)) = self.target.elsewhere else {
+            return Vec::new();
+        };
+        let theirs = &elsewhere["results"][key][quantity][method];
+        let their_studies = match method {
+            "mls_root" => &elsewhere["studies_ratio_root"],
+            _ => &elsewhere["studies_closed"],
+        };
+        let apart = |what, ours: f64| {
+            let (theirs, n) = (theirs[what].as_f64()?, their_studies.as_f64()?);
+            // A rare event's own frequency tells too little of its error.
+            let variance = |p: f64, n: f64| (p * (1.0 - p) + 1.0 / n) / n;
+            let error = (variance(theirs, n) + variance(theirs, f64::from(self.studies))).sqrt();
+            Some((what, (ours - theirs).abs() / error))
+        };
+        [
+            ("coverage", self.coverage()),
+            ("true_above_upper", self.frequency(self.above)),
+            ("true_below_lower", self.frequency(self.below)),
+        ]
+        .into_iter()
+        .filter_map(|(what, ours)| apart(what, ours))
+        .collect()
+    }
+}
