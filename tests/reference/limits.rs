@@ -4,7 +4,9 @@ use restudy_engine::{Figure, Interval, Settings, Study};
 use serde_json::Value;
 
 use crate::check::Check;
-use crate::data::{Fixture, PART_APPRAISER, PART_ONLY, fixture, name_of_line, pooling, settings};
+use crate::data::{
+    Fixture, PART_APPRAISER, PART_ONLY, fixture, name_of_line, pooling, settings, values,
+};
 
 const DIGITS: f64 = 9.0;
 
@@ -59,6 +61,10 @@ fn compare_level(check: &mut Check, study: &Study, expected: &Value) {
             continue;
         }
         if reference == "repeatability" {
+            if exact.is_object() {
+                let repeatability = &study.figures.repeatability.variance;
+                both(check, "repeatability by mls", repeatability, limits);
+            }
             check.same(
                 "repeatability method",
                 study.figures.repeatability.variance.interval,
@@ -92,6 +98,13 @@ fn compare_level(check: &mut Check, study: &Study, expected: &Value) {
         study.ndc.upper,
         &ratio["ndc_untruncated"]["upper"],
     );
+    for (end, found) in [("lower", study.ndc.lower), ("upper", study.ndc.upper)] {
+        let floor = found.map(f64::floor);
+        check.digits(&format!("whole ndc {end}"), floor, &ratio["ndc_floor"][end]);
+    }
+    let gauge = &ratio["gauge_share_of_total_variance"];
+    let squared = (study.figures.gauge.share_of_tv).rising_for_test(|share| share * share);
+    both(check, "gauge share of total variance", &squared, gauge);
     let part = &ratio["part_share_of_total_variance"];
     let squared = study
         .figures
@@ -184,7 +197,7 @@ impl Rising for Figure {
 }
 
 #[test]
-fn two_crossed_factors_with_the_interaction_kept_and_pooled() {
+pub(crate) fn two_crossed_factors_with_the_interaction_kept_and_pooled() {
     let fixtures = [
         fixture!("a_aiag_10x3x3"),
         fixture!("a_aiag_10x3x3", "a_aiag_10x3x3_one_sided"),
@@ -201,11 +214,8 @@ fn two_crossed_factors_with_the_interaction_kept_and_pooled() {
 
 /// The shares of repeatability and reproducibility in the total: limits of a variance over all the others.
 #[test]
-fn shares_of_the_total() {
-    let table: Value = serde_json::from_str(include_str!(
-        "../../fixtures/reference/shares_of_total.json"
-    ))
-    .unwrap();
+pub(crate) fn shares_of_the_total() {
+    let table = values!("shares_of_total");
     let fixtures = [
         fixture!("a_aiag_10x3x3"),
         fixture!("b_mr_20x3x2"),
@@ -238,7 +248,7 @@ fn shares_of_the_total() {
 }
 
 #[test]
-fn one_trial() {
+pub(crate) fn one_trial() {
     compare(
         &fixture!("edge_one_trial"),
         PART_APPRAISER,
@@ -248,7 +258,7 @@ fn one_trial() {
 }
 
 #[test]
-fn identical_repeats() {
+pub(crate) fn identical_repeats() {
     compare(
         &fixture!("edge_equal_trials"),
         PART_APPRAISER,
@@ -258,7 +268,7 @@ fn identical_repeats() {
 }
 
 #[test]
-fn nested_and_three_factor_designs() {
+pub(crate) fn nested_and_three_factor_designs() {
     compare(
         &fixture!("c_nist_nested_5x2x5"),
         &[("part", &[]), ("appraiser", &["part"])],
@@ -280,7 +290,7 @@ fn nested_and_three_factor_designs() {
 }
 
 #[test]
-fn one_factor() {
+pub(crate) fn one_factor() {
     for fixture in [
         fixture!("d_strd_AtmWtAg"),
         fixture!("d_strd_SiRstv"),

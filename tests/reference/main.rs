@@ -13,6 +13,7 @@ mod degenerate;
 mod design_rules;
 mod generalized;
 mod ladder;
+mod leaves;
 mod limits;
 mod offsets;
 mod point_values;

@@ -1,10 +1,13 @@
 //! Sums of squares, F, p, components, sds and shares of every complete data set: at least 11 digits.
 
-use restudy_engine::{Settings, Spread, Study};
+use restudy_engine::quantile::f_above;
+use restudy_engine::{MeanSquare, Settings, Spread, Study, WITHIN_CELLS};
 use serde_json::Value;
 
-use crate::check::Check;
-use crate::data::{Fixture, PART_APPRAISER, PART_ONLY, fixture, name_of_line, pooling, settings};
+use crate::check::{Check, compared};
+use crate::data::{
+    Fixture, PART_APPRAISER, PART_ONLY, fixture, name_of_line, pooling, rational, settings,
+};
 
 const DIGITS: f64 = 11.0;
 
@@ -37,7 +40,14 @@ fn compare_to(
         Some(study.grand_mean),
         &fixture.expected["grand_mean"],
     );
+    let exact = rational(
+        compared(&fixture.expected["grand_mean_exact"])
+            .as_str()
+            .unwrap(),
+    );
+    check.number("exact grand mean", Some(study.grand_mean), exact);
     compare_table(&mut check, &study, &fixture.expected[table]);
+    compare_mean_squares(&mut check, &study, &fixture.expected[block]["mean_squares"]);
     compare_estimates(&mut check, &study, &fixture.expected[block]["estimates"]);
     check.finish(20);
 }
@@ -53,8 +63,10 @@ fn compare_table(check: &mut Check, study: &Study, table: &Value) {
         check.same(
             &format!("{name} df"),
             line.df as u64,
-            expected["df"].as_u64().unwrap(),
+            compared(&expected["df"]).as_u64().unwrap(),
         );
+        let exact = rational(compared(&expected["ss_exact"]).as_str().unwrap());
+        check.number(&format!("{name} exact ss"), Some(line.ss), exact);
         check.digits(&format!("{name} ms"), line.ms, &expected["ms"]);
         check.digits(&format!("{name} f"), line.f, &expected["f"]);
         check.digits(&format!("{name} p"), line.p, &expected["p"]);
@@ -62,7 +74,7 @@ fn compare_table(check: &mut Check, study: &Study, table: &Value) {
             check.digits(&format!("{name} against_df"), line.against_df, df);
         }
         let against = line.against.clone().unwrap_or_default();
-        match &expected["denominator"] {
+        match compared(&expected["denominator"]) {
             Value::String(only) => {
                 check.same(
                     &format!("{name} against"),
@@ -80,13 +92,82 @@ fn compare_table(check: &mut Check, study: &Study, table: &Value) {
                     check.same(
                         &format!("{name} against {reference}"),
                         found.as_deref(),
-                        weight.as_str(),
+                        compared(weight).as_str(),
                     );
                 }
             }
             _ => {}
         }
     }
+}
+
+fn compare_mean_squares(check: &mut Check, study: &Study, expected: &Value) {
+    for (reference, expected) in expected.as_object().unwrap() {
+        let line = line(study, reference);
+        check.digits(&format!("{reference} ms"), line.ms, &expected["ms"]);
+        check.digits(
+            &format!("{reference} df"),
+            Some(line.df as f64),
+            &expected["df"],
+        );
+    }
+}
+
+/// F and p of each line against the repeats alone, from the table's mean squares.
+fn compare_to_repeats(check: &mut Check, study: &Study, expected: &Value) {
+    let repeats = line(study, "error");
+    for (reference, expected) in expected.as_object().unwrap() {
+        let line = line(study, reference);
+        let f = line.ms.unwrap() / repeats.ms.unwrap();
+        let p = f_above(f, line.df as f64, repeats.df as f64);
+        check.digits(
+            &format!("{reference} f over repeats"),
+            Some(f),
+            &expected["f"],
+        );
+        check.digits(
+            &format!("{reference} p over repeats"),
+            Some(p),
+            &expected["p"],
+        );
+    }
+}
+
+fn line<'a>(study: &'a Study, reference: &str) -> &'a MeanSquare {
+    let name = name_of_line(reference);
+    study.mean_squares.iter().find(|l| l.name == name).unwrap()
+}
+
+/// What follows from a variance, its sd and the total's.
+fn compare_shares(
+    check: &mut Check,
+    study: &Study,
+    reference: &str,
+    sd: Option<f64>,
+    expected: &Value,
+) {
+    let total = &study.figures.total;
+    let of_total = sd.zip(total.sd.estimate).map(|(sd, total)| sd / total);
+    let per_sd = total
+        .share_of_tolerance
+        .estimate
+        .zip(total.sd.estimate)
+        .map(|(s, sd)| s / sd);
+    let of_tolerance = sd.zip(per_sd).map(|(sd, per_sd)| sd * per_sd);
+    let shares = &expected["share_of_study_variation"][reference];
+    check.digits(&format!("{reference} sd over total sd"), of_total, shares);
+    let shares = &expected["share_of_total_variance"][reference];
+    check.digits(
+        &format!("{reference} over total"),
+        of_total.map(|s| s * s),
+        shares,
+    );
+    let shares = &expected["share_of_tolerance"][study.spread_sds.to_string()];
+    check.digits(
+        &format!("{reference} over tolerance"),
+        of_tolerance,
+        &shares[reference],
+    );
 }
 
 fn compare_estimates(check: &mut Check, study: &Study, expected: &Value) {
@@ -132,7 +213,19 @@ fn compare_estimates(check: &mut Check, study: &Study, expected: &Value) {
                 component.sd.estimate,
                 sd,
             );
+            compare_shares(check, study, reference, component.sd.estimate, expected);
         } else {
+            let figure = &spread(study, reference).unwrap().sd;
+            compare_shares(check, study, reference, figure.estimate, expected);
+            let raw: f64 = (study.components.iter())
+                .filter(|c| match &**reference {
+                    "reproducibility" => c.of != ["part"] && c.name != WITHIN_CELLS,
+                    "gauge" => c.of != ["part"],
+                    _ => true,
+                })
+                .map(|c| c.raw)
+                .sum();
+            check.digits(&format!("{reference} raw"), Some(raw), &variance["raw"]);
             check.same(
                 &format!("{reference} is a figure of its own"),
                 matches!(&**reference, "reproducibility" | "gauge" | "total"),
@@ -150,10 +243,22 @@ fn compare_estimates(check: &mut Check, study: &Study, expected: &Value) {
         study.ndc.estimate,
         &expected["ndc"]["sqrt2_untruncated"],
     );
+    let ndc = study.ndc.estimate;
+    check.digits(
+        "whole ndc by the root of 2",
+        ndc.map(f64::floor),
+        &expected["ndc"]["sqrt2_floor"],
+    );
+    let by_handbook = ndc.map(|ndc| ndc * 1.41 / std::f64::consts::SQRT_2);
+    check.digits(
+        "ndc by 1.41",
+        by_handbook,
+        &expected["ndc"]["handbook_1_41_untruncated"],
+    );
     check.same(
         "whole ndc",
         study.ndc.whole,
-        expected["ndc"]["handbook_1_41_floor"].as_u64(),
+        compared(&expected["ndc"]["handbook_1_41_floor"]).as_u64(),
     );
 }
 
@@ -200,6 +305,14 @@ fn kept_and_pooled(fixture: &Fixture) {
             "pooled",
         );
     }
+    let study = fixture.study(PART_APPRAISER, &settings(0.95, 6.0));
+    let mut check = Check::new(&format!("{} over repeats", fixture.name), DIGITS);
+    compare_to_repeats(
+        &mut check,
+        &study,
+        &fixture.expected["anova_error_denominator"],
+    );
+    check.finish(6);
     for (p, key) in [(0.25, "pool_at_0_25"), (0.05, "pool_at_0_05")] {
         let settings = Settings {
             interaction: restudy_engine::Interaction::PoolAbove(p),
@@ -215,7 +328,9 @@ fn kept_and_pooled(fixture: &Fixture) {
         check.same(
             key,
             !study.interaction.kept,
-            fixture.expected["pooling"][key].as_bool().unwrap(),
+            compared(&fixture.expected["pooling"][key])
+                .as_bool()
+                .unwrap(),
         );
         let other = if study.interaction.kept {
             "pooled"
@@ -240,37 +355,37 @@ fn kept_and_pooled(fixture: &Fixture) {
 }
 
 #[test]
-fn published_example_of_10_parts_3_appraisers_3_trials() {
+pub(crate) fn published_example_of_10_parts_3_appraisers_3_trials() {
     kept_and_pooled(&fixture!("a_aiag_10x3x3"));
 }
 
 #[test]
-fn the_same_example_with_an_upper_limit_only() {
+pub(crate) fn the_same_example_with_an_upper_limit_only() {
     kept_and_pooled(&fixture!("a_aiag_10x3x3", "a_aiag_10x3x3_one_sided"));
 }
 
 #[test]
-fn published_example_of_20_parts_3_appraisers_2_trials() {
+pub(crate) fn published_example_of_20_parts_3_appraisers_2_trials() {
     kept_and_pooled(&fixture!("b_mr_20x3x2"));
 }
 
 #[test]
-fn handbook_example_of_5_machines_2_operators_5_pins() {
+pub(crate) fn handbook_example_of_5_machines_2_operators_5_pins() {
     kept_and_pooled(&fixture!("c_nist_crossed_5x2x5"));
 }
 
 #[test]
-fn published_example_with_wider_repeats() {
+pub(crate) fn published_example_with_wider_repeats() {
     kept_and_pooled(&fixture!("g_aiag_within_times_1_5"));
 }
 
 #[test]
-fn two_appraisers() {
+pub(crate) fn two_appraisers() {
     kept_and_pooled(&fixture!("edge_two_appraisers"));
 }
 
 #[test]
-fn handbook_example_with_operators_nested_in_machines() {
+pub(crate) fn handbook_example_with_operators_nested_in_machines() {
     let fixture = fixture!("c_nist_nested_5x2x5");
     for spread_sds in [6.0, 5.15] {
         compare(
@@ -284,7 +399,7 @@ fn handbook_example_with_operators_nested_in_machines() {
 }
 
 #[test]
-fn parts_nested_in_appraisers() {
+pub(crate) fn parts_nested_in_appraisers() {
     let fixture = fixture!("f_nested_3x8x3");
     for spread_sds in [6.0, 5.15] {
         compare(
@@ -298,7 +413,7 @@ fn parts_nested_in_appraisers() {
 }
 
 #[test]
-fn three_crossed_factors() {
+pub(crate) fn three_crossed_factors() {
     let fixture = fixture!("f_three_factor_8x3x2x2");
     for spread_sds in [6.0, 5.15] {
         compare(
@@ -312,7 +427,7 @@ fn three_crossed_factors() {
 }
 
 #[test]
-fn one_trial_leaves_the_interaction_in_the_error() {
+pub(crate) fn one_trial_leaves_the_interaction_in_the_error() {
     let fixture = fixture!("edge_one_trial");
     for spread_sds in [6.0, 5.15] {
         compare(
@@ -326,7 +441,7 @@ fn one_trial_leaves_the_interaction_in_the_error() {
 }
 
 #[test]
-fn certified_data_sets_of_one_factor() {
+pub(crate) fn certified_data_sets_of_one_factor() {
     // AtmWtAg: rounding the printed readings to f64 moves the sums by 6e-11 and p by six times that.
     let fixtures = [
         (fixture!("d_strd_AtmWtAg"), 9.0),

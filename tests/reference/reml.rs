@@ -3,8 +3,8 @@
 use restudy_engine::{Interval, Reml, reml};
 use serde_json::Value;
 
-use crate::check::Check;
-use crate::data::{Fixture, PART_APPRAISER, fixture, name_of_line, settings};
+use crate::check::{Check, compared};
+use crate::data::{Fixture, PART_APPRAISER, fixture, name_of_line, settings, values};
 
 /// What is asked of components and covariances; the likelihood has its own.
 const COMPONENT_DIGITS: f64 = 9.0;
@@ -78,7 +78,7 @@ fn cases() -> Vec<Case> {
 /// Places of the reference's components among ours.
 fn places(order: &Value, fit: &Reml) -> Vec<usize> {
     let place = |name: &Value| {
-        let name = name_of_line(name.as_str().unwrap());
+        let name = name_of_line(compared(name).as_str().unwrap());
         fit.order.iter().position(|n| *n == name).unwrap()
     };
     order.as_array().unwrap().iter().map(place).collect()
@@ -92,7 +92,7 @@ fn matrix(
     places: &[usize],
 ) {
     let found = found.as_ref().unwrap();
-    let expected = |i: usize, j: usize| expected[i][j].as_f64().unwrap();
+    let expected = |i: usize, j: usize| compared(&expected[i][j]).as_f64().unwrap();
     // An entry far below its row and column holds rounding alone.
     for (i, &a) in places.iter().enumerate() {
         for (j, &b) in places.iter().enumerate() {
@@ -104,7 +104,7 @@ fn matrix(
 }
 
 #[test]
-fn components_likelihood_slopes_and_covariances() {
+pub(crate) fn components_likelihood_slopes_and_covariances() {
     for case in cases() {
         let fit = fitted(&case);
         let expected = &case.fixture.expected[case.block];
@@ -127,6 +127,7 @@ fn components_likelihood_slopes_and_covariances() {
             } else {
                 // Zero, in units of the score's own sd.
                 let information = &fit.expected_information.as_ref().unwrap()[place][place];
+                compared(&expected["score_at_estimate"][key]);
                 check.number(
                     &format!("score of {key}"),
                     Some(1.0 + score / information.sqrt()),
@@ -134,6 +135,11 @@ fn components_likelihood_slopes_and_covariances() {
                 );
             }
         }
+        let named = expected["at_zero"].as_array().unwrap();
+        let named: Vec<String> = (named.iter())
+            .map(|n| name_of_line(compared(n).as_str().unwrap()))
+            .collect();
+        check.same("at zero, by name", fit.at_zero.clone(), named);
         check.same("at zero", fit.at_zero.clone(), at_zero.clone());
         for (field, found) in [
             ("expected_information", &fit.expected_information),
@@ -150,7 +156,7 @@ fn components_likelihood_slopes_and_covariances() {
                 .unwrap()
                 .iter()
                 .map(|n| {
-                    let name = name_of_line(n.as_str().unwrap());
+                    let name = name_of_line(compared(n).as_str().unwrap());
                     kept.iter().position(|k| **k == name).unwrap()
                 })
                 .collect();
@@ -166,14 +172,15 @@ fn components_likelihood_slopes_and_covariances() {
 
         let mut check = Check::new(&name, LIKELIHOOD_DIGITS);
         check.digits("loglik", fit.log_likelihood, &expected["loglik"]);
-        check.finish(1);
+        let criterion = fit.log_likelihood.map(|l| -2.0 * l);
+        check.digits("criterion", criterion, &expected["reml_criterion"]);
+        check.finish(2);
     }
 }
 
 #[test]
-fn lme4_finds_the_same_maximum() {
-    let lme4: Value =
-        serde_json::from_str(include_str!("../../fixtures/reference/lme4_values.json")).unwrap();
+pub(crate) fn lme4_finds_the_same_maximum() {
+    let lme4 = values!("lme4_values");
     for case in cases() {
         let fit = fitted(&case);
         let name = match case.block {
@@ -186,7 +193,7 @@ fn lme4_finds_the_same_maximum() {
         for (key, estimate) in theirs["estimates"].as_object().unwrap() {
             let line = name_of_line(key);
             let place = fit.order.iter().position(|n| *n == line).unwrap();
-            let away = fit.estimates[place] - estimate.as_f64().unwrap();
+            let away = fit.estimates[place] - compared(estimate).as_f64().unwrap();
             check.number(key, Some(largest + away), largest);
         }
         check.digits("loglik", fit.log_likelihood, &theirs["loglik"]);
@@ -196,7 +203,7 @@ fn lme4_finds_the_same_maximum() {
 
 /// Chi-square limits of the gauge variance with matched degrees of freedom, by `analyse`.
 #[test]
-fn the_gauge_variance_has_its_approximate_limits() {
+pub(crate) fn the_gauge_variance_has_its_approximate_limits() {
     for case in cases()
         .iter()
         .filter(|case| case.fixture.name.starts_with("e_") && case.block == "reml_with_interaction")
@@ -214,7 +221,7 @@ fn the_gauge_variance_has_its_approximate_limits() {
             // A statistic of zero has its p of one half to the root of its rounding.
             let (p, expected) = (
                 study.interaction.p.unwrap(),
-                interaction["p_half_chi2_1"].as_f64().unwrap(),
+                compared(&interaction["p_half_chi2_1"]).as_f64().unwrap(),
             );
             assert!((p / expected - 1.0).abs() < 1e-5, "{p:e} for {expected:e}");
         }

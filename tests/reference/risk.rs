@@ -4,13 +4,13 @@ use restudy_engine::risk::{Judged, Misclassification, guarded, misclassification
 use restudy_engine::{Figure, Process, Settings};
 use serde_json::Value;
 
-use crate::check::Check;
-use crate::data::{Fixture, PART_APPRAISER, fixture, pooling, settings};
+use crate::check::{Check, compared};
+use crate::data::{Fixture, PART_APPRAISER, fixture, pooling, settings, values};
 
 const DIGITS: f64 = 9.0;
 
 fn number(value: &Value) -> Option<f64> {
-    match value {
+    match compared(value) {
         Value::String(text) => Some(text.parse().unwrap()),
         _ => value.as_f64(),
     }
@@ -41,9 +41,8 @@ fn by_name(risks: &Misclassification) -> [(&'static str, Option<f64>); 8] {
 }
 
 #[test]
-fn points_from_easy_to_far_out() {
-    let constants: Value =
-        serde_json::from_str(include_str!("../../fixtures/reference/constants.json")).unwrap();
+pub(crate) fn points_from_easy_to_far_out() {
+    let constants = values!("constants");
     let points = constants["misclassification"].as_array().unwrap();
     let mut check = Check::new("misclassification", DIGITS);
     for (i, point) in points.iter().enumerate() {
@@ -58,9 +57,8 @@ fn points_from_easy_to_far_out() {
 }
 
 #[test]
-fn guard_bands() {
-    let table: Value =
-        serde_json::from_str(include_str!("../../fixtures/reference/guard_bands.json")).unwrap();
+pub(crate) fn guard_bands() {
+    let table = values!("guard_bands");
     let mut check = Check::new("guard bands", DIGITS);
     for (i, point) in table["points"].as_array().unwrap().iter().enumerate() {
         let wanted = number(&point["wanted"]).unwrap();
@@ -108,7 +106,7 @@ fn estimates(fixture: &Fixture, factors: &[(&str, &[&str])], settings: Settings,
 }
 
 #[test]
-fn every_data_set_with_a_tolerance() {
+pub(crate) fn every_data_set_with_a_tolerance() {
     for fixture in [
         fixture!("a_aiag_10x3x3"),
         fixture!("a_aiag_10x3x3", "a_aiag_10x3x3_one_sided"),
