@@ -73,6 +73,12 @@ fn cells(check: &mut Check, table: &Table, expected: &Value) {
 
 fn cochrans_c(check: &mut Check, table: &Table, expected: &Value) {
     let found = cochran(&table.cells);
+    check.digits("cells", Some(table.cells.len() as f64), &expected["cells"]);
+    check.digits(
+        "df of a cell",
+        Some(table.df() as f64),
+        &expected["df_per_cell"],
+    );
     check.digits("C", found.map(|c| c.statistic), &expected["statistic"]);
     check.digits(
         "p of C",
@@ -178,6 +184,11 @@ fn compare(fixture: &Fixture, fields_at_least: usize) {
     let table = Table::of(fixture);
     let expected = &fixture.expected["consistency"];
     let mut check = Check::new(fixture.name, 9.0);
+    check.digits(
+        "trials",
+        Some(table.cells[0].count as f64),
+        &expected["trials"],
+    );
     cells(&mut check, &table, expected);
     cochrans_c(&mut check, &table, &expected["cochran"]);
     mandel(&mut check, &table, expected);
@@ -189,6 +200,7 @@ fn compare(fixture: &Fixture, fields_at_least: usize) {
 #[test]
 pub(crate) fn statistics_of_published_studies() {
     compare(&fixture!("a_aiag_10x3x3"), 180);
+    compare(&fixture!("a_aiag_10x3x3", "a_aiag_10x3x3_one_sided"), 180);
     compare(&fixture!("b_mr_20x3x2"), 330);
     compare(&fixture!("c_nist_crossed_5x2x5"), 70);
     compare(&fixture!("g_aiag_within_times_1_5"), 180);

@@ -4,7 +4,7 @@ use restudy_engine::{Design, Factor, Model};
 use serde_json::Value;
 
 use crate::check::{Check, compared};
-use crate::data::{name_of_line, values};
+use crate::data::{Fixture, fixture, name_of_line, values};
 
 #[test]
 pub(crate) fn eleven_designs_have_the_reference_rules() {
@@ -73,35 +73,73 @@ pub(crate) fn eleven_designs_have_the_reference_rules() {
             check.same(&format!("factors of {term}"), found, wanted);
         }
         for (term, weights) in expected["expected_mean_squares"].as_object().unwrap() {
-            let mut wanted = vec![0; model.lines().len()];
-            weights
-                .as_object()
-                .unwrap()
-                .iter()
-                .for_each(|(t, w)| wanted[place(t)] = compared(w).as_u64().unwrap() as usize);
-            check.same(
-                &format!("expected mean square of {term}"),
-                model.expected_mean_square(place(term)),
-                wanted,
-            );
+            expected_mean_square(&mut check, &model, term, weights);
         }
         for (term, weights) in expected["component_as_mean_squares"].as_object().unwrap() {
-            let component = model.component(place(term));
-            let mut wanted = vec![(0, 1); model.lines().len()];
-            weights
-                .as_object()
-                .unwrap()
-                .iter()
-                .for_each(|(t, w)| wanted[place(t)] = fraction(compared(w).as_str().unwrap()));
-            let found: Vec<(i64, i64)> = component
-                .numerators()
-                .iter()
-                .map(|&n| lowest_terms(n, component.denominator() as i64))
-                .collect();
-            check.same(&format!("component of {term}"), found, wanted);
+            component(&mut check, &model, term, weights);
         }
         check.finish(8);
     }
+}
+
+/// The same rules in the designs of three data sets.
+#[test]
+pub(crate) fn larger_studies_have_the_reference_rules() {
+    let three: &[(&str, &[&str])] = &[("part", &[]), ("appraiser", &[]), ("fixture", &[])];
+    let cases: [(Fixture, &[(&str, &[&str])]); 3] = [
+        (
+            fixture!("c_nist_nested_5x2x5"),
+            &[("part", &[]), ("appraiser", &["part"])],
+        ),
+        (
+            fixture!("f_nested_3x8x3"),
+            &[("appraiser", &[]), ("part", &["appraiser"])],
+        ),
+        (fixture!("f_three_factor_8x3x2x2"), three),
+    ];
+    for (fixture, factors) in cases {
+        let placed = fixture.placed(factors);
+        let model = Model::full(&placed.design, placed.values.len() / placed.design.cells());
+        let mut check = Check::new(fixture.name, f64::INFINITY);
+        for (term, line) in fixture.expected["anova"].as_object().unwrap() {
+            expected_mean_square(&mut check, &model, term, &line["expected_mean_square"]);
+            component(&mut check, &model, term, &line["component_as_mean_squares"]);
+        }
+        check.finish(6);
+    }
+}
+
+fn place(model: &Model, name: &str) -> usize {
+    let name = name_of_line(name);
+    model.lines().iter().position(|l| l.name == name).unwrap()
+}
+
+fn expected_mean_square(check: &mut Check, model: &Model, term: &str, weights: &Value) {
+    let mut wanted = vec![0; model.lines().len()];
+    for (line, weight) in weights.as_object().unwrap() {
+        wanted[place(model, line)] = whole(weight);
+    }
+    let found = model.expected_mean_square(place(model, term));
+    check.same(&format!("expected mean square of {term}"), found, wanted);
+}
+
+fn component(check: &mut Check, model: &Model, term: &str, weights: &Value) {
+    let component = model.component(place(model, term));
+    let mut wanted = vec![(0, 1); model.lines().len()];
+    for (line, weight) in weights.as_object().unwrap() {
+        wanted[place(model, line)] = fraction(compared(weight).as_str().unwrap());
+    }
+    let found: Vec<(i64, i64)> = (component.numerators().iter())
+        .map(|&n| lowest_terms(n, component.denominator() as i64))
+        .collect();
+    check.same(&format!("component of {term}"), found, wanted);
+}
+
+/// A whole number, written as such or as text.
+fn whole(value: &Value) -> usize {
+    let value = compared(value);
+    let number = value.as_u64().map(|n| n as usize);
+    number.unwrap_or_else(|| value.as_str().unwrap().parse().unwrap())
 }
 
 fn design(expected: &Value) -> Design {

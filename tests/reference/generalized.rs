@@ -1,6 +1,8 @@
 //! Simulated limits against percentiles of 2,000,000 draws made elsewhere, within four Monte Carlo errors of both;
 //! Satterthwaite's limits to nine digits.
 
+use std::sync::Once;
+
 use restudy_engine::{
     DRAWS, Figure, Interval, Prepared, Process, Quantity, Settings, Simulation, Study,
 };
@@ -219,35 +221,38 @@ fn compare(fixture: &Fixture, factors: Factors, choice: Choice, block: &str, at_
 
 #[test]
 pub(crate) fn variances_and_their_ratio() {
-    for fixture in crossed() {
-        for (choice, block) in CHOICES {
-            compare(&fixture, PART_APPRAISER, choice, block, 24);
+    static ONCE: Once = Once::new();
+    ONCE.call_once(|| {
+        for fixture in crossed() {
+            for (choice, block) in CHOICES {
+                compare(&fixture, PART_APPRAISER, choice, block, 24);
+            }
         }
-    }
-    compare(
-        &fixture!("edge_one_trial"),
-        PART_APPRAISER,
-        |s| s,
-        "additive",
-        24,
-    );
-    compare(&fixture!("f_nested_3x8x3"), NESTED, |s| s, "model", 24);
-    compare(
-        &fixture!("c_nist_nested_5x2x5"),
-        NIST_NESTED,
-        |s| s,
-        "model",
-        24,
-    );
-    compare(
-        &fixture!("f_three_factor_8x3x2x2"),
-        THREE,
-        |s| s,
-        "model",
-        24,
-    );
-    compare(&fixture!("d_strd_AtmWtAg"), PART_ONLY, |s| s, "model", 20);
-    compare(&fixture!("d_strd_SiRstv"), PART_ONLY, |s| s, "model", 20);
+        compare(
+            &fixture!("edge_one_trial"),
+            PART_APPRAISER,
+            |s| s,
+            "additive",
+            24,
+        );
+        compare(&fixture!("f_nested_3x8x3"), NESTED, |s| s, "model", 24);
+        compare(
+            &fixture!("c_nist_nested_5x2x5"),
+            NIST_NESTED,
+            |s| s,
+            "model",
+            24,
+        );
+        compare(
+            &fixture!("f_three_factor_8x3x2x2"),
+            THREE,
+            |s| s,
+            "model",
+            24,
+        );
+        compare(&fixture!("d_strd_AtmWtAg"), PART_ONLY, |s| s, "model", 20);
+        compare(&fixture!("d_strd_SiRstv"), PART_ONLY, |s| s, "model", 20);
+    });
 }
 
 fn study(fixture: &Fixture, factors: Factors, settings: Settings) -> Study {
@@ -279,116 +284,128 @@ fn risks(near: &mut Near, study: &Study, block: &Value, level: &str) {
 
 #[test]
 pub(crate) fn risks_of_two_crossed_factors() {
-    for fixture in crossed() {
-        for (choice, block) in CHOICES {
-            let mut near = Near::new(&fixture, block, FEWER);
-            for (confidence, level) in LEVELS {
-                let study = study(&fixture, PART_APPRAISER, choice(settings(confidence, 6.0)));
-                risks(&mut near, &study, &fixture.expected[block], level);
+    static ONCE: Once = Once::new();
+    ONCE.call_once(|| {
+        for fixture in crossed() {
+            for (choice, block) in CHOICES {
+                let mut near = Near::new(&fixture, block, FEWER);
+                for (confidence, level) in LEVELS {
+                    let study = study(&fixture, PART_APPRAISER, choice(settings(confidence, 6.0)));
+                    risks(&mut near, &study, &fixture.expected[block], level);
+                }
+                near.finish(16);
             }
-            near.finish(16);
         }
-    }
+    });
 }
 
 #[test]
 pub(crate) fn risks_of_other_designs() {
-    let cases: [(Fixture, Factors, &str); 3] = [
-        (fixture!("edge_one_trial"), PART_APPRAISER, "additive"),
-        (fixture!("f_nested_3x8x3"), NESTED, "model"),
-        (fixture!("c_nist_nested_5x2x5"), NIST_NESTED, "model"),
-    ];
-    for (fixture, factors, block) in cases {
-        let mut near = Near::new(&fixture, block, FEWER);
-        for (confidence, level) in LEVELS {
-            let study = study(&fixture, factors, settings(confidence, 6.0));
-            risks(&mut near, &study, &fixture.expected[block], level);
+    static ONCE: Once = Once::new();
+    ONCE.call_once(|| {
+        let cases: [(Fixture, Factors, &str); 3] = [
+            (fixture!("edge_one_trial"), PART_APPRAISER, "additive"),
+            (fixture!("f_nested_3x8x3"), NESTED, "model"),
+            (fixture!("c_nist_nested_5x2x5"), NIST_NESTED, "model"),
+        ];
+        for (fixture, factors, block) in cases {
+            let mut near = Near::new(&fixture, block, FEWER);
+            for (confidence, level) in LEVELS {
+                let study = study(&fixture, factors, settings(confidence, 6.0));
+                risks(&mut near, &study, &fixture.expected[block], level);
+            }
+            near.finish(16);
         }
-        near.finish(16);
-    }
+    });
 }
 
 /// The limits of a share of the distance from the study's mean hold the uncertainty of that mean.
 #[test]
 pub(crate) fn shares_of_the_distance_from_the_study_mean() {
-    let fixture = fixture!("a_aiag_10x3x3", "a_aiag_10x3x3_one_sided");
-    for (choice, block) in CHOICES {
-        let mut near = Near::new(&fixture, block, DRAWS);
-        for (confidence, level) in LEVELS {
-            let study = fixture.study(PART_APPRAISER, &choice(settings(confidence, 6.0)));
-            let figures = &study.figures;
-            for (name, spread) in [
-                ("repeatability", &figures.repeatability),
-                ("reproducibility", &figures.reproducibility),
-                ("gauge", &figures.gauge),
-                ("part", &figures.part),
-                ("total", &figures.total),
-            ] {
-                let field = format!("share_of_tolerance_6.{name}");
-                let expected = simulated(&fixture.expected[block], &field, level).unwrap();
-                near.limits(&field, &spread.share_of_tolerance, expected);
+    static ONCE: Once = Once::new();
+    ONCE.call_once(|| {
+        let fixture = fixture!("a_aiag_10x3x3", "a_aiag_10x3x3_one_sided");
+        for (choice, block) in CHOICES {
+            let mut near = Near::new(&fixture, block, DRAWS);
+            for (confidence, level) in LEVELS {
+                let study = fixture.study(PART_APPRAISER, &choice(settings(confidence, 6.0)));
+                let figures = &study.figures;
+                for (name, spread) in [
+                    ("repeatability", &figures.repeatability),
+                    ("reproducibility", &figures.reproducibility),
+                    ("gauge", &figures.gauge),
+                    ("part", &figures.part),
+                    ("total", &figures.total),
+                ] {
+                    let field = format!("share_of_tolerance_6.{name}");
+                    let expected = simulated(&fixture.expected[block], &field, level).unwrap();
+                    near.limits(&field, &spread.share_of_tolerance, expected);
+                }
+                assert_eq!(study.draws, Some(DRAWS));
             }
-            assert_eq!(study.draws, Some(DRAWS));
+            near.finish(20);
         }
-        near.finish(20);
-    }
+    });
 }
 
 #[test]
 pub(crate) fn satterthwaite() {
-    let mut cases: Vec<(Fixture, Factors, Choice, &str)> = Vec::new();
-    for (choice, block) in CHOICES {
-        cases.extend(crossed().map(|fixture| (fixture, PART_APPRAISER, choice, block)));
-    }
-    let same: Choice = |s| s;
-    cases.push((fixture!("edge_one_trial"), PART_APPRAISER, same, "additive"));
-    cases.push((fixture!("f_nested_3x8x3"), NESTED, same, "model"));
-    cases.push((fixture!("f_three_factor_8x3x2x2"), THREE, same, "model"));
-    for fixture in [
-        fixture!("d_strd_AtmWtAg"),
-        fixture!("d_strd_SiRstv"),
-        fixture!("d_strd_SmLs01"),
-    ] {
-        cases.push((fixture, PART_ONLY, same, "model"));
-    }
-    cases.push((fixture!("c_nist_nested_5x2x5"), NIST_NESTED, same, "model"));
-    cases.push((
-        fixture!("edge_equal_trials"),
-        PART_APPRAISER,
-        same,
-        "with_interaction",
-    ));
-    for (fixture, factors, choice, block) in cases {
-        let mut check = Check::new(&format!("{} {block}", fixture.name), 9.0);
-        for (confidence, level) in LEVELS {
-            let by = by(&fixture, factors, choice(settings(confidence, 6.0)));
-            let expected = &fixture.expected[block]["intervals"][level]["satterthwaite"];
-            for (quantity, name) in VARIANCES {
-                let Some(figure) = by(quantity, Interval::Satterthwaite) else {
-                    continue;
-                };
-                for (end, found) in [("lower", figure.lower), ("upper", figure.upper)] {
-                    check.digits(&format!("{name} {end}"), found, &expected[name][end]);
+    static ONCE: Once = Once::new();
+    ONCE.call_once(|| {
+        let mut cases: Vec<(Fixture, Factors, Choice, &str)> = Vec::new();
+        for (choice, block) in CHOICES {
+            cases.extend(crossed().map(|fixture| (fixture, PART_APPRAISER, choice, block)));
+        }
+        let same: Choice = |s| s;
+        cases.push((fixture!("edge_one_trial"), PART_APPRAISER, same, "additive"));
+        cases.push((fixture!("f_nested_3x8x3"), NESTED, same, "model"));
+        cases.push((fixture!("f_three_factor_8x3x2x2"), THREE, same, "model"));
+        for fixture in [
+            fixture!("d_strd_AtmWtAg"),
+            fixture!("d_strd_SiRstv"),
+            fixture!("d_strd_SmLs01"),
+        ] {
+            cases.push((fixture, PART_ONLY, same, "model"));
+        }
+        cases.push((fixture!("c_nist_nested_5x2x5"), NIST_NESTED, same, "model"));
+        cases.push((
+            fixture!("edge_equal_trials"),
+            PART_APPRAISER,
+            same,
+            "with_interaction",
+        ));
+        for (fixture, factors, choice, block) in cases {
+            let mut check = Check::new(&format!("{} {block}", fixture.name), 9.0);
+            for (confidence, level) in LEVELS {
+                let by = by(&fixture, factors, choice(settings(confidence, 6.0)));
+                let expected = &fixture.expected[block]["intervals"][level]["satterthwaite"];
+                for (quantity, name) in VARIANCES {
+                    let Some(figure) = by(quantity, Interval::Satterthwaite) else {
+                        continue;
+                    };
+                    for (end, found) in [("lower", figure.lower), ("upper", figure.upper)] {
+                        check.digits(&format!("{name} {end}"), found, &expected[name][end]);
+                    }
+                }
+                for (spread_sds, shares) in [(6.0, "6"), (5.15, "5.15")] {
+                    let total = (fixture
+                        .drawn(factors, &settings(confidence, spread_sds), 10)
+                        .figures)
+                        .total;
+                    let (Some(gauge), Some(share)) = (
+                        by(Quantity::Gauge, Interval::Satterthwaite),
+                        total.share_of_tolerance.estimate,
+                    ) else {
+                        continue;
+                    };
+                    let per_sd = share / total.sd.estimate.unwrap();
+                    let figure = times(under(&gauge, f64::sqrt), per_sd);
+                    let wanted = &expected["gauge_share_of_tolerance"][shares];
+                    check.digits("share lower", figure.lower, &wanted["lower"]);
+                    check.digits("share upper", figure.upper, &wanted["upper"]);
                 }
             }
-            for (spread_sds, shares) in [(6.0, "6"), (5.15, "5.15")] {
-                let total = (fixture
-                    .drawn(factors, &settings(confidence, spread_sds), 10)
-                    .figures)
-                    .total;
-                let (Some(gauge), Some(share)) = (
-                    by(Quantity::Gauge, Interval::Satterthwaite),
-                    total.share_of_tolerance.estimate,
-                ) else {
-                    continue;
-                };
-                let per_sd = share / total.sd.estimate.unwrap();
-                let figure = times(under(&gauge, f64::sqrt), per_sd);
-                let wanted = &expected["gauge_share_of_tolerance"][shares];
-                check.digits("share lower", figure.lower, &wanted["lower"]);
-                check.digits("share upper", figure.upper, &wanted["upper"]);
-            }
+            check.finish(12);
         }
-        check.finish(12);
-    }
+    });
 }

@@ -17,6 +17,7 @@ mod leaves;
 mod limits;
 mod offsets;
 mod point_values;
+mod published;
 mod quantiles;
 mod reml;
 mod risk;

@@ -46,10 +46,33 @@ fn compare_to(
             .unwrap(),
     );
     check.number("exact grand mean", Some(study.grand_mean), exact);
+    compare_design(&mut check, &study, &fixture.expected["design"]);
     compare_table(&mut check, &study, &fixture.expected[table]);
     compare_mean_squares(&mut check, &study, &fixture.expected[block]["mean_squares"]);
     compare_estimates(&mut check, &study, &fixture.expected[block]["estimates"]);
     check.finish(20);
+}
+
+fn compare_design(check: &mut Check, study: &Study, expected: &Value) {
+    check.digits(
+        "trials",
+        Some(study.design.trials as f64),
+        &expected["trials"],
+    );
+    for factor in &study.design.factors {
+        let plural = match &*factor.name {
+            "part" => "parts",
+            _ => "appraisers",
+        };
+        let levels = (expected.get(plural)).or_else(|| expected.get("levels")?.get(&factor.name));
+        if let Some(levels) = levels {
+            check.digits(&factor.name, Some(factor.levels as f64), levels);
+        }
+        if let Some(nested) = expected.get("nested_in").and_then(|n| n.get(&factor.name)) {
+            let outer = compared(&nested[0]).as_str().unwrap();
+            check.same(&factor.name, factor.within.clone(), vec![outer.to_owned()]);
+        }
+    }
 }
 
 fn compare_table(check: &mut Check, study: &Study, table: &Value) {
@@ -377,6 +400,19 @@ pub(crate) fn handbook_example_of_5_machines_2_operators_5_pins() {
 #[test]
 pub(crate) fn published_example_with_wider_repeats() {
     kept_and_pooled(&fixture!("g_aiag_within_times_1_5"));
+}
+
+#[test]
+pub(crate) fn identical_repeats() {
+    for spread_sds in [6.0, 5.15] {
+        compare(
+            &fixture!("edge_equal_trials"),
+            PART_APPRAISER,
+            &settings(0.95, spread_sds),
+            "anova",
+            "with_interaction",
+        );
+    }
 }
 
 #[test]
