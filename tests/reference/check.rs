@@ -105,7 +105,7 @@ impl Check {
 }
 
 /// Correct digits: minus the log of the relative error.
-fn digits(found: f64, expected: f64) -> f64 {
+pub(crate) fn digits(found: f64, expected: f64) -> f64 {
     if found == expected {
         return f64::INFINITY;
     }

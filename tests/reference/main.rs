@@ -5,6 +5,7 @@
 
 #![allow(clippy::unwrap_used, reason = "a test stops at its first surprise")]
 
+mod accuracy;
 mod check;
 mod comparison;
 mod consistency;

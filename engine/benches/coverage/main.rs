@@ -56,7 +56,7 @@ fn run(studies: u32) -> Result<bool, Fault> {
     let mut out = std::io::stdout();
     writeln!(
         out,
-        "{studies} studies a line, seed {SEED}. Coverage in %, in brackets: truth below the lower limit, truth above the upper.\n"
+        "{studies} studies a line, seed {SEED}. Coverage in %, in brackets: truth below the lower limit, truth above the upper, studies without limits.\n"
     )?;
     let mut faults = String::new();
     let mut compared = 0;
