@@ -171,8 +171,11 @@ impl Fixture {
     }
 }
 
-pub(crate) const PART_APPRAISER: &[(&str, &[&str])] = &[("part", &[]), ("appraiser", &[])];
-pub(crate) const PART_ONLY: &[(&str, &[&str])] = &[("part", &[])];
+/// Factors with their containers.
+pub(crate) type Factors = &'static [(&'static str, &'static [&'static str])];
+
+pub(crate) const PART_APPRAISER: Factors = &[("part", &[]), ("appraiser", &[])];
+pub(crate) const PART_ONLY: Factors = &[("part", &[])];
 
 /// Interaction kept, no limits on the share.
 pub(crate) fn settings(confidence: f64, spread_sds: f64) -> Settings {

@@ -4,7 +4,7 @@ use restudy_engine::{Design, Factor, Model};
 use serde_json::Value;
 
 use crate::check::{Check, compared};
-use crate::data::{Fixture, fixture, name_of_line, values};
+use crate::data::{Factors, Fixture, fixture, name_of_line, values};
 
 #[test]
 pub(crate) fn eleven_designs_have_the_reference_rules() {
@@ -85,8 +85,8 @@ pub(crate) fn eleven_designs_have_the_reference_rules() {
 /// The same rules in the designs of three data sets.
 #[test]
 pub(crate) fn larger_studies_have_the_reference_rules() {
-    let three: &[(&str, &[&str])] = &[("part", &[]), ("appraiser", &[]), ("fixture", &[])];
-    let cases: [(Fixture, &[(&str, &[&str])]); 3] = [
+    let three: Factors = &[("part", &[]), ("appraiser", &[]), ("fixture", &[])];
+    let cases: [(Fixture, Factors); 3] = [
         (
             fixture!("c_nist_nested_5x2x5"),
             &[("part", &[]), ("appraiser", &["part"])],

@@ -9,13 +9,10 @@ use restudy_engine::{
 use serde_json::Value;
 
 use crate::check::{Check, compared};
-use crate::data::{Fixture, PART_APPRAISER, PART_ONLY, fixture, pooling, settings};
+use crate::data::{Factors, Fixture, PART_APPRAISER, PART_ONLY, fixture, pooling, settings};
 
 /// Enough for most data sets, and quick without optimisation; the allowed distance grows accordingly.
 const FEWER: u32 = 20_000;
-
-/// Factors with their containers.
-type Factors = &'static [(&'static str, &'static [&'static str])];
 
 const NESTED: Factors = &[("appraiser", &[]), ("part", &["appraiser"])];
 const NIST_NESTED: Factors = &[("part", &[]), ("appraiser", &["part"])];
@@ -127,8 +124,11 @@ fn simulated<'a>(block: &'a Value, field: &str, level: &str) -> Option<&'a Value
         .find_map(|kind| block["simulated"].get(kind)?.get(field)?.get(level))
 }
 
+/// A function of a figure.
+type Of = fn(f64) -> f64;
+
 /// Increasing functions of the ratio of part to gauge and of the gauge variance.
-const FOLLOWING: &[(&str, Quantity, fn(f64) -> f64)] = &[
+const FOLLOWING: &[(&str, Quantity, Of)] = &[
     ("sd.gauge", Quantity::Gauge, f64::sqrt),
     ("share_of_total_variance.part", Quantity::PartToGauge, |r| {
         r / (1.0 + r)
@@ -139,14 +139,14 @@ const FOLLOWING: &[(&str, Quantity, fn(f64) -> f64)] = &[
 ];
 
 /// Decreasing functions of the ratio of part to gauge.
-const FALLING: &[(&str, fn(f64) -> f64)] = &[
+const FALLING: &[(&str, Of)] = &[
     ("share_of_total_variance.gauge", |r| 1.0 / (1.0 + r)),
     ("share_of_study_variation.gauge", |r| {
         (1.0 / (1.0 + r)).sqrt()
     }),
 ];
 
-fn under(figure: &Figure, f: fn(f64) -> f64) -> Figure {
+fn under(figure: &Figure, f: Of) -> Figure {
     Figure {
         lower: figure.lower.map(f),
         upper: figure.upper.map(f),

@@ -273,7 +273,7 @@ fn every_value_is_compared_or_listed() {
     assert!(idle.is_empty(), "listed for nothing: {idle:?}");
     assert!(compared > 12_900, "only {compared} values were compared");
     let folder = concat!(env!("CARGO_MANIFEST_DIR"), "/../fixtures/reference");
-    for entry in std::fs::read_dir(folder).unwrap() {
+    for entry in fs_err::read_dir(folder).unwrap() {
         let path = entry.unwrap().path();
         let name = path.file_stem().unwrap().to_str().unwrap();
         let known = files.contains_key(name) || name == IN_THE_BENCH;

@@ -22,3 +22,4 @@ mod published;
 mod quantiles;
 mod reml;
 mod risk;
+mod study_values;

@@ -4,7 +4,9 @@ use restudy_engine::{Component, MeanSquare, Spread, Study};
 use serde_json::Value;
 
 use crate::check::{Check, compared};
-use crate::data::{Fixture, PART_APPRAISER, fixture, name_of_line, pooling, settings, values};
+use crate::data::{
+    Factors, Fixture, PART_APPRAISER, fixture, name_of_line, pooling, settings, values,
+};
 
 /// Rounded to as many decimals as the print has.
 fn printed(check: &mut Check, field: &str, found: f64, print: &Value) {
@@ -36,8 +38,8 @@ fn spread<'a>(study: &'a Study, reference: &str) -> &'a Spread {
 
 #[test]
 pub(crate) fn printed_figures() {
-    const NESTED: &[(&str, &[&str])] = &[("part", &[]), ("appraiser", &["part"])];
-    let cases: [(Fixture, &[(&str, &[&str])]); 4] = [
+    const NESTED: Factors = &[("part", &[]), ("appraiser", &["part"])];
+    let cases: [(Fixture, Factors); 4] = [
         (fixture!("a_aiag_10x3x3"), PART_APPRAISER),
         (fixture!("b_mr_20x3x2"), PART_APPRAISER),
         (fixture!("c_nist_crossed_5x2x5"), PART_APPRAISER),
