@@ -8,7 +8,11 @@
 //! Not here: files, clocks, network, chance without a seed, who measured what (labels stay with the caller).
 //!
 //! Invariant: a number is finite or absent; an absent one says why.
+//!
+//! How many digits are right and how often the limits hold the truth: [`accuracy`].
 
+#[doc = include_str!("../ACCURACY.md")]
+pub mod accuracy {}
 mod basis;
 mod chance;
 mod combination;

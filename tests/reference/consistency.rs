@@ -9,8 +9,8 @@ use restudy_engine::consistency::{
 };
 use serde_json::Value;
 
-use crate::check::Check;
-use crate::data::{Fixture, PART_APPRAISER, fixture};
+use crate::check::{Check, compared};
+use crate::data::{Fixture, PART_APPRAISER, fixture, values};
 
 /// Cells by part and appraiser, in the order of the reference.
 struct Table {
@@ -73,6 +73,12 @@ fn cells(check: &mut Check, table: &Table, expected: &Value) {
 
 fn cochrans_c(check: &mut Check, table: &Table, expected: &Value) {
     let found = cochran(&table.cells);
+    check.digits("cells", Some(table.cells.len() as f64), &expected["cells"]);
+    check.digits(
+        "df of a cell",
+        Some(table.df() as f64),
+        &expected["df_per_cell"],
+    );
     check.digits("C", found.map(|c| c.statistic), &expected["statistic"]);
     check.digits(
         "p of C",
@@ -144,22 +150,27 @@ fn range_chart(check: &mut Check, table: &Table, expected: &Value) {
         Some(mean / chart.d2),
         &expected["sigma_from_mean_range"],
     );
-    let above = table
-        .cells
-        .iter()
-        .filter(|c| c.range > chart.upper * mean)
-        .count();
-    check.same(
-        "cells above",
-        above,
-        expected["above"].as_array().unwrap().len(),
+    check.digits(
+        "lower limit",
+        Some(chart.lower * mean),
+        &expected["lower_limit"],
     );
+    let above: Vec<&Cell> = (table.cells.iter())
+        .filter(|c| c.range > chart.upper * mean)
+        .collect();
+    let expected = expected["above"].as_array().unwrap();
+    check.same("cells above", above.len(), expected.len());
+    for (cell, expected) in above.iter().zip(expected) {
+        check.digits("range above", Some(cell.range), &expected["range"]);
+    }
 }
 
 fn own_repeatability(check: &mut Check, table: &Table, expected: &Value) {
     for (appraiser, expected) in expected.as_array().unwrap().iter().enumerate() {
         let own = Own::pooled(&table.of_appraiser(appraiser)).unwrap();
         check.digits("own variance", Some(own.variance), &expected["variance"]);
+        let sd = own.variance.sqrt();
+        check.digits("own sd", Some(sd), &expected["sd"]);
         check.digits("own df", Some(own.df as f64), &expected["df"]);
         for (field, confidence) in [("variance_0.90", 0.90), ("variance_0.95", 0.95)] {
             let (lower, upper) = own.limits(confidence);
@@ -173,6 +184,11 @@ fn compare(fixture: &Fixture, fields_at_least: usize) {
     let table = Table::of(fixture);
     let expected = &fixture.expected["consistency"];
     let mut check = Check::new(fixture.name, 9.0);
+    check.digits(
+        "trials",
+        Some(table.cells[0].count as f64),
+        &expected["trials"],
+    );
     cells(&mut check, &table, expected);
     cochrans_c(&mut check, &table, &expected["cochran"]);
     mandel(&mut check, &table, expected);
@@ -182,26 +198,32 @@ fn compare(fixture: &Fixture, fields_at_least: usize) {
 }
 
 #[test]
-fn statistics_of_published_studies() {
+pub(crate) fn statistics_of_published_studies() {
     compare(&fixture!("a_aiag_10x3x3"), 180);
+    compare(&fixture!("a_aiag_10x3x3", "a_aiag_10x3x3_one_sided"), 180);
     compare(&fixture!("b_mr_20x3x2"), 330);
     compare(&fixture!("c_nist_crossed_5x2x5"), 70);
     compare(&fixture!("g_aiag_within_times_1_5"), 180);
 }
 
 #[test]
-fn statistics_of_thin_studies() {
+pub(crate) fn statistics_of_thin_studies() {
     compare(&fixture!("edge_two_appraisers"), 120);
     compare(&fixture!("edge_equal_trials"), 180);
 }
 
 #[test]
-fn critical_values() {
-    let constants: Value =
-        serde_json::from_str(include_str!("../../fixtures/reference/constants.json")).unwrap();
+pub(crate) fn critical_values() {
+    let constants = values!("constants");
     let mut check = Check::new("constants", 9.0);
-    let number = |entry: &Value, key: &str| entry[key].as_u64().unwrap() as usize;
-    let level = |entry: &Value| entry["alpha"].as_str().unwrap().parse::<f64>().unwrap();
+    let number = |entry: &Value, key: &str| compared(&entry[key]).as_u64().unwrap() as usize;
+    let level = |entry: &Value| {
+        compared(&entry["alpha"])
+            .as_str()
+            .unwrap()
+            .parse::<f64>()
+            .unwrap()
+    };
     for entry in constants["cochran"].as_array().unwrap() {
         let (cells, df) = (number(entry, "cells"), number(entry, "df_per_cell"));
         let found = cochran_critical(cells, df, level(entry));
@@ -231,7 +253,7 @@ fn critical_values() {
 
 /// ISO 5725-2:1994, tables 4 (C), 6 and 7 (h and k), from memory: 8 laboratories, 3 replicates.
 #[test]
-fn tables_of_the_standard() {
+pub(crate) fn tables_of_the_standard() {
     let printed = |x: f64, decimals: usize| format!("{x:.decimals$}");
     assert_eq!(printed(cochran_critical(8, 2, 0.05), 3), "0.516");
     assert_eq!(printed(cochran_critical(8, 2, 0.01), 3), "0.615");
@@ -243,7 +265,7 @@ fn tables_of_the_standard() {
 
 /// For two readings the range is the absolute difference: sd √2, mean 2/√π, chance beyond by the normal tail.
 #[test]
-fn range_of_two_readings() {
+pub(crate) fn range_of_two_readings() {
     let chart = RangeChart::of(2).unwrap();
     let d2 = 2.0 / std::f64::consts::PI.sqrt();
     let d3 = (2.0 - d2 * d2).sqrt();

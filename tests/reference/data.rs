@@ -1,6 +1,7 @@
 //! Reads the fixtures: a table of readings and the values that belong to it.
 
-use std::collections::HashMap;
+use std::collections::{BTreeMap, HashMap};
+use std::sync::Mutex;
 
 use restudy_engine::{
     Design, Factor, Interaction, Judge, OneSided, Prepared, Settings, Simulation, Study, Tolerance,
@@ -13,7 +14,7 @@ pub(crate) struct Fixture {
     pub(crate) name: &'static str,
     columns: Vec<String>,
     rows: Vec<Vec<String>>,
-    pub(crate) expected: Value,
+    pub(crate) expected: &'static Value,
 }
 
 macro_rules! fixture {
@@ -29,6 +30,31 @@ macro_rules! fixture {
     };
 }
 pub(crate) use fixture;
+
+/// A fixture of values alone.
+macro_rules! values {
+    ($name:literal) => {
+        crate::data::read(
+            $name,
+            include_str!(concat!("../../fixtures/reference/", $name, ".json")),
+        )
+    };
+}
+pub(crate) use values;
+
+/// Values read once and kept, so that every test sees the same ones.
+static READ: Mutex<BTreeMap<&'static str, &'static Value>> = Mutex::new(BTreeMap::new());
+
+pub(crate) fn read(name: &'static str, text: &str) -> &'static Value {
+    let mut kept = READ.lock().unwrap();
+    let parse = || &*Box::leak(Box::new(serde_json::from_str(text).unwrap()));
+    kept.entry(name).or_insert_with(parse)
+}
+
+/// All values read so far, by the name of their file.
+pub(crate) fn all_read() -> BTreeMap<&'static str, &'static Value> {
+    READ.lock().unwrap().clone()
+}
 
 /// Readings placed in a design.
 pub(crate) struct Placed {
@@ -46,7 +72,7 @@ impl Fixture {
             name,
             columns: lines.next().unwrap(),
             rows: lines.collect(),
-            expected: serde_json::from_str(expected).unwrap(),
+            expected: read(name, expected),
         }
     }
 
@@ -103,7 +129,7 @@ impl Fixture {
     /// The tolerance of the reference values; one-sided ones are judged from the grand mean.
     pub(crate) fn tolerance(&self) -> Tolerance {
         let limit = |side: &str| {
-            self.expected["tolerance"][side]
+            crate::check::compared(&self.expected["tolerance"][side])
                 .as_str()
                 .map(|text| text.parse().unwrap())
         };
@@ -145,8 +171,11 @@ impl Fixture {
     }
 }
 
-pub(crate) const PART_APPRAISER: &[(&str, &[&str])] = &[("part", &[]), ("appraiser", &[])];
-pub(crate) const PART_ONLY: &[(&str, &[&str])] = &[("part", &[])];
+/// Factors with their containers.
+pub(crate) type Factors = &'static [(&'static str, &'static [&'static str])];
+
+pub(crate) const PART_APPRAISER: Factors = &[("part", &[]), ("appraiser", &[])];
+pub(crate) const PART_ONLY: Factors = &[("part", &[])];
 
 /// Interaction kept, no limits on the share.
 pub(crate) fn settings(confidence: f64, spread_sds: f64) -> Settings {
@@ -184,4 +213,10 @@ pub(crate) fn name_of_line(reference: &str) -> String {
             }
         }
     }
+}
+
+/// A fraction of integers of any length as the nearest f64, or one next to it.
+pub(crate) fn rational(text: &str) -> f64 {
+    let (numerator, denominator) = text.split_once('/').unwrap_or((text, "1"));
+    numerator.parse::<f64>().unwrap() / denominator.parse::<f64>().unwrap()
 }

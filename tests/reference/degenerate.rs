@@ -4,7 +4,7 @@ use crate::check::Check;
 use crate::data::{PART_APPRAISER, fixture, settings};
 
 #[test]
-fn identical_repeats_have_no_repeatability_of_their_own() {
+pub(crate) fn identical_repeats_have_no_repeatability_of_their_own() {
     let fixture = fixture!("edge_equal_trials");
     let study = fixture.study(PART_APPRAISER, &settings(0.95, 6.0));
     let anova = &fixture.expected["anova"];
@@ -61,7 +61,7 @@ fn identical_repeats_have_no_repeatability_of_their_own() {
 }
 
 #[test]
-fn equal_readings_have_no_shares() {
+pub(crate) fn equal_readings_have_no_shares() {
     let fixture = fixture!("edge_all_equal");
     let placed = fixture.placed(PART_APPRAISER);
     let tolerance = restudy_engine::Tolerance {

@@ -2,23 +2,21 @@
 
 use restudy_engine::Figure;
 use restudy_engine::ladder::Ladder;
-use serde_json::Value;
 
-use crate::check::Check;
-use crate::data::{PART_APPRAISER, fixture, pooling, settings};
+use crate::check::{Check, compared};
+use crate::data::{PART_APPRAISER, fixture, pooling, settings, values};
 
 #[test]
-fn every_rung_of_three_studies() {
-    let text = include_str!("../../fixtures/reference/ladder.json");
-    let reference: Vec<Value> = serde_json::from_str(text).unwrap();
+pub(crate) fn every_rung_of_three_studies() {
+    let reference = values!("ladder").as_array().unwrap();
     assert_eq!(reference.len(), 12);
-    for expected in &reference {
-        let fixture = match expected["study"].as_str().unwrap() {
+    for expected in reference {
+        let fixture = match compared(&expected["study"]).as_str().unwrap() {
             "a_aiag_10x3x3" => fixture!("a_aiag_10x3x3"),
             "b_mr_20x3x2" => fixture!("b_mr_20x3x2"),
             _ => fixture!("g_aiag_within_times_1_5"),
         };
-        let change = expected["change"].as_str().unwrap();
+        let change = compared(&expected["change"]).as_str().unwrap();
         for (confidence, level) in [(0.90, "0.90"), (0.95, "0.95")] {
             let study = fixture.study(PART_APPRAISER, &settings(confidence, 6.0));
             let ladder = Ladder::of(&study).unwrap();
@@ -51,7 +49,7 @@ fn every_rung_of_three_studies() {
 
 /// Pooled, the gauge without appraisers is its repeatability, whose limits are exact.
 #[test]
-fn what_is_left_of_a_pooled_study() {
+pub(crate) fn what_is_left_of_a_pooled_study() {
     let fixture = fixture!("a_aiag_10x3x3");
     let study = fixture.study(PART_APPRAISER, &pooling(settings(0.95, 6.0)));
     let ladder = Ladder::of(&study).unwrap();

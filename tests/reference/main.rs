@@ -5,6 +5,7 @@
 
 #![allow(clippy::unwrap_used, reason = "a test stops at its first surprise")]
 
+mod accuracy;
 mod check;
 mod comparison;
 mod consistency;
@@ -13,9 +14,12 @@ mod degenerate;
 mod design_rules;
 mod generalized;
 mod ladder;
+mod leaves;
 mod limits;
 mod offsets;
 mod point_values;
+mod published;
 mod quantiles;
 mod reml;
 mod risk;
+mod study_values;

@@ -1,9 +1,11 @@
 //! What must not change a study, and what must hold within one.
 
 use restudy_engine::quantile::chi_square_above;
-use restudy_engine::{Interaction, Judge, Limits, Settings, Spread, Study};
+use restudy_engine::{
+    Factor, Interaction, Judge, Limits, OneSided, Process, Settings, Spread, Study, Tolerance,
+};
 
-use crate::invented::{Readings, crossed, three_factors};
+use crate::invented::{Readings, crossed, simulated, three_factors};
 use crate::sound::{TWO_SIDED, settings, study_with};
 
 fn study(readings: &Readings, settings: &Settings) -> Study {
@@ -263,4 +265,63 @@ fn the_judged_figure_follows_the_setting() {
     assert_eq!(judged(Judge::Estimate), share.estimate.unwrap());
     assert_eq!(judged(Judge::Upper), share.upper.unwrap());
     assert!(judged(Judge::Chance(0.99)) < judged(Judge::Chance(0.8)));
+}
+
+/// The numbers of a study that carry no unit but hang on the tolerance.
+fn of_tolerance(study: &Study) -> Vec<f64> {
+    let f = &study.figures;
+    let mut numbers = vec![study.chance_above.watch, study.chance_above.act];
+    for spread in [
+        &f.repeatability,
+        &f.reproducibility,
+        &f.gauge,
+        &f.part,
+        &f.total,
+    ] {
+        let share = &spread.share_of_tolerance;
+        numbers.extend([share.estimate, share.lower, share.upper, share.at_least]);
+    }
+    let risk = study.risk.as_ref().unwrap();
+    for risk in [
+        &risk.producer.joint,
+        &risk.producer.given_good,
+        &risk.consumer.joint,
+        &risk.consumer.given_bad,
+    ] {
+        numbers.push(risk.estimate);
+    }
+    numbers.into_iter().map(|x| x.unwrap_or(-1.0)).collect()
+}
+
+/// Readings and tolerance moved together, in millimetres or in inches: the same shares, chances and risks.
+#[test]
+fn tolerance_and_readings_in_another_unit_give_the_same_shares() {
+    let settings = Settings {
+        process: Some(Process::StudyParts),
+        ..settings()
+    };
+    let nested = vec![
+        Factor::crossed("appraiser", 3),
+        Factor::nested("part", 6, &["appraiser"]),
+    ];
+    for readings in [crossed(31, 8, 3, 2), simulated(32, nested, 3)] {
+        for one_sided in [false, true] {
+            let at = |scale: f64, shift: f64| {
+                let tolerance = Tolerance {
+                    lower: (!one_sided).then_some(-30.0 * scale + shift),
+                    upper: Some(30.0 * scale + shift),
+                    one_sided: one_sided.then_some(OneSided::ToStudyMean),
+                };
+                let readings = readings.mapped(|y| y * scale + shift);
+                of_tolerance(&study_with(&readings, &tolerance, &settings))
+            };
+            let before = at(1.0, 0.0);
+            assert!(before.iter().filter(|x| **x >= 0.0).count() > 20);
+            for (scale, shift) in [(1.0 / 25.4, 0.0), (25.4, 0.0), (1.0, 1024.0), (0.25, -64.0)] {
+                for (x, y) in before.iter().zip(at(scale, shift)) {
+                    assert!((x - y).abs() <= 1e-8 * x.abs(), "{x:e} became {y:e}");
+                }
+            }
+        }
+    }
 }

@@ -12,13 +12,16 @@ fn faulty_input_is_refused_in_one_sentence() {
         analyse(&readings.design, cells, values, &TWO_SIDED, settings).unwrap_err()
     };
     let (cells, values) = (readings.cells.as_slice(), readings.values.as_slice());
-    for bad in [f64::NAN, f64::INFINITY] {
+    for bad in [f64::NAN, f64::INFINITY, f64::NEG_INFINITY] {
         let mut values = values.to_vec();
         values[3] = bad;
-        assert!(matches!(
-            refused(cells, &values, &settings()),
-            StudyError::NotFinite { row: 3, .. }
-        ));
+        // Unequal cells take another way to the same sentence.
+        for kept in [values.len(), values.len() - 1] {
+            assert!(matches!(
+                refused(&cells[..kept], &values[..kept], &settings()),
+                StudyError::NotFinite { row: 3, .. }
+            ));
+        }
     }
     assert!(matches!(
         refused(cells, &values[1..], &settings()),

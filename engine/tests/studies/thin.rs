@@ -100,3 +100,38 @@ fn additive_readings_have_no_error_and_no_f_of_rounding() {
     assert!(study.mean_squares.iter().all(|line| line.f.is_none()));
     assert_eq!(study.figures.repeatability.variance.estimate, Some(0.0));
 }
+
+/// What each kind of thin or flat data lacks is said in a sentence, and what it shows is a number.
+#[test]
+fn every_degenerate_study_says_what_it_lacks() {
+    let flat = study(&crossed(8, 5, 3, 2).by_levels(|_| 25.4));
+    let gauge = &flat.figures.gauge;
+    assert_eq!(gauge.variance.estimate, Some(0.0));
+    assert!(gauge.share_of_tolerance.why.is_some() && flat.part_to_gauge.why.is_some());
+
+    let exact_repeats = study(&crossed(9, 5, 3, 2).by_levels(|l| (l[0] * 3 + l[1] * l[1]) as f64));
+    let repeats = &exact_repeats.figures.repeatability.variance;
+    assert_eq!((repeats.estimate, repeats.lower), (Some(0.0), None));
+    assert!(repeats.why.is_some());
+    assert!(
+        exact_repeats
+            .figures
+            .gauge
+            .share_of_tolerance
+            .upper
+            .is_some()
+    );
+
+    let one_appraiser = study(&crossed(10, 5, 1, 2));
+    assert!(one_appraiser.figures.reproducibility.variance.why.is_some());
+    assert!(one_appraiser.figures.gauge.variance.upper.is_some());
+
+    let one_trial = study(&crossed(11, 5, 3, 1));
+    assert!(one_trial.remarks.iter().any(|r| r.kind == "one trial"));
+    assert!(one_trial.figures.gauge.variance.upper.is_some());
+
+    let two_parts = study(&crossed(12, 2, 3, 2));
+    let part = &two_parts.figures.part.variance;
+    assert!(part.estimate.is_some() && part.lower.is_some());
+    assert_eq!(part.upper.is_none(), part.open.is_some());
+}
