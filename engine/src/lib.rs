@@ -25,6 +25,7 @@ mod mls;
 mod model;
 pub mod over_time;
 pub mod planning;
+mod pooling;
 pub mod quantile;
 mod random;
 mod record;

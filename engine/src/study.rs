@@ -12,6 +12,7 @@ use crate::figures::{Evidence, ndc};
 use crate::generalized::Simulation;
 use crate::limits::Quantity;
 use crate::model::Model;
+use crate::pooling;
 use crate::record::{
     ChanceAbove, Component, Figures, InteractionChoice, Layout, OtherReading, Remark, Study,
 };
@@ -167,18 +168,7 @@ impl Prepared {
         let Interaction::PoolAbove(limit) = self.settings.interaction else {
             return None;
         };
-        let mut model: Option<Model> = None;
-        loop {
-            let now = model.as_ref().unwrap_or(&self.kept.model);
-            let table = Table::new(now, sums);
-            let above = |line: usize| table.test(line).is_some_and(|t| t.p > limit);
-            let drop = now
-                .interactions()
-                .into_iter()
-                .find(|&line| now.is_outermost(line) && above(line));
-            let Some(line) = drop else { return model };
-            model = Some(now.without(&self.design, &[line]));
-        }
+        pooling::pooled_above(limit, &self.design, &self.kept.model, sums).1
     }
 
     fn with_evidence<T>(
@@ -241,7 +231,7 @@ impl Prepared {
             ndc: ndc(&part_to_gauge),
             risk,
             chance_above: self.chance_above(evidence, judged.estimate.is_some()),
-            remarks: self.remarks(&components, &figures, &part_to_gauge),
+            remarks: self.remarks(sums, &components, &figures, &part_to_gauge),
             draws: drawn.then_some(self.simulation.draws),
             seed: drawn.then_some(self.simulation.seed),
             grand_mean: sums.grand_mean,
@@ -258,13 +248,21 @@ impl Prepared {
 
     fn remarks(
         &self,
+        sums: &Sums,
         components: &[Component],
         figures: &Figures,
         part_to_gauge: &Figure,
     ) -> Vec<Remark> {
         let one_trial = self.taken_in.as_deref().map(outside::one_trial);
+        let pooled = pooling::remark(
+            self.settings.interaction,
+            &self.design,
+            &self.kept.model,
+            sums,
+        );
         one_trial
             .into_iter()
+            .chain(pooled)
             .chain(outside::outside_limits(components, figures, part_to_gauge))
             .collect()
     }

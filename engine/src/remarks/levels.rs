@@ -3,6 +3,7 @@
 use super::LEVEL;
 use super::luck::f_above;
 use super::material::{Material, remark};
+use super::step;
 use super::words::{list, number};
 use crate::consistency::{Cell, Own, RangeChart, mandel_h, mandel_k};
 use crate::quantile::{Side, f};
@@ -58,7 +59,8 @@ fn widest(material: &Material<'_>, factor: usize, tests: usize, named: &[usize])
         (0..levels).max_by(|&a, &b| variances[a].total_cmp(&variances[b]).then(b.cmp(&a)))?;
     let others = cells_of.iter().enumerate().filter(|(l, _)| *l != level);
     let others = Own::pooled(others.flat_map(|(_, cells)| cells))?;
-    let ratio = own[level].variance / others.variance;
+    let beside = others.variance.max(step::least_variance(material));
+    let ratio = own[level].variance / beside;
     let p = tests as f64 * f_above(ratio, own[level].df as f64, others.df as f64);
     Some(Widest {
         factor,
@@ -66,11 +68,7 @@ fn widest(material: &Material<'_>, factor: usize, tests: usize, named: &[usize])
         own: own[level],
         others,
         k: k[level],
-        p: if others.variance == 0.0 {
-            0.0
-        } else {
-            p.min(1.0)
-        },
+        p: if beside == 0.0 { 0.0 } else { p.min(1.0) },
     })
 }
 

@@ -311,7 +311,7 @@ fn the_cells_behind_an_interaction() {
     assert!(
         remark
             .text
-            .starts_with("The interaction of part and loading is real"),
+            .starts_with("The interaction of part and loading is larger than luck gives (p "),
         "{}",
         remark.text
     );
