@@ -137,11 +137,15 @@ pub(super) fn mean(material: &Material<'_>) -> Option<Found> {
     if material.is_rounding(total, cells.len()) {
         return None;
     }
-    let p = p_of_largest(&square, departure, total, step::least_variance(material));
+    let least = step::least_variance(material);
+    let p = p_of_largest(&square, departure, total, least);
     if p <= LEVEL / 2.0 {
         return Some(one_off(material, &square, cell, departure, p));
     }
-    let interaction = material.study.interaction.p.filter(|_| square.trials > 1)?;
+    let seen = material.study.interaction.p.filter(|_| square.trials > 1)?;
+    let df = square.df() as f64;
+    let rounding = f_above(total / df / least, df, material.within().1 as f64);
+    let interaction = seen.max(rounding);
     let name = material.study.components.iter().find(|c| c.of.len() == 2)?;
     let matters = material.of_gauge(&name.name).is_some_and(|s| s >= MATTERS);
     (interaction <= LEVEL / 2.0 && matters)
