@@ -1,4 +1,8 @@
 //! Levels of a factor that stand out, such as one appraiser: by an own repeatability, or by an offset from the others.
+//!
+//! The level named is the one that stands out most of all that were looked at: its p allows for that (Bonferroni), and so
+//! do the limits of an offset, which hold for all levels at once. Limits of an own repeatability are those of that level
+//! alone.
 
 use super::LEVEL;
 use super::luck::f_above;
@@ -117,6 +121,8 @@ fn widest_cell(material: &Material<'_>, widest: &Widest) -> Option<String> {
 struct Offset {
     factor: usize,
     level: usize,
+    /// Levels that were looked at.
+    tests: usize,
     /// From the mean of the other levels.
     by: f64,
     error: f64,
@@ -161,6 +167,7 @@ fn furthest(material: &Material<'_>, factor: usize, tests: usize) -> Option<Offs
     Some(Offset {
         factor,
         level,
+        tests,
         by,
         error,
         df,
@@ -190,7 +197,7 @@ fn denominator(material: &Material<'_>, factor: usize) -> Option<f64> {
 }
 
 fn apart(material: &Material<'_>, offset: &Offset) -> Remark {
-    let outside = 1.0 - material.study.confidence;
+    let outside = (1.0 - material.study.confidence) / offset.tests as f64;
     let reach = offset.error * f(Side::Above, outside, 1.0, offset.df).sqrt();
     let (near, far) = (offset.by.abs() - reach, offset.by.abs() + reach);
     let levels = material.design.factors()[offset.factor].levels;
