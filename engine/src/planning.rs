@@ -2,7 +2,7 @@
 //!
 //! Model: mean squares of a random model are independent, `df × MS / E[MS]` chi-square; the expectations follow from the
 //! design and the assumed variances. Each simulated study is estimated, limited and held against the limit as a real
-//! one would be: components cut at zero and added, two-sided modified-large-sample limits.
+//! one would be that keeps its interaction: components cut at zero and added, two-sided modified-large-sample limits.
 //!
 //! Not here: parts as a source of doubt. In a crossed design their spread does not enter the gauge's.
 //!
