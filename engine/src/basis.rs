@@ -6,7 +6,7 @@ use std::sync::OnceLock;
 use crate::combination::Combination;
 use crate::generalized::{Draws, Simulation};
 use crate::linear::{Linear, Pair};
-use crate::mls::{Constants, Limit};
+use crate::mls::{Constants, Limit, lower_limit_at};
 use crate::model::Model;
 use crate::quantile::{ChiSquareByDf, Side};
 use crate::settings::{Judge, Settings};
@@ -77,9 +77,7 @@ impl Basis {
         let sums = Variances::of(&model);
         let judging = match (settings.judge, &sums.gauge) {
             (Judge::Chance(p), Some(gauge)) => {
-                let weights = gauge.weights();
-                let constants = Constants::for_lower(&weights, &df, 1.0 - p);
-                Some(constants.lower_limit(&weights))
+                Some(lower_limit_at(&gauge.weights(), &df, p, 1.0 - p))
             }
             _ => None,
         };

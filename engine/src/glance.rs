@@ -78,7 +78,7 @@ impl<'a> Glance<'a> {
             return Err(StudyError::Spread(spread));
         }
         self.under(self.prepared.kept());
-        if let Some(pooled) = self.prepared.partly_pooled(self) {
+        if let Some(pooled) = self.prepared.partly_pooled(&self.sums) {
             self.under(pooled);
         }
         Ok(())

@@ -15,8 +15,7 @@ use crate::mls::Constants;
 use crate::record::{Component, Study};
 use crate::recorded::Recorded;
 
-const NO_TABLE: &str =
-    "without a table of mean squares the data set no limits to what would be left";
+const NO_TABLE: &str = "limits of what would be left need equal numbers of readings in all cells";
 const NO_REPEATS: &str = "the mean square that is left is zero, so the data set no limits";
 const NO_SD: &str = "all readings are equal";
 /// The least part of the spread that a step must take away to count as one.

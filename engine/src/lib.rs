@@ -32,6 +32,7 @@ mod model;
 pub mod over_time;
 mod percentile;
 pub mod planning;
+mod pooling;
 pub mod quantile;
 mod random;
 mod record;

@@ -191,15 +191,25 @@ impl Limit {
     }
 }
 
-/// One-sided lower limit of `sum c_q MS_q` at the confidence whose log odds are given; a confidence below one
-/// half is the upper limit at the rest.
-pub(crate) fn lower_at_log_odds(c: &[f64], df: &[f64], ms: &[f64], log_odds: f64) -> f64 {
-    let tail = 1.0 / (1.0 + log_odds.abs().exp());
-    if log_odds >= 0.0 {
-        return Constants::for_lower(c, df, tail).lower(c, ms);
+/// The one-sided lower limit of `sum c_q MS_q` at a confidence given by its two tails, `within + beyond = 1`; where it is
+/// below one half, the upper limit at the rest.
+pub(crate) fn lower_limit_at(c: &[f64], df: &[f64], within: f64, beyond: f64) -> Limit {
+    if within >= beyond {
+        return Constants::for_lower(c, df, beyond).lower_limit(c);
     }
     let negated: Vec<f64> = c.iter().map(|c| -c).collect();
-    -Constants::for_lower(&negated, df, tail).lower(&negated, ms)
+    Constants::for_lower(&negated, df, within).upper_limit(c)
+}
+
+/// The one-sided lower limit at the confidence whose log odds are given.
+pub(crate) fn lower_at_log_odds(c: &[f64], df: &[f64], ms: &[f64], log_odds: f64) -> f64 {
+    let tail = 1.0 / (1.0 + log_odds.abs().exp());
+    let (within, beyond) = if log_odds >= 0.0 {
+        (1.0 - tail, tail)
+    } else {
+        (tail, 1.0 - tail)
+    };
+    lower_limit_at(c, df, within, beyond).at(ms)
 }
 
 /// All pairs of lines, `q <= s`, row by row.

@@ -227,6 +227,12 @@ impl Model {
             .collect()
     }
 
+    /// Their names, in the same order.
+    pub(crate) fn interaction_names(&self) -> Vec<String> {
+        let lines = self.interactions().into_iter();
+        lines.map(|i| self.lines[i].name.clone()).collect()
+    }
+
     /// Whether no other term holds this one, so that the error alone would take it in.
     pub(crate) fn is_outermost(&self, line: usize) -> bool {
         let terms = self

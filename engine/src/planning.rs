@@ -2,7 +2,7 @@
 //!
 //! Model: mean squares of a random model are independent, `df × MS / E[MS]` chi-square; the expectations follow from the
 //! design and the assumed variances. Each simulated study is estimated, limited and held against the limit as a real
-//! one would be: components cut at zero and added, two-sided modified-large-sample limits.
+//! one would be that keeps its interaction: components cut at zero and added, two-sided modified-large-sample limits.
 //!
 //! Not here: parts as a source of doubt. In a crossed design their spread does not enter the gauge's.
 //!
@@ -103,6 +103,11 @@ pub enum PlanningError {
         "in this design the spread of parts enters the gauge's; expected a variance of `{0}` too"
     )]
     PartsMatter(String),
+    /// A design whose error holds the parts.
+    #[error(
+        "with one trial and no factor crossed with the parts the gauge cannot be told from them; expected two trials or more"
+    )]
+    NotApart,
     /// A number out of range.
     #[error("{what} is {value}; expected {expected}")]
     OutOfRange {
@@ -334,6 +339,9 @@ impl Gauge {
         }
 
         let model = Model::estimable(design, candidate.trials);
+        if model.part().is_none() {
+            return Err(PlanningError::NotApart);
+        }
         // The line of the full model whose mean square a line of the study is: with one trial the error is another.
         let taken_in = model.taken_in_by_error(design);
         let place = |name: &str| {

@@ -136,7 +136,7 @@ impl Recorded {
         self.ms.len() - 1
     }
 
-    /// The mean square within cells and its degrees of freedom, where repeats alone stand behind it.
+    /// The mean square within cells and its degrees of freedom, where there are repeats; it holds what was pooled into it too.
     pub(crate) fn repeats(&self) -> Option<(f64, f64)> {
         debug_assert_eq!(self.model.error().name, WITHIN_CELLS);
         (self.trials > 1).then(|| (self.ms[self.error()], self.df[self.error()]))

@@ -11,6 +11,7 @@ use crate::generalized::Simulation;
 use crate::glance::Glance;
 use crate::limits::Quantity;
 use crate::model::Model;
+use crate::pooling::{Pooled, pooled_above};
 use crate::record::{
     ChanceAbove, Component, Figures, InteractionChoice, Layout, OtherReading, Remark, Study,
 };
@@ -18,8 +19,7 @@ use crate::remarks::outside;
 use crate::reml;
 use crate::risk::of_study;
 use crate::settings::{Interaction, Judge, Settings, Tolerance};
-use crate::sums::Sweep;
-use crate::table::Table;
+use crate::sums::{Sums, Sweep};
 use crate::tolerance::Share;
 
 /// Readings that a cell may hold.
@@ -159,29 +159,17 @@ impl Prepared {
     }
 
     /// The model after pooling, largest interaction first; `None` when nothing is pooled.
-    pub(crate) fn partly_pooled(&self, glance: &Glance<'_>) -> Option<Arc<Basis>> {
+    pub(crate) fn partly_pooled(&self, sums: &Sums) -> Option<Arc<Basis>> {
         let Interaction::PoolAbove(limit) = self.settings.interaction else {
             return None;
         };
-        let mut pooled: Option<Arc<Basis>> = None;
-        let (mut ss, mut ms) = (Vec::new(), Vec::new());
-        loop {
-            let basis = pooled.as_deref().unwrap_or(&self.kept);
-            basis.mean_squares(&glance.sums, &mut ss, &mut ms);
-            let table = Table {
-                basis,
-                ss: &ss,
-                ms: &ms,
-            };
-            let above = |line: usize| table.test(line).is_some_and(|t| t.p > limit);
-            let model = &basis.model;
-            let drop = model
-                .interactions()
-                .into_iter()
-                .find(|&line| model.is_outermost(line) && above(line));
-            let Some(line) = drop else { return pooled };
-            pooled = Some(self.without(model, &[line]));
-        }
+        self.pooled_above(limit, sums).1
+    }
+
+    fn pooled_above(&self, limit: f64, sums: &Sums) -> (Vec<Pooled>, Option<Arc<Basis>>) {
+        pooled_above(limit, &self.kept, sums, |model, line| {
+            self.without(model, &[line])
+        })
     }
 
     fn record(&self, glance: &Glance<'_>, share: &Share) -> Study {
@@ -210,7 +198,7 @@ impl Prepared {
             ndc: ndc(&part_to_gauge),
             risk,
             chance_above: self.chance_above(&evidence, judged.estimate.is_some()),
-            remarks: self.remarks(&components, &figures, &part_to_gauge),
+            remarks: self.remarks(&glance.sums, &components, &figures, &part_to_gauge),
             draws: drawn.then_some(simulation.draws),
             seed: drawn.then_some(simulation.seed),
             grand_mean,
@@ -227,6 +215,7 @@ impl Prepared {
 
     fn remarks(
         &self,
+        sums: &Sums,
         components: &[Component],
         figures: &Figures,
         part_to_gauge: &Figure,
@@ -234,8 +223,21 @@ impl Prepared {
         let one_trial = self.taken_in.as_deref().map(outside::one_trial);
         one_trial
             .into_iter()
+            .chain(self.terms_pooled(sums))
             .chain(outside::outside_limits(components, figures, part_to_gauge))
             .collect()
+    }
+
+    /// Names the terms pooled, where there was more than one to pool.
+    fn terms_pooled(&self, sums: &Sums) -> Option<Remark> {
+        let Interaction::PoolAbove(limit) = self.settings.interaction else {
+            return None;
+        };
+        if self.kept.model.interactions().len() < 2 {
+            return None;
+        }
+        let (taken_in, left) = self.pooled_above(limit, sums);
+        outside::terms_pooled(limit, &taken_in, &left?.model.interaction_names())
     }
 
     fn layout(&self) -> Layout {

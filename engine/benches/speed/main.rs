@@ -7,6 +7,8 @@
 //! `cargo bench -p restudy-engine --bench speed`; a peer whose program is missing is named and left out. `PYTHON` and
 //! `RSCRIPT` name other programs than `python3` (with numpy and scipy) and `Rscript`.
 
+#![allow(clippy::print_stdout)] // the ratios are what it is run for
+
 mod peers;
 mod readings;
 mod tally;

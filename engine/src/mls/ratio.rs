@@ -82,54 +82,41 @@ impl Ratio {
         if d.is_nan() || d <= 0.0 {
             return None;
         }
-        let root_of = |v| root_of(v, self.signs_may_change);
-        let root = |[a, b, c]: Polynomial, rho: f64| root_of(a + rho * (b + rho * c));
-        let below = |v, rho: f64| n - rho * d - root(v, rho);
-        let above = |v, rho: f64| n - rho * d + root(v, rho);
-        // The same over the ratio, in terms of its inverse: reaches up to a ratio without end.
-        let above_inverse =
-            |[a, b, c]: Polynomial, t: f64| n * t - d + root_of(c + t * (b + t * a));
+        let forms = |forms: &[Vec<f64>; 3]| forms.each_ref().map(|form| value(form, ms, largest));
+        let lower = self.falls_to_zero(n, d, -1.0, |piece| forms(&piece.lower));
+        let upper = if self.denominator_at_least.at(ms) <= 0.0 {
+            f64::INFINITY
+        } else {
+            self.falls_to_zero(n, d, 1.0, |piece| forms(&piece.upper))
+        };
+        // Only at confidences near one half can the lower limit be without end.
+        let lower = if lower.is_finite() { lower } else { n / d };
+        Some((lower.max(0.0), upper))
+    }
 
-        let estimate = n / d;
-        let mut lower = 0.0;
-        if estimate > 0.0 {
-            let mut start = 0.0;
-            for piece in &self.pieces {
-                let v = piece.lower.each_ref().map(|form| value(form, ms, largest));
-                let end = piece.end.min(estimate);
-                if below(v, start) <= 0.0 {
-                    break;
-                }
-                if below(v, end) <= 0.0 {
-                    lower = root::between(|rho| below(v, rho), start, end);
-                    break;
-                }
-                start = end;
-                lower = end;
-            }
-        }
-        if self.denominator_at_least.at(ms) <= 0.0 {
-            return Some((lower, f64::INFINITY));
-        }
-        let mut upper = 0.0;
+    /// The ratio `ρ` at which `n - ρ d ± √V` falls to zero; zero when it never was above, infinite when it stays there.
+    fn falls_to_zero(&self, n: f64, d: f64, side: f64, v: impl Fn(&Piece) -> Polynomial) -> f64 {
+        let root = |v| side * root_of(v, self.signs_may_change);
         let mut start = 0.0;
         for piece in &self.pieces {
-            let v = piece.upper.each_ref().map(|form| value(form, ms, largest));
-            if above(v, start) <= 0.0 {
-                break;
+            let [a, b, c] = v(piece);
+            let at = |rho: f64| n - rho * d + root(a + rho * (b + rho * c));
+            // The same over the ratio, in terms of its inverse: reaches up to a ratio without end.
+            let at_inverse = |t: f64| n * t - d + root(c + t * (b + t * a));
+            if at(start) <= 0.0 {
+                return start;
             }
-            if piece.end == f64::INFINITY {
+            if piece.end.is_finite() {
+                if at(piece.end) <= 0.0 {
+                    return root::between(at, start, piece.end);
+                }
+                start = piece.end;
+            } else if at_inverse(0.0) < 0.0 {
                 let from = start.max(f64::MIN_POSITIVE.sqrt());
-                upper = 1.0 / root::between(|t| above_inverse(v, t), 0.0, 1.0 / from);
-            } else if above(v, piece.end) <= 0.0 {
-                upper = root::between(|rho| above(v, rho), start, piece.end);
-                break;
-            } else {
-                upper = piece.end;
+                return 1.0 / root::between(at_inverse, 0.0, 1.0 / from);
             }
-            start = piece.end;
         }
-        Some((lower, upper))
+        f64::INFINITY
     }
 }
 
@@ -167,4 +154,38 @@ fn value(form: &[f64], ms: &[f64], largest: f64) -> f64 {
         sum += along * (x * scale);
     }
     sum
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::quantile::{Side, f};
+
+    /// With one term the limits are the exact ones by F, also where the lower one lies above the estimate.
+    #[test]
+    fn one_term_over_the_error_has_its_exact_limits() {
+        let (n, m, trials) = (3.0, 4.0, 2.0);
+        for tail in [0.005, 0.025, 0.25, 0.45, 0.5] {
+            let constants = Constants::all(&[n, m], tail);
+            let ratio = Ratio::new(&constants, &[1.0 / trials, -1.0 / trials], &[0.0, 1.0]);
+            for observed in [0.8, 1.4, 26.25, 4000.0] {
+                let (lower, upper) = ratio.limits(&[observed * 7.0, 7.0]).unwrap();
+                for (found, side) in [(lower, Side::Above), (upper, Side::Below)] {
+                    let exact = ((observed / f(side, tail, n, m) - 1.0) / trials).max(0.0);
+                    let close = (found - exact).abs() <= 1e-9 * exact;
+                    assert!(close, "F {observed}, tail {tail}: {found} for {exact}");
+                }
+            }
+        }
+    }
+
+    /// A gauge that may be zero sets the ratio no upper limit.
+    #[test]
+    fn a_denominator_that_may_be_zero_sets_no_upper_limit() {
+        let constants = Constants::all(&[9.0, 6.0, 20.0], 0.025);
+        let ratio = Ratio::new(&constants, &[0.5, -0.5, 0.0], &[0.0, 0.5, -0.5]);
+        let (lower, upper) = ratio.limits(&[90.0, 1.1, 1.0]).unwrap();
+        assert!(lower > 1.0 && upper == f64::INFINITY, "{lower} {upper}");
+        assert_eq!(ratio.limits(&[90.0, 1.0, 1.1]), None);
+    }
 }

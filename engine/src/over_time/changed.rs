@@ -1,6 +1,10 @@
 //! What changed between two rounds: the gauge, the tolerance, the parts, the people.
 //!
 //! A share of tolerance moves with the gauge or with the tolerance; only a changed gauge is news about the gauge.
+//!
+//! The gauge is looked at twice, by its repeats and by its whole spread, each at the confidence of the ratios: of sound
+//! pairs of rounds up to twice the rest to that confidence are called changed. Rounds and characteristics compared one
+//! by one add to it; a caller who looks at many asks for ratios of a higher confidence.
 
 use std::collections::BTreeSet;
 

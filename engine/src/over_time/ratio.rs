@@ -3,7 +3,8 @@
 //! Mean squares within cells of two rounds are independent, so the ratio of the two, over that of the true
 //! variances, is F. The ratio of the gauge variances has no exact limits: those here are generalized, from
 //! independent draws for the two rounds. Both take the people of the two rounds for fresh samples; with the same
-//! people the gauges differ less by luck than the second ratio's limits say.
+//! people the gauges differ less by luck than the second ratio's limits say. Where one round pooled its interaction and
+//! the other did not, the first ratio sets an error with the interaction in it against one without.
 //!
 //! Sources: Burdick & Graybill, *Confidence Intervals on Variance Components*, 1992; Weerahandi, *J. Amer. Statist.
 //! Assoc.* 88 (1993) 899–905.

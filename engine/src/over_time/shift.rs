@@ -25,7 +25,8 @@ pub struct Shift {
 }
 
 impl Shift {
-    /// Whether all parts moved to one side, and by more than luck at a two-sided confidence.
+    /// Whether all parts moved to one side, and by more than luck at a two-sided confidence; that of one look, at one
+    /// characteristic.
     pub fn is_common(&self, confidence: f64) -> bool {
         self.alike == self.parts && self.p.is_some_and(|p| p <= 1.0 - confidence)
     }

@@ -70,6 +70,9 @@ impl Trend {
     }
 
     /// Whether the slope is above zero at a one-sided confidence and the line meets the limit by a time.
+    ///
+    /// The confidence is that of one look: asked round after round of many characteristics, a steady gauge is called due
+    /// more often than the rest to it.
     pub fn is_due(&self, by: f64, confidence: f64) -> bool {
         self.p <= 1.0 - confidence && self.crossing.is_some_and(|c| c.at <= by)
     }

@@ -8,7 +8,7 @@ use super::luck::{at_least, f_above};
 use super::material::{Found, Material, Square, remark};
 use super::step;
 use super::words::{list, number, percent};
-use crate::consistency::{Cochran, RangeChart, cochran};
+use crate::consistency::{Cell, Cochran, Own, RangeChart, cochran};
 
 /// The interaction is worth a remark from this part of the gauge's variance on.
 const MATTERS: f64 = 0.1;
@@ -19,7 +19,7 @@ const NAMED_MAX: usize = 3;
 pub(super) fn spread(material: &Material<'_>) -> Option<Found> {
     let trials = material.trials().filter(|&t| t > 1)?;
     let cells = &material.brief;
-    let cochran = cochran(cells)?;
+    let cochran = beside_rounding(cochran(cells)?, cells, step::least_variance(material));
     let chart = RangeChart::of(trials);
     let mean_range = cells.iter().map(|c| c.range).sum::<f64>() / cells.len() as f64;
     // A range of rounded readings may be one step wider than the readings were.
@@ -44,6 +44,23 @@ pub(super) fn spread(material: &Material<'_>) -> Option<Found> {
         several_wide(material, &above, limit.unwrap_or(0.0), p_count)
     };
     Some(found)
+}
+
+/// Cochran's C with the p that it has when the other cells spread by rounding at least.
+fn beside_rounding(cochran: Cochran, cells: &[Cell], least: f64) -> Cochran {
+    let beside = cells.iter().enumerate().filter(|(c, _)| *c != cochran.cell);
+    let others = Own::pooled(beside.map(|(_, cell)| cell));
+    let (Some(own), Some(others)) = (Own::pooled([&cells[cochran.cell]]), others) else {
+        return cochran;
+    };
+    if others.variance >= least {
+        return cochran;
+    }
+    let tail = f_above(own.variance / least, own.df as f64, others.df as f64);
+    Cochran {
+        p: (cells.len() as f64 * tail).min(1.0),
+        ..cochran
+    }
 }
 
 fn one_wide(material: &Material<'_>, cochran: &Cochran, limit: Option<f64>) -> Found {
@@ -120,23 +137,29 @@ pub(super) fn mean(material: &Material<'_>) -> Option<Found> {
     if material.is_rounding(total, cells.len()) {
         return None;
     }
-    let p = p_of_largest(&square, departure, total);
+    let least = step::least_variance(material);
+    let p = p_of_largest(&square, departure, total, least);
     if p <= LEVEL / 2.0 {
         return Some(one_off(material, &square, cell, departure, p));
     }
-    let interaction = material.study.interaction.p.filter(|_| square.trials > 1)?;
+    let seen = material.study.interaction.p.filter(|_| square.trials > 1)?;
+    let df = square.df() as f64;
+    let rounding = f_above(total / df / least, df, material.within().1 as f64);
+    let interaction = seen.max(rounding);
     let name = material.study.components.iter().find(|c| c.of.len() == 2)?;
     let matters = material.of_gauge(&name.name).is_some_and(|s| s >= MATTERS);
     (interaction <= LEVEL / 2.0 && matters)
         .then(|| several_off(material, &square, &cells, total, interaction))
 }
 
-/// Upper bound (Bonferroni) of the chance that the largest departure of a sound table is this large.
-fn p_of_largest(square: &Square, departure: f64, total: f64) -> f64 {
+/// Upper bound (Bonferroni) of the chance that the largest departure of a sound table is this large, when a cell mean
+/// has the variance `least` at least: repeats that round alike average nothing out.
+fn p_of_largest(square: &Square, departure: f64, total: f64, least: f64) -> f64 {
     let df = square.df() as f64;
     let cells = (square.parts * square.levels) as f64;
     let own = departure * departure * cells / df;
-    let ratio = own / (total - own).max(0.0) * (df - 1.0);
+    let rest = (total - own).max(least * (df - 1.0));
+    let ratio = own / rest * (df - 1.0);
     (cells * f_above(ratio, 1.0, df - 1.0)).min(1.0)
 }
 
@@ -178,8 +201,9 @@ fn several_off(
         })
         .collect();
     let text = format!(
-        "The interaction of part and {} is real; {} of it lies in {}.",
+        "The interaction of part and {} is larger than luck gives (p {}); {} of it lies in {}.",
         material.word(square.factor),
+        number(p),
         percent(held),
         list(&named),
     );

@@ -1,8 +1,13 @@
 //! Levels of a factor that stand out, such as one appraiser: by an own repeatability, or by an offset from the others.
+//!
+//! The level named is the one that stands out most of all that were looked at: its p allows for that (Bonferroni), and so
+//! do the limits of an offset, which hold for all levels at once. Limits of an own repeatability are those of that level
+//! alone.
 
 use super::LEVEL;
 use super::luck::f_above;
 use super::material::{Material, remark};
+use super::step;
 use super::words::{list, number};
 use crate::consistency::{Cell, Own, RangeChart, mandel_h, mandel_k};
 use crate::quantile::{Side, f};
@@ -58,7 +63,8 @@ fn widest(material: &Material<'_>, factor: usize, tests: usize, named: &[usize])
         (0..levels).max_by(|&a, &b| variances[a].total_cmp(&variances[b]).then(b.cmp(&a)))?;
     let others = cells_of.iter().enumerate().filter(|(l, _)| *l != level);
     let others = Own::pooled(others.flat_map(|(_, cells)| cells))?;
-    let ratio = own[level].variance / others.variance;
+    let beside = others.variance.max(step::least_variance(material));
+    let ratio = own[level].variance / beside;
     let p = tests as f64 * f_above(ratio, own[level].df as f64, others.df as f64);
     Some(Widest {
         factor,
@@ -66,11 +72,7 @@ fn widest(material: &Material<'_>, factor: usize, tests: usize, named: &[usize])
         own: own[level],
         others,
         k: k[level],
-        p: if others.variance == 0.0 {
-            0.0
-        } else {
-            p.min(1.0)
-        },
+        p: if beside == 0.0 { 0.0 } else { p.min(1.0) },
     })
 }
 
@@ -119,6 +121,8 @@ fn widest_cell(material: &Material<'_>, widest: &Widest) -> Option<String> {
 struct Offset {
     factor: usize,
     level: usize,
+    /// Levels that were looked at.
+    tests: usize,
     /// From the mean of the other levels.
     by: f64,
     error: f64,
@@ -163,6 +167,7 @@ fn furthest(material: &Material<'_>, factor: usize, tests: usize) -> Option<Offs
     Some(Offset {
         factor,
         level,
+        tests,
         by,
         error,
         df,
@@ -192,7 +197,7 @@ fn denominator(material: &Material<'_>, factor: usize) -> Option<f64> {
 }
 
 fn apart(material: &Material<'_>, offset: &Offset) -> Remark {
-    let outside = 1.0 - material.study.confidence;
+    let outside = (1.0 - material.study.confidence) / offset.tests as f64;
     let reach = offset.error * f(Side::Above, outside, 1.0, offset.df).sqrt();
     let (near, far) = (offset.by.abs() - reach, offset.by.abs() + reach);
     let levels = material.design.factors()[offset.factor].levels;

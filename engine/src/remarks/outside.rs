@@ -1,9 +1,10 @@
-//! What a study's own figures leave to be explained: estimates outside their limits, a term lost in the error.
+//! What a study's own figures leave to be explained: estimates outside their limits, terms lost in the error.
 
 use std::collections::BTreeMap;
 
-use super::words::{list, rounded};
+use super::words::{list, number, rounded};
 use crate::figure::Figure;
+use crate::pooling::Pooled;
 use crate::record::{Component, Figures, Remark};
 
 /// Digits that show an estimate apart from its limit.
@@ -57,6 +58,34 @@ pub(crate) fn one_trial(taken_in: &str) -> Remark {
         text,
         figures: BTreeMap::new(),
     }
+}
+
+/// Which interactions the error took in, and which stayed; `None` when it took in none.
+pub(crate) fn terms_pooled(limit: f64, taken_in: &[Pooled], kept: &[String]) -> Option<Remark> {
+    if taken_in.is_empty() {
+        return None;
+    }
+    let named: Vec<String> = taken_in
+        .iter()
+        .map(|term| format!("{} (p {})", term.name, number(term.p)))
+        .collect();
+    let rest = if kept.is_empty() {
+        "No interaction with the part is kept".to_owned()
+    } else {
+        format!("Kept: {}", list(kept))
+    };
+    let figures = taken_in
+        .iter()
+        .map(|term| (format!("p of {}", term.name), term.p))
+        .collect();
+    Some(Remark {
+        kind: "terms pooled",
+        text: format!(
+            "The line within cells has taken in {}, each with a p above {limit} when it was tested. {rest}.",
+            list(&named)
+        ),
+        figures,
+    })
 }
 
 fn outside_its_limits(

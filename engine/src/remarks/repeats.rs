@@ -59,8 +59,8 @@ pub(super) fn remark(material: &Material<'_>) -> Option<Remark> {
         format!("rounding alone would give about {expected:.0}")
     };
     let text = format!(
-        "In {} of {} cells all repeats agree to the last digit{which}; {luck}. Either the part stayed in place \
-         between trials or values were copied; the repeatability is then too good.",
+        "In {} of {} cells all repeats agree to the last digit{which}; {luck}. If the part stayed in place \
+         between trials, the gauge held its value or values were copied, the repeatability is too good.",
         same.len(),
         cells.len(),
     );

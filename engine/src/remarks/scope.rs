@@ -49,8 +49,8 @@ pub(super) fn near_zero(material: &Material<'_>) -> Option<Remark> {
         return None;
     }
     let text = format!(
-        "{near} of {} readings lie within {FOLD_SDS} gauge sd ({}) of zero. Magnitudes fold there and are not normal, \
-         so the limits are too narrow; study the signed components instead.",
+        "{near} of {} readings lie within {FOLD_SDS} gauge sd ({}) of zero. Magnitudes fold there: their spread is \
+         too small and not normal, so neither estimates nor limits hold; study the signed components instead.",
         material.values.len(),
         material.length(FOLD_SDS * sd),
     );

@@ -68,6 +68,12 @@ fn gauge_sd(material: &Material<'_>) -> Option<f64> {
     material.study.figures.gauge.sd.estimate
 }
 
+/// What rounding alone may add to a difference of two readings, per reading: twice a twelfth of a squared step. A
+/// variance seen below it says nothing about the spread before rounding.
+pub(super) fn least_variance(material: &Material<'_>) -> f64 {
+    step(&material.shifted).map_or(0.0, |step| step * step / 6.0)
+}
+
 /// Whether the readings take too few values to say anything about spread.
 pub(super) fn too_few_values(material: &Material<'_>) -> bool {
     sorted(material.values).len() < DISTINCT_MIN

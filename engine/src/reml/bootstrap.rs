@@ -40,7 +40,7 @@ pub(super) struct Quotients {
 }
 
 impl Draws {
-    /// `None` where the blocks ask for too much work.
+    /// `None` where the blocks ask for too much work, or no drawn study could be fitted.
     pub(super) fn new(blocks: &Blocks, components: &[f64]) -> Option<Draws> {
         if blocks.work() > WORK_MAX {
             return None;
@@ -56,9 +56,8 @@ impl Draws {
                 components: summit.components,
             })
         });
-        Some(Draws {
-            studies: fitted.collect(),
-        })
+        let studies: Vec<Drawn> = fitted.collect();
+        (!studies.is_empty()).then_some(Draws { studies })
     }
 
     /// How many.

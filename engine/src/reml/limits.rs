@@ -23,8 +23,7 @@ const AT_ZERO: &str = "the estimate is zero, where approximate limits do not exi
 const REPEATS_EQUAL: &str = "all repeats are equal, so the data set no limits";
 const NO_INFORMATION: &str =
     "the information about the components has no inverse, so the data set no limits";
-const NOT_DRAWN: &str =
-    "the design is too large to be drawn anew, so there are no bootstrap limits";
+const NOT_DRAWN: &str = "studies of this design could not be drawn anew (too large, or none could be fitted), so there are no bootstrap limits";
 const NOTHING_ELSE: &str = "nothing else has an estimate above zero, so the data set no limits";
 /// Degrees of freedom for which chi-square quantiles are at hand.
 const DF: std::ops::RangeInclusive<f64> = 0.02..=1e6;

@@ -6,9 +6,10 @@ use crate::design::Design;
 use crate::fault::StudyError;
 use crate::figures::ndc;
 use crate::model::Model;
+use crate::pooling::Pooled;
 use crate::quantile::chi_square_above;
 use crate::record::{ChanceAbove, InteractionChoice, Layout, OtherReading, Remark, Risk, Study};
-use crate::remarks::outside::one_trial;
+use crate::remarks::outside::{self, one_trial};
 use crate::risk::{Spreads, of_estimates};
 use crate::settings::{Interaction, Judge, Process, Settings, Tolerance};
 use crate::study::check;
@@ -47,7 +48,7 @@ pub(crate) fn study(
         settings,
     };
     let full = Fit::new(design, Model::estimable(design, trials), &reduced)?;
-    let chosen = bench.pooled(&full)?;
+    let (taken_in, chosen) = bench.pooled(&full)?;
     let kept_all = chosen.is_none();
     let fit = chosen.as_ref().unwrap_or(&full);
     let share = Share::of(tolerance, settings, fit.mean);
@@ -83,7 +84,10 @@ pub(crate) fn study(
             .process
             .map(|process| risk(&limits, process, &share)),
         chance_above: chance_above(&limits, settings, judged.estimate),
-        remarks: remarks(&full.model, design, &layout),
+        remarks: remarks(&full.model, design, &layout)
+            .into_iter()
+            .chain(terms_pooled(settings, &taken_in, &full.model, &fit.model))
+            .collect(),
         draws: drawn.map(|draws| draws.len() as u32),
         seed: drawn.map(|_| SEED),
         grand_mean: fit.mean,
@@ -110,10 +114,11 @@ impl Bench<'_> {
         )
     }
 
-    /// The fit after pooling, largest interaction first; `None` when nothing is pooled.
-    fn pooled(&self, full: &Fit) -> Result<Option<Fit>, NoFit> {
+    /// What is pooled, largest interaction first, and the fit after it; `None` when nothing is pooled.
+    fn pooled(&self, full: &Fit) -> Result<(Vec<Pooled>, Option<Fit>), NoFit> {
+        let mut taken_in = Vec::new();
         let Interaction::PoolAbove(limit) = self.settings.interaction else {
-            return Ok(None);
+            return Ok((taken_in, None));
         };
         let mut chosen: Option<Fit> = None;
         loop {
@@ -124,14 +129,17 @@ impl Bench<'_> {
                     continue;
                 }
                 let fewer = self.without(&now.model, &[line])?;
-                if statistic(now, &fewer).is_some_and(|s| p_of_interaction(s) > limit) {
+                let p = statistic(now, &fewer).map(p_of_interaction);
+                if let Some(p) = p.filter(|p| *p > limit) {
+                    let name = now.model.lines()[line].name.clone();
+                    taken_in.push(Pooled { name, p });
                     next = Some(fewer);
                     break;
                 }
             }
             match next {
                 Some(fewer) => chosen = Some(fewer),
-                None => return Ok(chosen),
+                None => return Ok((taken_in, chosen)),
             }
         }
     }
@@ -224,9 +232,26 @@ fn layout(design: &Design, trials: usize, counts: &[usize]) -> Layout {
     }
 }
 
+/// Names the terms pooled, where there was more than one to pool.
+fn terms_pooled(
+    settings: &Settings,
+    taken_in: &[Pooled],
+    full: &Model,
+    left: &Model,
+) -> Option<Remark> {
+    match settings.interaction {
+        Interaction::PoolAbove(limit) if full.interactions().len() > 1 => {
+            outside::terms_pooled(limit, taken_in, &left.interaction_names())
+        }
+        _ => None,
+    }
+}
+
 fn remarks(model: &Model, design: &Design, layout: &Layout) -> Vec<Remark> {
     let text = format!(
-        "{} of {} readings are missing: the components are those of largest likelihood, and their limits are approximate. With few levels beside the parts, upper limits lie too low.",
+        "{} of {} readings are missing: the components are those of largest likelihood, and their limits are approximate. With few levels beside the parts, upper limits lie too low. \
+         Equal repeats, cells that stand out and levels that read apart were not looked for, which takes equally \
+         many readings in every cell.",
         layout.missing,
         layout.missing + layout.readings
     );

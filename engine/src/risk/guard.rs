@@ -1,7 +1,7 @@
 //! Guard bands: acceptance limits drawn in from the limits of the tolerance until a bad part is accepted no
 //! more often than wanted.
 //!
-//! Source: JCGM 106:2012, 8.3.3 and 9 (guarded acceptance, global consumer's risk).
+//! Source: JCGM 106:2012, 8.3 (guarded acceptance) and 9 (global consumer's risk).
 
 use super::misclassification::Judged;
 use super::quadrature::FINE;

@@ -278,3 +278,28 @@ fn what_does_not_fit_is_refused_with_a_sentence() {
     let with_parts = [repeats[0], repeats[1], ("part within appraiser", 4.0)];
     assert!(assumption(&with_parts, 10).outlook(&nested).is_ok());
 }
+
+/// E of the only mean square is part + repeats: a study of this design shows no gauge, so nothing can be foretold of it.
+#[test]
+fn one_reading_a_part_foretells_no_gauge() {
+    let mix = [("part", 1.0), ("within cells", 0.01)];
+    let nested = Candidate {
+        design: Design::new(vec![
+            Factor::crossed("appraiser", 3),
+            Factor::nested("part", 8, &["appraiser"]),
+        ])
+        .unwrap(),
+        trials: 1,
+    };
+    let nested_mix = [("part within appraiser", 1.0), ("within cells", 0.01)];
+    for (candidate, mix) in [
+        (Candidate::crossed(10, 1, 1).unwrap(), mix),
+        (nested, nested_mix),
+    ] {
+        assert_eq!(
+            assumption(&mix, 10).outlook(&candidate),
+            Err(PlanningError::NotApart)
+        );
+    }
+    assert!(outlook(&assumption(&mix, 2000), 10, 1, 2).right > 0.5);
+}

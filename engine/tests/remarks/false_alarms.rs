@@ -86,3 +86,26 @@ fn differing_appraisers_and_rounding_raise_no_more() {
         );
     }
 }
+
+/// A step far wider than the repeats' spread: most cells agree, and the few that do not differ by the step.
+#[test]
+fn a_coarse_step_raises_no_more() {
+    const STUDIES: u64 = 1000;
+    let truth = Truth {
+        part: 200.0,
+        ..REPEATABILITY_ALONE
+    };
+    let kinds: Vec<&str> = BY_CHANCE.into_iter().chain(OF_DIFFERENCES).collect();
+    for (shape, step) in [
+        ([10, 3, 2], 5.0),
+        ([10, 3, 2], 10.0),
+        ([10, 3, 3], 20.0),
+        ([8, 4, 2], 50.0),
+    ] {
+        let (share, counts) = raised(shape, truth, Some(step), STUDIES, &kinds);
+        assert!(
+            share <= FALSE_ALARMS + margin(FALSE_ALARMS, STUDIES),
+            "{shape:?}, step {step}: {share}, {counts:?}"
+        );
+    }
+}

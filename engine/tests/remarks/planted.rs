@@ -110,6 +110,28 @@ fn an_appraiser_who_reads_high() {
     );
 }
 
+/// Limits that hold for all three appraisers at once: 1 - 0.025 / 3 of Student's t with 18 df, scipy 1.17.1
+/// (`stats.t.isf`); the difference of one mean of 30 readings from one of 60 has the variance MS / 30 + MS / 60.
+#[test]
+fn limits_of_the_largest_offset_allow_for_the_choice() {
+    const T: f64 = 2.639_144_819_415_992;
+    let mut plant = Plant::new(3, SHAPE, REPEATABILITY_ALONE);
+    for (part, trial) in (0..10).flat_map(|part| (0..3).map(move |trial| (part, trial))) {
+        let row = plant.row(part, 2, trial);
+        plant.values[row] += 2.0;
+    }
+    let study = plant
+        .prepared()
+        .study(&plant.cells, &plant.values, &tolerance())
+        .unwrap();
+    let interaction = study.mean_squares.iter().find(|l| l.of.len() == 2);
+    let reach = T * (interaction.and_then(|l| l.ms).unwrap() / 20.0).sqrt();
+    let remarks = plant.remarks(&tolerance());
+    let figures = &the(&remarks, "offset of a level").figures;
+    let found = (figures["upper"] - figures["lower"]) / 2.0;
+    assert!((found / reach - 1.0).abs() < 1e-10, "{found} {reach}");
+}
+
 #[test]
 fn two_runs_exchanged() {
     for seed in plain_seeds() {
@@ -311,7 +333,7 @@ fn the_cells_behind_an_interaction() {
     assert!(
         remark
             .text
-            .starts_with("The interaction of part and loading is real"),
+            .starts_with("The interaction of part and loading is larger than luck gives (p "),
         "{}",
         remark.text
     );

@@ -1,9 +1,10 @@
 //! Missing cells and unequal trials.
 
+use restudy_engine::ladder::Ladder;
 use restudy_engine::risk::{Judged, misclassification};
 use restudy_engine::{
-    Factor, Interval, Judge, Limits, OneSided, Process, Reml, Settings, StudyError, Tolerance,
-    analyse, reml,
+    Factor, Interaction, Interval, Judge, Limits, OneSided, Process, Reml, Settings, StudyError,
+    Tolerance, analyse, reml,
 };
 
 use crate::invented::{Readings, crossed, simulated, three_factors};
@@ -320,4 +321,60 @@ fn what_the_present_cells_cannot_tell_apart_is_named() {
     assert_eq!(refused(&one_part), StudyError::NotApart("part".into()));
     let one_reading = whole.kept(|row, _| row == 0);
     assert!(matches!(refused(&one_reading), StudyError::NotApart(_)));
+}
+
+/// A reader of a study of unequal cells learns why figures lack limits, and which remarks could not have come.
+#[test]
+fn what_unequal_cells_leave_out_is_said() {
+    let stated = Settings {
+        process: Some(Process::Stated { mean: 0.0, sd: 9.0 }),
+        ..settings()
+    };
+    let study = study_with(&unequal(5), &TWO_SIDED, &stated);
+    let missing = study.remarks.iter().find(|r| r.kind == "readings missing");
+    assert!(missing.unwrap().text.contains("were not looked for"));
+    let risk = study.risk.as_ref().unwrap();
+    let needs_equal = |why: &Option<std::borrow::Cow<'static, str>>| {
+        why.as_ref()
+            .is_some_and(|why| why.contains("need equal numbers of readings in all cells"))
+    };
+    assert!(risk.consumer.joint.estimate.is_some() && needs_equal(&risk.consumer.joint.why));
+    let rungs = Ladder::of(&study).unwrap().steps();
+    assert_eq!(rungs.len(), 3);
+    for rung in rungs {
+        assert!(
+            rung.sd.lower.is_none() && needs_equal(&rung.sd.why),
+            "{rung:?}"
+        );
+    }
+}
+
+/// The first p of the remark is that of the largest interaction; with a limit of 0 all are pooled and named.
+#[test]
+fn pooled_terms_of_unequal_cells_are_named() {
+    let full = three_factors(9);
+    let readings = Readings {
+        cells: full.cells[1..].to_vec(),
+        values: full.values[1..].to_vec(),
+        ..full
+    };
+    let pooling = Settings {
+        interaction: Interaction::PoolAbove(0.0),
+        ..settings()
+    };
+    let study = study_with(&readings, &TWO_SIDED, &pooling);
+    let remark = study.remarks.iter().find(|r| r.kind == "terms pooled");
+    let remark = remark.unwrap();
+    assert_eq!(remark.figures.len(), 3);
+    assert_eq!(
+        remark.figures["p of part × appraiser × fixture"],
+        study.interaction.p.unwrap()
+    );
+    assert!(
+        remark
+            .text
+            .ends_with("No interaction with the part is kept.")
+    );
+    let all = study_with(&readings, &TWO_SIDED, &settings());
+    assert!(all.remarks.iter().all(|r| r.kind != "terms pooled"));
 }
