@@ -9,7 +9,7 @@ use std::sync::Arc;
 use crate::basis::Basis;
 use crate::estimates::Estimates;
 use crate::fault::StudyError;
-use crate::figure::{Figure, Interval};
+use crate::figure::Interval;
 use crate::figures::Evidence;
 use crate::limits::Quantity;
 use crate::model::Line;
@@ -120,12 +120,27 @@ impl<'a> Glance<'a> {
         self.raw.get(line).copied().filter(|_| taken)
     }
 
-    /// A figure with limits by a stated method; `None` where the design does not show it.
-    pub fn figure(&self, quantity: Quantity, by: Interval) -> Option<Figure> {
+    /// A figure as the study estimates it, from components cut at zero; `None` where the design does not show it.
+    pub fn estimate(&self, quantity: Quantity) -> Option<f64> {
+        let e = &self.estimates;
+        match quantity {
+            _ if self.ms.is_empty() => None,
+            Quantity::Repeatability => e.repeatability,
+            Quantity::Reproducibility => e.reproducibility,
+            Quantity::Gauge => e.gauge,
+            Quantity::Part => e.part,
+            Quantity::Total => Some(e.total),
+            Quantity::PartToGauge => Some(e.part? / e.gauge.filter(|gauge| *gauge > 0.0)?),
+        }
+    }
+
+    /// Two-sided limits of a figure by a stated method, lower and upper, at zero or above; the upper one is infinite
+    /// where the data set none. `None` where the design does not show the figure or the method sets it no limits.
+    pub fn limits(&self, quantity: Quantity, by: Interval) -> Option<(f64, f64)> {
         if self.ms.is_empty() {
             return None;
         }
-        self.evidence(&self.share).figure_by(quantity, by)
+        self.evidence(&self.share).two_sided(quantity, by)
     }
 
     pub(crate) fn table(&self) -> Table<'_> {

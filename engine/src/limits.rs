@@ -18,7 +18,7 @@ use crate::figures::Evidence;
 use crate::generalized::Draws;
 use crate::linear::{Linear, Pair};
 use crate::percentile::BLOCK;
-use crate::quantile::{Side, f};
+use crate::quantile::{ChiSquareByDf, Side, f};
 
 pub(crate) const MANY_CROSSED: &str =
     "simulated limits hold their confidence only with fewer than three factors crossed";
@@ -58,6 +58,13 @@ pub(crate) struct RatioBounds {
     pub(crate) interval: Interval,
 }
 
+/// Limits with half of what they leave out on either side, or one limit with all of it beyond.
+#[derive(Debug, Clone, Copy)]
+enum Sided {
+    Two,
+    One,
+}
+
 impl Evidence<'_> {
     /// The figure with limits by a stated method instead of the one it is reported with.
     pub(crate) fn figure_by(&self, quantity: Quantity, by: Interval) -> Option<Figure> {
@@ -89,6 +96,30 @@ impl Evidence<'_> {
         }
     }
 
+    /// Two-sided limits alone, at zero or above; an infinite upper one means none.
+    pub(crate) fn two_sided(&self, quantity: Quantity, by: Interval) -> Option<(f64, f64)> {
+        let q = &self.basis.quantities;
+        let figure = match quantity {
+            Quantity::Repeatability => q.repeatability.as_ref()?,
+            Quantity::Reproducibility => q.reproducibility.as_ref()?,
+            Quantity::Gauge => q.gauge.as_ref()?,
+            Quantity::Part => q.part.as_ref()?,
+            Quantity::Total => &q.total,
+            Quantity::PartToGauge => {
+                let pair = self.basis.ratios.part_to_gauge.as_ref()?;
+                return self.limits_of_ratio_at(pair, by, Sided::Two).ok();
+            }
+        };
+        let total = quantity == Quantity::Total;
+        let (lower, upper) = match by {
+            Interval::Generalized if total => {
+                self.drawn(|first, out| self.drawn_total(first, out), Sided::Two)
+            }
+            _ => self.two_sided_of_sum(figure, by).ok()?,
+        };
+        Some((lower.max(0.0), upper.max(0.0)))
+    }
+
     /// The method that limits of a sum of mean squares are reported by.
     pub(crate) fn usual(&self, figure: &Linear) -> Interval {
         if figure.is_error {
@@ -104,14 +135,45 @@ impl Evidence<'_> {
         figure: &Linear,
         by: Interval,
     ) -> Result<Bounds, &'static str> {
+        if by == Interval::Generalized {
+            let drawn = |first: usize, out: &mut [f64]| self.drawn_sum(figure, first, out);
+            return Ok(self.percentiles(drawn));
+        }
+        let (lower, upper) = self.two_sided_of_sum(figure, by)?;
+        let at_least = match by {
+            Interval::Satterthwaite => {
+                let (value, df) = self.matched(figure)?;
+                df * value / self.basis.matched().at_least.at(df)
+            }
+            _ => figure.at_least.at(self.ms),
+        };
+        Ok(Bounds {
+            lower,
+            upper,
+            at_least,
+            interval: by,
+        })
+    }
+
+    fn two_sided_of_sum(&self, figure: &Linear, by: Interval) -> Result<(f64, f64), &'static str> {
         match by {
-            Interval::Exact if figure.is_error => self.exact(figure),
-            Interval::Exact => Err(NOT_EXACT),
-            Interval::Mls => Ok(self.modified_large_sample(figure, by)),
-            Interval::Satterthwaite => self.satterthwaite(figure),
-            Interval::Generalized => Ok(self.percentiles(|first, out| {
-                self.draws().variance(&figure.weights, self.ms, first, out)
-            })),
+            // Of the error alone the modified-large-sample limits are the exact ones.
+            Interval::Exact if !figure.is_error => Err(NOT_EXACT),
+            Interval::Exact if self.ms[self.ms.len() - 1] == 0.0 && !self.all_equal => {
+                Err(NO_REPEATS)
+            }
+            Interval::Exact | Interval::Mls => {
+                Ok((figure.lower.at(self.ms), figure.upper.at(self.ms)))
+            }
+            Interval::Satterthwaite => {
+                let (value, df) = self.matched(figure)?;
+                let quantiles = self.basis.matched();
+                let limit = |quantile: &ChiSquareByDf| df * value / quantile.at(df);
+                Ok((limit(&quantiles.lower), limit(&quantiles.upper)))
+            }
+            Interval::Generalized => {
+                Ok(self.drawn(|first, out| self.drawn_sum(figure, first, out), Sided::Two))
+            }
             Interval::MlsRoot | Interval::Bootstrap => Err(NOT_FOR_THIS),
         }
     }
@@ -122,30 +184,57 @@ impl Evidence<'_> {
         pair: &Pair,
         by: Interval,
     ) -> Result<RatioBounds, &'static str> {
+        Ok(RatioBounds {
+            two_sided: self.limits_of_ratio_at(pair, by, Sided::Two)?,
+            one_sided: self.limits_of_ratio_at(pair, by, Sided::One)?,
+            interval: by,
+        })
+    }
+
+    fn limits_of_ratio_at(
+        &self,
+        pair: &Pair,
+        by: Interval,
+        sided: Sided,
+    ) -> Result<(f64, f64), &'static str> {
         match (by, self.basis.model.lines()) {
             (Interval::Exact, [term, _]) => {
-                self.ratio_to_error(self.basis.model.readings() / term.cells)
+                let readings_per_level = self.basis.model.readings() / term.cells;
+                self.ratio_to_error(readings_per_level, self.tail(sided))
             }
             (Interval::Exact, _) => Err(NOT_EXACT),
-            (Interval::MlsRoot, _) => Ok(RatioBounds {
-                two_sided: pair.two_sided.limits(self.ms).ok_or(REST_ZERO)?,
-                one_sided: pair.one_sided.limits(self.ms).ok_or(REST_ZERO)?,
-                interval: by,
-            }),
+            (Interval::MlsRoot, _) => {
+                let ratio = match sided {
+                    Sided::Two => &pair.two_sided,
+                    Sided::One => &pair.one_sided,
+                };
+                ratio.limits(self.ms).ok_or(REST_ZERO)
+            }
             (Interval::Generalized, _) => {
-                let alpha = 1.0 - self.confidence;
-                let ends = [alpha / 2.0, 1.0 - alpha / 2.0, alpha, 1.0 - alpha];
-                let [lower, upper, at_least, at_most] = self
-                    .draws()
-                    .percentiles(ends, |first, out| self.drawn_ratio(pair, first, out));
-                Ok(RatioBounds {
-                    two_sided: (lower, upper),
-                    one_sided: (at_least, at_most),
-                    interval: by,
-                })
+                Ok(self.drawn(|first, out| self.drawn_ratio(pair, first, out), sided))
             }
             (Interval::Mls | Interval::Satterthwaite | Interval::Bootstrap, _) => Err(NOT_FOR_THIS),
         }
+    }
+
+    /// Probability beyond each limit.
+    fn tail(&self, sided: Sided) -> f64 {
+        let alpha = 1.0 - self.confidence;
+        match sided {
+            Sided::Two => alpha / 2.0,
+            Sided::One => alpha,
+        }
+    }
+
+    /// Lower and upper percentile of draws.
+    fn drawn(&self, fill: impl FnMut(usize, &mut [f64]), sided: Sided) -> (f64, f64) {
+        let tail = self.tail(sided);
+        let [lower, upper] = self.draws().percentiles([tail, 1.0 - tail], fill);
+        (lower, upper)
+    }
+
+    fn drawn_sum(&self, figure: &Linear, first: usize, out: &mut [f64]) {
+        self.draws().variance(&figure.weights, self.ms, first, out);
     }
 
     /// Limits from draws of the figure itself.
@@ -195,24 +284,8 @@ impl Evidence<'_> {
         self.basis.draws()
     }
 
-    /// The error alone: its modified-large-sample limits are the exact ones.
-    fn exact(&self, figure: &Linear) -> Result<Bounds, &'static str> {
-        if self.ms[self.ms.len() - 1] == 0.0 && !self.all_equal {
-            return Err(NO_REPEATS);
-        }
-        Ok(self.modified_large_sample(figure, Interval::Exact))
-    }
-
-    fn modified_large_sample(&self, figure: &Linear, interval: Interval) -> Bounds {
-        Bounds {
-            lower: figure.lower.at(self.ms),
-            upper: figure.upper.at(self.ms),
-            at_least: figure.at_least.at(self.ms),
-            interval,
-        }
-    }
-
-    fn satterthwaite(&self, figure: &Linear) -> Result<Bounds, &'static str> {
+    /// The value of a sum and the degrees of freedom of the chi-square that matches it.
+    fn matched(&self, figure: &Linear) -> Result<(f64, f64), &'static str> {
         let value = figure.value(self.ms);
         if value <= 0.0 {
             return Err(NOT_POSITIVE);
@@ -223,31 +296,23 @@ impl Evidence<'_> {
         if df < DF_LEAST {
             return Err(FEW_DF);
         }
-        let quantiles = self.basis.matched();
-        Ok(Bounds {
-            lower: df * value / quantiles.lower.at(df),
-            upper: df * value / quantiles.upper.at(df),
-            at_least: df * value / quantiles.at_least.at(df),
-            interval: Interval::Satterthwaite,
-        })
+        Ok((value, df))
     }
 
     /// The exact limits of `variance of the only term / variance of the error`.
-    fn ratio_to_error(&self, readings_per_level: usize) -> Result<RatioBounds, &'static str> {
+    fn ratio_to_error(
+        &self,
+        readings_per_level: usize,
+        tail: f64,
+    ) -> Result<(f64, f64), &'static str> {
         if self.ms[1] <= 0.0 {
             return Err(REST_ZERO);
         }
         let (n, m) = (self.basis.df[0], self.basis.df[1]);
         let observed = self.ms[0] / self.ms[1];
         let limit =
-            |side, a| ((observed / f(side, a, n, m) - 1.0) / readings_per_level as f64).max(0.0);
-        let limits = |a| (limit(Side::Above, a), limit(Side::Below, a));
-        let alpha = 1.0 - self.confidence;
-        Ok(RatioBounds {
-            two_sided: limits(alpha / 2.0),
-            one_sided: limits(alpha),
-            interval: Interval::Exact,
-        })
+            |side| ((observed / f(side, tail, n, m) - 1.0) / readings_per_level as f64).max(0.0);
+        Ok((limit(Side::Above), limit(Side::Below)))
     }
 }
 

@@ -3,6 +3,8 @@
 //! The first draws tell about where the ends are; only what lies beyond is kept. What that misses by bad luck is made
 //! good by a look at all draws, so that the answer never depends on it.
 
+use crate::quantile::Side;
+
 /// Draws that are worked out at a time, and that tell where the ends are.
 pub(crate) const BLOCK: usize = 512;
 /// Standard errors that the ends reach further in than the first draws say.
@@ -20,8 +22,8 @@ pub(crate) fn percentiles<const N: usize>(
     let mut block = [0.0; BLOCK];
     if draws > 4 * BLOCK {
         fill(0, &mut block);
-        let mut low = End::new(1.0, &block, probabilities.iter().copied());
-        let mut high = End::new(-1.0, &block, probabilities.iter().map(|p| 1.0 - p));
+        let mut low = End::new(Side::Below, &block, probabilities.iter().copied());
+        let mut high = End::new(Side::Above, &block, probabilities.iter().map(|p| 1.0 - p));
         for first in (0..draws).step_by(BLOCK) {
             let out = &mut block[..BLOCK.min(draws - first)];
             fill(first, out);
@@ -50,53 +52,75 @@ pub(crate) fn percentiles<const N: usize>(
 
 /// The least of the draws, or the greatest, as many as are needed.
 struct End {
-    /// 1 for the least, -1 for the greatest: the least of the draws times this are kept.
-    sign: f64,
-    /// What is not above this is kept.
+    side: Side,
+    /// What lies beyond this is kept, what equals it counted.
     reach: f64,
     kept: Vec<f64>,
     count: usize,
+    equal: usize,
 }
 
 impl End {
     /// Reaches as far as those of the probabilities ask for that count from this end.
-    fn new(sign: f64, sample: &[f64; BLOCK], probabilities: impl Iterator<Item = f64>) -> End {
+    fn new(side: Side, sample: &[f64; BLOCK], probabilities: impl Iterator<Item = f64>) -> End {
         let n = BLOCK as f64;
         let furthest = probabilities.filter(|p| *p <= 0.5).reduce(f64::max);
-        let reach = furthest.map_or(f64::NEG_INFINITY, |p| {
+        let reach = furthest.map(|p| {
             let rank = n * p + SLACK * (n * p * (1.0 - p)).sqrt() + 1.0;
             let rank = (rank as usize).min(BLOCK - 1);
-            let mut sample = sample.map(|x| sign * x);
-            *sample.select_nth_unstable_by(rank, f64::total_cmp).1
+            side.nth(&mut sample.clone(), rank)
         });
         End {
-            sign,
-            reach,
+            side,
+            reach: reach.unwrap_or(f64::NAN),
             kept: Vec::new(),
             count: 0,
+            equal: 0,
         }
     }
 
     fn offer(&mut self, draws: &[f64]) {
+        match self.side {
+            Side::Below => self.keep(draws, |x, reach| x < reach),
+            Side::Above => self.keep(draws, |x, reach| x > reach),
+        }
+    }
+
+    fn keep(&mut self, draws: &[f64], is_beyond: impl Fn(f64, f64) -> bool) {
         let room = self.count + draws.len();
         if self.kept.len() < room {
             self.kept.resize(2 * room, 0.0);
         }
-        let kept = &mut self.kept[self.count..];
-        let mut count = 0;
-        for x in draws {
+        let kept = &mut self.kept[self.count..room];
+        let (mut count, mut equal) = (0, 0);
+        for &x in draws {
             // Written down in any case and kept by counting it: a branch would be guessed wrongly too often.
-            let x = self.sign * x;
             kept[count] = x;
-            count += usize::from(x <= self.reach);
+            count += usize::from(is_beyond(x, self.reach));
+            equal += usize::from(x == self.reach);
         }
         self.count += count;
+        self.equal += equal;
     }
 
     /// The draw that `n` others lie beyond; `None` when the end does not reach so far.
     fn nth(&mut self, n: usize) -> Option<f64> {
-        let kept = &mut self.kept[..self.count];
-        (n < kept.len()).then(|| self.sign * *kept.select_nth_unstable_by(n, f64::total_cmp).1)
+        if n < self.count {
+            Some(self.side.nth(&mut self.kept[..self.count], n))
+        } else {
+            (n < self.count + self.equal).then_some(self.reach)
+        }
+    }
+}
+
+impl Side {
+    /// The value that `n` others lie beyond on this side.
+    fn nth(self, values: &mut [f64], n: usize) -> f64 {
+        let place = match self {
+            Side::Below => n,
+            Side::Above => values.len() - 1 - n,
+        };
+        *values.select_nth_unstable_by(place, f64::total_cmp).1
     }
 }
 

@@ -118,7 +118,8 @@ impl Prepared {
     ) -> Result<Option<Figure>, StudyError> {
         let mut glance = self.glance();
         glance.take(&self.by_cell(cells, values)?)?;
-        Ok(glance.figure(quantity, by))
+        let share = Share::of(&Tolerance::default(), &self.settings, 0.0);
+        Ok(glance.evidence(&share).figure_by(quantity, by))
     }
 
     /// Numbers of one characteristic after another without their records, for many characteristics.

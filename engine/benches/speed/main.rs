@@ -124,37 +124,37 @@ fn closed_form(glance: &mut Glance<'_>, readings: &[f64]) -> f64 {
     let mean_squares: f64 = glance.mean_squares().iter().sum();
     let tests: f64 = (0..3).filter_map(|line| glance.p(line)).sum();
     let components: f64 = (0..4).filter_map(|line| glance.component(line)).sum();
-    let figures = [
+    let [between, gauge, total] = [Quantity::Reproducibility, Quantity::Gauge, Quantity::Total]
+        .map(|quantity| glance.estimate(quantity).expect("a figure"));
+    let limits = [
+        (Quantity::Repeatability, Interval::Exact),
         (Quantity::Gauge, Interval::Mls),
         (Quantity::Total, Interval::Mls),
         (Quantity::Part, Interval::Mls),
-        (Quantity::Repeatability, Interval::Exact),
         (Quantity::Gauge, Interval::Satterthwaite),
         (Quantity::Reproducibility, Interval::Satterthwaite),
-    ]
-    .map(|(quantity, by)| glance.figure(quantity, by).expect("a figure"));
-    let numbers = figures
-        .iter()
-        .flat_map(|figure| [figure.estimate, figure.lower, figure.upper]);
-    let share = figures[0].estimate.expect("a gauge") / figures[1].estimate.expect("a total");
-    mean_squares + tests + components + share + numbers.flatten().sum::<f64>()
+    ];
+    let limits: f64 = limits
+        .into_iter()
+        .filter_map(|(quantity, by)| glance.limits(quantity, by))
+        .map(|(lower, upper)| lower + upper)
+        .sum();
+    mean_squares + tests + components + between + gauge + total + gauge / total + limits
 }
 
 /// 95 % limits of six figures from the same draws for all characteristics.
 fn drawn(glance: &mut Glance<'_>, readings: &[f64]) -> f64 {
     glance.take(readings).expect("readings");
-    let figures = [
+    [
         Quantity::Repeatability,
         Quantity::Reproducibility,
         Quantity::Gauge,
         Quantity::Part,
         Quantity::Total,
         Quantity::PartToGauge,
-    ];
-    figures
-        .into_iter()
-        .filter_map(|quantity| glance.figure(quantity, Interval::Generalized))
-        .flat_map(|figure| [figure.lower, figure.upper])
-        .flatten()
-        .sum()
+    ]
+    .into_iter()
+    .filter_map(|quantity| glance.limits(quantity, Interval::Generalized))
+    .map(|(lower, upper)| lower + upper)
+    .sum()
 }
