@@ -68,13 +68,20 @@ impl Draws {
 
     /// `sum c_q W_q` for the draws from the `first` on; may be negative.
     pub(crate) fn sum(&self, weights: &[f64], ms: &[f64], first: usize, out: &mut [f64]) {
-        out.fill(0.0);
-        for (weight, (ms, ratios)) in weights.iter().zip(ms.iter().zip(&self.ratios)) {
-            let scale = weight * ms;
-            if scale != 0.0 {
-                for (sum, ratio) in out.iter_mut().zip(&ratios[first..]) {
-                    *sum += scale * ratio;
-                }
+        let mut terms = weights
+            .iter()
+            .zip(ms.iter().zip(&self.ratios))
+            .map(|(weight, (ms, ratios))| (weight * ms, &ratios[first..]))
+            .filter(|(scale, _)| *scale != 0.0);
+        let Some((scale, ratios)) = terms.next() else {
+            return out.fill(0.0);
+        };
+        for (sum, ratio) in out.iter_mut().zip(ratios) {
+            *sum = scale * ratio;
+        }
+        for (scale, ratios) in terms {
+            for (sum, ratio) in out.iter_mut().zip(ratios) {
+                *sum += scale * ratio;
             }
         }
     }

@@ -27,8 +27,7 @@ pub(crate) fn percentiles<const N: usize>(
         for first in (0..draws).step_by(BLOCK) {
             let out = &mut block[..BLOCK.min(draws - first)];
             fill(first, out);
-            low.offer(out);
-            high.offer(out);
+            keep_ends(out, &mut low, &mut high);
         }
         let found = probabilities.map(|p| {
             interpolated(draws, p, |place| {
@@ -53,11 +52,12 @@ pub(crate) fn percentiles<const N: usize>(
 /// The least of the draws, or the greatest, as many as are needed.
 struct End {
     side: Side,
-    /// What lies beyond this is kept, what equals it counted.
+    /// What lies beyond this is kept.
     reach: f64,
     kept: Vec<f64>,
-    count: usize,
-    equal: usize,
+    /// Draws that equal the reach; counted where the first draws say that there are several.
+    equal: Option<usize>,
+    room: [f64; BLOCK],
 }
 
 impl End {
@@ -65,52 +65,53 @@ impl End {
     fn new(side: Side, sample: &[f64; BLOCK], probabilities: impl Iterator<Item = f64>) -> End {
         let n = BLOCK as f64;
         let furthest = probabilities.filter(|p| *p <= 0.5).reduce(f64::max);
-        let reach = furthest.map(|p| {
+        let reach = furthest.map_or(f64::NAN, |p| {
             let rank = n * p + SLACK * (n * p * (1.0 - p)).sqrt() + 1.0;
             let rank = (rank as usize).min(BLOCK - 1);
             side.nth(&mut sample.clone(), rank)
         });
         End {
             side,
-            reach: reach.unwrap_or(f64::NAN),
+            reach,
             kept: Vec::new(),
-            count: 0,
-            equal: 0,
+            equal: (count_equal(sample, reach) > 1).then_some(0),
+            room: [0.0; BLOCK],
         }
     }
 
-    fn offer(&mut self, draws: &[f64]) {
-        match self.side {
-            Side::Below => self.keep(draws, |x, reach| x < reach),
-            Side::Above => self.keep(draws, |x, reach| x > reach),
+    fn keep(&mut self, count: usize, draws: &[f64]) {
+        self.kept.extend_from_slice(&self.room[..count]);
+        if let Some(equal) = &mut self.equal {
+            *equal += count_equal(draws, self.reach);
         }
-    }
-
-    fn keep(&mut self, draws: &[f64], is_beyond: impl Fn(f64, f64) -> bool) {
-        let room = self.count + draws.len();
-        if self.kept.len() < room {
-            self.kept.resize(2 * room, 0.0);
-        }
-        let kept = &mut self.kept[self.count..room];
-        let (mut count, mut equal) = (0, 0);
-        for &x in draws {
-            // Written down in any case and kept by counting it: a branch would be guessed wrongly too often.
-            kept[count] = x;
-            count += usize::from(is_beyond(x, self.reach));
-            equal += usize::from(x == self.reach);
-        }
-        self.count += count;
-        self.equal += equal;
     }
 
     /// The draw that `n` others lie beyond; `None` when the end does not reach so far.
     fn nth(&mut self, n: usize) -> Option<f64> {
-        if n < self.count {
-            Some(self.side.nth(&mut self.kept[..self.count], n))
+        if n < self.kept.len() {
+            Some(self.side.nth(&mut self.kept, n))
         } else {
-            (n < self.count + self.equal).then_some(self.reach)
+            (n < self.kept.len() + self.equal?).then_some(self.reach)
         }
     }
+}
+
+/// Keeps what lies beyond the reach of either end.
+fn keep_ends(draws: &[f64], low: &mut End, high: &mut End) {
+    let (mut n, mut m) = (0, 0);
+    for &x in draws {
+        // Written down in any case and kept by counting it: a branch would be guessed wrongly too often.
+        low.room[n % BLOCK] = x;
+        n += usize::from(x < low.reach);
+        high.room[m % BLOCK] = x;
+        m += usize::from(x > high.reach);
+    }
+    low.keep(n, draws);
+    high.keep(m, draws);
+}
+
+fn count_equal(draws: &[f64], to: f64) -> usize {
+    draws.iter().filter(|x| **x == to).count()
 }
 
 impl Side {
