@@ -90,21 +90,57 @@ pub fn f_above(x: f64, df1: f64, df2: f64) -> f64 {
 
 /// The upper tail of F with one pair of degrees of freedom.
 #[derive(Debug, Clone, Copy)]
-pub(crate) struct FTail(Beta);
+pub(crate) enum FTail {
+    /// An even number of the first, both small: a finite sum.
+    Finite {
+        /// Half of the first.
+        terms: u32,
+        /// Half of the second.
+        b: f64,
+    },
+    /// Any other.
+    Any(Beta),
+}
+
+/// Degrees of freedom up to which the finite sum loses no digit that counts.
+const FINITE_UP_TO: f64 = 200.0;
 
 impl FTail {
     pub(crate) fn new(df1: f64, df2: f64) -> FTail {
-        FTail(Beta::new(df1 / 2.0, df2 / 2.0))
+        if df1 % 2.0 == 0.0 && df1.max(df2) <= FINITE_UP_TO {
+            FTail::Finite {
+                terms: (df1 / 2.0) as u32,
+                b: df2 / 2.0,
+            }
+        } else {
+            FTail::Any(Beta::new(df1 / 2.0, df2 / 2.0))
+        }
     }
 
     /// Probability above `x`.
     pub(crate) fn above(&self, x: f64) -> f64 {
-        if x > 0.0 {
-            self.0.at(x).upper.clamp(0.0, 1.0)
-        } else {
-            1.0
+        if x.is_nan() || x <= 0.0 {
+            return 1.0;
+        }
+        match *self {
+            FTail::Finite { terms, b } => finite_sum(terms, b, x).clamp(0.0, 1.0),
+            FTail::Any(beta) => beta.at(x).upper.clamp(0.0, 1.0),
         }
     }
+}
+
+/// `y^b [1 + b z + b (b+1)/2 z² + …]`, as many terms as half the first degrees of freedom, `y = 1 - z` the second over
+/// the second plus the first times `x` (Abramowitz & Stegun 26.6.4).
+fn finite_sum(terms: u32, b: f64, x: f64) -> f64 {
+    let odds = f64::from(terms) * x / b;
+    let z = odds / (1.0 + odds);
+    let (mut term, mut sum) = (1.0, 1.0);
+    for i in 1..terms {
+        let i = f64::from(i);
+        term *= z * (b + i - 1.0) / i;
+        sum += term;
+    }
+    sum * (-b * odds.ln_1p()).exp()
 }
 
 /// Log of F by the cube-root approximation to both chi-squares (Paulson 1942), or by the one with fewer df.

@@ -78,19 +78,22 @@ impl Sweep {
 
     /// Sums of squares of readings that lie cell by cell.
     pub(crate) fn sums(&self, readings: &[f64], room: &mut Room, sums: &mut Sums) {
-        let mut cells = Cells::new(readings[0], &mut room.left);
+        let mut cells = Cells::new(readings[0]);
+        room.left.clear();
+        // The same for numbers of trials that the compiler knows, which are the usual ones.
         match self.trials {
-            2 => readings
-                .as_chunks::<2>()
-                .0
-                .iter()
-                .for_each(|c| cells.take(c)),
-            3 => readings
-                .as_chunks::<3>()
-                .0
-                .iter()
-                .for_each(|c| cells.take(c)),
-            n => readings.chunks_exact(n).for_each(|c| cells.take(c)),
+            2 => {
+                let each = readings.as_chunks::<2>().0.iter();
+                room.left.extend(each.map(|cell| cells.mean(cell)));
+            }
+            3 => {
+                let each = readings.as_chunks::<3>().0.iter();
+                room.left.extend(each.map(|cell| cells.mean(cell)));
+            }
+            n => {
+                let each = readings.chunks_exact(n);
+                room.left.extend(each.map(|cell| cells.mean(cell)));
+            }
         }
         let (origin, within) = (cells.origin, cells.within.value());
         let spread = (cells.most - origin).max(origin - cells.least);
@@ -119,29 +122,27 @@ impl Sweep {
     }
 }
 
-/// Cell after cell: its mean relative to the first reading of all, and what its readings add within cells.
-struct Cells<'a> {
+/// What cell after cell adds within cells, and how far readings lie apart.
+struct Cells {
     origin: f64,
     least: f64,
     most: f64,
     within: Running,
-    means: &'a mut Vec<Running>,
 }
 
-impl<'a> Cells<'a> {
-    fn new(origin: f64, means: &'a mut Vec<Running>) -> Cells<'a> {
-        means.clear();
+impl Cells {
+    fn new(origin: f64) -> Cells {
         Cells {
             origin,
             least: origin,
             most: origin,
             within: Running::ZERO,
-            means,
         }
     }
 
+    /// Takes a cell; returns its mean relative to the first reading of all.
     #[inline(always)]
-    fn take(&mut self, cell: &[f64]) {
+    fn mean(&mut self, cell: &[f64]) -> Running {
         let first = cell[0];
         for &y in cell {
             self.least = if y < self.least { y } else { self.least };
@@ -154,7 +155,7 @@ impl<'a> Cells<'a> {
         }));
         let mut mean = Running::difference(first, self.origin);
         mean.add(above_first);
-        self.means.push(mean);
+        mean
     }
 }
 
