@@ -12,6 +12,7 @@ use crate::estimates::Estimates;
 use crate::figure::{Bounds, Figure, Interval};
 use crate::limits::{MANY_CROSSED, RatioBounds, figure};
 use crate::linear::{Linear, Pair};
+use crate::mls::Scale;
 use crate::percentile::BLOCK;
 use crate::record::{Component, Figures, Ndc, Spread};
 use crate::tolerance::{FromMean, Share};
@@ -28,6 +29,7 @@ const NDC_FACTOR: f64 = 1.41;
 pub(crate) struct Evidence<'a> {
     pub(crate) basis: &'a Basis,
     pub(crate) ms: &'a [f64],
+    pub(crate) scale: Scale,
     /// The components of all lines as they are.
     pub(crate) raw: &'a [f64],
     pub(crate) estimates: Estimates,

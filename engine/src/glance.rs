@@ -12,6 +12,7 @@ use crate::fault::StudyError;
 use crate::figure::Interval;
 use crate::figures::Evidence;
 use crate::limits::Quantity;
+use crate::mls::Scale;
 use crate::model::Line;
 use crate::settings::Tolerance;
 use crate::study::{Prepared, SPREAD};
@@ -29,6 +30,7 @@ pub struct Glance<'a> {
     share: Share,
     ss: Vec<f64>,
     pub(crate) ms: Vec<f64>,
+    scale: Scale,
     raw: Vec<f64>,
     estimates: Estimates,
 }
@@ -43,6 +45,7 @@ impl<'a> Glance<'a> {
             share: Share::of(&Tolerance::default(), &prepared.settings, 0.0),
             ss: Vec::new(),
             ms: Vec::new(),
+            scale: Scale::of(&[]),
             raw: Vec::new(),
             estimates: Estimates::default(),
         }
@@ -87,6 +90,7 @@ impl<'a> Glance<'a> {
     /// The same sums of squares under another model.
     pub(crate) fn under(&mut self, basis: Arc<Basis>) {
         basis.mean_squares(&self.sums, &mut self.ss, &mut self.ms);
+        self.scale = Scale::of(&self.ms);
         self.raw.clear();
         let components = basis.components.iter();
         self.raw
@@ -159,6 +163,7 @@ impl<'a> Glance<'a> {
         Evidence {
             basis: &self.basis,
             ms: &self.ms,
+            scale: self.scale,
             raw: &self.raw,
             estimates: self.estimates,
             share,

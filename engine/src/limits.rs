@@ -17,6 +17,7 @@ use crate::figure::{Bounds, Figure, Interval};
 use crate::figures::Evidence;
 use crate::generalized::Draws;
 use crate::linear::{Linear, Pair};
+use crate::mls::Limit;
 use crate::percentile::BLOCK;
 use crate::quantile::{ChiSquareByDf, Side, f};
 
@@ -145,7 +146,7 @@ impl Evidence<'_> {
                 let (value, df) = self.matched(figure)?;
                 df * value / self.basis.matched().at_least.at(df)
             }
-            _ => figure.at_least.at(self.ms),
+            _ => figure.at_least.scaled(self.ms, self.scale),
         };
         Ok(Bounds {
             lower,
@@ -163,7 +164,8 @@ impl Evidence<'_> {
                 Err(NO_REPEATS)
             }
             Interval::Exact | Interval::Mls => {
-                Ok((figure.lower.at(self.ms), figure.upper.at(self.ms)))
+                let limit = |limit: &Limit| limit.scaled(self.ms, self.scale);
+                Ok((limit(&figure.lower), limit(&figure.upper)))
             }
             Interval::Satterthwaite => {
                 let (value, df) = self.matched(figure)?;

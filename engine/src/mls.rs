@@ -172,22 +172,34 @@ pub(crate) struct Limit {
 impl Limit {
     /// The limit for given mean squares.
     pub(crate) fn at(&self, ms: &[f64]) -> f64 {
-        let largest = ms.iter().fold(0.0, |a, &x| if x > a { x } else { a });
-        if largest == 0.0 {
-            return 0.0;
-        }
-        let scale = 1.0 / largest;
-        let v: f64 = self
-            .form
-            .iter()
-            .map(|&(q, s, k)| k * (ms[q] * scale) * (ms[s] * scale))
-            .sum();
-        let sum: f64 = self.weights.iter().map(|&(q, c)| c * (ms[q] * scale)).sum();
-        let limit = (sum - root_of(v, self.signs_may_change)) * largest;
+        self.scaled(ms, Scale::of(ms))
+    }
+
+    /// The same, the scale of the mean squares being known.
+    pub(crate) fn scaled(&self, ms: &[f64], scale: Scale) -> f64 {
+        let x = |q: usize| ms[q] * scale.inverse;
+        let v: f64 = self.form.iter().map(|&(q, s, k)| k * x(q) * x(s)).sum();
+        let sum: f64 = self.weights.iter().map(|&(q, c)| c * x(q)).sum();
+        let limit = (sum - root_of(v, self.signs_may_change)) * scale.largest;
         match self.from {
             Side::Below => limit,
             Side::Above => -limit,
         }
+    }
+}
+
+/// The largest of some mean squares, by which they are divided before they are squared.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Scale {
+    largest: f64,
+    inverse: f64,
+}
+
+impl Scale {
+    pub(crate) fn of(ms: &[f64]) -> Scale {
+        let largest = ms.iter().fold(0.0, |a, &x| if x > a { x } else { a });
+        let inverse = if largest > 0.0 { 1.0 / largest } else { 0.0 };
+        Scale { largest, inverse }
     }
 }
 

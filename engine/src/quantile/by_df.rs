@@ -1,6 +1,6 @@
 //! Quantiles of chi-square at one probability for degrees of freedom that differ from one study to the next.
 //!
-//! The log of `χ² / df` is smooth in `df`: over each half of an octave a Chebyshev series gives it to the last digits.
+//! The log of `χ² / df` is smooth in `df`: over a quarter of an octave a short Chebyshev series gives it to the last digits.
 //! A series is worked out from the quantiles themselves when it is first needed.
 
 use std::f64::consts::PI;
@@ -10,8 +10,10 @@ use super::{Side, chi_square};
 
 /// Powers of two between which df are looked up: 2⁻⁶ to 2²⁰.
 const POWERS: std::ops::Range<i32> = -6..20;
-const PIECES: usize = 2 * (POWERS.end - POWERS.start) as usize;
-const TERMS: usize = 17;
+/// Pieces of an octave.
+const PER_OCTAVE: usize = 4;
+const PIECES: usize = PER_OCTAVE * (POWERS.end - POWERS.start) as usize;
+const TERMS: usize = 12;
 
 /// Quantiles at one probability.
 #[derive(Debug, Clone)]
@@ -36,19 +38,19 @@ impl ChiSquareByDf {
         if !POWERS.contains(&power) {
             return chi_square(self.side, self.p, df);
         }
-        // Halves of the octave: parts 1 to 1.5 and 1.5 to 2.
-        let upper_half = part >= 1.5;
-        let place = 2 * (power - POWERS.start) as usize + usize::from(upper_half);
-        let middle = if upper_half { 1.75 } else { 1.25 };
+        let per_octave = PER_OCTAVE as f64;
+        let piece = (per_octave * (part - 1.0)) as usize;
+        let middle = 1.0 + (piece as f64 + 0.5) / per_octave;
+        let place = PER_OCTAVE * (power - POWERS.start) as usize + piece;
         let series = self.series[place].get_or_init(|| self.fit(middle, df / part));
-        df * chebyshev(series, 4.0 * (part - middle)).exp()
+        df * chebyshev(series, 2.0 * per_octave * (part - middle)).exp()
     }
 
-    /// The series about `middle × unit`, a quarter of `unit` to either side.
+    /// The series about `middle × unit`, half a piece to either side.
     fn fit(&self, middle: f64, unit: f64) -> [f64; TERMS] {
         let angle = |k: usize| PI * (k as f64 + 0.5) / TERMS as f64;
         let values: [f64; TERMS] = std::array::from_fn(|k| {
-            let df = (middle + 0.25 * angle(k).cos()) * unit;
+            let df = (middle + 0.5 / PER_OCTAVE as f64 * angle(k).cos()) * unit;
             (chi_square(self.side, self.p, df) / df).ln()
         });
         std::array::from_fn(|j| {
