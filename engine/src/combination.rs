@@ -1,7 +1,5 @@
 //! A sum of mean squares with exact rational weights over one common denominator.
 
-use crate::twofold::Twofold;
-
 /// `sum of numerators[q] × MS_q / denominator`.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Combination {
@@ -44,21 +42,13 @@ impl Combination {
             .map(|(q, _)| q)
     }
 
-    /// The value for given mean squares, each product exact, the sum compensated.
+    /// The value for given mean squares.
     pub fn value(&self, mean_squares: &[f64]) -> f64 {
-        let products = self
-            .numerators
-            .iter()
-            .zip(mean_squares)
-            .map(|(&n, &ms)| Twofold::product(n as f64, ms));
-        products
-            .fold(Twofold::ZERO, Twofold::plus)
-            .over(self.denominator as f64)
-            .value()
+        Ready::from(self).value(mean_squares)
     }
 
     /// The same in lowest terms.
-    pub(crate) fn reduced(&self) -> Combination {
+    fn reduced(&self) -> Combination {
         let gcd = |a: usize, b: usize| {
             let (mut a, mut b) = (a, b);
             while b != 0 {
@@ -94,5 +84,36 @@ impl Combination {
             numerators,
             denominator: self.denominator,
         }
+    }
+}
+
+/// A combination ready to be worked out often: its members alone, in lowest terms, so that a difference of two mean
+/// squares is rounded once.
+#[derive(Debug, Clone)]
+pub(crate) struct Ready {
+    members: Vec<(usize, f64)>,
+    denominator: f64,
+}
+
+impl From<&Combination> for Ready {
+    fn from(combination: &Combination) -> Ready {
+        let reduced = combination.reduced();
+        let member = |q: usize| (q, reduced.numerators[q] as f64);
+        Ready {
+            members: reduced.members().map(member).collect(),
+            denominator: reduced.denominator as f64,
+        }
+    }
+}
+
+impl Ready {
+    pub(crate) fn value(&self, ms: &[f64]) -> f64 {
+        let sum: f64 = self.members.iter().map(|&(q, n)| n * ms[q]).sum();
+        sum / self.denominator
+    }
+
+    /// Whether all its mean squares are zero.
+    pub(crate) fn is_zero(&self, ms: &[f64]) -> bool {
+        self.members.iter().all(|&(q, _)| ms[q] == 0.0)
     }
 }

@@ -140,7 +140,7 @@ impl Evidence<'_> {
         let (Ok(per_sd), Some(gauge)) = (&self.share.per_sd, &self.basis.quantities.gauge) else {
             return [None; N];
         };
-        if gauge.is_zero(self.ms) {
+        if gauge.sum.is_zero(self.ms) {
             return [None; N];
         }
         let Some(from) = &self.share.from_estimated_mean else {

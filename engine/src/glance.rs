@@ -15,10 +15,13 @@ use crate::limits::Quantity;
 use crate::mls::Scale;
 use crate::model::Line;
 use crate::settings::Tolerance;
-use crate::study::{Prepared, SPREAD};
+use crate::study::{Prepared, check_spread};
 use crate::sums::{Room, Sums};
 use crate::table::Table;
 use crate::tolerance::Share;
+
+/// Total sums of squares of readings whose differences squares can surely hold.
+const SURELY_HELD: std::ops::Range<f64> = 1e-250..1e250;
 
 /// A look at one characteristic; see [`Prepared::glance`].
 #[derive(Debug)]
@@ -76,9 +79,8 @@ impl<'a> Glance<'a> {
             let value = readings[row];
             return Err(StudyError::NotFinite { row, value });
         }
-        let spread = self.sums.spread;
-        if spread != 0.0 && !SPREAD.contains(&spread) {
-            return Err(StudyError::Spread(spread));
+        if !SURELY_HELD.contains(&self.sums.total()) {
+            check_spread(readings, readings[0])?;
         }
         self.under(self.prepared.kept());
         if let Some(pooled) = self.prepared.partly_pooled(&self.sums) {
@@ -94,7 +96,7 @@ impl<'a> Glance<'a> {
         self.raw.clear();
         let components = basis.components.iter();
         self.raw
-            .extend(components.map(|component| component.value(&self.ms)));
+            .extend(components.map(|component| component.sum.value(&self.ms)));
         self.estimates = Estimates::new(&basis.model, &self.raw);
         self.basis = basis;
     }

@@ -288,7 +288,7 @@ impl Evidence<'_> {
 
     /// The value of a sum and the degrees of freedom of the chi-square that matches it.
     fn matched(&self, figure: &Linear) -> Result<(f64, f64), &'static str> {
-        let value = figure.value(self.ms);
+        let value = figure.sum.value(self.ms);
         if value <= 0.0 {
             return Err(NOT_POSITIVE);
         }

@@ -1,13 +1,12 @@
 //! Figures that are sums or ratios of mean squares, with everything about their limits that the readings do not change.
 
-use crate::combination::Combination;
+use crate::combination::{Combination, Ready};
 use crate::mls::{Constants, Limit, Ratio};
 
 /// A sum of mean squares with its modified-large-sample limits.
 #[derive(Debug, Clone)]
 pub(crate) struct Linear {
-    numerators: Vec<(usize, f64)>,
-    denominator: f64,
+    pub(crate) sum: Ready,
     pub(crate) weights: Vec<f64>,
     pub(crate) lower: Limit,
     pub(crate) upper: Limit,
@@ -20,31 +19,15 @@ pub(crate) struct Linear {
 impl Linear {
     pub(crate) fn new(sum: Combination, two_sided: &Constants, one_sided: &Constants) -> Linear {
         let weights = sum.weights();
-        let reduced = sum.reduced();
         let error = weights.len() - 1;
         Linear {
             lower: two_sided.lower_limit(&weights),
             upper: two_sided.upper_limit(&weights),
             at_least: one_sided.lower_limit(&weights),
             is_error: sum.members().eq([error]) && weights[error] == 1.0,
-            numerators: reduced
-                .members()
-                .map(|q| (q, reduced.numerators()[q] as f64))
-                .collect(),
-            denominator: reduced.denominator() as f64,
+            sum: Ready::from(&sum),
             weights,
         }
-    }
-
-    /// Its value for given mean squares.
-    pub(crate) fn value(&self, ms: &[f64]) -> f64 {
-        let sum: f64 = self.numerators.iter().map(|&(q, n)| n * ms[q]).sum();
-        sum / self.denominator
-    }
-
-    /// Whether all its mean squares are zero.
-    pub(crate) fn is_zero(&self, ms: &[f64]) -> bool {
-        self.numerators.iter().all(|&(q, _)| ms[q] == 0.0)
     }
 }
 

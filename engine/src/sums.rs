@@ -34,15 +34,14 @@ pub(crate) struct Sums {
     pub(crate) terms: Vec<f64>,
     pub(crate) within: f64,
     pub(crate) grand_mean: f64,
-    /// The largest difference of a reading from the first.
-    pub(crate) spread: f64,
 }
 
-/// What is left of the cell means, and the means of a term: room that is used again.
+/// What is left of the cell means, the means of a term and those of the next: room that is used again.
 #[derive(Debug, Clone, Default)]
 pub(crate) struct Room {
     left: Vec<Running>,
     means: Vec<Running>,
+    next: Vec<Running>,
 }
 
 impl Sums {
@@ -78,101 +77,121 @@ impl Sweep {
 
     /// Sums of squares of readings that lie cell by cell.
     pub(crate) fn sums(&self, readings: &[f64], room: &mut Room, sums: &mut Sums) {
-        let mut cells = Cells::new(readings[0]);
+        let origin = readings[0];
+        let mut within = Running::ZERO;
         room.left.clear();
         // The same for numbers of trials that the compiler knows, which are the usual ones.
         match self.trials {
             2 => {
                 let each = readings.as_chunks::<2>().0.iter();
-                room.left.extend(each.map(|cell| cells.mean(cell)));
+                room.left
+                    .extend(each.map(|cell| mean(cell, origin, &mut within)));
             }
             3 => {
                 let each = readings.as_chunks::<3>().0.iter();
-                room.left.extend(each.map(|cell| cells.mean(cell)));
+                room.left
+                    .extend(each.map(|cell| mean(cell, origin, &mut within)));
             }
             n => {
                 let each = readings.chunks_exact(n);
-                room.left.extend(each.map(|cell| cells.mean(cell)));
+                room.left
+                    .extend(each.map(|cell| mean(cell, origin, &mut within)));
             }
         }
-        let (origin, within) = (cells.origin, cells.within.value());
-        let spread = (cells.most - origin).max(origin - cells.least);
-
-        let floor = readings.len() as f64 * spread * spread * ROUNDING;
-        let or_zero = |ss: f64| if ss > floor || ss.is_nan() { ss } else { 0.0 };
-        let (left, means) = (&mut room.left, &mut room.means);
+        sums.within = within.value();
+        sums.terms.clear();
         let trials = self.trials as f64;
         let mut grand_mean = None;
-        sums.terms.clear();
         if let Some((_, others)) = self.terms.split_last() {
-            for term in others {
-                term.take_out(left, means);
-                grand_mean.get_or_insert_with(|| centre(means));
-                let share = (left.len() / means.len()) as f64;
-                sums.terms.push(or_zero(squares(means) * share * trials));
+            for (i, term) in others.iter().enumerate() {
+                if i == 0 {
+                    room.add_up(term);
+                }
+                let share = room.divide(self.cells);
+                room.take_out(term, others.get(i + 1));
+                grand_mean.get_or_insert_with(|| centre(&mut room.means));
+                sums.terms.push(squares(&room.means) * share * trials);
+                std::mem::swap(&mut room.means, &mut room.next);
             }
         }
         // The last term holds all factors: its means are what is left.
-        let mut grand_mean = grand_mean.unwrap_or_else(|| centre(left));
-        sums.terms.push(or_zero(squares(left) * trials));
+        let mut grand_mean = grand_mean.unwrap_or_else(|| centre(&mut room.left));
+        sums.terms.push(squares(&room.left) * trials);
         grand_mean.add(origin);
         sums.grand_mean = grand_mean.value();
-        sums.within = or_zero(within);
-        sums.spread = spread;
+        sums.without_rounding(readings);
     }
 }
 
-/// What cell after cell adds within cells, and how far readings lie apart.
-struct Cells {
-    origin: f64,
-    least: f64,
-    most: f64,
-    within: Running,
-}
-
-impl Cells {
-    fn new(origin: f64) -> Cells {
-        Cells {
-            origin,
-            least: origin,
-            most: origin,
-            within: Running::ZERO,
+impl Sums {
+    /// Sets to zero what is nothing but rounding.
+    fn without_rounding(&mut self, readings: &[f64]) {
+        // At least half the squared spread, so that what is far above this is above the floor as well.
+        let total = self.total();
+        let doubtful = 4.0 * readings.len() as f64 * total * ROUNDING;
+        let all = || self.terms.iter().chain([&self.within]);
+        if all().all(|&ss| ss > doubtful) {
+            return;
         }
-    }
-
-    /// Takes a cell; returns its mean relative to the first reading of all.
-    #[inline(always)]
-    fn mean(&mut self, cell: &[f64]) -> Running {
-        let first = cell[0];
-        for &y in cell {
-            self.least = if y < self.least { y } else { self.least };
-            self.most = if y > self.most { y } else { self.most };
+        let floor = readings.len() as f64 * spread(readings).powi(2) * ROUNDING;
+        for ss in self.terms.iter_mut().chain([&mut self.within]) {
+            if *ss <= floor {
+                *ss = 0.0;
+            }
         }
-        let above_first = sum(cell, |y| y - first) / cell.len() as f64;
-        self.within.add(sum(cell, |y| {
-            let deviation = (y - first) - above_first;
-            deviation * deviation
-        }));
-        let mut mean = Running::difference(first, self.origin);
-        mean.add(above_first);
-        mean
     }
 }
 
-impl Term {
-    /// Takes the means of the term out of what is left of the cell means.
-    fn take_out(&self, left: &mut [Running], means: &mut Vec<Running>) {
-        means.clear();
-        means.resize(self.combinations, Running::ZERO);
-        for (x, &place) in left.iter().zip(&self.place) {
-            means[place as usize].add_running(*x);
+/// The largest difference of a reading from the first.
+pub(crate) fn spread(readings: &[f64]) -> f64 {
+    let apart = readings.iter().map(|y| (y - readings[0]).abs());
+    apart.fold(0.0, f64::max)
+}
+
+/// The mean of a cell relative to `origin`; adds the squares of its deviations to `within`.
+#[inline(always)]
+fn mean(cell: &[f64], origin: f64, within: &mut Running) -> Running {
+    let first = cell[0];
+    let above_first = sum(cell, |y| y - first) / cell.len() as f64;
+    within.add(sum(cell, |y| {
+        let deviation = (y - first) - above_first;
+        deviation * deviation
+    }));
+    let mut mean = Running::difference(first, origin);
+    mean.add(above_first);
+    mean
+}
+
+impl Room {
+    /// Adds up what is left over the combinations of a term.
+    fn add_up(&mut self, term: &Term) {
+        self.means.clear();
+        self.means.resize(term.combinations, Running::ZERO);
+        for (x, &place) in self.left.iter().zip(&term.place) {
+            self.means[place as usize].add_running(*x);
         }
-        let share = (left.len() / self.combinations) as f64;
-        for mean in means.iter_mut() {
-            *mean = mean.over(share);
-        }
-        for (x, &place) in left.iter_mut().zip(&self.place) {
+    }
+
+    /// Turns these sums to means; returns how many cells each is of.
+    fn divide(&mut self, cells: usize) -> f64 {
+        let share = (cells / self.means.len()) as f64;
+        self.means.iter_mut().for_each(|x| *x = x.over(share));
+        share
+    }
+
+    /// Takes the means of a term out of what is left, and adds up the rest over the combinations of the next.
+    fn take_out(&mut self, term: &Term, next: Option<&Term>) {
+        let means = &self.means[..];
+        let cells = self.left.iter_mut().zip(&term.place);
+        let Some(next) = next else {
+            cells.for_each(|(x, &place)| x.subtract(means[place as usize]));
+            return;
+        };
+        self.next.clear();
+        self.next.resize(next.combinations, Running::ZERO);
+        for ((x, &place), &next_place) in cells.zip(&next.place) {
             x.subtract(means[place as usize]);
+            self.next[next_place as usize].add_running(*x);
         }
     }
 }
@@ -187,23 +206,19 @@ fn centre(values: &mut [Running]) -> Running {
 }
 
 fn squares(values: &[Running]) -> f64 {
-    let mut sum = Running::ZERO;
-    for x in values {
-        sum.add(x.value() * x.value());
-    }
-    sum.value()
+    sum(values, |x| x.value() * x.value())
 }
 
-/// The sum of a function of readings, rounded a few times however many they are.
+/// The sum of a function of some values, rounded a few times however many they are.
 #[inline(always)]
-fn sum(readings: &[f64], f: impl Fn(f64) -> f64) -> f64 {
+fn sum<T: Copy>(values: &[T], f: impl Fn(T) -> f64) -> f64 {
     const AT_ONCE: usize = 8;
-    let plain = |readings: &[f64]| readings.iter().fold(0.0, |sum, &y| sum + f(y));
-    if readings.len() <= AT_ONCE {
-        return plain(readings);
+    let plain = |values: &[T]| values.iter().fold(0.0, |sum, &x| sum + f(x));
+    if values.len() <= AT_ONCE {
+        return plain(values);
     }
     let mut sum = Running::ZERO;
-    for some in readings.chunks(AT_ONCE) {
+    for some in values.chunks(AT_ONCE) {
         sum.add(plain(some));
     }
     sum.value()
