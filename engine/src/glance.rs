@@ -36,6 +36,7 @@ pub struct Glance<'a> {
     scale: Scale,
     raw: Vec<f64>,
     estimates: Estimates,
+    all_equal: bool,
 }
 
 impl<'a> Glance<'a> {
@@ -51,6 +52,7 @@ impl<'a> Glance<'a> {
             scale: Scale::of(&[]),
             raw: Vec::new(),
             estimates: Estimates::default(),
+            all_equal: false,
         }
     }
 
@@ -93,6 +95,7 @@ impl<'a> Glance<'a> {
     pub(crate) fn under(&mut self, basis: Arc<Basis>) {
         basis.mean_squares(&self.sums, &mut self.ss, &mut self.ms);
         self.scale = Scale::of(&self.ms);
+        self.all_equal = self.sums.total() == 0.0;
         self.raw.clear();
         let components = basis.components.iter();
         self.raw
@@ -170,7 +173,7 @@ impl<'a> Glance<'a> {
             estimates: self.estimates,
             share,
             confidence: self.prepared.settings.confidence,
-            all_equal: self.sums.total() == 0.0,
+            all_equal: self.all_equal,
             grand_mean: self.sums.grand_mean,
         }
     }

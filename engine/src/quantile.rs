@@ -140,7 +140,7 @@ fn finite_sum(terms: u32, b: f64, x: f64) -> f64 {
         term *= z * (b + i - 1.0) / i;
         sum += term;
     }
-    sum * (-b * odds.ln_1p()).exp()
+    sum * (-b * (1.0 + odds).ln()).exp()
 }
 
 /// Log of F by the cube-root approximation to both chi-squares (Paulson 1942), or by the one with fewer df.

@@ -127,11 +127,8 @@ pub(crate) fn ln_gamma_1p(a: f64) -> f64 {
 /// `a ln(a / m) + m - a`, given both `m` and `m - a`, of which one or the other may be rounded hard.
 fn deviance(a: f64, m: f64, apart: f64) -> f64 {
     let t = apart / a;
-    if t.abs() > 0.5 {
+    if t.abs() > 0.5 || a < SMALL {
         return apart - a * (m / a).ln();
-    }
-    if a < SMALL {
-        return apart - a * t.ln_1p();
     }
     // t - ln(1 + t) with r = t / (2 + t): ln(1 + t) = 2 (r + r³/3 + r⁵/5 + …) and t = 2 r + r t.
     let r = t / (2.0 + t);
