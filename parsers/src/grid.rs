@@ -41,6 +41,8 @@ pub(crate) enum Place<'a> {
     Field { line: u32, field: u32 },
     /// An element or attribute; line from 1.
     Element { line: u32, path: &'a str },
+    /// The name of a sheet.
+    Sheet(&'a str),
     /// The export's path.
     Path,
     /// The rule itself.
@@ -56,6 +58,7 @@ impl fmt::Display for Place<'_> {
             Self::Column { line, heading } => write!(f, "line {line}, column `{heading}`"),
             Self::Field { line, field } => write!(f, "line {line}, field {field}"),
             Self::Element { line, path } => write!(f, "line {line}, {path}"),
+            Self::Sheet(sheet) => write!(f, "the name of the sheet `{sheet}`"),
             Self::Path => f.write_str("the export's path"),
             Self::Rule => f.write_str("the rule"),
         }
