@@ -105,12 +105,16 @@ fn every_export_gives_what_its_writer_was_told() {
             );
             let told = told(&outcome);
             if told != expected {
-                write!(differ, "\n{name}.{ending} told:\n{told}expected:\n{expected}").unwrap();
+                write!(
+                    differ,
+                    "\n{name}.{ending} told:\n{told}expected:\n{expected}"
+                )
+                .unwrap();
             }
         }
     }
     assert_eq!(differ, "");
-    assert_eq!(exports, 27);
+    assert_eq!(exports, 31);
 }
 
 #[test]

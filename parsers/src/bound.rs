@@ -229,8 +229,8 @@ fn beside<'g>(table: &Table<'g>, label: &str, side: Side) -> Result<Field<'g>, R
     })
 }
 
-/// The one cell that holds a label: of several, the one in this table's own rows, or the one above its
-/// headings.
+/// The one cell that holds a label: of several, the one above the headings. Of several tables each has
+/// its own: a label that one of them lacks is not looked for at another.
 fn labelled<'g>(table: &Table<'g>, what: &str, label: &str) -> Result<(&'g Row, u32), Refused> {
     let grid = table.grid;
     let sought = fold(label);
@@ -247,12 +247,22 @@ fn labelled<'g>(table: &Table<'g>, what: &str, label: &str) -> Result<(&'g Row, 
     };
     let own = |row: &Row| table.rows.contains(&row.number);
     let above = |row: &Row| header.is_some_and(|header| row.number < header);
-    if let Some(found) = only(&|_| true)
-        .or_else(|| only(&|row| own(row)))
-        .or_else(|| only(&|row| own(row) && above(row)))
-        .or_else(|| only(&|row| above(row)))
-    {
+    let found = match table.is_alone {
+        true => only(&|_| true).or_else(|| only(&above)),
+        false => only(&own).or_else(|| only(&|row| own(row) && above(row))),
+    };
+    if let Some(found) = found {
         return Ok(found);
+    }
+    if let (false, Some(headings)) = (table.is_alone, &table.headings)
+        && !all.iter().any(|(row, _)| own(row))
+    {
+        return Err(Refused::new(format!(
+            "the {what} `{}` does not stand by the table with its headings in {}",
+            shorten(label),
+            headings.place(grid)
+        ))
+        .hint("if it holds for every table of the sheet, name its cell with `cell`"));
     }
     match all.as_slice() {
         [(a, a_column), (b, b_column), ..] => Err(Refused::new(format!(

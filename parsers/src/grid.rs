@@ -125,6 +125,26 @@ impl Row {
         }
     }
 
+    /// True when the cells of both rows are the same, and a text among them is no number.
+    pub(crate) fn says_the_same(&self, other: &Self) -> bool {
+        let is_same = |(ours, theirs): (&(u32, Content), &(u32, Content))| {
+            ours.0 == theirs.0
+                && match (&ours.1, &theirs.1) {
+                    (Content::Text(ours), Content::Text(theirs)) => {
+                        names::fold(ours) == names::fold(theirs)
+                    }
+                    (ours, theirs) => ours == theirs,
+                }
+        };
+        let is_word = |(_, content): &(u32, Content)| match content {
+            Content::Text(text) => text.contains(char::is_alphabetic),
+            _ => false,
+        };
+        self.cells.len() == other.cells.len()
+            && self.cells.iter().zip(&other.cells).all(is_same)
+            && self.cells.iter().any(is_word)
+    }
+
     /// The columns whose text is `sought`, a key.
     pub(crate) fn holding(&self, sought: &str) -> impl Iterator<Item = u32> {
         self.cells

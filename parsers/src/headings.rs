@@ -110,7 +110,11 @@ impl<'g> Headings<'g> {
     }
 
     pub(crate) fn of(&self, column: u32) -> Option<&Heading> {
-        self.names.iter().find(|heading| heading.column == column)
+        let found = self
+            .names
+            .binary_search_by_key(&column, |heading| heading.column)
+            .ok()?;
+        Some(&self.names[found])
     }
 
     /// The one column with that heading, for `role`.
@@ -226,20 +230,9 @@ impl<'g> Headings<'g> {
         }
     }
 
-    /// True for a row that repeats one of the rows of headings.
+    /// True for a row that repeats one of the rows of headings, a text of them at least.
     pub(crate) fn repeats(&self, row: &Row) -> bool {
-        self.rows.iter().any(|heading| {
-            heading.cells.len() == row.cells.len()
-                && heading.cells.iter().zip(&row.cells).all(|(ours, theirs)| {
-                    ours.0 == theirs.0
-                        && match (&ours.1, &theirs.1) {
-                            (Content::Text(ours), Content::Text(theirs)) => {
-                                fold(ours) == fold(theirs)
-                            }
-                            (ours, theirs) => ours == theirs,
-                        }
-                })
-        })
+        self.rows.iter().any(|heading| heading.says_the_same(row))
     }
 
     /// A line with fewer fields than headings, or with something beyond them.

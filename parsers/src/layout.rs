@@ -4,7 +4,7 @@ use regex::Regex;
 
 use crate::grid::{Content, Row};
 use crate::names::fold;
-use crate::reader::{End, RuleError};
+use crate::reader::RuleError;
 use crate::rule::{Column, Filter, Layout, Test, Until};
 use crate::source::{compiled, digits};
 
@@ -23,7 +23,8 @@ pub(crate) struct Rows {
 #[derive(Debug, Clone)]
 pub(crate) enum Stop {
     BlankRow,
-    Text(End),
+    /// A key.
+    Text(String),
 }
 
 /// A test that rows pass or fail.
@@ -57,7 +58,7 @@ impl Rows {
             blocks: layout.blocks,
             until: layout.until.as_ref().map(|until| match until {
                 Until::BlankRow => Stop::BlankRow,
-                Until::Text(find) => Stop::Text(End::new(find)),
+                Until::Text(find) => Stop::Text(fold(&find.find)),
             }),
             filters,
             fill_down: layout.fill_down.clone(),
@@ -117,7 +118,9 @@ impl Stop {
                 .windows(2)
                 .position(|pair| pair[1].number > pair[0].number + 1)
                 .map(|before| before + 1),
-            Self::Text(end) => rows.iter().position(|row| end.stands_in(row)),
+            Self::Text(key) => rows
+                .iter()
+                .position(|row| row.holding(key).next().is_some()),
         }
     }
 }

@@ -379,6 +379,19 @@ impl Roles {
                 "rows are told apart, but the form is XML",
             ));
         }
+        if matches!(
+            sources[value].from,
+            Where::Joined { .. } | Where::Heading | Where::Row(_) | Where::UnitsRow | Where::Sheet
+        ) {
+            return Err(RuleError::new("value", "a place where no value can stand"));
+        }
+        let is_by_row = sources.iter().any(|source| source.from.is_by_row());
+        if each.is_none() && !is_by_row && rule.layout != Layout::default() {
+            return Err(RuleError::new(
+                "form",
+                "rows are told apart, but no role is looked up by row",
+            ));
+        }
         let by_value = sources.iter().find(|source| source.from.is_by_value());
         if let Some(source) = by_value
             && !sources[value].from.is_by_row()

@@ -122,7 +122,7 @@ pub struct Layout {
 pub enum Until {
     /// At the first blank row.
     BlankRow,
-    /// At the first row in which a cell contains this text.
+    /// At the first row in which a cell holds this text and nothing else (any case, blanks folded).
     Text(Find),
 }
 

@@ -13,6 +13,7 @@ use crate::grid::{Content, Field, Grid, Origin, Place, Row};
 use crate::headings::Headings;
 use crate::layout::Stop;
 use crate::names::{nearest, shorten};
+use crate::number::Number;
 use crate::one_field;
 use crate::parsed::{Parsed, Refused};
 use crate::reader::Roles;
@@ -28,6 +29,8 @@ pub(crate) struct Table<'g> {
     pub(crate) grid: &'g Grid,
     /// `None`: nothing is looked up by row, the grid is one record.
     pub(crate) headings: Option<Headings<'g>>,
+    /// False when several tables may stand one under the other.
+    pub(crate) is_alone: bool,
     /// Numbers of its rows, from the end of the table above it to its own end.
     pub(crate) rows: Range<u32>,
     /// The rows below its headings.
@@ -88,6 +91,7 @@ fn tables<'g>(
         let whole = Table {
             grid,
             headings: None,
+            is_alone: true,
             rows: 0..u32::MAX,
             below: &[],
         };
@@ -135,6 +139,7 @@ fn tables<'g>(
         tables.push(Table {
             grid,
             headings: Some(headings),
+            is_alone: !roles.rows.blocks,
             rows: above..own_end,
             below,
         });
@@ -176,6 +181,7 @@ fn read_table<'g>(
         // The value is the same for every row, or joined: one record a row.
         values.push(u32::MAX);
     }
+    no_number_for_a_heading(roles, headings, grid)?;
     let filters = roles
         .rows
         .filters
@@ -194,9 +200,14 @@ fn read_table<'g>(
             Ok((column, None))
         })
         .collect::<Result<Vec<(u32, Option<&Row>)>, Refused>>()?;
+    let units = match roles.rows.units_row {
+        true => grid.row(headings.below),
+        false => None,
+    };
     let looked_up: Vec<u32> = bound.iter().filter_map(Bound::row).collect();
     for row in table.below {
-        if looked_up.contains(&row.number) || headings.repeats(row) {
+        let repeats = headings.repeats(row) || units.is_some_and(|units| units.says_the_same(row));
+        if repeats || looked_up.contains(&row.number) {
             continue;
         }
         for (column, above) in &mut filled {
@@ -229,6 +240,29 @@ fn read_table<'g>(
         }
     }
     Ok(())
+}
+
+/// Refuses a number in place of the heading above a value that is named by its letter: the line would
+/// be lost.
+fn no_number_for_a_heading(
+    roles: &Roles,
+    headings: &Headings<'_>,
+    grid: &Grid,
+) -> Result<(), Refused> {
+    let Where::Counted(column) = roles.sources[roles.value].from else {
+        return Ok(());
+    };
+    match headings.of(column) {
+        Some(heading) if Number::read(&heading.shown, roles.decimal).is_ok() => {
+            Err(Refused::new(format!(
+                "{} holds the number `{}` where the heading of the value should stand",
+                headings.place(grid),
+                heading.shown
+            ))
+            .hint("if the export has no headings, set `header = \"none\"`"))
+        }
+        _ => Ok(()),
+    }
 }
 
 pub(crate) fn nowhere(grid: &Grid, what: &str, text: &str) -> Refused {
