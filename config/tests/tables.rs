@@ -5,9 +5,7 @@
 
 mod common;
 
-use std::fmt::Write as _;
-use std::fs;
-use std::path::{Path, PathBuf};
+use std::path::Path;
 
 use restudy_config::read;
 use restudy_parsers::{Export, Parsed, Refused, Rule};
@@ -25,7 +23,7 @@ fn rule(name: &str, text: &str) -> Rule {
     );
     let disk = Memory::with_folders(&["/state", "/exports"]);
     match read(&whole, name, Path::new("/etc/restudy"), &disk) {
-        Ok((config, _)) => config.instruments.into_iter().next().unwrap().rule,
+        Ok((config, _)) => config.instruments[0].rule.clone(),
         Err(faults) => panic!("{name}: {}", shown(&faults)),
     }
 }
@@ -52,12 +50,12 @@ fn told(outcome: &Result<Parsed, Refused>) -> String {
             reading.value
         );
         if let Some(unit) = &reading.unit {
-            write!(line, " {unit}").unwrap();
+            line += &format!(" {unit}");
         }
         let bounds = [reading.lower, reading.nominal, reading.upper];
         if bounds.iter().any(Option::is_some) {
             let shown = bounds.map(|b| b.map_or("-".to_owned(), |b| b.to_string()));
-            write!(line, " [{}]", shown.join(" ")).unwrap();
+            line += &format!(" [{}]", shown.join(" "));
         }
         lines.push(line);
     }
@@ -74,57 +72,73 @@ fn told(outcome: &Result<Parsed, Refused>) -> String {
     lines.join("\n") + "\n"
 }
 
-fn folder() -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).join("../fixtures/exports/tables")
+/// A rule, what it should read, and the exports that it reads.
+struct Case {
+    name: &'static str,
+    rule: &'static str,
+    expected: &'static str,
+    exports: &'static [(&'static str, &'static [u8])],
 }
+
+macro_rules! cases {
+    ($($name:literal: $($ending:literal)+;)+) => {
+        [$(Case {
+            name: $name,
+            rule: include_str!(concat!("../../fixtures/exports/tables/", $name, ".toml")),
+            expected: include_str!(concat!("../../fixtures/exports/tables/", $name, ".txt")),
+            exports: &[$((
+                concat!($name, ".", $ending),
+                include_bytes!(concat!("../../fixtures/exports/tables/", $name, ".", $ending)),
+            )),+],
+        }),+]
+    };
+}
+
+const CASES: [Case; 22] = cases! {
+    "a-filter-on-nothing": "csv";
+    "all-left-out": "csv";
+    "below-labels": "csv" "xlsx";
+    "blocks": "csv" "xlsx";
+    "broken-off": "csv";
+    "characteristics-across": "csv" "xlsx";
+    "crosstab": "csv" "xlsx";
+    "every-sheet": "xlsx";
+    "first-reading-as-heading": "csv";
+    "flawed-rows": "csv";
+    "lost-label": "csv";
+    "no-heading-matches": "csv";
+    "no-headings": "csv" "xlsx";
+    "no-such-heading": "csv";
+    "no-such-row": "csv";
+    "page-units": "csv" "xlsx";
+    "pages": "csv" "xlsx";
+    "sheet-a-characteristic": "xlsx";
+    "text-has-no-sheet": "csv";
+    "too-many-rows": "csv";
+    "trials-across": "csv" "xlsx";
+    "two-rows-of-headings": "csv" "xlsx";
+};
 
 #[test]
 fn every_export_gives_what_its_writer_was_told() {
-    let mut names: Vec<PathBuf> = fs::read_dir(folder())
-        .unwrap()
-        .map(|entry| entry.unwrap().path())
-        .filter(|path| path.extension().is_some_and(|ending| ending == "toml"))
-        .collect();
-    names.sort();
     let mut differ = String::new();
-    let mut exports = 0;
-    for rule_path in names {
-        let name = rule_path.file_stem().unwrap().to_str().unwrap().to_owned();
-        let rule = rule(&name, &fs::read_to_string(&rule_path).unwrap());
-        let expected = fs::read_to_string(rule_path.with_extension("txt")).unwrap();
-        for ending in ["csv", "xlsx"] {
-            let path = rule_path.with_extension(ending);
-            let Ok(bytes) = fs::read(&path) else { continue };
-            exports += 1;
-            let outcome = restudy_parsers::read(
-                Export {
-                    path: path.file_name().unwrap().to_str().unwrap(),
-                    bytes: &bytes,
-                },
-                &rule,
-            );
-            let told = told(&outcome);
-            if told != expected {
-                write!(
-                    differ,
-                    "\n{name}.{ending} told:\n{told}expected:\n{expected}"
-                )
-                .unwrap();
+    for case in CASES {
+        let rule = rule(case.name, case.rule);
+        for (path, bytes) in case.exports {
+            let told = told(&restudy_parsers::read(Export { path, bytes }, &rule));
+            if told != case.expected {
+                differ += &format!("\n{path} told:\n{told}expected:\n{}", case.expected);
             }
         }
     }
     assert_eq!(differ, "");
-    assert_eq!(exports, 31);
 }
 
 #[test]
 fn a_rule_survives_the_way_to_the_child_process() {
-    for entry in fs::read_dir(folder()).unwrap() {
-        let path = entry.unwrap().path();
-        if path.extension().is_some_and(|ending| ending == "toml") {
-            let rule = rule("restudy.toml", &fs::read_to_string(&path).unwrap());
-            let text = serde_json::to_string(&rule).unwrap();
-            assert_eq!(serde_json::from_str::<Rule>(&text).unwrap(), rule);
-        }
+    for case in CASES {
+        let rule = rule(case.name, case.rule);
+        let text = serde_json::to_string(&rule).unwrap();
+        assert_eq!(serde_json::from_str::<Rule>(&text).unwrap(), rule);
     }
 }
