@@ -22,6 +22,15 @@ pub(crate) fn cell(name: &str) -> Option<(u32, u32)> {
     (column <= COLUMNS && row <= ROWS).then(|| (row - 1, column - 1))
 }
 
+/// The number, from 0, of the column with that letter, as in `F`.
+pub(crate) fn letter(node: &Node<'_>) -> Option<u32> {
+    let column = cell(&format!("{}1", node.text()?)).filter(|(row, _)| *row == 0);
+    if column.is_none() {
+        node.fault("the letter of a column such as \"F\"");
+    }
+    column.map(|(_, column)| column)
+}
+
 /// True for an absolute path of local element names, `/export/run/feature`.
 pub(crate) fn is_each(path: &str) -> bool {
     path.strip_prefix('/')

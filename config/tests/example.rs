@@ -13,7 +13,7 @@ use restudy_config::{
 };
 use restudy_engine::{Interaction, Judge, Limits, OneSided, Process};
 use restudy_parsers::{
-    Bounds, Cell, Count, Find, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,
+    Bounds, Cell, Count, Find, Form, Header, Layout, Limit, Role, Rule, Sheet, Taken, Trial, Value,
 };
 
 use common::{HALDEN, read_at_halden, shown};
@@ -118,10 +118,12 @@ fn the_rule_of_a_table() {
         lower: Some(Limit {
             role: column("Lower tol."),
             from_nominal: true,
+            unsigned: false,
         }),
         upper: Some(Limit {
             role: column("Upper tol."),
             from_nominal: true,
+            unsigned: false,
         }),
         factors: BTreeMap::from([("fixture".to_owned(), at(6, 1))]),
         same: BTreeMap::from([
@@ -137,6 +139,8 @@ fn the_rule_of_a_table() {
         end: Some(Find {
             find: "End of report".to_owned(),
         }),
+        count: None,
+        layout: Layout::default(),
         decimal: ',',
         no_value: vec!["---".to_owned(), "9999".to_owned()],
         encoding: Some("windows-1252".to_owned()),
@@ -171,10 +175,13 @@ fn the_rule_of_an_xml_export() {
         upper: Some(Limit {
             role: xml("limits/@upper"),
             from_nominal: false,
+            unsigned: false,
         }),
         factors: BTreeMap::new(),
         same: BTreeMap::new(),
         end: None,
+        count: None,
+        layout: Layout::default(),
         decimal: '.',
         no_value: Vec::new(),
         encoding: None,

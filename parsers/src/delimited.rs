@@ -10,9 +10,6 @@ use crate::names::shorten;
 use crate::parsed::Refused;
 use crate::rule::Bounds;
 
-/// Cells of a table that hold something; bounds its memory.
-pub(crate) const CELLS_MAX: usize = 1 << 23;
-
 /// What parts the fields, and whether the file says so itself in a first line `sep=;`.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(crate) struct Delimiter {
@@ -81,9 +78,10 @@ pub(crate) fn grid(text: &str, delimiter: Delimiter, bounds: &Bounds) -> Result<
                 bounds.rows
             )));
         }
-        if cells > CELLS_MAX {
+        if cells > bounds.cells as usize {
             return Err(Refused::new(format!(
-                "more than {CELLS_MAX} fields; that is the limit"
+                "more than {} fields; that is the limit",
+                bounds.cells
             )));
         }
     }

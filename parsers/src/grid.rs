@@ -41,6 +41,8 @@ pub(crate) enum Place<'a> {
     Field { line: u32, field: u32 },
     /// An element or attribute; line from 1.
     Element { line: u32, path: &'a str },
+    /// The name of a sheet.
+    Sheet(&'a str),
     /// The export's path.
     Path,
     /// The rule itself.
@@ -56,6 +58,7 @@ impl fmt::Display for Place<'_> {
             Self::Column { line, heading } => write!(f, "line {line}, column `{heading}`"),
             Self::Field { line, field } => write!(f, "line {line}, field {field}"),
             Self::Element { line, path } => write!(f, "line {line}, {path}"),
+            Self::Sheet(sheet) => write!(f, "the name of the sheet `{sheet}`"),
             Self::Path => f.write_str("the export's path"),
             Self::Rule => f.write_str("the rule"),
         }
@@ -120,6 +123,26 @@ impl Row {
             Ok(found) => &self.cells[found].1,
             Err(_) => &BLANK,
         }
+    }
+
+    /// True when the cells of both rows are the same, and a text among them is no number.
+    pub(crate) fn says_the_same(&self, other: &Self) -> bool {
+        let is_same = |(ours, theirs): (&(u32, Content), &(u32, Content))| {
+            ours.0 == theirs.0
+                && match (&ours.1, &theirs.1) {
+                    (Content::Text(ours), Content::Text(theirs)) => {
+                        names::fold(ours) == names::fold(theirs)
+                    }
+                    (ours, theirs) => ours == theirs,
+                }
+        };
+        let is_word = |(_, content): &(u32, Content)| match content {
+            Content::Text(text) => text.contains(char::is_alphabetic),
+            _ => false,
+        };
+        self.cells.len() == other.cells.len()
+            && self.cells.iter().zip(&other.cells).all(is_same)
+            && self.cells.iter().any(is_word)
     }
 
     /// The columns whose text is `sought`, a key.

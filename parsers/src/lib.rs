@@ -5,8 +5,9 @@
 //! aside with its place, what was found there and what was expected. An export that cannot be read
 //! at all is [`Refused`] with one sentence. Bad data is a result, never a panic.
 //!
-//! An export has one value field a row below the headings (delimited text, workbook) or an element
-//! at the rule's path (XML), and one in all when no role is looked up by row. A run is what shares
+//! A table (delimited text, sheets of a workbook) has one value field a row below its headings, or
+//! several when the value stands across columns; XML has an element at the rule's path. An export in
+//! which no role is looked up by row has one value field a sheet. A run is what shares
 //! part, appraiser, trial, factors, time and round; it is set aside whole when one of its readings
 //! cannot be used.
 //!
@@ -16,14 +17,17 @@
 //! Invariant: every value field met in an export is a [`Reading`] of an accepted run or is counted
 //! in [`SetAside::readings`].
 
+mod bound;
 mod container;
 mod damage;
 mod decode;
 mod delimited;
 mod fault;
 mod grid;
+mod headings;
 mod identity;
 mod kind;
+mod layout;
 mod moment;
 mod names;
 mod no_value;
@@ -34,6 +38,7 @@ mod plain;
 mod reader;
 mod rule;
 mod runs;
+mod sheets;
 mod source;
 mod table;
 mod workbook;
@@ -45,7 +50,8 @@ pub use parsed::{Parsed, Reading, Refused, Run, SetAside};
 pub use plain::{Plain, read_plain};
 pub use reader::{Reader, RuleError};
 pub use rule::{
-    Bounds, Cell, Count, Find, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,
+    Across, Bounds, Cell, Column, Count, Filter, Find, Form, Header, Layout, Limit, Role, Rule,
+    Sheet, Taken, Test, Trial, Until, Value,
 };
 
 /// One export as it was read: its path below the watched folder (with `/` between folders, lossy

@@ -22,8 +22,9 @@ use crate::one_field;
 use crate::parsed::{Parsed, Refused};
 use crate::reader::Reader;
 use crate::rule::{
-    Bounds, Cell, Count, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,
+    Bounds, Cell, Count, Form, Header, Layout, Limit, Role, Rule, Sheet, Taken, Trial, Value,
 };
+use crate::sheets::Sheets;
 use crate::workbook;
 
 const HEADINGS: [&str; 10] = [
@@ -82,8 +83,11 @@ pub fn read_plain(export: Export<'_>, asked: &Plain) -> Result<Parsed, Refused> 
             .and_then(|grid| by_headings(export.path, &grid, delimiter.mark != b',', asked))
             .map_err(|refused| misnamed(export.path, &text, refused));
     }
-    let grid = workbook::grid(export.bytes, kind, &Sheet::First, &bounds)?;
-    by_headings(export.path, &grid, true, asked)
+    let grids = workbook::grids(export.bytes, kind, &Sheets::First, &bounds)?;
+    match grids.first() {
+        Some(grid) => by_headings(export.path, grid, true, asked),
+        None => Err(Refused::new("the workbook has no sheet")),
+    }
 }
 
 /// Reads by the headings in the first row; `comma_free` when commas in fields can be decimal marks.
@@ -124,7 +128,7 @@ fn by_headings(
     let rule = rule(&headings, asked, header.clone(), decimal, Bounds::default());
     let reader = Reader::new(&rule).map_err(|why| Refused::new(why.to_string()))?;
     let once = reader.once(path)?;
-    let parsed = reader.read_grid(grid, &header, once)?;
+    let parsed = reader.read_grids(std::slice::from_ref(grid), &header, once)?;
     Ok(Parsed {
         notes: notes.into_iter().collect(),
         ..parsed
@@ -265,6 +269,7 @@ fn rule(headings: &[String], asked: &Plain, header: Header, decimal: char, bound
         role(name).map(|role| Limit {
             role,
             from_nominal: false,
+            unsigned: false,
         })
     };
     Rule {
@@ -298,6 +303,8 @@ fn rule(headings: &[String], asked: &Plain, header: Header, decimal: char, bound
             .collect(),
         same: BTreeMap::new(),
         end: None,
+        count: None,
+        layout: Layout::default(),
         decimal,
         no_value: Vec::new(),
         encoding: None,

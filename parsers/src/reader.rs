@@ -5,13 +5,15 @@ use encoding_rs::Encoding;
 use crate::Export;
 use crate::decode;
 use crate::delimited;
-use crate::grid::{Content, Field, Grid, Place};
+use crate::grid::{Content, Field, Grid, Place, Row};
 use crate::kind::{Kind, misnamed};
+use crate::layout::Rows;
 use crate::moment::Clock;
 use crate::names::{fold, shorten, shorten_to};
 use crate::no_value::NoValue;
 use crate::parsed::{Parsed, Refused};
-use crate::rule::{Bounds, Count, Form, Header, Limit, Role, Rule, Sheet, Trial};
+use crate::rule::{Bounds, Count, Find, Form, Header, Layout, Limit, Role, Rule, Trial};
+use crate::sheets::Sheets;
 use crate::source::{Source, Where, first_group};
 use crate::table;
 use crate::workbook;
@@ -73,6 +75,9 @@ pub(crate) struct Roles {
     pub(crate) no_value: NoValue,
     /// Keyed text that ends the export.
     pub(crate) end: Option<End>,
+    /// How many readings a whole run has.
+    pub(crate) count: Option<usize>,
+    pub(crate) rows: Rows,
 }
 
 /// The text that ends an export.
@@ -82,6 +87,23 @@ pub(crate) struct End {
     pub(crate) text: String,
     /// Folded for comparing.
     pub(crate) key: String,
+}
+
+impl End {
+    pub(crate) fn new(find: &Find) -> Self {
+        Self {
+            text: find.find.clone(),
+            key: fold(&find.find),
+        }
+    }
+
+    /// True when a cell of the row contains it.
+    pub(crate) fn stands_in(&self, row: &Row) -> bool {
+        row.cells.iter().any(|(_, content)| match content {
+            Content::Text(text) => fold(text).contains(&self.key),
+            _ => false,
+        })
+    }
 }
 
 /// How trials are told apart.
@@ -99,12 +121,13 @@ pub(crate) enum TrialBy {
 pub(crate) struct LimitAt {
     pub(crate) source: usize,
     pub(crate) from_nominal: bool,
+    pub(crate) unsigned: bool,
 }
 
 #[derive(Debug, Clone)]
 enum Shape {
     Table {
-        sheet: Sheet,
+        sheets: Sheets,
         header: Header,
         delimiter: Option<u8>,
     },
@@ -155,11 +178,11 @@ impl Reader {
         let once = self.once(export.path)?;
         match &self.shape {
             Shape::Table {
-                sheet,
+                sheets,
                 header,
                 delimiter,
             } => {
-                let grid = match kind {
+                let mut grids = match kind {
                     Kind::Text => {
                         let text = decode::decode(export.bytes, None, self.encoding)?;
                         return self
@@ -167,10 +190,13 @@ impl Reader {
                             .map_err(|refused| misnamed(export.path, &text, refused));
                     }
                     workbook_kind => {
-                        workbook::grid(export.bytes, workbook_kind, sheet, &self.bounds)?
+                        workbook::grids(export.bytes, workbook_kind, sheets, &self.bounds)?
                     }
                 };
-                self.read_grid(&grid, header, once)
+                if sheets.may_be_blank() {
+                    grids.retain(|grid| !grid.rows.is_empty());
+                }
+                self.read_grids(&grids, header, once)
             }
             Shape::Xml { each } => match kind {
                 Kind::Text => {
@@ -187,13 +213,13 @@ impl Reader {
         }
     }
 
-    pub(crate) fn read_grid(
+    pub(crate) fn read_grids(
         &self,
-        grid: &Grid,
+        grids: &[Grid],
         header: &Header,
         once: Vec<Option<Content>>,
     ) -> Result<Parsed, Refused> {
-        table::read(grid, header, &self.roles, &once)
+        table::read(grids, header, &self.roles, &once)
     }
 
     fn read_text(
@@ -210,7 +236,7 @@ impl Reader {
         }
         let delimiter = delimited::delimiter(text, delimiter, self.roles.decimal);
         let grid = delimited::grid(text, delimiter, &self.bounds)?;
-        self.read_grid(&grid, header, once)
+        self.read_grids(&[grid], header, once)
     }
 
     /// Contents that hold for the whole export whatever its form: by source, `None` where the form
@@ -230,7 +256,7 @@ impl Reader {
                     ))
                     .hint("name folder or file as the others, or correct `path`; it is searched in the path below the watched folder")),
                 },
-                Where::Column(_) | Where::At { .. } | Where::Label(_) | Where::Xml(_) => Ok(None),
+                _ => Ok(None),
             })
             .collect()
     }
@@ -272,7 +298,7 @@ impl Shape {
                     })?),
                 };
                 Ok(Self::Table {
-                    sheet: sheet.clone(),
+                    sheets: Sheets::new(sheet)?,
                     header: header.clone(),
                     delimiter,
                 })
@@ -304,6 +330,7 @@ impl Roles {
             limit.zip(source).map(|(limit, source)| LimitAt {
                 source,
                 from_nominal: limit.from_nominal,
+                unsigned: limit.unsigned,
             })
         };
         let appraiser = maybe("appraiser", rule.appraiser.as_ref())?;
@@ -340,8 +367,62 @@ impl Roles {
             .iter()
             .map(|(name, role)| named("same", name, role))
             .collect::<Result<_, _>>()?;
+        let count = match &rule.count {
+            Some(role) => Some(add("number of readings", role)?),
+            None => None,
+        };
         let part = add("part", &rule.part)?;
         let value = add("value", &rule.value.role)?;
+        if each.is_some() && rule.layout != Layout::default() {
+            return Err(RuleError::new(
+                "form",
+                "rows are told apart, but the form is XML",
+            ));
+        }
+        if matches!(
+            sources[value].from,
+            Where::Joined { .. } | Where::Heading | Where::Row(_) | Where::UnitsRow | Where::Sheet
+        ) {
+            return Err(RuleError::new("value", "a place where no value can stand"));
+        }
+        let is_by_row = sources.iter().any(|source| source.from.is_by_row());
+        if each.is_none() && !is_by_row && rule.layout != Layout::default() {
+            return Err(RuleError::new(
+                "form",
+                "rows are told apart, but no role is looked up by row",
+            ));
+        }
+        let by_value = sources.iter().find(|source| source.from.is_by_value());
+        if let Some(source) = by_value
+            && !sources[value].from.is_by_row()
+        {
+            return Err(RuleError::new(
+                &source.role,
+                "looked up in the value's column, but the value stands in none",
+            ));
+        }
+        let rows = Rows::new(&rule.layout)?;
+        if let Form::Table { header, .. } = &rule.form {
+            let source = sources.iter().find(|source| source.from.needs_headings());
+            match (header, source) {
+                (Header::Nothing, Some(source)) => {
+                    return Err(RuleError::new(
+                        &source.role,
+                        "looked up by a heading, but there are no headings",
+                    ));
+                }
+                (Header::Nothing, None) if rows.needs_headings() => {
+                    return Err(RuleError::new("header", "rows are told apart by headings"));
+                }
+                (Header::Row(_), _) if rows.blocks => {
+                    return Err(RuleError::new(
+                        "blocks",
+                        "the headings are not sought by a text",
+                    ));
+                }
+                _ => {}
+            }
+        }
         let (lower, upper) = (
             limit(rule.lower.as_ref(), lower),
             limit(rule.upper.as_ref(), upper),
@@ -381,17 +462,14 @@ impl Roles {
             same,
             decimal: rule.decimal,
             no_value: NoValue::new(&rule.no_value, rule.decimal),
-            end: rule.end.as_ref().map(|end| End {
-                text: end.find.clone(),
-                key: fold(&end.find),
-            }),
+            end: rule.end.as_ref().map(End::new),
+            count,
+            rows,
         })
     }
 
     /// True when some role is looked up by row.
     pub(crate) fn by_row(&self) -> bool {
-        self.sources
-            .iter()
-            .any(|source| matches!(source.from, Where::Column(_)))
+        self.sources.iter().any(|source| source.from.is_by_row())
     }
 }

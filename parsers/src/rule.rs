@@ -37,6 +37,11 @@ pub struct Rule {
     pub same: BTreeMap<String, Role>,
     /// A text that ends the export; without it every run in the export is incomplete.
     pub end: Option<Find>,
+    /// How many readings a whole run has, as the export or the rule states it; a run with another
+    /// number of them is set aside.
+    pub count: Option<Role>,
+    /// What else is known of the rows of a table.
+    pub layout: Layout,
     /// The decimal mark, `.` or `,`.
     pub decimal: char,
     /// Texts that mean "no value" (`---`, `9999`), compared after trimming; numbers among them also as
@@ -56,7 +61,7 @@ pub enum Form {
     Table {
         /// The sheet to read (workbooks only).
         sheet: Sheet,
-        /// The row of headings.
+        /// The row of headings, the first of them when there are several.
         header: Header,
         /// Delimiter of text; `None`: a first line `sep=;`, else the comma (semicolon when the decimal mark is a comma).
         delimiter: Option<char>,
@@ -75,6 +80,10 @@ pub enum Sheet {
     First,
     /// The sheet of that name (any case, blanks folded).
     Named(String),
+    /// Every visible sheet whose name a regex matches.
+    Matching(String),
+    /// Every visible sheet that holds something.
+    Every,
 }
 
 /// Which row holds the headings.
@@ -84,6 +93,66 @@ pub enum Header {
     Row(u32),
     /// The first row in which a cell holds that text (any case, blanks folded).
     Find(String),
+    /// There are no headings: readings begin in the first row, columns are named by letters.
+    Nothing,
+}
+
+/// What is known of the rows of a table, beside where its headings stand.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+pub struct Layout {
+    /// Rows of headings below the first: a column's heading is then what stands in all of them, joined
+    /// by blanks; a blank in an upper row means the text left of it (merged cells).
+    pub further_headings: u32,
+    /// The row below the headings holds units and no reading.
+    pub units_row: bool,
+    /// Every row with the text that finds the headings begins a table of its own.
+    pub blocks: bool,
+    /// What stands below a table and is no longer part of it.
+    pub until: Option<Until>,
+    /// Rows that one of these tests finds are left out.
+    pub skip: Vec<Filter>,
+    /// Rows that one of these tests does not find are left out.
+    pub keep: Vec<Filter>,
+    /// Columns in which a blank means what stands above it.
+    pub fill_down: Vec<Column>,
+}
+
+/// Where a table ends before the export does.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Until {
+    /// At the first blank row.
+    BlankRow,
+    /// At the first row in which a cell holds this text and nothing else (any case, blanks folded).
+    Text(Find),
+}
+
+/// A test of rows.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Filter {
+    /// The column that is looked at.
+    pub column: Column,
+    /// What is sought there.
+    pub test: Test,
+}
+
+/// What a row's text is tested for.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Test {
+    /// One of these texts (any case, blanks folded).
+    Is(Vec<String>),
+    /// A regex matches in it.
+    Matches(String),
+    /// Nothing stands there.
+    Blank,
+}
+
+/// One column of a table.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Column {
+    /// Below that heading (any case, blanks folded).
+    Headed(String),
+    /// Counted from 0: the column `A` of a sheet, the first field of a line.
+    Counted(u32),
 }
 
 /// Where a text comes from, and what of it is taken.
@@ -102,6 +171,23 @@ pub struct Role {
 pub enum Cell {
     /// The column with that heading (any case, blanks folded).
     Column(String),
+    /// The column of that number, from 0.
+    Counted(u32),
+    /// The texts of several columns, in this order; none of them may be blank.
+    Joined {
+        /// Their headings.
+        columns: Vec<String>,
+        /// What stands between two texts.
+        joiner: String,
+    },
+    /// The value alone: several columns, each of them a reading of every row.
+    Across(Across),
+    /// The heading of the column that the value stands in.
+    Heading,
+    /// In the row in which a cell holds that text: the cell in the value's column.
+    Row(String),
+    /// In the row of units: the cell in the value's column.
+    UnitsRow,
     /// One cell for the whole export, as in `B4` (text: row 4, second field).
     At {
         /// Row, from 0.
@@ -111,6 +197,12 @@ pub enum Cell {
     },
     /// The first non-blank cell right of the cell that holds that text, else the one below it.
     Label(String),
+    /// The first non-blank cell right of the cell that holds that text.
+    RightOf(String),
+    /// The cell below the cell that holds that text.
+    Below(String),
+    /// The name of the sheet.
+    Sheet,
     /// A regex searched in the export's path; its first group (or the whole match) is taken.
     Path(String),
     /// XML: a path to an element or, with `@name` last, an attribute; absolute (`/export/@id`) or relative to
@@ -118,6 +210,15 @@ pub enum Cell {
     Xml(String),
     /// The same for every export; a number is written with a point.
     Constant(String),
+}
+
+/// The columns of a value that stands in several.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Across {
+    /// Those with these headings.
+    Headed(Vec<String>),
+    /// Those whose headings a regex matches.
+    Matching(String),
 }
 
 /// How trials are told apart.
@@ -171,6 +272,8 @@ pub struct Limit {
     pub role: Role,
     /// True when it is a signed deviation from the nominal.
     pub from_nominal: bool,
+    /// True when a deviation downwards is written without its sign: `0.01` means −0.01.
+    pub unsigned: bool,
 }
 
 /// A text to look for.
@@ -191,6 +294,8 @@ pub struct Bounds {
     pub rows: u32,
     /// Columns of a table.
     pub columns: u32,
+    /// Cells of a table that hold something.
+    pub cells: u32,
     /// Bytes of one field, cell or element text.
     pub text_bytes: u32,
     /// Depth of XML elements.
@@ -204,6 +309,7 @@ impl Default for Bounds {
             inflated_bytes: 1 << 30,
             rows: 1 << 20,
             columns: 4096,
+            cells: 1 << 23,
             text_bytes: 64 << 10,
             depth: 64,
         }

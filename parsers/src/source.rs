@@ -11,7 +11,7 @@ use crate::grid::{Content, Field, Place};
 use crate::names::{fold, fold_blanks, shorten};
 use crate::number::Number;
 use crate::reader::RuleError;
-use crate::rule::{Cell, Role};
+use crate::rule::{Across, Cell, Role};
 use crate::xml_path::XmlPath;
 
 /// Where a role comes from, checked.
@@ -19,15 +19,71 @@ use crate::xml_path::XmlPath;
 pub(crate) enum Where {
     /// The heading as written.
     Column(String),
+    Counted(u32),
+    /// Headings as written.
+    Joined {
+        columns: Vec<String>,
+        joiner: String,
+    },
+    Across(Columns),
+    Heading,
+    /// The label as written.
+    Row(String),
+    UnitsRow,
     At {
         row: u32,
         column: u32,
     },
     /// The label as written.
-    Label(String),
+    Label(Side, String),
+    Sheet,
     Path(Regex),
     Xml(XmlPath),
     Constant(Content),
+}
+
+/// The columns of a value that stands in several.
+#[derive(Debug, Clone)]
+pub(crate) enum Columns {
+    /// Headings as written.
+    Headed(Vec<String>),
+    Matching(Regex),
+}
+
+/// Where the text of a label stands.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) enum Side {
+    /// Right of it, else below it.
+    Either,
+    Right,
+    Below,
+}
+
+impl Where {
+    /// True when it is looked up for every row.
+    pub(crate) fn is_by_row(&self) -> bool {
+        matches!(
+            self,
+            Self::Column(_) | Self::Counted(_) | Self::Joined { .. } | Self::Across(_)
+        )
+    }
+
+    /// True when it depends on the column that the value stands in.
+    pub(crate) fn is_by_value(&self) -> bool {
+        matches!(self, Self::Heading | Self::Row(_) | Self::UnitsRow)
+    }
+
+    /// True when it is looked up in a row of headings.
+    pub(crate) fn needs_headings(&self) -> bool {
+        matches!(
+            self,
+            Self::Column(_)
+                | Self::Joined { .. }
+                | Self::Across(_)
+                | Self::Heading
+                | Self::UnitsRow
+        )
+    }
 }
 
 /// One role of a rule.
@@ -44,33 +100,43 @@ impl Source {
     /// `each` is the repeating element of an XML form, to which paths may be relative.
     pub(crate) fn new(name: &str, role: &Role, each: Option<&XmlPath>) -> Result<Self, RuleError> {
         let error = |what: String| RuleError::new(name, what);
-        let regex = |text: &str| {
-            Regex::new(text).map_err(|why| {
-                let why = why.to_string();
-                let why = why
-                    .lines()
-                    .last()
-                    .unwrap_or("")
-                    .trim_start_matches("error: ");
-                error(format!("the regex `{text}` cannot be used: {why}"))
-            })
-        };
+        let regex = |text: &str| compiled(text).map_err(error);
         let from = match (&role.from, each) {
             (Cell::Constant(text), _) => Where::Constant(Content::Text(text.as_str().into())),
             (Cell::Path(text), _) => Where::Path(regex(text)?),
             (Cell::Xml(path), Some(each)) => Where::Xml(each.join(path).map_err(error)?),
+            (Cell::Xml(_), None) => {
+                return Err(error("an XML path, but the form is a table".to_owned()));
+            }
+            (_, Some(_)) => {
+                return Err(error("a place in a table, but the form is XML".to_owned()));
+            }
             (Cell::Column(heading), None) => Where::Column(heading.clone()),
+            (Cell::Counted(column), None) => Where::Counted(*column),
+            (Cell::Joined { columns, joiner }, None) => Where::Joined {
+                columns: columns.clone(),
+                joiner: joiner.clone(),
+            },
+            (Cell::Across(_), None) if name != "value" => {
+                return Err(error("several columns; that is for the value".to_owned()));
+            }
+            (Cell::Across(Across::Headed(headings)), None) => {
+                Where::Across(Columns::Headed(headings.clone()))
+            }
+            (Cell::Across(Across::Matching(text)), None) => {
+                Where::Across(Columns::Matching(regex(text)?))
+            }
+            (Cell::Heading, None) => Where::Heading,
+            (Cell::Row(label), None) => Where::Row(label.clone()),
+            (Cell::UnitsRow, None) => Where::UnitsRow,
             (Cell::At { row, column }, None) => Where::At {
                 row: *row,
                 column: *column,
             },
-            (Cell::Label(label), None) => Where::Label(label.clone()),
-            (Cell::Xml(_), None) => {
-                return Err(error("an XML path, but the form is a table".to_owned()));
-            }
-            (Cell::Column(_) | Cell::At { .. } | Cell::Label(_), Some(_)) => {
-                return Err(error("a place in a table, but the form is XML".to_owned()));
-            }
+            (Cell::Label(label), None) => Where::Label(Side::Either, label.clone()),
+            (Cell::RightOf(label), None) => Where::Label(Side::Right, label.clone()),
+            (Cell::Below(label), None) => Where::Label(Side::Below, label.clone()),
+            (Cell::Sheet, None) => Where::Sheet,
         };
         Ok(Self {
             role: name.to_owned(),
@@ -201,11 +267,14 @@ impl Source {
         )
         .hint(match self.from {
             _ if self.role == "value" => "measure this run again",
-            Where::Column(_) => {
+            Where::Column(_) | Where::Counted(_) | Where::Joined { .. } | Where::Across(_) => {
                 "have every row filled in: nothing is taken over from the row above"
             }
+            Where::Heading => "have the column headed, or leave it out",
+            Where::Row(_) | Where::UnitsRow => "have the row filled in above every value",
             Where::At { .. } => "fill the cell in at the instrument, or correct `cell`",
-            Where::Label(_) => "fill it in beside the label, or correct `label`",
+            Where::Label(..) => "fill it in beside the label, or correct `label`",
+            Where::Sheet => "give the sheet a name",
             Where::Path(_) => "name folder or file as before, or correct `path`",
             Where::Xml(_) => "have the instrument write it, or correct `xml`",
             Where::Constant(_) => "correct `constant`",
@@ -224,8 +293,21 @@ pub(crate) fn first_group<'t>(regex: &Regex, text: &'t str) -> Option<&'t str> {
     group.map(|group| group.as_str())
 }
 
+/// A regex, or the sentence that says why it is none.
+pub(crate) fn compiled(text: &str) -> Result<Regex, String> {
+    Regex::new(text).map_err(|why| {
+        let why = why.to_string();
+        let why = why
+            .lines()
+            .last()
+            .unwrap_or("")
+            .trim_start_matches("error: ");
+        format!("the regex `{text}` cannot be used: {why}")
+    })
+}
+
 /// A workbook's number as a label: whole numbers as plain digits.
-fn digits(number: f64) -> String {
+pub(crate) fn digits(number: f64) -> String {
     if number == 0.0 {
         "0".to_owned()
     } else {

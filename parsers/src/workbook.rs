@@ -15,36 +15,58 @@ use jiff::civil;
 
 use crate::container;
 use crate::damage::{damaged, of_cell, of_workbook};
-use crate::delimited::CELLS_MAX;
 use crate::grid::{Content, Grid, Origin, Row, cell_name};
 use crate::kind::Kind;
-use crate::names::{fold, listed, nearest, shorten};
+use crate::names::shorten;
 use crate::parsed::Refused;
-use crate::rule::{Bounds, Sheet};
+use crate::rule::Bounds;
+use crate::sheets::{Named, Sheets};
 
-/// The cells of the sheet that the rule asks for.
-pub(crate) fn grid(
+/// The cells of the sheets that are asked for.
+pub(crate) fn grids(
     bytes: &[u8],
     kind: Kind,
-    sheet: &Sheet,
+    sheets: &Sheets,
     bounds: &Bounds,
-) -> Result<Grid, Refused> {
+) -> Result<Vec<Grid>, Refused> {
     container::check(bytes, kind, bounds)?;
-    catch_unwind(AssertUnwindSafe(|| cells(bytes, sheet, bounds)))
-        .unwrap_or_else(|_| Err(damaged("its cells cannot be read")))
+    catch_unwind(AssertUnwindSafe(|| {
+        let mut book = Xlsx::new(Cursor::new(bytes)).map_err(|why| of_workbook(&why))?;
+        let mut left = *bounds;
+        let mut grids = Vec::new();
+        for name in sheets.chosen(&listed(&book))? {
+            let grid = cells(&mut book, &name, &left)?;
+            let used = grid.rows.iter().map(|row| row.cells.len()).sum::<usize>();
+            left.cells = left
+                .cells
+                .saturating_sub(u32::try_from(used).unwrap_or(u32::MAX));
+            grids.push(grid);
+        }
+        Ok(grids)
+    }))
+    .unwrap_or_else(|_| Err(damaged("its cells cannot be read")))
 }
 
-fn cells(bytes: &[u8], sheet: &Sheet, bounds: &Bounds) -> Result<Grid, Refused> {
-    let mut book = Xlsx::new(Cursor::new(bytes)).map_err(|why| of_workbook(&why))?;
-    let name = chosen(&book, sheet)?;
-    let mut rows = Rows::scan(&mut book, &name, None, bounds)?;
+fn listed(book: &Xlsx<Cursor<&[u8]>>) -> Vec<Named> {
+    book.sheets_metadata()
+        .iter()
+        .filter(|sheet| sheet.typ == SheetType::WorkSheet)
+        .map(|sheet| Named {
+            name: sheet.name.clone(),
+            visible: sheet.visible == SheetVisible::Visible,
+        })
+        .collect()
+}
+
+fn cells(book: &mut Xlsx<Cursor<&[u8]>>, name: &str, bounds: &Bounds) -> Result<Grid, Refused> {
+    let mut rows = Rows::scan(book, name, None, bounds)?;
     if rows.unreadable > 0 {
-        let places = places(&mut book, &name, &rows)?;
-        rows = Rows::scan(&mut book, &name, Some(&places), bounds)?;
+        let places = places(book, name, &rows)?;
+        rows = Rows::scan(book, name, Some(&places), bounds)?;
     }
     let rows = rows.rows.into_values().collect();
     Ok(Grid {
-        origin: Origin::Sheet(shorten(&name).into()),
+        origin: Origin::Sheet(shorten(name).into()),
         rows,
     })
 }
@@ -56,7 +78,7 @@ fn places(
     name: &str,
     scanned: &Rows<'_>,
 ) -> Result<Vec<(u32, u32)>, Refused> {
-    if scanned.largest_shared_formula > CELLS_MAX {
+    if scanned.largest_shared_formula > scanned.bounds.cells as usize {
         return Err(damaged("a shared formula is numbered beyond all cells"));
     }
     let mut reader = book
@@ -79,37 +101,6 @@ fn costs_one_cell(why: &XlsxError) -> bool {
             | XlsxError::ParseInt(_)
             | XlsxError::Unrecognized { .. }
     )
-}
-
-fn chosen(book: &Xlsx<Cursor<&[u8]>>, asked: &Sheet) -> Result<String, Refused> {
-    let sheets: Vec<&calamine::Sheet> = book
-        .sheets_metadata()
-        .iter()
-        .filter(|sheet| sheet.typ == SheetType::WorkSheet)
-        .collect();
-    let names = || sheets.iter().map(|sheet| sheet.name.as_str());
-    match asked {
-        Sheet::First => sheets
-            .iter()
-            .find(|sheet| sheet.visible == SheetVisible::Visible)
-            .map(|sheet| sheet.name.clone())
-            .ok_or_else(|| Refused::new("the workbook has no visible sheet")),
-        Sheet::Named(sought) => {
-            let same = |name: &&str| fold(name) == fold(sought);
-            names()
-                .find(same)
-                .map(str::to_owned)
-                .ok_or_else(|| Refused {
-                    sentence: format!(
-                        "no sheet is named `{}`; the workbook has {}",
-                        shorten(sought),
-                        listed(names())
-                    ),
-                    hint: nearest(sought, names()).map(|name| format!("did you mean `{name}`?")),
-                    perhaps_unfinished: false,
-                })
-        }
-    }
 }
 
 /// Rows while cells arrive.
@@ -179,9 +170,10 @@ impl<'a> Rows<'a> {
             return Err(self.beyond(row, column, "rows", self.bounds.rows));
         }
         self.cells += 1;
-        if self.cells > CELLS_MAX {
+        if self.cells > self.bounds.cells as usize {
             return Err(Refused::new(format!(
-                "more than {CELLS_MAX} cells; that is the limit"
+                "more than {} cells; that is the limit",
+                self.bounds.cells
             )));
         }
         let cells = &mut self

@@ -1,8 +1,10 @@
 //! One module for each kind of table in the file.
 
+pub(crate) mod bounds;
 pub(crate) mod characteristic;
 pub(crate) mod instrument;
 pub(crate) mod judging;
+pub(crate) mod layout;
 pub(crate) mod levels;
 pub(crate) mod list;
 pub(crate) mod mail;

@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 
 use restudy_parsers::{Cell, Role};
 
-use crate::place::{cell, is_xml_path, regex};
+use crate::place::{cell, is_xml_path, letter, regex};
 use crate::walk::{Node, Table};
 use restudy_parsers::fold;
 
@@ -20,9 +20,14 @@ pub(crate) enum Shape {
 }
 
 /// Keys of which a role has exactly one.
-pub(crate) const PLACES: [&str; 6] = ["column", "cell", "label", "path", "xml", "constant"];
+pub(crate) const PLACES: [&str; 13] = [
+    "column", "columns", "letter", "heading", "row", "cell", "label", "right_of", "below", "sheet",
+    "path", "xml", "constant",
+];
+/// Those that an XML export has.
+const ANYWHERE: [&str; 2] = ["path", "constant"];
 
-const EXPECTED: &str = "one of column, cell, label, path, xml or constant";
+const EXPECTED: &str = "one of column, columns, letter, heading, row, cell, label, right_of, below, sheet, path, xml or constant";
 
 /// A role that has no keys of its own.
 pub(crate) fn role(node: &Node<'_>, shape: Shape) -> Option<Role> {
@@ -46,16 +51,19 @@ pub(crate) fn table<'a>(node: &Node<'a>) -> Option<Table<'a>> {
 
 /// The role's own keys; the table is left open for more.
 pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
-    table.later(&["columns", "letter", "sheet", "right_of", "below"]);
+    let (cell, found) = (cell_in(table, shape), found_in(table));
+    found?.at(cell?)
+}
+
+/// The one place that the keys name.
+fn cell_in(table: &Table<'_>, shape: Shape) -> Option<Cell> {
     let places: Vec<(&str, Node<'_>)> = PLACES
         .into_iter()
         .filter_map(|key| Some((key, table.get(key)?)))
         .collect();
-    let find = table
-        .get("find")
-        .map(|node| regex(&node, 1).map(|regex| regex.as_str().to_owned()));
-    let spellings = table.or("spellings", BTreeMap::new(), |node| spellings(node));
+    let joiner = table.optional("joiner", joiner);
     let from = match places.as_slice() {
+        [("columns", node)] => joined(node, shape, joiner?),
         [(key, node)] => place(key, node, shape),
         [] => {
             table.place.fault("none of them", EXPECTED);
@@ -71,36 +79,109 @@ pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
             None
         }
     };
-    let find = match find {
-        Some(written) => Some(written?),
-        None => None,
-    };
-    Some(Role {
-        from: from?,
-        find,
+    if let Some(node) = table.get("joiner")
+        && table.get("columns").is_none()
+    {
+        node.place
+            .fault("`joiner` without `columns`", "both, or none of them");
+        return None;
+    }
+    from
+}
+
+/// What is taken of the text that stands at a role's place.
+pub(crate) struct Taking {
+    find: Option<String>,
+    spellings: BTreeMap<String, String>,
+}
+
+impl Taking {
+    #[allow(clippy::unnecessary_wraps)]
+    pub(crate) fn at(self, from: Cell) -> Option<Role> {
+        Some(Role {
+            from,
+            find: self.find,
+            spellings: self.spellings,
+        })
+    }
+}
+
+/// The keys `find` and `spellings`.
+pub(crate) fn found_in(table: &Table<'_>) -> Option<Taking> {
+    let find = table.optional("find", |node| {
+        regex(node, 1).map(|regex| regex.as_str().to_owned())
+    });
+    let spellings = table.or("spellings", BTreeMap::new(), |node| spellings(node));
+    Some(Taking {
+        find: find?,
         spellings: spellings?,
     })
 }
 
-fn place(key: &str, node: &Node<'_>, shape: Shape) -> Option<Cell> {
-    let in_table = ["column", "cell", "label"].contains(&key);
-    if (in_table && matches!(shape, Shape::Xml(_))) || (key == "xml" && shape == Shape::Table) {
-        let (form, hint) = if in_table {
-            (
-                "a place in an XML export: xml, path or constant",
-                "`column`, `cell` and `label` need form = \"table\"",
-            )
-        } else {
-            (
-                "a place in a table: column, cell, label, path or constant",
-                "`xml` needs form = \"xml\"",
-            )
-        };
-        node.place.fault_hint(format!("`{key}`"), form, hint);
+/// What stands between the texts of two columns.
+fn joiner(node: &Node<'_>) -> Option<String> {
+    let joiner = node.text()?;
+    if joiner.chars().count() > 9 || joiner.chars().any(char::is_control) {
+        node.fault("a text of at most 9 characters");
         return None;
     }
+    Some(joiner.to_owned())
+}
+
+fn joined(node: &Node<'_>, shape: Shape, joiner: Option<String>) -> Option<Cell> {
+    in_table("columns", node, shape)?;
+    let names = node.names("two or more headings such as [\"Feature\", \"Axis\"]")?;
+    if names.len() < 2 {
+        node.fault_hint("two or more headings", "one column is `column`");
+        return None;
+    }
+    Some(Cell::Joined {
+        columns: names.into_iter().map(|(name, _)| name.to_owned()).collect(),
+        joiner: joiner.unwrap_or_else(|| " ".to_owned()),
+    })
+}
+
+/// `Some` when the place `key` fits the form.
+fn in_table(key: &str, node: &Node<'_>, shape: Shape) -> Option<()> {
+    let fault = match (key, shape) {
+        ("xml", Shape::Table) => (
+            "a place in a table: column, cell, label, path or constant",
+            "`xml` needs form = \"xml\"".to_owned(),
+        ),
+        (key, Shape::Xml(_)) if key != "xml" && !ANYWHERE.contains(&key) => (
+            "a place in an XML export: xml, path or constant",
+            match key {
+                "column" | "cell" | "label" => {
+                    "`column`, `cell` and `label` need form = \"table\"".to_owned()
+                }
+                key => format!("`{key}` needs form = \"table\""),
+            },
+        ),
+        _ => return Some(()),
+    };
+    node.place.fault_hint(format!("`{key}`"), fault.0, fault.1);
+    None
+}
+
+fn place(key: &str, node: &Node<'_>, shape: Shape) -> Option<Cell> {
+    in_table(key, node, shape)?;
     match key {
         "column" => Some(Cell::Column(node.name()?.to_owned())),
+        "letter" => letter(node).map(Cell::Counted),
+        "row" => Some(Cell::Row(node.name()?.to_owned())),
+        "right_of" => Some(Cell::RightOf(node.name()?.to_owned())),
+        "below" => Some(Cell::Below(node.name()?.to_owned())),
+        "heading" | "sheet" => {
+            if !node.flag()? {
+                node.fault_hint("true", "leave it out to look elsewhere");
+                return None;
+            }
+            Some(if key == "sheet" {
+                Cell::Sheet
+            } else {
+                Cell::Heading
+            })
+        }
         "label" => Some(Cell::Label(node.name()?.to_owned())),
         "constant" => Some(Cell::Constant(node.name()?.to_owned())),
         "path" => Some(Cell::Path(regex(node, 1)?.as_str().to_owned())),

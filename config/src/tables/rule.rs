@@ -3,13 +3,16 @@
 use std::collections::BTreeMap;
 
 use restudy_parsers::{
-    Bounds, Cell, Count, Find, Form, Header, Limit, Role, Rule, Sheet, Trial, Value,
+    Across, Bounds, Cell, Count, Find, Form, Header, Layout, Limit, Reader, Role, Rule, Sheet,
+    Trial, Value,
 };
 
 use crate::checked::Site;
-use crate::place::is_each;
+use crate::place::{is_each, regex};
 use crate::source::shortened;
-use crate::tables::role::{PLACES, Shape, role, role_in, table as role_table};
+use crate::tables::bounds::bounds;
+use crate::tables::layout::{header, layout};
+use crate::tables::role::{PLACES, Shape, found_in, role, role_in, table as role_table};
 use crate::tables::taken::taken;
 use crate::walk::{Node, Table};
 use restudy_parsers::fold;
@@ -28,6 +31,8 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
     let shape = shape(table);
     let decimal = table.or("decimal", '.', |node| node.word(&[(".", '.'), (",", ',')]));
     let form = form(table, shape, decimal);
+    let layout = layout(table, shape);
+    let bounds = table.or("bounds", Bounds::default(), bounds);
     let part = table
         .need("part", "where the part's name comes from")
         .and_then(|node| role(&node, shape));
@@ -41,8 +46,8 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
         .and_then(|node| value(&node, shape));
     let nominal = table.optional("nominal", |node| role(node, shape));
     let has_nominal = table.get("nominal").is_some();
-    let lower = table.optional("lower", |node| limit(node, shape, has_nominal));
-    let upper = table.optional("upper", |node| limit(node, shape, has_nominal));
+    let lower = table.optional("lower", |node| limit(node, shape, has_nominal, true));
+    let upper = table.optional("upper", |node| limit(node, shape, has_nominal, false));
     let factors = table.or("factors", BTreeMap::new(), |node| {
         named_roles(node, shape, &BTreeMap::new())
     });
@@ -51,23 +56,10 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
         named_roles(node, shape, &known)
     });
     let end = table.optional("end", find);
+    let count = table.optional("count", |node| count(node, shape));
     let no_value = table.or("no_value", Vec::new(), |node| texts(node));
     let encoding = table.optional("encoding", encoding);
-    table.later(&[
-        "skip",
-        "keep",
-        "fill_down",
-        "thousands",
-        "bounds",
-        "zone",
-        "layout",
-        "blocks",
-        "units_row",
-        "repeat_header",
-        "units",
-        "dates",
-        "line_breaks",
-    ]);
+    table.later(&["thousands", "zone", "units", "dates", "line_breaks"]);
     table.finish();
 
     if matches!(trial, Some(Some(Trial::Counted(Count::Taken)))) && table.get("taken").is_none() {
@@ -79,10 +71,22 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
         return None;
     }
     let (part, value) = (part?, value?);
-    let is_by_row =
-        |role: Option<&Role>| role.is_some_and(|role| matches!(role.from, Cell::Column(_)));
+    let is_by_row = |role: Option<&Role>| {
+        role.is_some_and(|role| {
+            matches!(
+                role.from,
+                Cell::Column(_) | Cell::Counted(_) | Cell::Joined { .. }
+            )
+        })
+    };
     let by_row = is_by_row(Some(&part)) || is_by_row(characteristic.as_ref()?.as_ref());
-    if by_row && matches!(value.role.from, Cell::At { .. } | Cell::Label(_)) {
+    let alone = |cell: &Cell| {
+        matches!(
+            cell,
+            Cell::At { .. } | Cell::Label(_) | Cell::RightOf(_) | Cell::Below(_)
+        )
+    };
+    if by_row && alone(&value.role.from) {
         table.place_of("value").fault_hint(
             "one place for the whole export, beside roles from columns",
             "a column",
@@ -90,8 +94,13 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
         );
         return None;
     }
-    Some(Rule {
-        form: form?,
+    let (form, further_headings) = form?;
+    let value = with_units_row(
+        value,
+        layout.as_ref().is_some_and(|layout| layout.units_row),
+    );
+    let rule = Rule {
+        form,
         part,
         appraiser: appraiser?,
         trial: trial?,
@@ -105,32 +114,89 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
         factors: factors?,
         same: same?,
         end: end?,
+        count: count?,
+        layout: Layout {
+            further_headings,
+            ..layout?
+        },
         decimal: decimal?,
         no_value: no_value?,
         encoding: encoding?,
-        bounds: Bounds::default(),
-    })
+        bounds: bounds?,
+    };
+    match Reader::new(&rule) {
+        Ok(_) => Some(rule),
+        Err(why) => {
+            let expected = "places that fit each other";
+            table
+                .place
+                .fault(format!("{}: {}", why.role, why.what), expected);
+            None
+        }
+    }
+}
+
+/// Where a row below the headings holds units, the value's unit stands there unless the rule names one.
+fn with_units_row(value: Value, units_row: bool) -> Value {
+    match value.unit {
+        None if units_row => Value {
+            unit: Some(Role::plain(Cell::UnitsRow)),
+            ..value
+        },
+        unit => Value { unit, ..value },
+    }
 }
 
 fn shape(table: &Table<'_>) -> Shape {
     let Some(node) = table.need("form", "\"table\" or \"xml\"") else {
         return Shape::Unknown;
     };
-    if let Some(later @ ("crosstab" | "qif")) = node.as_text() {
+    if node.as_text() == Some("qif") {
         node.place.fault(
-            format!("`{later}`: not yet"),
-            "a form of this version: \"table\" or \"xml\"",
+            "`qif`: not yet",
+            "a form of this version: \"table\", \"crosstab\" or \"xml\"",
         );
         return Shape::Unknown;
+    }
+    if node.as_text() == Some("crosstab") {
+        crosstab(table);
     }
     let depth = |each: &str| each.split('/').filter(|name| !name.is_empty()).count();
     let each = table.get("each").and_then(|node| node.as_text());
     let xml = Shape::Xml(each.filter(|each| is_each(each)).map_or(usize::MAX, depth));
-    node.word(&[("table", Shape::Table), ("xml", xml)])
-        .unwrap_or(Shape::Unknown)
+    node.word(&[
+        ("table", Shape::Table),
+        ("crosstab", Shape::Table),
+        ("xml", xml),
+    ])
+    .unwrap_or(Shape::Unknown)
 }
 
-fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<Form> {
+/// A crosstab is a table whose value stands across columns, with their headings as some role.
+fn crosstab(table: &Table<'_>) {
+    let holds = |role: &'static str, key: &'static str| {
+        let node = table.get(role).filter(Node::is_table);
+        let role = node.and_then(|node| node.table(""));
+        role.is_some_and(|role| role.get(key).is_some())
+    };
+    if table.get("value").is_some() && !holds("value", "across") {
+        table.place_of("value").fault_hint(
+            "one column in a crosstab",
+            "several, such as { across = '^P\\d+$' }",
+            "with one row a reading it is form = \"table\"",
+        );
+    }
+    let roles = ["part", "appraiser", "trial", "characteristic"];
+    if table.get("part").is_some() && !roles.into_iter().any(|role| holds(role, "heading")) {
+        table.place_of("part").fault(
+            "no role from the headings of a crosstab",
+            "one of part, appraiser, trial and characteristic as { heading = true }",
+        );
+    }
+}
+
+/// The form, and the rows of headings below the first.
+fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<(Form, u32)> {
     let of_tables = ("table", "an XML export");
     let of_xml = ("xml", "a table");
     for (key, (form, others)) in [
@@ -157,13 +223,15 @@ fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<Form> 
     match shape {
         Shape::Table => {
             let sheet = table.or("sheet", Sheet::First, |node| sheet(node));
-            let header = table.or("header", Header::Row(1), |node| header(node));
+            let header = table.or("header", (Header::Row(1), 0), |node| header(node));
             let delimiter = table.optional("delimiter", |node| delimiter(node, decimal));
-            Some(Form::Table {
+            let (header, further_headings) = header?;
+            let form = Form::Table {
                 sheet: sheet?,
-                header: header?,
+                header,
                 delimiter: delimiter?,
-            })
+            };
+            Some((form, further_headings))
         }
         Shape::Xml(_) => {
             let node = table.need(
@@ -178,35 +246,32 @@ fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<Form> 
                 );
                 return None;
             }
-            Some(Form::Xml {
-                each: each.to_owned(),
-            })
+            let each = each.to_owned();
+            Some((Form::Xml { each }, 0))
         }
         Shape::Unknown => None,
     }
 }
 
 fn sheet(node: &Node<'_>) -> Option<Sheet> {
-    if node.as_text() == Some("every") {
-        node.place
-            .fault("`every`: not yet", "the name of one sheet");
-        return None;
-    }
-    Some(Sheet::Named(node.name()?.to_owned()))
-}
-
-fn header(node: &Node<'_>) -> Option<Header> {
-    if node.is_number() {
-        return node.whole(1..=1 << 20, "a row").map(Header::Row);
-    }
     if node.is_table() {
-        return find(node).map(|find| Header::Find(find.find));
+        let table = node.table("a table such as { matches = '^bore' }")?;
+        let regex = table
+            .need(
+                "matches",
+                "a regular expression for the names of the sheets",
+            )
+            .and_then(|node| regex(&node, usize::MAX));
+        table.finish();
+        return Some(Sheet::Matching(regex?.as_str().to_owned()));
     }
-    node.fault("the row of the headings, or { find = \"a heading\" }");
-    None
+    Some(match node.name()? {
+        "every" => Sheet::Every,
+        name => Sheet::Named(name.to_owned()),
+    })
 }
 
-fn find(node: &Node<'_>) -> Option<Find> {
+pub(crate) fn find(node: &Node<'_>) -> Option<Find> {
     let table = node.table("a table such as { find = \"End of report\" }")?;
     let text = table
         .need("find", "the text to look for")
@@ -257,10 +322,13 @@ fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
 
 fn value(node: &Node<'_>, shape: Shape) -> Option<Value> {
     let table = role_table(node)?;
-    let role = role_in(&table, shape);
+    let role = match table.get("across") {
+        None => role_in(&table, shape),
+        Some(node) => across(&node, &table, shape),
+    };
     let unit = table.optional("unit", |node| unit(node, shape));
     table.finish();
-    for key in ["path", "constant"] {
+    for key in ["path", "constant", "columns", "heading", "row", "sheet"] {
         if table.get(key).is_some() {
             table
                 .place
@@ -274,6 +342,43 @@ fn value(node: &Node<'_>, shape: Shape) -> Option<Value> {
     })
 }
 
+/// The value in several columns, each a reading of its row.
+fn across(node: &Node<'_>, table: &Table<'_>, shape: Shape) -> Option<Role> {
+    if matches!(shape, Shape::Xml(_)) {
+        node.place.fault_hint(
+            "`across`",
+            "a place in an XML export: xml",
+            "`across` needs form = \"table\"",
+        );
+        return None;
+    }
+    if let Some(place) = PLACES.into_iter().find(|place| table.get(place).is_some()) {
+        node.place
+            .fault(format!("`across` beside `{place}`"), "one of the two");
+        return None;
+    }
+    let taking = found_in(table);
+    let columns = if node.is_list() {
+        let names = node.names("headings such as [\"T1\", \"T2\"]")?;
+        Across::Headed(names.into_iter().map(|(name, _)| name.to_owned()).collect())
+    } else if node.as_text().is_some() {
+        Across::Matching(regex(node, usize::MAX)?.as_str().to_owned())
+    } else {
+        node.fault("a list of headings, or a regular expression for them");
+        return None;
+    };
+    taking?.at(Cell::Across(columns))
+}
+
+/// How many readings a run has: a number, or a place.
+fn count(node: &Node<'_>, shape: Shape) -> Option<Role> {
+    if node.is_number() {
+        let count = node.whole(1..=1 << 20, "so many readings")?;
+        return Some(Role::plain(Cell::Constant(count.to_string())));
+    }
+    role(node, shape)
+}
+
 fn unit(node: &Node<'_>, shape: Shape) -> Option<Role> {
     if node.is_table() {
         return role(node, shape);
@@ -281,12 +386,22 @@ fn unit(node: &Node<'_>, shape: Shape) -> Option<Role> {
     Some(Role::plain(Cell::Constant(node.name()?.to_owned())))
 }
 
-fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool) -> Option<Limit> {
+fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool, is_lower: bool) -> Option<Limit> {
     let table = role_table(node)?;
     let role = role_in(&table, shape);
     let from = table.optional("from", |node| node.word(&[("nominal", ())]));
+    let sign = table.optional("sign", |node| node.word(&[("left out", ())]));
     table.finish();
-    let from = from?;
+    let (from, sign) = (from?, sign?);
+    if let Some(node) = table.get("sign")
+        && (from.is_none() || !is_lower)
+    {
+        node.fault_hint(
+            "the sign of a lower limit with from = \"nominal\"",
+            "it says that 0.01 means 0.01 below the nominal",
+        );
+        return None;
+    }
     if let Some(node) = table.get("from")
         && !has_nominal
     {
@@ -299,6 +414,7 @@ fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool) -> Option<Limit> {
     Some(Limit {
         role: role?,
         from_nominal: from.is_some(),
+        unsigned: sign.is_some(),
     })
 }
 

@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 use std::fmt::Write as _;
 
 use restudy_parsers::{
-    Bounds, Cell, Export, Form, Header, Limit, Parsed, Refused, Role, Rule, Sheet, Value,
+    Bounds, Cell, Export, Form, Header, Layout, Limit, Parsed, Refused, Role, Rule, Sheet, Value,
 };
 
 pub(crate) fn column(heading: &str) -> Role {
@@ -35,6 +35,7 @@ pub(crate) fn absolute(role: Role) -> Option<Limit> {
     Some(Limit {
         role,
         from_nominal: false,
+        unsigned: false,
     })
 }
 
@@ -42,6 +43,7 @@ pub(crate) fn deviation(role: Role) -> Option<Limit> {
     Some(Limit {
         role,
         from_nominal: true,
+        unsigned: false,
     })
 }
 
@@ -69,6 +71,8 @@ pub(crate) fn table() -> Rule {
         factors: BTreeMap::new(),
         same: BTreeMap::new(),
         end: None,
+        count: None,
+        layout: Layout::default(),
         decimal: '.',
         no_value: Vec::new(),
         encoding: None,
