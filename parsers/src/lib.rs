@@ -36,6 +36,7 @@ mod rule;
 mod runs;
 mod source;
 mod table;
+mod unit;
 mod workbook;
 mod xml;
 mod xml_path;
@@ -45,8 +46,9 @@ pub use parsed::{Parsed, Reading, Refused, Run, SetAside};
 pub use plain::{Plain, read_plain};
 pub use reader::{Reader, RuleError};
 pub use rule::{
-    Bounds, Cell, Count, Find, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,
+    Bounds, Cell, Count, Epoch, Find, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,
 };
+pub use unit::converted;
 
 /// One export as it was read: its path below the watched folder (with `/` between folders, lossy
 /// where a name is not UTF-8) and all its bytes.

@@ -70,7 +70,9 @@ pub(crate) fn table() -> Rule {
         same: BTreeMap::new(),
         end: None,
         decimal: '.',
+        thousands: None,
         no_value: Vec::new(),
+        line_breaks: false,
         encoding: None,
         bounds: Bounds::default(),
     }
