@@ -105,6 +105,7 @@ fn the_rule_of_a_table() {
         taken: Some(Taken {
             role: at(3, 1),
             format: Some("%d.%m.%Y %H:%M".to_owned()),
+            dates: None,
             written_in: None,
             shown_in: Some("Europe/Oslo".to_owned()),
         }),
@@ -142,6 +143,8 @@ fn the_rule_of_a_table() {
         count: None,
         layout: Layout::default(),
         decimal: ',',
+        thousands: None,
+        line_breaks: false,
         no_value: vec!["---".to_owned(), "9999".to_owned()],
         encoding: Some("windows-1252".to_owned()),
         bounds: Bounds::default(),
@@ -161,6 +164,7 @@ fn the_rule_of_an_xml_export() {
         taken: Some(Taken {
             role: xml("../@time"),
             format: None,
+            dates: None,
             written_in: Some("UTC".to_owned()),
             shown_in: Some("Europe/Oslo".to_owned()),
         }),
@@ -183,6 +187,8 @@ fn the_rule_of_an_xml_export() {
         count: None,
         layout: Layout::default(),
         decimal: '.',
+        thousands: None,
+        line_breaks: false,
         no_value: Vec::new(),
         encoding: None,
         bounds: Bounds::default(),

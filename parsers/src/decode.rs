@@ -1,17 +1,19 @@
 //! Bytes to text: byte-order mark, then strict UTF-8, then the encoding that the rule names. Nothing
 //! is guessed, and damage is an error, never a replacement character.
 //!
-//! Invariant: decoded text holds no control characters but tab, line ends and form feed.
+//! Invariant: decoded text holds no control characters but tab, line ends (U+0085 too) and form feed.
 
 use std::borrow::Cow;
 
-use encoding_rs::{Encoding, UTF_8, UTF_16BE, UTF_16LE};
+use encoding_rs::{DecoderResult, Encoding, UTF_8, UTF_16BE, UTF_16LE};
 
 use crate::kind::{is_binary, neither};
 use crate::parsed::Refused;
 
 /// The end-of-file mark that old exporters append.
 const CONTROL_Z: char = '\u{1a}';
+/// Bytes of text that are decoded at once in search of damage.
+const STEP: usize = 4096;
 /// Bytes in which an XML declaration must end.
 const DECLARATION_MAX: usize = 1024;
 
@@ -27,14 +29,20 @@ pub(crate) fn decode<'a>(
     if marked.is_none() && is_binary(bytes) {
         return Err(neither(bytes));
     }
+    let by = match declared {
+        Some(_) => "as its first line says",
+        None => "as the rule says",
+    };
     let text = match marked {
-        Some((encoding, mark)) => with(encoding, &bytes[mark..])?,
+        Some((encoding, mark)) => with(encoding, &bytes[mark..], "as its first bytes say")?,
         None => match declared.or(named.filter(|encoding| !encoding.is_ascii_compatible())) {
-            Some(encoding) => with(encoding, bytes)?,
+            Some(encoding) => with(encoding, bytes, by)?,
             None => match (std::str::from_utf8(bytes), named) {
                 (Ok(text), _) => Cow::Borrowed(text),
-                (Err(_), Some(encoding)) if encoding != UTF_8 => with(encoding, bytes)?,
-                (Err(why), _) => return Err(not_utf8(bytes, why)),
+                (Err(_), Some(encoding)) if encoding != UTF_8 => with(encoding, bytes, by)?,
+                (Err(why), _) => {
+                    return Err(not_utf8(bytes, why, "and nothing names another encoding"));
+                }
             },
         },
     };
@@ -61,39 +69,74 @@ pub(crate) fn declared(bytes: &[u8]) -> Option<&'static Encoding> {
     (encoding.is_ascii_compatible() && encoding != UTF_8).then_some(encoding)
 }
 
-fn with<'a>(encoding: &'static Encoding, bytes: &'a [u8]) -> Result<Cow<'a, str>, Refused> {
+/// `by`: who says that the text is in that encoding.
+fn with<'a>(
+    encoding: &'static Encoding,
+    bytes: &'a [u8],
+    by: &str,
+) -> Result<Cow<'a, str>, Refused> {
     if encoding == UTF_8 {
         return std::str::from_utf8(bytes)
             .map(Cow::Borrowed)
-            .map_err(|why| not_utf8(bytes, why));
+            .map_err(|why| not_utf8(bytes, why, by));
     }
     encoding
         .decode_without_bom_handling_and_without_replacement(bytes)
-        .ok_or_else(|| {
-            let odd = (encoding == UTF_16LE || encoding == UTF_16BE) && bytes.len() % 2 == 1;
-            Refused {
-                sentence: format!(
-                    "the file is not whole text in the encoding {}",
-                    encoding.name()
-                ),
-                hint: Some(
-                    "correct `encoding`: it is what the instrument writes its text in".to_owned(),
-                ),
-                perhaps_unfinished: odd,
-            }
-        })
+        .ok_or_else(|| not_in(encoding, bytes, by))
 }
 
-fn not_utf8(bytes: &[u8], why: std::str::Utf8Error) -> Refused {
-    let at = why.valid_up_to();
+/// Finds the damage: only then is the text decoded step by step.
+fn not_in(encoding: &'static Encoding, bytes: &[u8], by: &str) -> Refused {
+    let mut decoder = encoding.new_decoder_without_bom_handling();
+    let (mut line, mut rest) = (1, bytes);
+    let mut step = String::with_capacity(STEP);
+    let (malformed, behind) = loop {
+        let (result, read) = decoder.decode_to_string_without_replacement(rest, &mut step, true);
+        line += step.matches('\n').count();
+        rest = rest.get(read..).unwrap_or_default();
+        match result {
+            DecoderResult::OutputFull if read > 0 || !step.is_empty() => step.clear(),
+            DecoderResult::Malformed(length, behind) => {
+                break (usize::from(length), usize::from(behind));
+            }
+            DecoderResult::OutputFull | DecoderResult::InputEmpty => break (0, 0),
+        }
+    };
+    let end = bytes.len() - rest.len() - behind.min(bytes.len() - rest.len());
+    let wrong = &bytes[end.saturating_sub(malformed)..end];
+    let shown: Vec<String> = wrong.iter().map(|byte| format!("{byte:02X}")).collect();
+    let is_cut = rest.is_empty() && behind == 0 && !encoding.is_single_byte();
+    Refused {
+        sentence: match (is_cut, shown.as_slice()) {
+            (true, _) => format!(
+                "line {line}: the file ends inside a character of the encoding {}, {by}",
+                encoding.name()
+            ),
+            (false, [one]) => format!(
+                "line {line}: the byte 0x{one} means nothing in the encoding {}, {by}",
+                encoding.name()
+            ),
+            (false, several) => format!(
+                "line {line}: the bytes {} mean nothing in the encoding {}, {by}",
+                several.join(" "),
+                encoding.name()
+            ),
+        },
+        hint: Some("correct `encoding`: it is what the instrument writes its text in".to_owned()),
+        perhaps_unfinished: is_cut,
+    }
+}
+
+fn not_utf8(bytes: &[u8], why: std::str::Utf8Error, by: &str) -> Refused {
     if nul_tail(bytes) {
         return nuls();
     }
+    let (text, rest) = bytes.split_at(why.valid_up_to());
+    let line = 1 + text.iter().filter(|&&byte| byte == b'\n').count();
     Refused {
         sentence: format!(
-            "byte {} (0x{:02X}) is not UTF-8 text, and nothing names another encoding",
-            at + 1,
-            bytes.get(at).copied().unwrap_or(0)
+            "line {line}: the byte 0x{:02X} is not UTF-8 text, {by}",
+            rest.first().copied().unwrap_or(0)
         ),
         hint: Some(
             "if this is text, name its encoding, as in `encoding = \"windows-1252\"`".to_owned(),
@@ -121,7 +164,7 @@ fn checked(text: Cow<'_, str>) -> Result<Cow<'_, str>, Refused> {
     let kept = text.trim_end_matches(CONTROL_Z).len();
     let odd = text[..kept]
         .char_indices()
-        .find(|(_, c)| c.is_ascii_control() && !matches!(c, '\t' | '\n' | '\r' | '\u{c}'));
+        .find(|(_, c)| c.is_control() && !matches!(c, '\t' | '\n' | '\r' | '\u{c}' | '\u{85}'));
     match odd {
         Some((_, '\0')) if text.ends_with('\0') => Err(nuls()),
         Some((at, found)) => Err(Refused {
@@ -132,6 +175,7 @@ fn checked(text: Cow<'_, str>) -> Result<Cow<'_, str>, Refused> {
             ),
             hint: Some(match found {
                 '\0' => "if this is UTF-16 without a byte-order mark, set `encoding = \"utf-16le\"`",
+                '\u{80}'..='\u{9f}' => "is `encoding` what the instrument writes its text in?",
                 _ => "have it exported again; text holds no control characters but tabs and line ends",
             }.to_owned()),
             perhaps_unfinished: false,
@@ -172,7 +216,11 @@ mod tests {
 
     #[test]
     fn damage_is_refused_and_a_cut_file_is_told_apart() {
-        assert!(refused(b"a\xb5m").0.contains("byte 2 (0xB5) is not UTF-8"));
+        assert!(
+            refused(b"a\xb5m")
+                .0
+                .starts_with("line 1: the byte 0xB5 is not UTF-8")
+        );
         assert!(!refused(b"a\xb5m").1);
         assert!(refused(b"a\xc2").1);
         assert!(refused(b"\xff\xfea\0b").1);
@@ -183,6 +231,53 @@ mod tests {
             refused(b"a\nb\x01c")
                 .0
                 .starts_with("line 2: the control character U+0001")
+        );
+    }
+
+    #[test]
+    fn damage_in_a_named_encoding_has_its_line() {
+        use encoding_rs::{BIG5, GBK, ISO_8859_7, SHIFT_JIS};
+        let told = |encoding, bytes: &[u8]| decode(bytes, None, Some(encoding)).unwrap_err();
+        let lines = [b"\xb5\n".repeat(5000).as_slice(), b"\xff"].concat();
+        for (encoding, bytes, sentence) in [
+            (
+                SHIFT_JIS,
+                b"a\nb\x81\x20c".as_slice(),
+                "line 2: the byte 0x81 means nothing in the encoding Shift_JIS, as the rule says",
+            ),
+            (
+                ISO_8859_7,
+                &lines,
+                "line 5001: the byte 0xFF means nothing in the encoding ISO-8859-7",
+            ),
+            (
+                GBK,
+                b"a\n\x81",
+                "line 2: the file ends inside a character of the encoding GBK",
+            ),
+            (
+                BIG5,
+                b"\xa4\xa4\n\xff\xff",
+                "line 2: the byte 0xFF means nothing in the encoding Big5",
+            ),
+            (
+                WINDOWS_1252,
+                b"\xb5\n\x81",
+                "line 2: the control character U+0081",
+            ),
+        ] {
+            let refused = told(encoding, bytes);
+            assert!(
+                refused.sentence.starts_with(sentence),
+                "{}",
+                refused.sentence
+            );
+            assert_eq!(refused.perhaps_unfinished, sentence.contains("ends inside"));
+        }
+        let marked = decode(b"\xef\xbb\xbfa\n\xb5", None, None).unwrap_err();
+        assert_eq!(
+            marked.sentence,
+            "line 2: the byte 0xB5 is not UTF-8 text, as its first bytes say"
         );
     }
 

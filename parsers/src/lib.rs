@@ -41,6 +41,7 @@ mod runs;
 mod sheets;
 mod source;
 mod table;
+mod unit;
 mod workbook;
 mod xml;
 mod xml_path;
@@ -50,9 +51,10 @@ pub use parsed::{Parsed, Reading, Refused, Run, SetAside};
 pub use plain::{Plain, read_plain};
 pub use reader::{Reader, RuleError};
 pub use rule::{
-    Across, Bounds, Cell, Column, Count, Filter, Find, Form, Header, Layout, Limit, Role, Rule,
-    Sheet, Taken, Test, Trial, Until, Value,
+    Across, Bounds, Cell, Column, Count, Epoch, Filter, Find, Form, Header, Layout, Limit, Role,
+    Rule, Sheet, Taken, Test, Trial, Until, Value,
 };
+pub use unit::converted;
 
 /// One export as it was read: its path below the watched folder (with `/` between folders, lossy
 /// where a name is not UTF-8) and all its bytes.

@@ -4,28 +4,36 @@
 //! [`Taken::written_in`](crate::Taken) showed. Both are shown by the clock of `shown_in`. A day
 //! without a time of day is that day in every zone.
 //!
+//! A bare number is a time only when the rule says what its days count from; then a text is one too.
+//!
 //! A time that a clock shows twice (it was set back) is taken as the earlier one; a time that it
 //! never shows (it was set forward) as that much later. Source: RFC 5545, section 3.3.5.
 //!
 //! Invariant: a time lies in the years 1990 to 2100 and is rounded to the millisecond.
 
-use jiff::Unit;
 use jiff::civil::{self, Time};
 use jiff::fmt::strtime;
 use jiff::fmt::temporal::{Pieces, PiecesOffset};
 use jiff::tz::{Offset, TimeZone, TimeZoneDatabase};
+use jiff::{ToSpan as _, Unit};
 
 use crate::fault::{Fault, shown};
 use crate::grid::{Content, Field};
 use crate::names::shorten;
-use crate::rule::Taken;
+use crate::number::{Marks, Number};
+use crate::rule::{Epoch, Taken};
 
+/// Beyond every day of the calendar's four-digit years.
+const DAYS_MAX: f64 = 2_958_466.0;
+const DAY_MILLISECONDS: f64 = 86_400_000.0;
 const YEARS: std::ops::RangeInclusive<i16> = 1990..=2100;
 
 /// How time stamps are written, and by which clock they are shown.
 #[derive(Debug, Clone)]
 pub(crate) struct Clock {
     format: Option<String>,
+    dates: Option<Epoch>,
+    marks: Marks,
     written_in: Option<TimeZone>,
     shown_in: Option<TimeZone>,
 }
@@ -40,9 +48,9 @@ struct Stamp {
 
 impl Clock {
     /// # Errors
-    /// The sentence that says which zone cannot be used. Zones are looked up in the tables that are
+    /// The sentence that says which zone cannot be used, or that numbers and a format exclude each other. Zones are looked up in the tables that are
     /// built in, so that the answer does not depend on the machine.
-    pub(crate) fn new(taken: &Taken) -> Result<Self, String> {
+    pub(crate) fn new(taken: &Taken, marks: Marks) -> Result<Self, String> {
         let zone = |name: &Option<String>| match name {
             None => Ok(None),
             Some(name) => TimeZoneDatabase::bundled()
@@ -55,8 +63,13 @@ impl Clock {
                 "a zone in which times are written, but none in which they are shown".into(),
             );
         }
+        if taken.dates.is_some() && taken.format.is_some() {
+            return Err("times that are numbers, and a format of texts beside it".into());
+        }
         Ok(Self {
             format: taken.format.clone(),
+            dates: taken.dates,
+            marks,
             written_in: zone(&taken.written_in)?,
             shown_in: zone(&taken.shown_in)?,
         })
@@ -77,9 +90,14 @@ impl Clock {
                 time: Some(date.time()),
                 offset: None,
             },
-            (Some(text), content) => self.parse(text).ok_or_else(|| {
+            (Some(text), content) => self.stamp(text, content).ok_or_else(|| {
                 fault(format!("`{}` is not {expected}", shorten(text))).hint(match content {
-                    Content::Number(_) => "have the cell formatted as a date",
+                    _ if self.dates.is_some() => {
+                        "leave `dates` out if times are written as texts"
+                    }
+                    Content::Number(_) => {
+                        "have the cell formatted as a date, or say what the numbers count from with `dates = \"1900\"`"
+                    }
                     _ if self.format.is_some() => {
                         "correct `format`, or cut the time out of the text with `find`"
                     }
@@ -94,6 +112,9 @@ impl Clock {
         let outside = |time: &dyn std::fmt::Display| {
             fault(format!("`{time}` lies outside the years 1990 to 2100")).hint(match self.format {
                 Some(_) => "`%y` reads a year of two digits, `%Y` one of four",
+                None if self.dates.is_some() => {
+                    "do the numbers count days, and from the year that `dates` says?"
+                }
                 None => "is the instrument's clock set?",
             })
         };
@@ -117,6 +138,22 @@ impl Clock {
             (None, _) => return Some(written),
         };
         Some(shown_in.to_datetime(moment))
+    }
+
+    fn stamp(&self, text: &str, content: &Content) -> Option<Stamp> {
+        let Some(epoch) = self.dates else {
+            return self.parse(text);
+        };
+        let marks = match content {
+            Content::Number(_) => Marks::PLAIN,
+            _ => self.marks,
+        };
+        let written = from_serial(Number::read(text, marks).ok()?.value, epoch)?;
+        Some(Stamp {
+            day: written.date(),
+            time: Some(written.time()),
+            offset: None,
+        })
     }
 
     fn parse(&self, text: &str) -> Option<Stamp> {
@@ -158,6 +195,13 @@ impl Clock {
 
     /// What should stand there, with a time written so.
     fn expected(&self) -> String {
+        if let Some(epoch) = self.dates {
+            let year = match epoch {
+                Epoch::Of1900 => 1900,
+                Epoch::Of1904 => 1904,
+            };
+            return format!("a number of days since the start of {year}");
+        }
         let Some(format) = &self.format else {
             return "a time as `2026-06-02T14:20:05`".to_owned();
         };
@@ -172,6 +216,22 @@ impl Clock {
     }
 }
 
+/// The time of a serial number, to the millisecond; `None` before the 29 February 1900 that the
+/// 1900 system counts and that never was, and beyond the calendar.
+fn from_serial(serial: f64, epoch: Epoch) -> Option<civil::DateTime> {
+    let (zero, first) = match epoch {
+        Epoch::Of1900 => (civil::date(1899, 12, 30), 61.0),
+        Epoch::Of1904 => (civil::date(1904, 1, 1), 0.0),
+    };
+    if !(first..DAYS_MAX).contains(&serial) {
+        return None;
+    }
+    let milliseconds = (serial * DAY_MILLISECONDS).round() as i64;
+    zero.to_datetime(Time::midnight())
+        .checked_add(milliseconds.milliseconds())
+        .ok()
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -179,13 +239,14 @@ mod tests {
     use crate::rule::{Cell, Role};
 
     fn clock(format: Option<&str>, written_in: Option<&str>, shown_in: Option<&str>) -> Clock {
-        Clock::new(&taken(format, written_in, shown_in)).unwrap()
+        Clock::new(&taken(format, written_in, shown_in), Marks::PLAIN).unwrap()
     }
 
     fn taken(format: Option<&str>, written_in: Option<&str>, shown_in: Option<&str>) -> Taken {
         Taken {
             role: Role::plain(Cell::Column("taken".to_owned())),
             format: format.map(str::to_owned),
+            dates: None,
             written_in: written_in.map(str::to_owned),
             shown_in: shown_in.map(str::to_owned),
         }
@@ -340,9 +401,112 @@ mod tests {
 
     #[test]
     fn zones_that_cannot_be_used() {
-        let wrong = |written_in, shown_in| Clock::new(&taken(None, written_in, shown_in)).is_err();
+        let wrong = |written_in, shown_in| {
+            Clock::new(&taken(None, written_in, shown_in), Marks::PLAIN).is_err()
+        };
         assert!(wrong(None, Some("Europe/Halden")));
         assert!(wrong(Some("Europe/Halden"), Some("UTC")));
         assert!(wrong(Some("UTC"), None));
+    }
+
+    fn by_number(dates: Epoch, content: &Content) -> String {
+        let taken = Taken {
+            dates: Some(dates),
+            ..taken(None, None, None)
+        };
+        let comma = Marks {
+            decimal: ',',
+            thousands: None,
+        };
+        let field = Field {
+            place: Place::Rule,
+            content,
+        };
+        let text = match content {
+            Content::Number(number) => Some(number.to_string()),
+            Content::Text(text) => Some(text.to_string()),
+            _ => None,
+        };
+        match Clock::new(&taken, comma)
+            .unwrap()
+            .read(field, text.as_deref())
+        {
+            Ok(time) => time.to_string(),
+            Err(fault) => fault.wrong,
+        }
+    }
+
+    /// 39448 is 1 January 2008 in the 1900 system; the 1904 system counts 1,462 days fewer. Source:
+    /// Microsoft's description of the function DATE and of the two date systems.
+    #[test]
+    fn a_serial_number_counts_from_the_year_that_the_rule_says() {
+        let number = Content::Number;
+        for (dates, serial, time) in [
+            (Epoch::Of1900, 39448.0, "2008-01-01T00:00:00"),
+            (Epoch::Of1904, 37986.0, "2008-01-01T00:00:00"),
+            (Epoch::Of1900, 39448.75, "2008-01-01T18:00:00"),
+            (
+                Epoch::Of1900,
+                39448.0 + 1.0 / 86400.0,
+                "2008-01-01T00:00:01",
+            ),
+        ] {
+            assert_eq!(by_number(dates, &number(serial)), time);
+        }
+        let text = |text: &str| Content::Text(text.into());
+        assert_eq!(
+            by_number(Epoch::Of1900, &text("39448,5")),
+            "2008-01-01T12:00:00"
+        );
+        let date = civil::date(2026, 6, 2).at(14, 20, 5, 0);
+        assert_eq!(
+            by_number(Epoch::Of1904, &Content::Date(date)),
+            "2026-06-02T14:20:05"
+        );
+        for (content, wrong) in [
+            (number(60.0), "`60` is not a number of days"),
+            (number(0.5), "is not a number of days"),
+            (number(32000.0), "outside the years 1990 to 2100"),
+            (number(80000.0), "outside the years 1990 to 2100"),
+            (number(1e300), "is not a number of days"),
+            (text("39448.5"), "is not a number of days"),
+            (text("2026-06-02"), "is not a number of days"),
+        ] {
+            let told = by_number(Epoch::Of1900, &content);
+            assert!(told.contains(wrong), "{told}");
+        }
+    }
+
+    #[test]
+    fn a_number_is_no_time_unless_the_rule_says_so() {
+        let clock = clock(None, None, None);
+        let content = Content::Number(46175.5);
+        let field = Field {
+            place: Place::Rule,
+            content: &content,
+        };
+        let fault = clock.read(field, Some("46175.5")).unwrap_err();
+        assert!(fault.hint.unwrap().contains("`dates = \"1900\"`"));
+    }
+
+    #[test]
+    fn twelve_hours_and_ordinal_days_by_their_format() {
+        assert_eq!(
+            read(Some("%m/%d/%y %I:%M:%S %p"), None, "06/02/26 02:20:05 PM"),
+            "2026-06-02T14:20:05"
+        );
+        assert_eq!(
+            read(Some("%Y-%j %H:%M"), None, "2026-153 14:20"),
+            "2026-06-02T14:20:00"
+        );
+        assert_eq!(
+            read(Some("%G-W%V-%u %H:%M"), None, "2026-W23-2 14:20"),
+            "2026-06-02T14:20:00"
+        );
+        assert_eq!(read(None, None, "20260602T142005"), "2026-06-02T14:20:05");
+        assert_eq!(
+            read(None, None, "2026-06-02T14:20:05,25"),
+            "2026-06-02T14:20:05.25"
+        );
     }
 }

@@ -79,7 +79,7 @@ pub fn read_plain(export: Export<'_>, asked: &Plain) -> Result<Parsed, Refused> 
     if kind == Kind::Text {
         let text = decode::decode(export.bytes, None, None)?;
         let delimiter = delimiter(&text, asked);
-        return delimited::grid(&text, delimiter, &bounds)
+        return delimited::grid(&text, delimiter, false, &bounds)
             .and_then(|grid| by_headings(export.path, &grid, delimiter.mark != b',', asked))
             .map_err(|refused| misnamed(export.path, &text, refused));
     }
@@ -284,6 +284,7 @@ fn rule(headings: &[String], asked: &Plain, header: Header, decimal: char, bound
         taken: role("taken").map(|role| Taken {
             role,
             format: None,
+            dates: None,
             written_in: None,
             shown_in: None,
         }),
@@ -306,7 +307,9 @@ fn rule(headings: &[String], asked: &Plain, header: Header, decimal: char, bound
         count: None,
         layout: Layout::default(),
         decimal,
+        thousands: None,
         no_value: Vec::new(),
+        line_breaks: false,
         encoding: None,
         bounds,
     }

@@ -11,6 +11,7 @@ use crate::layout::Rows;
 use crate::moment::Clock;
 use crate::names::{fold, shorten, shorten_to};
 use crate::no_value::NoValue;
+use crate::number::Marks;
 use crate::parsed::{Parsed, Refused};
 use crate::rule::{Bounds, Count, Find, Form, Header, Layout, Limit, Role, Rule, Trial};
 use crate::sheets::Sheets;
@@ -51,6 +52,7 @@ pub struct Reader {
     pub(crate) roles: Roles,
     shape: Shape,
     encoding: Option<&'static Encoding>,
+    line_breaks: bool,
     pub(crate) bounds: Bounds,
 }
 
@@ -71,7 +73,7 @@ pub(crate) struct Roles {
     pub(crate) upper: Option<LimitAt>,
     pub(crate) factors: Vec<(String, usize)>,
     pub(crate) same: Vec<(String, usize)>,
-    pub(crate) decimal: char,
+    pub(crate) marks: Marks,
     pub(crate) no_value: NoValue,
     /// Keyed text that ends the export.
     pub(crate) end: Option<End>,
@@ -143,12 +145,6 @@ impl Reader {
     /// A regex, path, encoding, zone or delimiter that cannot be used, a role that does not fit the
     /// form, a limit from a nominal that is not there.
     pub fn new(rule: &Rule) -> Result<Self, RuleError> {
-        if !matches!(rule.decimal, '.' | ',') {
-            return Err(RuleError::new(
-                "decimal",
-                format!("`{}` is neither `.` nor `,`", rule.decimal),
-            ));
-        }
         let encoding = match &rule.encoding {
             None => None,
             Some(label) => Some(
@@ -165,6 +161,7 @@ impl Reader {
             roles: Roles::new(rule, shape.each())?,
             shape,
             encoding,
+            line_breaks: rule.line_breaks,
             bounds: rule.bounds,
         })
     }
@@ -234,8 +231,8 @@ impl Reader {
                 Refused::new("this is XML; this instrument's exports are tables").hint(OTHER_FORM),
             );
         }
-        let delimiter = delimited::delimiter(text, delimiter, self.roles.decimal);
-        let grid = delimited::grid(text, delimiter, &self.bounds)?;
+        let delimiter = delimited::delimiter(text, delimiter, self.roles.marks.decimal);
+        let grid = delimited::grid(text, delimiter, self.line_breaks, &self.bounds)?;
         self.read_grids(&[grid], header, once)
     }
 
@@ -319,6 +316,8 @@ impl Shape {
 
 impl Roles {
     fn new(rule: &Rule, each: Option<&XmlPath>) -> Result<Self, RuleError> {
+        let marks = Marks::new(rule.decimal, rule.thousands)
+            .map_err(|(key, what)| RuleError::new(key, what))?;
         let mut sources = Vec::new();
         let mut add = |name: &str, role: &Role| -> Result<usize, RuleError> {
             sources.push(Source::new(name, role, each)?);
@@ -441,7 +440,7 @@ impl Roles {
         let taken = match (&rule.taken, taken) {
             (Some(rule), Some(source)) => Some((
                 source,
-                Clock::new(rule).map_err(|what| RuleError::new("taken", what))?,
+                Clock::new(rule, marks).map_err(|what| RuleError::new("taken", what))?,
             )),
             _ => None,
         };
@@ -460,8 +459,8 @@ impl Roles {
             upper,
             factors,
             same,
-            decimal: rule.decimal,
-            no_value: NoValue::new(&rule.no_value, rule.decimal),
+            marks,
+            no_value: NoValue::new(&rule.no_value, marks),
             end: rule.end.as_ref().map(End::new),
             count,
             rows,

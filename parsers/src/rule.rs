@@ -44,9 +44,13 @@ pub struct Rule {
     pub layout: Layout,
     /// The decimal mark, `.` or `,`.
     pub decimal: char,
-    /// Texts that mean "no value" (`---`, `9999`), compared after trimming; numbers among them also as
-    /// numbers (`9999,00`). As a nominal or a limit they mean that there is none, except a zero.
+    /// The mark between groups of three digits, `.`, `,`, a blank (any blank) or `'`; `None`: there is none.
+    pub thousands: Option<char>,
+    /// Texts that mean "no value" (`---`, `9999`), in any case, blanks folded; numbers among them also as
+    /// numbers (`9999,00`); an empty one: a blank. As a nominal or a limit they mean that there is none, except a zero.
     pub no_value: Vec<String>,
+    /// True when a quoted field of delimited text may hold line ends.
+    pub line_breaks: bool,
     /// Encoding of text that is neither marked by a BOM nor UTF-8 (a WHATWG label).
     pub encoding: Option<String>,
     /// Limits on size and depth.
@@ -247,6 +251,8 @@ pub struct Taken {
     pub role: Role,
     /// A strptime format; `None`: ISO 8601 (or a workbook date cell).
     pub format: Option<String>,
+    /// What numbers count from; `None`: a number is no time. A date cell of a workbook says so itself.
+    pub dates: Option<Epoch>,
     /// IANA zone of the instrument's clock: texts without an offset, and date cells, are civil time
     /// there. A time that its clock shows twice is the earlier one, a time that it skips as much
     /// later as it was set forward. `None`: they are civil time of `shown_in` already.
@@ -256,12 +262,22 @@ pub struct Taken {
     pub shown_in: Option<String>,
 }
 
+/// What the days of a workbook's serial numbers count from. Source: ECMA-376-1:2016, 18.17.4.1.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Epoch {
+    /// 61 is 1 March 1900.
+    Of1900,
+    /// 0 is 1 January 1904.
+    Of1904,
+}
+
 /// The measured value.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Value {
     /// Where it stands.
     pub role: Role,
-    /// Its unit: a constant, or a place.
+    /// The unit of value, nominal and limits that have none of their own behind them: a constant, or a
+    /// place. Those that have another one are converted to it.
     pub unit: Option<Role>,
 }
 

@@ -9,9 +9,10 @@ use crate::fault::{Fault, shown};
 use crate::grid::{Content, Field};
 use crate::identity::Identity;
 use crate::names::{fold_blanks, shorten};
-use crate::number::Number;
+use crate::number::{Marks, Number, Quantity};
 use crate::parsed::{Parsed, Reading, Run, SetAside};
 use crate::reader::{LimitAt, Roles, TrialBy};
+use crate::unit::Scale;
 
 /// Label of the one characteristic of an export that names none.
 const UNNAMED: &str = "value";
@@ -121,17 +122,18 @@ impl<'r> Runs<'r> {
         };
         let (source, field) = (&self.roles.sources[source], fields[source]);
         let expected = "how many readings the run has";
-        let number = source
-            .number(field, self.roles.decimal)?
+        let written = source
+            .quantity(field, self.roles.marks)?
             .ok_or_else(|| source.blank(field.place))?;
-        let count = Some(number.value)
+        let count = Some(written.number.value)
+            .filter(|_| written.suffix.is_none())
             .filter(|count| count.fract() == 0.0 && (1.0..=f64::from(COUNT_MAX)).contains(count))
             .ok_or_else(|| {
                 Fault::new(
                     field.place,
                     shown(field.content),
                     expected,
-                    format!("`{}` is no number of readings", number.value),
+                    format!("{} is no number of readings", shown(field.content)),
                 )
                 .hint("correct where `count` is read")
             })? as u32;
@@ -179,19 +181,22 @@ impl<'r> Runs<'r> {
         let characteristic = characteristic?;
         let roles = self.roles;
         let value = fields[roles.value];
-        let number = measured(roles, value)?;
+        let written = measured(roles, value)?;
         let unit = match roles.unit {
             None => None,
             Some(source) => roles.sources[source]
                 .text(fields[source])?
                 .map(|text| fold_blanks(&text)),
         };
+        let scale = Scale::new(unit.as_deref(), &written)
+            .map_err(|not| not.fault(value, roles.marks.expected()))?;
+        let number = scaled(&scale, &written, value)?;
         let nominal = match roles.nominal {
             None => None,
-            Some(source) => bounding(roles, source, fields)?,
+            Some(source) => bounding(roles, source, &scale, fields)?,
         };
-        let lower = limit(roles, roles.lower, nominal.as_ref(), fields)?;
-        let upper = limit(roles, roles.upper, nominal.as_ref(), fields)?;
+        let lower = limit(roles, roles.lower, nominal.as_ref(), &scale, fields)?;
+        let upper = limit(roles, roles.upper, nominal.as_ref(), &scale, fields)?;
         if let (Some(lower), Some(upper), Some(at)) = (lower, upper, roles.lower)
             && lower > upper
         {
@@ -218,7 +223,7 @@ impl<'r> Runs<'r> {
             run: at,
             characteristic,
             value: number.value,
-            unit,
+            unit: scale.name().map(str::to_owned),
             nominal: nominal.map(|nominal| nominal.value),
             lower,
             upper,
@@ -378,10 +383,10 @@ fn set_aside(fault: Fault, run: Option<Run>, further: usize, readings: usize) ->
 }
 
 /// The value itself: a number that does not mean "no value".
-fn measured(roles: &Roles, field: Field<'_>) -> Result<Number, Fault> {
+fn measured(roles: &Roles, field: Field<'_>) -> Result<Quantity, Fault> {
     let source = &roles.sources[roles.value];
     if let Some(text) = source.text(field)?
-        && roles.no_value.means(&text, mark_of(roles, field))
+        && roles.no_value.means(&text, marks_of(roles, field))
     {
         return Err(Fault::new(
             field.place,
@@ -392,25 +397,48 @@ fn measured(roles: &Roles, field: Field<'_>) -> Result<Number, Fault> {
         .hint("measure this run again"));
     }
     source
-        .number(field, roles.decimal)?
-        .ok_or_else(|| source.blank(field.place))
+        .quantity(field, roles.marks)?
+        .ok_or_else(|| match roles.no_value.is_blank() {
+            true => Fault::new(field.place, "", "a measured value", "blank: no value")
+                .hint("measure this run again"),
+            false => source.blank(field.place),
+        })
+}
+
+/// The number in the reading's unit.
+fn scaled(scale: &Scale, written: &Quantity, field: Field<'_>) -> Result<Number, Fault> {
+    scale.number(written).map_err(|not| {
+        let expected = match scale.name() {
+            Some(unit) => format!("a number in {unit}"),
+            None => "a number without a unit, as the value".to_owned(),
+        };
+        not.fault(field, expected)
+    })
 }
 
 /// A nominal or a limit; `None` when nothing stands there.
-fn bounding(roles: &Roles, source: usize, fields: &[Field<'_>]) -> Result<Option<Number>, Fault> {
+fn bounding(
+    roles: &Roles,
+    source: usize,
+    scale: &Scale,
+    fields: &[Field<'_>],
+) -> Result<Option<Number>, Fault> {
     let field = fields[source];
     let source = &roles.sources[source];
     match source.text(field)? {
-        Some(text) if roles.no_value.means_no_limit(&text, mark_of(roles, field)) => Ok(None),
-        Some(_) => source.number(field, roles.decimal),
+        Some(text) if roles.no_value.means_no_limit(&text, marks_of(roles, field)) => Ok(None),
+        Some(_) => source
+            .quantity(field, roles.marks)?
+            .map(|written| scaled(scale, &written, field))
+            .transpose(),
         None => Ok(None),
     }
 }
 
-fn mark_of(roles: &Roles, field: Field<'_>) -> char {
+fn marks_of(roles: &Roles, field: Field<'_>) -> Marks {
     match field.content {
-        Content::Number(_) => '.',
-        _ => roles.decimal,
+        Content::Number(_) => Marks::PLAIN,
+        _ => roles.marks,
     }
 }
 
@@ -418,10 +446,11 @@ fn limit(
     roles: &Roles,
     at: Option<LimitAt>,
     nominal: Option<&Number>,
+    scale: &Scale,
     fields: &[Field<'_>],
 ) -> Result<Option<f64>, Fault> {
     let Some(at) = at else { return Ok(None) };
-    let Some(written) = bounding(roles, at.source, fields)? else {
+    let Some(written) = bounding(roles, at.source, scale, fields)? else {
         return Ok(None);
     };
     if !at.from_nominal {
@@ -440,8 +469,8 @@ fn limit(
         .hint("fill in the nominal, or leave `from` out if the limit is absolute"));
     };
     let deviation = match at.unsigned {
-        false => written,
-        true if written.value >= 0.0 => Number::of(-written.value),
+        false => Some(written),
+        true if written.value >= 0.0 => written.times(-1, 1),
         true => {
             return Err(fault(
                 "a deviation without its sign",
@@ -453,7 +482,7 @@ fn limit(
             .hint("correct `sign`, or have all of them written in one way"));
         }
     };
-    match nominal.plus(&deviation) {
+    match deviation.and_then(|deviation| nominal.plus(&deviation)) {
         Some(sum) => Ok(Some(sum)),
         None => Err(fault(
             "a finite limit",

@@ -9,7 +9,7 @@ use regex::Regex;
 use crate::fault::{Fault, shown};
 use crate::grid::{Content, Field, Place};
 use crate::names::{fold, fold_blanks, shorten};
-use crate::number::Number;
+use crate::number::{Marks, NotANumber, Number, Quantity};
 use crate::reader::RuleError;
 use crate::rule::{Across, Cell, Role};
 use crate::xml_path::XmlPath;
@@ -210,24 +210,26 @@ impl Source {
         }
     }
 
-    /// The number that stands there, and `None` when the field is blank.
-    pub(crate) fn number(&self, field: Field<'_>, mark: char) -> Result<Option<Number>, Fault> {
+    /// The number that stands there with the unit behind it, and `None` when the field is blank.
+    pub(crate) fn quantity(
+        &self,
+        field: Field<'_>,
+        marks: Marks,
+    ) -> Result<Option<Quantity>, Fault> {
         if let Content::Number(number) = field.content
             && self.is_plain()
         {
-            return Ok(Some(Number::of(*number)));
+            return Ok(Number::of(*number).map(Quantity::bare));
         }
-        let mark = if matches!(field.place, Place::Rule) {
-            '.'
-        } else {
-            mark
+        let marks = match (field.place, field.content) {
+            (Place::Rule, _) | (_, Content::Number(_)) => Marks::PLAIN,
+            _ => marks,
         };
-        let expected = format!("a number with the decimal mark `{mark}`");
         if let Content::Date(date) = field.content {
             return Err(Fault::new(
                 field.place,
                 date.to_string(),
-                expected,
+                marks.expected(),
                 format!(
                     "holds the date {date}, where the {} should stand",
                     self.role
@@ -238,19 +240,9 @@ impl Source {
         let Some(text) = self.text(field)? else {
             return Ok(None);
         };
-        let mark = if matches!(field.content, Content::Number(_)) {
-            '.'
-        } else {
-            mark
-        };
-        match Number::read(&text, mark) {
-            Ok(number) => Ok(Some(number)),
-            Err(not) => {
-                let mut fault = Fault::new(field.place, shown(field.content), expected, not.wrong);
-                fault.hint = not.hint;
-                Err(fault)
-            }
-        }
+        Quantity::read(&text, marks)
+            .map(Some)
+            .map_err(|not| not.fault(field, marks.expected()))
     }
 
     /// True when the whole text is taken as it stands.
@@ -279,6 +271,15 @@ impl Source {
             Where::Xml(_) => "have the instrument write it, or correct `xml`",
             Where::Constant(_) => "correct `constant`",
         })
+    }
+}
+
+impl NotANumber {
+    /// What is wrong with the field that it was read from.
+    pub(crate) fn fault(self, field: Field<'_>, expected: String) -> Fault {
+        let mut fault = Fault::new(field.place, shown(field.content), expected, self.wrong);
+        fault.hint = self.hint;
+        fault
     }
 }
 

@@ -253,7 +253,7 @@ fn no_number_for_a_heading(
         return Ok(());
     };
     match headings.of(column) {
-        Some(heading) if Number::read(&heading.shown, roles.decimal).is_ok() => {
+        Some(heading) if Number::read(&heading.shown, roles.marks).is_ok() => {
             Err(Refused::new(format!(
                 "{} holds the number `{}` where the heading of the value should stand",
                 headings.place(grid),

@@ -27,6 +27,9 @@ const RESERVED: [&str; 6] = [
     "characteristic",
 ];
 
+/// Marks between groups of three digits; blanks and apostrophes are one mark each.
+const THOUSANDS: [char; 7] = ['.', ',', ' ', '\u{a0}', '\u{202f}', '\'', '\u{2019}'];
+
 pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
     let shape = shape(table);
     let decimal = table.or("decimal", '.', |node| node.word(&[(".", '.'), (",", ',')]));
@@ -57,9 +60,18 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
     });
     let end = table.optional("end", find);
     let count = table.optional("count", |node| count(node, shape));
+    let thousands = table.optional("thousands", |node| thousands(node, decimal));
     let no_value = table.or("no_value", Vec::new(), |node| texts(node));
+    let line_breaks = table.or("line_breaks", false, |node| node.flag());
     let encoding = table.optional("encoding", encoding);
-    table.later(&["thousands", "zone", "units", "dates", "line_breaks"]);
+    table.never(
+        &["format", "zone", "dates"],
+        "it belongs to the time, as in taken = { cell = \"B4\", zone = \"Europe/Oslo\" }",
+    );
+    table.never(
+        &["unit", "units"],
+        "units behind numbers are read; what numbers without one are in belongs to the value, as in value = { column = \"Actual\", unit = \"mm\" }",
+    );
     table.finish();
 
     if matches!(trial, Some(Some(Trial::Counted(Count::Taken)))) && table.get("taken").is_none() {
@@ -120,7 +132,9 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
             ..layout?
         },
         decimal: decimal?,
+        thousands: thousands?,
         no_value: no_value?,
+        line_breaks: line_breaks?,
         encoding: encoding?,
         bounds: bounds?,
     };
@@ -203,6 +217,7 @@ fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<(Form,
         ("sheet", of_tables),
         ("header", of_tables),
         ("delimiter", of_tables),
+        ("line_breaks", of_tables),
         ("each", of_xml),
     ] {
         let fits = match shape {
@@ -299,6 +314,24 @@ fn delimiter(node: &Node<'_>, decimal: Option<char>) -> Option<char> {
         return None;
     }
     sound
+}
+
+/// The mark between groups of three digits.
+fn thousands(node: &Node<'_>, decimal: Option<char>) -> Option<char> {
+    let mut characters = node.text()?.chars();
+    let one = characters.next().filter(|_| characters.next().is_none());
+    let Some(mark) = one.filter(|mark| THOUSANDS.contains(mark)) else {
+        node.fault_hint(
+            r#"one of ".", ",", " " and "'""#,
+            "a blank stands for any blank, no-break and narrow ones too",
+        );
+        return None;
+    };
+    if Some(mark) == decimal {
+        node.fault("another mark than the decimal mark");
+        return None;
+    }
+    Some(mark)
 }
 
 fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
@@ -463,8 +496,17 @@ fn named_roles(
 }
 
 fn texts(node: &Node<'_>) -> Option<Vec<String>> {
-    let names = node.names("texts that mean \"no value\", such as [\"---\", \"9999\"]")?;
-    Some(names.into_iter().map(|(text, _)| text.to_owned()).collect())
+    let expected = "texts that mean \"no value\", such as [\"---\", \"9999\"]; \"\" is a blank";
+    let mut texts: Vec<String> = Vec::new();
+    for node in node.list(expected)? {
+        let text = node.text()?;
+        if texts.iter().any(|other| fold(other) == fold(text)) {
+            node.fault("each entry once");
+        } else {
+            texts.push(text.to_owned());
+        }
+    }
+    Some(texts)
 }
 
 fn encoding(node: &Node<'_>) -> Option<String> {

@@ -2,24 +2,37 @@
 
 use jiff::fmt::strtime;
 use jiff::tz::TimeZone;
-use restudy_parsers::Taken;
+use restudy_parsers::{Epoch, Taken};
 
 use crate::checked::Site;
 use crate::tables::role::{Shape, role_in, table as role_table};
 use crate::tables::site::zone;
 use crate::walk::Node;
 
-/// The role with its format and the zone that the instrument writes in; times are shown in the site's.
+/// The role with its format, or the year its numbers count from, and the zone that the instrument writes in; times are shown in the site's.
 pub(crate) fn taken(node: &Node<'_>, shape: Shape, site: Option<&Site>) -> Option<Taken> {
     let table = role_table(node)?;
     let role = role_in(&table, shape);
     let format = table.optional("format", time_format);
+    let dates = table.optional("dates", |node| {
+        node.word(&[("1900", Epoch::Of1900), ("1904", Epoch::Of1904)])
+    });
     let written_in = table.optional("zone", zone);
     table.finish();
+    if let Some(dates) = table.get("dates")
+        && table.get("format").is_some()
+    {
+        dates.place.fault(
+            "`dates` beside `format`",
+            "one of the two: numbers of days, or texts",
+        );
+        return None;
+    }
     let name = |zone: &TimeZone| zone.iana_name().map(str::to_owned);
     Some(Taken {
         role: role?,
         format: format?,
+        dates: dates?,
         written_in: written_in?.as_ref().and_then(name),
         shown_in: name(&site?.zone),
     })

@@ -33,6 +33,7 @@ pub(crate) fn bridge_1() -> Rule {
         taken: Some(Taken {
             role: crate::shared::at(2, 1),
             format: Some("%d.%m.%Y %H:%M".to_owned()),
+            dates: None,
             written_in: None,
             shown_in: None,
         }),
@@ -100,7 +101,7 @@ fn several_runs_in_windows_1252_with_decimal_commas() {
     set aside (2): line 6, column `Istwert`: `---` stands for no value
       hint: measure this run again
     set aside (2): line 7, column `Istwert`: `12.004` is not a number; this instrument's decimal mark is `,`
-      hint: set `decimal = "."` if this instrument writes `.`
+      hint: is `.` the decimal mark (`decimal = "."`), or does it stand between thousands (`thousands = "."`)?
     set aside (1): line 9, column `Stück`: blank, where the part should stand
       hint: have every row filled in: nothing is taken over from the row above
     "#);
@@ -119,6 +120,7 @@ fn utf_16_with_tabs_and_trials_told_apart_by_time() {
         taken: Some(Taken {
             role: column("taken"),
             format: None,
+            dates: None,
             written_in: None,
             shown_in: None,
         }),
@@ -154,6 +156,7 @@ pub(crate) fn bridge_2() -> Rule {
         taken: Some(Taken {
             role: xml("/export/run/@start"),
             format: None,
+            dates: None,
             written_in: None,
             shown_in: Some("Europe/Oslo".to_owned()),
         }),
@@ -249,6 +252,7 @@ fn stamps_of_an_instrument_that_runs_on_utc_are_shown_in_the_sites_zone() {
         taken: Some(Taken {
             role: column("taken"),
             format: None,
+            dates: None,
             written_in: Some("UTC".to_owned()),
             shown_in: Some("Europe/Oslo".to_owned()),
         }),

@@ -25,7 +25,7 @@ fn bytes_that_are_neither_text_nor_a_workbook_whatever_the_file_is_called() {
       hint: export it again; if the instrument writes such files beside its exports, leave them out of `files`
     ");
     assert_snapshot!(read(b"part,value\nSt\xfcck,1\n", &table()), @r#"
-    refused: byte 14 (0xFC) is not UTF-8 text, and nothing names another encoding
+    refused: line 2: the byte 0xFC is not UTF-8 text, and nothing names another encoding
       hint: if this is text, name its encoding, as in `encoding = "windows-1252"`
     "#);
 }

@@ -98,6 +98,7 @@ fn equal_time_stamps_are_a_tie() {
         taken: Some(Taken {
             role: column("taken"),
             format: None,
+            dates: None,
             written_in: None,
             shown_in: None,
         }),

@@ -74,7 +74,9 @@ pub(crate) fn table() -> Rule {
         count: None,
         layout: Layout::default(),
         decimal: '.',
+        thousands: None,
         no_value: Vec::new(),
+        line_breaks: false,
         encoding: None,
         bounds: Bounds::default(),
     }

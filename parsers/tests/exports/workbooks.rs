@@ -76,6 +76,7 @@ pub(crate) fn hub_rule() -> Rule {
         taken: Some(Taken {
             role: at(2, 1),
             format: Some("%d.%m.%Y %H:%M".to_owned()),
+            dates: None,
             written_in: None,
             shown_in: None,
         }),
