@@ -31,6 +31,7 @@ mod number;
 mod one_field;
 mod parsed;
 mod plain;
+mod qif;
 mod reader;
 mod rule;
 mod runs;
@@ -43,6 +44,7 @@ mod xml_path;
 pub use names::{fold, nearest};
 pub use parsed::{Parsed, Reading, Refused, Run, SetAside};
 pub use plain::{Plain, read_plain};
+pub use qif::Qif;
 pub use reader::{Reader, RuleError};
 pub use rule::{
     Bounds, Cell, Count, Find, Form, Header, Limit, Role, Rule, Sheet, Taken, Trial, Value,

@@ -11,6 +11,7 @@ use crate::moment::Clock;
 use crate::names::{fold, shorten, shorten_to};
 use crate::no_value::NoValue;
 use crate::parsed::{Parsed, Refused};
+use crate::qif;
 use crate::rule::{Bounds, Count, Form, Header, Limit, Role, Rule, Sheet, Trial};
 use crate::source::{Source, Where, first_group};
 use crate::table;
@@ -111,6 +112,7 @@ enum Shape {
     Xml {
         each: XmlPath,
     },
+    Qif,
 }
 
 impl Reader {
@@ -137,6 +139,7 @@ impl Reader {
                 })?,
             ),
         };
+        qif::fits(rule)?;
         let shape = Shape::new(&rule.form, rule.decimal)?;
         Ok(Self {
             roles: Roles::new(rule, shape.each())?,
@@ -172,12 +175,15 @@ impl Reader {
                 };
                 self.read_grid(&grid, header, once)
             }
-            Shape::Xml { each } => match kind {
+            Shape::Xml { .. } | Shape::Qif => match kind {
                 Kind::Text => {
                     let declared = decode::declared(export.bytes);
                     let text = decode::decode(export.bytes, declared, self.encoding)?;
-                    xml::read(&text, self, each, once)
-                        .map_err(|refused| misnamed(export.path, &text, refused))
+                    match self.shape.each() {
+                        Some(each) => xml::read(&text, self, each, once),
+                        None => qif::read(&text, self, &once),
+                    }
+                    .map_err(|refused| misnamed(export.path, &text, refused))
                 }
                 _ => Err(
                     Refused::new("this is a workbook; this instrument's exports are XML")
@@ -230,7 +236,7 @@ impl Reader {
                     ))
                     .hint("name folder or file as the others, or correct `path`; it is searched in the path below the watched folder")),
                 },
-                Where::Column(_) | Where::At { .. } | Where::Label(_) | Where::Xml(_) => Ok(None),
+                Where::Column(_) | Where::At { .. } | Where::Label(_) | Where::Xml(_) | Where::Qif(_) => Ok(None),
             })
             .collect()
     }
@@ -280,12 +286,13 @@ impl Shape {
             Form::Xml { each } => Ok(Self::Xml {
                 each: XmlPath::element(each).map_err(|what| RuleError::new("each", what))?,
             }),
+            Form::Qif => Ok(Self::Qif),
         }
     }
 
     fn each(&self) -> Option<&XmlPath> {
         match self {
-            Self::Table { .. } => None,
+            Self::Table { .. } | Self::Qif => None,
             Self::Xml { each } => Some(each),
         }
     }

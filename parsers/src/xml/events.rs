@@ -61,11 +61,7 @@ struct Pass<'a, V> {
 }
 
 /// Tells `visitor` what stands in decoded text.
-pub(crate) fn visit(
-    text: &str,
-    bounds: &Bounds,
-    visitor: &mut impl Visit,
-) -> Result<(), Refused> {
+pub(crate) fn visit(text: &str, bounds: &Bounds, visitor: &mut impl Visit) -> Result<(), Refused> {
     Pass {
         text,
         bounds,
