@@ -132,6 +132,7 @@ expectations! {
     two_instruments
     roles
     reading_exports
+    qif
     design
     plan_and_instrument
     judging

@@ -9,6 +9,7 @@ use restudy_parsers::{
 use crate::checked::Site;
 use crate::place::is_each;
 use crate::source::shortened;
+use crate::tables::qif;
 use crate::tables::role::{PLACES, Shape, role, role_in, table as role_table};
 use crate::tables::taken::taken;
 use crate::walk::{Node, Table};
@@ -26,6 +27,9 @@ const RESERVED: [&str; 6] = [
 
 pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
     let shape = shape(table);
+    if let Shape::Qif(_) = shape {
+        return qif::rule(table, site);
+    }
     let decimal = table.or("decimal", '.', |node| node.word(&[(".", '.'), (",", ',')]));
     let form = form(table, shape, decimal);
     let part = table
@@ -113,20 +117,20 @@ pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
 }
 
 fn shape(table: &Table<'_>) -> Shape {
-    let Some(node) = table.need("form", "\"table\" or \"xml\"") else {
+    let Some(node) = table.need("form", "\"table\", \"xml\" or \"qif\"") else {
         return Shape::Unknown;
     };
-    if let Some(later @ ("crosstab" | "qif")) = node.as_text() {
+    if let Some(later @ "crosstab") = node.as_text() {
         node.place.fault(
             format!("`{later}`: not yet"),
-            "a form of this version: \"table\" or \"xml\"",
+            "a form of this version: \"table\", \"xml\" or \"qif\"",
         );
         return Shape::Unknown;
     }
     let depth = |each: &str| each.split('/').filter(|name| !name.is_empty()).count();
     let each = table.get("each").and_then(|node| node.as_text());
     let xml = Shape::Xml(each.filter(|each| is_each(each)).map_or(usize::MAX, depth));
-    node.word(&[("table", Shape::Table), ("xml", xml)])
+    node.word(&[("table", Shape::Table), ("xml", xml), ("qif", Shape::Qif(None))])
         .unwrap_or(Shape::Unknown)
 }
 
@@ -142,7 +146,7 @@ fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<Form> 
         let fits = match shape {
             Shape::Table => form == "table",
             Shape::Xml(_) => form == "xml",
-            Shape::Unknown => true,
+            Shape::Qif(_) | Shape::Unknown => true,
         };
         if let Some(node) = table.get(key)
             && !fits
@@ -182,7 +186,7 @@ fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<Form> 
                 each: each.to_owned(),
             })
         }
-        Shape::Unknown => None,
+        Shape::Qif(_) | Shape::Unknown => None,
     }
 }
 
@@ -236,7 +240,7 @@ fn delimiter(node: &Node<'_>, decimal: Option<char>) -> Option<char> {
     sound
 }
 
-fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
+pub(crate) fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
     let table = role_table(node)?;
     let Some(count) = table.get("count") else {
         let role = role_in(&table, shape);
@@ -255,7 +259,7 @@ fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
         .map(Trial::Counted)
 }
 
-fn value(node: &Node<'_>, shape: Shape) -> Option<Value> {
+pub(crate) fn value(node: &Node<'_>, shape: Shape) -> Option<Value> {
     let table = role_table(node)?;
     let role = role_in(&table, shape);
     let unit = table.optional("unit", |node| unit(node, shape));
@@ -281,7 +285,7 @@ fn unit(node: &Node<'_>, shape: Shape) -> Option<Role> {
     Some(Role::plain(Cell::Constant(node.name()?.to_owned())))
 }
 
-fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool) -> Option<Limit> {
+pub(crate) fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool) -> Option<Limit> {
     let table = role_table(node)?;
     let role = role_in(&table, shape);
     let from = table.optional("from", |node| node.word(&[("nominal", ())]));
@@ -303,7 +307,7 @@ fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool) -> Option<Limit> {
 }
 
 /// Roles whose names the user chooses; none is reserved or one of `others`.
-fn named_roles(
+pub(crate) fn named_roles(
     node: &Node<'_>,
     shape: Shape,
     others: &BTreeMap<String, Role>,
@@ -346,12 +350,12 @@ fn named_roles(
     sound.then_some(roles)
 }
 
-fn texts(node: &Node<'_>) -> Option<Vec<String>> {
+pub(crate) fn texts(node: &Node<'_>) -> Option<Vec<String>> {
     let names = node.names("texts that mean \"no value\", such as [\"---\", \"9999\"]")?;
     Some(names.into_iter().map(|(text, _)| text.to_owned()).collect())
 }
 
-fn encoding(node: &Node<'_>) -> Option<String> {
+pub(crate) fn encoding(node: &Node<'_>) -> Option<String> {
     let label = node.text()?;
     if encoding_rs::Encoding::for_label_no_replacement(label.as_bytes()).is_none() {
         node.fault("the name of an encoding, such as \"windows-1252\"");
