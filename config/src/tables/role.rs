@@ -52,6 +52,7 @@ pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
     if let Shape::Qif(usual) = shape {
         return qif::role_in(table, usual);
     }
+    table.never(&["qif", "attribute"], "it needs form = \"qif\"");
     table.later(&["columns", "letter", "sheet", "right_of", "below"]);
     let places: Vec<(&str, Node<'_>)> = PLACES
         .into_iter()

@@ -130,8 +130,12 @@ fn shape(table: &Table<'_>) -> Shape {
     let depth = |each: &str| each.split('/').filter(|name| !name.is_empty()).count();
     let each = table.get("each").and_then(|node| node.as_text());
     let xml = Shape::Xml(each.filter(|each| is_each(each)).map_or(usize::MAX, depth));
-    node.word(&[("table", Shape::Table), ("xml", xml), ("qif", Shape::Qif(None))])
-        .unwrap_or(Shape::Unknown)
+    node.word(&[
+        ("table", Shape::Table),
+        ("xml", xml),
+        ("qif", Shape::Qif(None)),
+    ])
+    .unwrap_or(Shape::Unknown)
 }
 
 fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<Form> {

@@ -3,7 +3,7 @@
 use std::collections::HashMap;
 
 use super::links::{Broken, Links};
-use super::tree::{Node, Tree};
+use super::tree::{Node, Tree, is_measurement};
 use crate::grid::Content;
 use crate::names::{fold, shorten};
 
@@ -177,16 +177,31 @@ pub(super) fn designator(tree: &Tree, item: Node) -> Option<Node> {
         .find_map(|holder| tree.at(item, &[holder, "Designator"]))
 }
 
-/// True when two runs say the same, whatever ids their own elements have.
+/// True when two runs say the same, whatever ids they and their elements have.
 pub(super) fn same_run(tree: &Tree, a: Node, b: Node) -> bool {
-    let say = |run: Node| {
-        tree.inside(run)
-            .filter(|node| !tree.name(*node).starts_with("Feature"))
-            .map(|node| {
-                let attributes = tree.attributes(node).filter(|(name, _)| *name != "id");
-                let attributes: Vec<_> = attributes.collect();
-                (tree.name(node), tree.text(node), attributes)
-            })
+    let is_own = |node: &Node| {
+        let name = tree.name(*node);
+        name != "ThisResultsInstanceQPId" && !name.starts_with("Feature")
     };
-    say(a).eq(say(b))
+    let measured = |run: Node| {
+        tree.inside(run)
+            .filter(|node| is_measurement(tree.name(*node)))
+            .flat_map(|node| tree.children(node))
+            .filter(is_own)
+    };
+    let about = |run: Node| {
+        let blocks = tree
+            .children(run)
+            .filter(|block| is_own(block) && tree.name(*block) != "MeasuredCharacteristics");
+        blocks.flat_map(|block| std::iter::once(block).chain(tree.inside(block)))
+    };
+    let says = |node: Node| {
+        let attributes = tree.attributes(node).filter(|(name, _)| *name != "id");
+        (
+            tree.name(node),
+            tree.text(node),
+            attributes.collect::<Vec<_>>(),
+        )
+    };
+    about(a).map(says).eq(about(b).map(says)) && measured(a).map(says).eq(measured(b).map(says))
 }

@@ -7,6 +7,8 @@ use serde::{Deserialize, Serialize};
 pub enum Qif {
     /// Serial number of the part that was measured.
     Serial,
+    /// Id of the part in this document, where it has no serial number; other documents may give it another.
+    Component,
     /// Name of the inspection's operator.
     Operator,
     /// The first time stamp of the run's values; else when the inspection began, else ended.
@@ -45,8 +47,9 @@ pub enum Qif {
 
 impl Qif {
     /// Places that a configuration can name, by their words.
-    pub const WORDS: [(&'static str, Self); 16] = [
+    pub const WORDS: [(&'static str, Self); 17] = [
         ("serial", Self::Serial),
+        ("component", Self::Component),
         ("operator", Self::Operator),
         ("time", Self::Time),
         ("name", Self::Name),
@@ -68,6 +71,7 @@ impl Qif {
     pub(crate) fn shown(&self) -> &str {
         match self {
             Self::Serial => "ActualComponent/SerialNumber",
+            Self::Component => "ActualComponent/@id",
             Self::Operator => "InspectionOperator/Name",
             Self::Time => "InspectionTraceability/InspectionStart",
             Self::Trial => "Attributes/Trial",

@@ -1,6 +1,6 @@
 //! The measured characteristics of a document, run by run, and what is said of each.
 
-use std::collections::{BTreeMap, HashMap, HashSet};
+use std::collections::{BTreeSet, HashMap, HashSet};
 
 use super::facts::{self, Labels, Said};
 use super::limits::{Bounding, Bounds, decimal};
@@ -39,6 +39,14 @@ pub(super) enum Cost {
     Run(Fault),
 }
 
+/// What is the same for a part, whoever measures it.
+#[derive(Clone)]
+struct Part {
+    serial: Said,
+    operator: Option<Said>,
+    inspected: Option<Said>,
+}
+
 /// What is the same for a whole run.
 struct Run {
     node: Node,
@@ -63,14 +71,15 @@ pub(super) struct Results<'t> {
     measurements: Vec<(usize, Node)>,
     /// Items, by the text that refers to them, that have a number somewhere in the document.
     measured_items: HashSet<&'t str>,
-    /// The part of each role that is looked up here.
+    /// Where the rule takes the value from, when that is here.
     value: Option<Qif>,
     asks_for_limits: bool,
     asks_for_unit: bool,
     names: HashMap<Node, Option<String>>,
+    parts: HashMap<Node, Part>,
     bounds: HashMap<(Node, Option<String>), Result<Bounding, Broken>>,
     attributes: HashMap<(Node, String), Option<Said>>,
-    notes: BTreeMap<(String, String), ()>,
+    notes: BTreeSet<(String, &'static str)>,
 }
 
 impl<'t> Results<'t> {
@@ -104,9 +113,10 @@ impl<'t> Results<'t> {
             asks_for_limits: bounding.into_iter().any(|source| at(source).is_some()),
             asks_for_unit: at(roles.unit).is_some(),
             names: HashMap::new(),
+            parts: HashMap::new(),
             bounds: HashMap::new(),
             attributes: HashMap::new(),
-            notes: BTreeMap::new(),
+            notes: BTreeSet::new(),
         };
         let mut by_id: HashMap<String, (Node, u32)> = HashMap::new();
         for run in runs_in(tree, node) {
@@ -192,7 +202,10 @@ impl<'t> Results<'t> {
     fn components(&self, run: Node) -> Result<Option<Node>, Broken> {
         let tree = self.tree;
         let Some(list) = tree.child(run, "ActualComponentIds") else {
-            return Ok(None);
+            return match tree.child(run, "ActualComponentId") {
+                Some(reference) => self.links.follow(reference, "the part").map(Some),
+                None => Ok(None),
+            };
         };
         let ids: Vec<Node> = tree
             .children(list)
@@ -244,12 +257,7 @@ impl<'t> Results<'t> {
                 hint: "the document is not whole: export it again",
             }),
         };
-        let name = match &self.value {
-            Some(Qif::Greatest) => "MaxValue",
-            Some(Qif::Least) => "MinValue",
-            _ => "Value",
-        };
-        let value = tree.child(node, name);
+        let value = tree.child(node, self.value_name());
         let quantity = value
             .and_then(|value| stated_quantity(tree, value))
             .or_else(|| quantity(kind(tree, node)).map(str::to_owned));
@@ -303,10 +311,19 @@ impl<'t> Results<'t> {
         }) = &bounding
         {
             let name = self.name(item).unwrap_or_default();
-            self.notes.insert((name, (*note).to_owned()), ());
+            self.notes.insert((name, note));
         }
         self.bounds.insert(key, bounding.clone());
         bounding
+    }
+
+    /// The element that a rule takes the value from.
+    fn value_name(&self) -> &'static str {
+        match &self.value {
+            Some(Qif::Greatest) => "MaxValue",
+            Some(Qif::Least) => "MinValue",
+            _ => "Value",
+        }
     }
 
     fn name(&mut self, item: Node) -> Option<String> {
@@ -320,7 +337,7 @@ impl<'t> Results<'t> {
     /// Sentences about limits that are not all they could be.
     pub(super) fn notes(&self) -> Vec<String> {
         self.notes
-            .keys()
+            .iter()
             .map(|(name, note)| format!("`{}`: {note}", shorten(name)))
             .collect()
     }
@@ -333,6 +350,10 @@ impl<'t> Results<'t> {
     /// What the document says at a place, as seen from one value.
     pub(super) fn say(&mut self, measured: &Measured, place: &Qif) -> Said {
         let tree = self.tree;
+        let part = match place {
+            Qif::Serial | Qif::Operator | Qif::Time => self.part(measured),
+            _ => None,
+        };
         let run = &self.runs[measured.run];
         let said = |node: Option<Node>| {
             let node = node?;
@@ -349,22 +370,24 @@ impl<'t> Results<'t> {
             })
         };
         let found = match place {
-            Qif::Serial => match &measured.component {
-                Err(broken) => Some(Said::broken(broken)),
-                Ok(None) => None,
-                Ok(Some(part)) => said(tree.child(*part, "SerialNumber"))
-                    .or_else(|| Some(Said::nothing(tree.line(*part)))),
+            Qif::Serial => match (&measured.component, part) {
+                (Err(broken), _) => Some(Said::broken(broken)),
+                (Ok(_), part) => part.map(|part| part.serial),
             },
-            Qif::Operator => run.operator.clone().or_else(|| {
-                let part = (*measured.component.as_ref().ok()?)?;
-                facts::operator(tree, tree.child(part, "Traceability")?)
-            }),
-            Qif::Time => {
+            Qif::Component => {
                 let part = measured.component.as_ref().ok().copied().flatten();
-                let stamp = run.stamps.get(&part).cloned();
+                part.and_then(|part| Some(Said::text(tree.line(part), tree.attribute(part, "id")?)))
+            }
+            Qif::Operator => run
+                .operator
+                .clone()
+                .or_else(|| part.and_then(|part| part.operator)),
+            Qif::Time => {
+                let component = measured.component.as_ref().ok().copied().flatten();
+                let stamp = run.stamps.get(&component).cloned();
                 stamp
                     .or_else(|| run.inspected.clone())
-                    .or_else(|| facts::inspected(tree, tree.child(part?, "Traceability")?))
+                    .or_else(|| part.and_then(|part| part.inspected))
             }
             Qif::Trial => self.user_attribute(measured, "Trial"),
             Qif::Attribute(name) => self.user_attribute(measured, name),
@@ -407,6 +430,25 @@ impl<'t> Results<'t> {
                 .map(|status| Said::text(tree.line(measured.node), status)),
         };
         found.unwrap_or(Said::nothing(measured.line))
+    }
+
+    fn part(&mut self, measured: &Measured) -> Option<Part> {
+        let node = (*measured.component.as_ref().ok()?)?;
+        let tree = self.tree;
+        let part = self.parts.entry(node).or_insert_with(|| {
+            let serial = tree.child(node, "SerialNumber");
+            let text = serial.and_then(|serial| tree.text(serial));
+            let traced = tree.child(node, "Traceability");
+            Part {
+                serial: match (serial, text) {
+                    (Some(serial), Some(text)) => Said::text(tree.line(serial), text),
+                    _ => Said::nothing(tree.line(node)),
+                },
+                operator: traced.and_then(|traced| facts::operator(tree, traced)),
+                inspected: traced.and_then(|traced| facts::inspected(tree, traced)),
+            }
+        });
+        Some(part.clone())
     }
 
     fn user_attribute(&mut self, measured: &Measured, name: &str) -> Option<Said> {
@@ -488,7 +530,7 @@ impl<'t> Results<'t> {
             && let Some(wrong) = &measured.unusable_unit
         {
             let fault = Fault::new(
-                at(measured.line, "FileUnits"),
+                at(measured.line, "CharacteristicMeasurement/Value"),
                 "",
                 "a unit of this document",
                 wrong.clone(),
@@ -524,10 +566,11 @@ impl<'t> Results<'t> {
             .collect();
         if !others.is_empty() {
             let wrong = format!(
-                "only {} stand there, where the value should",
+                "there is no {}, only {}",
+                self.value_name(),
                 others.join(" and ")
             );
-            let fault = here("`Value`", wrong).hint(
+            let fault = here("a measured value", wrong).hint(
                 "if one of them is what is studied, say so, as in `value = { qif = \"max\" }`",
             );
             return Some(Cost::Run(fault));

@@ -80,6 +80,9 @@ struct Growing<'b> {
 
 impl Tree {
     pub(super) fn read(text: &str, bounds: &Bounds) -> Result<Self, Refused> {
+        if u32::try_from(text.len()).is_err() {
+            return Err(Refused::new("the document is larger than 4 GB"));
+        }
         let mut growing = Growing {
             tree: Self::default(),
             bounds,
@@ -164,7 +167,6 @@ impl Tree {
         fresh
     }
 
-    /// Texts are cut out of a file of at most 4 GB: the limit on files is far below.
     fn keep(&mut self, text: &str) -> (u32, u32) {
         let text = text.trim();
         let first = self.texts.len() as u32;

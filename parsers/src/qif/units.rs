@@ -2,6 +2,8 @@
 //!
 //! Not here: assuming one. A value whose unit is stated nowhere has none.
 
+use std::collections::HashMap;
+
 use super::tree::{Node, Tree};
 use crate::names::{fold, listed, shorten};
 use crate::number::Number;
@@ -113,17 +115,31 @@ const KNOWN: [Known; 7] = [
 /// The units that a document states.
 pub(super) struct Units<'t> {
     tree: &'t Tree,
-    file_units: Option<Node>,
     primary: Option<Node>,
+    by_name: HashMap<&'t str, Vec<Node>>,
+    /// Names of all units, as sentences list them.
+    listed: String,
 }
 
 impl<'t> Units<'t> {
     pub(super) fn new(tree: &'t Tree) -> Self {
         let file_units = tree.child(Node::ROOT, "FileUnits");
+        let mut by_name: HashMap<&str, Vec<Node>> = HashMap::new();
+        let mut names = Vec::new();
+        for unit in file_units.into_iter().flat_map(|units| tree.inside(units)) {
+            if let Some(name) = tree
+                .child(unit, "UnitName")
+                .and_then(|name| tree.text(name))
+            {
+                names.push(name);
+                by_name.entry(name).or_default().push(unit);
+            }
+        }
         Self {
             tree,
-            file_units,
             primary: file_units.and_then(|units| tree.child(units, "PrimaryUnits")),
+            by_name,
+            listed: listed(names),
         }
     }
 
@@ -151,34 +167,24 @@ impl<'t> Units<'t> {
     }
 
     fn named(&self, name: &str, kind: Option<&str>) -> Result<Unit, String> {
-        let is_so = |unit: &Node| {
-            let is_named = self.written(*unit).is_some_and(|written| written == name);
-            is_named && kind.is_none_or(|kind| self.tree.name(*unit) == kind)
-        };
+        let is_so = |unit: &&Node| kind.is_none_or(|kind| self.tree.name(**unit) == kind);
         let stated = self
-            .file_units
-            .and_then(|units| self.tree.inside(units).find(is_so));
+            .by_name
+            .get(name)
+            .and_then(|units| units.iter().find(is_so));
         if let Some(unit) = stated
-            && let Some(unit) = self.read(unit)?
+            && let Some(unit) = self.read(*unit)?
         {
             return Ok(unit);
         }
         if let Some(known) = spelled(name, kind.unwrap_or("LinearUnit")) {
             return Ok(known.unit());
         }
-        let names = self.file_units.into_iter().flat_map(|units| {
-            let inside = self.tree.inside(units);
-            inside.filter_map(|unit| self.written(unit))
-        });
         Err(format!(
             "the unit `{}` is not among the units of this document: {}",
             shorten(name),
-            listed(names)
+            self.listed
         ))
-    }
-
-    fn written(&self, unit: Node) -> Option<&str> {
-        self.tree.text(self.tree.child(unit, "UnitName")?)
     }
 
     fn read(&self, unit: Node) -> Result<Option<Unit>, String> {
@@ -199,7 +205,10 @@ impl<'t> Units<'t> {
                 )?),
             };
         let si = self.tree.child(unit, "SIUnitName");
-        let written = self.written(unit);
+        let written = self
+            .tree
+            .child(unit, "UnitName")
+            .and_then(|name| self.tree.text(name));
         let name = match (written, factor) {
             (None, None) => si.and_then(|si| self.tree.text(si)),
             (written, _) => written,
