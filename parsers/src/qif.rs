@@ -10,6 +10,7 @@
 //!
 //! Source: ISO 23952:2020.
 
+mod decimal;
 mod facts;
 mod limits;
 mod links;
@@ -184,16 +185,6 @@ fn as_far_as_stated(tree: &Tree, roles: &Roles, notes: &mut Vec<String>) -> Role
         stated.appraiser = None;
         notes.push("the document names no operator; say where the appraiser stands, as in `appraiser = { path = '^([^/]+)/' }`".to_owned());
     }
-    let times = ["TimeStamp", "InspectionStart", "InspectionEnd"];
-    if roles
-        .taken
-        .as_ref()
-        .is_some_and(|(at, _)| is_at(*at, &Qif::Time))
-        && !any(&times)
-    {
-        stated.taken = None;
-        notes.push("the document states no time of inspection; say where `taken` stands, or how trials are told apart, as in `trial = { path = '-(\\d+)[.]qif$' }`".to_owned());
-    }
     if let TrialBy::Label(at) = roles.trial
         && is_at(at, &Qif::Trial)
     {
@@ -207,6 +198,19 @@ fn as_far_as_stated(tree: &Tree, roles: &Roles, notes: &mut Vec<String>) -> Role
         if !has_trial {
             stated.trial = TrialBy::Nothing;
         }
+    }
+    // Runs that neither a trial nor a time tells apart would be taken for one another.
+    let told_apart = stated.trial != TrialBy::Nothing;
+    let times = ["TimeStamp", "InspectionStart", "InspectionEnd"];
+    if told_apart
+        && roles
+            .taken
+            .as_ref()
+            .is_some_and(|(at, _)| is_at(*at, &Qif::Time))
+        && !any(&times)
+    {
+        stated.taken = None;
+        notes.push("the document states no time of inspection; if it matters when a part was measured, say where `taken` stands".to_owned());
     }
     stated
 }

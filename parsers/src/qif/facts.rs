@@ -30,9 +30,14 @@ impl Said {
     }
 
     pub(super) fn broken(broken: &Broken) -> Self {
+        Self::unusable(broken.line, &broken.wrong)
+    }
+
+    /// What is wrong, as a clause of its own.
+    pub(super) fn unusable(line: u32, what: &str) -> Self {
         Self {
-            line: broken.line,
-            content: Content::Unusable(broken.wrong.as_str().into()),
+            line,
+            content: Content::Unusable(what.into()),
         }
     }
 

@@ -4,11 +4,11 @@
 //!
 //! A limit that is not there is absent, never 0.
 
+use super::decimal::Decimal;
 use super::links::{Broken, Links};
 use super::tree::{Node, Tree};
 use super::units::{Unit, Units};
 use crate::names::shorten;
-use crate::number::Number;
 
 /// What bounds a value.
 #[derive(Debug, Clone, Default)]
@@ -42,7 +42,7 @@ impl Bounds<'_, '_> {
             .follow(reference, "the characteristic's nominal")?;
         let target = self.number(tree.child(nominal, "TargetValue"))?;
         let bounding = Bounding {
-            nominal: target.as_ref().map(|target| target.value),
+            nominal: target.map(Decimal::value),
             ..Bounding::default()
         };
         let definition = match tree.child(nominal, "CharacteristicDefinitionId") {
@@ -61,7 +61,7 @@ impl Bounds<'_, '_> {
             .find_map(|node| tree.child(node, "Tolerance"))
             .or_else(|| places.into_iter().find(holds_limits));
         if let Some(tolerance) = tolerance {
-            return self.of_tolerance(tolerance, target.as_ref(), bounding);
+            return self.of_tolerance(tolerance, target, bounding);
         }
         if let Some(zone) = self.zone(definition) {
             return self.of_zone(definition, zone, bounding);
@@ -80,7 +80,7 @@ impl Bounds<'_, '_> {
     fn of_tolerance(
         &self,
         tolerance: Node,
-        target: Option<&Number>,
+        target: Option<Decimal>,
         bounding: Bounding,
     ) -> Result<Bounding, Broken> {
         let tree = self.tree;
@@ -116,8 +116,8 @@ impl Bounds<'_, '_> {
         };
         if absolute {
             return Ok(Bounding {
-                lower: lower.map(|number| number.value),
-                upper: upper.map(|number| number.value),
+                lower: lower.map(Decimal::value),
+                upper: upper.map(Decimal::value),
                 ..bounding
             });
         }
@@ -129,9 +129,9 @@ impl Bounds<'_, '_> {
                 ..bounding
             });
         };
-        let sum = |deviation: Option<Number>| match deviation {
+        let sum = |deviation: Option<Decimal>| match deviation {
             None => Ok(None),
-            Some(deviation) => self.sum(target, &deviation, tolerance).map(Some),
+            Some(deviation) => self.sum(target, deviation, tolerance).map(Some),
         };
         Ok(Bounding {
             lower: sum(lower)?,
@@ -170,23 +170,24 @@ impl Bounds<'_, '_> {
         );
         if !tree.name(definition).contains("Profile") {
             return Ok(Bounding {
-                upper: Some(width.value),
+                upper: Some(width.value()),
                 note,
                 ..bounding
             });
         }
-        let half = Number::of(width.value / 2.0);
-        let minus = |number: &Number| Number::of(-number.value);
-        let sum = |a: &Number, b: &Number| self.sum(a, b, zone).map(Some);
+        let half = width
+            .half()
+            .ok_or_else(|| self.beyond(width, width, zone))?;
+        let sum = |a: Decimal, b: Decimal| self.sum(a, b, zone).map(Some);
         let (lower, upper) =
             if let Some(outer) = self.number(tree.child(definition, "OuterDisposition"))? {
-                (sum(&outer, &minus(&width))?, Some(outer.value))
+                (sum(outer, width.negative())?, Some(outer.value()))
             } else if let Some(centre) =
                 self.number(self.filled(definition, "UnequallyDisposedZone"))?
             {
-                (sum(&centre, &minus(&half))?, sum(&centre, &half)?)
+                (sum(centre, half.negative())?, sum(centre, half)?)
             } else {
-                (Some(-half.value), Some(half.value))
+                (Some(half.negative().value()), Some(half.value()))
             };
         Ok(Bounding {
             lower,
@@ -205,17 +206,23 @@ impl Bounds<'_, '_> {
             .or(Some(found))
     }
 
-    fn sum(&self, a: &Number, b: &Number, at: Node) -> Result<f64, Broken> {
-        a.plus(b).ok_or_else(|| Broken {
+    fn sum(&self, a: Decimal, b: Decimal, at: Node) -> Result<f64, Broken> {
+        let sum = a.plus(b).map(Decimal::value);
+        sum.filter(|sum| sum.is_finite())
+            .ok_or_else(|| self.beyond(a, b, at))
+    }
+
+    fn beyond(&self, a: Decimal, b: Decimal, at: Node) -> Broken {
+        Broken {
             line: self.tree.line(at),
-            found: format!("{} and {}", a.value, b.value),
-            wrong: "target and deviation add up to no finite number".to_owned(),
+            found: format!("{} and {}", a.value(), b.value()),
+            wrong: "target and tolerance add up to a number of too many digits".to_owned(),
             hint: "correct the nominal or the tolerance",
-        })
+        }
     }
 
     /// The number of an element, in the unit of the value; `None` without one.
-    fn number(&self, node: Option<Node>) -> Result<Option<Number>, Broken> {
+    fn number(&self, node: Option<Node>) -> Result<Option<Decimal>, Broken> {
         let Some((node, text)) = node.and_then(|node| Some((node, self.tree.text(node)?))) else {
             return Ok(None);
         };
@@ -226,7 +233,7 @@ impl Bounds<'_, '_> {
             wrong,
             hint,
         };
-        let number = decimal(text).ok_or_else(|| {
+        let number = Decimal::read(text).ok_or_else(|| {
             broken(
                 format!("`{}` is not a number, as {name} is", shorten(text)),
                 "the document is not whole: export it again",
@@ -237,7 +244,7 @@ impl Bounds<'_, '_> {
             .of(node, self.quantity)
             .map_err(|wrong| broken(wrong, "name units as `FileUnits` does"))?;
         let converted = match (&own, self.unit) {
-            (Some(own), Some(unit)) => own.convert(&number, unit),
+            (Some(own), Some(unit)) => own.convert(number, unit),
             (None, None) => Some(number),
             _ if self.quantity.is_none() => Some(number),
             _ => None,
@@ -258,9 +265,4 @@ impl Bounds<'_, '_> {
             )
         })
     }
-}
-
-/// A decimal number, `xs:decimal` (`5.` too); its mark is the point.
-pub(super) fn decimal(text: &str) -> Option<Number> {
-    Number::read(text.strip_suffix('.').unwrap_or(text), '.').ok()
 }

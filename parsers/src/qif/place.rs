@@ -100,7 +100,9 @@ impl Qif {
             Self::Operator => {
                 "have the operator written, or say where the appraiser stands, as in `appraiser = { path = '^([^/]+)/' }`"
             }
-            Self::Time => "have the inspection's start written, or say where `taken` stands",
+            Self::Time => {
+                "have the inspection's start written, or say where `taken` stands, or how trials are told apart, as in `trial = { path = '-([0-9]+)[.]qif$' }`"
+            }
             Self::Trial => {
                 "have the attribute written for every run, or say how trials are told apart, as in `trial = { count = \"taken\" }`"
             }

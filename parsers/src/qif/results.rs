@@ -2,8 +2,9 @@
 
 use std::collections::{BTreeSet, HashMap, HashSet};
 
+use super::decimal::Decimal;
 use super::facts::{self, Labels, Said};
-use super::limits::{Bounding, Bounds, decimal};
+use super::limits::{Bounding, Bounds};
 use super::links::{Broken, Links};
 use super::place::Qif;
 use super::tree::{Node, RESULTS_2, Tree, is_measurement};
@@ -15,8 +16,18 @@ use crate::parsed::Refused;
 use crate::reader::Roles;
 use crate::source::Where;
 
-/// Statuses that a go/no-go gauge gives in place of a value.
-const VERDICTS: [&str; 4] = ["PASS", "FAIL", "REWORK", "UNDEFINED"];
+/// Statuses that stand in place of a value where none was to be measured: go/no-go, basic dimensions.
+const VERDICTS: [&str; 6] = [
+    "PASS",
+    "FAIL",
+    "REWORK",
+    "UNDEFINED",
+    "BASIC",
+    "BASIC_OR_TED",
+];
+
+/// Said where a run has no time.
+const NO_TIME: &str = "no time of inspection is stated for this run";
 
 /// One measured characteristic and what its references lead to.
 pub(super) struct Measured {
@@ -388,6 +399,7 @@ impl<'t> Results<'t> {
                 stamp
                     .or_else(|| run.inspected.clone())
                     .or_else(|| part.and_then(|part| part.inspected))
+                    .or_else(|| Some(Said::unusable(run.line, NO_TIME)))
             }
             Qif::Trial => self.user_attribute(measured, "Trial"),
             Qif::Attribute(name) => self.user_attribute(measured, name),
@@ -410,7 +422,7 @@ impl<'t> Results<'t> {
                 };
                 said(tree.child(measured.node, name)).map(|said| match &said.content {
                     // `5.` is a decimal number of XML Schema
-                    Content::Text(text) if decimal(text).is_some() => {
+                    Content::Text(text) if Decimal::read(text).is_some() => {
                         Said::text(said.line, text.strip_suffix('.').unwrap_or(text))
                     }
                     _ => said,

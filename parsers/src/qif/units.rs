@@ -4,9 +4,9 @@
 
 use std::collections::HashMap;
 
+use super::decimal::Decimal;
 use super::tree::{Node, Tree};
 use crate::names::{fold, listed, shorten};
-use crate::number::Number;
 
 /// Relative difference from which a stated factor is another unit's.
 const FACTOR_REL: f64 = 1e-3;
@@ -14,19 +14,12 @@ const FACTOR_REL: f64 = 1e-3;
 /// One unit.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Unit {
-    /// `mm`, `inch`, `degree` where it is known, else as written.
+    /// `mm`, `in`, `°` where it is known, else as written.
     pub(super) name: String,
     /// `LinearUnit`, `AngularUnit`, …
     quantity: String,
     /// Unit times this is the SI unit.
     factor: Option<Decimal>,
-}
-
-/// An exact decimal: digits × 10^power.
-#[derive(Debug, Clone, Copy, PartialEq)]
-struct Decimal {
-    digits: i128,
-    power: i32,
 }
 
 struct Known {
@@ -86,13 +79,13 @@ const KNOWN: [Known; 7] = [
         spellings: &["m", "meter", "metre", "meters", "metres"],
     },
     Known {
-        name: "inch",
+        name: "in",
         quantity: "LinearUnit",
         factor: "0.0254",
         spellings: &["in", "inch", "inches", "\""],
     },
     Known {
-        name: "degree",
+        name: "°",
         quantity: "AngularUnit",
         factor: "0.017453292519943295",
         spellings: &[
@@ -196,14 +189,17 @@ impl<'t> Units<'t> {
                 .and_then(|node| self.tree.text(node))
         };
         let shifted = text("Offset")
-            .is_some_and(|offset| Number::read(offset, '.').map_or(true, |n| n.value != 0.0));
-        let factor =
-            match text("Factor").filter(|_| !shifted) {
-                None => None,
-                Some(written) => Some(Decimal::read(written).filter(|f| f.digits > 0).ok_or_else(
-                    || format!("the unit's factor `{}` is no factor", shorten(written)),
-                )?),
-            };
+            .is_some_and(|offset| Decimal::read(offset).is_none_or(|by| by.value() != 0.0));
+        let factor = match text("Factor").filter(|_| !shifted) {
+            None => None,
+            Some(written) => Some(
+                Decimal::read(written)
+                    .filter(|factor| factor.is_positive())
+                    .ok_or_else(|| {
+                        format!("the unit's factor `{}` is no factor", shorten(written))
+                    })?,
+            ),
+        };
         let si = self.tree.child(unit, "SIUnitName");
         let written = self
             .tree
@@ -250,20 +246,14 @@ impl<'t> Units<'t> {
 
 impl Unit {
     /// A number given in this unit, in `other`. `None` when it is not known how they compare.
-    pub(super) fn convert(&self, number: &Number, other: &Self) -> Option<Number> {
+    pub(super) fn convert(&self, number: Decimal, other: &Self) -> Option<Decimal> {
         if self.quantity != other.quantity {
             return None;
         }
         if self.name == other.name {
-            return Some(number.clone());
+            return Some(number);
         }
-        let (from, to) = (self.factor?, other.factor?);
-        let number = Decimal::read(&number.value.to_string())?;
-        let product = Decimal {
-            digits: number.digits.checked_mul(from.digits)?,
-            power: number.power.checked_add(from.power)?,
-        };
-        product.over(to).map(Number::of)
+        number.times(self.factor?, other.factor?)
     }
 }
 
@@ -287,52 +277,6 @@ impl Known {
         Decimal::read(self.factor)
             .is_some_and(|own| (own.value() / factor.value() - 1.0).abs() < FACTOR_REL)
     }
-}
-
-impl Decimal {
-    fn read(text: &str) -> Option<Self> {
-        let text = text.trim();
-        let (mantissa, exponent) = text.split_once(['e', 'E']).unwrap_or((text, "0"));
-        let power: i32 = exponent.parse().ok()?;
-        let (whole, fraction) = mantissa.split_once('.').unwrap_or((mantissa, ""));
-        let fraction = fraction.trim_end_matches('0');
-        if !fraction.bytes().all(|b| b.is_ascii_digit()) {
-            return None;
-        }
-        Some(Self {
-            digits: format!("{whole}{fraction}").parse().ok()?,
-            power: power.checked_sub(i32::try_from(fraction.len()).ok()?)?,
-        })
-    }
-
-    /// The nearest number while both sides of the fraction are exact; a unit in the last place off else.
-    fn over(self, divisor: Self) -> Option<f64> {
-        let scale = |digits: i128, power: i32| {
-            digits.checked_mul(10_i128.checked_pow(u32::try_from(power).ok()?)?)
-        };
-        let power = self.power.checked_sub(divisor.power)?;
-        let (above, below) = match power >= 0 {
-            true => (scale(self.digits, power)?, divisor.digits),
-            false => (self.digits, scale(divisor.digits, -power)?),
-        };
-        let common = gcd(above, below).max(1);
-        let quotient = (above / common) as f64 / (below / common) as f64;
-        quotient.is_finite().then_some(quotient)
-    }
-
-    fn value(self) -> f64 {
-        format!("{}e{}", self.digits, self.power)
-            .parse()
-            .unwrap_or(f64::NAN)
-    }
-}
-
-fn gcd(a: i128, b: i128) -> i128 {
-    let (mut a, mut b) = (a.unsigned_abs(), b.unsigned_abs());
-    while b != 0 {
-        (a, b) = (b, a % b);
-    }
-    i128::try_from(a).unwrap_or(1)
 }
 
 fn spelled(name: &str, quantity: &str) -> Option<&'static Known> {
@@ -402,17 +346,17 @@ mod tests {
             known("millimetre", "LinearUnit"),
         );
         for (inches, millimetres) in [("1", 25.4), ("0.0005", 0.0127), ("-0.002", -0.0508)] {
-            let written = Number::read(inches, '.').unwrap();
-            assert_eq!(inch.convert(&written, &mm).unwrap().value, millimetres);
+            let written = Decimal::read(inches).unwrap();
+            assert_eq!(inch.convert(written, &mm).unwrap().value(), millimetres);
         }
-        let written = Number::read("0.0127", '.').unwrap();
-        assert_eq!(mm.convert(&written, &inch).unwrap().value, 0.0005);
+        let written = Decimal::read("0.0127").unwrap();
+        assert_eq!(mm.convert(written, &inch).unwrap().value(), 0.0005);
         let strange = Unit {
             name: "skein".to_owned(),
             quantity: "LinearUnit".to_owned(),
             factor: None,
         };
-        assert!(strange.convert(&written, &mm).is_none());
+        assert!(strange.convert(written, &mm).is_none());
     }
 
     #[test]

@@ -98,7 +98,7 @@ fn the_hub_reads_as_xpath_reads_it() {
 fn version_2_0_with_a_prefix_and_two_units() {
     assert_snapshot!(told(CASING_2_0, &qif()), @"
     run C-1 | TS | 2026-06-02T16:20:05.5
-      Flange length: 1.1012 inch [1.099 1.1 1.102]
+      Flange length: 1.1012 in [1.099 1.1 1.102]
       Flange width: 50.8 mm [- - 51.054]
     ");
 }
@@ -108,10 +108,10 @@ fn version_2_1_with_two_parts_in_one_run() {
     assert_snapshot!(told(CASING_2_1, &qif()), @"
     run C-1 | KL | 2026-06-02T08:00:00
       B1: 12.003 mm [11.95 12 12.05]
-      Chamfer: 45.02 degree [44.5 45 45.5]
+      Chamfer: 45.02 ° [44.5 45 45.5]
     run C-2 | KL | 2026-06-02T08:00:00
       B1: 11.998 mm [11.95 12 12.05]
-      Chamfer: 44.97 degree [44.5 45 45.5]
+      Chamfer: 44.97 ° [44.5 45 45.5]
     ");
 }
 
@@ -133,7 +133,7 @@ fn every_way_of_stating_limits() {
       profile: -0.011 mm [-0.025 - 0.025]
       profile, outer: 0.02 mm [-0.2 - 0.1]
       profile, unequal: 0.02 mm [-0.05 - 0.25]
-      angle: 45.25 degree [44.5 45 45.5]
+      angle: 45.25 ° [44.5 45 45.5]
       user unit: 58.4 HRC [56 58 60]
       in inches: 25.401 mm [25.3873 25.4 25.4127]
     note: `deviations, no target`: its limits are deviations from a target that is not stated: none are taken
@@ -241,6 +241,29 @@ fn trials_devices_and_user_attributes() {
     ");
 }
 
+/// Runs without time and trial would supersede one another.
+#[test]
+fn runs_that_nothing_tells_apart_are_set_aside() {
+    let text = String::from_utf8(HUB.to_vec()).unwrap();
+    let text = regex::Regex::new("<InspectionStart>.*|<InspectionEnd>.*|<Attributes.*")
+        .unwrap()
+        .replace_all(&text, "");
+    let parsed_by = |rule: &Rule| parsed(text.as_bytes(), rule).unwrap();
+    let aside = parsed_by(&qif());
+    assert_eq!((aside.readings.len(), accounted(&aside)), (0, 24));
+    assert_snapshot!(aside.set_aside[0].reason, @"");
+    let by_path = Rule {
+        trial: Some(Trial::Stated(path("-([0-9])[.]qif$"))),
+        ..qif()
+    };
+    let read = parsed_by(&by_path);
+    assert!(read.runs.iter().all(|run| run.taken.is_none()));
+    assert_eq!(
+        read.set_aside[0].readings, 6,
+        "two runs of each part and operator are one"
+    );
+}
+
 #[test]
 fn a_unit_of_the_rule_against_the_documents_own() {
     let unit = |unit: &str| Rule {
@@ -274,7 +297,7 @@ fn a_unit_whose_name_and_factor_differ_is_not_believed() {
     assert!(
         aside.set_aside[0]
             .reason
-            .contains("the unit is named `mm`, but its factor is 0.0254, that of inch")
+            .contains("the unit is named `mm`, but its factor is 0.0254, that of in")
     );
 }
 
