@@ -166,8 +166,8 @@ fn every_flaw_is_named_and_costs_its_run() {
       hint: have serial numbers written, or say where the part stands, as in `part = { path = '([^/]+)[.]qif$' }`
     set aside (1): line 311, InspectionOperator/Name: blank, where the appraiser should stand
       hint: have the operator written, or say where the appraiser stands, as in `appraiser = { path = '^([^/]+)/' }`
-    set aside (1): line 335, InspectionTraceability/InspectionStart: blank, where a time as `2026-06-02T14:20:05` should stand
-      hint: have the instrument write the time, or correct where `taken` is read
+    set aside (1): line 327, InspectionTraceability/InspectionStart: no time of inspection is stated for this run
+      hint: have the inspection's start written, or say where `taken` stands, or how trials are told apart, as in `trial = { path = '-([0-9]+)[.]qif$' }`
     set aside (1): line 27, CharacteristicDefinition: `perhaps` does not say whether the tolerance's values are limits or deviations
       hint: `DefinedAsLimit` is `true` or `false`; export it again
     set aside (1): line 424, CharacteristicMeasurement/Value: the unit `furlong` is not among the units of this document: `mm`
@@ -203,7 +203,6 @@ fn what_a_document_does_not_say_comes_from_the_path_or_is_asked_for() {
     set aside (1): line 23, ActualComponent/SerialNumber: blank, where the part should stand
       hint: have serial numbers written, or say where the part stands, as in `part = { path = '([^/]+)[.]qif$' }`
     note: the document names no operator; say where the appraiser stands, as in `appraiser = { path = '^([^/]+)/' }`
-    note: the document states no time of inspection; say where `taken` stands, or how trials are told apart, as in `trial = { path = '-(\d+)[.]qif$' }`
     ");
     let rule = Rule {
         part: path("([a-z]+)-[0-9]"),
@@ -251,7 +250,7 @@ fn runs_that_nothing_tells_apart_are_set_aside() {
     let parsed_by = |rule: &Rule| parsed(text.as_bytes(), rule).unwrap();
     let aside = parsed_by(&qif());
     assert_eq!((aside.readings.len(), accounted(&aside)), (0, 24));
-    assert_snapshot!(aside.set_aside[0].reason, @"");
+    assert_snapshot!(aside.set_aside[0].reason, @"line 117, InspectionTraceability/InspectionStart: no time of inspection is stated for this run");
     let by_path = Rule {
         trial: Some(Trial::Stated(path("-([0-9])[.]qif$"))),
         ..qif()
