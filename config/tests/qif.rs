@@ -23,9 +23,23 @@ settle = "2s"
 form = "qif"
 "#;
 
+const AFTER: &str = r#"
+[[plan]]
+name = "hub"
+instruments = ["bridge-1"]
+parts = 10
+appraisers = ["KL", "MO"]
+trials = 3
+interaction = "keep"
+repeat_every = "90d"
+[plan.limits]
+watch = 0.1
+act = 0.3
+"#;
+
 fn rule(lines: &str) -> Rule {
     let disk = Memory::with_folders(&["/state", "/exports"]);
-    let text = format!("{BEFORE}{lines}");
+    let text = format!("{BEFORE}{lines}{AFTER}");
     let (config, _) = restudy_config::read(&text, "restudy.toml", Path::new("/etc"), &disk)
         .unwrap_or_else(|faults| panic!("{}", shown(&faults)));
     config.instruments[0].rule.clone()

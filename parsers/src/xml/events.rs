@@ -187,6 +187,10 @@ impl<V: Visit> Pass<'_, V> {
     fn gather(&mut self, text: &str, line: u32) -> Result<(), Refused> {
         match self.open.last_mut() {
             Some(Open { text: None, .. }) => Ok(()),
+            // Blanks between the children of a long list are no text.
+            Some(Open {
+                text: Some(own), ..
+            }) if own.is_empty() && text.trim().is_empty() => Ok(()),
             Some(Open {
                 text: Some(own), ..
             }) => {

@@ -423,6 +423,13 @@ fn the_hub_in_any_dress_reads_the_same() {
             with(">(-?[0-9])([0-9.]*)</", "><?n?>$1<!-- 7 -->$2</"),
         ),
         ("references", with(">([0-9])([0-9.]*)</", ">&#x3$1;$2</")),
+        (
+            "a long way between elements",
+            with(
+                "<MeasurementResultsSet[^>]*>",
+                &format!("$0{}", " ".repeat(70_000)),
+            ),
+        ),
         ("single quotes", with("=\"([^\"]*)\"", " = '$1'")),
         (
             "other attributes",
