@@ -10,12 +10,14 @@
 //!
 //! Source: ISO 23952:2020.
 
+mod cost;
 mod decimal;
 mod facts;
 mod limits;
 mod links;
 mod place;
 mod results;
+mod say;
 mod tree;
 mod units;
 
@@ -28,9 +30,10 @@ use crate::reader::{OTHER_FORM, Reader, Roles, RuleError, TrialBy};
 use crate::rule::{Cell, Form, Role, Rule, Trial};
 use crate::runs::Runs;
 use crate::source::Where;
+use cost::Cost;
 use facts::Said;
 pub use place::Qif;
-use results::{Cost, Results};
+use results::Results;
 use tree::Tree;
 
 /// Checks that places in a QIF document stand in rules for such documents, and no others do.
