@@ -133,6 +133,7 @@ expectations! {
     roles
     reading_exports
     rows_and_columns
+    qif
     design
     plan_and_instrument
     judging

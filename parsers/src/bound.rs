@@ -85,7 +85,7 @@ impl<'a> Bound<'a> {
             },
             Where::At { row, column } => Ok(Self::Once(grid.field(*row, *column))),
             Where::Label(side, label) => beside(table, label, *side).map(Self::Once),
-            Where::Sheet | Where::Path(_) | Where::Xml(_) | Where::Constant(_) => {
+            Where::Sheet | Where::Path(_) | Where::Xml(_) | Where::Qif(_) | Where::Constant(_) => {
                 Err(misplaced(source))
             }
         }

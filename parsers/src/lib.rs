@@ -6,8 +6,8 @@
 //! at all is [`Refused`] with one sentence. Bad data is a result, never a panic.
 //!
 //! A table (delimited text, sheets of a workbook) has one value field a row below its headings, or
-//! several when the value stands across columns; XML has an element at the rule's path. An export in
-//! which no role is looked up by row has one value field a sheet. A run is what shares
+//! several when the value stands across columns; XML has an element at the rule's path, QIF a measured
+//! characteristic. An export in which no role is looked up by row has one value field a sheet. A run is what shares
 //! part, appraiser, trial, factors, time and round; it is set aside whole when one of its readings
 //! cannot be used.
 //!
@@ -35,6 +35,7 @@ mod number;
 mod one_field;
 mod parsed;
 mod plain;
+mod qif;
 mod reader;
 mod rule;
 mod runs;
@@ -49,6 +50,7 @@ mod xml_path;
 pub use names::{fold, nearest};
 pub use parsed::{Parsed, Reading, Refused, Run, SetAside};
 pub use plain::{Plain, read_plain};
+pub use qif::Qif;
 pub use reader::{Reader, RuleError};
 pub use rule::{
     Across, Bounds, Cell, Column, Count, Epoch, Filter, Find, Form, Header, Layout, Limit, Role,

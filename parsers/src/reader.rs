@@ -13,6 +13,7 @@ use crate::names::{fold, shorten, shorten_to};
 use crate::no_value::NoValue;
 use crate::number::Marks;
 use crate::parsed::{Parsed, Refused};
+use crate::qif;
 use crate::rule::{Bounds, Count, Find, Form, Header, Layout, Limit, Role, Rule, Trial};
 use crate::sheets::Sheets;
 use crate::source::{Source, Where, first_group};
@@ -136,6 +137,7 @@ enum Shape {
     Xml {
         each: XmlPath,
     },
+    Qif,
 }
 
 impl Reader {
@@ -156,6 +158,7 @@ impl Reader {
                 })?,
             ),
         };
+        qif::fits(rule)?;
         let shape = Shape::new(&rule.form, rule.decimal)?;
         Ok(Self {
             roles: Roles::new(rule, shape.each())?,
@@ -195,12 +198,15 @@ impl Reader {
                 }
                 self.read_grids(&grids, header, once)
             }
-            Shape::Xml { each } => match kind {
+            Shape::Xml { .. } | Shape::Qif => match kind {
                 Kind::Text => {
                     let declared = decode::declared(export.bytes);
                     let text = decode::decode(export.bytes, declared, self.encoding)?;
-                    xml::read(&text, self, each, once)
-                        .map_err(|refused| misnamed(export.path, &text, refused))
+                    match self.shape.each() {
+                        Some(each) => xml::read(&text, self, each, once),
+                        None => qif::read(&text, self, &once),
+                    }
+                    .map_err(|refused| misnamed(export.path, &text, refused))
                 }
                 _ => Err(
                     Refused::new("this is a workbook; this instrument's exports are XML")
@@ -303,12 +309,13 @@ impl Shape {
             Form::Xml { each } => Ok(Self::Xml {
                 each: XmlPath::element(each).map_err(|what| RuleError::new("each", what))?,
             }),
+            Form::Qif => Ok(Self::Qif),
         }
     }
 
     fn each(&self) -> Option<&XmlPath> {
         match self {
-            Self::Table { .. } => None,
+            Self::Table { .. } | Self::Qif => None,
             Self::Xml { each } => Some(each),
         }
     }

@@ -6,6 +6,8 @@ use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
+use crate::qif::Qif;
+
 /// The whole rule of one instrument.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Rule {
@@ -75,6 +77,8 @@ pub enum Form {
         /// Absolute path of local names, `/export/run/feature`.
         each: String,
     },
+    /// Results in the QIF standard, 2.x or 3.0: roles come from [`Cell::Qif`], a path or a constant.
+    Qif,
 }
 
 /// Which sheet of a workbook.
@@ -212,6 +216,8 @@ pub enum Cell {
     /// XML: a path to an element or, with `@name` last, an attribute; absolute (`/export/@id`) or relative to
     /// `each` (`value`, `@id`, `../@part`).
     Xml(String),
+    /// What a QIF document says of a measured value.
+    Qif(Qif),
     /// The same for every export; a number is written with a point.
     Constant(String),
 }

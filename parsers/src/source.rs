@@ -10,6 +10,7 @@ use crate::fault::{Fault, shown};
 use crate::grid::{Content, Field, Place};
 use crate::names::{fold, fold_blanks, shorten};
 use crate::number::{Marks, NotANumber, Number, Quantity};
+use crate::qif::Qif;
 use crate::reader::RuleError;
 use crate::rule::{Across, Cell, Role};
 use crate::xml_path::XmlPath;
@@ -39,6 +40,7 @@ pub(crate) enum Where {
     Sheet,
     Path(Regex),
     Xml(XmlPath),
+    Qif(Qif),
     Constant(Content),
 }
 
@@ -104,6 +106,7 @@ impl Source {
         let from = match (&role.from, each) {
             (Cell::Constant(text), _) => Where::Constant(Content::Text(text.as_str().into())),
             (Cell::Path(text), _) => Where::Path(regex(text)?),
+            (Cell::Qif(place), _) => Where::Qif(place.clone()),
             (Cell::Xml(path), Some(each)) => Where::Xml(each.join(path).map_err(error)?),
             (Cell::Xml(_), None) => {
                 return Err(error("an XML path, but the form is a table".to_owned()));
@@ -162,9 +165,13 @@ impl Source {
                     field.place,
                     shorten(what),
                     format!("the {}", self.role),
-                    format!("holds {what}, where the {} should stand", self.role),
+                    match self.from {
+                        Where::Qif(_) => what.to_string(),
+                        _ => format!("holds {what}, where the {} should stand", self.role),
+                    },
                 )
-                .hint(match self.from {
+                .hint(match &self.from {
+                    Where::Qif(place) => place.hint(),
                     Where::Xml(_) => "correct the path so that it leads to one text a reading",
                     _ => {
                         "correct the cell where the export is made; it must hold a text or a number"
@@ -257,7 +264,7 @@ impl Source {
             format!("the {}", self.role),
             format!("blank, where the {} should stand", self.role),
         )
-        .hint(match self.from {
+        .hint(match &self.from {
             _ if self.role == "value" => "measure this run again",
             Where::Column(_) | Where::Counted(_) | Where::Joined { .. } | Where::Across(_) => {
                 "have every row filled in: nothing is taken over from the row above"
@@ -269,6 +276,7 @@ impl Source {
             Where::Sheet => "give the sheet a name",
             Where::Path(_) => "name folder or file as before, or correct `path`",
             Where::Xml(_) => "have the instrument write it, or correct `xml`",
+            Where::Qif(place) => place.hint(),
             Where::Constant(_) => "correct `constant`",
         })
     }

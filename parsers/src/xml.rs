@@ -9,6 +9,7 @@
 //! Invariant: an export is read to its end, or refused; depth is bounded and nothing recurses.
 
 mod document;
+pub(crate) mod events;
 mod lines;
 mod malformed;
 

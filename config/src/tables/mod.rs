@@ -10,6 +10,7 @@ pub(crate) mod list;
 pub(crate) mod mail;
 pub(crate) mod plan;
 pub(crate) mod plan_instruments;
+pub(crate) mod qif;
 pub(crate) mod role;
 pub(crate) mod route;
 pub(crate) mod rule;

@@ -2,9 +2,10 @@
 
 use std::collections::BTreeMap;
 
-use restudy_parsers::{Cell, Role};
+use restudy_parsers::{Cell, Qif, Role};
 
 use crate::place::{cell, is_xml_path, letter, regex};
+use crate::tables::qif;
 use crate::walk::{Node, Table};
 use restudy_parsers::fold;
 
@@ -15,6 +16,8 @@ pub(crate) enum Shape {
     Table,
     /// Elements and attributes; the repeating element stands so many elements deep.
     Xml(usize),
+    /// A QIF document; where the standard has the role that is asked for.
+    Qif(Option<&'static Qif>),
     /// The form itself is faulty: any place may be right.
     Unknown,
 }
@@ -51,6 +54,10 @@ pub(crate) fn table<'a>(node: &Node<'a>) -> Option<Table<'a>> {
 
 /// The role's own keys; the table is left open for more.
 pub(crate) fn role_in(table: &Table<'_>, shape: Shape) -> Option<Role> {
+    if let Shape::Qif(usual) = shape {
+        return qif::role_in(table, usual);
+    }
+    table.never(&["qif", "attribute"], "it needs form = \"qif\"");
     let (cell, found) = (cell_in(table, shape), found_in(table));
     found?.at(cell?)
 }
@@ -212,7 +219,7 @@ fn place(key: &str, node: &Node<'_>, shape: Shape) -> Option<Cell> {
 }
 
 /// `{ KL = ["k.l.", "Kari"] }`, label to other spellings, turned into spelling to label.
-fn spellings(node: &Node<'_>) -> Option<BTreeMap<String, String>> {
+pub(crate) fn spellings(node: &Node<'_>) -> Option<BTreeMap<String, String>> {
     let table = node.table(
         "a table of labels, each with a list of its other spellings, such as { KL = [\"k.l.\"] }",
     )?;

@@ -12,6 +12,7 @@ use crate::place::{is_each, regex};
 use crate::source::shortened;
 use crate::tables::bounds::bounds;
 use crate::tables::layout::{header, layout};
+use crate::tables::qif;
 use crate::tables::role::{PLACES, Shape, found_in, role, role_in, table as role_table};
 use crate::tables::taken::taken;
 use crate::walk::{Node, Table};
@@ -32,6 +33,9 @@ const THOUSANDS: [char; 7] = ['.', ',', ' ', '\u{a0}', '\u{202f}', '\'', '\u{201
 
 pub(crate) fn rule(table: &Table<'_>, site: Option<&Site>) -> Option<Rule> {
     let shape = shape(table);
+    if let Shape::Qif(_) = shape {
+        return qif::rule(table, site);
+    }
     let decimal = table.or("decimal", '.', |node| node.word(&[(".", '.'), (",", ',')]));
     let form = form(table, shape, decimal);
     let layout = layout(table, shape);
@@ -162,16 +166,9 @@ fn with_units_row(value: Value, units_row: bool) -> Value {
 }
 
 fn shape(table: &Table<'_>) -> Shape {
-    let Some(node) = table.need("form", "\"table\" or \"xml\"") else {
+    let Some(node) = table.need("form", "\"table\", \"crosstab\", \"xml\" or \"qif\"") else {
         return Shape::Unknown;
     };
-    if node.as_text() == Some("qif") {
-        node.place.fault(
-            "`qif`: not yet",
-            "a form of this version: \"table\", \"crosstab\" or \"xml\"",
-        );
-        return Shape::Unknown;
-    }
     if node.as_text() == Some("crosstab") {
         crosstab(table);
     }
@@ -182,6 +179,7 @@ fn shape(table: &Table<'_>) -> Shape {
         ("table", Shape::Table),
         ("crosstab", Shape::Table),
         ("xml", xml),
+        ("qif", Shape::Qif(None)),
     ])
     .unwrap_or(Shape::Unknown)
 }
@@ -223,7 +221,7 @@ fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<(Form,
         let fits = match shape {
             Shape::Table => form == "table",
             Shape::Xml(_) => form == "xml",
-            Shape::Unknown => true,
+            Shape::Qif(_) | Shape::Unknown => true,
         };
         if let Some(node) = table.get(key)
             && !fits
@@ -264,7 +262,7 @@ fn form(table: &Table<'_>, shape: Shape, decimal: Option<char>) -> Option<(Form,
             let each = each.to_owned();
             Some((Form::Xml { each }, 0))
         }
-        Shape::Unknown => None,
+        Shape::Qif(_) | Shape::Unknown => None,
     }
 }
 
@@ -334,7 +332,7 @@ fn thousands(node: &Node<'_>, decimal: Option<char>) -> Option<char> {
     Some(mark)
 }
 
-fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
+pub(crate) fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
     let table = role_table(node)?;
     let Some(count) = table.get("count") else {
         let role = role_in(&table, shape);
@@ -353,7 +351,7 @@ fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
         .map(Trial::Counted)
 }
 
-fn value(node: &Node<'_>, shape: Shape) -> Option<Value> {
+pub(crate) fn value(node: &Node<'_>, shape: Shape) -> Option<Value> {
     let table = role_table(node)?;
     let role = match table.get("across") {
         None => role_in(&table, shape),
@@ -419,7 +417,7 @@ fn unit(node: &Node<'_>, shape: Shape) -> Option<Role> {
     Some(Role::plain(Cell::Constant(node.name()?.to_owned())))
 }
 
-fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool, is_lower: bool) -> Option<Limit> {
+pub(crate) fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool, is_lower: bool) -> Option<Limit> {
     let table = role_table(node)?;
     let role = role_in(&table, shape);
     let from = table.optional("from", |node| node.word(&[("nominal", ())]));
@@ -452,7 +450,7 @@ fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool, is_lower: bool) -> Op
 }
 
 /// Roles whose names the user chooses; none is reserved or one of `others`.
-fn named_roles(
+pub(crate) fn named_roles(
     node: &Node<'_>,
     shape: Shape,
     others: &BTreeMap<String, Role>,
@@ -495,7 +493,7 @@ fn named_roles(
     sound.then_some(roles)
 }
 
-fn texts(node: &Node<'_>) -> Option<Vec<String>> {
+pub(crate) fn texts(node: &Node<'_>) -> Option<Vec<String>> {
     let expected = "texts that mean \"no value\", such as [\"---\", \"9999\"]; \"\" is a blank";
     let mut texts: Vec<String> = Vec::new();
     for node in node.list(expected)? {
@@ -509,7 +507,7 @@ fn texts(node: &Node<'_>) -> Option<Vec<String>> {
     Some(texts)
 }
 
-fn encoding(node: &Node<'_>) -> Option<String> {
+pub(crate) fn encoding(node: &Node<'_>) -> Option<String> {
     let label = node.text()?;
     if encoding_rs::Encoding::for_label_no_replacement(label.as_bytes()).is_none() {
         node.fault("the name of an encoding, such as \"windows-1252\"");

@@ -9,7 +9,7 @@ use crate::{fixtures, workbooks};
 const MASKS: [u8; 4] = [0x01, 0x20, 0x80, 0xFF];
 
 /// Calls `check` with the export cut at each byte, then with each byte changed in each of `masks`.
-fn damaged(bytes: &[u8], masks: &[u8], mut check: impl FnMut(&[u8])) {
+pub(crate) fn damaged(bytes: &[u8], masks: &[u8], mut check: impl FnMut(&[u8])) {
     for end in 0..bytes.len() {
         check(&bytes[..end]);
     }
@@ -24,7 +24,7 @@ fn damaged(bytes: &[u8], masks: &[u8], mut check: impl FnMut(&[u8])) {
 }
 
 /// What holds for every outcome.
-fn consistent(outcome: &Result<Parsed, Refused>) {
+pub(crate) fn consistent(outcome: &Result<Parsed, Refused>) {
     match outcome {
         Ok(parsed) => {
             assert!(

@@ -7,6 +7,8 @@ mod fixtures;
 #[cfg(test)]
 mod mistaken;
 #[cfg(test)]
+mod qif;
+#[cfg(test)]
 mod refusals;
 #[cfg(test)]
 mod runs;
