@@ -41,6 +41,7 @@ mod runs;
 mod sheets;
 mod source;
 mod table;
+mod whole;
 mod workbook;
 mod xml;
 mod xml_path;
