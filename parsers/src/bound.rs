@@ -4,7 +4,7 @@ use crate::grid::{BLANK, Content, Field, Grid, Origin, Place, Row};
 use crate::headings::{Heading, Headings};
 use crate::names::{fold, shorten};
 use crate::parsed::Refused;
-use crate::source::{Side, Source, Where, digits};
+use crate::source::{Columns, Side, Source, Where, digits};
 use crate::table::{Table, nowhere};
 
 /// The cells in which a label is sought.
@@ -32,7 +32,6 @@ pub(crate) fn value_columns(
     headings: &Headings<'_>,
     grid: &Grid,
 ) -> Result<Vec<u32>, Refused> {
-    use crate::source::Columns;
     let column = |heading: &Heading| heading.column;
     match &source.from {
         Where::Column(heading) => headings
