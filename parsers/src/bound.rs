@@ -4,7 +4,7 @@ use crate::grid::{BLANK, Content, Field, Grid, Origin, Place, Row};
 use crate::headings::{Heading, Headings};
 use crate::names::{fold, shorten};
 use crate::parsed::Refused;
-use crate::source::{Side, Source, Where, digits};
+use crate::source::{Columns, Side, Source, Where, digits};
 use crate::table::{Table, nowhere};
 
 /// The cells in which a label is sought.
@@ -32,7 +32,6 @@ pub(crate) fn value_columns(
     headings: &Headings<'_>,
     grid: &Grid,
 ) -> Result<Vec<u32>, Refused> {
-    use crate::source::Columns;
     let column = |heading: &Heading| heading.column;
     match &source.from {
         Where::Column(heading) => headings
@@ -229,49 +228,42 @@ fn beside<'g>(table: &Table<'g>, label: &str, side: Side) -> Result<Field<'g>, R
     })
 }
 
-/// The one cell that holds a label: of several, the one above the headings. Of several tables each has
+/// The one cell that holds a label; of several, the one above the headings. Of several tables each has
 /// its own: a label that one of them lacks is not looked for at another.
 fn labelled<'g>(table: &Table<'g>, what: &str, label: &str) -> Result<(&'g Row, u32), Refused> {
     let grid = table.grid;
     let sought = fold(label);
-    let all: Vec<(&Row, u32)> = grid
-        .rows
+    let index = |number: u32| grid.rows.partition_point(|row| row.number < number);
+    let rows = match table.is_alone {
+        true => &grid.rows[..],
+        false => &grid.rows[index(table.rows.start)..index(table.rows.end)],
+    };
+    let all: Vec<(&Row, u32)> = rows
         .iter()
         .flat_map(|row| row.holding(&sought).map(move |column| (row, column)))
         .take(LABELS_MAX)
         .collect();
     let header = table.headings.as_ref().and_then(Headings::number);
-    let only = |holds: &dyn Fn(&Row) -> bool| {
-        let mut found = all.iter().filter(|(row, _)| holds(row));
-        found.next().filter(|_| found.next().is_none()).copied()
-    };
-    let own = |row: &Row| table.rows.contains(&row.number);
-    let above = |row: &Row| header.is_some_and(|header| row.number < header);
-    let found = match table.is_alone {
-        true => only(&|_| true).or_else(|| only(&above)),
-        false => only(&own).or_else(|| only(&|row| own(row) && above(row))),
-    };
-    if let Some(found) = found {
-        return Ok(found);
-    }
-    if let (false, Some(headings)) = (table.is_alone, &table.headings)
-        && !all.iter().any(|(row, _)| own(row))
-    {
-        return Err(Refused::new(format!(
+    let above: Vec<_> = all
+        .iter()
+        .copied()
+        .filter(|(row, _)| header.is_some_and(|header| row.number < header))
+        .collect();
+    match (all.as_slice(), above.as_slice(), &table.headings) {
+        ([one], _, _) | (_, [one], _) => Ok(*one),
+        ([], _, Some(headings)) if !table.is_alone => Err(Refused::new(format!(
             "the {what} `{}` does not stand by the table with its headings in {}",
             shorten(label),
             headings.place(grid)
         ))
-        .hint("if it holds for every table of the sheet, name its cell with `cell`"));
-    }
-    match all.as_slice() {
-        [(a, a_column), (b, b_column), ..] => Err(Refused::new(format!(
+        .hint("if it holds for every table of the sheet, name its cell with `cell`")),
+        ([], ..) => Err(nowhere(grid, what, label)),
+        ([(a, a_column), (b, b_column), ..], ..) => Err(Refused::new(format!(
             "the {what} `{}` stands at two places: {} and {}",
             shorten(label),
             grid.place(a.number, *a_column),
             grid.place(b.number, *b_column)
         ))
         .hint("name the cell itself with `cell`")),
-        _ => Err(nowhere(grid, what, label)),
     }
 }

@@ -39,8 +39,12 @@ pub(crate) struct Headings<'g> {
 }
 
 impl<'g> Headings<'g> {
-    /// The rows in which headings begin: at least one.
-    pub(crate) fn starts(grid: &'g Grid, header: &Header) -> Result<Vec<Option<&'g Row>>, Refused> {
+    /// The rows in which headings begin: one, or when there may be several tables at least one.
+    pub(crate) fn starts(
+        grid: &'g Grid,
+        header: &Header,
+        several: bool,
+    ) -> Result<Vec<Option<&'g Row>>, Refused> {
         match header {
             Header::Nothing => Ok(vec![None]),
             Header::Row(counted) => {
@@ -58,7 +62,9 @@ impl<'g> Headings<'g> {
             Header::Find(text) => {
                 let sought = fold(text);
                 let holds = |row: &&Row| row.holding(&sought).next().is_some();
-                let rows: Vec<_> = grid.rows.iter().filter(holds).map(Some).collect();
+                let most = if several { usize::MAX } else { 1 };
+                let rows = grid.rows.iter().filter(holds).take(most);
+                let rows: Vec<_> = rows.map(Some).collect();
                 match rows.is_empty() {
                     false => Ok(rows),
                     true => Err(crate::table::nowhere(grid, "heading", text)),

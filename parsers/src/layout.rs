@@ -5,8 +5,8 @@ use regex::Regex;
 use crate::grid::{Content, Row};
 use crate::names::fold;
 use crate::reader::RuleError;
-use crate::rule::{Column, Filter, Layout, Test, Until};
-use crate::source::{compiled, digits};
+use crate::rule::{Column, Filter, Form, Header, Layout, Rule, Test, Until};
+use crate::source::{Source, Where, compiled, digits};
 
 /// What is known of the rows of a table.
 #[derive(Debug, Clone)]
@@ -65,8 +65,53 @@ impl Rows {
         })
     }
 
-    /// The columns that are named by their headings.
-    pub(crate) fn needs_headings(&self) -> bool {
+    /// Checks that the places of a rule fit its form, its headings and the place of its value.
+    pub(crate) fn fit(
+        &self,
+        rule: &Rule,
+        sources: &[Source],
+        value: &Where,
+    ) -> Result<(), RuleError> {
+        let Form::Table { header, .. } = &rule.form else {
+            return match rule.layout == Layout::default() {
+                true => Ok(()),
+                false => Err(RuleError::new(
+                    "form",
+                    "rows are told apart, but the form is XML",
+                )),
+            };
+        };
+        let first = |is: fn(&Where) -> bool| sources.iter().find(|source| is(&source.from));
+        if matches!(value, Where::Joined { .. } | Where::Sheet) || value.is_by_value() {
+            return Err(RuleError::new("value", "a place where no value can stand"));
+        }
+        if first(Where::is_by_row).is_none() && rule.layout != Layout::default() {
+            let what = "rows are told apart, but no role is looked up by row";
+            return Err(RuleError::new("form", what));
+        }
+        if let Some(source) = first(Where::is_by_value)
+            && !value.is_by_row()
+        {
+            let what = "looked up in the value's column, but the value stands in none";
+            return Err(RuleError::new(&source.role, what));
+        }
+        match (header, first(Where::needs_headings)) {
+            (Header::Nothing, Some(source)) => Err(RuleError::new(
+                &source.role,
+                "looked up by a heading, but there are no headings",
+            )),
+            (Header::Nothing, None) if self.needs_headings() => {
+                Err(RuleError::new("header", "rows are told apart by headings"))
+            }
+            (Header::Row(_), _) if self.blocks => Err(RuleError::new(
+                "blocks",
+                "the headings are not sought by a text",
+            )),
+            _ => Ok(()),
+        }
+    }
+
+    fn needs_headings(&self) -> bool {
         let columns = self.filters.iter().map(|filter| &filter.column);
         columns
             .chain(&self.fill_down)

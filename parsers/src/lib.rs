@@ -43,6 +43,7 @@ mod sheets;
 mod source;
 mod table;
 mod unit;
+mod whole;
 mod workbook;
 mod xml;
 mod xml_path;

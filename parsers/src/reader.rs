@@ -14,7 +14,7 @@ use crate::no_value::NoValue;
 use crate::number::Marks;
 use crate::parsed::{Parsed, Refused};
 use crate::qif;
-use crate::rule::{Bounds, Count, Find, Form, Header, Layout, Limit, Role, Rule, Trial};
+use crate::rule::{Bounds, Count, Find, Form, Header, Limit, Role, Rule, Trial};
 use crate::sheets::Sheets;
 use crate::source::{Source, Where, first_group};
 use crate::table;
@@ -379,56 +379,8 @@ impl Roles {
         };
         let part = add("part", &rule.part)?;
         let value = add("value", &rule.value.role)?;
-        if each.is_some() && rule.layout != Layout::default() {
-            return Err(RuleError::new(
-                "form",
-                "rows are told apart, but the form is XML",
-            ));
-        }
-        if matches!(
-            sources[value].from,
-            Where::Joined { .. } | Where::Heading | Where::Row(_) | Where::UnitsRow | Where::Sheet
-        ) {
-            return Err(RuleError::new("value", "a place where no value can stand"));
-        }
-        let is_by_row = sources.iter().any(|source| source.from.is_by_row());
-        if each.is_none() && !is_by_row && rule.layout != Layout::default() {
-            return Err(RuleError::new(
-                "form",
-                "rows are told apart, but no role is looked up by row",
-            ));
-        }
-        let by_value = sources.iter().find(|source| source.from.is_by_value());
-        if let Some(source) = by_value
-            && !sources[value].from.is_by_row()
-        {
-            return Err(RuleError::new(
-                &source.role,
-                "looked up in the value's column, but the value stands in none",
-            ));
-        }
         let rows = Rows::new(&rule.layout)?;
-        if let Form::Table { header, .. } = &rule.form {
-            let source = sources.iter().find(|source| source.from.needs_headings());
-            match (header, source) {
-                (Header::Nothing, Some(source)) => {
-                    return Err(RuleError::new(
-                        &source.role,
-                        "looked up by a heading, but there are no headings",
-                    ));
-                }
-                (Header::Nothing, None) if rows.needs_headings() => {
-                    return Err(RuleError::new("header", "rows are told apart by headings"));
-                }
-                (Header::Row(_), _) if rows.blocks => {
-                    return Err(RuleError::new(
-                        "blocks",
-                        "the headings are not sought by a text",
-                    ));
-                }
-                _ => {}
-            }
-        }
+        rows.fit(rule, &sources, &sources[value].from)?;
         let (lower, upper) = (
             limit(rule.lower.as_ref(), lower),
             limit(rule.upper.as_ref(), upper),

@@ -13,11 +13,10 @@ use crate::number::{Marks, Number, Quantity};
 use crate::parsed::{Parsed, Reading, Run, SetAside};
 use crate::reader::{LimitAt, Roles, TrialBy};
 use crate::unit::Scale;
+use crate::whole::Stated;
 
 /// Label of the one characteristic of an export that names none.
 const UNNAMED: &str = "value";
-/// Largest number of readings that a run may be said to have.
-const COUNT_MAX: u32 = 1 << 20;
 
 /// Runs while records arrive.
 pub(crate) struct Runs<'r> {
@@ -39,8 +38,8 @@ struct Entry {
     fault: Option<Fault>,
     further_faults: usize,
     readings: usize,
-    /// How many readings the run has when it is whole, and where that is said.
-    count: Option<(u32, String)>,
+    /// How many readings the run says that it has.
+    stated: Option<Stated>,
 }
 
 impl<'r> Runs<'r> {
@@ -98,58 +97,21 @@ impl<'r> Runs<'r> {
                 fault,
                 further_faults: 0,
                 readings: 0,
-                count: None,
+                stated: None,
             });
         }
         self.entries[at].readings += 1;
         if unknown {
             return;
         }
-        if let Err(fault) = self.counts(at, fields) {
+        let stated = &mut self.entries[at].stated;
+        if let Err(fault) = Stated::note(stated, self.roles, fields) {
             self.entries[at].blame(fault);
             return;
         }
         match self.reading(at, fields, ragged, characteristic, &same) {
             Ok(reading) => self.readings.push(reading),
             Err(fault) => self.entries[at].blame(fault),
-        }
-    }
-
-    /// Notes how many readings the run should have.
-    fn counts(&mut self, at: usize, fields: &[Field<'_>]) -> Result<(), Fault> {
-        let Some(source) = self.roles.count else {
-            return Ok(());
-        };
-        let (source, field) = (&self.roles.sources[source], fields[source]);
-        let expected = "how many readings the run has";
-        let written = source
-            .quantity(field, self.roles.marks)?
-            .ok_or_else(|| source.blank(field.place))?;
-        let count = Some(written.number.value)
-            .filter(|_| written.suffix.is_none())
-            .filter(|count| count.fract() == 0.0 && (1.0..=f64::from(COUNT_MAX)).contains(count))
-            .ok_or_else(|| {
-                Fault::new(
-                    field.place,
-                    shown(field.content),
-                    expected,
-                    format!("{} is no number of readings", shown(field.content)),
-                )
-                .hint("correct where `count` is read")
-            })? as u32;
-        match &self.entries[at].count {
-            Some((before, place)) if *before != count => Err(Fault::new(
-                field.place,
-                shown(field.content),
-                format!("{before}, as before in this run"),
-                format!("the run has {count} readings here and {before} by {place}"),
-            )
-            .hint("a run has one number of readings: export it again")),
-            Some(_) => Ok(()),
-            None => {
-                self.entries[at].count = Some((count, field.place.to_string()));
-                Ok(())
-            }
         }
     }
 
@@ -281,8 +243,13 @@ impl<'r> Runs<'r> {
                 });
             }
         }
-        for entry in &mut self.entries {
-            entry.must_be_whole();
+        for entry in self
+            .entries
+            .iter_mut()
+            .filter(|entry| entry.fault.is_none())
+        {
+            let stated = entry.stated.as_ref();
+            entry.fault = stated.and_then(|stated| stated.fault(entry.readings));
         }
         let mut parsed = Parsed::default();
         let mut places = Vec::with_capacity(self.entries.len());
@@ -319,40 +286,11 @@ impl<'r> Runs<'r> {
 }
 
 impl Entry {
-    /// A run with another number of readings than is said is no whole run.
-    fn must_be_whole(&mut self) {
-        let (None, Some((count, place))) = (&self.fault, &self.count) else {
-            return;
-        };
-        let (found, count) = (self.readings, *count);
-        if found == count as usize {
-            return;
-        }
-        let hint = match found < count as usize {
-            true => "a run that was broken off looks like this: measure it again",
-            false => "are there two runs in one? say where their trial or time stands",
-        };
-        self.fault = Some(Fault {
-            place: place.clone(),
-            found: counted(found),
-            expected: counted(count as usize),
-            hint: Some(hint.to_owned()),
-            wrong: format!("the run has {} of {count} readings", found),
-        });
-    }
-
     fn blame(&mut self, fault: Fault) {
         match &self.fault {
             None => self.fault = Some(fault),
             Some(_) => self.further_faults += 1,
         }
-    }
-}
-
-fn counted(readings: usize) -> String {
-    match readings {
-        1 => "1 reading".to_owned(),
-        several => format!("{several} readings"),
     }
 }
 

@@ -97,11 +97,7 @@ fn tables<'g>(
         };
         return Ok((vec![whole], end_after(0).is_some()));
     }
-    let mut starts = Headings::starts(grid, header)?;
-    if !roles.rows.blocks {
-        starts.truncate(1);
-    }
-    let headings: Vec<Headings<'g>> = starts
+    let headings: Vec<Headings<'g>> = Headings::starts(grid, header, roles.rows.blocks)?
         .into_iter()
         .map(|row| Headings::new(grid, row, roles.rows.further_headings))
         .collect();

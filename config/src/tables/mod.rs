@@ -16,3 +16,4 @@ pub(crate) mod route;
 pub(crate) mod rule;
 pub(crate) mod site;
 pub(crate) mod taken;
+pub(crate) mod value;

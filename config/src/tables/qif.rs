@@ -9,7 +9,8 @@ use crate::checked::Site;
 use crate::place::regex;
 use crate::tables::bounds::bounds;
 use crate::tables::role::{Shape, found_in, role};
-use crate::tables::rule::{encoding, limit, named_roles, texts, trial, value};
+use crate::tables::rule::{encoding, limit, named_roles, texts, trial};
+use crate::tables::value::value;
 use crate::tables::taken::taken;
 use crate::walk::{Node, Table};
 

@@ -3,6 +3,8 @@
 #[cfg(test)]
 mod damage;
 #[cfg(test)]
+mod dresses;
+#[cfg(test)]
 mod fixtures;
 #[cfg(test)]
 mod mistaken;
