@@ -18,6 +18,7 @@
 
 mod container;
 mod damage;
+mod decimal;
 mod decode;
 mod delimited;
 mod fault;
@@ -34,6 +35,7 @@ mod plain;
 mod reader;
 mod rule;
 mod runs;
+mod sexagesimal;
 mod source;
 mod table;
 mod unit;

@@ -130,7 +130,7 @@ fn rule(name: &str) -> Rule {
         "utf-16-little.txt" => tabs(marks(',', ' ', study())),
         "utf-16-big.csv" => below_its_sep_line(marks('.', '\'', study())),
         "utf-16-unmarked.txt" => encoded("utf-16le", tabs(marks('.', ',', study()))),
-        "all-quoted.csv" => below_its_sep_line(marks('.', ',', study())),
+        "all-quoted.csv" => marks('.', ',', study()),
         "heading-of-two-lines.csv" => header_of_two_lines(),
         "shift-jis.csv" => encoded("shift_jis", study()),
         "euc-jp.csv" => encoded("euc-jp", study()),
