@@ -127,6 +127,7 @@ expectations! {
     missing_tables_and_keys
     wrong_types
     unknown_keys_and_keys_of_later_versions
+    text_and_numbers
     times
     folders_and_patterns
     two_instruments
@@ -200,4 +201,21 @@ fn a_password_is_never_shown() {
         let faults = reading(&spoilt(&changes)).unwrap_err();
         assert!(!shown(&faults).contains("hunter2"), "{}", shown(&faults));
     }
+}
+
+#[test]
+fn keys_of_text_and_numbers_that_are_misspelt_have_the_right_one_for_a_hint() {
+    for (wrong, meant) in [
+        ("thousand = \"'\"", "thousands"),
+        ("line_break = true", "line_breaks"),
+        ("novalue = [\"---\"]", "no_value"),
+    ] {
+        let text = spoilt(&[("form = \"table\"", &format!("form = \"table\"\n{wrong}"))]);
+        let told = shown(&reading(&text).unwrap_err());
+        assert!(told.contains(&format!("did you mean `{meant}`?")), "{told}");
+    }
+    let taken = "taken = { column = \"taken\"";
+    let text = spoilt(&[(taken, &format!("{taken}, date = \"1904\""))]);
+    let told = shown(&reading(&text).unwrap_err());
+    assert!(told.contains("did you mean `dates`?"), "{told}");
 }

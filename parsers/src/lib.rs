@@ -20,6 +20,7 @@
 mod bound;
 mod container;
 mod damage;
+mod decimal;
 mod decode;
 mod delimited;
 mod fault;
@@ -39,6 +40,7 @@ mod qif;
 mod reader;
 mod rule;
 mod runs;
+mod sexagesimal;
 mod sheets;
 mod source;
 mod table;

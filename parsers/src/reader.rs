@@ -239,6 +239,11 @@ impl Reader {
         }
         let delimiter = delimited::delimiter(text, delimiter, self.roles.marks.decimal);
         let grid = delimited::grid(text, delimiter, self.line_breaks, &self.bounds)?;
+        let below_sep = Header::Row(2);
+        let header = match header {
+            Header::Row(1) if delimiter.announced => &below_sep,
+            header => header,
+        };
         self.read_grids(&[grid], header, once)
     }
 

@@ -97,7 +97,7 @@ pub enum Sheet {
 /// Which row holds the headings.
 #[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub enum Header {
-    /// That row, counted from 1.
+    /// That row, counted from 1; row 1 is the next one where the first is a line `sep=;`.
     Row(u32),
     /// The first row in which a cell holds that text (any case, blanks folded).
     Find(String),

@@ -84,6 +84,9 @@ pub(super) fn run(line: &Line) -> Answer {
                 None => parsed,
             };
             print(&for_people(&parsed))?;
+            for note in &parsed.notes {
+                print(&format!("note: {note}\n"))?;
+            }
             print(&by_plan(&config, instrument, &path, &parsed))?;
             Ok(End::Fine)
         }

@@ -1,17 +1,18 @@
 //! Values that are something else than they seem: another unit, or the deviation in place of the actual value.
 //!
-//! Model: a value is held against its nominal (the plan's drawing value, else the export's). Only what has an
-//! explanation is doubted; nothing is converted.
+//! Model: a reading in a known unit is first converted to the plan's; then a value is held against its nominal
+//! (the plan's drawing value, else the export's). Only what has an explanation is doubted, and nothing is
+//! converted for it.
 //!
 //! Ratios 25.4, 1000 and 57.3 between exports and drawings: common practice, no source.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 
 use jiff::ToSpan as _;
 use jiff::civil::DateTime;
 use jiff::tz::TimeZone;
 use restudy_config::{Characteristic, Plan};
-use restudy_parsers::{Parsed, Reading, SetAside, fold};
+use restudy_parsers::{Parsed, Reading, SetAside, converted, fold};
 
 use crate::now::{Now, in_zone};
 
@@ -44,7 +45,7 @@ pub fn latest(now: Now, zone: &TimeZone) -> DateTime {
     today.checked_add(1.day()).unwrap_or(DateTime::MAX)
 }
 
-/// Sets the runs with a doubted value or a time stamp after `latest` aside, whole.
+/// Converts readings to the plan's units, and sets the runs with a doubted value or a time stamp after `latest` aside, whole.
 #[must_use]
 pub fn sift(parsed: Parsed, plan: &Plan, latest: DateTime) -> Parsed {
     let drawn: BTreeMap<String, &Characteristic> = plan
@@ -52,6 +53,7 @@ pub fn sift(parsed: Parsed, plan: &Plan, latest: DateTime) -> Parsed {
         .iter()
         .map(|c| (fold(&c.name), c))
         .collect();
+    let parsed = in_plan_units(parsed, &drawn);
     let mut doubts: BTreeMap<usize, SetAside> = BTreeMap::new();
     for reading in &parsed.readings {
         let named = drawn.get(&fold(&reading.characteristic)).copied();
@@ -101,6 +103,7 @@ pub fn sift(parsed: Parsed, plan: &Plan, latest: DateTime) -> Parsed {
     }
     let mut sifted = Parsed {
         set_aside: parsed.set_aside,
+        notes: parsed.notes,
         ..Parsed::default()
     };
     let mut places = Vec::new();
@@ -122,6 +125,62 @@ pub fn sift(parsed: Parsed, plan: &Plan, latest: DateTime) -> Parsed {
     }
     sifted.set_aside.extend(doubts.into_values());
     sifted
+}
+
+/// Readings in the units of the plan, with a note for each characteristic that came in another or in none.
+fn in_plan_units(mut parsed: Parsed, drawn: &BTreeMap<String, &Characteristic>) -> Parsed {
+    let mut notes = BTreeSet::new();
+    for reading in &mut parsed.readings {
+        let planned = drawn
+            .get(&fold(&reading.characteristic))
+            .and_then(|c| c.unit.as_deref());
+        let Some(planned) = planned else { continue };
+        let Some(found) = reading.unit.clone() else {
+            notes.insert(format!(
+                "`{}` comes without a unit; its numbers are taken to be in the plan's `{planned}`",
+                reading.characteristic
+            ));
+            continue;
+        };
+        let is_spelling = converted(1.0, &found, planned) == Some(1.0);
+        if fold(&found) == fold(planned) || !convert(reading, &found, planned) || is_spelling {
+            continue;
+        }
+        notes.insert(format!(
+            "`{}` comes in `{found}`; it is converted to the plan's `{planned}`",
+            reading.characteristic
+        ));
+    }
+    parsed.notes.extend(notes);
+    parsed
+}
+
+/// Puts value, nominal and limits into the unit `to`, all or none.
+fn convert(reading: &mut Reading, from: &str, to: &str) -> bool {
+    let all = || {
+        let maybe = |number: Option<f64>| match number {
+            None => Some(None),
+            Some(number) => converted(number, from, to).map(Some),
+        };
+        Some((
+            converted(reading.value, from, to)?,
+            maybe(reading.nominal)?,
+            maybe(reading.lower)?,
+            maybe(reading.upper)?,
+        ))
+    };
+    let Some((value, nominal, lower, upper)) = all() else {
+        return false;
+    };
+    *reading = Reading {
+        value,
+        nominal,
+        lower,
+        upper,
+        unit: Some(to.to_owned()),
+        ..reading.clone()
+    };
+    true
 }
 
 /// Holds a reading against the drawing: what the plan says of its characteristic, if anything.
@@ -201,6 +260,72 @@ mod tests {
             limits,
             process: None,
         }
+    }
+
+    fn in_units(planned: Option<&str>, reading: Reading) -> (Reading, Vec<String>) {
+        let drawing = Characteristic {
+            unit: planned.map(str::to_owned),
+            ..drawing()
+        };
+        let drawn = BTreeMap::from([("bore a".to_owned(), &drawing)]);
+        let parsed = Parsed {
+            readings: vec![reading.clone(), reading],
+            ..Parsed::default()
+        };
+        let mut parsed = in_plan_units(parsed, &drawn);
+        (parsed.readings.remove(1), parsed.notes)
+    }
+
+    /// 1 inch is 25.4 mm exactly (NIST SP 811, B.6).
+    #[test]
+    fn a_known_unit_is_converted_to_the_plans() {
+        let inch = Reading {
+            value: 1.968,
+            unit: Some("in".into()),
+            nominal: Some(2.0),
+            lower: None,
+            upper: Some(2.001),
+            ..reading(0.0)
+        };
+        let (converted, notes) = in_units(Some("mm"), inch.clone());
+        assert_eq!(
+            (
+                converted.value,
+                converted.nominal,
+                converted.lower,
+                converted.upper
+            ),
+            (49.9872, Some(50.8), None, Some(50.8254))
+        );
+        assert_eq!(converted.unit.as_deref(), Some("mm"));
+        assert_eq!(
+            notes,
+            ["`bore A` comes in `in`; it is converted to the plan's `mm`"]
+        );
+        assert_eq!(in_units(None, inch.clone()), (inch.clone(), vec![]));
+        assert_eq!(in_units(Some("HRC"), inch.clone()), (inch.clone(), vec![]));
+        assert_eq!(in_units(Some("°"), inch.clone()), (inch.clone(), vec![]));
+        let (respelt, notes) = in_units(Some("inch"), inch);
+        assert_eq!(
+            (respelt.value, respelt.unit.as_deref()),
+            (1.968, Some("inch"))
+        );
+        assert!(notes.is_empty());
+    }
+
+    #[test]
+    fn a_reading_without_a_unit_is_told_where_the_plan_has_one() {
+        let bare = Reading {
+            unit: None,
+            ..reading(50.01)
+        };
+        let (kept, notes) = in_units(Some("mm"), bare.clone());
+        assert_eq!(kept, bare);
+        assert_eq!(
+            notes,
+            ["`bore A` comes without a unit; its numbers are taken to be in the plan's `mm`"]
+        );
+        assert_eq!(in_units(Some("MM"), reading(50.01)).1, Vec::<String>::new());
     }
 
     #[test]

@@ -17,4 +17,6 @@ mod runs;
 #[cfg(test)]
 mod shared;
 #[cfg(test)]
+mod texts;
+#[cfg(test)]
 mod workbooks;
