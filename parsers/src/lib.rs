@@ -5,8 +5,8 @@
 //! aside with its place, what was found there and what was expected. An export that cannot be read
 //! at all is [`Refused`] with one sentence. Bad data is a result, never a panic.
 //!
-//! An export has one value field a row below the headings (delimited text, workbook), an element
-//! at the rule's path (XML) or a measured characteristic (QIF), and one in all when no role is looked up by row. A run is what shares
+//! An export has one value field a row below the headings (delimited text, workbook) or an element
+//! at the rule's path (XML), and one in all when no role is looked up by row. A run is what shares
 //! part, appraiser, trial, factors, time and round; it is set aside whole when one of its readings
 //! cannot be used.
 //!

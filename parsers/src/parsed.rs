@@ -13,8 +13,8 @@ pub struct Parsed {
     pub readings: Vec<Reading>,
     /// What could not be used; a run is set aside whole.
     pub set_aside: Vec<SetAside>,
-    /// What a person should know of the export as a whole, a sentence each. Empty for most exports
-    /// that are read by a rule.
+    /// What a person should know of the export as a whole, a sentence each. Empty for exports that
+    /// are read by a rule.
     #[serde(default)]
     pub notes: Vec<String>,
 }
