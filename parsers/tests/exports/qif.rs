@@ -242,6 +242,53 @@ fn trials_devices_and_user_attributes() {
     ");
 }
 
+#[test]
+fn other_places_of_a_document() {
+    let rule = Rule {
+        part: says(Qif::Component),
+        characteristic: Some(says(Qif::Designator)),
+        value: Value {
+            role: says(Qif::Greatest),
+            unit: Some(says(Qif::Unit)),
+        },
+        same: [("status".to_owned(), says(Qif::Status))].into(),
+        ..qif()
+    };
+    let read = parsed(FLAWED, &rule).unwrap();
+    let [reading] = read.readings.as_slice() else {
+        panic!("{:?}", read.readings);
+    };
+    assert_eq!(
+        (reading.characteristic.as_str(), reading.value),
+        ("B1", 12.01)
+    );
+    assert_eq!((reading.lower, reading.upper), (Some(11.95), Some(12.05)));
+    assert_eq!(read.runs[0].part, "31");
+    assert_eq!(read.runs[0].same["status"], "PASS");
+    let reasons: Vec<&str> = read
+        .set_aside
+        .iter()
+        .map(|aside| aside.reason.as_str())
+        .collect();
+    assert!(
+        reasons
+            .iter()
+            .any(|reason| reason.ends_with("there is no MaxValue, only Value")),
+        "{reasons:?}"
+    );
+    let serial = Rule {
+        same: [
+            ("device".to_owned(), says(Qif::DeviceSerial)),
+            ("run".to_owned(), says(Qif::Run)),
+        ]
+        .into(),
+        ..qif()
+    };
+    let run = &parsed(HUB, &serial).unwrap().runs[0];
+    assert_eq!(run.same["device"], "HPW-0417");
+    assert_eq!(run.same["run"], "36f675cc-81e7-4ef5-a8e2-5d940ed90475");
+}
+
 /// Runs without time and trial would supersede one another.
 #[test]
 fn runs_that_nothing_tells_apart_are_set_aside() {
