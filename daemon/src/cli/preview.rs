@@ -6,6 +6,7 @@ use std::path::{Path, PathBuf};
 use restudy_config::{Config, Instrument};
 use restudy_parsers::{Export, Parsed, Reader, Refused, SetAside};
 use serde::Serialize;
+use serde::de::DeserializeOwned;
 
 use super::table::table;
 use super::{Answer, ConfigPath, End, Failure, complain, configuration, print, print_json};
@@ -130,11 +131,11 @@ pub(super) fn read_file(
 }
 
 /// Reads one file, bounded.
-pub(super) fn read_bytes(
+pub(super) fn read_bytes<T>(
     file: &Path,
     bound: u64,
-    read: impl FnOnce(&[u8]) -> Result<Result<Parsed, Refused>, Failure>,
-) -> Result<Result<Parsed, Refused>, Failure> {
+    read: impl FnOnce(&[u8]) -> Result<Result<T, Refused>, Failure>,
+) -> Result<Result<T, Refused>, Failure> {
     let usage = |e: std::io::Error| Failure::usage(e.to_string());
     let size = fs_err::metadata(file).map_err(usage)?.len();
     if size > bound {
@@ -144,11 +145,11 @@ pub(super) fn read_bytes(
 }
 
 /// Reads a workbook in the child process.
-pub(super) fn read_workbook(
+pub(super) fn read_workbook<T: DeserializeOwned>(
     path: &str,
     bytes: &[u8],
     ask: &Ask,
-) -> Result<Result<Parsed, Refused>, Failure> {
+) -> Result<Result<T, Refused>, Failure> {
     match Workbooks::new().read(path, bytes, ask) {
         Ok(outcome) => Ok(outcome),
         Err(WorkbookFailure::Died(how)) => Ok(Err(refusal(&how, 1))),
