@@ -29,7 +29,7 @@ use super::{Answer, End, Failure, print, print_json};
 use crate::intake::request::Ask;
 use draft::{Trust, quoted};
 use read_back::ReadBack;
-use rule::seen_in;
+use rule::counted;
 use sample::{Dress, Sample};
 
 /// Draft the configuration of an instrument from sample exports
@@ -211,8 +211,8 @@ fn head(
     faults: &[String],
 ) -> Vec<String> {
     let mut head = vec![format!(
-        "A draft, from {n} {}. Lines marked `check` are guesses: look at each, then try the rule with `restudy preview`.",
-        if n == 1 { "file" } else { "files" }
+        "A draft, from {}. Lines marked `check` are guesses: look at each, then try the rule with `restudy preview`.",
+        counted(n, "file")
     )];
     let missing: Vec<&str> = lines
         .iter()
@@ -243,8 +243,10 @@ fn head(
             aside += file.set_aside;
         }
         head.push(format!(
-            "Read by this draft, {}: {runs} runs, {readings} readings, {aside} readings set aside.",
-            seen_in(read, read_back.len()).replace("seen in ", "")
+            "Read by this draft, {read} of {}: {}, {}, {aside} set aside.",
+            counted(read_back.len(), "file"),
+            counted(runs, "run"),
+            counted(readings, "reading"),
         ));
     }
     for file in read_back {

@@ -62,7 +62,8 @@ impl Line {
             Trust::Optional => ("# ", "not found: "),
             Trust::Missing => ("# ", "MISSING: "),
         };
-        let line = format!("{before}{key:<KEY_WIDTH$} = {value}");
+        let width = KEY_WIDTH - before.len();
+        let line = format!("{before}{key:<width$} = {value}");
         if note.is_empty() {
             return line;
         }

@@ -28,7 +28,6 @@ const AROUND: &str = r#"
 name = "draft"
 instruments = ["new-instrument"]
 parts = 2
-appraisers = 2
 trials = 2
 interaction = "keep"
 limits = { watch = 0.1, act = 0.3 }
@@ -54,7 +53,13 @@ pub(super) fn read_back(
     draft: &str,
     files: &[PathBuf],
 ) -> Result<(Vec<ReadBack>, Vec<String>), Failure> {
-    let text = format!("{BEFORE}{draft}{AROUND}");
+    let has_appraiser = draft.lines().any(|line| line.starts_with("appraiser "));
+    let appraisers = if has_appraiser {
+        "appraisers = 2\n"
+    } else {
+        ""
+    };
+    let text = format!("{BEFORE}{draft}{AROUND}{appraisers}");
     let root = if cfg!(windows) { "C:\\" } else { "/" };
     let config: Config = match restudy_config::read(&text, "the draft", Path::new(root), &AllThere)
     {

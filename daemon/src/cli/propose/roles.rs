@@ -60,6 +60,8 @@ pub(super) struct Roles {
     found: BTreeMap<Meaning, Taken>,
     /// Places of numbers that no role took.
     pub(super) numbers_left: Vec<String>,
+    /// What stands there.
+    rest: Vec<Datum>,
 }
 
 impl Roles {
@@ -77,6 +79,28 @@ impl Roles {
         ];
         let spots = numbers.into_iter().filter_map(|role| self.found.get(&role));
         number::mark(spots.flat_map(|taken| taken.spot.values()))
+    }
+
+    /// The decimal mark of the numbers that no role took.
+    pub(super) fn mark_of_the_rest(&self) -> Mark {
+        number::mark(self.rest.iter())
+    }
+
+    /// True when value, nominal and limits are all cells with numbers of a workbook.
+    pub(super) fn has_only_cells(&self) -> bool {
+        let numbers = [
+            Meaning::Value,
+            Meaning::Nominal,
+            Meaning::Upper,
+            Meaning::Lower,
+        ];
+        let mut values = numbers
+            .into_iter()
+            .filter_map(|role| self.found.get(&role))
+            .flat_map(|taken| taken.spot.values())
+            .filter(|datum| **datum != Datum::Blank)
+            .peekable();
+        values.peek().is_some() && values.all(|datum| matches!(datum, Datum::Number(_)))
     }
 
     pub(super) fn found(samples: &[Sample]) -> Self {
@@ -122,10 +146,10 @@ impl Roles {
             let left_alone = || meant(spot).iter().any(|(_, m)| *m == Meaning::Neither);
             !used.contains(at) && !spot.once && spot.share_of_numbers() > 0.5 && !left_alone()
         };
-        let left = shared.iter().enumerate().filter(is_left);
-        roles.numbers_left = left
-            .map(|(_, spot)| spot.place.shown().to_owned())
-            .collect();
+        for (_, spot) in shared.iter().enumerate().filter(is_left) {
+            roles.numbers_left.push(spot.place.shown().to_owned());
+            roles.rest.extend(spot.values().cloned());
+        }
         roles
     }
 

@@ -95,8 +95,14 @@ pub(super) fn stamps(values: &[Datum]) -> Stamps {
     }
     let fits = |format: &&str| texts.iter().all(|text| reads(format, text));
     let formats: Vec<&'static str> = FORMATS.into_iter().filter(fits).collect();
-    if !formats.is_empty() {
-        return Stamps::Format(formats);
+    if let Some(first) = formats.first().copied() {
+        let otherwise = |format: &&str| {
+            *format == first
+                || texts
+                    .iter()
+                    .any(|text| read(format, text) != read(first, text))
+        };
+        return Stamps::Format(formats.into_iter().filter(otherwise).collect());
     }
     if DATES.iter().any(fits) {
         return Stamps::DateOnly;
@@ -109,6 +115,10 @@ fn reads(format: &str, text: &str) -> bool {
         read.to_date()
             .is_ok_and(|date| (1990..=2100).contains(&date.year()))
     })
+}
+
+fn read(format: &str, text: &str) -> Option<jiff::civil::DateTime> {
+    strtime::parse(format, text).ok()?.to_datetime().ok()
 }
 
 #[cfg(test)]

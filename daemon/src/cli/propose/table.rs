@@ -67,15 +67,15 @@ pub(super) fn look(cells: &Cells) -> Seen {
     let mut spots: Vec<Spot> = headings
         .iter()
         .filter_map(|(column, cell)| {
-            let heading = text(cell)?.trim();
+            let heading = on_one_line(text(cell)?);
             Some(Spot {
-                place: Place::Column(heading.to_owned()),
-                names: vec![heading.to_owned()],
+                place: Place::Column(heading.clone()),
+                names: vec![heading.clone()],
                 values: records.iter().map(|row| at_column(row, *column)).collect(),
                 once: false,
                 twice: headings
                     .iter()
-                    .filter(|(_, other)| text(other).is_some_and(|t| fold(t) == fold(heading)))
+                    .filter(|(_, other)| text(other).is_some_and(|t| fold(t) == fold(&heading)))
                     .count()
                     > 1,
             })
@@ -110,6 +110,11 @@ fn text(cell: &Cell) -> Option<&str> {
         Cell::Text(text) => Some(text),
         _ => None,
     }
+}
+
+/// Blanks and line breaks folded, as rules compare headings.
+fn on_one_line(text: &str) -> String {
+    text.split_whitespace().collect::<Vec<_>>().join(" ")
 }
 
 fn at_column((_, cells): &Row, column: u32) -> Datum {
@@ -168,10 +173,10 @@ fn labels(rows: &[Row]) -> Vec<Spot> {
     };
     for (number, cells) in rows {
         for (index, (column, cell)) in cells.iter().enumerate() {
-            let Some(label) = text(cell).map(str::trim) else {
+            let Some(label) = text(cell).map(on_one_line) else {
                 continue;
             };
-            if meant(label) {
+            if meant(&label) {
                 let Some((_, beside)) = cells.get(index + 1) else {
                     continue;
                 };
@@ -179,11 +184,11 @@ fn labels(rows: &[Row]) -> Vec<Spot> {
                     continue;
                 }
                 spots.push(Spot {
-                    place: Place::Label(label.to_owned()),
-                    names: vec![label.to_owned()],
+                    place: Place::Label(label.clone()),
+                    names: vec![label.clone()],
                     values: vec![Datum::of(beside)],
                     once: true,
-                    twice: all().filter(|t| fold(t) == fold(label)).count() > 1,
+                    twice: all().filter(|t| fold(t) == fold(&label)).count() > 1,
                 });
             } else if let Some((name, content)) = label.split_once([':', '：'])
                 && meant(name)

@@ -89,15 +89,18 @@ fn meaning(name: &str) -> Option<Meaning> {
 /// Folded, without what stands in brackets at its end, points and closing marks.
 fn key(text: &str) -> String {
     let (name, _) = unit_behind(text);
-    let plain: String = name
-        .chars()
-        .map(|c| match c {
+    let mut plain = String::with_capacity(name.len());
+    let mut before = ' ';
+    for c in name.chars() {
+        plain.push(match c {
             '.' | ':' | '：' | '_' | '/' | '#' => ' ',
+            '-' if before.is_alphanumeric() => ' ',
             '\u{2212}' | '\u{2013}' => '-',
             'º' => '°',
             c => c,
-        })
-        .collect();
+        });
+        before = c;
+    }
     fold(&plain)
 }
 
@@ -294,6 +297,8 @@ mod tests {
         assert_eq!(unit_behind("(mm)"), ("(mm)", None));
         assert_eq!(of_name("NominalValue"), "Nominal Value");
         assert_eq!(of_name("upper_tol"), "upper tol");
+        assert_eq!(best("Werkstück-Nr."), best("Werkstück Nr"));
+        assert_eq!(best("Tol -"), [Meaning::Lower]);
         assert!(ends("Ende") && ends("End of report.") && !ends("Endmaß"));
     }
 

@@ -24,8 +24,20 @@ struct Met {
     count: usize,
     /// Texts of leaf elements or attributes.
     texts: Vec<String>,
+    /// Beside each text, the ordinals of the elements it stands in, from the root.
+    within: Vec<Vec<usize>>,
     /// First met as the so-manieth path.
     order: usize,
+}
+
+/// An element that has not ended yet.
+#[derive(Debug, Default)]
+struct Open {
+    name: String,
+    text: String,
+    has_children: bool,
+    /// Among the elements at its path, from 0.
+    ordinal: usize,
 }
 
 type Paths = BTreeMap<Vec<String>, Met>;
@@ -64,7 +76,7 @@ fn refusal(sentence: String) -> Refused {
 fn walk(text: &str) -> Result<Paths, Refused> {
     let mut reader = Reader::from_str(text);
     let mut paths = Paths::new();
-    let mut open: Vec<(String, String, bool)> = Vec::new();
+    let mut open: Vec<Open> = Vec::new();
     loop {
         let event = reader
             .read_event()
@@ -77,13 +89,13 @@ fn walk(text: &str) -> Result<Paths, Refused> {
             }
             Event::End(_) => leave(&mut open, &mut paths),
             Event::Text(piece) => {
-                if let Some((_, own, _)) = open.last_mut() {
-                    own.push_str(&piece.xml10_content());
+                if let Some(own) = open.last_mut() {
+                    own.text.push_str(&piece.xml10_content());
                 }
             }
             Event::CData(piece) => {
-                if let Some((_, own, _)) = open.last_mut() {
-                    own.push_str(&piece.xml10_content());
+                if let Some(own) = open.last_mut() {
+                    own.text.push_str(&piece.xml10_content());
                 }
             }
             Event::GeneralRef(name) => {
@@ -95,8 +107,8 @@ fn walk(text: &str) -> Result<Paths, Refused> {
                     "quot" => Some('"'),
                     _ => name.resolve_char_ref().ok().flatten(),
                 };
-                if let (Some((_, own, _)), Some(known)) = (open.last_mut(), known) {
-                    own.push(known);
+                if let (Some(own), Some(known)) = (open.last_mut(), known) {
+                    own.text.push(known);
                 }
             }
             Event::DocType(_) => {
@@ -109,37 +121,36 @@ fn walk(text: &str) -> Result<Paths, Refused> {
         }
     }
     match open.last() {
-        Some((name, _, _)) => Err(refusal(format!(
+        Some(Open { name, .. }) => Err(refusal(format!(
             "it ends inside the element `{name}`: is it whole?"
         ))),
         None => Ok(paths),
     }
 }
 
-fn enter(
-    element: &BytesStart<'_>,
-    open: &mut Vec<(String, String, bool)>,
-    paths: &mut Paths,
-) -> Result<(), Refused> {
+fn enter(element: &BytesStart<'_>, open: &mut Vec<Open>, paths: &mut Paths) -> Result<(), Refused> {
     if open.len() >= DEPTH_MAX || paths.len() >= PATHS_MAX {
         return Err(refusal(format!(
             "more than {DEPTH_MAX} elements deep, or more than {PATHS_MAX} different paths"
         )));
     }
-    if let Some((_, _, has_children)) = open.last_mut() {
-        *has_children = true;
+    if let Some(about) = open.last_mut() {
+        about.has_children = true;
     }
-    open.push((
-        element.local_name().as_ref().to_owned(),
-        String::new(),
-        false,
-    ));
-    let path: Vec<String> = open.iter().map(|(name, _, _)| name.clone()).collect();
+    open.push(Open {
+        name: element.local_name().as_ref().to_owned(),
+        ..Open::default()
+    });
+    let path = path_of(open);
     let order = paths.len();
     let met = paths.entry(path.clone()).or_default();
     met.count += 1;
     if met.count == 1 {
         met.order = order;
+    }
+    let ordinal = met.count - 1;
+    if let Some(own) = open.last_mut() {
+        own.ordinal = ordinal;
     }
     for attribute in element.attributes() {
         let attribute =
@@ -163,14 +174,24 @@ fn enter(
     Ok(())
 }
 
-fn leave(open: &mut Vec<(String, String, bool)>, paths: &mut Paths) {
-    let path: Vec<String> = open.iter().map(|(name, _, _)| name.clone()).collect();
-    if let Some((_, text, has_children)) = open.pop()
-        && !has_children
+fn leave(open: &mut Vec<Open>, paths: &mut Paths) {
+    let path = path_of(open);
+    let within = ordinals(open);
+    if let Some(own) = open.pop()
+        && !own.has_children
         && let Some(met) = paths.get_mut(&path)
     {
-        met.texts.push(text.trim().to_owned());
+        met.texts.push(own.text.trim().to_owned());
+        met.within.push(within);
     }
+}
+
+fn path_of(open: &[Open]) -> Vec<String> {
+    open.iter().map(|own| own.name.clone()).collect()
+}
+
+fn ordinals(open: &[Open]) -> Vec<usize> {
+    open.iter().map(|own| own.ordinal).collect()
 }
 
 fn is_leaf(met: &Met) -> bool {
@@ -257,19 +278,31 @@ fn spots(paths: &Paths, each: &[String], records: usize) -> Vec<Spot> {
             Some(Spot {
                 place: Place::Xml(place),
                 names: names(path),
-                values: met
-                    .texts
-                    .iter()
-                    .map(|text| match text.trim() {
-                        "" => Datum::Blank,
-                        text => Datum::Text(text.to_owned()),
-                    })
-                    .collect(),
+                values: values(met, each, shared, records),
                 once: met.count == 1 && records > 1,
                 twice: false,
             })
         })
         .collect()
+}
+
+/// What stands there: one content a record when it stands within the record, else as met.
+fn values(met: &Met, each: &[String], shared: usize, records: usize) -> Vec<Datum> {
+    let datum = |text: &String| match text.trim() {
+        "" => Datum::Blank,
+        text => Datum::Text(text.to_owned()),
+    };
+    if shared < each.len() {
+        return met.texts.iter().map(datum).collect();
+    }
+    let mut values = vec![Datum::Blank; records];
+    for (text, within) in met.texts.iter().zip(&met.within) {
+        let record = within.get(each.len() - 1).copied();
+        if let Some(place) = record.and_then(|record| values.get_mut(record)) {
+            *place = datum(text);
+        }
+    }
+    values
 }
 
 #[cfg(test)]
@@ -314,6 +347,15 @@ mod tests {
             (each.as_str(), spots),
             ("/a/m", vec![".".to_owned(), "@part".to_owned()])
         );
+    }
+
+    #[test]
+    fn contents_stand_beside_their_record() {
+        let text = "<a><r><value>1</value></r><r><value>2</value><up>3</up></r></a>";
+        let sample = sample("a.xml", text, None).unwrap();
+        let up = &sample.spots[1];
+        assert_eq!(up.place, Place::Xml("up".into()));
+        assert_eq!(up.values, [Datum::Blank, Datum::Text("3".into())]);
     }
 
     #[test]
