@@ -4,6 +4,7 @@
 //! standard output, everything else to standard error.
 #![allow(clippy::print_stdout, clippy::print_stderr)]
 
+mod across;
 mod analyse;
 mod check;
 mod configuration;

@@ -97,11 +97,11 @@ impl<'a> Drafted<'a> {
         } else {
             Trust::Optional
         };
-        self.from_path(meaning, key, trust);
+        self.in_path(meaning, key, trust);
     }
 
     /// A role that may stand in the file names.
-    fn from_path(&mut self, meaning: Meaning, key: &'static str, otherwise: Trust) {
+    fn in_path(&mut self, meaning: Meaning, key: &'static str, otherwise: Trust) {
         let files: Vec<&str> = self
             .samples
             .iter()
@@ -149,7 +149,7 @@ impl<'a> Drafted<'a> {
             .map(|sample| sample.file.as_str())
             .collect();
         if path::found(Meaning::Trial, &files).is_some() {
-            self.from_path(Meaning::Trial, "trial", Trust::Optional);
+            self.in_path(Meaning::Trial, "trial", Trust::Optional);
         } else if self.format().is_some() {
             self.put(
                 "trial",

@@ -148,12 +148,16 @@ fn known(rows: &[Row], at: usize) -> Option<usize> {
     if !numbers_below {
         return None;
     }
+    let is_value = |(_, cell): &(u32, Cell)| {
+        let means = |t: &str| words::meanings(t).iter().any(|(_, m)| *m == Meaning::Value);
+        text(cell).is_some_and(means)
+    };
     let meanings: BTreeSet<Meaning> = texts
         .filter_map(|(_, cell)| words::meanings(text(cell)?).first().map(|(_, m)| *m))
         .filter(|meaning| !matches!(meaning, Meaning::Neither | Meaning::End))
         .collect();
     // Beside a label stands its content: only a heading for values makes a row of two one of headings.
-    let is_block = headings.len() < 3 && !meanings.contains(&Meaning::Value);
+    let is_block = headings.len() < 3 && !headings.iter().any(is_value);
     (!is_block).then_some(meanings.len())
 }
 

@@ -138,7 +138,7 @@ pub(super) fn meanings(heading: &str) -> Vec<(Fit, Meaning)> {
             None => found.push((fit, *meaning)),
         }
     }
-    found.sort_by(|a, b| b.0.cmp(&a.0));
+    found.sort_by_key(|(fit, _)| std::cmp::Reverse(*fit));
     let best = found.first().map(|(fit, _)| *fit);
     found.retain(|(fit, _)| Some(*fit) == best);
     found

@@ -170,6 +170,7 @@ fn enter(element: &BytesStart<'_>, open: &mut Vec<Open>, paths: &mut Paths) -> R
         let value = quick_xml::escape::unescape(&attribute.value);
         met.texts
             .push(value.map_or_else(|_| attribute.value.to_string(), String::from));
+        met.within.push(ordinals(open));
     }
     Ok(())
 }
@@ -351,11 +352,13 @@ mod tests {
 
     #[test]
     fn contents_stand_beside_their_record() {
-        let text = "<a><r><value>1</value></r><r><value>2</value><up>3</up></r></a>";
+        let text = "<a><r><value>1</value></r><r id='b'><value>2</value><up>3</up></r></a>";
         let sample = sample("a.xml", text, None).unwrap();
-        let up = &sample.spots[1];
-        assert_eq!(up.place, Place::Xml("up".into()));
-        assert_eq!(up.values, [Datum::Blank, Datum::Text("3".into())]);
+        for (at, place, text) in [(1, "@id", "b"), (2, "up", "3")] {
+            assert_eq!(sample.spots[at].place, Place::Xml(place.into()));
+            let expected = [Datum::Blank, Datum::Text(text.into())];
+            assert_eq!(sample.spots[at].values, expected);
+        }
     }
 
     #[test]
