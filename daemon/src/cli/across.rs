@@ -128,6 +128,65 @@ mod tests {
         );
     }
 
+    struct AllThere;
+
+    impl restudy_config::Disk for AllThere {
+        fn is_folder(&self, _: &std::path::Path) -> bool {
+            true
+        }
+
+        fn text(&self, path: &std::path::Path) -> Result<String, String> {
+            Err(path.display().to_string())
+        }
+    }
+
+    #[test]
+    fn names_and_nominals_are_held_against_the_drawing() {
+        let config = r#"
+site = { name = "Halden Pump Works", zone = "Europe/Oslo" }
+state = { folder = "state" }
+[[instrument]]
+name = "bench-1"
+folders = ["exports"]
+files = ["*.csv"]
+settle = "1s"
+[instrument.read]
+form = "table"
+part = { column = "part" }
+characteristic = { column = "characteristic" }
+value = { column = "value", unit = "mm" }
+nominal = { column = "nominal" }
+[[plan]]
+name = "pin"
+instruments = ["bench-1"]
+parts = 2
+trials = 1
+interaction = "keep"
+limits = { watch = 0.1, act = 0.3 }
+[[plan.characteristic]]
+name = "bore A"
+nominal = 50
+lower = 49.9
+upper = 50.1
+[[plan.characteristic]]
+name = "pin"
+nominal = 12
+lower = 11.9
+upper = 12.1
+"#;
+        let root = std::path::Path::new("/");
+        let (config, _) = restudy_config::read(config, "restudy.toml", root, &AllThere)
+            .unwrap_or_else(|faults| panic!("{faults:?}"));
+        let parsed = parsed(
+            "part,characteristic,value,nominal\nP1,Bore A,50.01,50.02\nP1,pin,12,12\nP1,bore B,1,1\nP1,xyz,1,1\n",
+        );
+        assert_eq!(
+            against_drawing(&config.plans[0], &parsed),
+            "  `Bore A`: the export's nominal is 50.02, the plan's 50; the plan's counts\n  \
+             `bore B` is not among the plan's characteristics; did you mean `bore A`?\n"
+        );
+    }
+
     #[test]
     fn nothing_is_bold_where_no_terminal_shows_it() {
         assert!(std::io::stdout().is_terminal() || bold("set aside") == "set aside");
