@@ -4,6 +4,7 @@
 //! standard output, everything else to standard error.
 #![allow(clippy::print_stdout, clippy::print_stderr)]
 
+mod across;
 mod analyse;
 mod check;
 mod configuration;
@@ -11,6 +12,7 @@ mod demo;
 mod design;
 mod log;
 mod preview;
+mod propose;
 mod results;
 mod serve;
 mod status;
@@ -64,6 +66,7 @@ Examples:
   restudy demo                                     an invented plant, the real service, 20 seconds
   restudy check --config restudy.toml              is this configuration sound?
   restudy preview run.xlsx --config restudy.toml --instrument bridge-1
+  restudy propose samples/*.csv                    draft how an instrument's exports are read
   restudy serve --config restudy.toml              the service; ends on SIGTERM
   restudy status --config restudy.toml             what is filling, what is missing, what was refused
   restudy analyse study.csv --lower 9.95 --upper 10.05
@@ -86,6 +89,8 @@ enum Command {
     Check(check::Line),
     /// Show how one export maps to runs and readings, and what would be set aside
     Preview(preview::Line),
+    /// Draft the configuration of an instrument from sample exports
+    Propose(propose::Line),
     /// Work a study out from files, without a service
     Analyse(analyse::Line),
     /// Show what a study of some size can tell, or print its blind run sheet
@@ -124,6 +129,7 @@ pub fn main() -> ExitCode {
         Command::Serve(line) => serve::run(&line),
         Command::Check(line) => check::run(&line),
         Command::Preview(line) => preview::run(&line),
+        Command::Propose(line) => propose::run(&line),
         Command::Analyse(line) => analyse::run(&line),
         Command::Design(line) => design::run(&line),
         Command::Status(line) => status::run(&line),

@@ -29,6 +29,7 @@ mod headings;
 mod identity;
 mod kind;
 mod layout;
+mod look;
 mod moment;
 mod names;
 mod no_value;
@@ -50,6 +51,9 @@ mod workbook;
 mod xml;
 mod xml_path;
 
+pub use look::{
+    Cells, ROWS_LOOKED_AT, Seen, announced_delimiter, look_at_fields, look_at_sheets, look_at_text,
+};
 pub use names::{fold, nearest};
 pub use parsed::{Parsed, Reading, Refused, Run, SetAside};
 pub use plain::{Plain, read_plain};

@@ -18,6 +18,7 @@ mod mailbox;
 mod ninety_workbooks;
 mod plant;
 mod program;
+mod propose;
 mod published;
 mod record_keys;
 mod revisions;

@@ -6,7 +6,9 @@ use std::path::{Path, PathBuf};
 use restudy_config::{Config, Instrument};
 use restudy_parsers::{Export, Parsed, Reader, Refused, SetAside};
 use serde::Serialize;
+use serde::de::DeserializeOwned;
 
+use super::across::{across, against_drawing, bold};
 use super::table::table;
 use super::{Answer, ConfigPath, End, Failure, complain, configuration, print, print_json};
 use crate::intake::file::too_large;
@@ -133,11 +135,11 @@ pub(super) fn read_file(
 }
 
 /// Reads one file, bounded.
-pub(super) fn read_bytes(
+pub(super) fn read_bytes<T>(
     file: &Path,
     bound: u64,
-    read: impl FnOnce(&[u8]) -> Result<Result<Parsed, Refused>, Failure>,
-) -> Result<Result<Parsed, Refused>, Failure> {
+    read: impl FnOnce(&[u8]) -> Result<Result<T, Refused>, Failure>,
+) -> Result<Result<T, Refused>, Failure> {
     let usage = |e: std::io::Error| Failure::usage(e.to_string());
     let size = fs_err::metadata(file).map_err(usage)?.len();
     if size > bound {
@@ -147,11 +149,11 @@ pub(super) fn read_bytes(
 }
 
 /// Reads a workbook in the child process.
-pub(super) fn read_workbook(
+pub(super) fn read_workbook<T: DeserializeOwned>(
     path: &str,
     bytes: &[u8],
     ask: &Ask,
-) -> Result<Result<Parsed, Refused>, Failure> {
+) -> Result<Result<T, Refused>, Failure> {
     match Workbooks::new().read(path, bytes, ask) {
         Ok(outcome) => Ok(outcome),
         Err(WorkbookFailure::Died(how)) => Ok(Err(refusal(&how, 1))),
@@ -230,6 +232,8 @@ fn for_people(parsed: &Parsed) -> String {
     ];
     let mut out = table(&headings, &[0, 6], rows.collect());
     out.push('\n');
+    out.push_str(&across(parsed));
+    out.push('\n');
     let number = |x: Option<f64>| x.map_or_else(|| "–".into(), |x| x.to_string());
     let rows = parsed.readings.iter().take(READINGS_SHOWN).map(|r| {
         vec![
@@ -260,10 +264,13 @@ fn for_people(parsed: &Parsed) -> String {
     }
     if !parsed.set_aside.is_empty() {
         let n: usize = parsed.set_aside.iter().map(|a| a.readings).sum();
-        out.push_str(&format!("\nset aside ({n} readings):\n"));
+        out.push_str(&bold(&format!("\nset aside ({n} readings):\n")));
     }
     for aside in &parsed.set_aside {
         out.push_str(&format!("  {}\n", aside.reason));
+        if !aside.reason.contains(&aside.expected) {
+            out.push_str(&format!("  expected: {}\n", aside.expected));
+        }
         if let Some(hint) = &aside.hint {
             out.push_str(&format!("  hint: {hint}\n"));
         }
@@ -278,6 +285,7 @@ fn by_plan(config: &Config, instrument: &Instrument, path: &str, parsed: &Parsed
     };
     let frame = Frame::of(plan);
     let mut out = format!("\nThe plan `{}` takes it.\n", plan.name);
+    out.push_str(&against_drawing(plan, parsed));
     for run in &parsed.runs {
         if let Err(unknown) = frame.names(&facts(&instrument.name, run)) {
             out.push_str(&format!(

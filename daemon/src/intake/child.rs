@@ -2,7 +2,7 @@
 
 use std::io::{self, Write};
 
-use restudy_parsers::{Export, Parsed, Refused};
+use restudy_parsers::Export;
 use rustix::process::{Resource, Rlimit, setrlimit};
 
 use super::request::{Ask, Head, put_frame, take_frame};
@@ -26,22 +26,22 @@ pub fn serve() -> io::Result<()> {
     while let Some(head) = take_frame(&mut input)? {
         let head: Head = serde_json::from_slice(&head)?;
         let bytes = take_frame(&mut input)?.ok_or(io::ErrorKind::UnexpectedEof)?;
-        let answer = read(&head, &bytes);
         let mut frame = Vec::new();
-        put_frame(&mut frame, &serde_json::to_vec(&answer)?);
+        put_frame(&mut frame, &answer(&head, &bytes)?);
         output.write_all(&frame)?;
         output.flush()?;
     }
     Ok(())
 }
 
-fn read(head: &Head, bytes: &[u8]) -> Result<Parsed, Refused> {
+fn answer(head: &Head, bytes: &[u8]) -> serde_json::Result<Vec<u8>> {
     let export = Export {
         path: &head.path,
         bytes,
     };
     match &head.ask {
-        Ask::Rule(rule) => restudy_parsers::read(export, rule),
-        Ask::Plain(plain) => restudy_parsers::read_plain(export, plain),
+        Ask::Rule(rule) => serde_json::to_vec(&restudy_parsers::read(export, rule)),
+        Ask::Plain(plain) => serde_json::to_vec(&restudy_parsers::read_plain(export, plain)),
+        Ask::Look => serde_json::to_vec(&restudy_parsers::look_at_sheets(bytes)),
     }
 }

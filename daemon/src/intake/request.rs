@@ -18,6 +18,8 @@ pub enum Ask {
     Rule(Box<Rule>),
     /// By plain headings.
     Plain(Plain),
+    /// Not yet: only shown, sheet by sheet.
+    Look,
 }
 
 /// What comes before an export's bytes.

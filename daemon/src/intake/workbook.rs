@@ -10,7 +10,8 @@ use std::process::{Child, ChildStdin, ChildStdout, Command, Stdio};
 use std::sync::mpsc::{RecvTimeoutError, channel};
 use std::time::Duration;
 
-use restudy_parsers::{Parsed, Refused};
+use restudy_parsers::Refused;
+use serde::de::DeserializeOwned;
 
 use super::request::{Ask, COMMAND, Head, put_frame, take_frame};
 
@@ -52,16 +53,16 @@ impl Workbooks {
         Self::default()
     }
 
-    /// Has the child read a workbook.
+    /// Has the child read a workbook; its answer is what was asked for: `Parsed`, or `Vec<Cells>` for a look.
     ///
     /// # Errors
     /// The child's death, or that it could not be started.
-    pub fn read(
+    pub fn read<T: DeserializeOwned>(
         &mut self,
         path: &str,
         bytes: &[u8],
         ask: &Ask,
-    ) -> Result<Result<Parsed, Refused>, Failure> {
+    ) -> Result<Result<T, Refused>, Failure> {
         let mut running = match self.running.take() {
             Some(running) => running,
             None => start().map_err(Failure::CannotStart)?,
