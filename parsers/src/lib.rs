@@ -16,6 +16,7 @@
 //! Invariant: every value field met in an export is a [`Reading`] of an accepted run or is counted
 //! in [`SetAside::readings`].
 
+mod compound;
 mod container;
 mod damage;
 mod decode;

@@ -1,26 +1,88 @@
-//! One sheet of an xlsx workbook to rows of cells.
+//! Sheets of a workbook to rows of cells: xlsx, xlsb, xls and ods, told apart by their content.
 //!
-//! Only the cell-by-cell reader is used: the library's rectangular range would allocate whatever the
-//! farthest cells span. A panic of the library on a crafted file is one refused export.
+//! Cells of xlsx, xlsb and ods are taken one by one; xls, which the library only reads whole, is
+//! measured before. Hidden rows are data like others; hidden sheets are read only by name. A panic of
+//! the library on a crafted file is one refused export.
 
-use std::collections::BTreeMap;
+mod ods;
+mod rows;
+mod xls;
+mod xlsb;
+mod xlsx;
+
 use std::io::Cursor;
 use std::panic::{AssertUnwindSafe, catch_unwind};
 
-use calamine::{
-    DataRef, ExcelDateTime, Reader as _, SheetType, SheetVisible, Xlsx,
-    XlsxCellFormulaMetadataRecord, XlsxError, XlsxFormulaMetadata,
-};
-use jiff::civil;
+use calamine::{SheetType, SheetVisible, Xls, Xlsx};
 
-use crate::container;
-use crate::damage::{damaged, of_cell, of_workbook};
-use crate::delimited::CELLS_MAX;
-use crate::grid::{Content, Grid, Origin, Row, cell_name};
+use crate::compound;
+use crate::container::{self, Container};
+use crate::damage::damaged;
+use crate::grid::Grid;
 use crate::kind::Kind;
 use crate::names::{fold, listed, nearest, shorten};
 use crate::parsed::Refused;
 use crate::rule::{Bounds, Sheet};
+
+/// One sheet of cells.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub(crate) struct SheetName {
+    pub(crate) name: String,
+    pub(crate) visible: bool,
+}
+
+/// An opened workbook.
+pub(crate) struct Book<'a> {
+    inside: Inside<'a>,
+    bounds: &'a Bounds,
+}
+
+enum Inside<'a> {
+    Xlsx(Box<Xlsx<Cursor<&'a [u8]>>>),
+    Xlsb(Box<xlsb::Book<'a>>),
+    Xls(Box<Xls<Cursor<&'a [u8]>>>),
+    Ods(ods::Sheets),
+}
+
+impl<'a> Book<'a> {
+    pub(crate) fn open(bytes: &'a [u8], kind: Kind, bounds: &'a Bounds) -> Result<Self, Refused> {
+        let inside = unpanicked(|| {
+            Ok(match kind {
+                Kind::Compound => {
+                    compound::check(bytes, bounds)?;
+                    Inside::Xls(Box::new(xls::open(bytes)?))
+                }
+                Kind::Zip | Kind::Text => match container::check(bytes, bounds)? {
+                    Container::Xlsx => Inside::Xlsx(Box::new(xlsx::open(bytes)?)),
+                    Container::Xlsb => Inside::Xlsb(Box::new(xlsb::open(bytes)?)),
+                    Container::Ods => Inside::Ods(ods::read(bytes, bounds)?),
+                },
+            })
+        })?;
+        Ok(Self { inside, bounds })
+    }
+
+    /// Every sheet of cells, in the workbook's order.
+    pub(crate) fn sheets(&self) -> Vec<SheetName> {
+        match &self.inside {
+            Inside::Xlsx(book) => xlsx::sheets(book),
+            Inside::Xlsb(book) => xlsb::sheets(book),
+            Inside::Xls(book) => xls::sheets(book),
+            Inside::Ods(sheets) => sheets.names(),
+        }
+    }
+
+    /// The cells of the sheet of exactly that name.
+    pub(crate) fn grid(&mut self, name: &str) -> Result<Grid, Refused> {
+        let bounds = self.bounds;
+        unpanicked(|| match &mut self.inside {
+            Inside::Xlsx(book) => xlsx::grid(book, name, bounds),
+            Inside::Xlsb(book) => xlsb::grid(book, name, bounds),
+            Inside::Xls(book) => xls::grid(book, name, bounds),
+            Inside::Ods(sheets) => sheets.grid(name),
+        })
+    }
+}
 
 /// The cells of the sheet that the rule asks for.
 pub(crate) fn grid(
@@ -29,69 +91,33 @@ pub(crate) fn grid(
     sheet: &Sheet,
     bounds: &Bounds,
 ) -> Result<Grid, Refused> {
-    container::check(bytes, kind, bounds)?;
-    catch_unwind(AssertUnwindSafe(|| cells(bytes, sheet, bounds)))
+    let mut book = Book::open(bytes, kind, bounds)?;
+    let name = chosen(&book.sheets(), sheet)?;
+    book.grid(&name)
+}
+
+fn unpanicked<T>(read: impl FnOnce() -> Result<T, Refused>) -> Result<T, Refused> {
+    catch_unwind(AssertUnwindSafe(read))
         .unwrap_or_else(|_| Err(damaged("its cells cannot be read")))
 }
 
-fn cells(bytes: &[u8], sheet: &Sheet, bounds: &Bounds) -> Result<Grid, Refused> {
-    let mut book = Xlsx::new(Cursor::new(bytes)).map_err(|why| of_workbook(&why))?;
-    let name = chosen(&book, sheet)?;
-    let mut rows = Rows::scan(&mut book, &name, None, bounds)?;
-    if rows.unreadable > 0 {
-        let places = places(&mut book, &name, &rows)?;
-        rows = Rows::scan(&mut book, &name, Some(&places), bounds)?;
-    }
-    let rows = rows.rows.into_values().collect();
-    Ok(Grid {
-        origin: Origin::Sheet(shorten(&name).into()),
-        rows,
-    })
-}
-
-/// The place of every cell. The reader of values says nothing of the place of a cell that it cannot
-/// read, and takes cells without a stated place to follow the last one it could.
-fn places(
-    book: &mut Xlsx<Cursor<&[u8]>>,
-    name: &str,
-    scanned: &Rows<'_>,
-) -> Result<Vec<(u32, u32)>, Refused> {
-    if scanned.largest_shared_formula > CELLS_MAX {
-        return Err(damaged("a shared formula is numbered beyond all cells"));
-    }
-    let mut reader = book
-        .worksheet_cells_reader(name)
-        .map_err(|why| of_workbook(&why))?;
-    let mut places = Vec::new();
-    while let Some(cell) = reader.next_formula().map_err(|why| of_workbook(&why))? {
-        places.push(cell.get_position());
-    }
-    Ok(places)
-}
-
-/// Faults after which the reader goes on with the next cell.
-fn costs_one_cell(why: &XlsxError) -> bool {
-    matches!(
-        why,
-        XlsxError::CellError(_)
-            | XlsxError::CellTAttribute(_)
-            | XlsxError::ParseFloat(_)
-            | XlsxError::ParseInt(_)
-            | XlsxError::Unrecognized { .. }
-    )
-}
-
-fn chosen(book: &Xlsx<Cursor<&[u8]>>, asked: &Sheet) -> Result<String, Refused> {
-    let sheets: Vec<&calamine::Sheet> = book
-        .sheets_metadata()
+fn listed_by_library(sheets: &[calamine::Sheet], kind: SheetType) -> Vec<SheetName> {
+    sheets
         .iter()
-        .filter(|sheet| sheet.typ == SheetType::WorkSheet)
-        .collect();
+        .filter(|sheet| sheet.typ == kind)
+        .map(|sheet| SheetName {
+            name: sheet.name.clone(),
+            visible: sheet.visible == SheetVisible::Visible,
+        })
+        .collect()
+}
+
+fn chosen(sheets: &[SheetName], asked: &Sheet) -> Result<String, Refused> {
     let names = || sheets.iter().map(|sheet| sheet.name.as_str());
     match asked {
         Sheet::First => sheets
             .iter()
-            .find(|sheet| sheet.visible == SheetVisible::Visible)
+            .find(|sheet| sheet.visible)
             .map(|sheet| sheet.name.clone())
             .ok_or_else(|| Refused::new("the workbook has no visible sheet")),
         Sheet::Named(sought) => {
@@ -109,166 +135,5 @@ fn chosen(book: &Xlsx<Cursor<&[u8]>>, asked: &Sheet) -> Result<String, Refused> 
                     perhaps_unfinished: false,
                 })
         }
-    }
-}
-
-/// Rows while cells arrive.
-struct Rows<'a> {
-    sheet: &'a str,
-    bounds: &'a Bounds,
-    rows: BTreeMap<u32, Row>,
-    cells: usize,
-    unreadable: usize,
-    largest_shared_formula: usize,
-}
-
-impl<'a> Rows<'a> {
-    /// Reads all cells; `places` overrules where the reader takes them to be.
-    fn scan(
-        book: &mut Xlsx<Cursor<&[u8]>>,
-        sheet: &'a str,
-        places: Option<&[(u32, u32)]>,
-        bounds: &'a Bounds,
-    ) -> Result<Self, Refused> {
-        let mut reader = book
-            .worksheet_cells_reader(sheet)
-            .map_err(|why| of_workbook(&why))?;
-        let mut rows = Rows {
-            sheet,
-            bounds,
-            rows: BTreeMap::new(),
-            cells: 0,
-            unreadable: 0,
-            largest_shared_formula: 0,
-        };
-        for index in 0.. {
-            let place = places.and_then(|places| places.get(index)).copied();
-            match reader.next_cell_with_formula_metadata() {
-                Ok(Some(cell)) => {
-                    let shared = cell
-                        .formula
-                        .as_ref()
-                        .and_then(XlsxFormulaMetadata::shared_index);
-                    rows.largest_shared_formula =
-                        rows.largest_shared_formula.max(shared.unwrap_or(0));
-                    let place = place.unwrap_or(cell.pos);
-                    let content = rows.content(place, cell)?;
-                    rows.put(place, content)?;
-                }
-                Ok(None) => break,
-                Err(why) if costs_one_cell(&why) => {
-                    rows.unreadable += 1;
-                    if let Some(place) = place {
-                        rows.put(place, Content::Unusable(of_cell(&why).into()))?;
-                    }
-                }
-                Err(why) => return Err(of_workbook(&why)),
-            }
-        }
-        Ok(rows)
-    }
-
-    fn put(&mut self, (row, column): (u32, u32), content: Content) -> Result<(), Refused> {
-        if content == Content::Blank {
-            return Ok(());
-        }
-        if column >= self.bounds.columns {
-            return Err(self.beyond(row, column, "columns", self.bounds.columns));
-        }
-        if row >= self.bounds.rows {
-            return Err(self.beyond(row, column, "rows", self.bounds.rows));
-        }
-        self.cells += 1;
-        if self.cells > CELLS_MAX {
-            return Err(Refused::new(format!(
-                "more than {CELLS_MAX} cells; that is the limit"
-            )));
-        }
-        let cells = &mut self
-            .rows
-            .entry(row)
-            .or_insert_with(|| Row::new(row, None))
-            .cells;
-        match cells.last() {
-            Some((last, _)) if *last >= column => {
-                match cells.binary_search_by_key(&column, |(column, _)| *column) {
-                    Ok(twice) => cells[twice].1 = Content::Unusable("two contents".into()),
-                    Err(at) => cells.insert(at, (column, content)),
-                }
-            }
-            _ => cells.push((column, content)),
-        }
-        Ok(())
-    }
-
-    fn content(
-        &self,
-        (row, column): (u32, u32),
-        cell: XlsxCellFormulaMetadataRecord<'_>,
-    ) -> Result<Content, Refused> {
-        let text = |text: &str| {
-            if text.len() > self.bounds.text_bytes as usize {
-                return Err(Refused::new(format!(
-                    "sheet `{}`, cell {}: a text of {} bytes; the limit is {}",
-                    self.sheet,
-                    cell_name(row, column),
-                    text.len(),
-                    self.bounds.text_bytes
-                )));
-            }
-            Ok(match text.trim() {
-                "" => Content::Blank,
-                _ => Content::Text(text.into()),
-            })
-        };
-        let number = |number: f64| match number.is_finite() {
-            true => Content::Number(number),
-            false => Content::Unusable(format!("`{number}`, which is no finite number").into()),
-        };
-        Ok(match cell.value {
-            DataRef::Empty if cell.formula.is_some() => {
-                Content::Unusable("a formula without a result".into())
-            }
-            DataRef::Empty => Content::Blank,
-            DataRef::Int(whole) => number(whole as f64),
-            DataRef::Float(float) => number(float),
-            DataRef::String(string) => text(&string)?,
-            DataRef::SharedString(string) => text(string)?,
-            DataRef::DateTimeIso(string) | DataRef::DurationIso(string) => text(&string)?,
-            DataRef::Bool(truth) => Content::Text(if truth { "TRUE" } else { "FALSE" }.into()),
-            DataRef::DateTime(date) => date_of(date),
-            DataRef::Error(error) => Content::Unusable(format!("the error `{error}`").into()),
-        })
-    }
-
-    fn beyond(&self, row: u32, column: u32, what: &str, limit: u32) -> Refused {
-        Refused::new(format!(
-            "sheet `{}`, cell {}: beyond the limit of {limit} {what}",
-            self.sheet,
-            cell_name(row, column)
-        ))
-    }
-}
-
-fn date_of(date: ExcelDateTime) -> Content {
-    if date.is_duration() {
-        return Content::Unusable("a span of time".into());
-    }
-    let (year, month, day, hour, minute, second, milli) = date.to_ymd_hms_milli();
-    let civil = || {
-        civil::DateTime::new(
-            i16::try_from(year).ok()?,
-            i8::try_from(month).ok()?,
-            i8::try_from(day).ok()?,
-            i8::try_from(hour).ok()?,
-            i8::try_from(minute).ok()?,
-            i8::try_from(second).ok()?,
-            i32::from(milli) * 1_000_000,
-        )
-        .ok()
-    };
-    match civil() {
-        Some(date) => Content::Date(date),
-        None => Content::Unusable(format!("the day {year}-{month}-{day}, which never was").into()),
     }
 }

@@ -5,10 +5,11 @@ use std::io::{self, Write};
 use restudy_parsers::{Export, Parsed, Refused};
 use rustix::process::{Resource, Rlimit, setrlimit};
 
-use super::request::{Ask, Head, put_frame, take_frame};
+use super::request::{Ask, Head, put, take_frame};
 
 /// Address space of the child; a workbook within the rule's bounds needs far less.
 const MEMORY_LIMIT: u64 = 2 << 30;
+
 /// Serves until standard input closes.
 ///
 /// # Errors
@@ -27,9 +28,7 @@ pub fn serve() -> io::Result<()> {
         let head: Head = serde_json::from_slice(&head)?;
         let bytes = take_frame(&mut input)?.ok_or(io::ErrorKind::UnexpectedEof)?;
         let answer = read(&head, &bytes);
-        let mut frame = Vec::new();
-        put_frame(&mut frame, &serde_json::to_vec(&answer)?);
-        output.write_all(&frame)?;
+        put(&mut output, &serde_json::to_vec(&answer)?)?;
         output.flush()?;
     }
     Ok(())
