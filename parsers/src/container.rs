@@ -16,11 +16,15 @@ use crate::rule::Bounds;
 const PARTS_MAX: usize = 4096;
 
 /// Bytes of a table of texts, which its reader holds whole.
-const TEXTS_MAX: u64 = 64 << 20;
+const TEXTS_MAX: u64 = 32 << 20;
 /// From this size on a part is searched for texts that are larger than any cell's.
 const SEARCHED_FROM: u64 = 8 << 20;
 /// Bytes without a mark of XML.
 const TEXT_MAX: usize = 4 << 20;
+/// From this size on, parts inflate to no more than so many times the file's bytes: tables of numbers
+/// do to some twenty times.
+const INFLATES_FREELY: u64 = 64 << 20;
+const INFLATION_MAX: u64 = 200;
 const SPREADSHEET: &str = "application/vnd.oasis.opendocument.spreadsheet";
 
 /// What a zip archive is.
@@ -70,6 +74,12 @@ pub(crate) fn check(bytes: &[u8], bounds: &Bounds) -> Result<Container, Refused>
         return Err(Refused::new(format!(
             "the workbook states {inflated} bytes when inflated; the limit is {}",
             bounds.inflated_bytes
+        )));
+    }
+    if inflated > INFLATES_FREELY && inflated / INFLATION_MAX > bytes.len() as u64 {
+        return Err(Refused::new(format!(
+            "the workbook states {inflated} bytes when inflated, more than {INFLATION_MAX} times its own {}; that is the limit",
+            bytes.len()
         )));
     }
     let kind = kind(&mut zip, &parts)?;

@@ -22,3 +22,4 @@ mod published;
 mod record_keys;
 mod revisions;
 mod unusable_runs;
+mod workbook_reader;

@@ -69,9 +69,13 @@ impl Workbooks {
         bytes: &[u8],
         ask: &Ask,
     ) -> Result<Result<Parsed, Refused>, Failure> {
-        let mut running = match self.running.take() {
-            Some(mut running) if running.can_go_on() => running,
-            _ => start().map_err(Failure::CannotStart)?,
+        let mut kept = self.running.take();
+        if kept.as_mut().is_some_and(|running| !running.can_go_on()) {
+            kept = None;
+        }
+        let mut running = match kept {
+            Some(running) => running,
+            None => start().map_err(Failure::CannotStart)?,
         };
         let head = serde_json::to_vec(&Head {
             path: path.to_owned(),

@@ -30,6 +30,8 @@ const OFFICE: &str = "urn:oasis:names:tc:opendocument:xmlns:office:1.0";
 const TABLE: &str = "urn:oasis:names:tc:opendocument:xmlns:table:1.0";
 const TEXT: &str = "urn:oasis:names:tc:opendocument:xmlns:text:1.0";
 const STYLE: &str = "urn:oasis:names:tc:opendocument:xmlns:style:1.0";
+/// Elements of a sheet: cells and the paragraphs in them.
+const ELEMENTS_MAX: usize = 2 * CELLS_MAX;
 /// Depth of elements; nothing here recurses.
 const DEPTH_MAX: usize = 256;
 
@@ -154,7 +156,7 @@ impl<'a> Open<'a> {
             // One too many is enough to be told.
             let shown = repeats.min(self.columns.saturating_sub(self.column) + 1);
             self.pending.push((self.column, shown, content));
-            if self.column > self.columns {
+            if self.column >= self.columns {
                 self.settle(usize::MAX);
             }
         }
@@ -213,7 +215,7 @@ impl<'a> Document<'a> {
         let mut open: Vec<Element> = Vec::new();
         let mut aside = 0_usize;
         let mut cell: Option<Cell> = None;
-        let mut roots = 0_usize;
+        let (mut roots, mut elements) = (0_usize, 0_usize);
         let bounds = self.bounds;
         let mut sheet: Option<Open<'a>> = None;
         loop {
@@ -228,6 +230,12 @@ impl<'a> Document<'a> {
                     if open.len() >= DEPTH_MAX {
                         return Err(Refused::new(format!(
                             "elements of the workbook are nested deeper than {DEPTH_MAX}; that is the limit"
+                        )));
+                    }
+                    elements += 1;
+                    if elements > ELEMENTS_MAX {
+                        return Err(Refused::new(format!(
+                            "a part of the workbook has more than {ELEMENTS_MAX} elements; that is the limit"
                         )));
                     }
                     if open.is_empty() {

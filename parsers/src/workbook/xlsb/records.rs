@@ -8,12 +8,15 @@ use zip::ZipArchive;
 use zip::read::ZipFile;
 
 use crate::damage::{damaged, of_zip};
+use crate::delimited::CELLS_MAX;
 use crate::parsed::Refused;
 
 pub(super) type Zip<'a> = ZipArchive<Cursor<&'a [u8]>>;
 
 /// Data of one record beyond this is passed over: no cell holds so much.
 const LOOKED_INTO: u64 = 1 << 20;
+/// Records of a part: cells, and the rows they stand in.
+const RECORDS_MAX: usize = 2 * CELLS_MAX;
 
 /// Goes through a part's records until one breaks off; a part that is not there has none.
 pub(super) fn each(
@@ -26,7 +29,7 @@ pub(super) fn each(
     };
     let mut part = BufReader::new(part);
     let mut data = Vec::new();
-    loop {
+    for _ in 0..RECORDS_MAX {
         match record(&mut part, &mut data) {
             Ok(Some(kind)) => {
                 if take(kind, &data)?.is_break() {
@@ -37,6 +40,9 @@ pub(super) fn each(
             Err(_) => return Err(damaged("a part ends within a record")),
         }
     }
+    Err(Refused::new(format!(
+        "a part of the workbook has more than {RECORDS_MAX} records; that is the limit"
+    )))
 }
 
 /// The part of that name in any case.
