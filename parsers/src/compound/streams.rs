@@ -42,6 +42,9 @@ impl<'a> Streams<'a> {
         };
         streams.next = streams.table()?;
         let directory = streams.chain(u32_at(bytes, 48)?, None)?;
+        if directory.len() % sector != 0 {
+            return None;
+        }
         streams.entries = directory.chunks_exact(ENTRY).filter_map(entry).collect();
         let root = directory.first_chunk::<ENTRY>()?;
         let small_table = streams.chain(u32_at(bytes, 60)?, None)?;
