@@ -53,7 +53,7 @@ impl Drop for Reader {
 
 fn book(name: &str) -> Vec<u8> {
     let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("../fixtures/exports/workbooks");
-    std::fs::read(folder.join(name)).expect("a fixture")
+    fs_err::read(folder.join(name)).expect("a fixture")
 }
 
 fn readings(answer: &Value) -> usize {

@@ -1,9 +1,9 @@
 //! Workbooks of every kind and many writers (`fixtures/exports/workbooks`, whose `ORIGIN.md` says who
 //! wrote which).
 
-use std::fs;
 use std::path::PathBuf;
 
+use fs_err as fs;
 use insta::assert_snapshot;
 use restudy_parsers::{Form, Header, Rule, Sheet, Taken, Trial, Value};
 
@@ -208,4 +208,45 @@ fn two_far_cells_cost_two_cells() {
         "{wide}"
     );
     assert_snapshot!(read(book("repeats-odfpy.ods"), &table()), @"refused: more than 8388608 cells; that is the limit");
+}
+
+#[test]
+fn workbooks_cut_short_are_refused_and_worth_another_look() {
+    let rule = study(Sheet::First);
+    for name in [
+        "study-openpyxl.xlsx",
+        "study-xlwt.xls",
+        "study-libreoffice.xls",
+        "study-sheetjs.xlsb",
+        "study-pyxlsbwriter.xlsb",
+        "study-odfpy.ods",
+        "study-libreoffice.ods",
+    ] {
+        let whole = book(name);
+        for end in (64..whole.len()).step_by(64) {
+            let shown = read(&whole[..end], &rule);
+            assert!(
+                shown.starts_with("refused, perhaps unfinished: "),
+                "{name} at {end}: {shown}"
+            );
+        }
+    }
+}
+
+/// No checksum guards the streams of an xls workbook.
+#[test]
+fn changed_bytes_of_xls_are_no_panic() {
+    let rule = study(Sheet::First);
+    let mut bytes = book("study-xlwt.xls");
+    for at in 0..bytes.len() {
+        bytes[at] ^= 0x20;
+        let shown = read(&bytes, &rule);
+        assert!(
+            ["run ", "set aside ", "refused"]
+                .iter()
+                .any(|told| shown.starts_with(told)),
+            "{at}: {shown}"
+        );
+        bytes[at] ^= 0x20;
+    }
 }
