@@ -18,6 +18,7 @@
 //! in [`SetAside::readings`].
 
 mod bound;
+mod compound;
 mod container;
 mod damage;
 mod decimal;

@@ -23,3 +23,4 @@ mod published;
 mod record_keys;
 mod revisions;
 mod unusable_runs;
+mod workbook_reader;

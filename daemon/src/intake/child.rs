@@ -5,10 +5,11 @@ use std::io::{self, Write};
 use restudy_parsers::Export;
 use rustix::process::{Resource, Rlimit, setrlimit};
 
-use super::request::{Ask, Head, put_frame, take_frame};
+use super::request::{Ask, Head, put, take_frame};
 
 /// Address space of the child; a workbook within the rule's bounds needs far less.
 const MEMORY_LIMIT: u64 = 2 << 30;
+
 /// Serves until standard input closes.
 ///
 /// # Errors
@@ -26,9 +27,7 @@ pub fn serve() -> io::Result<()> {
     while let Some(head) = take_frame(&mut input)? {
         let head: Head = serde_json::from_slice(&head)?;
         let bytes = take_frame(&mut input)?.ok_or(io::ErrorKind::UnexpectedEof)?;
-        let mut frame = Vec::new();
-        put_frame(&mut frame, &answer(&head, &bytes)?);
-        output.write_all(&frame)?;
+        put(&mut output, &answer(&head, &bytes)?)?;
         output.flush()?;
     }
     Ok(())

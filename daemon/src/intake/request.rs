@@ -1,6 +1,6 @@
 //! What we and the child that reads workbooks say to each other: frames of a length and bytes.
 
-use std::io::{self, Read};
+use std::io::{self, Read, Write};
 
 use restudy_parsers::{Plain, Rule};
 use serde::{Deserialize, Serialize};
@@ -31,10 +31,10 @@ pub struct Head {
     pub ask: Ask,
 }
 
-/// Appends length and bytes.
-pub(super) fn put_frame(to: &mut Vec<u8>, bytes: &[u8]) {
-    to.extend((bytes.len() as u64).to_le_bytes());
-    to.extend(bytes);
+/// Writes length and bytes.
+pub(super) fn put(to: &mut impl Write, bytes: &[u8]) -> io::Result<()> {
+    to.write_all(&(bytes.len() as u64).to_le_bytes())?;
+    to.write_all(bytes)
 }
 
 /// Takes one frame; `None` at a clean end.

@@ -1,22 +1,26 @@
 //! Workbooks are read in a child process of our own program: some crafted ones abort whoever opens them.
 //!
-//! Model: one child, started when first needed and kept; a request is a JSON head and the export's bytes, an
-//! answer is JSON (`child` is the other end). Memory is limited by the child itself, time by us.
+//! Model: one child, started when first needed and kept for many exports; a request is a JSON head and the
+//! export's bytes, an answer is JSON (`child` is the other end). Memory is limited by the child itself, time
+//! by us. A child that ended between two exports is replaced and nobody is blamed.
 //!
 //! Invariant: a child that dies, or does not answer in time, costs only the export it was reading.
 
 use std::io::{self, Write as _};
 use std::process::{Child, ChildStdin, ChildStdout, Command, Stdio};
-use std::sync::mpsc::{RecvTimeoutError, channel};
+use std::sync::mpsc::channel;
+use std::thread;
 use std::time::Duration;
 
 use restudy_parsers::Refused;
 use serde::de::DeserializeOwned;
 
-use super::request::{Ask, COMMAND, Head, put_frame, take_frame};
+use super::request::{Ask, COMMAND, Head, put, take_frame};
 
 /// One workbook may take so long.
 const TIME_LIMIT: Duration = Duration::from_secs(60);
+/// So many exports are read by one child, so that what the library may leak stays small.
+const EXPORTS_PER_CHILD: u32 = 1000;
 
 /// Why there is no answer.
 #[derive(Debug)]
@@ -35,7 +39,10 @@ pub struct Workbooks {
 
 struct Running {
     child: Child,
-    ends: Option<(ChildStdin, ChildStdout)>,
+    stdin: ChildStdin,
+    stdout: ChildStdout,
+    /// Exports it has read.
+    read: u32,
 }
 
 impl Drop for Running {
@@ -63,44 +70,65 @@ impl Workbooks {
         bytes: &[u8],
         ask: &Ask,
     ) -> Result<Result<T, Refused>, Failure> {
-        let mut running = match self.running.take() {
+        let mut kept = self.running.take();
+        if kept.as_mut().is_some_and(|running| !running.can_go_on()) {
+            kept = None;
+        }
+        let mut running = match kept {
             Some(running) => running,
             None => start().map_err(Failure::CannotStart)?,
-        };
-        let Some((mut stdin, mut stdout)) = running.ends.take() else {
-            return Err(Failure::Died("lost its ends".into()));
         };
         let head = serde_json::to_vec(&Head {
             path: path.to_owned(),
             ask: ask.clone(),
         })
         .map_err(|e| Failure::CannotStart(e.into()))?;
-        let mut request = Vec::with_capacity(head.len() + bytes.len() + 16);
-        put_frame(&mut request, &head);
-        put_frame(&mut request, bytes);
+        let answer = running.exchange(&head, bytes)?;
+        let answer = serde_json::from_slice(&answer)
+            .map_err(|e| Failure::Died(format!("answered with nonsense ({e})")))?;
+        running.read += 1;
+        self.running = Some(running);
+        Ok(answer)
+    }
+}
 
+impl Running {
+    fn can_go_on(&mut self) -> bool {
+        self.read < EXPORTS_PER_CHILD && matches!(self.child.try_wait(), Ok(None))
+    }
+
+    /// One request and its answer. Whoever gets no answer must drop us.
+    fn exchange(&mut self, head: &[u8], bytes: &[u8]) -> Result<Vec<u8>, Failure> {
+        let Self {
+            child,
+            stdin,
+            stdout,
+            ..
+        } = self;
         let (sender, receiver) = channel();
-        std::thread::spawn(move || {
-            let answer = stdin
-                .write_all(&request)
-                .and_then(|()| stdin.flush())
-                .and_then(|()| take_frame(&mut stdout));
-            // Nobody waits any more when the time was up.
-            let _ = sender.send((answer, stdin, stdout));
-        });
-        match receiver.recv_timeout(TIME_LIMIT) {
-            Ok((Ok(Some(answer)), stdin, stdout)) => {
-                let answer = serde_json::from_slice(&answer)
-                    .map_err(|e| Failure::Died(format!("answered with nonsense ({e})")))?;
-                running.ends = Some((stdin, stdout));
-                self.running = Some(running);
-                Ok(answer)
+        let answer = thread::scope(|scope| {
+            scope.spawn(move || {
+                let answer = put(stdin, head)
+                    .and_then(|()| put(stdin, bytes))
+                    .and_then(|()| stdin.flush())
+                    .and_then(|()| take_frame(stdout));
+                // Nobody waits any more when the time was up.
+                let _ = sender.send(answer);
+            });
+            let answer = receiver.recv_timeout(TIME_LIMIT);
+            if answer.is_err() {
+                // Its ends close, so that the thread ends too.
+                let _ = child.kill();
             }
-            Ok(_) | Err(RecvTimeoutError::Disconnected) => {
-                let how = running.child.wait().map(|s| s.to_string());
+            answer
+        });
+        match answer {
+            Ok(Ok(Some(answer))) => Ok(answer),
+            Ok(_) => {
+                let how = child.wait().map(|status| status.to_string());
                 Err(Failure::Died(how.unwrap_or_else(|e| e.to_string())))
             }
-            Err(RecvTimeoutError::Timeout) => Err(Failure::Died(format!(
+            Err(_) => Err(Failure::Died(format!(
                 "took more than {} s",
                 TIME_LIMIT.as_secs()
             ))),
@@ -127,8 +155,15 @@ fn start() -> io::Result<Running> {
         .stdout(Stdio::piped())
         .stderr(Stdio::null())
         .spawn()?;
-    let ends = child.stdin.take().zip(child.stdout.take());
-    Ok(Running { child, ends })
+    let (Some(stdin), Some(stdout)) = (child.stdin.take(), child.stdout.take()) else {
+        return Err(io::ErrorKind::BrokenPipe.into());
+    };
+    Ok(Running {
+        child,
+        stdin,
+        stdout,
+        read: 0,
+    })
 }
 
 /// Our own program even after an update replaced the file it was started from.

@@ -1,6 +1,8 @@
 //! Whole exports in, runs and what was set aside out.
 
 #[cfg(test)]
+mod books;
+#[cfg(test)]
 mod damage;
 #[cfg(test)]
 mod dresses;
