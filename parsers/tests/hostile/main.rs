@@ -84,7 +84,6 @@ mod tests {
         fs::remove_file(&file).unwrap();
         assert!(most * 1024 <= MEMORY_MAX, "{name}: {most} kB, {told}");
         assert!(ticks <= TICKS_MAX, "{name}: {ticks} hundredths, {told}");
-        println!("{name}: {most} kB, {ticks} hundredths of a second, {told}");
         told.to_owned()
     }
 
