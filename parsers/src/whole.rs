@@ -35,7 +35,7 @@ impl Stated {
                 field.place,
                 shown(field.content),
                 "how many readings the run has",
-                format!("{} is no number of readings", shown(field.content)),
+                format!("`{}` is no number of readings", shown(field.content)),
             )
             .hint("correct where `count` is read"));
         }

@@ -94,5 +94,8 @@ fn a_small_workbook_takes_a_few_milliseconds() {
             .map(|_| timed(&mut || Reader::start().read(&bytes)))
             .collect(),
     );
-    assert!(kept <= MEDIAN_MAX, "{kept:?} in a child kept, {anew:?} in one each");
+    assert!(
+        kept <= MEDIAN_MAX,
+        "{kept:?} in a child kept, {anew:?} in one each"
+    );
 }

@@ -10,8 +10,8 @@ use crate::place::regex;
 use crate::tables::bounds::bounds;
 use crate::tables::role::{Shape, found_in, role};
 use crate::tables::rule::{encoding, limit, named_roles, texts, trial};
-use crate::tables::value::value;
 use crate::tables::taken::taken;
+use crate::tables::value::value;
 use crate::walk::{Node, Table};
 
 const EXPECTED: &str = "one of qif, attribute, path or constant";

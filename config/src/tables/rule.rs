@@ -317,7 +317,12 @@ pub(crate) fn trial(node: &Node<'_>, shape: Shape) -> Option<Trial> {
         .map(Trial::Counted)
 }
 
-pub(crate) fn limit(node: &Node<'_>, shape: Shape, has_nominal: bool, is_lower: bool) -> Option<Limit> {
+pub(crate) fn limit(
+    node: &Node<'_>,
+    shape: Shape,
+    has_nominal: bool,
+    is_lower: bool,
+) -> Option<Limit> {
     let table = role_table(node)?;
     let role = role_in(&table, shape);
     let from = table.optional("from", |node| node.word(&[("nominal", ())]));

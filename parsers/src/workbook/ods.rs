@@ -16,13 +16,13 @@ use quick_xml::name::{Namespace, ResolveResult};
 use quick_xml::reader::NsReader;
 use zip::ZipArchive;
 
-use crate::sheets::Named;
-use super::rows::{Rows};
+use super::rows::Rows;
 use crate::damage::{damaged, of_zip};
 use crate::grid::{Content, Grid};
 use crate::names::shorten;
 use crate::parsed::Refused;
 use crate::rule::Bounds;
+use crate::sheets::Named;
 use cell::Cell;
 
 const OFFICE: &str = "urn:oasis:names:tc:opendocument:xmlns:office:1.0";
@@ -319,7 +319,9 @@ impl<'a> Document<'a> {
                         }
                         Element::Row => {
                             if let Some(sheet) = &mut sheet {
-                                sheet.end_row((self.bounds.cells as usize).saturating_sub(self.held));
+                                sheet.end_row(
+                                    (self.bounds.cells as usize).saturating_sub(self.held),
+                                );
                             }
                         }
                         Element::Table => {

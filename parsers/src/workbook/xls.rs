@@ -5,12 +5,12 @@ use std::io::Cursor;
 
 use calamine::{Data, DataRef, Reader as _, SheetType, Xls, XlsError};
 
-use crate::sheets::Named;
 use super::rows::{NO_RESULT, Rows, content};
 use crate::damage::{NO_PASSWORD, damaged};
 use crate::grid::{Content, Grid};
 use crate::parsed::Refused;
 use crate::rule::Bounds;
+use crate::sheets::Named;
 
 type Book<'a> = Xls<Cursor<&'a [u8]>>;
 

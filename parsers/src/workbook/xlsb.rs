@@ -14,12 +14,12 @@ use calamine::{ExcelDateTime, ExcelDateTimeType};
 use quick_xml::events::Event;
 use zip::ZipArchive;
 
-use crate::sheets::Named;
 use super::rows::{Rows, date_of, number, span_of_time, text, truth};
 use crate::damage::{damaged, of_zip};
 use crate::grid::{Content, Grid};
 use crate::parsed::Refused;
 use crate::rule::Bounds;
+use crate::sheets::Named;
 use format::Shown;
 use records::{Zip, f64_at, u16_at, u32_at, wide_text};
 

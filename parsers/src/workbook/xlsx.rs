@@ -4,12 +4,12 @@ use std::io::Cursor;
 
 use calamine::{Reader as _, SheetType, Xlsx, XlsxError, XlsxFormulaMetadata};
 
-use crate::sheets::Named;
 use super::rows::{NO_RESULT, Rows, content};
 use crate::damage::{damaged, of_cell, of_workbook};
 use crate::grid::{Content, Grid};
 use crate::parsed::Refused;
 use crate::rule::Bounds;
+use crate::sheets::Named;
 
 type Book<'a> = Xlsx<Cursor<&'a [u8]>>;
 

@@ -158,8 +158,8 @@ fn every_flaw_is_named_and_costs_its_run() {
       hint: measure this run again
     set aside (1): line 180, CharacteristicMeasurement: there is no Value, only MaxValue and MinValue
       hint: if one of them is what is studied, say so, as in `value = { qif = "max" }`
-    set aside (2): line 211, CharacteristicMeasurement/Value: `1O.004` is not a number; this instrument's decimal mark is `.`
-      hint: `O.004` looks like a unit: have it left out, or take the number alone with `find`
+    set aside (2): line 211, CharacteristicMeasurement/Value: `O.004` behind the number is no unit that is known here
+      hint: if it is the unit, state it with `unit = "O.004"` beside the value; else take the number alone with `find`
     set aside (1): line 242, CharacteristicMeasurement: the characteristic item with the id 99 is not in this document
       hint: the document is not whole: export it again
     set aside (1): line 275, ActualComponent/SerialNumber: the run lists 2 parts, and the value does not say which of them it is of
